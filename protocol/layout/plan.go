@@ -1,0 +1,94 @@
+// Package layout turns the units of a protocol and what each receives into a Plan:
+// the instances of every unit, the strata with their degrees of freedom, the
+// experimental units of each treatment term and the error it is tested over, the
+// skeleton analysis, and the name the trade gives to the design.
+//
+// Nothing is looked up by the name of a design. Units and treatments are two sets of
+// factors over the smallest units; strata, degrees of freedom and error terms follow
+// from their algebra (Tjur 1984; Bailey 2008, ch. 10), and the name is recognised last.
+package layout
+
+import "penwright/protocol"
+
+// Plan is the layout of a trial, fixed before the draw. It depends on counts alone.
+type Plan struct {
+	Protocol *protocol.Protocol
+
+	Units    []Unit    // in the protocol's order
+	Smallest int       // index of the unit whose instances are the rows of the plan
+	Factors  []Factor  // treatment factors and carried classes, in the protocol's order
+	Terms    []Term    // main effects first, then interactions, in the protocol's order
+	Strata   []Stratum // one for each unit, in the protocol's order, coarse before fine
+	Design   Design
+
+	coarse [][][]int32 // coarse[u][v]: instance of u → instance of v; nil unless v is u or coarser
+}
+
+// Role says what a unit is for.
+type Role int
+
+// The roles of a unit.
+const (
+	Block        Role = iota // received nothing and holds units that do
+	Experimental             // received a treatment, or is where an interaction of treatments lives
+	Sampling                 // received nothing and lies within the smallest experimental unit
+)
+
+// Unit is a physical unit with all its instances, numbered from 0 in the order of the
+// plan: parents in order, within a parent in order; for a crossing unit the first
+// crossed unit slowest.
+type Unit struct {
+	Name, Label string
+	Role        Role
+	Within      int   // index of the parent unit, or -1
+	Crosses     []int // indices of the crossed units, or nil
+	N           int   // number of instances
+	Own         []string // name of each instance as the data write it; nil for a crossing unit, which has no column
+	Receives    []int // indices into Plan.Factors
+	Carries     []int // indices into Plan.Factors
+	Animals     []int // animals in each instance; nil: not stated
+	Random      bool  // as methods state it for blocks = "auto", or overridden by the protocol
+	Interacts   bool
+}
+
+// Factor is a treatment factor or a carried class as the plan sees it. Where treatments
+// are listed, the factor "treatment" stands first with the codes as levels, and the
+// factors it is made of follow with Unit = -1.
+type Factor struct {
+	Name, Label string
+	Unit        int // index of the unit that receives or carries it; -1: none by itself
+	Carried     bool
+	Levels      []string
+	Values      []float64 // nil: qualitative
+	Control     []int     // indices of control levels
+	Protocol    *protocol.Factor // nil for "treatment"
+}
+
+// Term is a treatment term: a main effect or an interaction.
+type Term struct {
+	Factors []int  // indices into Plan.Factors, ascending
+	Name    string // names joined with a colon, in protocol order
+	Unit    int    // its experimental unit
+	Stratum int    // index into Plan.Strata: where it is tested when the draw is balanced; -1 when it cannot lie in one
+	DF      int
+}
+
+// Stratum is the space of one unit after all coarser ones.
+type Stratum struct {
+	Unit    int
+	Name    string // the unit's name
+	DF      int
+	Terms   []int // indices into Plan.Terms
+	ErrorDF int   // DF less that of its terms
+}
+
+// Design is what the trade calls the layout.
+type Design struct {
+	Name string // such as "randomized complete block"; never empty
+	// Parts names qualifications that follow the name, such as "with sampling within units".
+	Parts []string
+}
+
+// Coarse maps the instances of unit u to those of unit v, or is nil when v is neither
+// u nor coarser than u.
+func (p *Plan) Coarse(u, v int) []int32 { return p.coarse[u][v] }
