@@ -40,14 +40,14 @@ const (
 type Unit struct {
 	Name, Label string
 	Role        Role
-	Within      int   // index of the parent unit, or -1
-	Crosses     []int // indices of the crossed units, or nil
-	N           int   // number of instances
+	Within      int      // index of the parent unit, or -1
+	Crosses     []int    // indices of the crossed units, or nil
+	N           int      // number of instances
 	Own         []string // name of each instance as the data write it; nil for a crossing unit, which has no column
-	Receives    []int // indices into Plan.Factors
-	Carries     []int // indices into Plan.Factors
-	Animals     []int // animals in each instance; nil: not stated
-	Random      bool  // as methods state it for blocks = "auto", or overridden by the protocol
+	Receives    []int    // indices into Plan.Factors
+	Carries     []int    // indices into Plan.Factors
+	Animals     []int    // animals in each instance; nil: not stated
+	Random      bool     // as methods state it for blocks = "auto", or overridden by the protocol
 	Interacts   bool
 }
 
@@ -59,8 +59,8 @@ type Factor struct {
 	Unit        int // index of the unit that receives or carries it; -1: none by itself
 	Carried     bool
 	Levels      []string
-	Values      []float64 // nil: qualitative
-	Control     []int     // indices of control levels
+	Values      []float64        // nil: qualitative
+	Control     []int            // indices of control levels
 	Protocol    *protocol.Factor // nil for "treatment"
 }
 
