@@ -266,33 +266,33 @@ type PowerPoint struct {
 
 // Response is the analysis of one response.
 type Response struct {
-	Name          string          `json:"name"`
-	Label         string          `json:"label"`
-	Unit          string          `json:"unit"`
-	Role          string          `json:"role"`
-	Kind          string          `json:"kind"`
-	N             int             `json:"n"`
-	Missing       int             `json:"missing"`
-	Excluded      int             `json:"excluded"`
-	Transform     string          `json:"transform"`
-	Model         *Model          `json:"model"`
-	Strata        []StratumResult `json:"strata"`
-	Anova         []Line          `json:"anova"`
-	Tests         []Test          `json:"tests"`
-	Components    []Component     `json:"components"`
-	GrandMean     Number          `json:"grand_mean"`
-	CVPercent     Number          `json:"cv_percent"`
-	Summary       []Summary       `json:"summary"`
-	Covariates    []Covariate     `json:"covariates"`
-	Means         []Mean          `json:"means"`
-	SED           []SED           `json:"sed"`
-	Comparisons   []Comparison    `json:"comparisons"`
-	Contrasts     []Contrast      `json:"contrasts"`
-	Diagnostics   []Diagnostic    `json:"diagnostics"`
-	Residuals     []Residual      `json:"residuals"`
-	Efficiency    []Efficiency    `json:"efficiency"`
-	Planned       bool            `json:"planned"`
-	Notes         []Note          `json:"notes"`
+	Name        string          `json:"name"`
+	Label       string          `json:"label"`
+	Unit        string          `json:"unit"`
+	Role        string          `json:"role"`
+	Kind        string          `json:"kind"`
+	N           int             `json:"n"`
+	Missing     int             `json:"missing"`
+	Excluded    int             `json:"excluded"`
+	Transform   string          `json:"transform"`
+	Model       *Model          `json:"model"`
+	Strata      []StratumResult `json:"strata"`
+	Anova       []Line          `json:"anova"`
+	Tests       []Test          `json:"tests"`
+	Components  []Component     `json:"components"`
+	GrandMean   Number          `json:"grand_mean"`
+	CVPercent   Number          `json:"cv_percent"`
+	Summary     []Summary       `json:"summary"`
+	Covariates  []Covariate     `json:"covariates"`
+	Means       []Mean          `json:"means"`
+	SED         []SED           `json:"sed"`
+	Comparisons []Comparison    `json:"comparisons"`
+	Contrasts   []Contrast      `json:"contrasts"`
+	Diagnostics []Diagnostic    `json:"diagnostics"`
+	Residuals   []Residual      `json:"residuals"`
+	Efficiency  []Efficiency    `json:"efficiency"`
+	Planned     bool            `json:"planned"`
+	Notes       []Note          `json:"notes"`
 }
 
 // Model says how a response was analysed. Method is strata or least squares.
