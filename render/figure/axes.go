@@ -1,0 +1,263 @@
+package figure
+
+import (
+	"math"
+	"strconv"
+	"strings"
+
+	"gonum.org/v1/plot"
+	"gonum.org/v1/plot/font"
+	"gonum.org/v1/plot/text"
+	"gonum.org/v1/plot/vg"
+	"gonum.org/v1/plot/vg/draw"
+
+	"penwright/analysis/num"
+	"penwright/render/doc"
+)
+
+// axis is one axis of a frame.
+type axis struct {
+	title string
+	span
+	ticks []plot.Tick
+	grid  bool
+	bare  bool // names instead of numbers: no tick marks
+}
+
+// frame is a pair of axes with the ground between them.
+type frame struct {
+	*canvas
+	x0, x1, y0, y1 float64 // the ground: left, right, top, bottom
+	h, v           axis
+}
+
+// insets are kept free beside the axes.
+type insets struct{ top, right float64 }
+
+// newFrame draws two axes into the picture, with their grid.
+func newFrame(c *canvas, h, v axis, in insets) *frame {
+	p := plot.New()
+	p.BackgroundColor = nil
+	label := text.Style{Color: paint(ink), Font: font.Font{Size: textSize}, Handler: handler{}}
+	title := label
+	title.Font.Size = titleSize
+	title.XAlign, title.YAlign = text.XCenter, text.YBottom
+	edge := draw.LineStyle{Color: paint(ink), Width: thin}
+	for _, a := range []struct {
+		to     *plot.Axis
+		from   axis
+		xalign text.XAlignment
+		yalign text.YAlignment
+	}{{&p.X, h, text.XCenter, text.YTop}, {&p.Y, v, text.XRight, text.YCenter}} {
+		a.to.Min, a.to.Max = a.from.lo, a.from.hi
+		a.to.Label.Text = a.from.title
+		a.to.Label.TextStyle = title
+		a.to.Label.Padding = 4
+		a.to.LineStyle = edge
+		a.to.Padding = 4
+		a.to.Tick.Label = label
+		a.to.Tick.Label.XAlign, a.to.Tick.Label.YAlign = a.xalign, a.yalign
+		a.to.Tick.LineStyle = edge
+		a.to.Tick.Length = 3
+		if a.from.bare {
+			a.to.Tick.LineStyle.Width = 0
+		}
+		a.to.Tick.Marker = plot.ConstantTicks(a.from.ticks)
+	}
+	p.TextHandler, p.Title.TextStyle.Handler = handler{}, handler{}
+
+	// Labels of the ends reach beyond the ground by half of themselves.
+	over := 1.0
+	if n := len(h.ticks); n > 0 {
+		over += p.X.Tick.Label.Width(h.ticks[n-1].Label).Points() / 2
+	}
+	area := draw.Crop(draw.New(c), 1, vg.Length(-max(in.right, min(over, c.pic.Width/4))), 1, vg.Length(-max(in.top, 5)))
+	f := &frame{canvas: c, h: h, v: v}
+	ground := p.DataCanvas(area)
+	f.x0, f.x1 = ground.Min.X.Points(), ground.Max.X.Points()
+	f.y0, f.y1 = c.pic.Height-ground.Max.Y.Points(), c.pic.Height-ground.Min.Y.Points()
+	rule := line{width: 0.4, colour: faint}
+	if v.grid {
+		for _, t := range v.ticks {
+			c.stroke(rule, segment(f.x0, f.y(t.Value), f.x1, f.y(t.Value))...)
+		}
+	}
+	if h.grid {
+		for _, t := range h.ticks {
+			c.stroke(rule, segment(f.x(t.Value), f.y0, f.x(t.Value), f.y1)...)
+		}
+	}
+	p.Draw(area)
+	return f
+}
+
+func (f *frame) x(v float64) float64 { return f.x0 + (v-f.h.lo)/(f.h.hi-f.h.lo)*(f.x1-f.x0) }
+func (f *frame) y(v float64) float64 { return f.y1 - (v-f.v.lo)/(f.v.hi-f.v.lo)*(f.y1-f.y0) }
+
+// numbers makes an axis of numbers over a range, with about one tick in every apart
+// points of a length. Very large and very small numbers have a power of ten taken out
+// into the title.
+func numbers(title string, s span, length, apart float64) axis {
+	a := axis{title: clean(title), span: s, grid: true}
+	step := niceStep((s.hi - s.lo) / max(length/apart, 2))
+	power := 0
+	if m := max(math.Abs(s.lo), math.Abs(s.hi)); m >= 1e6 || m < 1e-3 {
+		power = int(math.Floor(math.Log10(m) + 1e-12))
+		a.title = strings.TrimSpace(a.title + " (×10" + raised(power) + ")")
+	}
+	for _, v := range steps(s, step) {
+		a.ticks = append(a.ticks, plot.Tick{Value: v, Label: num.Fixed(scaled(v, -power), decimals(scaled(step, -power)))})
+	}
+	return a
+}
+
+func scaled(v float64, power int) float64 {
+	if power < -300 { // 10^-power itself would not be finite
+		return v * math.Pow(10, 300) * math.Pow(10, float64(power+300))
+	}
+	if power > 0 {
+		return v * math.Pow(10, float64(power))
+	}
+	return v / math.Pow(10, float64(-power))
+}
+
+// steps lists the multiples of a step within a range.
+func steps(s span, step float64) []float64 {
+	first, last := math.Ceil(s.lo/step-1e-9), math.Floor(s.hi/step+1e-9)
+	if !(last-first < 100) {
+		return nil
+	}
+	var out []float64
+	for i := 0.0; first+i <= last; i++ {
+		v := (first + i) * step
+		if v == 0 {
+			v = 0 // not -0
+		}
+		out = append(out, min(max(v, s.lo), s.hi))
+	}
+	return out
+}
+
+// niceStep is the least of 1, 2, 5 times a power of ten that is not below v.
+func niceStep(v float64) float64 {
+	if !(v > 0) || math.IsInf(v, 0) {
+		return 1
+	}
+	e := math.Floor(math.Log10(v))
+	ten := math.Pow(10, e)
+	for _, m := range []float64{1, 2, 5, 10} {
+		if m*ten >= v*(1-1e-9) {
+			return m * ten
+		}
+	}
+	return 10 * ten
+}
+
+// decimals is how many decimals tell multiples of a step apart.
+func decimals(step float64) int {
+	if !(step > 0) {
+		return 0
+	}
+	return min(max(int(math.Ceil(-math.Log10(step)-1e-9)), 0), 12)
+}
+
+// rounded prints a number to four significant digits, for the picture in words.
+func rounded(v float64) string {
+	if !drawable(v) {
+		return "none"
+	}
+	a := math.Abs(v)
+	if a != 0 && (a >= 1e7 || a < 1e-4) {
+		m, e, _ := strings.Cut(strconv.FormatFloat(v, 'e', 3, 64), "e")
+		n, _ := strconv.Atoi(e)
+		return strings.Replace(m, "-", "−", 1) + " × 10" + raised(n)
+	}
+	r, _ := strconv.ParseFloat(strconv.FormatFloat(v, 'g', 4, 64), 64)
+	return strings.Replace(strconv.FormatFloat(r, 'f', -1, 64), "-", "−", 1)
+}
+
+// raised is an integer in superscript digits.
+func raised(n int) string {
+	const digits = "⁰¹²³⁴⁵⁶⁷⁸⁹"
+	var b strings.Builder
+	for _, r := range strconv.Itoa(n) {
+		if r == '-' {
+			b.WriteRune('⁻')
+			continue
+		}
+		b.WriteRune([]rune(digits)[r-'0'])
+	}
+	return b.String()
+}
+
+// box is a rectangle of the picture.
+type box struct{ x0, y0, x1, y1 float64 }
+
+func (b box) meets(o box) bool { return b.x0 < o.x1 && o.x0 < b.x1 && b.y0 < o.y1 && o.y0 < b.y1 }
+
+// lineBox is the box of a line of text with its baseline at y.
+func lineBox(x, y float64, a anchor, s string, size float64) box {
+	w := width(s, size, false)
+	x -= float64(a) * w
+	return box{x0: x, y0: y - ascent*size, x1: x + w, y1: y + descent*size}
+}
+
+// spread moves ordinates apart so that neighbours keep a distance and all stay within
+// [lo, hi], as near to where they were as that allows. The order of equal ones is that
+// given. It returns nil when there is no room.
+func spread(at []float64, apart, lo, hi float64) []float64 {
+	n := len(at)
+	if n == 0 || float64(n-1)*apart > hi-lo+1e-9 {
+		return nil
+	}
+	order := byValue(at)
+	out := make([]float64, n)
+	// Groups of touching labels are centred on the mean of where they want to be.
+	type group struct {
+		first, n int
+		sum      float64 // of wanted ordinates less the offset within the group
+	}
+	var groups []group
+	place := func(g group) float64 {
+		return min(max(g.sum/float64(g.n), lo), hi-float64(g.n-1)*apart)
+	}
+	for i, k := range order {
+		g := group{first: i, n: 1, sum: at[k]}
+		for len(groups) > 0 {
+			prev := groups[len(groups)-1]
+			if place(prev)+float64(prev.n)*apart <= place(g)+1e-12 {
+				break
+			}
+			g = group{first: prev.first, n: prev.n + g.n, sum: prev.sum + g.sum - float64(prev.n*g.n)*apart}
+			groups = groups[:len(groups)-1]
+		}
+		groups = append(groups, g)
+	}
+	for _, g := range groups {
+		y := place(g)
+		for j := range g.n {
+			out[order[g.first+j]] = y + float64(j)*apart
+		}
+	}
+	return out
+}
+
+// band fills between two curves over the same abscissae.
+func (f *frame) band(xs, lo, hi []float64, colour doc.Colour) {
+	var ring [][2]float64
+	for i := range xs {
+		if drawable(xs[i]) && drawable(lo[i]) && drawable(hi[i]) {
+			ring = append(ring, [2]float64{f.x(xs[i]), f.clampY(hi[i])})
+		}
+	}
+	for i := len(xs) - 1; i >= 0; i-- {
+		if drawable(xs[i]) && drawable(lo[i]) && drawable(hi[i]) {
+			ring = append(ring, [2]float64{f.x(xs[i]), f.clampY(lo[i])})
+		}
+	}
+	if len(ring) >= 4 {
+		f.fill(colour, polyline(true, ring...)...)
+	}
+}
+
+func (f *frame) clampY(v float64) float64 { return min(max(f.y(v), f.y0), f.y1) }

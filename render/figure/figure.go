@@ -1,0 +1,122 @@
+// Package figure draws the pictures of a report: the layout map, points by treatment,
+// means, interactions, residuals, the flow of units. It knows no statistics: values
+// come computed, names and letters come as finished text, and each figure gives back
+// the recorded picture with the same in words.
+//
+// All figures share one look. Lengths are points. Marks are told apart by shape and
+// dash as well as by colour, and every colour keeps a contrast of 3:1 to white and to
+// a dark page, so that a figure survives grey printing and a dark screen.
+package figure
+
+import (
+	"math"
+	"strings"
+
+	"penwright/render/doc"
+	"penwright/render/face"
+)
+
+// Size is the size of a picture in points. A zero Width is that of a text column; a
+// zero Height is chosen by the figure from what it has to show.
+type Size struct{ Width, Height float64 }
+
+const (
+	columnWidth = 454 // 160 mm
+	pageHeight  = 640 // the most a figure takes by itself, leaving room for its caption
+	smallest    = 72  // nothing can be drawn below this
+	huge        = 1e4 // nor above this
+
+	textSize  = 8.0
+	titleSize = 8.5
+	noteSize  = 7.0
+	tinySize  = 5.5 // in the cells of a map
+
+	thin   = 0.5
+	medium = 1.0
+
+	// maxPoints is how many points are drawn one by one; above it a density stands
+	// for them.
+	maxPoints = 5000
+
+	// limit is the largest magnitude drawn; it keeps differences finite.
+	limit = 1e300
+)
+
+func (s Size) resolve(height float64) (w, h float64) {
+	w, h = s.Width, s.Height
+	if !(w > 0) {
+		w = columnWidth
+	}
+	if !(h > 0) {
+		h = height
+	}
+	return min(max(w, smallest), huge), min(max(h, smallest), huge)
+}
+
+// drawable says whether a value can be placed on an axis.
+func drawable(v float64) bool { return math.Abs(v) <= limit }
+
+// span is the range of what is drawn.
+type span struct{ lo, hi float64 }
+
+func empty() span { return span{lo: math.Inf(1), hi: math.Inf(-1)} }
+
+func (s *span) add(vs ...float64) {
+	for _, v := range vs {
+		if drawable(v) {
+			s.lo, s.hi = min(s.lo, v), max(s.hi, v)
+		}
+	}
+}
+
+func (s span) empty() bool { return s.lo > s.hi }
+
+// padded widens a range by a share of itself on both sides, and gives one to a range
+// that has no extent, or one too small beside its magnitude to be told apart.
+func (s span) padded(share float64) span {
+	if s.empty() {
+		return span{lo: 0, hi: 1}
+	}
+	size := max(math.Abs(s.lo), math.Abs(s.hi))
+	if least := max(size*1e-9, 1e-290); s.hi-s.lo < least {
+		half := size * 0.05
+		if size < 1e-280 {
+			half = 1
+		}
+		return span{lo: s.lo - half, hi: s.hi + half}
+	}
+	d := (s.hi - s.lo) * share
+	return span{lo: s.lo - d, hi: s.hi + d}
+}
+
+// note is what is drawn where there is nothing to draw.
+func note(s Size, text string) *doc.Picture {
+	w, h := s.resolve(smallest)
+	c := newCanvas(w, h)
+	st := style{size: textSize, colour: ink}
+	c.text(w/2, h/2+capHeight(textSize)/2, center, st, fit(text, w-12, textSize, false))
+	return c.pic
+}
+
+// clean makes text of any source fit for one line of bounded length.
+func clean(s string) string {
+	const most = 300
+	if len(s) > 8*most {
+		s = s[:8*most]
+	}
+	s, _ = face.Clean(s)
+	s = strings.Join(words(s), " ")
+	n := 0
+	for i := range s {
+		if n == most {
+			return s[:i] + "…"
+		}
+		n++
+	}
+	return s
+}
+
+// words splits at plain spaces only: thin and fixed ones hold a number to its unit.
+func words(s string) []string {
+	return strings.FieldsFunc(s, func(r rune) bool { return r == ' ' })
+}

@@ -1,0 +1,232 @@
+package figure
+
+import (
+	"fmt"
+	"strings"
+
+	"gonum.org/v1/plot"
+
+	"penwright/render/doc"
+)
+
+// Interaction shows the means of one factor over the levels of another, a line for each
+// level of the first.
+type Interaction struct {
+	Size
+	Response string
+	By       string    // the factor along the axis
+	Levels   []string  // its levels
+	X        []float64 // its doses; nil: the levels stand evenly
+	Over     string    // the factor of the lines
+	Lines    []Line
+	// Bar is the length of one bar drawn in a corner, such as a standard error of a
+	// difference; 0: none. BarLabel says what it is.
+	Bar      float64
+	BarLabel string
+}
+
+// Line is the means of one level over those of the other factor, NaN where there is none.
+type Line struct {
+	Label  string
+	Values []float64
+}
+
+// Draw gives the picture, and the same in words.
+func (n Interaction) Draw() (*doc.Picture, string) {
+	alt := n.words()
+	values, xs := empty(), empty()
+	labels := 0.0
+	scale := len(n.X) == len(n.Levels) && len(n.X) > 0
+	place := func(i int) float64 {
+		if scale {
+			return n.X[i]
+		}
+		return float64(i)
+	}
+	for _, l := range n.Lines {
+		labels = max(labels, width(clean(l.Label), textSize, false))
+		for i, v := range l.Values {
+			if i < len(n.Levels) && drawable(v) && drawable(place(i)) {
+				values.add(v)
+				xs.add(place(i))
+			}
+		}
+	}
+	if values.empty() {
+		return note(n.Size, "No means to draw."), alt
+	}
+	w, h := n.resolve(min(max(250, float64(len(n.Lines))*textSize*leading+60), pageHeight))
+	end := min(labels, w*0.28) + 24
+	bar := drawable(n.Bar) && n.Bar > 0
+	if bar {
+		// A bar that is longer than all the data are wide needs room of its own.
+		mid := values.lo/2 + values.hi/2
+		values.add(mid-n.Bar/2, mid+n.Bar/2)
+	}
+	c := newCanvas(w, h)
+	room := w - 52 - end
+	var x axis
+	if scale {
+		var ms []Mean
+		for i, l := range n.Levels {
+			ms = append(ms, Mean{Label: l, X: n.X[i]})
+		}
+		x = doseAxis(n.By, ms, xs.padded(0.04), room)
+		x.grid = false
+	} else {
+		x = axis{title: clean(n.By), span: span{lo: -0.4, hi: float64(len(n.Levels)) - 0.6}, bare: true}
+		pitch := room / float64(len(n.Levels))
+		wrapped := make([]string, len(n.Levels))
+		every := 1
+		for i, l := range n.Levels {
+			lines, whole := wrap(l, pitch-4, textSize, 3)
+			if !whole {
+				// Names that have no room in their own place are set less densely.
+				most := min(width(clean(l), textSize, false), 90)
+				every = max(every, int((most+4)/pitch)+1)
+			}
+			wrapped[i] = strings.Join(lines, "\n")
+		}
+		for i := 0; i < len(n.Levels); i += every {
+			label := wrapped[i]
+			if every > 1 {
+				label = fit(n.Levels[i], pitch*float64(every)-4, textSize, false)
+			}
+			x.ticks = append(x.ticks, plot.Tick{Value: float64(i), Label: label})
+		}
+	}
+	top := 5.0
+	if bar {
+		top = 8
+	}
+	y := numbers(n.Response, values.padded(0.07), h-45, 34)
+	x.title, y.title = fit(x.title, room, titleSize, false), fit(y.title, h-10, titleSize, false)
+	f := newFrame(c, x, y, insets{right: end, top: top})
+
+	var ends []float64
+	var which []int
+	from := make([][2]float64, len(n.Lines))
+	for k, l := range n.Lines {
+		var ordered []float64
+		var at []int
+		for i := range min(len(l.Values), len(n.Levels)) {
+			if drawable(l.Values[i]) && drawable(place(i)) {
+				ordered = append(ordered, place(i))
+				at = append(at, i)
+			}
+		}
+		var px, py []float64
+		for _, i := range byValue(ordered) {
+			px = append(px, place(at[i]))
+			py = append(py, l.Values[at[i]])
+		}
+		if len(px) == 0 {
+			continue
+		}
+		f.mark(l.Label)
+		f.curve(px, py, line{width: 1.2, dashes: dash(k), colour: hue(k)})
+		for i := range px {
+			f.marker(form(k), f.x(px[i]), f.y(py[i]), 2.6, hue(k))
+		}
+		last := len(px) - 1
+		from[k] = [2]float64{f.x(px[last]), f.y(py[last])}
+		ends, which = append(ends, from[k][1]), append(which, k)
+	}
+	ys := spread(ends, textSize*leading, f.y0+textSize/2, f.y1-textSize/2)
+	st := style{size: textSize, colour: ink}
+	for i, at := range ys {
+		k := which[i]
+		f.mark(n.Lines[k].Label)
+		f.leader(from[k][0]+5, ends[i], f.x1+4, at)
+		f.marker(form(k), f.x1+9, at, 2.3, hue(k))
+		f.text(f.x1+15, at+capHeight(st.size)/2, left, st, fit(n.Lines[k].Label, f.pic.Width-f.x1-16, st.size, false))
+	}
+	f.mark("")
+	if bar {
+		f.bar(n.Bar, fit(n.BarLabel, room*0.6, noteSize, false), n.crowd(f, place))
+	}
+	return c.pic, alt
+}
+
+// crowd lists the places of all means.
+func (n Interaction) crowd(f *frame, place func(int) float64) [][2]float64 {
+	var out [][2]float64
+	for _, l := range n.Lines {
+		for i := range min(len(l.Values), len(n.Levels)) {
+			if drawable(l.Values[i]) && drawable(place(i)) {
+				out = append(out, [2]float64{f.x(place(i)), f.y(l.Values[i])})
+			}
+		}
+	}
+	return out
+}
+
+// bar draws a bar of a length on the axis of values in whichever upper or lower corner
+// is emptiest.
+func (f *frame) bar(length float64, label string, crowd [][2]float64) {
+	tall := length / (f.v.hi - f.v.lo) * (f.y1 - f.y0)
+	wide := 12 + width(label, noteSize, false)
+	deep := max(tall, noteSize*leading)
+	var best box
+	least := -1
+	for _, corner := range [][2]bool{{false, false}, {true, false}, {false, true}, {true, true}} {
+		b := box{x0: f.x0 + 4, y0: f.y0 + 2}
+		if corner[0] {
+			b.x0 = f.x1 - wide - 4
+		}
+		if corner[1] {
+			b.y0 = f.y1 - deep - 2
+		}
+		b.x1, b.y1 = b.x0+wide, b.y0+deep
+		n := 0
+		for _, p := range crowd {
+			if p[0] > b.x0-6 && p[0] < b.x1+6 && p[1] > b.y0-6 && p[1] < b.y1+6 {
+				n++
+			}
+		}
+		if least < 0 || n < least {
+			least, best = n, b
+		}
+	}
+	x, mid := best.x0+4, (best.y0+best.y1)/2
+	path := segment(x, mid-tall/2, x, mid+tall/2)
+	path = append(path, segment(x-3, mid-tall/2, x+3, mid-tall/2)...)
+	path = append(path, segment(x-3, mid+tall/2, x+3, mid+tall/2)...)
+	f.stroke(line{width: medium, colour: ink}, path...)
+	f.text(x+7, mid+capHeight(noteSize)/2, left, style{size: noteSize, colour: ink}, label)
+}
+
+func (n Interaction) words() string {
+	var b strings.Builder
+	s := empty()
+	for _, l := range n.Lines {
+		for i, v := range l.Values {
+			if i < len(n.Levels) {
+				s.add(v)
+			}
+		}
+	}
+	fmt.Fprintf(&b, "%s: means over %s", title(n.Response, "Values"), title(n.By, "the first factor"))
+	b.WriteString(listed(n.Levels, func(l string) string { return l }))
+	fmt.Fprintf(&b, ", one line for each of %s of %s", count(len(n.Lines), "level"), title(n.Over, "the other factor"))
+	b.WriteString(listed(n.Lines, func(l Line) string { return l.Label }))
+	if !s.empty() {
+		fmt.Fprintf(&b, ", from %s to %s", rounded(s.lo), rounded(s.hi))
+	}
+	b.WriteString(".")
+	if len(n.Lines)*len(n.Levels) <= 2*listMost {
+		for _, l := range n.Lines {
+			var vs []string
+			for i, v := range l.Values {
+				if i < len(n.Levels) {
+					vs = append(vs, rounded(v))
+				}
+			}
+			fmt.Fprintf(&b, " %s: %s.", clean(l.Label), strings.Join(vs, ", "))
+		}
+	}
+	if drawable(n.Bar) && n.Bar > 0 {
+		fmt.Fprintf(&b, " The single bar is %s, %s.", title(n.BarLabel, "a standard error"), rounded(n.Bar))
+	}
+	return b.String()
+}

@@ -1,0 +1,315 @@
+package figure
+
+import (
+	"fmt"
+	"math"
+	"strings"
+
+	"gonum.org/v1/plot"
+
+	"penwright/render/doc"
+)
+
+// Means shows treatment means with their intervals and letters. With a Dose the axis is
+// the scale of the doses, and a fitted trend may go with it.
+type Means struct {
+	Size
+	Response string
+	By       string
+	Interval string // what the bars are, in words: "95 % confidence intervals"
+	Means    []Mean
+	Dose     bool // X of each mean is its place
+	Trend    Trend
+}
+
+// Mean is a mean with its interval; Low and High are NaN where there is none.
+type Mean struct {
+	Label            string
+	X                float64
+	Value, Low, High float64
+	Letters          string
+}
+
+// Trend is a fitted curve over the doses: points from low to high X, with the limits of
+// a band, or NaN.
+type Trend struct {
+	Label  string
+	Points []TrendPoint
+}
+
+// TrendPoint is one point of a fitted curve.
+type TrendPoint struct{ X, Y, Low, High float64 }
+
+// Draw gives the picture, and the same in words.
+func (m Means) Draw() (*doc.Picture, string) {
+	alt := m.words()
+	values, doses := empty(), empty()
+	var names []string
+	letters := 0.0
+	for _, q := range m.Means {
+		values.add(q.Value, q.Low, q.High)
+		names = append(names, q.Label)
+		letters = max(letters, width(clean(q.Letters), textSize, false))
+		if drawable(q.Value) {
+			doses.add(q.X)
+		}
+	}
+	if values.empty() || m.Dose && doses.empty() {
+		return note(m.Size, "No means to draw."), alt
+	}
+	if m.Dose {
+		return m.doses(values, doses), alt
+	}
+	g := newGroups(m.Size, names, m.By, m.Response, values.padded(0.08), m.end(names, letters))
+	for i, q := range m.Means {
+		if !drawable(q.Value) {
+			continue
+		}
+		g.mark(q.Label)
+		g.interval(i, q, 0)
+		x, y := g.at(i, q.Value, 0)
+		g.marker(disc, x, y, 2.8, palette[0])
+	}
+	// Letters stand in a column at the right when the groups lie, else above the bars.
+	g.mark("")
+	var taken []box
+	for i, q := range m.Means {
+		s := fit(q.Letters, 90, textSize, false)
+		if s == "" || !drawable(q.Value) {
+			continue
+		}
+		st := style{size: min(textSize, g.pitch*0.85), colour: ink}
+		if g.lying {
+			if st.size < tinySize {
+				continue
+			}
+			_, y := g.at(i, q.Value, 0)
+			g.text(g.x1+6, y+capHeight(st.size)/2, left, st, s)
+			continue
+		}
+		st.size = textSize
+		top := q.Value
+		if drawable(q.High) {
+			top = max(top, q.High)
+		}
+		x, y := g.at(i, top, 0)
+		taken = g.above(taken, x, y-5, st, s)
+	}
+	return g.pic, alt
+}
+
+// end is the room for letters at the right, needed when the groups lie.
+func (m Means) end(names []string, letters float64) float64 {
+	w, _ := m.resolve(240)
+	n := float64(max(len(names), 1))
+	pitch := (w - 52) / n
+	for _, name := range names {
+		if _, whole := wrap(name, pitch-5, textSize, 3); !whole {
+			return min(letters, 90) + 8
+		}
+	}
+	if letters > pitch-2 {
+		return min(letters, 90) + 8
+	}
+	return 0
+}
+
+// above sets text centred over a place, higher where another is in the way.
+func (f *frame) above(taken []box, x, y float64, st style, s string) []box {
+	w := width(s, st.size, false)
+	x = min(max(x, f.x0+w/2-4), f.pic.Width-w/2-1)
+	for range 20 {
+		b := lineBox(x, y, center, s, st.size)
+		free := true
+		for _, t := range taken {
+			if b.meets(t) {
+				free = false
+				y = t.y0 - descent*st.size - 0.01
+			}
+		}
+		if free {
+			break
+		}
+	}
+	b := lineBox(x, y, center, s, st.size)
+	if b.y0 < 0 {
+		return taken
+	}
+	for _, t := range taken {
+		if b.meets(t) {
+			return taken
+		}
+	}
+	f.text(x, y, center, st, s)
+	return append(taken, b)
+}
+
+// interval draws the bar of an interval with its caps.
+func (g *groups) interval(i int, q Mean, off float64) {
+	if !drawable(q.Low) || !drawable(q.High) {
+		return
+	}
+	l := line{width: medium, colour: ink}
+	x0, y0 := g.at(i, q.Low, off)
+	x1, y1 := g.at(i, q.High, off)
+	cap := min(3, g.pitch*0.2)
+	path := segment(x0, y0, x1, y1)
+	if g.lying {
+		path = append(path, segment(x0, y0-cap, x0, y0+cap)...)
+		path = append(path, segment(x1, y1-cap, x1, y1+cap)...)
+	} else {
+		path = append(path, segment(x0-cap, y0, x0+cap, y0)...)
+		path = append(path, segment(x1-cap, y1, x1+cap, y1)...)
+	}
+	g.stroke(l, path...)
+}
+
+// doses draws the means over a scale.
+func (m Means) doses(values, doses span) *doc.Picture {
+	for _, t := range m.Trend.Points {
+		if drawable(t.X) {
+			values.add(t.Y, t.Low, t.High)
+			doses.add(t.X)
+		}
+	}
+	w, h := m.resolve(250)
+	c := newCanvas(w, h)
+	x := doseAxis(m.By, m.Means, doses.padded(0.05), w-60)
+	y := numbers(m.Response, values.padded(0.08), h-45, 34)
+	x.title, y.title = fit(x.title, w-60, titleSize, false), fit(y.title, h-10, titleSize, false)
+	x.grid = false
+	f := newFrame(c, x, y, insets{right: 6})
+	var xs, ys, lo, hi []float64
+	for _, t := range m.Trend.Points {
+		xs, ys, lo, hi = append(xs, t.X), append(ys, t.Y), append(lo, t.Low), append(hi, t.High)
+	}
+	if len(xs) > 0 {
+		f.mark(title(m.Trend.Label, "fitted curve"))
+		f.band(xs, lo, hi, tint(palette[0], 0.2))
+		f.curve(xs, ys, line{width: 1.4, colour: palette[0]})
+	}
+	l := line{width: medium, colour: ink}
+	for _, q := range m.Means {
+		if !drawable(q.Value) || !drawable(q.X) {
+			continue
+		}
+		f.mark(q.Label)
+		px := f.x(q.X)
+		if drawable(q.Low) && drawable(q.High) {
+			path := segment(px, f.y(q.Low), px, f.y(q.High))
+			path = append(path, segment(px-3, f.y(q.Low), px+3, f.y(q.Low))...)
+			path = append(path, segment(px-3, f.y(q.High), px+3, f.y(q.High))...)
+			f.stroke(l, path...)
+		}
+		f.marker(disc, px, f.y(q.Value), 2.8, ink)
+	}
+	f.mark("")
+	var taken []box
+	for _, q := range m.Means {
+		s := fit(q.Letters, 90, textSize, false)
+		if s == "" || !drawable(q.Value) || !drawable(q.X) {
+			continue
+		}
+		top := q.Value
+		if drawable(q.High) {
+			top = max(top, q.High)
+		}
+		taken = f.above(taken, f.x(q.X), f.y(top)-5, style{size: textSize, colour: ink}, s)
+	}
+	return c.pic
+}
+
+// curve draws a line through points, left out where one is not finite and cut at the
+// ground's edge.
+func (f *frame) curve(xs, ys []float64, l line) {
+	var path []doc.Segment
+	down := false
+	for i := range xs {
+		if !drawable(xs[i]) || !drawable(ys[i]) {
+			down = false
+			continue
+		}
+		x, y := f.x(xs[i]), f.clampY(ys[i])
+		if down {
+			path = append(path, lineTo(x, y))
+		} else {
+			path = append(path, moveTo(x, y))
+		}
+		down = true
+	}
+	f.stroke(l, path...)
+}
+
+// doseAxis has its ticks at the doses where they have room, else at round numbers.
+func doseAxis(by string, means []Mean, s span, length float64) axis {
+	type dose struct {
+		x     float64
+		label string
+	}
+	var ds []dose
+	for _, q := range means {
+		if drawable(q.X) && drawable(q.Value) {
+			ds = append(ds, dose{x: q.X, label: fit(q.Label, 80, textSize, false)})
+		}
+	}
+	xs := make([]float64, len(ds))
+	for i, d := range ds {
+		xs[i] = d.x
+	}
+	a := axis{title: clean(by), span: s}
+	last := math.Inf(-1)
+	for n, i := range byValue(xs) {
+		if n > 0 && len(a.ticks) > 0 && a.ticks[len(a.ticks)-1].Value == xs[i] {
+			continue
+		}
+		at := (xs[i] - s.lo) / (s.hi - s.lo) * length
+		half := width(ds[i].label, textSize, false) / 2
+		if at-half < last+4 {
+			return numbers(by, s, length, 60)
+		}
+		last = at + half
+		a.ticks = append(a.ticks, plot.Tick{Value: xs[i], Label: ds[i].label})
+	}
+	return a
+}
+
+func (m Means) words() string {
+	var b strings.Builder
+	n := 0
+	var each []string
+	for _, q := range m.Means {
+		if !drawable(q.Value) {
+			continue
+		}
+		n++
+		s := clean(q.Label) + " " + rounded(q.Value)
+		if drawable(q.Low) && drawable(q.High) {
+			s += " (" + rounded(q.Low) + " to " + rounded(q.High) + ")"
+		}
+		if q.Letters != "" {
+			s += " " + clean(q.Letters)
+		}
+		each = append(each, s)
+	}
+	fmt.Fprintf(&b, "%s: %s by %s", title(m.Response, "Values"), count(n, "mean"), title(m.By, "treatment"))
+	if m.Interval != "" {
+		fmt.Fprintf(&b, ", with %s", clean(m.Interval))
+	}
+	if n > 0 && n <= 2*listMost {
+		fmt.Fprintf(&b, ": %s", strings.Join(each, "; "))
+	} else if n > 0 {
+		s := empty()
+		for _, q := range m.Means {
+			s.add(q.Value)
+		}
+		fmt.Fprintf(&b, ", from %s to %s", rounded(s.lo), rounded(s.hi))
+	}
+	b.WriteString(".")
+	if len(m.Trend.Points) > 0 && m.Dose {
+		fmt.Fprintf(&b, " The line is the %s.", title(m.Trend.Label, "fitted curve"))
+	}
+	if lost := len(m.Means) - n; lost > 0 {
+		fmt.Fprintf(&b, " %s without a mean.", count(lost, "treatment"))
+	}
+	return b.String()
+}
