@@ -21,7 +21,14 @@ type Plan struct {
 	Strata   []Stratum // one for each unit, in the protocol's order, coarse before fine
 	Design   Design
 
-	coarse [][][]int32 // coarse[u][v]: instance of u → instance of v; nil unless v is u or coarser
+	// Crossed holds the interactions of units that say interacts = true with the
+	// treatment terms, unit by unit, terms in their order.
+	Crossed []Crossed
+
+	coarse      [][][]int32 // coarse[u][v]: instance of u → instance of v; nil unless v is u or coarser
+	sup         [][]int     // sup[u][v]: the finest unit coarser than both or equal to one; -1: the whole trial
+	allocations []*Allocation
+	separate    []bool // separate[u]: the factors of u are drawn each by itself, main effects only
 }
 
 // Role says what a unit is for.
@@ -71,6 +78,18 @@ type Term struct {
 	Unit    int    // its experimental unit
 	Stratum int    // index into Plan.Strata: where it is tested when the draw is balanced; -1 when it cannot lie in one
 	DF      int
+	Over    int // index into Plan.Crossed of the interaction with a random unit it is tested over; -1: the residual
+	ErrorDF int // degrees of freedom of what it is tested over, in the stratum of Unit
+}
+
+// Crossed is the interaction of a unit with a treatment term, such as site:yeast.
+type Crossed struct {
+	Name    string // unit and term joined with a colon
+	Unit    int    // the unit that interacts
+	Term    int    // index into Plan.Terms
+	Stratum int    // index into Plan.Strata
+	DF      int
+	Random  bool // the term is tested over it; else both over the residual
 }
 
 // Stratum is the space of one unit after all coarser ones.
@@ -78,8 +97,8 @@ type Stratum struct {
 	Unit    int
 	Name    string // the unit's name
 	DF      int
-	Terms   []int // indices into Plan.Terms
-	ErrorDF int   // DF less that of its terms
+	Terms   []int // indices into Plan.Terms of those that lie in it
+	ErrorDF int   // DF less that of everything estimated in it, terms that share it with coarser strata among them
 }
 
 // Design is what the trade calls the layout.
