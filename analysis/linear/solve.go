@@ -18,7 +18,7 @@ func (f *Fit) reduce() {
 	f.norm = make([]float64, p)
 	f.ux = make([]float64, p)
 
-	chunk := max(w, 64)
+	chunk := max(2*w, 256)
 	buf := blas64.General{Rows: w + chunk, Cols: w, Stride: w, Data: make([]float64, (w+chunk)*w)}
 	tau := make([]float64, w)
 	work := make([]float64, 1)
