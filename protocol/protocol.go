@@ -315,6 +315,7 @@ type CarryOver struct {
 type TimeTrend struct {
 	On, Along string
 	Order     int
+	Sequences [][]string // of levels, one for each sequence; nil: none given
 }
 
 // Analysis says what will be done, before the data.

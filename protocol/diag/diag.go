@@ -34,7 +34,13 @@ const (
 	Note
 )
 
-func (s Severity) String() string { return [...]string{"error", "warning", "note"}[s] }
+// String gives the word for s.
+func (s Severity) String() string {
+	if s < Error || s > Note {
+		return "note"
+	}
+	return [...]string{"error", "warning", "note"}[s]
+}
 
 // Related points at a second place that explains a diagnostic.
 type Related struct {
@@ -68,4 +74,9 @@ func (l List) HasErrors() bool {
 		}
 	}
 	return false
+}
+
+// Relate adds a second place to d.
+func (d *Diagnostic) Relate(pos Pos, message string) {
+	d.Related = append(d.Related, Related{Pos: pos, Message: message})
 }

@@ -1,66 +1,71 @@
 package diag
 
-import "unicode/utf8"
+import (
+	"strings"
+	"unicode/utf8"
+)
 
-// Nearest returns the name that word is most likely a misspelling of, or "" if none is
-// near: at most a third of its letters, and no more than three, may be missing, added,
-// wrong or swapped with their neighbour; capitals do not count. Of equally near names the
-// first wins.
+// longestWord is the greatest number of bytes of a word that Nearest looks at; a
+// longer one is no misspelling worth searching for.
+const longestWord = 64
+
+// Nearest returns the word of known that was most probably meant by word: the one
+// at the smallest edit distance, the first of several. The distance counts
+// insertions, deletions, substitutions and exchanges of neighbours, each as one,
+// must be less than 3, and must leave at least half of the word standing; capitals
+// count nothing, and neither do hyphens and spaces in place of underscores. It
+// returns "" if no word is near.
 //
-// The distance is that of F. J. Damerau, Communications of the ACM 7 (1964) 171–176
-// (from memory), restricted to one edit per place.
-func Nearest(word string, names []string) string {
-	const longest = 64 // names beyond this length are data, not spelling
-	if len(word) > longest || !utf8.ValidString(word) {
+// Source: F. J. Damerau, Communications of the ACM 7 (1964) 171–176, for the four
+// kinds of slip; the restricted form, in which a pair is exchanged only once.
+func Nearest(word string, known []string) string {
+	if word == "" || len(word) > longestWord {
 		return ""
 	}
-	a := fold(word)
-	best, near := "", 4
-	for _, name := range names {
-		if len(name) > longest {
+	folded := []rune(fold(word))
+	best, at := "", 3
+	for _, k := range known {
+		if k == "" || len(k) > longestWord {
 			continue
 		}
-		b := fold(name)
-		limit := min(3, (max(len(a), len(b))+2)/3)
-		if d := distance(a, b); d <= limit && d < near && d < max(len(a), len(b)) {
-			best, near = name, d
+		n := utf8.RuneCountInString(k)
+		if n-len(folded) >= at || len(folded)-n >= at {
+			continue
+		}
+		d := distance(folded, []rune(fold(k)))
+		if d < at && 2*d <= max(n, len(folded)) {
+			best, at = k, d
 		}
 	}
 	return best
 }
 
-func fold(s string) []rune {
-	r := []rune(s)
-	for i, c := range r {
-		if 'A' <= c && c <= 'Z' {
-			r[i] = c + 'a' - 'A'
-		}
-	}
-	return r
+// fold maps spellings that are the same word to one.
+func fold(s string) string {
+	return strings.NewReplacer("-", "_", " ", "_").Replace(strings.ToLower(s))
 }
 
+// distance is the number of slips between a and b.
 func distance(a, b []rune) int {
-	// Three rows of the table of distances between prefixes are enough: a swap looks
-	// back two.
-	before := make([]int, len(b)+1)
-	last := make([]int, len(b)+1)
-	row := make([]int, len(b)+1)
-	for j := range last {
-		last[j] = j
+	before := make([]int, len(b)+1) // row i-2
+	row := make([]int, len(b)+1)    // row i-1
+	next := make([]int, len(b)+1)   // row i
+	for j := range row {
+		row[j] = j
 	}
 	for i := 1; i <= len(a); i++ {
-		row[0] = i
+		next[0] = i
 		for j := 1; j <= len(b); j++ {
-			wrong := 1
-			if a[i-1] == b[j-1] {
-				wrong = 0
+			substitute := row[j-1]
+			if a[i-1] != b[j-1] {
+				substitute++
 			}
-			row[j] = min(last[j]+1, row[j-1]+1, last[j-1]+wrong)
+			next[j] = min(substitute, row[j]+1, next[j-1]+1)
 			if i > 1 && j > 1 && a[i-1] == b[j-2] && a[i-2] == b[j-1] {
-				row[j] = min(row[j], before[j-2]+1)
+				next[j] = min(next[j], before[j-2]+1)
 			}
 		}
-		before, last, row = last, row, before
+		before, row, next = row, next, before
 	}
-	return last[len(b)]
+	return row[len(b)]
 }
