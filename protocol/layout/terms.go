@@ -82,9 +82,9 @@ func (b *builder) factors() bool {
 		for i, name := range p.Units[u].Carries {
 			b.give(u, fmt.Sprintf("%s[%d]", unitKey(u, "carries"), i), name, made, true)
 		}
-		if pr := p.Units[u].Random; pr != nil && len(p.Units[u].Receives) > 0 {
+		if pr := p.Units[u].Random; pr != nil && !*pr && len(p.Units[u].Receives) > 0 {
 			b.fail(unitKey(u, "random"), "random-experimental", "leave it out: units that receive a treatment are always random",
-				"unit %q receives a treatment, so random cannot be set", plan.Units[u].Name)
+				"unit %q receives a treatment, so it cannot be fixed", plan.Units[u].Name)
 		}
 		if plan.Units[u].Interacts && len(p.Units[u].Receives)+len(p.Units[u].Carries) > 0 {
 			b.fail(unitKey(u, "interacts"), "interacts-experimental", "interactions of treatments are terms of their own",

@@ -29,14 +29,10 @@ type builder struct {
 	sort []int    // units so that every unit follows the coarser ones
 	up   [][]bool // up[u][v]: v is u or coarser, as said by within and crosses
 	maps int
+	also map[string]bool // names and properties that the design may be called by
 }
 
-func (b *builder) pos(key string) diag.Pos {
-	if at, ok := any(b.p).(interface{ Pos(string) diag.Pos }); ok {
-		return at.Pos(key)
-	}
-	return diag.Pos{File: b.p.File}
-}
+func (b *builder) pos(key string) diag.Pos { return b.p.Pos(key) }
 
 func (b *builder) add(s diag.Severity, key, code, hint, format string, args ...any) {
 	b.list.Add(diag.Diagnostic{
