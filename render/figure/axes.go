@@ -60,7 +60,7 @@ func newFrame(c *canvas, h, v axis, in insets) *frame {
 		a.to.Tick.LineStyle = edge
 		a.to.Tick.Length = 3
 		if a.from.bare {
-			a.to.Tick.LineStyle.Width = 0
+			a.to.Tick.LineStyle.Color = paint{} // keeps their room
 		}
 		a.to.Tick.Marker = plot.ConstantTicks(a.from.ticks)
 	}
@@ -94,21 +94,35 @@ func newFrame(c *canvas, h, v axis, in insets) *frame {
 func (f *frame) x(v float64) float64 { return f.x0 + (v-f.h.lo)/(f.h.hi-f.h.lo)*(f.x1-f.x0) }
 func (f *frame) y(v float64) float64 { return f.y1 - (v-f.v.lo)/(f.v.hi-f.v.lo)*(f.y1-f.y0) }
 
-// numbers makes an axis of numbers over a range, with about one tick in every apart
-// points of a length. Very large and very small numbers have a power of ten taken out
-// into the title.
-func numbers(title string, s span, length, apart float64) axis {
-	a := axis{title: clean(title), span: s, grid: true}
-	step := niceStep((s.hi - s.lo) / max(length/apart, 2))
+// numbers makes an axis of numbers over a range that takes a length across the picture
+// or up it. Very large and very small numbers have a power of ten taken out into the
+// title.
+func numbers(title string, s span, length float64, across bool) axis {
+	a := axis{title: clean(title), span: s, grid: !across}
 	power := 0
 	if m := max(math.Abs(s.lo), math.Abs(s.hi)); m >= 1e6 || m < 1e-3 {
 		power = int(math.Floor(math.Log10(m) + 1e-12))
 		a.title = strings.TrimSpace(a.title + " (×10" + raised(power) + ")")
 	}
-	for _, v := range steps(s, step) {
-		a.ticks = append(a.ticks, plot.Tick{Value: v, Label: num.Fixed(scaled(v, -power), decimals(scaled(step, -power)))})
+	apart := 30.0
+	if across {
+		apart = 50
 	}
-	return a
+	step := niceStep((s.hi - s.lo) / max(length/apart, 2))
+	for {
+		a.ticks = a.ticks[:0]
+		widest := 0.0
+		for _, v := range steps(s, step) {
+			label := num.Fixed(scaled(v, -power), decimals(scaled(step, -power)))
+			widest = max(widest, width(label, textSize, false))
+			a.ticks = append(a.ticks, plot.Tick{Value: v, Label: label})
+		}
+		room := step / (s.hi - s.lo) * length
+		if len(a.ticks) < 2 || across && widest+5 < room || !across && textSize*leading < room {
+			return a
+		}
+		step = niceStep(step * 1.7)
+	}
 }
 
 func scaled(v float64, power int) float64 {
@@ -138,17 +152,19 @@ func steps(s span, step float64) []float64 {
 	return out
 }
 
-// niceStep is the least of 1, 2, 5 times a power of ten that is not below v.
+// niceStep is that of 1, 2, 5 times a power of ten nearest to v by ratio.
 func niceStep(v float64) float64 {
 	if !(v > 0) || math.IsInf(v, 0) {
 		return 1
 	}
-	e := math.Floor(math.Log10(v))
-	ten := math.Pow(10, e)
-	for _, m := range []float64{1, 2, 5, 10} {
-		if m*ten >= v*(1-1e-9) {
-			return m * ten
-		}
+	ten := math.Pow(10, math.Floor(math.Log10(v)))
+	switch m := v / ten; {
+	case m < math.Sqrt2:
+		return ten
+	case m < math.Sqrt(10):
+		return 2 * ten
+	case m < math.Sqrt(50):
+		return 5 * ten
 	}
 	return 10 * ten
 }
@@ -174,6 +190,14 @@ func rounded(v float64) string {
 	}
 	r, _ := strconv.ParseFloat(strconv.FormatFloat(v, 'g', 4, 64), 64)
 	return strings.Replace(strconv.FormatFloat(r, 'f', -1, 64), "-", "−", 1)
+}
+
+// plain prints a multiple of a step without needless decimals.
+func plain(v, step float64) string {
+	if a := math.Abs(v); a >= 1e7 || a < 1e-5 {
+		return rounded(v)
+	}
+	return num.Fixed(v, decimals(step))
 }
 
 // raised is an integer in superscript digits.

@@ -108,7 +108,7 @@ type line struct {
 }
 
 func (c *canvas) stroke(l line, path ...doc.Segment) {
-	if len(path) < 2 || !(l.width > 0) {
+	if len(path) < 2 || !(l.width > 0) || l.colour.A == 0 {
 		return
 	}
 	c.pic.Ops = append(c.pic.Ops, doc.Stroke{Path: tidied(path), Width: l.width, Dashes: l.dashes, Colour: l.colour})

@@ -6,8 +6,12 @@ import (
 	"math"
 	"os"
 	"path/filepath"
+	"strconv"
+	"strings"
 	"testing"
 
+	"penwright/protocol"
+	"penwright/protocol/layout"
 	"penwright/render/doc"
 )
 
@@ -82,6 +86,67 @@ func crossed(levels, lines int) Interaction {
 	return n
 }
 
+// plan makes a plan from a line such as "block 5, pen within block 4"; the last unit
+// receives the treatment, and in three-level nests so does the one above it.
+func plan(units string) *layout.Plan {
+	p := protocol.Protocol{Factors: []protocol.Factor{{Name: "treatment_a"}, {Name: "treatment_b"}}}
+	list := strings.Split(units, ", ")
+	cells := 1
+	for _, s := range list {
+		w := strings.Fields(s)
+		u := protocol.Unit{Name: w[0]}
+		switch {
+		case len(w) > 2 && w[1] == "within":
+			u.Within = w[2]
+			n, _ := strconv.Atoi(w[3])
+			u.Count = []int{n}
+			cells = n
+		case len(w) > 2:
+			u.Crosses = w[2:]
+			cells = 4
+		default:
+			n, _ := strconv.Atoi(w[1])
+			u.Count = []int{n}
+		}
+		p.Units = append(p.Units, u)
+	}
+	last := len(p.Units) - 1
+	p.Factors = p.Factors[1:]
+	for i := range cells {
+		p.Factors[0].Levels = append(p.Factors[0].Levels, fmt.Sprint("t", i+1))
+	}
+	p.Units[last].Receives = []string{"treatment_b"}
+	if strings.Contains(units, "paddock") {
+		p.Factors = append(p.Factors, protocol.Factor{Name: "treatment_a", Levels: []string{"x", "y", "z"}})
+		p.Units[last-1].Receives = []string{"treatment_a"}
+	}
+	got, list2 := layout.New(&p)
+	if list2.HasErrors() {
+		panic(fmt.Sprint("no plan of ", units, ": ", list2))
+	}
+	return got
+}
+
+// planned is the map of a plan with t treatments, moved on by one from block to block.
+func planned(units string, t int) Map {
+	p := plan(units)
+	m := FromPlan(p, func(_, i int) Look {
+		k := (i + i/t) % t
+		if t == 12 {
+			return Look{Label: fmt.Sprintf("%c%d", 'A'+i/4%3, i%4+1), Treatment: i % 12, Value: none}
+		}
+		return Look{Label: fmt.Sprint("T", k+1), Treatment: k, Value: none}
+	})
+	for k := range t {
+		name := fmt.Sprint("T", k+1)
+		if t == 12 {
+			name = fmt.Sprintf("%c%d", 'A'+k/4, k%4+1)
+		}
+		m.Treatments = append(m.Treatments, name)
+	}
+	return m
+}
+
 // gallery holds a picture of each kind as reports show them.
 func gallery() []struct {
 	name string
@@ -110,10 +175,59 @@ func gallery() []struct {
 	}
 	byName := crossed(4, 3)
 	byName.X, byName.Bar = nil, 0
+	blocks := planned("block 5, pen within block 4", 4)
+	blocks.Boxes[1].Cells[2].Excluded = true
+	shaded := planned("block 5, pen within block 4", 4)
+	shaded.Shade = "Residual of daily gain, g"
+	for i := range shaded.Boxes {
+		for k := range shaded.Boxes[i].Cells {
+			shaded.Boxes[i].Cells[k].Value = 24 * noise(60+7*i+k)
+		}
+	}
+	shaded.Boxes[1].Cells[2].Excluded, shaded.Boxes[1].Cells[2].Value = true, none
+	split := FromPlan(plan("block 4, paddock within block 3, pen within paddock 4"), func(u, i int) Look {
+		if u == 1 {
+			return Look{Label: []string{"rotational", "set stocked", "strip grazed"}[(i+i/3)%3], Value: none}
+		}
+		k := (i*3 + i/4) % 4
+		return Look{Label: []string{"none", "barley", "beans", "both"}[k], Treatment: k, Value: none}
+	})
+	split.Treatments = []string{"none", "barley", "beans", "both"}
+	var fitted Fitted
+	fitted.X, fitted.Y, fitted.Zero = "Fitted daily gain, g", "Residual of daily gain, g", true
+	var quantiles Quantiles
+	quantiles.Y, quantiles.Slope, quantiles.Envelope = "Studentized residual", 1, "the middle 95 % of 999 normal samples"
+	for i := range 20 {
+		z := math.Sqrt2 * math.Erfinv(2*(float64(i+1)-0.375)/20.25-1)
+		half := 0.35 + 0.22*z*z
+		unit := fmt.Sprintf("pen %d", (i*7)%20+1)
+		quantiles.Points = append(quantiles.Points, Quantile{
+			Unit: unit, Expected: z, Value: z + 0.2*noise(i) + 0.5*float64(i/19), Low: z - half, High: z + half, Named: i == 19,
+		})
+		fitted.Points = append(fitted.Points, XY{Unit: unit, X: 600 + 130*(noise(i*3)+1)/2, Y: 15 * (z + 0.2*noise(i)), Named: i == 19 || i == 0})
+	}
+	spread := Spread{Response: "aphids per leaf", Intercept: -0.1, Slope: 0.86}
+	for i := range 8 {
+		m := 2 * math.Pow(1.9, float64(i))
+		spread.Points = append(spread.Points, Scale{Label: varietyName(i), Mean: m, SD: math.Pow(10, -0.1+0.86*math.Log10(m)+0.08*noise(i))})
+	}
 	return []struct {
 		name string
 		drawing
 	}{
+		{"map-blocks", blocks},
+		{"map-planned", FromPlan(plan("block 5, pen within block 4"), nil)},
+		{"map-residuals", shaded},
+		{"map-square", planned("cow 4, period 4, sample crosses cow period", 4)},
+		{"map-squares", planned("square 2, cow within square 4, period within square 4, sample crosses cow period", 4)},
+		{"map-split", split},
+		{"map-strip", planned("block 3, strip within block 3, lane within block 4, plot crosses strip lane", 12)},
+		{"map-lattice", planned("replicate 4, block within replicate 6, plot within block 6", 36)},
+		{"map-many", planned("block 8, plot within block 60", 60)},
+		{"map-crowded", planned("block 20, plot within block 120", 120)},
+		{"fitted", fitted},
+		{"quantiles", quantiles},
+		{"spread", spread},
 		{"points", yeast},
 		{"points-many", trial(24, 4, varietyName)},
 		{"residuals", residual},

@@ -72,7 +72,6 @@ func (n Interaction) Draw() (*doc.Picture, string) {
 			ms = append(ms, Mean{Label: l, X: n.X[i]})
 		}
 		x = doseAxis(n.By, ms, xs.padded(0.04), room)
-		x.grid = false
 	} else {
 		x = axis{title: clean(n.By), span: span{lo: -0.4, hi: float64(len(n.Levels)) - 0.6}, bare: true}
 		pitch := room / float64(len(n.Levels))
@@ -99,7 +98,7 @@ func (n Interaction) Draw() (*doc.Picture, string) {
 	if bar {
 		top = 8
 	}
-	y := numbers(n.Response, values.padded(0.07), h-45, 34)
+	y := numbers(n.Response, values.padded(0.07), h-45, false)
 	x.title, y.title = fit(x.title, room, titleSize, false), fit(y.title, h-10, titleSize, false)
 	f := newFrame(c, x, y, insets{right: end, top: top})
 

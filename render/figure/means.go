@@ -175,9 +175,8 @@ func (m Means) doses(values, doses span) *doc.Picture {
 	w, h := m.resolve(250)
 	c := newCanvas(w, h)
 	x := doseAxis(m.By, m.Means, doses.padded(0.05), w-60)
-	y := numbers(m.Response, values.padded(0.08), h-45, 34)
+	y := numbers(m.Response, values.padded(0.08), h-45, false)
 	x.title, y.title = fit(x.title, w-60, titleSize, false), fit(y.title, h-10, titleSize, false)
-	x.grid = false
 	f := newFrame(c, x, y, insets{right: 6})
 	var xs, ys, lo, hi []float64
 	for _, t := range m.Trend.Points {
@@ -265,7 +264,7 @@ func doseAxis(by string, means []Mean, s span, length float64) axis {
 		at := (xs[i] - s.lo) / (s.hi - s.lo) * length
 		half := width(ds[i].label, textSize, false) / 2
 		if at-half < last+4 {
-			return numbers(by, s, length, 60)
+			return numbers(by, s, length, true)
 		}
 		last = at + half
 		a.ticks = append(a.ticks, plot.Tick{Value: xs[i], Label: ds[i].label})

@@ -88,14 +88,14 @@ func newGroups(s Size, names []string, by, response string, values span, end flo
 		}
 		along.title = fit(along.title, w-60-end, titleSize, false)
 		c := newCanvas(w, h)
-		v := numbers(response, values, h-45, 34)
+		v := numbers(response, values, h-45, false)
 		v.title = fit(v.title, h-10, titleSize, false)
 		f := newFrame(c, along, v, insets{right: end})
 		return &groups{frame: f, n: n, pitch: (f.x1 - f.x0) / float64(n), size: textSize}
 	}
 	// Lying, the first group stands at the top.
 	g := &groups{n: n, lying: true, size: textSize}
-	pitch = min(max((pageHeight-50)/float64(n), 9.6), 20)
+	pitch = min(max((pageHeight-50)/float64(n), 9.6), 16)
 	if s.Height > 0 {
 		pitch = max((s.Height-45)/float64(n), 1)
 	}
@@ -111,7 +111,8 @@ func newGroups(s Size, names []string, by, response string, values span, end flo
 	}
 	along.title = fit(along.title, h-45, titleSize, false)
 	c := newCanvas(w, h)
-	v := numbers(response, values, w*0.6-end, 60)
+	v := numbers(response, values, w*0.6-end, true)
+	v.grid = true
 	v.title = fit(v.title, w*0.6, titleSize, false)
 	g.frame = newFrame(c, v, along, insets{right: end})
 	g.pitch = (g.y1 - g.y0) / float64(n)

@@ -1,0 +1,708 @@
+package figure
+
+import (
+	"fmt"
+	"math"
+	"slices"
+	"strconv"
+	"strings"
+
+	"penwright/analysis/num"
+	"penwright/render/doc"
+)
+
+// Map shows where the units stand and what each received, or how far each lies from
+// what was fitted.
+type Map struct {
+	Size
+	Unit  string // what a cell is, such as "pen"
+	Boxes []Box  // of one treelike arrangement, such as blocks
+	// Treatments names what Cell.Treatment counts; a legend is drawn when a cell cannot
+	// or does not bear the name.
+	Treatments []string
+	// Shade is the title of the scale of Cell.Value, with its unit. Empty: the cells
+	// are coloured by treatment.
+	Shade string
+}
+
+// Box holds cells, or boxes. A grid has Columns and names for them and for its rows;
+// without Columns, what is in the box stands in a row that is broken where it must.
+type Box struct {
+	Label        string
+	Columns      int
+	Across, Down []string
+	Boxes        []Box
+	Cells        []Cell
+}
+
+// Cell is a unit.
+type Cell struct {
+	Unit      string // its full name
+	Number    string // its name within the box
+	Label     string // the treatment, in short
+	Treatment int    // index into Map.Treatments; -1: none
+	Excluded  bool
+	Value     float64 // NaN: none
+	Empty     bool    // a place of a grid without a unit
+}
+
+const mostCells = maxPoints
+
+// Draw gives the picture, and the same in words.
+func (m Map) Draw() (*doc.Picture, string) {
+	all := cells(m.Boxes, nil)
+	n := 0
+	for _, c := range all {
+		if !c.Empty {
+			n++
+		}
+	}
+	alt := m.words(all, n)
+	if n == 0 {
+		return note(m.Size, "No units to draw."), alt
+	}
+	w, _ := m.resolve(0)
+	p := &mapper{Map: m, width: w - 2, all: all, n: n}
+	var boxes []Box
+	boxes, p.left = cut(m.Boxes, mostCells)
+	for _, c := range all {
+		p.crossed = p.crossed || c.Excluded
+		if m.Shade != "" && drawable(c.Value) && !c.Excluded {
+			p.top = max(p.top, math.Abs(c.Value))
+		}
+	}
+	most := float64(pageHeight)
+	if m.Height > 0 {
+		_, most = m.resolve(0)
+	}
+	p.keys = m.needKeys(all)
+	p.choose(boxes, most-p.foot(nil, 0)-2)
+	if !p.labelled() && !p.keys && len(m.Treatments) > 0 {
+		p.keys = true
+		p.choose(boxes, most-p.foot(nil, 0)-2)
+		p.labelled()
+	}
+	tree := p.arrange(boxes)
+	h := tree.h + p.foot(nil, 0) + 2
+	c := newCanvas(w, min(max(h, smallest), huge))
+	p.draw(c, tree, 1, 1)
+	p.foot(c, tree.h+1)
+	return c.pic, alt
+}
+
+func cells(boxes []Box, out []Cell) []Cell {
+	for _, b := range boxes {
+		out = append(out, b.Cells...)
+		out = cells(b.Boxes, out)
+	}
+	return out
+}
+
+// cut keeps the first cells and says how many units fell away.
+func cut(boxes []Box, most int) (kept []Box, left int) {
+	room := most
+	var walk func([]Box) []Box
+	walk = func(bs []Box) []Box {
+		var out []Box
+		for _, b := range bs {
+			if len(b.Cells) > 0 {
+				k := min(room, len(b.Cells))
+				for _, c := range b.Cells[k:] {
+					if !c.Empty {
+						left++
+					}
+				}
+				b.Cells = b.Cells[:k]
+				room -= k
+			}
+			b.Boxes = walk(b.Boxes)
+			if len(b.Cells) > 0 || len(b.Boxes) > 0 {
+				out = append(out, b)
+			}
+		}
+		return out
+	}
+	return walk(boxes), left
+}
+
+// needKeys says whether the labels are other than the names, so that a legend must
+// join them.
+func (m Map) needKeys(all []Cell) bool {
+	for _, c := range all {
+		if c.Treatment >= 0 && c.Treatment < len(m.Treatments) && c.Label != m.Treatments[c.Treatment] {
+			return len(m.Treatments) <= 400
+		}
+	}
+	return false
+}
+
+// mapper arranges a map at one size of its cells.
+type mapper struct {
+	Map
+	width   float64
+	all     []Cell
+	n, left int     // units, and those not drawn
+	cw, ch  float64 // of a cell
+	gap     float64 // between boxes
+	label   float64 // size of the labels of boxes; 0: not drawn
+	top     float64 // the end of the scale
+	crossed bool    // some are excluded
+	keys    bool    // a legend is drawn
+	short   bool    // cells bear keys, not labels
+}
+
+// arranged is a box with its place for everything in it.
+type arranged struct {
+	box      *Box
+	w, h     float64
+	head     float64 // room above for the label and the names of columns
+	side     float64 // room at the left for the names of rows
+	label    float64
+	columns  int
+	children []*arranged
+	x, y     []float64
+}
+
+const (
+	widestCell = 78
+	pad        = 3
+)
+
+// choose finds the largest cells with which the boxes are no higher than most.
+func (p *mapper) choose(boxes []Box, most float64) {
+	natural := 0.0
+	for _, c := range p.all {
+		natural = max(natural, width(clean(c.Label), textSize, false))
+	}
+	natural = min(max(natural+10, 26), widestCell)
+	if p.Shade != "" {
+		natural = max(natural, 34)
+	}
+	tall := 21.0
+	set := func(s float64) {
+		p.cw, p.ch = max(natural*s, 2), max(tall*math.Pow(s, 0.75), 2)
+		p.gap = min(max(p.cw*0.28, 1.5), 9)
+		p.label = noteSize
+		if p.ch < 9 {
+			p.label = tinySize
+		}
+		if p.ch < 5 {
+			p.label = 0
+		}
+	}
+	s := 1.0
+	var t *arranged
+	for {
+		set(s)
+		t = p.arrange(boxes)
+		if t.h <= most && t.w <= p.width || p.cw <= 2 && p.ch <= 2 {
+			break
+		}
+		s *= 0.93
+	}
+	// What room is left across, the cells take.
+	for {
+		cw := p.cw
+		p.cw *= 1.04
+		if p.cw > widestCell {
+			p.cw = cw
+			break
+		}
+		if wider := p.arrange(boxes); wider.w > p.width || wider.h > t.h {
+			p.cw = cw
+			break
+		}
+	}
+}
+
+// arrange places the boxes at the present size of cells.
+func (p *mapper) arrange(boxes []Box) *arranged {
+	if len(boxes) == 1 {
+		return p.place(&boxes[0], p.width, 0)
+	}
+	root := &Box{Boxes: boxes}
+	return p.place(root, p.width, -1)
+}
+
+// place arranges a box that may be most wide.
+func (p *mapper) place(b *Box, most float64, depth int) *arranged {
+	a := &arranged{box: b, label: p.label}
+	rim := 0.0
+	if depth >= 0 {
+		rim = pad * min(p.gap/9, 1)
+		if p.label > 0 && b.Label != "" {
+			a.head = p.label * leading
+		}
+	}
+	inside := most - 2*rim
+	n := len(b.Cells)
+	gapX, gapY := 0.0, 0.0
+	var sizes [][2]float64
+	if n == 0 {
+		n = len(b.Boxes)
+		gapX, gapY = p.gap, p.gap
+		if depth > 0 || b.Columns > 0 {
+			gapX, gapY = p.gap*0.5, p.gap*0.5
+		}
+	}
+	if len(b.Across) > 0 && p.label > 0 {
+		a.head += p.label * leading
+	}
+	if len(b.Down) > 0 && p.label > 0 {
+		for _, d := range b.Down {
+			a.side = max(a.side, width(brief(d, 48, p.label), p.label, false)+3)
+		}
+	}
+	inside -= a.side
+	colW, rowH := p.cw, p.ch
+	if len(b.Cells) == 0 {
+		colW, rowH = 0, 0
+		share := inside
+		if b.Columns > 0 {
+			share = (inside - gapX*float64(b.Columns-1)) / float64(b.Columns)
+		}
+		for i := range b.Boxes {
+			c := p.place(&b.Boxes[i], share, depth+1)
+			a.children = append(a.children, c)
+			colW, rowH = max(colW, c.w), max(rowH, c.h)
+			sizes = append(sizes, [2]float64{c.w, c.h})
+		}
+	}
+	if n == 0 {
+		return a
+	}
+	a.columns = b.Columns
+	if a.columns <= 0 {
+		fits := max(int((inside+gapX+1e-9)/(colW+gapX)), 1)
+		a.columns = min(fits, n)
+		rows := (n + a.columns - 1) / a.columns
+		a.columns = (n + rows - 1) / rows
+		if len(b.Cells) == 0 && n%a.columns != 0 {
+			// Full rows look better, if they cost little height.
+			for k := a.columns - 1; k >= 1; k-- {
+				if n%k == 0 && float64(n/k)*(rowH+gapY) <= max(230, 1.3*float64(rows)*(rowH+gapY)) {
+					a.columns = k
+					break
+				}
+			}
+		}
+	}
+	rows := (n + a.columns - 1) / a.columns
+	tops := make([]float64, rows+1)
+	for r := range rows {
+		h := rowH
+		if len(sizes) > 0 {
+			h = 0
+			for i := r * a.columns; i < min((r+1)*a.columns, n); i++ {
+				h = max(h, sizes[i][1])
+			}
+		}
+		tops[r+1] = tops[r] + h + gapY
+	}
+	for i := range n {
+		a.x = append(a.x, rim+a.side+float64(i%a.columns)*(colW+gapX))
+		a.y = append(a.y, rim+a.head+tops[i/a.columns])
+	}
+	a.w = 2*rim + a.side + float64(a.columns)*(colW+gapX) - gapX
+	a.h = 2*rim + a.head + tops[rows] - gapY
+	// A box that is wider for its label than for what it holds.
+	if depth >= 0 && p.label > 0 && b.Label != "" {
+		a.w = max(a.w, min(width(brief(b.Label, 60, p.label), p.label, false)+2*rim, most))
+	}
+	return a
+}
+
+// brief is text that fits, shortened if it can be to its last word, as in "Block 12".
+func brief(s string, most, size float64) string {
+	s = clean(s)
+	if width(s, size, false) <= most {
+		return s
+	}
+	if i := strings.LastIndexByte(s, ' '); i >= 0 && i < len(s)-1 {
+		if last := s[i+1:]; width(last, size, false) <= most && strings.ContainsAny(last, "0123456789") {
+			return last
+		}
+	}
+	return fit(s, most, size, false)
+}
+
+func (p *mapper) draw(c *canvas, a *arranged, x, y float64) {
+	b := a.box
+	st := style{size: a.label, colour: ink}
+	frameTop := y
+	head := a.head
+	if a.label > 0 && b.Label != "" {
+		if s := brief(b.Label, a.w, a.label); s != "" {
+			c.text(x, y+a.label*ascent, left, st, s)
+		}
+		if head > 0 {
+			frameTop += a.label * leading
+			head -= a.label * leading
+		}
+	}
+	if len(b.Cells) > 0 && len(b.Across) == 0 || len(b.Boxes) > 0 && b.Label != "" && len(b.Across) == 0 {
+		if p.gap > 2 {
+			c.stroke(line{width: thin, colour: grey}, rectangle(x, frameTop, a.w, a.h-(frameTop-y))...)
+		}
+	}
+	childW := p.cw
+	if len(a.children) > 0 {
+		childW = 0
+		for _, k := range a.children {
+			childW = max(childW, k.w)
+		}
+	}
+	if len(b.Across) > 0 && a.label > 0 && len(a.x) > 0 {
+		end := math.Inf(-1)
+		for i := 0; i < min(len(b.Across), a.columns, len(a.x)); i++ {
+			s := brief(b.Across[i], childW-2, a.label)
+			mid := x + a.x[i] + childW/2
+			half := width(s, a.label, false) / 2
+			if s == "" || mid-half < end+2 {
+				continue
+			}
+			c.text(mid, frameTop+a.label*ascent, center, st, s)
+			end = mid + half
+		}
+	}
+	if len(b.Down) > 0 && a.label > 0 {
+		end := math.Inf(-1)
+		for r := 0; r < len(b.Down) && r*a.columns < len(a.y); r++ {
+			h := p.ch
+			if len(a.children) > 0 {
+				h = a.children[r*a.columns].h
+			}
+			mid := y + a.y[r*a.columns] + h/2
+			if mid-a.label*leading/2 < end {
+				continue
+			}
+			c.text(x+a.side-3+(a.x[0]-a.side), mid+capHeight(a.label)/2, right, st, brief(b.Down[r], a.side-3, a.label))
+			end = mid + a.label*leading/2
+		}
+	}
+	for i, k := range a.children {
+		p.draw(c, k, x+a.x[i], y+a.y[i])
+	}
+	for i, cell := range b.Cells {
+		if !cell.Empty {
+			p.cell(c, cell, x+a.x[i], y+a.y[i])
+		}
+	}
+	c.mark("")
+}
+
+// key stands for a treatment where its label has no room.
+func key(i, n int) string {
+	if n <= 26 {
+		return string(rune('A' + i))
+	}
+	return strconv.Itoa(i + 1)
+}
+
+// labelled says whether every label has room in its cell.
+func (p *mapper) labelled() bool {
+	p.short = false
+	for _, c := range p.all {
+		if _, ok := p.labelSize(clean(c.Label)); !ok {
+			p.short = len(p.Treatments) > 0
+			return false
+		}
+	}
+	return true
+}
+
+// labelSize is the largest size at which a label has room in a cell.
+func (p *mapper) labelSize(s string) (float64, bool) {
+	for size := textSize; size >= tinySize; size -= 0.5 {
+		if width(s, size, false) <= p.cw-3 && size*leading <= p.ch {
+			return size, true
+		}
+	}
+	return 0, s == ""
+}
+
+func (p *mapper) tint(c Cell) doc.Colour {
+	switch {
+	case c.Excluded:
+		return doc.Colour{}
+	case p.Shade != "":
+		if !drawable(c.Value) || p.top == 0 {
+			return doc.Colour{}
+		}
+		return p.shade(c.Value / p.top)
+	case c.Treatment < 0:
+		return doc.Colour{}
+	}
+	return p.light(c.Treatment)
+}
+
+// light is the ground of a treatment's cells.
+func (p *mapper) light(i int) doc.Colour {
+	return tint(hue(i), []float64{0.34, 0.18, 0.48}[i/len(palette)%3])
+}
+
+// shade is the colour of a place on the diverging scale from -1 to 1.
+func (p *mapper) shade(v float64) doc.Colour {
+	if v < 0 {
+		return tint(below, -v*0.62)
+	}
+	return tint(above, v*0.62)
+}
+
+func (p *mapper) cell(c *canvas, cell Cell, x, y float64) {
+	c.mark(cell.Unit)
+	rect := rectangle(x, y, p.cw, p.ch)
+	if t := p.tint(cell); t.A > 0 {
+		c.fill(t, rect...)
+	}
+	if p.cw > 4 {
+		c.stroke(line{width: 0.4, colour: grey}, rect...)
+	}
+	if cell.Excluded {
+		d := min(1.0, p.cw/8)
+		c.stroke(line{width: 0.6, colour: grey}, append(segment(x+d, y+d, x+p.cw-d, y+p.ch-d), segment(x+d, y+p.ch-d, x+p.cw-d, y+d)...)...)
+	}
+	label := clean(cell.Label)
+	if p.short && cell.Treatment >= 0 {
+		label = key(cell.Treatment, len(p.Treatments))
+	}
+	size, ok := p.labelSize(label)
+	if !ok || label == "" {
+		if cell.Treatment >= 0 && p.cw >= 3 && p.ch >= 3 {
+			i := cell.Treatment
+			c.marker(form(i), x+p.cw/2, y+p.ch/2, min(p.cw, p.ch)*0.3, hue(i+i/18))
+		}
+		if label != "" {
+			return
+		}
+		size = min(textSize, p.ch*0.6)
+	}
+	value := ""
+	if p.Shade != "" && drawable(cell.Value) {
+		value = p.value(cell.Value)
+	}
+	mid := y + p.ch/2
+	number := clean(cell.Number)
+	corner := 0.0
+	if number != "" && label != "" && p.ch >= 17 && width(number, tinySize, false) < p.cw-4 {
+		corner = tinySize
+		c.text(x+2, y+1+tinySize*0.8, left, style{size: tinySize, colour: ink}, number)
+	}
+	if label == "" {
+		// Nothing is allotted yet: the unit's own name.
+		if size >= tinySize && number != "" {
+			if s := fit(number, p.cw-3, size, false); s != "" {
+				c.text(x+p.cw/2, mid+capHeight(size)/2, center, style{size: size, colour: ink}, s)
+			}
+		}
+		return
+	}
+	if value != "" && width(value, noteSize, false) <= p.cw-3 && p.ch >= 2*noteSize+3 {
+		// With the value below it the label stands beside the number in the corner.
+		lx, most := x+p.cw/2, p.cw-3
+		if corner > 0 {
+			free := width(number, tinySize, false) + 4
+			most = p.cw - free - 2
+			lx = x + free + most/2
+		}
+		if s := fit(label, most, noteSize, false); s == label {
+			c.text(lx, y+2+noteSize*0.8, center, style{size: noteSize, colour: ink}, s)
+			c.text(x+p.cw/2, y+p.ch-3, center, style{size: noteSize, bold: true, colour: ink}, value)
+			return
+		}
+	}
+	if corner > 0 {
+		low := min(mid+capHeight(size)/2+2.5, y+p.ch-descent*size)
+		if low-capHeight(size) < y+1+tinySize {
+			low = y + p.ch - descent*size
+		}
+		c.text(x+p.cw/2, low, center, style{size: size, colour: ink}, label)
+		return
+	}
+	c.text(x+p.cw/2, mid+capHeight(size)/2, center, style{size: size, colour: ink}, label)
+}
+
+// value prints what a cell is shaded by, with its sign, to about two digits of the
+// largest.
+func (p *mapper) value(v float64) string {
+	if p.top == 0 {
+		return num.Signed(v, 0)
+	}
+	d := min(max(1-int(math.Floor(math.Log10(p.top))), 0), 6)
+	return num.Signed(v, d)
+}
+
+// foot draws what explains the map, or measures it where there is no canvas, and gives
+// its height.
+func (p *mapper) foot(c *canvas, y float64) float64 {
+	start := y
+	y += 4
+	st := style{size: noteSize, colour: ink}
+	if p.Shade != "" && p.top > 0 {
+		if c != nil {
+			p.scale(c, y)
+		}
+		y += 26
+	}
+	if p.keys {
+		y += p.legend(c, y)
+	}
+	if p.crossed {
+		if c != nil {
+			c.stroke(line{width: thin, colour: grey}, rectangle(1, y+2, 12, 9)...)
+			c.stroke(line{width: 0.6, colour: grey}, append(segment(2, y+3, 12, y+10), segment(2, y+10, 12, y+3)...)...)
+			c.text(17, y+9, left, st, "excluded from the analysis")
+		}
+		y += 13
+	}
+	if p.left > 0 {
+		if c != nil {
+			c.text(1, y+9, left, st, fit(fmt.Sprintf("The first %d of %d units are drawn.", p.n-p.left, p.n), p.width, noteSize, false))
+		}
+		y += 13
+	}
+	return y - start
+}
+
+// scale draws the scale of the shading.
+func (p *mapper) scale(c *canvas, y float64) {
+	const long, steps = 150.0, 30
+	st := style{size: noteSize, colour: ink}
+	title := fit(p.Shade, p.width-long-30, textSize, false)
+	x := width(title, textSize, false) + 22
+	c.text(1, y+9.5, left, style{size: textSize, colour: ink}, title)
+	for i := range steps {
+		v := 2*(float64(i)+0.5)/steps - 1
+		c.fill(p.shade(v), rectangle(x+long*float64(i)/steps, y+2, long/steps, 9)...)
+	}
+	c.stroke(line{width: thin, colour: grey}, rectangle(x, y+2, long, 9)...)
+	for _, v := range []float64{-1, 0, 1} {
+		at := x + long*(v+1)/2
+		c.stroke(line{width: thin, colour: ink}, segment(at, y+11, at, y+13.5)...)
+		s := "0"
+		if v != 0 {
+			s = p.value(v * p.top)
+		}
+		half := width(s, noteSize, false) / 2
+		c.text(min(max(at, 1+half), p.width-half), y+21, center, st, s)
+	}
+}
+
+// legend lists what stands for which treatment.
+func (p *mapper) legend(c *canvas, y float64) float64 {
+	marks := p.cw < 3+width("M", tinySize, false) || p.ch < tinySize*leading
+	type entry struct{ key, name string }
+	keys := map[int]string{}
+	if !p.short {
+		for _, cell := range p.all {
+			if cell.Treatment >= 0 && keys[cell.Treatment] == "" {
+				keys[cell.Treatment] = clean(cell.Label)
+			}
+		}
+	}
+	entries := make([]entry, len(p.Treatments))
+	wideKey, wideName := 9.0, 0.0
+	for i, name := range p.Treatments {
+		k := keys[i]
+		if p.short {
+			k = key(i, len(p.Treatments))
+		}
+		if marks {
+			k = ""
+		}
+		entries[i] = entry{key: fit(k, 80, noteSize, false), name: clean(name)}
+		wideKey = max(wideKey, width(entries[i].key, noteSize, false)+5)
+		wideName = max(wideName, width(entries[i].name, noteSize, false))
+	}
+	cell := min(wideKey+5+wideName+12, p.width)
+	columns := min(max(int(p.width/cell), 1), max(len(entries), 1))
+	rows := (len(entries) + columns - 1) / columns
+	const pitch = 11.5
+	if c == nil {
+		return float64(rows)*pitch + 4
+	}
+	st := style{size: noteSize, colour: ink}
+	for i, e := range entries {
+		// Down the columns, so that the order is that of reading a list.
+		x, y := 1+cell*float64(i/rows), y+pitch*float64(i%rows)+1
+		if marks {
+			c.marker(form(i), x+4.5, y+4.5, 2.6, hue(i+i/18))
+		} else {
+			if p.Shade == "" {
+				c.fill(p.light(i), rectangle(x, y, wideKey, 9.5)...)
+			}
+			c.stroke(line{width: 0.4, colour: grey}, rectangle(x, y, wideKey, 9.5)...)
+			c.text(x+wideKey/2, y+7.2, center, st, e.key)
+		}
+		c.text(x+wideKey+5, y+7.2, left, st, fit(e.name, cell-wideKey-8, noteSize, false))
+	}
+	return float64(rows)*pitch + 4
+}
+
+func (m Map) words(all []Cell, n int) string {
+	var b strings.Builder
+	unit := title(m.Unit, "unit")
+	fmt.Fprintf(&b, "Map of %s", count(n, unit))
+	if len(m.Boxes) > 1 {
+		fmt.Fprintf(&b, " in %d groups", len(m.Boxes))
+		b.WriteString(strings.TrimSuffix(listed(m.Boxes, func(b Box) string { return b.Label }), fmt.Sprintf(" (%d groups)", len(m.Boxes))))
+	}
+	b.WriteString(".")
+	per := make([]int, len(m.Treatments))
+	given := 0
+	var excluded []string
+	values := empty()
+	var far Cell
+	far.Value = 0
+	for _, c := range all {
+		if c.Empty {
+			continue
+		}
+		if c.Excluded {
+			excluded = append(excluded, title(c.Unit, c.Number))
+		} else if m.Shade != "" && drawable(c.Value) {
+			values.add(c.Value)
+			if math.Abs(c.Value) > math.Abs(far.Value) {
+				far = c
+			}
+		}
+		if c.Treatment >= 0 && c.Treatment < len(per) {
+			per[c.Treatment]++
+			given++
+		}
+	}
+	switch {
+	case given == 0:
+	case slices.Min(per) == slices.Max(per):
+		fmt.Fprintf(&b, " Each of %s stands on %s.", count(len(per), "treatment"), count(per[0], unit))
+	case len(per) <= listMost:
+		var each []string
+		for i, k := range per {
+			each = append(each, fmt.Sprintf("%s on %d", clean(m.Treatments[i]), k))
+		}
+		fmt.Fprintf(&b, " Treatments: %s.", strings.Join(each, ", "))
+	default:
+		fmt.Fprintf(&b, " %s, each on %d to %d %s.", count(len(per), "treatment"), slices.Min(per), slices.Max(per), unit+"s")
+	}
+	if !values.empty() {
+		fmt.Fprintf(&b, " The cells are shaded by %s, from %s to %s", clean(m.Shade), rounded(values.lo), rounded(values.hi))
+		if far.Unit != "" {
+			fmt.Fprintf(&b, "; the farthest from nought is %s (%s)", clean(far.Unit), rounded(far.Value))
+		}
+		b.WriteString(".")
+	}
+	if k := len(excluded); k > 0 {
+		fmt.Fprintf(&b, " %s excluded and crossed out", count(k, unit))
+		if k <= listMost {
+			for i := range excluded {
+				excluded[i] = clean(excluded[i])
+			}
+			fmt.Fprintf(&b, ": %s", strings.Join(excluded, ", "))
+		}
+		b.WriteString(".")
+	}
+	if n > mostCells {
+		fmt.Fprintf(&b, " Only the first %d are drawn.", mostCells)
+	}
+	return b.String()
+}

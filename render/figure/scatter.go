@@ -1,0 +1,436 @@
+package figure
+
+import (
+	"fmt"
+	"math"
+	"strings"
+
+	"gonum.org/v1/plot"
+
+	"penwright/render/doc"
+)
+
+// Fitted shows residuals against fitted values, or any second quantity of units
+// against a first.
+type Fitted struct {
+	Size
+	X, Y   string // titles of the axes
+	Points []XY
+	Zero   bool // draws a line at nought of Y
+}
+
+// XY is one unit's place; what is Named has its name written beside it.
+type XY struct {
+	Unit  string
+	X, Y  float64
+	Named bool
+}
+
+// Draw gives the picture, and the same in words.
+func (p Fitted) Draw() (*doc.Picture, string) {
+	xs, ys, n := extent(p.Points)
+	alt := p.words(xs, ys, n)
+	if n == 0 {
+		return note(p.Size, "No values to draw."), alt
+	}
+	if p.Zero {
+		ys.add(0)
+	}
+	f := newScatter(p.Size, p.X, p.Y, xs, ys)
+	if p.Zero {
+		f.stroke(line{width: 0.6, colour: ink}, segment(f.x0, f.y(0), f.x1, f.y(0))...)
+	}
+	f.scatter(p.Points, n, nil)
+	return f.pic, alt
+}
+
+func (p Fitted) words(xs, ys span, n int) string {
+	var b strings.Builder
+	fmt.Fprintf(&b, "%s against %s: %s", title(p.Y, "Values"), title(p.X, "fitted values"), count(n, "point"))
+	if n > 0 {
+		fmt.Fprintf(&b, ", from %s to %s across and from %s to %s up", rounded(xs.lo), rounded(xs.hi), rounded(ys.lo), rounded(ys.hi))
+	}
+	b.WriteString(".")
+	b.WriteString(shaded(n))
+	b.WriteString(namedIn(p.Points))
+	if lost := len(p.Points) - n; lost > 0 {
+		fmt.Fprintf(&b, " %s without a place.", count(lost, "unit"))
+	}
+	return b.String()
+}
+
+func shaded(n int) string {
+	if n > maxPoints {
+		return " The points are too many to draw: shading shows how many lie in each field."
+	}
+	return ""
+}
+
+func namedIn(points []XY) string {
+	var names []string
+	for _, q := range points {
+		if q.Named && drawable(q.X) && drawable(q.Y) {
+			names = append(names, clean(q.Unit))
+		}
+	}
+	if len(names) == 0 || len(names) > listMost {
+		return ""
+	}
+	return " Named: " + strings.Join(names, ", ") + "."
+}
+
+func extent(points []XY) (xs, ys span, n int) {
+	xs, ys = empty(), empty()
+	for _, q := range points {
+		if drawable(q.X) && drawable(q.Y) {
+			xs.add(q.X)
+			ys.add(q.Y)
+			n++
+		}
+	}
+	return xs, ys, n
+}
+
+func newScatter(s Size, x, y string, xs, ys span) *frame {
+	w, h := s.resolve(250)
+	c := newCanvas(w, h)
+	h1, v1 := numbers(x, xs.padded(0.05), w-60, true), numbers(y, ys.padded(0.06), h-45, false)
+	h1.title, v1.title = fit(h1.title, w-60, titleSize, false), fit(v1.title, h-10, titleSize, false)
+	return newFrame(c, h1, v1, insets{})
+}
+
+// scatter draws the points, or a density where they are too many, and the names,
+// avoiding the crowd where they can.
+func (f *frame) scatter(points []XY, n int, crowd []box) {
+	r := 2.3
+	if n > 400 {
+		r = 1.6
+	}
+	dense := n > maxPoints
+	if dense {
+		f.fields(points)
+	}
+	for _, q := range points {
+		if !drawable(q.X) || !drawable(q.Y) || dense && !q.Named {
+			continue
+		}
+		x, y := f.x(q.X), f.y(q.Y)
+		f.mark(q.Unit)
+		f.marker(disc, x, y, r, palette[0])
+		crowd = append(crowd, box{x0: x - r, y0: y - r, x1: x + r, y1: y + r})
+	}
+	f.mark("")
+	var taken []box
+	written := 0
+	for _, q := range points {
+		if q.Named && drawable(q.X) && drawable(q.Y) && written < 60 {
+			taken = f.beside(taken, crowd, f.x(q.X), f.y(q.Y), r, q.Unit)
+			written++
+		}
+	}
+}
+
+// beside writes a name next to a mark where it covers no other name and as few marks as
+// can be; without a place free of names it is left out.
+func (f *frame) beside(taken, crowd []box, x, y, r float64, name string) []box {
+	s := fit(name, 110, noteSize, false)
+	if s == "" {
+		return taken
+	}
+	w, up := width(s, noteSize, false), capHeight(noteSize)
+	d := r + 2
+	best, least := box{}, -1
+	var bx, by float64
+	for _, try := range [][2]float64{
+		{x + d, y + up/2}, {x - d - w, y + up/2}, {x - w/2, y - d}, {x - w/2, y + d + up},
+		{x + d, y - d}, {x - d - w, y - d}, {x + d, y + d + up}, {x - d - w, y + d + up},
+	} {
+		b := lineBox(try[0], try[1], left, s, noteSize)
+		if b.x0 < f.x0-2 || b.x1 > f.pic.Width-1 || b.y0 < 0 || b.y1 > f.y1+2 {
+			continue
+		}
+		meets := 0
+		for _, t := range taken {
+			if b.meets(t) {
+				meets = -1
+				break
+			}
+		}
+		if meets < 0 {
+			continue
+		}
+		for _, m := range crowd {
+			if b.meets(m) {
+				meets++
+			}
+		}
+		if least < 0 || meets < least {
+			best, least, bx, by = b, meets, try[0], try[1]
+		}
+	}
+	if least < 0 {
+		return taken
+	}
+	f.text(bx, by, left, style{size: noteSize, colour: ink}, s)
+	return append(taken, best)
+}
+
+// fields shades the ground by how many points lie in each of its fields.
+func (f *frame) fields(points []XY) {
+	const across, up = 72, 40
+	n := make([]int, across*up)
+	most := 1
+	for _, q := range points {
+		if !drawable(q.X) || !drawable(q.Y) {
+			continue
+		}
+		i := min(max(int((q.X-f.h.lo)/(f.h.hi-f.h.lo)*across), 0), across-1)
+		j := min(max(int((q.Y-f.v.lo)/(f.v.hi-f.v.lo)*up), 0), up-1)
+		n[j*across+i]++
+		most = max(most, n[j*across+i])
+	}
+	w, h := (f.x1-f.x0)/across, (f.y1-f.y0)/up
+	for j := range up {
+		for i := range across {
+			if k := n[j*across+i]; k > 0 {
+				f.mark(count(k, "point"))
+				share := 0.2 + 0.8*math.Log1p(float64(k))/math.Log1p(float64(most))
+				f.fill(tint(palette[0], share), rectangle(f.x0+w*float64(i), f.y1-h*float64(j+1), w, h)...)
+			}
+		}
+	}
+}
+
+// Quantiles shows ordered residuals against what a normal sample of the size would give.
+type Quantiles struct {
+	Size
+	X, Y   string // titles; empty: those usual
+	Points []Quantile
+	// Intercept and Slope are of the line that a normal sample would follow; a slope of
+	// nought draws none.
+	Intercept, Slope float64
+	Envelope         string // what the band is, in words: "95 % of 999 normal samples"
+}
+
+// Quantile is one unit: its expected normal quantile, its value, and the limits of the
+// envelope there, or NaN.
+type Quantile struct {
+	Unit                       string
+	Expected, Value, Low, High float64
+	Named                      bool
+}
+
+// Draw gives the picture, and the same in words.
+func (p Quantiles) Draw() (*doc.Picture, string) {
+	var points []XY
+	expected := make([]float64, 0, len(p.Points))
+	var held []Quantile
+	for _, q := range p.Points {
+		if drawable(q.Expected) && drawable(q.Value) {
+			held = append(held, q)
+			expected = append(expected, q.Expected)
+			points = append(points, XY{Unit: q.Unit, X: q.Expected, Y: q.Value, Named: q.Named})
+		}
+	}
+	xs, ys, n := extent(points)
+	var b strings.Builder
+	fmt.Fprintf(&b, "Normal quantiles of %s: %s", title(p.Y, "residuals"), count(n, "point"))
+	if n > 0 {
+		fmt.Fprintf(&b, ", from %s to %s", rounded(ys.lo), rounded(ys.hi))
+	}
+	b.WriteString(".")
+	outside, limits := 0, false
+	for _, q := range held {
+		if drawable(q.Low) && drawable(q.High) {
+			limits = true
+			if q.Value < q.Low || q.Value > q.High {
+				outside++
+			}
+		}
+	}
+	if limits {
+		fmt.Fprintf(&b, " The band is %s; %s outside it.", title(p.Envelope, "an envelope"), plural(outside, "1 point lies", fmt.Sprint(outside)+" points lie"))
+	}
+	b.WriteString(namedIn(points))
+	if lost := len(p.Points) - n; lost > 0 {
+		fmt.Fprintf(&b, " %s without a value.", count(lost, "unit"))
+	}
+	if n == 0 {
+		return note(p.Size, "No residuals to draw."), b.String()
+	}
+	order := byValue(expected)
+	if n > maxPoints {
+		// The points lie on a curve that never falls: every so many of the middle
+		// tell all that all would; the ends stay whole.
+		every := n/1500 + 1
+		var kept []int
+		for i, k := range order {
+			if i < 150 || i >= n-150 || i%every == 0 || held[k].Named {
+				kept = append(kept, k)
+			}
+		}
+		order = kept
+		fmt.Fprintf(&b, " In the middle one point in %d is drawn.", every)
+	}
+	for _, q := range held {
+		ys.add(q.Low, q.High)
+	}
+	f := newScatter(p.Size, title(p.X, "Expected normal quantile"), title(p.Y, "Residual"), xs, ys)
+	var ex, lo, hi []float64
+	shown := make([]XY, 0, len(order))
+	for _, k := range order {
+		shown = append(shown, points[k])
+		if q := held[k]; drawable(q.Low) && drawable(q.High) {
+			ex, lo, hi = append(ex, q.Expected), append(lo, q.Low), append(hi, q.High)
+		}
+	}
+	if len(ex) > 1 {
+		f.mark(title(p.Envelope, "envelope"))
+		f.band(ex, lo, hi, tint(grey, 0.22))
+		f.mark("")
+	}
+	var crowd []box
+	if p.Slope != 0 {
+		crowd = f.straight(p.Intercept, p.Slope)
+	}
+	f.scatter(shown, min(len(shown), maxPoints), crowd)
+	return f.pic, b.String()
+}
+
+// straight draws the line y = a + b·x across the ground, cut at its edges, and gives
+// the boxes it runs through.
+func (f *frame) straight(a, b float64) []box {
+	if !drawable(a) || !drawable(b) {
+		return nil
+	}
+	x0, x1 := f.h.lo, f.h.hi
+	if b == 0 {
+		if a < f.v.lo || a > f.v.hi {
+			return nil
+		}
+	} else {
+		lo, hi := (f.v.lo-a)/b, (f.v.hi-a)/b
+		if lo > hi {
+			lo, hi = hi, lo
+		}
+		x0, x1 = max(x0, lo), min(x1, hi)
+	}
+	if !(x0 < x1) {
+		return nil
+	}
+	px, py, qx, qy := f.x(x0), f.clampY(a+b*x0), f.x(x1), f.clampY(a+b*x1)
+	f.stroke(line{width: 0.9, colour: ink}, segment(px, py, qx, qy)...)
+	const pieces = 120
+	boxes := make([]box, pieces)
+	dx, dy := (qx-px)/pieces, (qy-py)/pieces
+	for i := range boxes {
+		x, y := px+dx*float64(i), py+dy*float64(i)
+		boxes[i] = box{x0: x, y0: min(y, y+dy) - 0.5, x1: x + dx, y1: max(y, y+dy) + 0.5}
+	}
+	return boxes
+}
+
+// Spread shows the standard deviation of each treatment against its mean, both on
+// logarithmic scales, where a power law is a straight line.
+type Spread struct {
+	Size
+	Response string // with its unit
+	Points   []Scale
+	// Intercept and Slope are of log₁₀ SD on log₁₀ mean; a slope of NaN draws no line.
+	Intercept, Slope float64
+}
+
+// Scale is the mean and standard deviation of one treatment.
+type Scale struct {
+	Label    string
+	Mean, SD float64
+}
+
+// Draw gives the picture, and the same in words.
+func (p Spread) Draw() (*doc.Picture, string) {
+	var points []XY
+	for _, q := range p.Points {
+		if q.Mean > 0 && q.SD > 0 && drawable(q.Mean) && drawable(q.SD) {
+			points = append(points, XY{Unit: q.Label, X: math.Log10(q.Mean), Y: math.Log10(q.SD), Named: true})
+		}
+	}
+	xs, ys, n := extent(points)
+	var b strings.Builder
+	fmt.Fprintf(&b, "%s: standard deviation against mean of %s, both on logarithmic scales", title(p.Response, "Values"), count(n, "treatment"))
+	if n > 0 {
+		fmt.Fprintf(&b, "; means from %s to %s, standard deviations from %s to %s", rounded(math.Pow(10, xs.lo)), rounded(math.Pow(10, xs.hi)),
+			rounded(math.Pow(10, ys.lo)), rounded(math.Pow(10, ys.hi)))
+	}
+	b.WriteString(".")
+	if drawable(p.Slope) && n > 1 {
+		fmt.Fprintf(&b, " The line has a slope of %s.", rounded(p.Slope))
+	}
+	if lost := len(p.Points) - n; lost > 0 {
+		fmt.Fprintf(&b, " %s not drawn: a mean or standard deviation that is not above nought has no logarithm.", count(lost, "treatment"))
+	}
+	if n == 0 {
+		return note(p.Size, "No means and standard deviations above nought to draw."), b.String()
+	}
+	w, h := p.resolve(250)
+	c := newCanvas(w, h)
+	x := logarithmic("Mean of "+title(p.Response, "the response")+" (log scale)", wide(xs), w-60, 34)
+	y := logarithmic("Standard deviation (log scale)", wide(ys), h-45, 22)
+	x.title, y.title = fit(x.title, w-60, titleSize, false), fit(y.title, h-10, titleSize, false)
+	x.grid = false
+	f := newFrame(c, x, y, insets{})
+	f.scatter(points, n, f.straight(p.Intercept, p.Slope))
+	return f.pic, b.String()
+}
+
+// wide gives a range of logarithms some width, so that small differences do not look
+// like large ones.
+func wide(s span) span {
+	const least = 0.12
+	if d := least - (s.hi - s.lo); d > 0 {
+		s.lo, s.hi = s.lo-d/2, s.hi+d/2
+	}
+	return s.padded(0.08)
+}
+
+// logarithmic makes an axis of a range of common logarithms, its ticks at the finest of
+// 1, of 1-2-5, or of evenly spaced numbers that the length has room for.
+func logarithmic(title string, s span, length, apart float64) axis {
+	a := axis{title: clean(title), span: s, grid: true}
+	room := max(length/apart, 2)
+	if s.hi-s.lo < 0.7 {
+		lo, hi := math.Pow(10, s.lo), math.Pow(10, s.hi)
+		step := niceStep((hi - lo) / room)
+		for _, v := range steps(span{lo: lo, hi: hi}, step) {
+			if v > 0 {
+				a.ticks = append(a.ticks, plot.Tick{Value: min(max(math.Log10(v), s.lo), s.hi), Label: plain(v, step)})
+			}
+		}
+		return a
+	}
+	in := []float64{1, 2, 5}
+	every := 1
+	if 3*(s.hi-s.lo) > room {
+		in = in[:1]
+		every = int(math.Ceil((s.hi - s.lo) / room))
+	}
+	for e := int(math.Floor(s.lo)); e <= int(math.Ceil(s.hi)); e++ {
+		if e%every != 0 {
+			continue
+		}
+		for _, m := range in {
+			v := float64(e) + math.Log10(m)
+			if v < s.lo || v > s.hi {
+				continue
+			}
+			label := plain(m*math.Pow(10, float64(e)), math.Pow(10, float64(e)))
+			if e > 5 || e < -4 {
+				label = "10" + raised(e)
+				if m != 1 {
+					label = fmt.Sprintf("%g × ", m) + label
+				}
+			}
+			a.ticks = append(a.ticks, plot.Tick{Value: v, Label: label})
+		}
+	}
+	return a
+}
