@@ -1,0 +1,716 @@
+package page
+
+import (
+	"fmt"
+	"strings"
+	"unicode/utf8"
+
+	"penwright/protocol/diag"
+	"penwright/render/doc"
+	"penwright/render/face"
+)
+
+// deepest is how far nodes are followed into nodes; nothing written by hand gets near.
+const deepest = 100
+
+// box is a piece of a page that is never broken: a line, a row, a picture. The
+// operations are relative to the left edge of the column and the top of the box.
+type box struct {
+	gap, height float64
+	keep        bool // stands on the same page as the box after it
+	ops         []Op
+	notes       []int // footnotes called in it
+	anchors     []anchor
+	within      []*band
+	pageOf      *pageOf
+}
+
+type anchor struct {
+	id string
+	y  float64
+}
+
+// pageOf is set when the number of a page is known.
+type pageOf struct {
+	anchor   string
+	right, y float64
+	style    style
+	element  *Element
+}
+
+// band is what encloses boxes: a table with its head, the ground of an aside.
+type band struct {
+	head []box // repeated at the top of every further page
+	// paint draws for the stretch of the band that stands on one page, beneath its boxes.
+	paint func(top, bottom float64) []Op
+}
+
+// item is a block of the top level on its way to the pages.
+type item struct {
+	boxes   []box
+	heading int // its level, 0: none
+	// figure makes the boxes of a figure no higher than a limit; it may float to the top
+	// of the next page.
+	figure func(highest float64) []box
+	turned bool // stands on a turned page
+	table  bool
+}
+
+// where says where blocks are set.
+type where struct {
+	x, width   float64
+	size, lead float64
+	parent     *Element
+	within     []*band
+	pos        diag.Pos // of the nearest node that has one
+	depth      int
+	bullets    int
+	note       bool // inside a footnote
+}
+
+type lack struct {
+	r   rune
+	pos diag.Pos
+}
+
+// title of a heading as the contents and the outline need it.
+type entry struct {
+	level         int
+	anchor        string
+	number, title string
+	text          []doc.Inline
+}
+
+type setter struct {
+	doc           *doc.Document
+	width, height float64 // of the paper
+	measure       float64
+	diags         diag.List
+	lacking       map[lack]bool
+	entries       []entry
+	headings      int // met so far
+	notes         [][]box
+	root          *Element
+}
+
+func newSetter(d *doc.Document) *setter {
+	s := &setter{doc: d, lacking: map[lack]bool{}, root: &Element{Role: Section}}
+	s.width, s.height = paper(d.Paper)
+	s.measure = s.width - 2*marginSide
+	s.collect(d.Blocks, 0)
+	return s
+}
+
+// collect lists the headings in the order in which they are going to be set.
+func (s *setter) collect(blocks []doc.Block, depth int) {
+	if depth > deepest {
+		return
+	}
+	for _, b := range blocks {
+		switch b := b.(type) {
+		case doc.Heading:
+			id := b.ID
+			if id == "" {
+				id = fmt.Sprintf("h:%d", len(s.entries)+1)
+			}
+			clean, _ := face.Clean(strings.Join(strings.Fields(plain(b.Text, 0)), " "))
+			number, _ := face.Clean(b.Number)
+			s.entries = append(s.entries, entry{level: min(max(b.Level, 1), 6), anchor: id, number: number, title: clean, text: b.Text})
+		case doc.List:
+			for _, item := range b.Items {
+				s.collect(item, depth+1)
+			}
+		case doc.Quote:
+			s.collect(b.Blocks, depth+1)
+		case doc.Aside:
+			s.collect(b.Blocks, depth+1)
+		}
+	}
+}
+
+// plain is the text of inlines without its marks.
+func plain(text []doc.Inline, depth int) string {
+	if depth > deepest {
+		return ""
+	}
+	var b strings.Builder
+	for _, n := range text {
+		switch n := n.(type) {
+		case doc.Text:
+			b.WriteString(n.Text)
+		case doc.CodeSpan:
+			b.WriteString(n.Text)
+		case doc.Ref:
+			b.WriteString(n.Text)
+		case doc.Emph:
+			b.WriteString(plain(n.Text, depth+1))
+		case doc.Strong:
+			b.WriteString(plain(n.Text, depth+1))
+		case doc.Sup:
+			b.WriteString(plain(n.Text, depth+1))
+		case doc.Sub:
+			b.WriteString(plain(n.Text, depth+1))
+		case doc.Link:
+			b.WriteString(plain(n.Text, depth+1))
+		case doc.Break:
+			b.WriteByte(' ')
+		}
+	}
+	return b.String()
+}
+
+// lineBoxes makes a box of each line. A paragraph leaves neither its first nor its last
+// line alone on a page.
+func lineBoxes(lines []line, st style, lead float64, w where, x float64, el *Element) []box {
+	boxes := make([]box, len(lines))
+	base := baseline(st, lead)
+	for i, l := range lines {
+		boxes[i] = box{
+			height: lead,
+			keep:   len(lines) > 1 && (i == 0 || i == len(lines)-2),
+			ops:    enclose(el, l.draw(x, base)),
+			notes:  l.notes(),
+			within: w.within,
+		}
+	}
+	return boxes
+}
+
+// baseline is the distance of the base line from the top of a line of a leading.
+func baseline(st style, lead float64) float64 {
+	f := face.Get(st.family, st.bold, st.italic)
+	return (lead+f.Ascent(st.size)-f.Descent(st.size))/2 - 0.02*st.size
+}
+
+// enclose puts ops between the marks of their element; links stand outside, since they
+// are no ink.
+func enclose(el *Element, ops []Op) []Op {
+	if len(ops) == 0 {
+		return nil
+	}
+	out := make([]Op, 0, len(ops)+2)
+	out = append(out, Begin{el})
+	for _, o := range ops {
+		if _, ok := o.(Link); !ok {
+			out = append(out, o)
+		}
+	}
+	out = append(out, End{})
+	for _, o := range ops {
+		if _, ok := o.(Link); ok {
+			out = append(out, o)
+		}
+	}
+	return out
+}
+
+func (s *setter) top() where {
+	return where{width: s.measure, size: textSize, lead: textLead, parent: s.root}
+}
+
+// title sets the head of the first page.
+func (s *setter) title() []item {
+	d := s.doc
+	w := s.top()
+	var boxes []box
+	if d.Title != "" {
+		el := &Element{Role: Title, Parent: s.root}
+		st := bold(sans(19))
+		boxes = append(boxes, lineBoxes(ragged(s.plainAtoms(d.Title, st), w.width), st, 23, w, 0, el)...)
+	}
+	var parts []string
+	for _, p := range []string{d.Code, d.Status, d.Author, d.Date} {
+		if p != "" {
+			parts = append(parts, strings.ReplaceAll(p, " ", "\u00A0"))
+		}
+	}
+	if len(parts) > 0 {
+		el := &Element{Role: Paragraph, Parent: s.root}
+		st := in(grey, sans(9))
+		lines := lineBoxes(ragged(s.plainAtoms(strings.Join(parts, "  ·  "), st), w.width), st, 12.5, w, 0, el)
+		lines[0].gap = 5
+		boxes = append(boxes, lines...)
+	}
+	if len(boxes) == 0 {
+		return nil
+	}
+	boxes = append(boxes, box{gap: 7, height: 12, ops: artifact(Box{Width: w.width, Height: thick, Colour: ink})})
+	for i := range boxes[:len(boxes)-1] {
+		boxes[i].keep = true
+	}
+	return []item{{boxes: boxes}}
+}
+
+func artifact(ops ...Op) []Op { return enclose(&Element{Role: Artifact}, ops) }
+
+// items sets the blocks of the top level.
+func (s *setter) items(blocks []doc.Block) []item {
+	var items []item
+	for _, b := range blocks {
+		w := s.top()
+		switch b := b.(type) {
+		case doc.Heading:
+			items = append(items, item{boxes: s.heading(b, w), heading: min(max(b.Level, 1), 6)})
+		case doc.Table:
+			items = append(items, s.tableItem(b, w))
+		case doc.Figure:
+			items = append(items, s.figureItem(b, w))
+		default:
+			if boxes := s.block(b, w); len(boxes) > 0 {
+				items = append(items, item{boxes: boxes})
+			}
+		}
+	}
+	return items
+}
+
+func (s *setter) blocks(blocks []doc.Block, w where) []box {
+	var boxes []box
+	if w.depth > deepest {
+		return nil
+	}
+	for _, b := range blocks {
+		boxes = append(boxes, s.block(b, w)...)
+	}
+	return boxes
+}
+
+func (s *setter) block(b doc.Block, w where) []box {
+	w.depth++
+	switch b := b.(type) {
+	case nil:
+		return nil
+	case doc.Heading:
+		return s.heading(b, w)
+	case doc.Paragraph:
+		st := serif(w.size)
+		el := &Element{Role: Paragraph, Parent: w.parent}
+		lines := lineBoxes(justified(s.atoms(b.Text, st, s.at(b.Pos, w)), w.width), st, w.lead, w, w.x, el)
+		if len(lines) > 0 {
+			lines[0].gap = paragraphGap
+		}
+		return lines
+	case doc.List:
+		return s.list(b, w)
+	case doc.Quote:
+		in := w
+		in.parent = &Element{Role: Quote, Parent: w.parent}
+		step := min(quoteStep, w.width/6)
+		in.x, in.width = w.x+step, w.width-2*step
+		in.size, in.lead = w.size-0.5, w.lead-0.75
+		boxes := s.blocks(b.Blocks, in)
+		space(boxes, paragraphGap+1, 1)
+		return boxes
+	case doc.Code:
+		return s.code(b, w)
+	case doc.Rule:
+		return []box{{gap: 11, height: 8, within: w.within, ops: artifact(Box{
+			X: w.x + w.width/2 - 30, Width: 60, Height: thin, Colour: faint,
+		})}}
+	case doc.Aside:
+		return s.aside(b, w)
+	case doc.Contents:
+		return s.contents(w)
+	case doc.Table:
+		return s.table(b, w).boxes
+	case doc.Figure:
+		return s.figure(b, w, s.pageHeight(false))
+	default:
+		panic("page: unknown block")
+	}
+}
+
+// at gives the position of a node, or of the one around it.
+func (s *setter) at(pos diag.Pos, w where) diag.Pos {
+	if pos.File == "" && pos.Line == 0 {
+		return w.pos
+	}
+	return pos
+}
+
+// space sets the gap above the first box and the height below the last.
+func space(boxes []box, above, below float64) {
+	if len(boxes) > 0 {
+		boxes[0].gap = above
+		boxes[len(boxes)-1].height += below
+	}
+}
+
+func (s *setter) heading(h doc.Heading, w where) []box {
+	level := min(max(h.Level, 1), 6)
+	look := headings[level]
+	st := bold(sans(look.size))
+	if level >= 4 {
+		st = italic(sans(look.size))
+	}
+	text := h.Text
+	if h.Number != "" {
+		text = append([]doc.Inline{doc.Text{Text: h.Number + "\u2002"}}, text...)
+	}
+	el := &Element{Role: Heading, Level: level, Parent: w.parent}
+	boxes := lineBoxes(ragged(s.atoms(text, st, s.at(h.Pos, w)), w.width), st, look.lead, w, w.x, el)
+	if len(boxes) == 0 {
+		boxes = []box{{within: w.within}}
+	}
+	for i := range boxes {
+		boxes[i].keep = true
+	}
+	space(boxes, look.above, look.below)
+	id := h.ID
+	if !w.note {
+		if s.headings < len(s.entries) {
+			id = s.entries[s.headings].anchor
+		}
+		s.headings++
+	}
+	if id != "" {
+		boxes[0].anchors = append(boxes[0].anchors, anchor{id: id})
+	}
+	return boxes
+}
+
+func (s *setter) list(l doc.List, w where) []box {
+	var boxes []box
+	el := &Element{Role: List, Parent: w.parent}
+	step := min(listStep, w.width/5)
+	if l.Ordered {
+		last := textWidth(fmt.Sprintf("%d.", l.Start+len(l.Items)), serif(w.size))
+		step = min(max(step, last+6), w.width/2)
+	}
+	for i, content := range l.Items {
+		it := &Element{Role: Item, Parent: el}
+		in := w
+		in.x, in.width = w.x+step, w.width-step
+		in.parent = &Element{Role: ItemBody, Parent: it}
+		in.bullets++
+		label := []string{"•", "–", "◦"}[w.bullets%3]
+		if l.Ordered {
+			label = fmt.Sprintf("%d.", l.Start+i)
+		}
+		inner := s.blocks(content, in)
+		if len(inner) == 0 {
+			inner = []box{{height: w.lead, within: w.within}}
+		}
+		inner[0].gap = 1
+		if !l.Tight {
+			inner[0].gap = paragraphGap - 1
+		}
+		if i == 0 {
+			inner[0].gap = paragraphGap - 1
+		}
+		st := serif(w.size)
+		right := w.x + step - 6
+		mark := lineBoxes(ragged(s.plainAtoms(label, st), w.width), st, w.lead, w,
+			right-textWidth(label, st), &Element{Role: ItemLabel, Parent: it})
+		if len(mark) > 0 {
+			inner[0].ops = append(mark[0].ops, inner[0].ops...)
+		}
+		boxes = append(boxes, inner...)
+	}
+	return boxes
+}
+
+func (s *setter) code(c doc.Code, w where) []box {
+	st := style{family: face.Mono, size: codeSize, colour: ink, code: true}
+	el := &Element{Role: Code, Parent: w.parent}
+	const pad = 6
+	advance := float64(face.Get(face.Mono, false, false).Advance('m')) * codeSize / 1000
+	most := max(int((w.width-2*pad)/advance), 8)
+	in := w
+	in.within = append(append([]*band(nil), w.within...), &band{paint: func(top, bottom float64) []Op {
+		return artifact(Box{X: w.x, Y: top, Width: w.width, Height: bottom - top, Colour: codeFill})
+	}})
+	var boxes []box
+	text := strings.TrimRight(strings.ReplaceAll(strings.ToValidUTF8(c.Text, "\uFFFD"), "\r", ""), "\n")
+	for _, row := range strings.Split(text, "\n") {
+		clean, missing := face.Clean(untab(row))
+		for _, r := range missing {
+			s.missing(r, w.pos)
+		}
+		for first := true; first || clean != ""; first = false {
+			part := clean
+			if utf8.RuneCountInString(part) > most {
+				part = string([]rune(part[:min(len(part), 4*most)])[:most])
+			}
+			clean = clean[len(part):]
+			a := atom{}
+			for _, run := range face.Get(face.Mono, false, false).Runs(part) {
+				f := frag{face: run.Face, text: run.Text, size: st.size, colour: st.colour, width: run.Face.Width(run.Text, st.size)}
+				a.frags = append(a.frags, f)
+				a.width += f.width
+			}
+			boxes = append(boxes, lineBoxes([]line{{atoms: []atom{a}}}, st, codeLead, in, w.x+pad, el)...)
+		}
+	}
+	return framed(boxes, in.within, 4, 4, paragraphGap+2)
+}
+
+func untab(s string) string {
+	if !strings.Contains(s, "\t") {
+		return s
+	}
+	var b strings.Builder
+	col := 0
+	for _, r := range s {
+		if r == '\t' {
+			n := 4 - col%4
+			b.WriteString("    "[:n])
+			col += n
+			continue
+		}
+		b.WriteRune(r)
+		col++
+	}
+	return b.String()
+}
+
+// framed pads boxes that share a ground, above and below.
+func framed(boxes []box, within []*band, above, below, gap float64) []box {
+	if len(boxes) == 0 {
+		return nil
+	}
+	boxes[0].gap = 0
+	boxes[len(boxes)-1].keep = true
+	out := make([]box, 0, len(boxes)+2)
+	out = append(out, box{gap: gap, height: above, keep: true, within: within})
+	out = append(out, boxes...)
+	out = append(out, box{height: below, within: within})
+	if len(boxes) > 1 {
+		out[1].keep = true
+		out[len(out)-3].keep = true
+	}
+	return out
+}
+
+func (s *setter) aside(a doc.Aside, w where) []box {
+	const padX, padY, barWidth = 11, 7, 2.5
+	fill, bar := asideLook(a.Kind)
+	in := w
+	in.within = append(append([]*band(nil), w.within...), &band{paint: func(top, bottom float64) []Op {
+		return artifact(
+			Box{X: w.x, Y: top, Width: w.width, Height: bottom - top, Colour: fill},
+			Box{X: w.x, Y: top, Width: barWidth, Height: bottom - top, Colour: bar},
+		)
+	}})
+	in.x, in.width = w.x+padX, w.width-2*padX
+	in.parent = &Element{Role: Aside, Parent: w.parent}
+	var boxes []box
+	if len(a.Title) > 0 {
+		st := bold(sans(9))
+		el := &Element{Role: Paragraph, Parent: in.parent}
+		boxes = lineBoxes(ragged(s.atoms(a.Title, st, w.pos), in.width), st, 12.5, in, in.x, el)
+		for i := range boxes {
+			boxes[i].keep = true
+		}
+	}
+	inner := s.blocks(a.Blocks, in)
+	if len(inner) > 0 && len(boxes) > 0 {
+		inner[0].gap = 3
+	}
+	boxes = framed(append(boxes, inner...), in.within, padY, padY, 10)
+	if len(boxes) > 0 {
+		// Air below the ground, outside it.
+		boxes = append(boxes, box{height: 5, within: w.within})
+		boxes[len(boxes)-2].keep = true
+	}
+	return boxes
+}
+
+// contents lists the headings down to the third level, or the second where there are
+// many, with their pages.
+func (s *setter) contents(w where) []box {
+	deep := 3
+	n := 0
+	for _, e := range s.entries {
+		if e.level <= 3 {
+			n++
+		}
+	}
+	if n > 45 {
+		deep = 2
+	}
+	parent := &Element{Role: Contents, Parent: w.parent}
+	var boxes []box
+	st := bold(sans(headings[2].size))
+	head := lineBoxes(ragged(s.plainAtoms("Contents", st), w.width), st, headings[2].lead, w, w.x,
+		&Element{Role: Paragraph, Parent: parent})
+	space(head, 14, 4)
+	for i := range head {
+		head[i].keep = true
+	}
+	for _, e := range s.entries {
+		if e.level > deep {
+			continue
+		}
+		st := serif(w.size)
+		indent := float64(e.level-2) * 22
+		gap := 0.0
+		if e.level == 1 {
+			st, indent, gap = bold(sans(w.size-0.8)), 0, 4
+		}
+		numberWidth := 0.0
+		if e.number != "" {
+			numberWidth = max(22, textWidth(e.number, st)+7)
+		}
+		if e.level == 3 {
+			indent += numberWidth * 0.2
+		}
+		el := &Element{Role: ContentsEntry, Parent: parent}
+		x := w.x + indent
+		if e.level > 1 {
+			x += 22 * 1
+		}
+		avail := max(w.width-(x-w.x)-numberWidth-34, 40)
+		link := st
+		link.link = "#" + e.anchor
+		lines := lineBoxes(ragged(s.atoms(e.text, link, w.pos), avail), st, w.lead, w, x+numberWidth, el)
+		if len(lines) == 0 {
+			continue
+		}
+		for i := range lines {
+			lines[i].notes = nil // a note belongs to the heading itself
+		}
+		if e.number != "" {
+			label := lineBoxes(ragged(s.plainAtoms(e.number, st), w.width), st, w.lead, w, x, el)
+			if len(label) > 0 {
+				lines[0].ops = append(label[0].ops, lines[0].ops...)
+			}
+		}
+		lines[0].gap = gap
+		number := sans(w.size - 0.8)
+		if e.level > 1 {
+			number = serif(w.size)
+		}
+		number.link = link.link
+		lines[len(lines)-1].pageOf = &pageOf{anchor: e.anchor, right: w.x + w.width, y: baseline(st, w.lead), style: number, element: el}
+		boxes = append(boxes, lines...)
+	}
+	if len(boxes) == 0 {
+		return nil
+	}
+	boxes = append(head, boxes...)
+	boxes[len(boxes)-1].height += 8
+	return boxes
+}
+
+// caption sets "Table 3. …" or "Figure 3. …".
+func (s *setter) caption(label, number string, text []doc.Inline, w where, pos diag.Pos, el *Element) []box {
+	st := sans(smallSize)
+	var all []doc.Inline
+	if number != "" {
+		end := "."
+		if len(text) == 0 {
+			end = ""
+		}
+		all = append(all, doc.Strong{Text: []doc.Inline{doc.Text{Text: label + "\u00A0" + number + end}}}, doc.Text{Text: " "})
+	}
+	all = append(all, text...)
+	if len(all) == 0 {
+		return nil
+	}
+	return lineBoxes(ragged(s.atoms(all, st, pos), w.width), st, smallLead, w, w.x, el)
+}
+
+func (s *setter) figureItem(f doc.Figure, w where) item {
+	return item{
+		boxes:  s.figure(f, w, s.pageHeight(false)),
+		figure: func(highest float64) []box { return s.figure(f, w, highest) },
+	}
+}
+
+// figure sets a picture no wider than the column with its caption below, together no
+// higher than a limit.
+func (s *setter) figure(f doc.Figure, w where, highest float64) []box {
+	pos := s.at(f.Pos, w)
+	el := &Element{Role: Figure, Alt: f.Alt, Parent: w.parent}
+	caption := s.caption("Figure", f.Number, f.Caption, w, pos, &Element{Role: Caption, Parent: w.parent})
+	below := 0.0
+	for _, b := range caption {
+		below += b.height
+	}
+	pic := f.Picture
+	picture := box{gap: floatGap, keep: true, within: w.within}
+	if pic != nil && pic.Width > 0 && pic.Height > 0 && finite(pic.Width) && finite(pic.Height) {
+		room := max(highest-below-floatGap-7, 40)
+		scale := min(1, w.width/pic.Width, room/pic.Height)
+		picture.height = pic.Height * scale
+		picture.ops = enclose(el, []Op{Picture{X: w.x, Scale: scale, Picture: pic}})
+		for _, o := range pic.Ops {
+			if l, ok := o.(doc.Label); ok {
+				_, missing := face.Clean(l.Text)
+				for _, r := range missing {
+					s.missing(r, pos)
+				}
+			}
+		}
+	} else if f.Alt != "" {
+		st := italic(serif(w.size))
+		lines := lineBoxes(ragged(s.plainAtoms(f.Alt, st), w.width), st, w.lead, w, w.x, el)
+		if len(lines) > 0 {
+			lines[0].gap = floatGap
+			for i := range lines {
+				lines[i].keep = true
+			}
+			lines[0].anchors = anchors(f.ID)
+			lines[len(lines)-1].keep = len(caption) > 0
+			space(caption, 5, floatGap-4)
+			return append(lines, caption...)
+		}
+	}
+	picture.anchors = anchors(f.ID)
+	for i := range caption {
+		caption[i].keep = i < len(caption)-1
+	}
+	if len(caption) == 0 {
+		picture.keep = false
+		picture.height += floatGap - 4
+	}
+	space(caption, 7, floatGap-6)
+	return append([]box{picture}, caption...)
+}
+
+func anchors(id string) []anchor {
+	if id == "" {
+		return nil
+	}
+	return []anchor{{id: id}}
+}
+
+func finite(v float64) bool { return v-v == 0 }
+
+// layNotes sets the footnotes, each with its number hanging before it.
+func (s *setter) layNotes() {
+	for i, blocks := range s.doc.Notes {
+		label := fmt.Sprint(i + 1)
+		st := serif(noteSize)
+		el := &Element{Role: Note, Parent: s.root}
+		hang := 12.0
+		if i >= 99 {
+			hang = 18
+		}
+		w := where{x: hang, width: s.measure - hang, size: noteSize, lead: noteLead, parent: el, note: true}
+		boxes := s.blocks(blocks, w)
+		if len(boxes) == 0 {
+			boxes = []box{{height: noteLead}}
+		}
+		boxes[0].gap = 2
+		mark := raised(st, raise)
+		l := lineBoxes(ragged(s.plainAtoms(label, mark), s.measure), st, noteLead, w, 0, el)
+		if len(l) > 0 {
+			boxes[0].ops = append(l[0].ops, boxes[0].ops...)
+		}
+		boxes[0].anchors = append(boxes[0].anchors, anchor{id: noteAnchor(i + 1)[1:]})
+		s.notes = append(s.notes, boxes)
+	}
+}
+
+// pageHeight is the height of the text on a page.
+func (s *setter) pageHeight(turned bool) float64 {
+	if turned {
+		return s.width - marginTop - marginBottom
+	}
+	return s.height - marginTop - marginBottom
+}
+
+// turnedMeasure is the width of the text on a turned page.
+func (s *setter) turnedMeasure() float64 { return s.height - 2*marginSide }

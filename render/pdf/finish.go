@@ -1,0 +1,549 @@
+package pdf
+
+import (
+	"bytes"
+	"compress/zlib"
+	"crypto/md5"
+	"encoding/hex"
+	"encoding/xml"
+	"errors"
+	"fmt"
+	"slices"
+	"sort"
+	"strconv"
+	"strings"
+	"unicode/utf8"
+
+	"penwright/render/face"
+	"penwright/render/page"
+)
+
+// finish makes the file that the drawing library wrote (release 1.16.2, whose bytes
+// are known) into the one that is wanted: outline, links, language, metadata, output
+// intent, attachments, identifier. Each change asserts that it found its place.
+func finish(d *drawn, book *page.Book, m meta, files []Attachment) ([]byte, error) {
+	objects, err := split(d.file)
+	if err != nil {
+		return nil, err
+	}
+	f := &finisher{objects: objects, book: book, meta: m}
+	// The library ends with the information and the catalog.
+	f.catalog, f.info = len(objects)-1, len(objects)-2
+	for _, step := range []func() error{
+		func() error { return f.fonts(d.runes) },
+		f.pages,
+		func() error { return f.attach(files) },
+		f.root,
+	} {
+		if err := step(); err != nil {
+			return nil, err
+		}
+	}
+	return f.bytes(), nil
+}
+
+type finisher struct {
+	objects       [][]byte // by number, each from its dictionary to before endobj; [0] is unused
+	book          *page.Book
+	meta          meta
+	catalog, info int
+	files         []int // of the file specifications
+	names         []string
+}
+
+var errShape = errors.New("writing the PDF: the drawing library wrote a file of another shape than release 1.16.2 does")
+
+// split cuts a file with a plain cross-reference table into the contents of its objects.
+func split(file []byte) ([][]byte, error) {
+	tail := bytes.LastIndex(file, []byte("startxref\n"))
+	if tail < 0 {
+		return nil, errShape
+	}
+	var table int
+	if _, err := fmt.Sscanf(string(file[tail:]), "startxref\n%d", &table); err != nil || table < 0 || table >= tail {
+		return nil, errShape
+	}
+	var count int
+	if _, err := fmt.Sscanf(string(file[table:min(table+40, tail)]), "xref\n0 %d\n", &count); err != nil || count < 5 || count > len(file) {
+		return nil, errShape
+	}
+	lines := bytes.SplitN(file[table:tail], []byte("\n"), count+3)
+	if len(lines) < count+3 {
+		return nil, errShape
+	}
+	type place struct{ number, offset int }
+	places := make([]place, 0, count)
+	for i := 1; i < count; i++ {
+		field, _, _ := strings.Cut(string(lines[i+2]), " ")
+		offset, err := strconv.Atoi(field)
+		if err != nil || offset <= 0 || offset >= table {
+			return nil, errShape
+		}
+		places = append(places, place{i, offset})
+	}
+	sort.Slice(places, func(i, j int) bool { return places[i].offset < places[j].offset })
+	objects := make([][]byte, count)
+	for i, p := range places {
+		end := table
+		if i+1 < len(places) {
+			end = places[i+1].offset
+		}
+		body := file[p.offset:end]
+		head := fmt.Sprintf("%d 0 obj\n", p.number)
+		if !bytes.HasPrefix(body, []byte(head)) || !bytes.HasSuffix(body, []byte("\nendobj\n")) {
+			return nil, errShape
+		}
+		objects[p.number] = body[len(head) : len(body)-len("\nendobj\n")]
+	}
+	return objects, nil
+}
+
+// add appends an object and gives its number.
+func (f *finisher) add(body string) int {
+	f.objects = append(f.objects, []byte(body))
+	return len(f.objects) - 1
+}
+
+// stream appends an object with a stream; dict is what its dictionary holds besides
+// length and filter.
+func (f *finisher) stream(dict string, data []byte, compress bool) int {
+	f.objects = append(f.objects, streamObject(dict, data, compress))
+	return len(f.objects) - 1
+}
+
+func streamObject(dict string, data []byte, compress bool) []byte {
+	var b bytes.Buffer
+	if compress {
+		var z bytes.Buffer
+		w := zlib.NewWriter(&z)
+		w.Write(data) // a bytes.Buffer takes everything
+		w.Close()
+		data = z.Bytes()
+		dict += " /Filter /FlateDecode"
+	}
+	fmt.Fprintf(&b, "<<%s /Length %d>>\nstream\n", strings.TrimSpace(dict), len(data))
+	b.Write(data)
+	b.WriteString("\nendstream")
+	return b.Bytes()
+}
+
+// replace changes the one place in an object where old stands.
+func (f *finisher) replace(number int, old, with string) error {
+	if number >= len(f.objects) || bytes.Count(f.objects[number], []byte(old)) != 1 {
+		return errShape
+	}
+	f.objects[number] = bytes.Replace(f.objects[number], []byte(old), []byte(with), 1)
+	return nil
+}
+
+// fonts names the subsets as such, and maps their codes to Unicode block by block: one
+// range over all codes, as the library writes it, breaks the rules of such maps.
+func (f *finisher) fonts(used map[string]*runeSet) error {
+	found := 0
+	for i := range f.objects {
+		const mark = "<</Type /Font\n/Subtype /Type0\n/BaseFont /utf8"
+		if !bytes.HasPrefix(f.objects[i], []byte(mark)) {
+			continue
+		}
+		name, _, _ := strings.Cut(string(f.objects[i][len(mark):]), "\n")
+		set := used[name]
+		if set == nil {
+			return errShape
+		}
+		found++
+		old := "/utf8" + name + "\n"
+		with := "/" + subsetName(name, set) + "\n"
+		for _, n := range []int{i, i + 1, i + 4} {
+			if err := f.replace(n, old, with); err != nil {
+				return err
+			}
+		}
+		if f.objects[i+2] == nil || !bytes.Contains(f.objects[i+2], []byte("begincmap")) {
+			return errShape
+		}
+		f.objects[i+2] = streamObject("", toUnicode(set), true)
+	}
+	if found != len(used) {
+		return errShape
+	}
+	return nil
+}
+
+// subsetName is the name of a face after the six letters that mark a subset.
+func subsetName(name string, set *runeSet) string {
+	sum := md5.New()
+	for _, v := range set {
+		fmt.Fprintf(sum, "%x,", v)
+	}
+	tag := sum.Sum([]byte(nil))[:6]
+	for i := range tag {
+		tag[i] = 'A' + tag[i]%26
+	}
+	names := []string{"LiberationSerif", "LiberationSans", "LiberationMono", "DejaVuSans"}
+	styles := []string{"", "-Italic", "-Bold", "-BoldItalic"}
+	for i := 0; i < face.Count(); i++ {
+		if faceAt(i).Name == name {
+			return string(tag) + "+" + names[i/4] + styles[i%4]
+		}
+	}
+	return string(tag) + "+" + name
+}
+
+func toUnicode(set *runeSet) []byte {
+	var blocks []int
+	for b := 0; b < 256; b++ {
+		// The library keeps the first codes in every subset.
+		if b == 0 || set[4*b]|set[4*b+1]|set[4*b+2]|set[4*b+3] != 0 {
+			blocks = append(blocks, b)
+		}
+	}
+	var b bytes.Buffer
+	b.WriteString("/CIDInit /ProcSet findresource begin\n12 dict begin\nbegincmap\n" +
+		"/CIDSystemInfo <</Registry (Adobe) /Ordering (UCS) /Supplement 0>> def\n" +
+		"/CMapName /Adobe-Identity-UCS def\n/CMapType 2 def\n" +
+		"1 begincodespacerange\n<0000> <FFFF>\nendcodespacerange\n")
+	for part := range slices.Chunk(blocks, 100) {
+		fmt.Fprintf(&b, "%d beginbfrange\n", len(part))
+		for _, v := range part {
+			fmt.Fprintf(&b, "<%02X00> <%02XFF> <%02X00>\n", v, v, v)
+		}
+		b.WriteString("endbfrange\n")
+	}
+	b.WriteString("endcmap\nCMapName currentdict /CMap defineresource pop\nend\nend\n")
+	return b.Bytes()
+}
+
+// pageObject is the number of page i: the library writes page and content in turn.
+func pageObject(i int) int { return 3 + 2*i }
+
+// pages gives each page its links.
+func (f *finisher) pages() error {
+	for i := range f.book.Pages {
+		pg := &f.book.Pages[i]
+		var refs []string
+		for _, o := range pg.Ops {
+			l, ok := o.(page.Link)
+			if !ok {
+				continue
+			}
+			refs = append(refs, fmt.Sprintf("%d 0 R", f.add(f.link(pg, l))))
+		}
+		extra := ""
+		if len(refs) > 0 {
+			extra = "/Annots [" + strings.Join(refs, " ") + "]\n/Tabs /S\n"
+		}
+		if err := f.replace(pageObject(i), "<</Type /Page\n", "<</Type /Page\n"+extra); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+func (f *finisher) link(pg *page.Page, l page.Link) string {
+	rect := fmt.Sprintf("[%s]", numbers(l.X, pg.Height-l.Y-l.Height, l.X+l.Width, pg.Height-l.Y))
+	action := ""
+	if id, inside := strings.CutPrefix(l.Dest, "#"); inside {
+		action = "/Dest " + f.dest(f.book.Anchors[id])
+	} else {
+		action = "/A <</S /URI /URI " + literal(uri(l.Dest)) + ">>"
+	}
+	return "<</Type /Annot /Subtype /Link /F 4 /Border [0 0 0] /Rect " + rect + " " + action + ">>"
+}
+
+func (f *finisher) dest(at page.Place) string {
+	height := f.book.Pages[at.Page].Height
+	return fmt.Sprintf("[%d 0 R /XYZ null %s null]", pageObject(at.Page), numbers(min(height-at.Y+12, height)))
+}
+
+func numbers(list ...float64) string {
+	var b []byte
+	for i, v := range list {
+		if i > 0 {
+			b = append(b, ' ')
+		}
+		b = number(b, v)
+	}
+	return string(b)
+}
+
+// uri keeps a URL to the bytes that one may have.
+func uri(s string) string {
+	var b strings.Builder
+	for i := 0; i < len(s); i++ {
+		if c := s[i]; c <= 0x20 || c >= 0x7F {
+			fmt.Fprintf(&b, "%%%02X", c)
+		} else {
+			b.WriteByte(c)
+		}
+	}
+	return b.String()
+}
+
+// literal writes an ASCII string.
+func literal(s string) string {
+	return "(" + strings.NewReplacer(`\`, `\\`, "(", `\(`, ")", `\)`, "\r", `\r`, "\n", `\n`).Replace(s) + ")"
+}
+
+// textString writes a string for a reader's eyes.
+func textString(s string) string {
+	s = strings.ToValidUTF8(s, "\uFFFD")
+	for i := 0; i < len(s); i++ {
+		if c := s[i]; c < 0x20 || c >= 0x7F {
+			return utf16Hex(s)
+		}
+	}
+	return literal(s)
+}
+
+// name writes a name, its odd bytes as codes.
+func name(s string) string {
+	var b strings.Builder
+	b.WriteByte('/')
+	for i := 0; i < len(s); i++ {
+		c := s[i]
+		if c <= 0x20 || c >= 0x7F || strings.IndexByte("#/()<>[]{}%", c) >= 0 {
+			fmt.Fprintf(&b, "#%02X", c)
+		} else {
+			b.WriteByte(c)
+		}
+	}
+	return b.String()
+}
+
+// outline writes the bookmarks and gives the number of their root, 0 where there are none.
+func (f *finisher) outline() int {
+	entries := f.book.Outline
+	if len(entries) == 0 {
+		return 0
+	}
+	root := len(f.objects)
+	type node struct {
+		parent            int // index in nodes
+		children          []int
+		entry             page.Entry
+		before, after, at int
+	}
+	nodes := []node{{at: root}}
+	path := []int{0} // from the root to the entry before
+	for i, e := range entries {
+		for len(path) > 1 && nodes[path[len(path)-1]].entry.Level >= e.Level {
+			path = path[:len(path)-1]
+		}
+		parent := path[len(path)-1]
+		nodes = append(nodes, node{parent: parent, entry: e, at: root + 1 + i})
+		nodes[parent].children = append(nodes[parent].children, len(nodes)-1)
+		path = append(path, len(nodes)-1)
+	}
+	family := func(n *node) string {
+		if len(n.children) == 0 {
+			return ""
+		}
+		first, last := n.children[0], n.children[len(n.children)-1]
+		return fmt.Sprintf(" /First %d 0 R /Last %d 0 R", nodes[first].at, nodes[last].at)
+	}
+	for i := range nodes {
+		for k, c := range nodes[i].children {
+			if k > 0 {
+				nodes[c].before = nodes[nodes[i].children[k-1]].at
+			}
+			if k+1 < len(nodes[i].children) {
+				nodes[c].after = nodes[nodes[i].children[k+1]].at
+			}
+		}
+	}
+	f.add(fmt.Sprintf("<</Type /Outlines%s /Count %d>>", family(&nodes[0]), len(nodes[0].children)))
+	for i := 1; i < len(nodes); i++ {
+		n := &nodes[i]
+		body := fmt.Sprintf("<</Title %s /Parent %d 0 R%s", textString(n.entry.Title), nodes[n.parent].at, family(n))
+		if n.before > 0 {
+			body += fmt.Sprintf(" /Prev %d 0 R", n.before)
+		}
+		if n.after > 0 {
+			body += fmt.Sprintf(" /Next %d 0 R", n.after)
+		}
+		if len(n.children) > 0 {
+			body += fmt.Sprintf(" /Count -%d", len(n.children)) // closed
+		}
+		f.add(body + " /Dest " + f.dest(n.entry.Place) + ">>")
+	}
+	return root
+}
+
+// attach writes the files that ride along.
+func (f *finisher) attach(files []Attachment) error {
+	sorted := slices.Clone(files)
+	slices.SortStableFunc(sorted, func(a, b Attachment) int { return strings.Compare(a.Name, b.Name) })
+	for i, a := range sorted {
+		if a.Name == "" || !utf8.ValidString(a.Name) {
+			return fmt.Errorf("attaching %q: a file needs a name in UTF-8", a.Name)
+		}
+		if i > 0 && sorted[i-1].Name == a.Name {
+			return fmt.Errorf("attaching %q: two files have this name", a.Name)
+		}
+		relation := a.Relationship
+		switch relation {
+		case "":
+			relation = "Unspecified"
+		case "Source", "Data", "Alternative", "Supplement", "Unspecified":
+		default:
+			return fmt.Errorf("attaching %q: unknown relationship %q", a.Name, relation)
+		}
+		mime := a.MIME
+		if mime == "" {
+			mime = "application/octet-stream"
+		}
+		params := fmt.Sprintf("/Size %d", len(a.Data))
+		if date := f.meta.date(); date != "" {
+			params += " /ModDate " + date
+		}
+		sum := md5.Sum(a.Data)
+		params += " /CheckSum <" + hex.EncodeToString(sum[:]) + ">"
+		stream := f.stream("/Type /EmbeddedFile /Subtype "+name(mime)+" /Params <<"+params+">>", a.Data, true)
+		spec := fmt.Sprintf("<</Type /Filespec /F %s /UF %s /EF <</F %d 0 R /UF %d 0 R>> /AFRelationship /%s",
+			textString(a.Name), textString(a.Name), stream, stream, relation)
+		if a.Description != "" {
+			spec += " /Desc " + textString(a.Description)
+		}
+		f.files = append(f.files, f.add(spec+">>"))
+		f.names = append(f.names, a.Name)
+	}
+	return nil
+}
+
+// date is the date of making as PDF writes it, empty where there is none.
+func (m meta) date() string {
+	if m.options.Date.IsZero() {
+		return ""
+	}
+	return "(D:" + m.options.Date.UTC().Format("20060102150405") + "Z)"
+}
+
+// root writes information, metadata and catalog.
+func (f *finisher) root() error {
+	if !bytes.Contains(f.objects[f.catalog], []byte("/Type /Catalog\n")) ||
+		!bytes.Contains(f.objects[f.info], []byte("/CreationDate")) {
+		return errShape
+	}
+	m := f.meta
+	var info strings.Builder
+	info.WriteString("<<")
+	for _, kv := range [][2]string{
+		{"Title", m.title}, {"Author", m.author}, {"Subject", m.options.Subject},
+		{"Keywords", m.options.Keywords}, {"Producer", m.options.Producer},
+	} {
+		if kv[1] != "" {
+			fmt.Fprintf(&info, "/%s %s\n", kv[0], textString(printable(kv[1])))
+		}
+	}
+	if date := m.date(); date != "" {
+		fmt.Fprintf(&info, "/CreationDate %s\n/ModDate %s\n", date, date)
+	}
+	info.WriteString(">>")
+	f.objects[f.info] = []byte(info.String())
+
+	xmp := f.stream("/Type /Metadata /Subtype /XML", m.xmp(), false)
+	icc := f.stream("/N 3 /Alternate /DeviceRGB", srgb(), true)
+	intent := f.add(fmt.Sprintf("<</Type /OutputIntent /S /GTS_PDFA1 /OutputConditionIdentifier (sRGB IEC61966-2.1)"+
+		" /Info (sRGB IEC61966-2.1) /DestOutputProfile %d 0 R>>", icc))
+	outline := f.outline()
+
+	var c strings.Builder
+	c.WriteString("<</Type /Catalog /Pages 1 0 R /ViewerPreferences <</DisplayDocTitle true>>\n")
+	if m.lang != "" {
+		fmt.Fprintf(&c, "/Lang %s\n", textString(m.lang))
+	}
+	fmt.Fprintf(&c, "/Metadata %d 0 R /OutputIntents [%d 0 R]\n", xmp, intent)
+	if outline > 0 {
+		fmt.Fprintf(&c, "/Outlines %d 0 R /PageMode /UseOutlines\n", outline)
+	}
+	if len(f.files) > 0 {
+		c.WriteString("/Names <</EmbeddedFiles <</Names [")
+		for i, n := range f.files {
+			fmt.Fprintf(&c, "%s %d 0 R ", textString(f.names[i]), n)
+		}
+		c.WriteString("]>>>>\n/AF [")
+		for _, n := range f.files {
+			fmt.Fprintf(&c, "%d 0 R ", n)
+		}
+		c.WriteString("]\n")
+	}
+	c.WriteString(">>")
+	f.objects[f.catalog] = []byte(c.String())
+	return nil
+}
+
+// printable drops what neither XML nor a reader's window takes.
+func printable(s string) string {
+	return strings.Map(func(r rune) rune {
+		if r < 0x20 || 0x7F <= r && r < 0xA0 || r == 0xFFFE || r == 0xFFFF {
+			return -1
+		}
+		return r
+	}, strings.ToValidUTF8(s, "\uFFFD"))
+}
+
+// xmp is the metadata as XML, with the same values as the information.
+func (m meta) xmp() []byte {
+	text := func(s string) string {
+		var b bytes.Buffer
+		xml.EscapeText(&b, []byte(printable(s))) // a bytes.Buffer takes everything
+		return b.String()
+	}
+	var b bytes.Buffer
+	b.WriteString("<?xpacket begin=\"\uFEFF\" id=\"W5M0MpCehiHzreSzNTczkc9d\"?>\n" +
+		`<x:xmpmeta xmlns:x="adobe:ns:meta/"><rdf:RDF xmlns:rdf="http://www.w3.org/1999/02/22-rdf-syntax-ns#">` + "\n" +
+		`<rdf:Description rdf:about="" xmlns:dc="http://purl.org/dc/elements/1.1/" xmlns:pdf="http://ns.adobe.com/pdf/1.3/"` +
+		` xmlns:xmp="http://ns.adobe.com/xap/1.0/" xmlns:pdfaid="http://www.aiim.org/pdfa/ns/id/">` + "\n" +
+		"<pdfaid:part>3</pdfaid:part><pdfaid:conformance>B</pdfaid:conformance>\n<dc:format>application/pdf</dc:format>\n")
+	if m.title != "" {
+		fmt.Fprintf(&b, "<dc:title><rdf:Alt><rdf:li xml:lang=\"x-default\">%s</rdf:li></rdf:Alt></dc:title>\n", text(m.title))
+	}
+	if m.author != "" {
+		fmt.Fprintf(&b, "<dc:creator><rdf:Seq><rdf:li>%s</rdf:li></rdf:Seq></dc:creator>\n", text(m.author))
+	}
+	if m.options.Subject != "" {
+		fmt.Fprintf(&b, "<dc:description><rdf:Alt><rdf:li xml:lang=\"x-default\">%s</rdf:li></rdf:Alt></dc:description>\n", text(m.options.Subject))
+	}
+	if m.lang != "" {
+		fmt.Fprintf(&b, "<dc:language><rdf:Bag><rdf:li>%s</rdf:li></rdf:Bag></dc:language>\n", text(m.lang))
+	}
+	if m.options.Keywords != "" {
+		fmt.Fprintf(&b, "<pdf:Keywords>%s</pdf:Keywords>\n", text(m.options.Keywords))
+	}
+	if m.options.Producer != "" {
+		fmt.Fprintf(&b, "<pdf:Producer>%s</pdf:Producer>\n", text(m.options.Producer))
+	}
+	if !m.options.Date.IsZero() {
+		date := m.options.Date.UTC().Format("2006-01-02T15:04:05Z")
+		fmt.Fprintf(&b, "<xmp:CreateDate>%s</xmp:CreateDate><xmp:ModifyDate>%s</xmp:ModifyDate><xmp:MetadataDate>%s</xmp:MetadataDate>\n", date, date, date)
+	}
+	b.WriteString("</rdf:Description></rdf:RDF></x:xmpmeta>\n<?xpacket end=\"r\"?>\n")
+	return b.Bytes()
+}
+
+// bytes writes the objects in the order of their numbers, the table and the trailer.
+func (f *finisher) bytes() []byte {
+	size := 0
+	for _, o := range f.objects {
+		size += len(o) + 48
+	}
+	b := make([]byte, 0, size+1024)
+	// Four bytes above 127 tell programs that move files that this one is binary.
+	b = append(b, "%PDF-1.7\n%\xE2\xE3\xCF\xD3\n"...)
+	offsets := make([]int, len(f.objects))
+	for i := 1; i < len(f.objects); i++ {
+		offsets[i] = len(b)
+		b = strconv.AppendInt(b, int64(i), 10)
+		b = append(b, " 0 obj\n"...)
+		b = append(b, f.objects[i]...)
+		b = append(b, "\nendobj\n"...)
+	}
+	id := md5.Sum(b)
+	table := len(b)
+	b = fmt.Appendf(b, "xref\n0 %d\n0000000000 65535 f \n", len(f.objects))
+	for _, o := range offsets[1:] {
+		b = fmt.Appendf(b, "%010d 00000 n \n", o)
+	}
+	return fmt.Appendf(b, "trailer\n<</Size %d /Root %d 0 R /Info %d 0 R /ID [<%x> <%x>]>>\nstartxref\n%d\n%%%%EOF\n",
+		len(f.objects), f.catalog, f.info, id, id, table)
+}
