@@ -1,0 +1,492 @@
+package allot
+
+import (
+	"fmt"
+	"slices"
+	"strings"
+
+	"penwright/protocol/diag"
+	"penwright/protocol/layout"
+)
+
+// Codes of what is said about a draw.
+const (
+	// NotDrawn is a design whose draw is not made here.
+	//	Example: six treatments in blocks of four.
+	NotDrawn = "not-drawn"
+	// ClassUnknown is a carried class that the draw needs and nothing tells.
+	//	Example: carries = ["sex"] without a roster.
+	ClassUnknown = "class-unknown"
+)
+
+// New draws the allotment of a plan: for each unit that receives something, in the
+// plan's order, its treatments are permuted at random inside what holds it. roster
+// tells the classes that units carry; it may be nil. Where the list has an error the
+// allotment is nil.
+func New(plan *layout.Plan, roster *Roster, seed string) (*Allotment, diag.List) {
+	all, list := Draws(plan, roster, seed, 1)
+	if len(all) == 0 {
+		return nil, list
+	}
+	return all[0], list
+}
+
+// Draws makes n draws from one stream without recording them; the first is that of
+// New, the next take the numbers that follow.
+func Draws(plan *layout.Plan, roster *Roster, seed string, n int) ([]*Allotment, diag.List) {
+	s, list := newScheme(plan, roster)
+	if list.HasErrors() {
+		return nil, list
+	}
+	g := NewGenerator(seed)
+	all := make([]*Allotment, n)
+	for i := range all {
+		all[i] = s.draw(g)
+	}
+	if plan.Protocol.Randomization.Codes {
+		// A stream of their own, so that codes change no draw.
+		g := NewGenerator(seed + " codes")
+		for _, a := range all {
+			a.Codes = codes(g, len(a.Order))
+		}
+	}
+	return all, list
+}
+
+// Scheme says in words how a plan is drawn.
+func Scheme(plan *layout.Plan, roster *Roster) (string, diag.List) {
+	s, list := newScheme(plan, roster)
+	if list.HasErrors() {
+		return "", list
+	}
+	var words []string
+	for _, st := range s.steps {
+		words = append(words, st.words())
+	}
+	return strings.Join(words, "; "), list
+}
+
+// codes gives n different codes K… at random, of as many digits as leave nine in ten
+// numbers unused, so that a slip of the pen rarely hits another code.
+func codes(g *Generator, n int) []string {
+	low := 10
+	for 9*low < 10*n {
+		low *= 10
+	}
+	out := make([]string, n)
+	used := make(map[int]bool, n)
+	for i := range out {
+		v := low + g.Below(9*low)
+		for used[v] {
+			v = low + g.Below(9*low)
+		}
+		used[v] = true
+		out[i] = fmt.Sprintf("K%d", v)
+	}
+	return out
+}
+
+// scheme is all that a draw needs, worked out once.
+type scheme struct {
+	plan  *layout.Plan
+	steps []step
+	fixed [][]int32 // levels that are not drawn: carried classes
+	rows  int
+}
+
+// step draws what one unit receives.
+type step interface {
+	draw(g *Generator, combination []int32) // one for each instance of the unit
+	words() string
+	allocation() *layout.Allocation
+}
+
+func (s *scheme) draw(g *Generator) *Allotment {
+	a := &Allotment{Plan: s.plan, Levels: slices.Clone(s.fixed), Origin: Drawn, Order: make([]int, s.rows)}
+	for i := range a.Order {
+		a.Order[i] = i + 1
+	}
+	for _, st := range s.steps {
+		of := st.allocation()
+		combination := make([]int32, s.plan.Units[of.Unit].N)
+		st.draw(g, combination)
+		for k, f := range of.Factors {
+			levels := make([]int32, len(combination))
+			for i, c := range combination {
+				levels[i] = int32(of.Combinations[c][k])
+			}
+			a.Levels[f] = levels
+		}
+	}
+	return a
+}
+
+// refusal collects why a plan is not drawn.
+type refusal struct {
+	plan *layout.Plan
+	list diag.List
+}
+
+func (r *refusal) add(key, code, hint, format string, args ...any) {
+	r.list.Add(diag.Diagnostic{Pos: r.plan.Protocol.Pos(key), Key: key, Code: code, Message: fmt.Sprintf(format, args...), Hint: hint})
+}
+
+const elsewhere = "draw it elsewhere, bring allotment.csv and say under [randomization] method how it was drawn"
+
+func newScheme(plan *layout.Plan, roster *Roster) (*scheme, diag.List) {
+	r := &refusal{plan: plan}
+	p := plan.Protocol
+	if len(p.Randomization.BalanceOn) > 0 || p.Randomization.Candidates > 1 {
+		r.add("randomization.balance_on", NotDrawn, elsewhere, "a draw balanced on baseline values, chosen among candidates, is not made")
+	}
+	if p.Roster != nil && p.Roster.BlockBy != "" {
+		r.add("roster.block_by", NotDrawn, "form the blocks, name them in the roster's unit columns and leave block_by out; or "+elsewhere, "blocks are not formed from the roster by %s", p.Roster.BlockBy)
+	}
+	s := &scheme{plan: plan, fixed: make([][]int32, len(plan.Factors)), rows: plan.Units[RowUnit(plan)].N}
+	for f := range plan.Factors {
+		if plan.Factors[f].Carried && roster != nil {
+			s.fixed[f] = roster.Levels[f]
+		}
+	}
+	for u := range plan.Units {
+		a := plan.Allocation(u)
+		if a == nil {
+			continue
+		}
+		key := fmt.Sprintf("unit[%d].receives", u)
+		names := factorNames(plan, a.Factors)
+		switch {
+		case a.Separate:
+			r.add(key, NotDrawn, elsewhere, "%s on %s are each a Latin square, orthogonal to one another (a Graeco-Latin square); such squares are not drawn", names, plan.Units[u].Name)
+		case a.Checks != nil:
+			r.add(fmt.Sprintf("unit[%d].checks", u), NotDrawn, elsewhere, "an augmented design, checks in every block and each entry once, is not drawn")
+		case p.CarryOver != nil && slices.ContainsFunc(a.Factors, func(f int) bool { return plan.Factors[f].Name == p.CarryOver.Factor }):
+			r.add("carryover", NotDrawn, elsewhere, "a crossover with carry-over, whose sequences must be balanced for what precedes, is not drawn")
+		case p.TimeTrend != nil && plan.Units[u].Crosses != nil:
+			r.add("time_trend", NotDrawn, elsewhere, "a switchback or reversal design, whose sequences alternate, is not drawn")
+		case plan.Units[u].Crosses != nil:
+			if st := r.latin(a, s.fixed); st != nil {
+				s.steps = append(s.steps, st)
+			}
+		default:
+			if st := r.inBlocks(a, s.fixed); st != nil {
+				s.steps = append(s.steps, st)
+			}
+		}
+	}
+	return s, r.list
+}
+
+func factorNames(plan *layout.Plan, fs []int) string {
+	names := make([]string, len(fs))
+	for i, f := range fs {
+		names[i] = plan.Factors[f].Name
+	}
+	return strings.Join(names, " × ")
+}
+
+// classes numbers the instances of unit u by the classes it carries, in order of first
+// appearance; nil where it carries none. ok is false where a class is not known.
+func (r *refusal) classes(u int, fixed [][]int32) (class []int32, ok bool) {
+	unit := &r.plan.Units[u]
+	if len(unit.Carries) == 0 {
+		return nil, true
+	}
+	number := map[string]int32{}
+	class = make([]int32, unit.N)
+	for i := range class {
+		var k strings.Builder
+		for _, f := range unit.Carries {
+			if fixed[f] == nil || fixed[f][i] < 0 {
+				r.add(fmt.Sprintf("unit[%d].carries", u), ClassUnknown,
+					fmt.Sprintf("give it in the roster, in a column %q beside the unit columns", r.plan.Factors[f].Name),
+					"the draw is made within each class of %s, but that of %s is not known", r.plan.Factors[f].Name, Describe(r.plan, u, int32(i)))
+				return nil, false
+			}
+			fmt.Fprintf(&k, "%d ", fixed[f][i])
+		}
+		if _, seen := number[k.String()]; !seen {
+			number[k.String()] = int32(len(number))
+		}
+		class[i] = number[k.String()]
+	}
+	return class, true
+}
+
+// blocked draws the treatments of a unit inside each instance of its parent, or over
+// the whole trial.
+type blocked struct {
+	of     *layout.Allocation
+	plan   *layout.Plan
+	blocks []block
+	deal   bool // some class takes fewer than all treatments once more
+}
+
+type block struct {
+	classes [][]int32 // instances of each class
+	counts  [][]int32 // for each class, how often it gets each combination for certain
+	rest    []int     // for each class, how many more it gets from the dealt order
+}
+
+func (r *refusal) inBlocks(a *layout.Allocation, fixed [][]int32) step {
+	plan, u := r.plan, a.Unit
+	unit := &plan.Units[u]
+	key := fmt.Sprintf("unit[%d].receives", u)
+	if !a.Complete {
+		size := 0
+		for _, b := range plan.Coarse(u, unit.Within) {
+			if b == 0 {
+				size++
+			}
+		}
+		r.add(key, NotDrawn, "let every "+plan.Units[unit.Within].Name+" hold each treatment equally often; or "+elsewhere,
+			"%d treatments of %s cannot stand in the same numbers in every %s (%d in the first): an incomplete block design, which is not drawn", len(a.Combinations), factorNames(plan, a.Factors), plan.Units[unit.Within].Name, size)
+		return nil
+	}
+	class, ok := r.classes(u, fixed)
+	if !ok {
+		return nil
+	}
+	n, in := 1, make([]int32, unit.N)
+	if unit.Within >= 0 {
+		n, in = plan.Units[unit.Within].N, plan.Coarse(u, unit.Within)
+	}
+	st := &blocked{of: a, plan: plan, blocks: make([]block, n)}
+	members := make([][]int32, n)
+	for i, b := range in {
+		members[b] = append(members[b], int32(i))
+	}
+	for b := range st.blocks {
+		size := len(members[b])
+		total := make([]int32, len(a.Total))
+		equal := true
+		for c, t := range a.Total {
+			total[c] = int32(t * size / unit.N)
+			equal = equal && total[c] == total[0]
+		}
+		bl := &st.blocks[b]
+		for _, i := range members[b] {
+			k := 0
+			if class != nil {
+				k = int(class[i])
+			}
+			for len(bl.classes) <= k {
+				bl.classes = append(bl.classes, nil)
+			}
+			bl.classes[k] = append(bl.classes[k], i)
+		}
+		bl.classes = slices.DeleteFunc(bl.classes, func(c []int32) bool { return c == nil })
+		for _, members := range bl.classes {
+			counts, rest := make([]int32, len(total)), len(members)
+			for c := range total {
+				counts[c] = int32(int(total[c]) * len(members) / size)
+				rest -= int(counts[c])
+			}
+			if rest > 0 && !equal {
+				r.add(key, NotDrawn, "choose numbers that every class can hold in proportion; or "+elsewhere,
+					"unequal replication cannot be shared out in proportion among the classes that %s carries", unit.Name)
+				return nil
+			}
+			st.deal = st.deal || rest > 0
+			bl.counts, bl.rest = append(bl.counts, counts), append(bl.rest, rest)
+		}
+	}
+	return st
+}
+
+func (s *blocked) allocation() *layout.Allocation { return s.of }
+
+func (s *blocked) draw(g *Generator, combination []int32) {
+	for b := range s.blocks {
+		bl := &s.blocks[b]
+		var dealt []int32
+		next := 0
+		if slices.ContainsFunc(bl.rest, func(n int) bool { return n > 0 }) {
+			dealt = identity(len(s.of.Combinations))
+			g.Shuffle(dealt)
+		}
+		for k, members := range bl.classes {
+			list := make([]int32, 0, len(members))
+			for c, n := range bl.counts[k] {
+				for range n {
+					list = append(list, int32(c))
+				}
+			}
+			for range bl.rest[k] {
+				list = append(list, dealt[next%len(dealt)])
+				next++
+			}
+			g.Shuffle(list)
+			for i, at := range members {
+				combination[at] = list[i]
+			}
+		}
+	}
+}
+
+func (s *blocked) words() string {
+	unit := &s.plan.Units[s.of.Unit]
+	place := "over the whole trial"
+	if unit.Within >= 0 {
+		place = "within each " + s.plan.Units[unit.Within].Name + ", in the plan's order"
+	}
+	text := fmt.Sprintf("%s to %s: the %d treatments, as often as planned, in random order %s", factorNames(s.plan, s.of.Factors), unit.Name, len(s.of.Combinations), place)
+	if len(unit.Carries) > 0 {
+		text = fmt.Sprintf("%s to %s: the %d treatments in random order within each class of %s %s", factorNames(s.plan, s.of.Factors), unit.Name, len(s.of.Combinations), factorNames(s.plan, unit.Carries), place)
+		if s.deal {
+			text += "; what a class holds beyond full sets is dealt from one random order of the treatments, class after class"
+		}
+	}
+	return text
+}
+
+// squared draws Latin squares of the treatments on the rows and columns that a unit
+// crosses. Where rows and columns are several times the treatments, they are put in
+// random order and cut into squares.
+type squared struct {
+	of     *layout.Allocation
+	plan   *layout.Plan
+	square square
+	fields []field
+}
+
+// field is a rectangle of rows and columns that belong together.
+type field struct {
+	rows, columns int
+	cells         []int32 // instance at row × columns + column
+}
+
+func (r *refusal) latin(a *layout.Allocation, fixed [][]int32) step {
+	plan, u := r.plan, a.Unit
+	unit := &plan.Units[u]
+	key := fmt.Sprintf("unit[%d].receives", u)
+	t := len(a.Combinations)
+	refuse := func(why string) step {
+		r.add(key, NotDrawn, "a Latin square needs as many rows and as many columns as treatments, or whole multiples; or "+elsewhere,
+			"%d treatments of %s on %s: %s; such a row-and-column design is not drawn", t, factorNames(plan, a.Factors), unit.Name, why)
+		return nil
+	}
+	if len(unit.Crosses) != 2 {
+		return refuse(fmt.Sprintf("it crosses %d units", len(unit.Crosses)))
+	}
+	if slices.ContainsFunc(a.Total, func(n int) bool { return n != a.Total[0] }) {
+		return refuse("the replicates are not equal")
+	}
+	if t > largestSquare {
+		return refuse(fmt.Sprintf("squares larger than %d × %d are not drawn", largestSquare, largestSquare))
+	}
+	if class, ok := r.classes(u, fixed); !ok {
+		return nil
+	} else if class != nil {
+		return refuse("it carries a class of its own")
+	}
+	// Rows belong together when they lie in the same parent and are of the same class
+	// or treatment; so do columns.
+	groups := make([][]int32, 2)
+	counts := make([]int, 2)
+	for k, v := range unit.Crosses {
+		class, ok := r.classes(v, fixed)
+		if !ok {
+			return nil
+		}
+		if len(plan.Units[v].Receives) > 0 {
+			return refuse(fmt.Sprintf("%s receives treatments of its own", plan.Units[v].Name))
+		}
+		number := map[[2]int32]int32{}
+		groups[k] = make([]int32, plan.Units[v].N)
+		for i := range groups[k] {
+			var of [2]int32
+			if w := plan.Units[v].Within; w >= 0 {
+				of[0] = plan.Coarse(v, w)[i]
+			}
+			if class != nil {
+				of[1] = class[i]
+			}
+			if _, ok := number[of]; !ok {
+				number[of] = int32(len(number))
+			}
+			groups[k][i] = number[of]
+		}
+		counts[k] = len(number)
+	}
+	// Place of every row and column in its group.
+	place := make([][]int32, 2)
+	size := make([][]int, 2)
+	for k := range groups {
+		size[k] = make([]int, counts[k])
+		place[k] = make([]int32, len(groups[k]))
+		for i, of := range groups[k] {
+			place[k][i] = int32(size[k][of])
+			size[k][of]++
+		}
+	}
+	rowOf, columnOf := plan.Coarse(u, unit.Crosses[0]), plan.Coarse(u, unit.Crosses[1])
+	number := map[[2]int32]int{}
+	s := &squared{of: a, plan: plan, square: newSquare(t)}
+	for i := range unit.N {
+		of := [2]int32{groups[0][rowOf[i]], groups[1][columnOf[i]]}
+		f, ok := number[of]
+		if !ok {
+			f = len(s.fields)
+			number[of] = f
+			rows, columns := size[0][of[0]], size[1][of[1]]
+			if rows%t != 0 || columns%t != 0 {
+				return refuse(fmt.Sprintf("%d rows (%s) by %d columns (%s) cannot each hold every treatment equally often", rows, plan.Units[unit.Crosses[0]].Name, columns, plan.Units[unit.Crosses[1]].Name))
+			}
+			cells := make([]int32, rows*columns)
+			for c := range cells {
+				cells[c] = -1
+			}
+			s.fields = append(s.fields, field{rows: rows, columns: columns, cells: cells})
+		}
+		fd := &s.fields[f]
+		fd.cells[int(place[0][rowOf[i]])*fd.columns+int(place[1][columnOf[i]])] = int32(i)
+	}
+	for _, f := range s.fields {
+		if slices.Contains(f.cells, -1) {
+			return refuse("not every row meets every column")
+		}
+	}
+	return s
+}
+
+func (s *squared) allocation() *layout.Allocation { return s.of }
+
+func (s *squared) draw(g *Generator, combination []int32) {
+	t := s.square.n
+	for _, f := range s.fields {
+		rows, columns := identity(f.rows), identity(f.columns)
+		if f.rows > t {
+			g.Shuffle(rows)
+		}
+		if f.columns > t {
+			g.Shuffle(columns)
+		}
+		for r := 0; r < f.rows; r += t {
+			for c := 0; c < f.columns; c += t {
+				cells := s.square.draw(g)
+				for i, v := range cells {
+					combination[f.cells[int(rows[r+i/t])*f.columns+int(columns[c+i%t])]] = v
+				}
+			}
+		}
+	}
+}
+
+func (s *squared) words() string {
+	unit := &s.plan.Units[s.of.Unit]
+	t := s.square.n
+	how := "every square with the same probability: a reduced square is chosen from all in ascending order of their rows, then its columns and its rows but the first are permuted"
+	if s.square.reduced == nil {
+		how = fmt.Sprintf("by the chain of Jacobson and Matthews (1996) from the cyclic square over %d proper squares, then columns, rows and letters are permuted", t*t*t)
+	}
+	text := fmt.Sprintf("%s to %s: a Latin square of the %d treatments on %s × %s", factorNames(s.plan, s.of.Factors), unit.Name, t, s.plan.Units[unit.Crosses[0]].Name, s.plan.Units[unit.Crosses[1]].Name)
+	if n := len(s.fields); n > 1 {
+		text = fmt.Sprintf("%s to %s: %d Latin squares of the %d treatments on %s × %s, each drawn by itself", factorNames(s.plan, s.of.Factors), unit.Name, n, t, s.plan.Units[unit.Crosses[0]].Name, s.plan.Units[unit.Crosses[1]].Name)
+	}
+	f := s.fields[0]
+	if f.rows > t || f.columns > t {
+		text += fmt.Sprintf(" (%d rows and %d columns, in random order, are cut into squares)", f.rows, f.columns)
+	}
+	return text + "; " + how
+}

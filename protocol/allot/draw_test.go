@@ -1,0 +1,267 @@
+package allot
+
+import (
+	"flag"
+	"fmt"
+	"os"
+	"path/filepath"
+	"reflect"
+	"slices"
+	"strings"
+	"testing"
+	"testing/fstest"
+
+	"penwright/protocol"
+	"penwright/protocol/diag"
+	"penwright/protocol/folder"
+	"penwright/protocol/layout"
+)
+
+var update = flag.Bool("update", false, "rewrite golden files")
+
+const head = `protocol = 1
+[trial]
+code = "HM-26-001"
+title = "A trial"
+objective = "To test the draw."
+`
+
+// factor writes a factor of n levels a1, a2, …
+func factor(name string, n int) string {
+	levels := make([]string, n)
+	for i := range levels {
+		levels[i] = fmt.Sprintf("%q", fmt.Sprintf("%s%d", name, i+1))
+	}
+	return fmt.Sprintf("[[factor]]\nname = %q\nlevels = [%s]\n", name, strings.Join(levels, ", "))
+}
+
+func planOf(t testing.TB, text string) *layout.Plan {
+	t.Helper()
+	p, list := protocol.Load(fstest.MapFS{"protocol.toml": {Data: []byte(head + text)}}, "protocol.toml")
+	if list.HasErrors() {
+		t.Fatalf("%v\n%s", list, text)
+	}
+	plan, list := layout.New(p)
+	if list.HasErrors() {
+		t.Fatalf("%v\n%s", list, text)
+	}
+	return plan
+}
+
+func file(name, text string) folder.File {
+	return folder.File{Path: name, SHA256: folder.Hash([]byte(text)), Data: []byte(text)}
+}
+
+// designs that are drawn.
+var designs = []struct{ name, text string }{
+	{"completely randomized", factor("a", 4) + "[[unit]]\nname = \"pen\"\ncount = 16\nreceives = [\"a\"]\n"},
+	{"unequal replication", factor("a", 3) + "[[unit]]\nname = \"pen\"\ncount = 16\nreceives = [\"a\"]\nreplicates = { a1 = 8, a2 = 4, a3 = 4 }\n"},
+	{"no multiple", factor("a", 3) + "control = \"a2\"\n[[unit]]\nname = \"pen\"\ncount = 10\nreceives = [\"a\"]\n"},
+	{"randomized block", factor("a", 4) + "[[unit]]\nname = \"block\"\ncount = 5\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 4\nnumbered = \"through\"\nreceives = [\"a\"]\n"},
+	{"generalized block", factor("a", 3) + "[[unit]]\nname = \"block\"\ncount = [2]\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 6\nreceives = [\"a\"]\n"},
+	{"doubled control", factor("a", 3) + "control = \"a1\"\n[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 4\nreceives = [\"a\"]\nreplicates = { a1 = 2 }\n"},
+	{"factorial", factor("a", 2) + factor("b", 3) + "[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 6\nreceives = [\"a\", \"b\"]\n"},
+	{"latin square", factor("a", 4) + "[[unit]]\nname = \"cow\"\ncount = 4\n[[unit]]\nname = \"period\"\ncount = 4\n[[unit]]\nname = \"sample\"\ncrosses = [\"cow\", \"period\"]\nreceives = [\"a\"]\n"},
+	{"latin square of a factorial", factor("a", 2) + factor("b", 3) + "[[unit]]\nname = \"row\"\ncount = 6\n[[unit]]\nname = \"column\"\ncount = 6\n[[unit]]\nname = \"plot\"\ncrosses = [\"row\", \"column\"]\nreceives = [\"a\", \"b\"]\n"},
+	{"replicated squares", factor("a", 3) + "[[unit]]\nname = \"square\"\ncount = 2\n[[unit]]\nname = \"cow\"\nwithin = \"square\"\ncount = 3\n[[unit]]\nname = \"period\"\nwithin = \"square\"\ncount = 3\n[[unit]]\nname = \"sample\"\ncrosses = [\"cow\", \"period\"]\nreceives = [\"a\"]\n"},
+	{"squares with common periods", factor("a", 3) + "[[unit]]\nname = \"square\"\ncount = 2\n[[unit]]\nname = \"cow\"\nwithin = \"square\"\ncount = 3\n[[unit]]\nname = \"period\"\ncount = 3\n[[unit]]\nname = \"sample\"\ncrosses = [\"cow\", \"period\"]\nreceives = [\"a\"]\n"},
+	{"eight cows in four periods", factor("a", 4) + "[[unit]]\nname = \"cow\"\ncount = 8\n[[unit]]\nname = \"period\"\ncount = 4\n[[unit]]\nname = \"sample\"\ncrosses = [\"cow\", \"period\"]\nreceives = [\"a\"]\n"},
+	{"split plot", factor("a", 3) + factor("b", 4) + "[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"plot\"\nwithin = \"block\"\ncount = 3\nreceives = [\"a\"]\n[[unit]]\nname = \"subplot\"\nwithin = \"plot\"\ncount = 4\nreceives = [\"b\"]\n"},
+	{"split-split plot", factor("a", 2) + factor("b", 2) + factor("c", 3) + "[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"plot\"\nwithin = \"block\"\ncount = 2\nreceives = [\"a\"]\n[[unit]]\nname = \"subplot\"\nwithin = \"plot\"\ncount = 2\nreceives = [\"b\"]\n[[unit]]\nname = \"bed\"\nwithin = \"subplot\"\ncount = 3\nreceives = [\"c\"]\n"},
+	{"split plot in a latin square", factor("a", 3) + factor("b", 2) + "[[unit]]\nname = \"row\"\ncount = 3\n[[unit]]\nname = \"column\"\ncount = 3\n[[unit]]\nname = \"plot\"\ncrosses = [\"row\", \"column\"]\nreceives = [\"a\"]\n[[unit]]\nname = \"subplot\"\nwithin = \"plot\"\ncount = 2\nreceives = [\"b\"]\n"},
+	{"strip plot", factor("a", 3) + factor("b", 2) + "[[unit]]\nname = \"block\"\ncount = 4\n[[unit]]\nname = \"strip\"\nwithin = \"block\"\ncount = 3\nreceives = [\"a\"]\n[[unit]]\nname = \"lane\"\nwithin = \"block\"\ncount = 2\nreceives = [\"b\"]\n[[unit]]\nname = \"cell\"\ncrosses = [\"strip\", \"lane\"]\n"},
+	{"sampling", factor("a", 2) + "[[unit]]\nname = \"pen\"\ncount = 6\nreceives = [\"a\"]\n[[unit]]\nname = \"animal\"\nwithin = \"pen\"\ncount = 3\n"},
+	{"listed", factor("dose", 2) + "[[treatment]]\ncode = \"none\"\nlevels = {}\ncontrol = true\n[[treatment]]\ncode = \"low\"\nlevels = { dose = \"dose1\" }\n[[treatment]]\ncode = \"high\"\nlevels = { dose = \"dose2\" }\n[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 3\nreceives = [\"treatment\"]\n"},
+	{"codes", factor("a", 2) + "[randomization]\ncodes = true\n[[unit]]\nname = \"pen\"\ncount = 8\nreceives = [\"a\"]\n"},
+}
+
+// TestGolden pins what the seed text gives: a change of it would make every record
+// unrepeatable.
+func TestGolden(t *testing.T) {
+	var b strings.Builder
+	for _, d := range designs {
+		plan := planOf(t, d.text)
+		a, list := New(plan, nil, "HM-26-001/1")
+		if list.HasErrors() {
+			t.Errorf("%s: %v", d.name, list)
+			continue
+		}
+		words, _ := Scheme(plan, nil)
+		fmt.Fprintf(&b, "-- %s --\n%s\n%s\n", d.name, words, a.Bytes())
+	}
+	name := filepath.Join("testdata", "golden.txt")
+	if *update {
+		if err := os.WriteFile(name, []byte(b.String()), 0o644); err != nil {
+			t.Fatal(err)
+		}
+	}
+	want, err := os.ReadFile(name)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if b.String() != string(want) {
+		t.Errorf("draws differ from %s:\n%s", name, b.String())
+	}
+}
+
+// TestDrawsAreAsPlanned: every draw passes the checks of an allotment, is read back from
+// its file as it was, and repeats.
+func TestDrawsAreAsPlanned(t *testing.T) {
+	for _, d := range designs {
+		plan := planOf(t, d.text)
+		all, list := Draws(plan, nil, "x", 20)
+		if list.HasErrors() {
+			t.Errorf("%s: %v", d.name, list)
+			continue
+		}
+		one, _ := New(plan, nil, "x")
+		if !reflect.DeepEqual(one.Levels, all[0].Levels) || !slices.Equal(one.Codes, all[0].Codes) {
+			t.Errorf("%s: the first of many draws is not that of one", d.name)
+		}
+		different := false
+		for _, a := range all {
+			if list := Check(a, func(int, int32) diag.Pos { return diag.Pos{} }); len(list) > 0 {
+				t.Errorf("%s: %v", d.name, list)
+			}
+			back, list := parse(file(File, string(a.Bytes())), plan)
+			if len(list) > 0 {
+				t.Errorf("%s: read back: %v", d.name, list)
+			} else if !reflect.DeepEqual(back.Levels, a.Levels) || !slices.Equal(back.Order, a.Order) || !slices.Equal(back.Codes, a.Codes) {
+				t.Errorf("%s: read back as %v %v %v, want %v %v %v", d.name, back.Levels, back.Order, back.Codes, a.Levels, a.Order, a.Codes)
+			}
+			different = different || !reflect.DeepEqual(a.Levels, all[0].Levels)
+		}
+		if !different {
+			t.Errorf("%s: twenty draws are all the same", d.name)
+		}
+	}
+}
+
+// TestUniform draws small designs until every possible allotment has been met often and
+// compares the frequencies. The number of allotments is counted by hand.
+func TestUniform(t *testing.T) {
+	for _, test := range []struct {
+		name, text string
+		allotments int
+	}{
+		{"three of each of two on six", factor("a", 2) + "[[unit]]\nname = \"pen\"\ncount = 6\nreceives = [\"a\"]\n", 20},                                                                                                                                                                                                               // C(6,3)
+		{"two, one, one on four", factor("a", 3) + "[[unit]]\nname = \"pen\"\ncount = 4\nreceives = [\"a\"]\nreplicates = { a1 = 2 }\n", 12},                                                                                                                                                                                            // 4!/2!
+		{"three in two blocks", factor("a", 3) + "[[unit]]\nname = \"block\"\ncount = 2\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 3\nreceives = [\"a\"]\n", 36},                                                                                                                                                            // 3!²
+		{"square of three", factor("a", 3) + "[[unit]]\nname = \"row\"\ncount = 3\n[[unit]]\nname = \"column\"\ncount = 3\n[[unit]]\nname = \"plot\"\ncrosses = [\"row\", \"column\"]\nreceives = [\"a\"]\n", 12},                                                                                                                       // 3!·2!
+		{"square of four", factor("a", 4) + "[[unit]]\nname = \"row\"\ncount = 4\n[[unit]]\nname = \"column\"\ncount = 4\n[[unit]]\nname = \"plot\"\ncrosses = [\"row\", \"column\"]\nreceives = [\"a\"]\n", 576},                                                                                                                       // OEIS A002860
+		{"strips and lanes", factor("a", 3) + factor("b", 2) + "[[unit]]\nname = \"block\"\ncount = 2\n[[unit]]\nname = \"strip\"\nwithin = \"block\"\ncount = 3\nreceives = [\"a\"]\n[[unit]]\nname = \"lane\"\nwithin = \"block\"\ncount = 2\nreceives = [\"b\"]\n[[unit]]\nname = \"cell\"\ncrosses = [\"strip\", \"lane\"]\n", 144}, // (3!·2!)²
+		{"split plot", factor("a", 2) + factor("b", 2) + "[[unit]]\nname = \"block\"\ncount = 2\n[[unit]]\nname = \"plot\"\nwithin = \"block\"\ncount = 2\nreceives = [\"a\"]\n[[unit]]\nname = \"subplot\"\nwithin = \"plot\"\ncount = 2\nreceives = [\"b\"]\n", 64},                                                                   // 2!²·2!⁴
+		{"two squares' worth of rows", factor("a", 2) + "[[unit]]\nname = \"row\"\ncount = 4\n[[unit]]\nname = \"column\"\ncount = 2\n[[unit]]\nname = \"plot\"\ncrosses = [\"row\", \"column\"]\nreceives = [\"a\"]\n", 6},                                                                                                             // C(4,2): rows are 12 or 21, two of each
+	} {
+		plan := planOf(t, test.text)
+		n := 100 * test.allotments
+		all, list := Draws(plan, nil, "uniform "+test.name, n)
+		if list.HasErrors() {
+			t.Fatalf("%s: %v", test.name, list)
+		}
+		seen := map[string]int{}
+		for _, a := range all {
+			seen[fmt.Sprint(a.Levels)]++
+		}
+		counts := make([]int, 0, len(seen))
+		for _, c := range seen {
+			counts = append(counts, c)
+		}
+		if len(seen) != test.allotments {
+			t.Errorf("%s: %d different allotments, want %d", test.name, len(seen), test.allotments)
+			continue
+		}
+		uniform(t, test.name, counts)
+	}
+}
+
+const woodman = "[[unit]]\nname = \"pen\"\ncount = 3\n[[unit]]\nname = \"pig\"\nwithin = \"pen\"\ncount = 6\ncarries = [\"sex\"]\nreceives = [\"diet\"]\n"
+
+// TestCarried: within each sex of each pen the diets are as equal as its number allows.
+func TestCarried(t *testing.T) {
+	plan := planOf(t, factor("diet", 3)+"[[factor]]\nname = \"sex\"\nlevels = [\"F\", \"M\"]\n"+woodman)
+	var roster strings.Builder
+	roster.WriteString("pen,pig,sex\n")
+	for pen := range 3 {
+		for pig := range 6 {
+			sex := "F"
+			if pig >= 3-pen { // 3, 2 and 1 gilts
+				sex = "M"
+			}
+			fmt.Fprintf(&roster, "%d,%d,%s\n", pen+1, pig+1, sex)
+		}
+	}
+	r, list := ReadRoster(file("roster.csv", roster.String()), plan)
+	if len(list) > 0 {
+		t.Fatal(list)
+	}
+	if _, list := New(plan, nil, "x"); !slices.ContainsFunc(list, func(d diag.Diagnostic) bool { return d.Code == ClassUnknown }) {
+		t.Errorf("a draw without the roster says %v", list)
+	}
+	all, list := Draws(plan, r, "carried", 3000)
+	if list.HasErrors() {
+		t.Fatal(list)
+	}
+	first := make([]int, 9) // diets of the single gilt of pen 3, and of two pigs of pen 1
+	for _, a := range all {
+		diet, sex := a.Levels[0], a.Levels[1]
+		var count [3][2][3]int
+		for i, d := range diet {
+			count[i/6][sex[i]][d]++
+		}
+		for pen := range count {
+			for d := range 3 {
+				if n := count[pen][0][d] + count[pen][1][d]; n != 2 {
+					t.Fatalf("pen %d has diet %d %d times, want 2", pen, d, n)
+				}
+			}
+			for s := range count[pen] {
+				if lo, hi := slices.Min(count[pen][s][:]), slices.Max(count[pen][s][:]); hi-lo > 1 {
+					t.Fatalf("pen %d, sex %d: diets %v", pen, s, count[pen][s])
+				}
+			}
+		}
+		first[diet[12]]++
+		first[3+diet[0]]++
+		first[6+diet[11]]++
+	}
+	for k := range 3 {
+		uniform(t, "diet of a pig", first[3*k:3*k+3])
+	}
+}
+
+func TestNotDrawn(t *testing.T) {
+	square := "[[unit]]\nname = \"cow\"\ncount = %d\n[[unit]]\nname = \"period\"\ncount = %d\n[[unit]]\nname = \"sample\"\ncrosses = [\"cow\", \"period\"]\nreceives = [%s]\n"
+	for _, test := range []struct{ name, text, want string }{
+		{"incomplete block", factor("a", 7) + "[[unit]]\nname = \"block\"\ncount = 7\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 3\nreceives = [\"a\"]\n", "incomplete block"},
+		{"rows and columns", factor("a", 4) + fmt.Sprintf(square, 4, 7, `"a"`), "4 rows (cow) by 7 columns (period)"},
+		{"graeco-latin", factor("a", 4) + factor("b", 4) + fmt.Sprintf(square, 4, 4, `"a", "b"`), "Graeco-Latin"},
+		{"crossover", factor("a", 4) + fmt.Sprintf(square, 4, 4, `"a"`) + "[carryover]\nfactor = \"a\"\nalong = \"period\"\non = \"cow\"\n", "crossover"},
+		{"switchback", factor("a", 2) + fmt.Sprintf(square, 4, 4, `"a"`) + "[time_trend]\non = \"cow\"\nalong = \"period\"\norder = 1\n", "switchback"},
+		{"blocks by the roster", factor("a", 2) + "[roster]\nfile = \"roster.csv\"\nblock_by = \"mass\"\n[[unit]]\nname = \"block\"\ncount = 2\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 2\nreceives = [\"a\"]\n", "mass"},
+		{"candidates", factor("a", 2) + "[randomization]\nbalance_on = [\"mass\"]\ncandidates = 10\n[[covariate]]\nname = \"mass\"\n[roster]\nfile = \"roster.csv\"\n[[unit]]\nname = \"pen\"\ncount = 4\nreceives = [\"a\"]\n", "candidates"},
+	} {
+		a, list := New(planOf(t, test.text), nil, "x")
+		if a != nil || len(list) == 0 {
+			t.Errorf("%s: drawn", test.name)
+			continue
+		}
+		d := list[0]
+		if d.Code != NotDrawn || !strings.Contains(d.Message, test.want) || !strings.Contains(d.Hint, "allotment.csv") || d.Pos.Line == 0 {
+			t.Errorf("%s: %+v", test.name, d)
+		}
+	}
+}
+
+// BenchmarkDraw: a randomized block of four treatments in six blocks.
+func BenchmarkDraw(b *testing.B) {
+	plan := planOf(b, factor("a", 4)+"[[unit]]\nname = \"block\"\ncount = 6\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 4\nreceives = [\"a\"]\n")
+	s, list := newScheme(plan, nil)
+	if list.HasErrors() {
+		b.Fatal(list)
+	}
+	g := NewGenerator("x")
+	for b.Loop() {
+		s.draw(g)
+	}
+}
