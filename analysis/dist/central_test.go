@@ -76,7 +76,7 @@ func binomialTail(n, a, num, den int64) float64 {
 func TestBetaAgainstBinomial(t *testing.T) {
 	for _, tt := range []struct{ n, a, num, den int64 }{
 		{1, 1, 1, 3}, {5, 2, 1, 4}, {10, 10, 1, 1000}, {50, 20, 1, 3}, {50, 45, 1, 10}, {100, 50, 1, 2}, {100, 99, 1, 1000},
-		{400, 150, 3, 10}, {400, 350, 1, 5}, {1000, 300, 1, 4}, {1000, 700, 1, 3}, {3000, 1500, 49, 100}, {3000, 1, 1, 100000}, {3000, 2999, 3, 4},
+		{400, 150, 3, 10}, {400, 350, 1, 5}, {1000, 300, 1, 4}, {1000, 700, 1, 3}, {2000, 1000, 49, 100}, {1000, 1, 1, 100000}, {2000, 1999, 3, 4},
 	} {
 		want := binomialTail(tt.n, tt.a, tt.num, tt.den)
 		x, y := float64(tt.num)/float64(tt.den), float64(tt.den-tt.num)/float64(tt.den)
@@ -94,7 +94,7 @@ func TestBetaAgainstBinomial(t *testing.T) {
 // The gamma tails against Poisson sums with many digits, and closed forms of t.
 func TestGammaAgainstPoisson(t *testing.T) {
 	for _, tt := range []struct{ a, x int64 }{
-		{1, 1}, {3, 50}, {5, 5}, {10, 100}, {40, 30}, {40, 41}, {100, 600}, {500, 480}, {500, 520}, {500, 900}, {2000, 2100}, {2000, 1900},
+		{1, 1}, {3, 50}, {5, 5}, {10, 100}, {40, 30}, {40, 41}, {100, 600}, {500, 480}, {500, 520}, {500, 900}, {1500, 1600}, {1500, 1400},
 	} {
 		const prec = 400
 		term := new(big.Float).SetPrec(prec).SetInt64(1)

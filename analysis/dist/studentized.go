@@ -1,0 +1,187 @@
+package dist
+
+import (
+	"math"
+	"sync"
+
+	"penwright/analysis/solve"
+)
+
+// studentizedUpper returns P(M/S > q), where M has the decreasing tail
+// tail(w) = P(M > w) and S² is an independent χ²/df.
+//
+//	P = ∫ f(u) tail(q eᵘ) du,  f(u) = √(df/π) exp(−stirling(df/2) + df(u + ½ − ½e²ᵘ)),  u = ln S
+//
+// By the trapezoidal rule in u: the integrand is analytic, falls off like eᵘ·ᵈᶠ to
+// the left and doubly exponentially to the right, so the error falls as exp(−c/h).
+// The step is halved until two sums agree to 1e-10, when the second is good to
+// about the square of that.
+func studentizedUpper(q, df float64, tail func(w float64) float64) float64 {
+	// Beyond this the mixture is the tail itself, to 1e-9 relative at q = 15.
+	if df > 1e13 {
+		return tail(q)
+	}
+	lnPeak := 0.5*math.Log(df/math.Pi) - stirling(df/2)
+	integrand := func(u float64) float64 {
+		return math.Exp(lnPeak+df*(u-math.Expm1(2*u)/2)) * tail(q*math.Exp(u))
+	}
+	// The peak of f has standard deviation 1/√(2df) in u.
+	h := math.Min(0.2, 0.95/math.Sqrt(2*df))
+	sum := integrand(0)
+	largest := sum
+	right, left := 0.0, 0.0
+	for k := 1.0; ; k++ {
+		term := integrand(k * h)
+		sum += term
+		largest = math.Max(largest, term)
+		if term <= 1e-19*largest {
+			right = k
+			break
+		}
+	}
+	previous := sum
+	for k := 1.0; ; k++ {
+		term := integrand(-k * h)
+		sum += term
+		// Far out the integrand may be zero at S = 1 and rise to the left first.
+		largest = math.Max(largest, term)
+		if term <= 1e-19*largest && term <= previous && (largest > 0 || df*k*h > 750) {
+			left = k
+			break
+		}
+		previous = term
+	}
+	for range 12 {
+		var between float64
+		for k := -left; k < right; k++ {
+			between += integrand((k + 0.5) * h)
+		}
+		agree := math.Abs(between-sum) <= 2e-10*sum
+		sum += between
+		h /= 2
+		left *= 2
+		right *= 2
+		if agree {
+			break
+		}
+	}
+	return math.Min(1, sum*h)
+}
+
+// studentizedQuantile returns q with upper(q) = p for a continuous decreasing tail.
+// Where q must be positive, lowest is 0, else −Inf.
+func studentizedQuantile(p, lowest float64, upper func(q float64) float64) float64 {
+	switch {
+	case !(p >= 0 && p <= 1):
+		return math.NaN()
+	case p == 0:
+		return math.Inf(1)
+	case p == 1:
+		return lowest
+	}
+	// Solved in x = asinh q, in which the heavy tails of few degrees of freedom are near
+	// at hand, on ln p in the upper half.
+	miss := func(x float64) float64 {
+		u := upper(math.Sinh(x))
+		if p > 0.5 {
+			return u - p
+		}
+		if u == 0 {
+			return -math.MaxFloat64
+		}
+		return math.Log(u / p)
+	}
+	a, step := math.Asinh(2), 0.5
+	fa := miss(a)
+	if fa < 0 {
+		step = -step
+	}
+	for {
+		b := a + step
+		if lowest == 0 && b < 0 {
+			b = 0
+		}
+		if math.Abs(b) > 700 {
+			return math.Copysign(math.Inf(1), b)
+		}
+		fb := miss(b)
+		if (fb < 0) != (fa < 0) {
+			x, err := solve.Root(miss, a, b, 1e-14)
+			if err != nil {
+				return math.NaN()
+			}
+			return math.Sinh(x)
+		}
+		if b == 0 && lowest == 0 {
+			return 0
+		}
+		a = b
+		step *= 1.5
+	}
+}
+
+const (
+	pieceWidth  = 1.0
+	pieceDegree = 26
+)
+
+// interpolated is a tail function of one variable kept as Chebyshev series of its
+// logarithm, each for a piece of the line one unit wide and computed when first
+// asked for. It may be used by several goroutines at once.
+type interpolated struct {
+	tail     func(w float64) float64
+	from, to float64
+	pieces   []piece
+}
+
+type piece struct {
+	once        sync.Once
+	rough       bool // the series has not converged: the function is asked instead
+	coefficient [pieceDegree + 1]float64
+}
+
+func interpolate(tail func(w float64) float64, from, to float64) *interpolated {
+	return &interpolated{tail: tail, from: from, to: to, pieces: make([]piece, int(math.Ceil((to-from)/pieceWidth)))}
+}
+
+// at returns the tail at w, outside the interpolated range from the function itself.
+func (f *interpolated) at(w float64) float64 {
+	position := (w - f.from) / pieceWidth
+	i := int(position)
+	if !(w >= f.from && w < f.to) || i >= len(f.pieces) {
+		return f.tail(w)
+	}
+	p := &f.pieces[i]
+	p.once.Do(func() {
+		const n = pieceDegree + 1
+		var value [n]float64
+		for k := range value {
+			x := math.Cos(math.Pi * (float64(k) + 0.5) / n)
+			value[k] = math.Log(f.tail(f.from + pieceWidth*(float64(i)+0.5+0.5*x)))
+		}
+		for j := range p.coefficient {
+			var c float64
+			for k, v := range value {
+				c += v * math.Cos(math.Pi*float64(j)*(float64(k)+0.5)/n)
+			}
+			p.coefficient[j] = c * 2 / n
+		}
+		p.coefficient[0] /= 2
+		for _, c := range p.coefficient[pieceDegree-2:] {
+			// Written so that NaN and infinities, from a tail that underflows, are rough too.
+			if !(math.Abs(c) <= 1e-11) {
+				p.rough = true
+			}
+		}
+	})
+	if p.rough {
+		return f.tail(w)
+	}
+	// Clenshaw's recurrence.
+	x := 4 * (position - float64(i) - 0.5)
+	var b1, b2 float64
+	for j := pieceDegree; j > 0; j-- {
+		b1, b2 = p.coefficient[j]+x*b1-b2, b1
+	}
+	return math.Exp(p.coefficient[0] + x/2*b1 - b2)
+}
