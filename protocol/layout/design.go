@@ -267,7 +267,11 @@ func (r *recogniser) base(u int) string {
 	sizes := r.plan.sizes(u, block)
 	if r.fits(u, block) {
 		r.above(r.plan.Units[block].Within)
-		if len(sizes) == 1 && r.times(u, sizes[0]) == 1 {
+		classes := 1 // within which the draw is made, so that each holds a set of its own
+		for _, f := range unit.Carries {
+			classes *= len(r.plan.Factors[f].Levels)
+		}
+		if len(sizes) == 1 && r.times(u, sizes[0]) == classes {
 			return RandomizedBlock
 		}
 		r.also[RandomizedBlock] = true
@@ -296,7 +300,7 @@ func (r *recogniser) base(u int) string {
 	}
 	r.above(r.plan.Units[block].Within)
 	switch {
-	case len(sizes) == 1 && r.balanced(a, k):
+	case len(sizes) == 1 && len(a.Factors) == 1 && r.balanced(a, k):
 		return BalancedIncomplete
 	case sizes[0] > n:
 		return ExtendedBlock
@@ -454,7 +458,23 @@ func (r *recogniser) qualify(receiving []int) {
 			r.also["factorial"] = true
 		}
 	}
+	// A unit that stands across the experimental units, such as a year, is neither block
+	// nor sampling, and neither is its crossing with them.
+	across := make([]bool, len(plan.Units))
 	for _, s := range plan.Strata {
+		if plan.Units[s.Unit].Role != Block {
+			continue
+		}
+		if !slices.ContainsFunc(receiving, func(u int) bool { return r.b.up[u][s.Unit] }) {
+			across[s.Unit] = true
+			r.part("observed over %s", r.unit(s.Unit))
+			r.also["repeated measures"], r.also["several sites"] = true, true
+		}
+	}
+	for _, s := range plan.Strata {
+		if slices.ContainsFunc(plan.Units[s.Unit].Crosses, func(v int) bool { return across[v] }) {
+			continue
+		}
 		if plan.Units[s.Unit].Role == Sampling {
 			r.part("with sampling of %s", r.unit(s.Unit))
 			r.also["sampling"] = true

@@ -159,7 +159,7 @@ func designs() []design {
 			Factors: []protocol.Factor{diet}, Units: []protocol.Unit{top("site", 3), in("block", "site", 4, 5, 4), gets(in("plot", "block", 4), "diet")}}},
 		{"several-sites-randomized", "completely randomized, repeated over site", protocol.Protocol{
 			Factors: []protocol.Factor{diet}, Units: []protocol.Unit{interacts(top("site", 3)), gets(in("pen", "site", 8), "diet")}}},
-		{"carried-class", "generalized randomized block, sex carried by pig", protocol.Protocol{
+		{"carried-class", "randomized complete block, sex carried by pig", protocol.Protocol{
 			Factors: []protocol.Factor{levels("diet", 3), levels("sex", 2)},
 			Units:   []protocol.Unit{top("pen", 5), gets(carries(in("pig", "pen", 6), "sex"), "diet")}}},
 		{"carried-within-pen", "randomized complete block, sex carried by group", protocol.Protocol{
@@ -174,13 +174,13 @@ func designs() []design {
 		{"factorial-plus-control", "completely randomized, 2 × 3 factorial plus control", protocol.Protocol{
 			Factors: []protocol.Factor{levels("season", 2), levels("rate", 3)}, Treatments: scab(),
 			Units: []protocol.Unit{replicates(gets(top("plot", 32), "treatment"), "O", 8)}}},
-		{"confounded-factorial", "balanced incomplete block, 2 × 2 × 2 factorial", protocol.Protocol{
+		{"confounded-factorial", "incomplete block, 2 × 2 × 2 factorial", protocol.Protocol{
 			Factors: []protocol.Factor{levels("a", 2), levels("b", 2), levels("c", 2)},
 			Units:   []protocol.Unit{top("block", 14), gets(in("plot", "block", 4), "a", "b", "c")}}},
 		{"unreplicated-factorial", "completely randomized, 2 × 2 × 2 factorial", protocol.Protocol{
 			Factors: []protocol.Factor{levels("a", 2), levels("b", 2), levels("c", 2)},
 			Units:   []protocol.Unit{gets(top("run", 8), "a", "b", "c")}}},
-		{"year-across-plots", "randomized complete block, with sampling of cut", protocol.Protocol{
+		{"year-across-plots", "randomized complete block, observed over year", protocol.Protocol{
 			Factors: []protocol.Factor{diet},
 			Units:   []protocol.Unit{top("block", 4), gets(in("plot", "block", 4), "diet"), interacts(top("year", 3)), crossing("cut", "plot", "year")}}},
 	}

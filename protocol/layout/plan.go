@@ -79,7 +79,11 @@ type Term struct {
 	Stratum int    // index into Plan.Strata: where it is tested when the draw is balanced; -1 when it cannot lie in one
 	DF      int
 	Over    int // index into Plan.Crossed of the interaction with a random unit it is tested over; -1: the residual
-	ErrorDF int // degrees of freedom of what it is tested over, in the stratum of Unit
+	ErrorDF int // degrees of freedom of what it is tested over; 0 when that is nothing or Inexact
+	// Inexact tells that two errors act on the term at once, such as a random
+	// interaction beside the residual of another stratum or a second such interaction,
+	// so that no single mean square is its error.
+	Inexact bool
 }
 
 // Crossed is the interaction of a unit with a treatment term, such as site:yeast.
@@ -98,7 +102,8 @@ type Stratum struct {
 	Name    string // the unit's name
 	DF      int
 	Terms   []int // indices into Plan.Terms of those that lie in it
-	ErrorDF int   // DF less that of everything estimated in it, terms that share it with coarser strata among them
+	ErrorDF int   // DF less that of everything estimated in it, terms that share it
+	// with coarser strata among them; negative when that is more than there is
 }
 
 // Design is what the trade calls the layout.

@@ -71,8 +71,12 @@ func (p *Plan) Skeleton() []Line {
 			l.Source, l.DF, l.Kind, l.Term = term.Name, term.DF, TermLine, t
 			if term.Stratum < 0 {
 				l.Random = nil
-			} else if c := term.Over; c >= 0 && l.Random != nil {
-				l.Random = append(slices.Clone(l.Random), p.crossedComponent(c))
+			} else if l.Random != nil {
+				for c, of := range p.Crossed {
+					if of.Term == t && of.Random {
+						l.Random = append(slices.Clone(l.Random), p.crossedComponent(c))
+					}
+				}
 			}
 			out = append(out, l)
 			for _, part := range p.Parts(t) {
@@ -92,7 +96,7 @@ func (p *Plan) Skeleton() []Line {
 				l := line
 				l.Source, l.DF, l.Kind = of.Name, of.DF, CrossLine
 				if of.Random {
-					l.Stratum = of.Name
+					l.Stratum = of.Name // its own stratum, between that of its unit and the coarser ones
 					if l.Random != nil {
 						l.Random = append(slices.Clone(l.Random), p.crossedComponent(c))
 					}
@@ -117,6 +121,9 @@ func (p *Plan) Skeleton() []Line {
 		l := &out[i]
 		switch l.Kind {
 		case TermLine, PartLine, CarryOver, Trend, CrossLine:
+			if l.Term >= 0 && p.Terms[l.Term].Inexact {
+				continue
+			}
 			if l.Term >= 0 && p.Terms[l.Term].Over >= 0 {
 				l.Over = cross[p.Terms[l.Term].Over]
 			} else if at, ok := over[p.stratum(l.Unit)]; ok {
@@ -173,7 +180,7 @@ func (p *Plan) crossedComponent(c int) Component {
 
 // Factor is unit u as a partition of the smallest units, the rows of the plan.
 func (p *Plan) Factor(u int) factor.Factor {
-	return factor.Factor{Level: p.coarse[p.Smallest][u], N: p.Units[u].N}
+	return p.on(p.Smallest, u)
 }
 
 // Repeated lists the lines that repeated measures i of the protocol adds below those

@@ -8,6 +8,7 @@ import (
 
 	"penwright/protocol"
 	"penwright/protocol/diag"
+	"penwright/protocol/factor"
 )
 
 // Listed is the name of the factor that stands for listed treatments.
@@ -240,50 +241,129 @@ func (b *builder) place() {
 	}
 	for i := range plan.Terms {
 		t := &plan.Terms[i]
-		t.ErrorDF = plan.Strata[plan.stratum(t.Unit)].ErrorDF
-		if t.Over >= 0 {
+		switch {
+		case t.Inexact:
+			t.Over = -1
+			b.add(diag.Warning, unitKey(b.interacting(i), "interacts"), "no-exact-error", "a mixed model is needed, or interacts = true on fewer units",
+				"%s has two errors at once, so no single mean square tests it", t.Name)
+		case t.Over >= 0:
 			t.ErrorDF = plan.Crossed[t.Over].DF
+		default:
+			t.ErrorDF = max(plan.Strata[plan.stratum(t.Unit)].ErrorDF, 0)
 		}
 	}
 	b.noError()
 }
 
+// interacting is the last unit whose random interaction with term t counts.
+func (b *builder) interacting(t int) int {
+	u := 0
+	for _, c := range b.plan.Crossed {
+		if c.Term == t && c.Random {
+			u = c.Unit
+		}
+	}
+	return u
+}
+
 // lies tells whether term t can be orthogonal to every unit coarser than its own, so
-// that it lies wholly in the stratum of its unit: in each coarser unit some factors of
-// the term that are received together vary, in proportional numbers.
+// that it lies wholly in the stratum of its unit.
 func (b *builder) lies(t *Term) bool {
-	plan := b.plan
-	if plan.Strata[plan.stratum(t.Unit)].DF < t.DF {
+	if b.plan.Strata[b.plan.stratum(t.Unit)].DF < t.DF {
 		return false
 	}
-	for v := range plan.Units {
-		if v == t.Unit || !b.up[t.Unit][v] {
-			continue
-		}
-		held := false
-		for _, f := range t.Factors {
-			w := plan.Factors[f].Unit
-			if b.up[v][w] {
-				continue // constant in each instance of v
-			}
-			held = held || b.proportional(t, w, plan.sup[v][w])
-		}
-		if !held {
+	for v := range b.plan.Units {
+		if v != t.Unit && b.up[t.Unit][v] && !b.balanced(t, v) && !b.joint(t, v) {
 			return false
 		}
 	}
 	return true
 }
 
-// proportional tells whether the levels of the factors of t that unit w receives or
-// carries can stand in proportional numbers in every instance of unit s.
-func (b *builder) proportional(t *Term, w, s int) bool {
+// balanced tells whether t is orthogonal to unit v whenever every unit receives its
+// levels in proportional numbers within its blocks: the factors that one of the units
+// receives must stand in proportional numbers wherever v and the units that receive
+// the other factors are fixed.
+func (b *builder) balanced(t *Term, v int) bool {
 	plan := b.plan
-	if s < 0 || plan.Units[s].N == 1 {
-		return true
+	for i, f := range t.Factors {
+		w := plan.Factors[f].Unit
+		first := i == 0 || !slices.ContainsFunc(t.Factors[:i], func(g int) bool { return plan.Factors[g].Unit == w })
+		if first && !b.up[v][w] && b.proportional(t, w, b.fixed(t, w, v)) {
+			return true
+		}
 	}
-	if s == w {
-		return false
+	return false
+}
+
+// joint tells whether unit v can hold all combinations of the factors of t equally
+// often, as when squares are made for each level of a factor that whole animals get.
+func (b *builder) joint(t *Term, v int) bool {
+	plan := b.plan
+	cells := 1
+	for _, f := range t.Factors {
+		w := plan.Factors[f].Unit
+		if b.up[v][w] {
+			return false
+		}
+		if total := plan.allocations[w]; total != nil && !total.Separate {
+			m := total.marginal(plan, []int{f})
+			if slices.Min(m) != slices.Max(m) {
+				return false
+			}
+		}
+		cells = min(cells*len(plan.Factors[f].Levels), manyDF)
+	}
+	return !slices.ContainsFunc(plan.sizes(t.Unit, v), func(n int) bool { return n%cells != 0 })
+}
+
+// fixed gives the different numbers of instances of unit w in the classes that
+// fixing v and the other units of t leaves to it.
+func (b *builder) fixed(t *Term, w, v int) []int {
+	plan := b.plan
+	mask := uint64(1) << v
+	hold := []factor.Factor{plan.on(t.Unit, v)}
+	for _, f := range t.Factors {
+		if u := plan.Factors[f].Unit; u != w && mask&(1<<u) == 0 {
+			mask |= 1 << u
+			hold = append(hold, plan.on(t.Unit, u))
+		}
+	}
+	key := [3]uint64{uint64(t.Unit), uint64(w), mask}
+	if sizes, ok := b.classes[key]; ok {
+		return sizes
+	}
+	units := plan.on(t.Unit, w)
+	class := factor.Supremum(units, factor.Infimum(hold...))
+	count := make([]int, class.N)
+	seen := make([]bool, units.N)
+	for i, u := range units.Level {
+		if !seen[u] {
+			seen[u] = true
+			count[class.Level[i]]++
+		}
+	}
+	slices.Sort(count)
+	count = slices.Compact(count)
+	if b.classes == nil {
+		b.classes = map[[3]uint64][]int{}
+	}
+	b.classes[key] = count
+	return count
+}
+
+// on is unit v as a partition of the instances of the finer unit u.
+func (p *Plan) on(u, v int) factor.Factor {
+	return factor.Factor{Level: p.coarse[u][v], N: p.Units[v].N}
+}
+
+// proportional tells whether the levels of the factors of t that unit w receives or
+// carries can stand in proportional numbers in classes of the given sizes.
+func (b *builder) proportional(t *Term, w int, sizes []int) bool {
+	plan := b.plan
+	n := plan.Units[w].N
+	if len(sizes) == 1 && sizes[0] == n {
+		return true
 	}
 	combinations, carried := 1, false
 	var fs []int
@@ -294,12 +374,10 @@ func (b *builder) proportional(t *Term, w, s int) bool {
 			combinations = min(combinations*len(plan.Factors[f].Levels), manyDF)
 		}
 	}
-	sizes := plan.sizes(w, s)
 	if carried {
 		// Numbers of a carried class are known with the roster; plan on equal ones.
 		return !slices.ContainsFunc(sizes, func(n int) bool { return n%combinations != 0 })
 	}
-	n := plan.Units[w].N
 	for _, total := range plan.allocations[w].marginal(plan, fs) {
 		for _, size := range sizes {
 			if size*total%n != 0 {
@@ -353,7 +431,10 @@ func (b *builder) interact() {
 			c := Crossed{Name: unit.Name + ":" + t.Name, Unit: v, Term: i, DF: min(own[v]*t.DF, manyDF), Random: random}
 			c.Stratum = plan.stratum(b.meet(v, t.Unit))
 			plan.Strata[c.Stratum].ErrorDF -= c.DF
-			if random && own[v] > 0 && t.Over < 0 {
+			if random && own[v] > 0 {
+				if t.Over >= 0 || c.Stratum != plan.stratum(t.Unit) {
+					t.Inexact = true
+				}
 				t.Over = len(plan.Crossed)
 			}
 			plan.Crossed = append(plan.Crossed, c)
@@ -406,7 +487,7 @@ func (b *builder) noError() {
 	var bad []string
 	unit := -1
 	for _, t := range plan.Terms {
-		if t.ErrorDF > 0 {
+		if t.ErrorDF > 0 || t.Inexact {
 			continue
 		}
 		bad = append(bad, t.Name)
@@ -462,7 +543,7 @@ func (b *builder) errorAt(order int) int {
 	}
 	least := manyDF
 	for _, t := range plan.Terms {
-		if len(t.Factors) > order {
+		if len(t.Factors) > order || t.Inexact {
 			continue
 		}
 		if t.Over >= 0 {

@@ -23,13 +23,14 @@ const (
 
 // builder makes a Plan. Its list collects what is wrong; steps go on where they can.
 type builder struct {
-	p    *protocol.Protocol
-	plan *Plan
-	list diag.List
-	sort []int    // units so that every unit follows the coarser ones
-	up   [][]bool // up[u][v]: v is u or coarser, as said by within and crosses
-	maps int
-	also map[string]bool // names and properties that the design may be called by
+	p       *protocol.Protocol
+	plan    *Plan
+	list    diag.List
+	sort    []int    // units so that every unit follows the coarser ones
+	up      [][]bool // up[u][v]: v is u or coarser, as said by within and crosses
+	maps    int
+	classes map[[3]uint64][]int // remembered results of fixed
+	also    map[string]bool     // names and properties that the design may be called by
 }
 
 func (b *builder) pos(key string) diag.Pos { return b.p.Pos(key) }
@@ -377,6 +378,9 @@ func (b *builder) own(u int, pu *protocol.Unit, counts []int) bool {
 		return true
 	case through && len(pu.Labels) == 1 && len(pu.Labels[0]) == unit.N:
 		unit.Own = append(unit.Own, pu.Labels[0]...)
+	case len(pu.Labels) != 1 && unit.Within < 0:
+		b.fail(key, "labels-length", "give one list", "unit %q lies within nothing, but labels holds %d lists", unit.Name, len(pu.Labels))
+		return false
 	case len(pu.Labels) != 1 && len(pu.Labels) != len(counts):
 		b.fail(key, "labels-length", "give one list for all, or one list for each",
 			"labels holds %d lists, but there are %d instances of %q", len(pu.Labels), len(counts), b.plan.Units[unit.Within].Name)
