@@ -76,6 +76,9 @@ func (s *scanner) peek() byte {
 	return 0
 }
 
+// step goes on by a byte, but not beyond the end, where a limit may have led.
+func (s *scanner) step() { s.i = min(s.i+1, len(s.src)) }
+
 func (s *scanner) spaces() {
 	for s.i < len(s.src) && (s.src[s.i] == ' ' || s.src[s.i] == '\t') {
 		s.i++
@@ -125,10 +128,10 @@ func (s *scanner) document() {
 // header scans [a.b] or [[a.b]] and returns the table that it opens.
 func (s *scanner) header() *Node {
 	bracket := s.i
-	s.i++
+	s.step()
 	array := s.peek() == '['
 	if array {
-		s.i++
+		s.step()
 	}
 	parts := s.key()
 	n := s.doc.Root
@@ -189,11 +192,11 @@ func (s *scanner) pair(n *Node, depth int) {
 	s.spaces()
 	if s.peek() != '=' || len(parts) == 0 {
 		if s.peek() != '\n' {
-			s.i++ // whatever it is, go on
+			s.step() // whatever it is, go on
 		}
 		return
 	}
-	s.i++
+	s.step()
 	last := parts[len(parts)-1]
 	for _, p := range parts[:len(parts)-1] {
 		n = s.within(n, p)
@@ -222,7 +225,7 @@ func (s *scanner) key() []part {
 			parts = append(parts, part{name: unquote(s.src[at:s.i]), at: at})
 		default:
 			for s.i < len(s.src) && !strings.ContainsRune(" \t\r\n.=[]{},#\"'", rune(s.src[s.i])) {
-				s.i++
+				s.step()
 			}
 			if s.i == at {
 				return parts
@@ -233,7 +236,7 @@ func (s *scanner) key() []part {
 		if s.peek() != '.' {
 			return parts
 		}
-		s.i++
+		s.step()
 	}
 }
 
@@ -252,31 +255,31 @@ func (s *scanner) value(name string, key, depth int) *Node {
 	switch s.peek() {
 	case '[':
 		n.Kind = Array
-		s.i++
+		s.step()
 		for s.blank(); s.more() && s.peek() != ']'; s.blank() {
 			before := s.i
 			n.add(s.value("", -1, depth+1))
 			if s.i == before {
-				s.i++
+				s.step()
 			}
 		}
-		s.i = min(s.i+1, len(s.src))
+		s.step()
 	case '{':
 		n.Kind = Table
-		s.i++
+		s.step()
 		for s.blank(); s.more() && s.peek() != '}'; s.blank() {
 			before := s.i
 			s.pair(n, depth+1)
 			if s.i == before {
-				s.i++
+				s.step()
 			}
 		}
-		s.i = min(s.i+1, len(s.src))
+		s.step()
 	case '"', '\'':
 		s.text()
 	default:
 		for s.i < len(s.src) && !strings.ContainsRune(",]}#\n", rune(s.src[s.i])) {
-			s.i++
+			s.step()
 		}
 		n.End = uint32(at + len(bytes.TrimRight(s.src[at:s.i], " \t\r")))
 		return n
@@ -291,9 +294,9 @@ func (s *scanner) text() {
 	q := s.peek()
 	long := bytes.HasPrefix(s.src[s.i:], []byte{q, q, q})
 	if long {
-		s.i += 3
+		s.i = min(s.i+3, len(s.src))
 	} else {
-		s.i++
+		s.step()
 	}
 	for s.i < len(s.src) {
 		switch c := s.src[s.i]; {
@@ -302,20 +305,20 @@ func (s *scanner) text() {
 		case c == '\n' && !long:
 			return
 		case c != q:
-			s.i++
+			s.step()
 		case !long:
-			s.i++
+			s.step()
 			return
 		case bytes.HasPrefix(s.src[s.i:], []byte{q, q, q}):
-			s.i += 3
+			s.i = min(s.i+3, len(s.src))
 			for range 2 { // up to two quotes may stand before the closing three
 				if s.peek() == q {
-					s.i++
+					s.step()
 				}
 			}
 			return
 		default:
-			s.i++
+			s.step()
 		}
 	}
 }
