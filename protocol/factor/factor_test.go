@@ -389,7 +389,8 @@ func blocks(of [][]int32, treatments int) (block, treatment Factor) {
 	return block, treatment
 }
 
-// A million rows go through every operation without a table of all pairs of classes.
+// A million rows go through every operation without a table of all pairs of classes;
+// it takes a third of a second, and the bound only tells that from hours.
 func TestMillionRows(t *testing.T) {
 	n := 1_000_000
 	r := rand.New(rand.NewPCG(7, 8))
@@ -398,7 +399,7 @@ func TestMillionRows(t *testing.T) {
 	Infimum(f, g)
 	Supremum(f, g)
 	Orthogonal(f, g)
-	if d := time.Since(start); d > 5*time.Second {
+	if d := time.Since(start); d > 30*time.Second {
 		t.Errorf("took %v", d)
 	}
 }

@@ -333,7 +333,7 @@ func TestTermsLieInTheirStratum(t *testing.T) {
 			if a == nil {
 				continue
 			}
-			if a.Separate || len(plan.Units[u].Crosses) > 2 {
+			if a.Separate || len(plan.Units[u].Crosses) > 2 || len(a.Factors) > 1 && !a.Complete {
 				return
 			}
 			unit := &plan.Units[u]
