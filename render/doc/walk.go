@@ -214,10 +214,10 @@ func Shift(blocks []Block, by int) []Block {
 	}}.Blocks(blocks)
 }
 
-// Size estimates how much there is to write, in bytes of finished page: the text, and
-// a flat price for each node, cell and drawing operation.
+// Size estimates how much memory and page a text takes, in bytes: the text, and a flat
+// price for each node, cell and drawing operation.
 func Size(blocks []Block) int {
-	const node, cell, op = 16, 16, 48
+	const node, cell, op = 16, 48, 48
 	size := 0
 	Walk(blocks, func(n any) {
 		size += node
