@@ -203,7 +203,7 @@ func (r *resolver) treatments() {
 	}
 	var used []string // factors that the lists name
 	for _, f := range p.Factors {
-		if f.Name != "" && r.inLists(f.Name) {
+		if f.Name != "" && !slices.Contains(used, f.Name) && r.inLists(f.Name) {
 			used = append(used, f.Name)
 		}
 	}
@@ -318,7 +318,7 @@ func (r *resolver) received() {
 	for i, f := range p.Factors {
 		g := givers[f.Name]
 		switch {
-		case f.Name == "":
+		case f.Name == "" || p.Factor(f.Name) != &p.Factors[i]: // no name, or that of another: said already
 		case len(g) == 0 && !r.inLists(f.Name):
 			r.fail(at("factor", i, "name"), NotReceived, "name it under receives or carries of a unit, or delete it", "the factor %s is given to no unit", quote(f.Name))
 		case len(g) == 1 && r.inLists(f.Name) && g[0].verb == "received":
@@ -516,42 +516,50 @@ func (r *resolver) analysis() {
 // sequences checks carry-over and time trends against the units.
 func (r *resolver) sequences() {
 	if c := r.p.CarryOver; c != nil {
-		factor := r.factorOrListed("carryover.factor", c.Factor)
-		on, along := r.refer("carryover.on", c.On, &r.units), r.refer("carryover.along", c.Along, &r.units)
-		if factor && on && along {
-			i := slices.IndexFunc(r.p.Units, func(u Unit) bool { return slices.Contains(u.Receives, c.Factor) })
-			if i >= 0 && !r.pair("carryover.factor", &r.p.Units[i], c.On, c.Along) {
-				return
-			}
-			r.order("carryover.sequences", c.Sequences, c.Factor, c.On, c.Along)
-		}
+		r.carryOver(c)
 	}
 	if t := r.p.TimeTrend; t != nil {
-		on, along := r.refer("time_trend.on", t.On, &r.units), r.refer("time_trend.along", t.Along, &r.units)
-		if !on || !along {
-			return
-		}
-		i := slices.IndexFunc(r.p.Units, func(u Unit) bool {
-			return slices.Contains(u.Crosses, t.On) && slices.Contains(u.Crosses, t.Along)
-		})
-		if i < 0 {
-			r.fail("time_trend.on", BadSequence, fmt.Sprintf("write [[unit]] with crosses = [%s, %s]", quote(t.On), quote(t.Along)), "no unit crosses %s and %s", quote(t.On), quote(t.Along))
-			return
-		}
-		u := r.p.Units[i]
-		if n := r.p.Unit(t.Along).Count; len(n) == 1 && t.Order >= n[0] {
-			r.fail("time_trend.order", BadSequence, fmt.Sprintf("write order = %d or less", max(1, n[0]-1)), "a polynomial of order %d needs more than the %d units of %s", t.Order, n[0], quote(t.Along))
-		}
-		if len(t.Sequences) > 0 {
-			if r.p.CarryOver != nil && len(r.p.CarryOver.Sequences) > 0 {
-				f := r.fail("time_trend.sequences", Conflict, "keep one of them", "the sequences are given under [carryover] already")
-				f.Relate(r.p.Pos("carryover.sequences"), "first given here")
-			} else if len(u.Receives) == 1 {
-				r.order("time_trend.sequences", t.Sequences, u.Receives[0], t.On, t.Along)
-			} else {
-				r.fail("time_trend.sequences", BadSequence, "", "the unit %s does not receive one factor, so sequences have no meaning", quote(u.Name))
-			}
-		}
+		r.timeTrend(t)
+	}
+}
+
+func (r *resolver) carryOver(c *CarryOver) {
+	factor := r.factorOrListed("carryover.factor", c.Factor)
+	on, along := r.refer("carryover.on", c.On, &r.units), r.refer("carryover.along", c.Along, &r.units)
+	if !factor || !on || !along {
+		return
+	}
+	i := slices.IndexFunc(r.p.Units, func(u Unit) bool { return slices.Contains(u.Receives, c.Factor) })
+	if i < 0 || r.pair("carryover.factor", &r.p.Units[i], c.On, c.Along) {
+		r.order("carryover.sequences", c.Sequences, c.Factor, c.On, c.Along)
+	}
+}
+
+func (r *resolver) timeTrend(t *TimeTrend) {
+	on, along := r.refer("time_trend.on", t.On, &r.units), r.refer("time_trend.along", t.Along, &r.units)
+	if !on || !along {
+		return
+	}
+	i := slices.IndexFunc(r.p.Units, func(u Unit) bool {
+		return slices.Contains(u.Crosses, t.On) && slices.Contains(u.Crosses, t.Along)
+	})
+	if i < 0 || t.On == t.Along {
+		r.fail("time_trend.on", BadSequence, fmt.Sprintf("write [[unit]] with crosses = [%s, %s]", quote(t.On), quote(t.Along)), "no unit crosses %s and %s", quote(t.On), quote(t.Along))
+		return
+	}
+	u := r.p.Units[i]
+	if n := r.p.Unit(t.Along).Count; len(n) == 1 && t.Order >= n[0] {
+		r.fail("time_trend.order", BadSequence, fmt.Sprintf("write order = %d or less", max(1, n[0]-1)), "a polynomial of order %d needs more than the %d units of %s", t.Order, n[0], quote(t.Along))
+	}
+	switch {
+	case len(t.Sequences) == 0:
+	case r.p.CarryOver != nil && len(r.p.CarryOver.Sequences) > 0:
+		f := r.fail("time_trend.sequences", Conflict, "keep one of them", "the sequences are given under [carryover] already")
+		f.Relate(r.p.Pos("carryover.sequences"), "first given here")
+	case len(u.Receives) != 1:
+		r.fail("time_trend.sequences", BadSequence, "delete them", "the unit %s does not receive one factor, so sequences have no meaning", quote(u.Name))
+	default:
+		r.order("time_trend.sequences", t.Sequences, u.Receives[0], t.On, t.Along)
 	}
 }
 

@@ -695,7 +695,7 @@ func found(v any) string {
 		return "the number " + strconv.FormatInt(v, 10)
 	case float64:
 		if math.IsNaN(v) || math.IsInf(v, 0) {
-			return strings.ToLower(strconv.FormatFloat(v, 'g', -1, 64))
+			return strings.TrimPrefix(strings.ToLower(strconv.FormatFloat(v, 'g', -1, 64)), "+")
 		}
 		return "the number " + shortest(v)
 	case bool:
