@@ -245,6 +245,16 @@ type Run struct {
 	Text string
 }
 
+// Alone tells whether f sets a clean text without help, so that it is one run.
+func (f *Face) Alone(text string) bool {
+	for _, r := range text {
+		if f.glyph(r).advance < 0 {
+			return false
+		}
+	}
+	return true
+}
+
 // Runs splits a clean text (see Clean) into pieces each of one face: f where it can,
 // else a fallback.
 func (f *Face) Runs(text string) []Run {
@@ -289,11 +299,11 @@ func (f *Face) cluster(text string, i int) (end int, face *Face) {
 		}
 	}
 	all := text[i:end]
-	if f.holds(all) {
+	if f.Alone(all) {
 		return end, f
 	}
 	for _, o := range f.others {
-		if o.holds(all) {
+		if o.Alone(all) {
 			return end, o
 		}
 	}
@@ -301,15 +311,6 @@ func (f *Face) cluster(text string, i int) (end int, face *Face) {
 		return i + len(string(r)), f.holder(r)
 	}
 	return end, f
-}
-
-func (f *Face) holds(text string) bool {
-	for _, r := range text {
-		if !f.Has(r) {
-			return false
-		}
-	}
-	return true
 }
 
 // raised tells whether r is a superscript or subscript figure or sign.
@@ -333,23 +334,12 @@ func (f *Face) holder(r rune) *Face {
 // Width gives the width of a clean text at a size, in the unit of the size, with
 // kerning and with the runes that f lacks taken from the fallback.
 func (f *Face) Width(text string, size float64) float64 {
-	total := 0
-	plain := true
-	var before rune
-	for _, r := range text {
-		g := f.glyph(r)
-		if g.advance < 0 || raised(r) {
-			plain = false
-			break
-		}
-		total += int(g.advance) + f.Kern(before, r)
-		before = r
+	if f.Alone(text) {
+		return float64(f.units(text)) * size / 1000
 	}
-	if !plain {
-		total = 0
-		for _, run := range f.Runs(text) {
-			total += run.Face.units(run.Text)
-		}
+	total := 0
+	for _, run := range f.Runs(text) {
+		total += run.Face.units(run.Text)
 	}
 	return float64(total) * size / 1000
 }

@@ -3,7 +3,6 @@ package page
 import (
 	"fmt"
 	"strings"
-	"unicode/utf8"
 
 	"penwright/protocol/diag"
 	"penwright/render/doc"
@@ -17,7 +16,8 @@ const deepest = 100
 // operations are relative to the left edge of the column and the top of the box.
 type box struct {
 	gap, height float64
-	keep        bool // stands on the same page as the box after it
+	below       float64 // space after it, which may be lost at the foot of a page
+	keep        bool    // stands on the same page as the box after it
 	ops         []Op
 	notes       []int // footnotes called in it
 	anchors     []anchor
@@ -48,7 +48,8 @@ type band struct {
 // item is a block of the top level on its way to the pages.
 type item struct {
 	boxes   []box
-	heading int // its level, 0: none
+	heading int  // level of the heading in it, 0: none
+	bare    bool // nothing but a heading
 	// figure makes the boxes of a figure no higher than a limit; it may float to the top
 	// of the next page.
 	figure func(highest float64) []box
@@ -228,7 +229,7 @@ func (s *setter) title() []item {
 		el := &Element{Role: Paragraph, Parent: s.root}
 		st := in(grey, sans(9))
 		lines := lineBoxes(ragged(s.plainAtoms(strings.Join(parts, "  ·  "), st), w.width), st, 12.5, w, 0, el)
-		lines[0].gap = 5
+		space(lines, 5, 0)
 		boxes = append(boxes, lines...)
 	}
 	if len(boxes) == 0 {
@@ -250,7 +251,7 @@ func (s *setter) items(blocks []doc.Block) []item {
 		w := s.top()
 		switch b := b.(type) {
 		case doc.Heading:
-			items = append(items, item{boxes: s.heading(b, w), heading: min(max(b.Level, 1), 6)})
+			items = append(items, item{boxes: s.heading(b, w), heading: min(max(b.Level, 1), 6), bare: true})
 		case doc.Table:
 			items = append(items, s.tableItem(b, w))
 		case doc.Figure:
@@ -261,7 +262,48 @@ func (s *setter) items(blocks []doc.Block) []item {
 			}
 		}
 	}
-	return items
+	return lead(items)
+}
+
+// lead joins headings with what they stand above.
+func lead(items []item) []item {
+	var out []item
+	for i := 0; i < len(items); i++ {
+		it := items[i]
+		if !it.bare || i+1 == len(items) {
+			out = append(out, it)
+			continue
+		}
+		next := items[i+1]
+		last := i+2 == len(items) || items[i+2].bare
+		if next.turned && !last {
+			// The heading belongs to the text; the table finds its place behind it.
+			out = append(out, next)
+			items[i+1] = it
+			continue
+		}
+		if next.heading > 0 {
+			next.heading = min(next.heading, it.heading)
+		} else {
+			next.heading = it.heading
+		}
+		next.boxes = under(it.boxes, next.boxes)
+		if figure := next.figure; figure != nil {
+			head := it.boxes
+			next.figure = func(highest float64) []box { return under(head, figure(highest-total(head)-floatGap)) }
+		}
+		items[i+1] = next
+	}
+	return out
+}
+
+// under puts boxes under those of a heading, whose own space below is enough.
+func under(head, boxes []box) []box {
+	out := append(append(make([]box, 0, len(head)+len(boxes)), head...), boxes...)
+	if len(boxes) > 0 {
+		out[len(head)].gap = max(boxes[0].gap-paragraphGap, 0)
+	}
+	return out
 }
 
 func (s *setter) blocks(blocks []doc.Block, w where) []box {
@@ -269,8 +311,14 @@ func (s *setter) blocks(blocks []doc.Block, w where) []box {
 	if w.depth > deepest {
 		return nil
 	}
+	above := false // a heading stands above
 	for _, b := range blocks {
-		boxes = append(boxes, s.block(b, w)...)
+		if above {
+			boxes = under(boxes, s.block(b, w))
+		} else {
+			boxes = append(boxes, s.block(b, w)...)
+		}
+		_, above = b.(doc.Heading)
 	}
 	return boxes
 }
@@ -328,11 +376,11 @@ func (s *setter) at(pos diag.Pos, w where) diag.Pos {
 	return pos
 }
 
-// space sets the gap above the first box and the height below the last.
+// space sets the space above the first box and below the last.
 func space(boxes []box, above, below float64) {
 	if len(boxes) > 0 {
 		boxes[0].gap = above
-		boxes[len(boxes)-1].height += below
+		boxes[len(boxes)-1].below = below
 	}
 }
 
@@ -428,10 +476,7 @@ func (s *setter) code(c doc.Code, w where) []box {
 			s.missing(r, w.pos)
 		}
 		for first := true; first || clean != ""; first = false {
-			part := clean
-			if utf8.RuneCountInString(part) > most {
-				part = string([]rune(part[:min(len(part), 4*most)])[:most])
-			}
+			part := head(clean, most)
 			clean = clean[len(part):]
 			a := atom{}
 			for _, run := range face.Get(face.Mono, false, false).Runs(part) {
@@ -443,6 +488,22 @@ func (s *setter) code(c doc.Code, w where) []box {
 		}
 	}
 	return framed(boxes, in.within, 4, 4, paragraphGap+2)
+}
+
+// head cuts what fits on a line of so many runes from s, at a space if there is one
+// near the end.
+func head(s string, most int) string {
+	n := 0
+	for i := range s {
+		if n == most {
+			if k := strings.LastIndexByte(s[:i], ' '); k > i*2/3 {
+				return s[:k+1]
+			}
+			return s[:i]
+		}
+		n++
+	}
+	return s
 }
 
 func untab(s string) string {
@@ -509,9 +570,7 @@ func (s *setter) aside(a doc.Aside, w where) []box {
 	}
 	boxes = framed(append(boxes, inner...), in.within, padY, padY, 10)
 	if len(boxes) > 0 {
-		// Air below the ground, outside it.
-		boxes = append(boxes, box{height: 5, within: w.within})
-		boxes[len(boxes)-2].keep = true
+		boxes[len(boxes)-1].below = 5
 	}
 	return boxes
 }
@@ -543,23 +602,17 @@ func (s *setter) contents(w where) []box {
 			continue
 		}
 		st := serif(w.size)
-		indent := float64(e.level-2) * 22
+		indent := float64(e.level-1) * 22
 		gap := 0.0
 		if e.level == 1 {
 			st, indent, gap = bold(sans(w.size-0.8)), 0, 4
 		}
-		numberWidth := 0.0
-		if e.number != "" {
-			numberWidth = max(22, textWidth(e.number, st)+7)
-		}
-		if e.level == 3 {
-			indent += numberWidth * 0.2
+		number, numberWidth := s.shorten(e.number, st, w.width/4), 0.0
+		if number != "" {
+			numberWidth = max(22, textWidth(number, st)+7)
 		}
 		el := &Element{Role: ContentsEntry, Parent: parent}
 		x := w.x + indent
-		if e.level > 1 {
-			x += 22 * 1
-		}
 		avail := max(w.width-(x-w.x)-numberWidth-34, 40)
 		link := st
 		link.link = "#" + e.anchor
@@ -570,26 +623,26 @@ func (s *setter) contents(w where) []box {
 		for i := range lines {
 			lines[i].notes = nil // a note belongs to the heading itself
 		}
-		if e.number != "" {
-			label := lineBoxes(ragged(s.plainAtoms(e.number, st), w.width), st, w.lead, w, x, el)
+		if number != "" {
+			label := lineBoxes(ragged(s.plainAtoms(number, st), w.width), st, w.lead, w, x, el)
 			if len(label) > 0 {
 				lines[0].ops = append(label[0].ops, lines[0].ops...)
 			}
 		}
 		lines[0].gap = gap
-		number := sans(w.size - 0.8)
+		at := sans(w.size - 0.8)
 		if e.level > 1 {
-			number = serif(w.size)
+			at = serif(w.size)
 		}
-		number.link = link.link
-		lines[len(lines)-1].pageOf = &pageOf{anchor: e.anchor, right: w.x + w.width, y: baseline(st, w.lead), style: number, element: el}
+		at.link = link.link
+		lines[len(lines)-1].pageOf = &pageOf{anchor: e.anchor, right: w.x + w.width, y: baseline(st, w.lead), style: at, element: el}
 		boxes = append(boxes, lines...)
 	}
 	if len(boxes) == 0 {
 		return nil
 	}
 	boxes = append(head, boxes...)
-	boxes[len(boxes)-1].height += 8
+	boxes[len(boxes)-1].below = 8
 	return boxes
 }
 
@@ -663,7 +716,7 @@ func (s *setter) figure(f doc.Figure, w where, highest float64) []box {
 	}
 	if len(caption) == 0 {
 		picture.keep = false
-		picture.height += floatGap - 4
+		picture.below = floatGap - 4
 	}
 	space(caption, 7, floatGap-6)
 	return append([]box{picture}, caption...)

@@ -48,7 +48,22 @@ func (s *setter) atoms(text []doc.Inline, st style, pos diag.Pos) []atom {
 	w := words{set: s, pos: pos, fresh: true}
 	w.inlines(text, st, 0)
 	w.flush(0, true, false)
+	holdRelations(w.atoms)
 	return w.atoms
+}
+
+// holdRelations keeps lines from breaking at the signs of a relation, as in P = 0.02.
+func holdRelations(atoms []atom) {
+	for i := range atoms {
+		a := &atoms[i]
+		if i == 0 || i+1 == len(atoms) || a.forced || atoms[i-1].forced || len(a.frags) != 1 {
+			continue
+		}
+		switch a.frags[0].text {
+		case "=", "<", ">", "≤", "≥", "≈", "±", "×", "∈":
+			a.breakable, atoms[i-1].breakable = false, false
+		}
+	}
 }
 
 func (s *setter) plainAtoms(text string, st style) []atom {
@@ -116,6 +131,9 @@ func (w *words) note(n int, st style) {
 	in := raised(st, raise)
 	in.link = noteAnchor(n)
 	in.italic = false
+	if n := len(w.cur.frags); n > 0 && w.cur.frags[n-1].rise != 0 {
+		w.add("\u2009", st) // a raised figure before it is no part of the number
+	}
 	w.add(strconv.Itoa(n), in)
 	if 0 < n && n <= len(w.set.doc.Notes) {
 		w.cur.notes = append(w.cur.notes, n)
@@ -284,7 +302,10 @@ func lifted(r rune) (plain rune, rise float64) {
 
 func (w *words) piece(s string, st style) {
 	f := face.Get(st.family, st.bold, st.italic)
-	runs := f.Runs(s)
+	runs := []face.Run{{Face: f, Text: s}}
+	if !f.Alone(s) {
+		runs = f.Runs(s)
+	}
 	for _, run := range runs {
 		fr := frag{
 			face: run.Face, text: run.Text, size: st.size, rise: st.rise, colour: st.colour, link: st.link,

@@ -92,6 +92,13 @@ func paragraph(atoms []atom, measure float64, justify bool) []line {
 			if ends == nil {
 				ends = fit(part, measure, false)
 			}
+			if ends == nil {
+				// What is held together is wider than the measure.
+				for k := range part {
+					part[k].breakable = true
+				}
+				ends = fit(part, measure, false)
+			}
 			out = append(out, makeLines(part, ends, measure, even)...)
 		}
 	}

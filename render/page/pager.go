@@ -64,6 +64,9 @@ func (p *pager) item(it item) {
 	switch {
 	case it.turned:
 		p.waiting = append(p.waiting, it)
+		if it.heading > 0 {
+			p.flush() // it carries the heading of its section
+		}
 		return
 	case it.figure != nil:
 		if len(p.waiting) > 0 {
@@ -110,7 +113,7 @@ func total(boxes []box) float64 {
 	for i, b := range boxes {
 		sum += b.height
 		if i > 0 {
-			sum += b.gap
+			sum += b.gap + boxes[i-1].below
 		}
 	}
 	return sum
@@ -195,7 +198,7 @@ func (p *pager) place(boxes []box) {
 			p.y += b.gap
 		}
 		p.cur.placed = append(p.cur.placed, placed{b, p.y})
-		p.y += b.height
+		p.y += b.height + b.below
 		for _, n := range b.notes {
 			p.call(n)
 		}
@@ -225,7 +228,7 @@ func (p *pager) call(n int) {
 func (p *pager) settle(most float64) {
 	for len(p.carry) > 0 {
 		b := p.carry[0]
-		need := b.height + b.gap
+		need := b.height + b.gap + b.below
 		if len(p.cur.notes) == 0 {
 			need += noteRuleSpace
 		}
@@ -333,7 +336,7 @@ func (p *pager) finish() *Book {
 		}
 		y := pg.Height - marginBottom
 		for _, b := range sh.notes {
-			y -= b.height + b.gap
+			y -= b.height + b.gap + b.below
 		}
 		if len(sh.notes) > 0 {
 			pg.Ops = append(pg.Ops, artifact(Box{X: left, Y: y - 4, Width: 72, Height: thin, Colour: ink})...)
@@ -342,7 +345,7 @@ func (p *pager) finish() *Book {
 			y += b.gap
 			put(b.ops, y)
 			mark(b, y)
-			y += b.height
+			y += b.height + b.below
 		}
 		book.Pages = append(book.Pages, pg)
 	}

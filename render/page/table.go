@@ -106,7 +106,9 @@ func columnCount(t doc.Table) int {
 		count(cells)
 	}
 	for _, r := range t.Rows {
-		count(r.Cells)
+		if !r.Group {
+			count(r.Cells)
+		}
 	}
 	return min(n, mostColumns)
 }
@@ -157,16 +159,13 @@ func (s *setter) cells(cells []doc.Cell, columns []doc.Column, st style, pos dia
 func (c *cell) measure() {
 	width := 0.0
 	c.empty = len(c.atoms) == 0
-	for i, a := range c.atoms {
+	for _, a := range c.atoms {
 		c.narrow = max(c.narrow, a.width)
 		width += a.width
 		c.natural = max(c.natural, width)
 		width += a.glue
 		if a.forced {
 			width = 0
-		}
-		if i == 0 && len(a.frags) == 0 {
-			continue
 		}
 	}
 	c.left = c.decimalAt()
@@ -392,7 +391,7 @@ func (s *setter) setTable(t doc.Table, g *grid, f form, w where, pos diag.Pos) [
 	if len(boxes) == 0 {
 		return nil
 	}
-	boxes[len(boxes)-1].height += floatGap - 5
+	boxes[len(boxes)-1].below = floatGap - 5
 	boxes[0].anchors = append(boxes[0].anchors, anchors(t.ID)...)
 	return boxes
 }
@@ -584,7 +583,7 @@ func (g *grid) rowBoxes(r row, f form, lead float64, w where, table *Element, ta
 // offset is where a line of a cell starts, from the left edge of its column.
 func (g *grid) offset(c cell, l line, lines int, width float64, r row, k float64) float64 {
 	align := c.align
-	if r.head && c.span > 1 && !c.ownAlign {
+	if r.head && !c.ownAlign && (c.span > 1 || align == doc.Decimal) {
 		align = doc.Center
 	}
 	switch align {
@@ -593,8 +592,9 @@ func (g *grid) offset(c cell, l line, lines int, width float64, r row, k float64
 	case doc.Right:
 		return max(width-l.width, 0)
 	case doc.Decimal:
-		if !r.head && c.span == 1 && lines == 1 && (g.left[c.col]+g.right[c.col])*k <= width+0.01 {
-			return width - (g.right[c.col]+c.left)*k
+		spare := width - (g.left[c.col]+g.right[c.col])*k
+		if !r.head && c.span == 1 && lines == 1 && spare >= -0.01 {
+			return spare/2 + (g.left[c.col]-c.left)*k
 		}
 		return max(width-l.width, 0)
 	}
@@ -653,7 +653,7 @@ func (s *setter) divide(t doc.Table, g *grid, w where, pos diag.Pos) []box {
 func takeColumns(t doc.Table, g *grid, cols []int) doc.Table {
 	take := func(cells []doc.Cell, group bool) []doc.Cell {
 		if group {
-			return cells
+			return cells[:min(len(cells), 1)]
 		}
 		var out []doc.Cell
 		col := 0

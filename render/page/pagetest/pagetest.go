@@ -10,9 +10,7 @@ import (
 	"penwright/render/doc"
 )
 
-func words(format string, args ...any) []doc.Inline {
-	return []doc.Inline{doc.Text{Text: fmt.Sprintf(format, args...)}}
-}
+func words(s string) []doc.Inline { return []doc.Inline{doc.Text{Text: s}} }
 
 func para(parts ...any) doc.Paragraph {
 	var text []doc.Inline
@@ -27,9 +25,9 @@ func para(parts ...any) doc.Paragraph {
 	return doc.Paragraph{Text: text, Pos: diag.Pos{File: "narrative.md", Line: 1, Col: 1}}
 }
 
-func em(s string) doc.Inline { return doc.Emph{Text: words("%s", s)} }
+func em(s string) doc.Inline { return doc.Emph{Text: words(s)} }
 
-func cell(s string) doc.Cell { return doc.Cell{Text: words("%s", s)} }
+func cell(s string) doc.Cell { return doc.Cell{Text: words(s)} }
 
 func cells(list ...string) []doc.Cell {
 	var out []doc.Cell
@@ -131,13 +129,13 @@ func sampleBlocks() []doc.Block {
 
 func meansTable() doc.Table {
 	sup := func(s, letter string) doc.Cell {
-		return doc.Cell{Text: []doc.Inline{doc.Text{Text: s}, doc.Sup{Text: words("%s", letter)}}}
+		return doc.Cell{Text: []doc.Inline{doc.Text{Text: s}, doc.Sup{Text: words(letter)}}}
 	}
 	return doc.Table{ID: "tab-means", Number: "2",
 		Caption: words("Means by level of dried yeast, with the standard error of a difference (SED) and the probability of the linear trend"),
 		Columns: []doc.Column{{Key: true}, {Align: doc.Decimal}, {Align: doc.Decimal}, {Align: doc.Decimal}, {Align: doc.Decimal}, {Align: doc.Decimal}, {Align: doc.Decimal}},
 		Head: [][]doc.Cell{
-			{{}, {Text: words("Dried yeast, %% of diet"), Span: 4}, {}, {}},
+			{{}, {Text: words("Dried yeast, % of diet"), Span: 4}, {}, {}},
 			cells("Variable", "0", "1", "2", "4", "SED", "P (linear)"),
 		},
 		Rows: []doc.Row{
