@@ -138,7 +138,7 @@ func (a *Analysis) take(u int, e []float64) {
 	st.SS = squares(v, counts)
 	for _, t := range s.within[u] {
 		level := s.level[t]
-		effect := classMeans(level, s.cells[t].N, v)
+		effect := a.cellMeans(t, v)
 		for c, l := range level {
 			if l >= 0 {
 				v[c] -= effect[l]
@@ -159,6 +159,19 @@ func (a *Analysis) take(u int, e []float64) {
 	st.ErrorSS = squares(v, counts)
 	a.error[u] = v
 	a.Strata[u] = st
+}
+
+// cellMeans are the means over the cells of a term of v, given over the classes of its unit.
+func (a *Analysis) cellMeans(t int, v []float64) []float64 {
+	s := a.s
+	if s.constant[t] {
+		return classMeans(s.level[t], s.cells[t].N, v)
+	}
+	points := make([]float64, s.point.N)
+	for i, c := range s.units[s.stratum[t]].Level {
+		points[i] = v[c]
+	}
+	return classMeans(s.cells[t].Level, s.cells[t].N, points)
 }
 
 func squares(v []float64, counts []int) float64 {

@@ -32,8 +32,8 @@ type Design struct {
 	// × period does to the sample where periods are common to squares.
 	Units []factor.Factor
 
-	// Random, one for each unit, bears on the variance of means alone. The last unit and
-	// units whose stratum holds a term are random whatever it says.
+	// Random, one for each unit, bears on the variance of means alone. Whatever it says, the
+	// last unit is random, units whose stratum holds a term are, and units within random ones.
 	Random []bool
 
 	// Factors are the treatment factors (carried classes too). Every level occurs.
@@ -65,8 +65,11 @@ type Structure struct {
 	reps    [][]int         // rows in each cell of each term
 	stratum []int           // unit of each term
 	within  [][]int         // terms of each unit, margins first
-	level   [][]int32       // cell of each class of the term's unit
-	mean    []float64       // variance of the grand mean direction in ξ of each unit
+	level   [][]int32       // cell of a point of each class of the term's unit
+	// constant: all points of a class are in one cell. Else the term is confounded with the
+	// unit, its effects constant on the classes though its cells are not.
+	constant []bool
+	mean     []float64 // variance of the grand mean direction in ξ of each unit
 }
 
 // NotFinest: the last unit puts several rows into one class.
@@ -214,11 +217,18 @@ func (s *Structure) takeUnits(d Design) error {
 				continue
 			}
 			// Both are upper or both lower: the points are comparable with every unit.
-			f, g := s.units[a], s.units[b]
-			if !factor.Orthogonal(f, g) {
+			units := d.Units
+			if s.upper[a] {
+				units = s.units
+			}
+			if !factor.Orthogonal(units[a], units[b]) {
 				return UnitsNotOrthogonal{A: min(a, b), B: max(a, b)}
 			}
-			if sup := factor.Supremum(f, g); sup.N > 1 && !s.known(sup, s.order[:i], s.upper[a], rank) {
+			sup := factor.Supremum(units[a], units[b])
+			known := slices.ContainsFunc(s.order[:i], func(u int) bool {
+				return rank[u] == sup.N && units[u].Len() == sup.Len() && factor.Equivalent(units[u], sup)
+			})
+			if sup.N > 1 && !known {
 				return UnitsNotClosed{A: min(a, b), B: max(a, b)}
 			}
 		}
@@ -226,16 +236,6 @@ func (s *Structure) takeUnits(d Design) error {
 	s.random = slices.Clone(d.Random)
 	s.random[last] = true
 	return nil
-}
-
-// known tells whether the factor is one of the units, up to the numbering of classes.
-func (s *Structure) known(f factor.Factor, units []int, upper bool, rank []int) bool {
-	for _, u := range units {
-		if rank[u] == f.N && s.upper[u] == upper && factor.Equivalent(f, s.units[u]) {
-			return true
-		}
-	}
-	return false
 }
 
 // findPoints finds the coarsest unit that all treatments are constant on and with which
@@ -508,6 +508,11 @@ func (s *Structure) place(d Design) error {
 			s.random[first] = true
 		}
 	}
+	for _, u := range s.order {
+		for _, a := range s.above[u] {
+			s.random[u] = s.random[u] || s.random[a]
+		}
+	}
 	// The grand mean is one when the classes of every random unit are.
 	for u, random := range s.random {
 		if random && s.size[u] == 0 {
@@ -515,7 +520,9 @@ func (s *Structure) place(d Design) error {
 		}
 	}
 
+	s.constant = make([]bool, len(d.Terms))
 	for t, u := range s.stratum {
+		s.constant[t] = factor.Finer(s.units[u], s.cells[t])
 		s.level[t] = make([]int32, s.units[u].N)
 		for c := range s.level[t] {
 			s.level[t][c] = -1
