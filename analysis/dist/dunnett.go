@@ -2,16 +2,6 @@ package dist
 
 import "math"
 
-// Side says in which direction differences count.
-type Side int
-
-// The sides of a comparison: different, greater, less.
-const (
-	Two Side = iota
-	Greater
-	Less
-)
-
 // Dunnett is the distribution of the largest of k comparisons that share one
 // standard of reference, such as treatments against a control:
 //
@@ -46,9 +36,9 @@ func NewDunnett(lambda []float64, side Side) *Dunnett {
 		m.add(l)
 	}
 	if m.twoSided {
-		return &Dunnett{tail: interpolate(m.upper, 0, 16)}
+		return &Dunnett{tail: interpolate(m.upper, 0, 36)}
 	}
-	return &Dunnett{tail: interpolate(m.upper, -9, 16), lowest: math.Inf(-1)}
+	return &Dunnett{tail: interpolate(m.upper, -9, 36), lowest: math.Inf(-1)}
 }
 
 // Upper returns P(max > t), for two sides P(max |T| > t).

@@ -15,7 +15,7 @@ type StudentizedRange struct {
 
 // NewStudentizedRange returns the distribution for r ≥ 2 values; it panics if r < 2.
 func NewStudentizedRange(r int) *StudentizedRange {
-	return &StudentizedRange{tail: interpolate(newRange(r).upper, 0, 16)}
+	return &StudentizedRange{tail: interpolate(newRange(r).upper, 0, 36)}
 }
 
 // Upper returns P(Q > q).
