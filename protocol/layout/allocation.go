@@ -129,10 +129,10 @@ func (b *builder) allocate() bool {
 		unit, pu := &plan.Units[u], &b.p.Units[u]
 		if len(unit.Receives) == 0 {
 			if len(pu.Replicates) > 0 {
-				b.fail(unitKey(u, "replicates"), "replicates-nothing", "", "unit %q receives nothing, so it has no replicates", unit.Name)
+				b.fail(unitKey(u, "replicates"), protocol.Conflict, "", "unit %q receives nothing, so it has no replicates", unit.Name)
 			}
 			if len(pu.Checks) > 0 {
-				b.fail(unitKey(u, "checks"), "checks-nothing", "", "unit %q receives nothing, so it has no checks", unit.Name)
+				b.fail(unitKey(u, "checks"), BadChecks, "", "unit %q receives nothing, so it has no checks", unit.Name)
 			}
 			continue
 		}
@@ -148,7 +148,7 @@ func (b *builder) allocate() bool {
 		}
 		if a.Separate {
 			if len(pu.Replicates) > 0 {
-				b.fail(unitKey(u, "replicates"), "replicates-several", "", "unit %q receives several factors, each a Latin square, so replicates cannot be set", unit.Name)
+				b.fail(unitKey(u, "replicates"), protocol.Conflict, "", "unit %q receives several factors, each a Latin square, so replicates cannot be set", unit.Name)
 			}
 			a.Complete = true
 			continue
@@ -207,7 +207,7 @@ func (b *builder) tooFew(u int) {
 	if len(unit.Receives) > 1 {
 		hint = "more units are needed, or list the treatments that are used as [[treatment]] tables"
 	}
-	b.fail(unitKey(u, "receives"), "too-few-units", hint, "%d instances of unit %q cannot receive every one of %s", unit.N, unit.Name, strings.Join(product, " × "))
+	b.fail(unitKey(u, "receives"), TooFewUnits, hint, "%d instances of unit %q cannot receive every one of %s", unit.N, unit.Name, strings.Join(product, " × "))
 }
 
 // latin tells whether crossing unit u receives several factors that are each a Latin
@@ -257,7 +257,7 @@ func (b *builder) replicate(u int, a *Allocation, pu *protocol.Unit) {
 	plan := b.plan
 	unit, key := &plan.Units[u], unitKey(u, "replicates")
 	if len(a.Factors) != 1 {
-		b.fail(key, "replicates-several", "list the treatments as [[treatment]] tables", "unit %q receives %d factors, so replicates of one level say too little", unit.Name, len(a.Factors))
+		b.fail(key, protocol.Conflict, "list the treatments as [[treatment]] tables", "unit %q receives %d factors, so replicates of one level say too little", unit.Name, len(a.Factors))
 		return
 	}
 	levels := plan.Factors[a.Factors[0]].Levels
@@ -267,13 +267,13 @@ func (b *builder) replicate(u int, a *Allocation, pu *protocol.Unit) {
 		l := slices.Index(levels, r.Level)
 		switch {
 		case l < 0:
-			b.fail(key, "unknown-level", "levels are "+strings.Join(levels, ", "), "%q is no level of %q", r.Level, plan.Factors[a.Factors[0]].Name)
+			b.fail(key, protocol.UnknownLevel, "levels are "+strings.Join(levels, ", "), "%q is no level of %q", r.Level, plan.Factors[a.Factors[0]].Name)
 			return
 		case r.N < 1 || r.N > maxRows:
-			b.fail(key, "replicates-range", "", "%d replicates of %q are out of range", r.N, r.Level)
+			b.fail(key, protocol.BadCount, "", "%d replicates of %q are out of range", r.N, r.Level)
 			return
 		case stated[l] > 0:
-			b.fail(key, "replicates-twice", "", "replicates of %q are given twice", r.Level)
+			b.fail(key, protocol.Duplicate, "", "replicates of %q are given twice", r.Level)
 			return
 		}
 		stated[l] = r.N
@@ -312,13 +312,13 @@ func (b *builder) replicate(u int, a *Allocation, pu *protocol.Unit) {
 	case fits(unit.N):
 		a.Total = share(unit.N, 1)
 	case listed < len(levels):
-		b.fail(key, "replicates-sum", "", "replicates add up to %d and leave too few of the %d instances of unit %q for the other %d levels", sum, unit.N, unit.Name, len(levels)-listed)
+		b.fail(key, protocol.BadCount, "", "replicates add up to %d and leave too few of the %d instances of unit %q for the other %d levels", sum, unit.N, unit.Name, len(levels)-listed)
 	case len(a.Blocks) > 0:
 		v := a.Blocks[0]
 		sizes := plan.sizes(u, v)
-		b.fail(key, "replicates-sum", "", "replicates add up to %d, but each %s holds %s and the trial %d", sum, plan.Units[v].Name, span(sizes, unit.Name), unit.N)
+		b.fail(key, protocol.BadCount, "", "replicates add up to %d, but each %s holds %s and the trial %d", sum, plan.Units[v].Name, span(sizes, unit.Name), unit.N)
 	default:
-		b.fail(key, "replicates-sum", "", "replicates add up to %d, but there are %d instances of unit %q", sum, unit.N, unit.Name)
+		b.fail(key, protocol.BadCount, "", "replicates add up to %d, but there are %d instances of unit %q", sum, unit.N, unit.Name)
 	}
 }
 
@@ -335,7 +335,7 @@ func (b *builder) augment(u int, a *Allocation, pu *protocol.Unit) {
 	plan := b.plan
 	unit, key := &plan.Units[u], unitKey(u, "checks")
 	if len(a.Factors) != 1 || plan.Factors[a.Factors[0]].Name != Listed {
-		b.fail(key, "checks-listed", "list the treatments as [[treatment]] tables and say receives = [\"treatment\"]", "checks are treatments of a list, which unit %q does not receive", unit.Name)
+		b.fail(key, BadChecks, "list the treatments as [[treatment]] tables and say receives = [\"treatment\"]", "checks are treatments of a list, which unit %q does not receive", unit.Name)
 		return
 	}
 	codes := plan.Factors[a.Factors[0]].Levels
@@ -344,7 +344,7 @@ func (b *builder) augment(u int, a *Allocation, pu *protocol.Unit) {
 	for i, c := range pu.Checks {
 		at := slices.Index(codes, c)
 		if at < 0 {
-			b.fail(fmt.Sprintf("%s[%d]", key, i), "unknown-level", "treatments are "+strings.Join(codes, ", "), "check %q is not a listed treatment", c)
+			b.fail(fmt.Sprintf("%s[%d]", key, i), protocol.UnknownLevel, "treatments are "+strings.Join(codes, ", "), "check %q is not a listed treatment", c)
 			return
 		}
 		a.Checks[at], each[at] = true, 1
@@ -352,7 +352,7 @@ func (b *builder) augment(u int, a *Allocation, pu *protocol.Unit) {
 	for _, r := range pu.Replicates {
 		at := slices.Index(codes, r.Level)
 		if at < 0 || !a.Checks[at] || r.N < 1 || r.N > maxRows {
-			b.fail(unitKey(u, "replicates"), "replicates-checks", "", "in an augmented design replicates are for checks, 1 or more in each block; %q has %d", r.Level, r.N)
+			b.fail(unitKey(u, "replicates"), BadChecks, "", "in an augmented design replicates are for checks, 1 or more in each block; %q has %d", r.Level, r.N)
 			return
 		}
 		each[at] = r.N
@@ -378,11 +378,11 @@ func (b *builder) augment(u int, a *Allocation, pu *protocol.Unit) {
 		}
 	}
 	if inBlock > least {
-		b.fail(key, "checks-fit", "", "the checks take %d units of a block, but the smallest block has %d", inBlock, least)
+		b.fail(key, BadChecks, "", "the checks take %d units of a block, but the smallest block has %d", inBlock, least)
 		return
 	}
 	if free := unit.N - inBlock*blocks; free != entries {
-		b.fail(key, "checks-fit", fmt.Sprintf("unit %q needs %d instances in all", unit.Name, inBlock*blocks+entries),
+		b.fail(key, BadChecks, fmt.Sprintf("unit %q needs %d instances in all", unit.Name, inBlock*blocks+entries),
 			"%d instances of unit %q less %d for checks leave %d for %d entries", unit.N, unit.Name, inBlock*blocks, free, entries)
 		return
 	}
@@ -401,7 +401,7 @@ func (b *builder) uneven(u int, a *Allocation) {
 	for _, size := range plan.sizes(u, v) {
 		if size > n && size%n != 0 {
 			b.list.Add(diag.Diagnostic{
-				Pos: b.pos(unitKey(u, "count")), Key: unitKey(u, "count"), Severity: diag.Warning, Code: "blocks-uneven",
+				Pos: b.pos(unitKey(u, "count")), Key: unitKey(u, "count"), Severity: diag.Warning, Code: BlocksUneven,
 				Message: fmt.Sprintf("%d instances of unit %q in one %s are no multiple of %d treatments", size, plan.Units[u].Name, plan.Units[v].Name, n),
 				Hint:    fmt.Sprintf("blocks of %d or %d hold every treatment equally often", size/n*n, (size/n+1)*n),
 			})

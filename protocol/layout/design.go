@@ -251,6 +251,7 @@ func (r *recogniser) base(u int) string {
 	}
 	switch {
 	case a.Checks != nil && block >= 0:
+		r.also[RandomizedBlock], r.also[IncompleteBlock] = true, true
 		r.above(r.plan.Units[block].Within)
 		return AugmentedBlock
 	case a.Checks != nil:
@@ -561,6 +562,8 @@ var phrases = []struct{ said, means string }{
 	{"strip plot", StripPlot}, {"strip block", StripPlot}, {"split block", StripPlot}, {"criss cross", StripPlot},
 	{"strip split plot", StripSplitPlot}, {"split strip plot", StripSplitPlot},
 	{"augmented", AugmentedBlock}, {"augmented block", AugmentedBlock}, {"augmented randomized block", AugmentedBlock}, {"augmented randomized complete block", AugmentedBlock},
+	{"matched pair", RandomizedBlock}, {"paired comparison", RandomizedBlock}, {"parallel group", CompletelyRandomized},
+	{"cluster randomized", "sampling"}, {"group randomized", "sampling"},
 	{"factorial", "factorial"}, {"confounded factorial", "confounded factorial"}, {"confounded", "confounded factorial"},
 	{"repeated measure", "repeated measures"}, {"several site", "several sites"}, {"multi site", "several sites"}, {"multisite", "several sites"},
 	{"multi location", "several sites"}, {"multi environment", "several sites"}, {"several year", "several sites"},
@@ -587,7 +590,7 @@ func (b *builder) called() {
 		if means != "" {
 			known = true
 			if !b.also[means] {
-				b.add(diag.Warning, "trial.called", "called-differs", "correct `called`, or the units",
+				b.add(diag.Warning, "trial.called", CalledDiffers, "correct `called`, or the units",
 					"the trial is called %q, but its units make it %q", said, units)
 				return
 			}
@@ -595,7 +598,7 @@ func (b *builder) called() {
 		words = words[length:]
 	}
 	if !known {
-		b.add(diag.Note, "trial.called", "called-unknown", "its units make it \""+units+"\"", "%q is no name of a design that is known here", said)
+		b.add(diag.Note, "trial.called", CalledUnknown, "its units make it \""+units+"\"", "%q is no name of a design that is known here", said)
 	}
 }
 

@@ -148,3 +148,41 @@ func TestDegreesOfFreedom(t *testing.T) {
 		})
 	}
 }
+
+// Lines of the skeleton beyond terms, with the degrees of freedom their sources print.
+func TestPublishedLines(t *testing.T) {
+	want := map[string]string{
+		// Cochran & Cox 1957 p. 97, potato scab: a control beside 2 × 3.
+		"factorial-plus-control": "treatment 6, control v. rest 1, season 1, rate 2, season:rate 2, residual 25",
+		// Federer 1956, augmented blocks; the rest of the entries is 1 + 7.
+		"augmented": "block 2, treatment 11, checks v. entries 1, checks 3, entries 7, residual 6",
+		// Cochran & Cox 1957 §4.62a, carry-over in two 3 × 3 squares.
+		"crossover-squares": "square 1, cow 4, period 4, ration 2, carry-over 2, residual 4",
+		// Brandt 1938, switchback: F on 1 and 8.
+		"switchback": "cow 9, period 2, grain 1, cow:period trend 9, residual 8",
+		// Snedecor & Cochran, asparagus over years (layout 4 × 4 × 5, from memory).
+		"repeated-measures": "block 3, cutting 3, residual 9, year 4, cutting:year 12, residual 48",
+	}
+	found := 0
+	for _, d := range designs() {
+		if want[d.file] == "" {
+			continue
+		}
+		found++
+		p := plan(t, &d.p)
+		lines := p.Skeleton()
+		for i := range p.Protocol.Repeated {
+			lines = append(lines, p.Repeated(i)...)
+		}
+		var got []string
+		for _, l := range lines {
+			got = append(got, fmt.Sprintf("%s %d", l.Source, l.DF))
+		}
+		if s := strings.Join(got, ", "); s != want[d.file] {
+			t.Errorf("%s:\ngot  %s\nwant %s", d.file, s, want[d.file])
+		}
+	}
+	if found != len(want) {
+		t.Errorf("%d of %d designs found", found, len(want))
+	}
+}

@@ -34,9 +34,9 @@ func TestMessages(t *testing.T) {
 	for _, c := range []struct{ code, body, says, hint, line string }{
 		{"units-not-joined", diets + "[[unit]]\nname = \"cow\"\ncount = 4\n[[unit]]\nname = \"period\"\ncount = 4\nreceives = [\"diet\"]\n",
 			`no unit lies within both "cow" and "period"`, `crosses = ["cow", "period"]`, `name = "period"`},
-		{"count-length", diets + "[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = [4, 4]\nreceives = [\"diet\"]\n",
+		{"bad-count", diets + "[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = [4, 4]\nreceives = [\"diet\"]\n",
 			`count lists 2 numbers, but there are 3 instances of "block"`, "give one number, or 3", "count = [4, 4]"},
-		{"labels-length", diets + "[[unit]]\nname = \"pen\"\ncount = 8\nlabels = [\"p\", \"q\"]\nreceives = [\"diet\"]\n",
+		{"bad-count", diets + "[[unit]]\nname = \"pen\"\ncount = 8\nlabels = [\"p\", \"q\"]\nreceives = [\"diet\"]\n",
 			"2 labels for a count of 8", "", `labels = ["p", "q"]`},
 		{"too-few-units", diets + feeds + "[[unit]]\nname = \"pen\"\ncount = 6\nreceives = [\"diet\", \"feed\"]\n",
 			`6 instances of unit "pen" cannot receive every one of 4 diet × 2 feed`, "[[treatment]]", `receives = ["diet", "feed"]`},
@@ -44,23 +44,23 @@ func TestMessages(t *testing.T) {
 			"no degrees of freedom are left for the error of diet", "more units are needed", `name = "pen"`},
 		{"no-error", diets + feeds + "[[unit]]\nname = \"pen\"\ncount = 8\nreceives = [\"diet\", \"feed\"]\n",
 			"error of diet, feed, diet:feed", `interactions = "none" leaves 3`, `name = "pen"`},
-		{"replicates-sum", diets + "[[unit]]\nname = \"pen\"\ncount = 16\nreceives = [\"diet\"]\nreplicates = { a = 4, b = 4, c = 4, d = 3 }\n",
+		{"bad-count", diets + "[[unit]]\nname = \"pen\"\ncount = 16\nreceives = [\"diet\"]\nreplicates = { a = 4, b = 4, c = 4, d = 3 }\n",
 			"replicates add up to 15, but there are 16 instances", "", "replicates ="},
-		{"replicates-sum", diets + "[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 4\nreceives = [\"diet\"]\nreplicates = { a = 2, b = 1, c = 1, d = 1 }\n",
+		{"bad-count", diets + "[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 4\nreceives = [\"diet\"]\nreplicates = { a = 2, b = 1, c = 1, d = 1 }\n",
 			"replicates add up to 5, but each block holds 4", "", "replicates ="},
 		{"blocks-uneven", diets + "[[unit]]\nname = \"block\"\ncount = 4\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 5\nreceives = [\"diet\"]\n",
 			"no multiple of 4 treatments", "blocks of 4 or 8", "count = 5"},
-		{"checks-fit", "[[treatment]]\ncode = \"A\"\n[[treatment]]\ncode = \"B\"\n[[treatment]]\ncode = \"e\"\n[[unit]]\nname = \"block\"\ncount = 2\n[[unit]]\nname = \"plot\"\nwithin = \"block\"\ncount = 3\nreceives = [\"treatment\"]\nchecks = [\"A\", \"B\"]\n",
+		{"bad-checks", "[[treatment]]\ncode = \"A\"\n[[treatment]]\ncode = \"B\"\n[[treatment]]\ncode = \"e\"\n[[unit]]\nname = \"block\"\ncount = 2\n[[unit]]\nname = \"plot\"\nwithin = \"block\"\ncount = 3\nreceives = [\"treatment\"]\nchecks = [\"A\", \"B\"]\n",
 			"less 4 for checks leave 2 for 1 entries", "needs 5 instances", `checks = ["A", "B"]`},
-		{"too-many-rows", diets + "[[unit]]\nname = \"block\"\ncount = 100000\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 100000\nreceives = [\"diet\"]\n",
+		{"too-many", diets + "[[unit]]\nname = \"block\"\ncount = 100000\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 100000\nreceives = [\"diet\"]\n",
 			"more than the 1000000 instances", "", "count = 100000"},
-		{"too-many-experimental", diets + "[[unit]]\nname = \"pen\"\ncount = 200000\nreceives = [\"diet\"]\n",
+		{"too-many", diets + "[[unit]]\nname = \"pen\"\ncount = 200000\nreceives = [\"diet\"]\n",
 			"more than the 100000 experimental units", "", `receives = ["diet"]`},
 		{"called-differs", "called = \"RCBD\"\n" + diets + "[[unit]]\nname = \"pen\"\ncount = 16\nreceives = [\"diet\"]\n",
 			`called "RCBD", but its units make it "completely randomized"`, "", `called = "RCBD"`},
 		{"called-unknown", "called = \"the usual\"\n" + diets + "[[unit]]\nname = \"pen\"\ncount = 16\nreceives = [\"diet\"]\n",
 			"no name of a design", "completely randomized", `called = "the usual"`},
-		{"interacts-within", diets + "[[unit]]\nname = \"pen\"\ncount = 16\nreceives = [\"diet\"]\n[[unit]]\nname = \"animal\"\nwithin = \"pen\"\ncount = 2\ninteracts = true\n",
+		{"cannot-interact", diets + "[[unit]]\nname = \"pen\"\ncount = 16\nreceives = [\"diet\"]\n[[unit]]\nname = \"animal\"\nwithin = \"pen\"\ncount = 2\ninteracts = true\n",
 			"cannot interact", "", "interacts = true"},
 		{"no-exact-error", diets + "[[unit]]\nname = \"plot\"\ncount = 16\nreceives = [\"diet\"]\n[[unit]]\nname = \"year\"\ncount = 3\ninteracts = true\n[[unit]]\nname = \"cut\"\ncrosses = [\"plot\", \"year\"]\n",
 			"diet has two errors at once", "", "interacts = true"},
@@ -108,7 +108,7 @@ func TestLimitsBeforeMemory(t *testing.T) {
 	} {
 		start := time.Now()
 		plan, list := New(&protocol.Protocol{Factors: []protocol.Factor{levels("diet", 4)}, Units: units})
-		if plan != nil || len(list) != 1 || list[0].Code != "too-many-rows" {
+		if plan != nil || len(list) != 1 || list[0].Code != "too-many" {
 			t.Errorf("%v: %v", units, list)
 		}
 		if d := time.Since(start); d > 10*time.Second {
@@ -125,7 +125,7 @@ func TestLimitsBeforeMemory(t *testing.T) {
 		}
 		chain = append(chain, u)
 	}
-	if _, list := New(&protocol.Protocol{Units: chain}); len(list) != 1 || list[0].Code != "too-many-rows" {
+	if _, list := New(&protocol.Protocol{Units: chain}); len(list) != 1 || list[0].Code != "too-many" {
 		t.Errorf("a long chain: %v", list)
 	}
 	var factors []protocol.Factor
@@ -137,7 +137,7 @@ func TestLimitsBeforeMemory(t *testing.T) {
 		p.Units[0].Receives = append(p.Units[0].Receives, f.Name)
 	}
 	p.Analysis.Interactions = -1
-	if _, list := New(p); len(list) != 1 || list[0].Code != "too-many-terms" || list[0].Hint != "say interactions = 3" {
+	if _, list := New(p); len(list) != 1 || list[0].Code != "too-many" || list[0].Hint != "say interactions = 3" {
 		t.Errorf("14 factors: %v", list)
 	}
 	p.Analysis.Interactions = 2
@@ -193,6 +193,8 @@ func TestCalled(t *testing.T) {
 		{"strip-plot", "split plot", "called-differs"},
 		{"strip-split-plot", "strip-split plot", ""},
 		{"augmented", "augmented randomized complete block", ""},
+		{"augmented", "augmented RCBD", ""},
+		{"completely-randomized", "parallel groups", ""},
 		{"factorial", "completely randomized 3 × 4 factorial", ""},
 		{"completely-randomized", "completely randomized factorial", "called-differs"},
 		{"repeated-measures", "randomized blocks with repeated measures", ""},
@@ -298,7 +300,7 @@ func TestOwnNames(t *testing.T) {
 	}
 	_, list := New(&protocol.Protocol{Factors: diet, Units: []protocol.Unit{block,
 		{Name: "pen", Within: "block", Count: []int{2}, Labels: [][]string{{"x", "x"}}, Receives: []string{"diet"}}}})
-	if len(list) != 1 || list[0].Code != "duplicate-label" {
+	if len(list) != 1 || list[0].Code != "duplicate" {
 		t.Errorf("a name given twice: %v", list)
 	}
 }
@@ -355,6 +357,38 @@ func TestRandom(t *testing.T) {
 			t.Errorf("%s: %s, want %s", c.name, got, c.want)
 		}
 	}
+}
+
+// A file of any bytes gives a plan or messages inside the file.
+func FuzzNew(f *testing.F) {
+	head := "protocol = 1\n[trial]\ncode = \"HM-1\"\ntitle = \"Pens\"\nobjective = \"Does it differ?\"\n"
+	for _, body := range []string{
+		diets + "[[unit]]\nname = \"block\"\ncount = 5\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 4\nreceives = [\"diet\"]\n",
+		diets + feeds + "[[unit]]\nname = \"site\"\ncount = 2\ninteracts = true\n[[unit]]\nname = \"row\"\nwithin = \"site\"\ncount = [4, 4]\n[[unit]]\nname = \"column\"\nwithin = \"site\"\ncount = 4\n[[unit]]\nname = \"plot\"\ncrosses = [\"row\", \"column\"]\nreceives = [\"diet\"]\n[[unit]]\nname = \"half\"\nwithin = \"plot\"\ncount = 2\nreceives = [\"feed\"]\n",
+		diets + feeds + "[[unit]]\nname = \"strip\"\ncount = 8\nreceives = [\"diet\"]\nreplicates = { a = 3 }\n[[unit]]\nname = \"lane\"\ncount = 4\ncarries = [\"feed\"]\n[[unit]]\nname = \"cell\"\ncrosses = [\"strip\", \"lane\"]\n",
+		"[[treatment]]\ncode = \"A\"\n[[treatment]]\ncode = \"e\"\n[[treatment]]\ncode = \"f\"\n[[unit]]\nname = \"block\"\nlabels = [\"n\", \"s\"]\n[[unit]]\nname = \"plot\"\nwithin = \"block\"\ncount = 2\nreceives = [\"treatment\"]\nchecks = [\"A\"]\n",
+	} {
+		f.Add([]byte(head + body))
+	}
+	f.Fuzz(func(t *testing.T, src []byte) {
+		p, _ := protocol.Load(fstest.MapFS{"protocol.toml": {Data: src}}, "protocol.toml")
+		if p == nil {
+			return
+		}
+		plan, list := New(p)
+		if (plan == nil) != list.HasErrors() {
+			t.Fatalf("plan %v with %v", plan, list)
+		}
+		lines := strings.Count(string(src), "\n") + 1
+		for _, d := range list {
+			if d.Pos.File != "protocol.toml" || d.Pos.Line > lines || d.Message == "" || d.Code == "" {
+				t.Errorf("%+v", d)
+			}
+		}
+		if plan != nil && plan.Units[plan.Smallest].N < 10_000 {
+			_ = plan.String()
+		}
+	})
 }
 
 // A trial at the limit, 10⁶ animals in 10 000 pens.

@@ -76,7 +76,7 @@ func (b *builder) supremum(u, v int) (int, bool) {
 	if shared != "" {
 		hint = "add a [[unit]] that crosses " + shared[2:] + ", and let both lie within it"
 	}
-	b.fail(unitKey(max(u, v), "name"), "units-share-unnamed", hint,
+	b.fail(unitKey(max(u, v), "name"), UnnamedUnit, hint,
 		"units %q and %q agree in %d classes that are no unit of the trial", plan.Units[min(u, v)].Name, plan.Units[max(u, v)].Name, classes)
 	return 0, false
 }
@@ -139,7 +139,7 @@ func (b *builder) strata() bool {
 		total += s.DF
 	}
 	if total != plan.Units[plan.Smallest].N-1 {
-		b.fail(unitKey(plan.Smallest, "name"), "units-not-orthogonal", "",
+		b.fail(unitKey(plan.Smallest, "name"), UnnamedUnit, "",
 			"the units of the trial do not split its %d degrees of freedom", plan.Units[plan.Smallest].N-1)
 		return false
 	}

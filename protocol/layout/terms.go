@@ -23,7 +23,7 @@ func (b *builder) factors() bool {
 		seen := map[string]bool{}
 		for t, tr := range p.Treatments {
 			if seen[tr.Code] {
-				b.fail(fmt.Sprintf("treatment[%d].code", t), "duplicate-treatment", "", "treatment %q is listed twice", tr.Code)
+				b.fail(fmt.Sprintf("treatment[%d].code", t), protocol.Duplicate, "", "treatment %q is listed twice", tr.Code)
 			}
 			seen[tr.Code] = true
 			f.Levels = append(f.Levels, tr.Code)
@@ -37,7 +37,7 @@ func (b *builder) factors() bool {
 				}
 				made[pf.Name] = true
 				if !slices.Contains(pf.Levels, level) {
-					b.fail(fmt.Sprintf("treatment[%d].levels", t), "unknown-level", "levels are "+strings.Join(pf.Levels, ", "),
+					b.fail(fmt.Sprintf("treatment[%d].levels", t), protocol.UnknownLevel, "levels are "+strings.Join(pf.Levels, ", "),
 						"treatment %q has %q, which is no level of factor %q", tr.Code, level, pf.Name)
 				}
 			}
@@ -48,16 +48,16 @@ func (b *builder) factors() bool {
 		pf := &p.Factors[i]
 		f := Factor{Name: pf.Name, Label: pf.Label, Unit: -1, Levels: pf.Levels, Values: pf.Values, Protocol: pf}
 		if pf.Name == Listed && len(p.Treatments) > 0 {
-			b.fail(fmt.Sprintf("factor[%d].name", i), "treatment-name", "rename the factor", "listed treatments are called %q, so a factor cannot be", Listed)
+			b.fail(fmt.Sprintf("factor[%d].name", i), protocol.ReservedName, "rename the factor", "listed treatments are called %q, so a factor cannot be", Listed)
 		}
 		if slices.ContainsFunc(p.Factors[:i], func(q protocol.Factor) bool { return q.Name == pf.Name }) {
-			b.fail(fmt.Sprintf("factor[%d].name", i), "duplicate-factor", "", "factor %q is declared twice", pf.Name)
+			b.fail(fmt.Sprintf("factor[%d].name", i), protocol.Duplicate, "", "factor %q is declared twice", pf.Name)
 		}
 		for _, c := range pf.Control {
 			if l := slices.Index(pf.Levels, c); l >= 0 {
 				f.Control = append(f.Control, l)
 			} else {
-				b.fail(fmt.Sprintf("factor[%d].control", i), "unknown-level", "levels are "+strings.Join(pf.Levels, ", "), "control %q is no level of factor %q", c, pf.Name)
+				b.fail(fmt.Sprintf("factor[%d].control", i), protocol.UnknownLevel, "levels are "+strings.Join(pf.Levels, ", "), "control %q is no level of factor %q", c, pf.Name)
 			}
 		}
 		plan.Factors = append(plan.Factors, f)
@@ -69,9 +69,9 @@ func (b *builder) factors() bool {
 		}
 		switch n := len(of.Levels); {
 		case n > maxLevels:
-			b.fail(key, "too-many-levels", "", "%d levels of %q are more than the %d a factor may have", n, of.Name, maxLevels)
+			b.fail(key, protocol.TooMany, "", "%d levels of %q are more than the %d a factor may have", n, of.Name, maxLevels)
 		case n < 2:
-			b.fail(key, "one-level", "a factor needs two levels or more", "factor %q has %d levels, so there is nothing to compare", of.Name, n)
+			b.fail(key, protocol.TooFew, "a factor needs two levels or more", "factor %q has %d levels, so there is nothing to compare", of.Name, n)
 		}
 	}
 	receives := false
@@ -84,16 +84,16 @@ func (b *builder) factors() bool {
 			b.give(u, fmt.Sprintf("%s[%d]", unitKey(u, "carries"), i), name, made, true)
 		}
 		if pr := p.Units[u].Random; pr != nil && !*pr && len(p.Units[u].Receives) > 0 {
-			b.fail(unitKey(u, "random"), "random-experimental", "leave it out: units that receive a treatment are always random",
+			b.fail(unitKey(u, "random"), protocol.Conflict, "leave it out: units that receive a treatment are always random",
 				"unit %q receives a treatment, so it cannot be fixed", plan.Units[u].Name)
 		}
 		if plan.Units[u].Interacts && len(p.Units[u].Receives)+len(p.Units[u].Carries) > 0 {
-			b.fail(unitKey(u, "interacts"), "interacts-experimental", "interactions of treatments are terms of their own",
+			b.fail(unitKey(u, "interacts"), CannotInteract, "interactions of treatments are terms of their own",
 				"unit %q receives or carries something, so interacts cannot be set", plan.Units[u].Name)
 		}
 	}
 	if !receives {
-		b.fail("unit", "nothing-received", `say receives = ["…"] on the unit to which the treatments are applied`, "no unit receives a treatment")
+		b.fail("unit", protocol.NotReceived, `say receives = ["…"] on the unit to which the treatments are applied`, "no unit receives a treatment")
 		return false
 	}
 	for f := range plan.Factors {
@@ -109,16 +109,16 @@ func (b *builder) factors() bool {
 				unit.Receives = append(unit.Receives, f)
 			}
 		case of.Protocol == nil:
-			b.fail("treatment[0].code", "not-received", `say receives = ["treatment"] on the unit to which they are applied`, "treatments are listed, but no unit receives %q", Listed)
+			b.fail("treatment[0].code", protocol.NotReceived, `say receives = ["treatment"] on the unit to which they are applied`, "treatments are listed, but no unit receives %q", Listed)
 		case !made[of.Name]:
-			b.fail(fmt.Sprintf("factor[%d].name", f-min(len(p.Treatments), 1)), "not-received", "name it in receives or carries of a unit, or remove it",
+			b.fail(fmt.Sprintf("factor[%d].name", f-min(len(p.Treatments), 1)), protocol.NotReceived, "name it in receives or carries of a unit, or remove it",
 				"factor %q is neither received nor carried by any unit", of.Name)
 		}
 	}
 	for u := range plan.Units {
 		unit := &plan.Units[u]
 		if len(unit.Receives)+len(unit.Carries) > 0 && unit.N > maxExperimental {
-			b.fail(unitKey(u, "receives"), "too-many-experimental", "", "unit %q has %d instances, more than the %d experimental units a trial may have", unit.Name, unit.N, maxExperimental)
+			b.fail(unitKey(u, "receives"), protocol.TooMany, "", "unit %q has %d instances, more than the %d experimental units a trial may have", unit.Name, unit.N, maxExperimental)
 		}
 	}
 	return !b.list.HasErrors()
@@ -130,19 +130,19 @@ func (b *builder) give(u int, key, name string, made map[string]bool, carried bo
 	f := slices.IndexFunc(plan.Factors, func(f Factor) bool { return f.Name == name })
 	switch {
 	case f < 0 && name == Listed:
-		b.fail(key, "unknown-factor", "list treatments as [[treatment]] tables", "unit %q receives %q, but no treatments are listed", plan.Units[u].Name, name)
+		b.fail(key, protocol.UnknownName, "list treatments as [[treatment]] tables", "unit %q receives %q, but no treatments are listed", plan.Units[u].Name, name)
 	case f < 0:
 		known := make([]string, len(plan.Factors))
 		for i, of := range plan.Factors {
 			known[i] = of.Name
 		}
-		b.fail(key, "unknown-factor", "factors are "+strings.Join(known, ", "), "factor %q is not declared", name)
+		b.fail(key, protocol.UnknownName, "factors are "+strings.Join(known, ", "), "factor %q is not declared", name)
 	case made[name]:
-		b.fail(key, "factor-listed", `say "treatment"`, "factor %q is part of the listed treatments, which units receive as %q", name, Listed)
+		b.fail(key, protocol.Conflict, `say "treatment"`, "factor %q is part of the listed treatments, which units receive as %q", name, Listed)
 	case carried && plan.Factors[f].Protocol == nil:
-		b.fail(key, "carries-treatment", "say receives", "listed treatments are received, not carried")
+		b.fail(key, protocol.Conflict, "say receives", "listed treatments are received, not carried")
 	case plan.Factors[f].Unit >= 0:
-		b.fail(key, "received-twice", "a factor has one experimental unit", "factor %q is already received or carried by unit %q", name, plan.Units[plan.Factors[f].Unit].Name)
+		b.fail(key, protocol.ReceivedTwice, "a factor has one experimental unit", "factor %q is already received or carried by unit %q", name, plan.Units[plan.Factors[f].Unit].Name)
 	default:
 		plan.Factors[f].Unit, plan.Factors[f].Carried = u, carried
 	}
@@ -164,12 +164,18 @@ func (b *builder) terms() bool {
 	for order := 1; order <= highest; order++ {
 		before := len(plan.Terms)
 		if !b.combine(active, nil, order) {
-			b.fail("analysis.interactions", "too-many-terms", fmt.Sprintf("say interactions = %d", max(order-1, 1)),
+			b.fail("analysis.interactions", protocol.TooMany, fmt.Sprintf("say interactions = %d", max(order-1, 1)),
 				"%d factors make more than the %d terms a trial may have", len(active), maxTerms)
 			return false
 		}
 		if len(plan.Terms) == before {
 			break
+		}
+	}
+	for _, t := range plan.Terms {
+		if unit := &plan.Units[t.Unit]; unit.N > maxExperimental {
+			b.fail(unitKey(t.Unit, "name"), protocol.TooMany, "", "unit %q, on which %s acts, has %d instances, more than the %d experimental units a trial may have", unit.Name, t.Name, unit.N, maxExperimental)
+			return false
 		}
 	}
 	return true
@@ -244,7 +250,7 @@ func (b *builder) place() {
 		switch {
 		case t.Inexact:
 			t.Over = -1
-			b.add(diag.Warning, unitKey(b.interacting(i), "interacts"), "no-exact-error", "a mixed model is needed, or interacts = true on fewer units",
+			b.add(diag.Warning, unitKey(b.interacting(i), "interacts"), NoExactError, "a mixed model is needed, or interacts = true on fewer units",
 				"%s has two errors at once, so no single mean square tests it", t.Name)
 		case t.Over >= 0:
 			t.ErrorDF = plan.Crossed[t.Over].DF
@@ -440,7 +446,7 @@ func (b *builder) interact() {
 			plan.Crossed = append(plan.Crossed, c)
 		}
 		if !some {
-			b.fail(unitKey(v, "interacts"), "interacts-within", "leave it out", "unit %q lies within the units that receive the treatments, so it cannot interact with them", unit.Name)
+			b.fail(unitKey(v, "interacts"), CannotInteract, "leave it out", "unit %q lies within the units that receive the treatments, so it cannot interact with them", unit.Name)
 		}
 	}
 }
@@ -517,7 +523,7 @@ func (b *builder) noError() {
 		shown = append(slices.Clone(shown[:3]), fmt.Sprintf("%d more", len(bad)-3))
 	}
 	b.list.Add(diag.Diagnostic{
-		Pos: b.pos(unitKey(unit, "name")), Key: unitKey(unit, "name"), Severity: diag.Warning, Code: "no-error",
+		Pos: b.pos(unitKey(unit, "name")), Key: unitKey(unit, "name"), Severity: diag.Warning, Code: NoError,
 		Message: fmt.Sprintf("no degrees of freedom are left for the error of %s", strings.Join(shown, ", ")),
 		Hint:    hint,
 	})

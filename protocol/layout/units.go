@@ -54,16 +54,16 @@ func (b *builder) relations() bool {
 	us := b.p.Units
 	switch {
 	case len(us) == 0:
-		b.fail("unit", "no-unit", "add [[unit]] tables, from the largest unit to the smallest", "the protocol names no units")
+		b.fail("unit", protocol.BadUnits, "add [[unit]] tables, from the largest unit to the smallest", "the protocol names no units")
 		return false
 	case len(us) > maxKinds:
-		b.fail(unitKey(maxKinds, "name"), "too-many-units", "", "%d kinds of unit are more than the %d a trial may have", len(us), maxKinds)
+		b.fail(unitKey(maxKinds, "name"), protocol.TooMany, "", "%d kinds of unit are more than the %d a trial may have", len(us), maxKinds)
 		return false
 	}
 	index := map[string]int{}
 	for u, pu := range us {
 		if first, twice := index[pu.Name]; twice {
-			b.fail(unitKey(u, "name"), "duplicate-unit", "", "unit %q is declared twice", pu.Name)
+			b.fail(unitKey(u, "name"), protocol.Duplicate, "", "unit %q is declared twice", pu.Name)
 			b.list[len(b.list)-1].Related = []diag.Related{{Pos: b.pos(unitKey(first, "name")), Message: "first declared here"}}
 			continue
 		}
@@ -73,10 +73,10 @@ func (b *builder) relations() bool {
 		v, ok := index[name]
 		switch {
 		case !ok:
-			b.fail(unitKey(u, part), "unknown-unit", "units are "+names(us), "unit %q is not declared", name)
+			b.fail(unitKey(u, part), protocol.UnknownName, "units are "+names(us), "unit %q is not declared", name)
 			return -1
 		case v == u:
-			b.fail(unitKey(u, part), "unit-cycle", "", "unit %q cannot hold itself", name)
+			b.fail(unitKey(u, part), protocol.BadUnits, "", "unit %q cannot hold itself", name)
 			return -1
 		}
 		return v
@@ -91,12 +91,12 @@ func (b *builder) relations() bool {
 		for _, name := range pu.Crosses {
 			v := find(u, "crosses", name)
 			if v >= 0 && slices.Contains(unit.Crosses, v) {
-				b.fail(unitKey(u, "crosses"), "crosses-twice", "", "unit %q is named twice", name)
+				b.fail(unitKey(u, "crosses"), protocol.BadUnits, "", "unit %q is named twice", name)
 			}
 			unit.Crosses = append(unit.Crosses, v)
 		}
 		if len(unit.Crosses) == 1 {
-			b.fail(unitKey(u, "crosses"), "crosses-one", `say within = "`+pu.Crosses[0]+`" for a unit that lies in another`, "unit %q crosses one unit only", pu.Name)
+			b.fail(unitKey(u, "crosses"), protocol.BadUnits, `say within = "`+pu.Crosses[0]+`" for a unit that lies in another`, "unit %q crosses one unit only", pu.Name)
 		}
 	}
 	return !b.list.HasErrors() && b.sorted() && b.crossings()
@@ -136,7 +136,7 @@ func (b *builder) sorted() bool {
 		if len(b.sort) == before {
 			for u := range n {
 				if b.up[u] == nil {
-					b.fail(unitKey(u, "name"), "unit-cycle", "", "unit %q lies within itself by way of other units", b.plan.Units[u].Name)
+					b.fail(unitKey(u, "name"), protocol.BadUnits, "", "unit %q lies within itself by way of other units", b.plan.Units[u].Name)
 				}
 			}
 			return false
@@ -168,7 +168,7 @@ func (b *builder) crossings() bool {
 					if b.up[w][v] {
 						fine, coarse = w, v
 					}
-					b.fail(unitKey(u, "crosses"), "crosses-nested", `say within = "`+b.plan.Units[fine].Name+`" instead`,
+					b.fail(unitKey(u, "crosses"), protocol.BadUnits, `say within = "`+b.plan.Units[fine].Name+`" instead`,
 						"unit %q cannot cross %q and %q, since every %s lies within one %s", unit.Name,
 						b.plan.Units[w].Name, b.plan.Units[v].Name, b.plan.Units[fine].Name, b.plan.Units[coarse].Name)
 				}
@@ -180,17 +180,17 @@ func (b *builder) crossings() bool {
 				redundant = redundant || b.up[v][w]
 			}
 			if !redundant {
-				b.fail(unitKey(u, "within"), "within-and-crosses", `leave out within, or name the unit in crosses`,
+				b.fail(unitKey(u, "within"), protocol.BadUnits, `leave out within, or name the unit in crosses`,
 					"unit %q crosses %s and cannot lie within %q, in which none of them lies", unit.Name, strings.Join(pu.Crosses, " and "), b.plan.Units[w].Name)
 			}
 			unit.Within = -1 // the crossed units say it already
 		}
 		if len(pu.Count) > 0 {
-			b.fail(unitKey(u, "count"), "crossing-count", "leave out count; add a unit within "+strconv.Quote(unit.Name)+" for several units in each crossing",
+			b.fail(unitKey(u, "count"), protocol.BadUnits, "leave out count; add a unit within "+strconv.Quote(unit.Name)+" for several units in each crossing",
 				"unit %q crosses others, so its number follows from theirs", unit.Name)
 		}
 		if pu.Labels != nil {
-			b.fail(unitKey(u, "labels"), "crossing-labels", "", "unit %q crosses others and is known by their names, so it has no labels", unit.Name)
+			b.fail(unitKey(u, "labels"), protocol.BadUnits, "", "unit %q crosses others and is known by their names, so it has no labels", unit.Name)
 		}
 	}
 	return !b.list.HasErrors()
@@ -213,7 +213,7 @@ func (b *builder) smallest() bool {
 		return true
 	}
 	v, w := b.plan.Units[leaves[0]].Name, b.plan.Units[leaves[1]].Name
-	b.fail(unitKey(leaves[1], "name"), "units-not-joined",
+	b.fail(unitKey(leaves[1], "name"), UnitsNotJoined,
 		fmt.Sprintf(`say within = %q for %s, or add a [[unit]] with crosses = [%q, %q]`, v, w, v, w),
 		"no unit lies within both %q and %q, so nothing can be measured on them together", v, w)
 	b.list[len(b.list)-1].Related = []diag.Related{{Pos: b.pos(unitKey(leaves[0], "name")), Message: "the other unit"}}
@@ -245,7 +245,7 @@ func (b *builder) instances() bool {
 }
 
 func (b *builder) tooMany(u int, key string) bool {
-	b.fail(unitKey(u, key), "too-many-rows", "", "unit %q has more than the %d instances a trial may have", b.plan.Units[u].Name, maxRows)
+	b.fail(unitKey(u, key), protocol.TooMany, "", "unit %q has more than the %d instances a trial may have", b.plan.Units[u].Name, maxRows)
 	return false
 }
 
@@ -257,7 +257,7 @@ func (b *builder) room(u, n int) bool {
 		}
 	}
 	if b.maps > maxMaps {
-		b.fail(unitKey(u, "name"), "too-many-rows", "", "the units of the trial are too many in all: their nesting takes more than %d entries", maxMaps)
+		b.fail(unitKey(u, "name"), protocol.TooMany, "", "the units of the trial are too many in all: their nesting takes more than %d entries", maxMaps)
 		return false
 	}
 	return true
@@ -327,14 +327,14 @@ func (b *builder) counts(u, parents int) ([]int, bool) {
 			counts = append(counts, len(l))
 		}
 	case len(counts) == 0:
-		b.fail(unitKey(u, "count"), "no-count", "add count", "unit %q has no count", unit.Name)
+		b.fail(unitKey(u, "count"), protocol.BadCount, "add count", "unit %q has no count", unit.Name)
 		return nil, false
 	}
 	if len(counts) != 1 && len(counts) != parents {
 		if unit.Within < 0 {
-			b.fail(unitKey(u, "count"), "count-length", "give one number", "unit %q lies within nothing, but its count lists %d numbers", unit.Name, len(counts))
+			b.fail(unitKey(u, "count"), protocol.BadCount, "give one number", "unit %q lies within nothing, but its count lists %d numbers", unit.Name, len(counts))
 		} else {
-			b.fail(unitKey(u, "count"), "count-length", fmt.Sprintf("give one number, or %d", parents),
+			b.fail(unitKey(u, "count"), protocol.BadCount, fmt.Sprintf("give one number, or %d", parents),
 				"count lists %d numbers, but there are %d instances of %q", len(counts), parents, b.plan.Units[unit.Within].Name)
 		}
 		return nil, false
@@ -345,7 +345,7 @@ func (b *builder) counts(u, parents int) ([]int, bool) {
 			if len(counts) > 1 {
 				key = fmt.Sprintf("%s[%d]", key, i)
 			}
-			b.fail(key, "count-range", "", "count %d of unit %q is less than 1", c, unit.Name)
+			b.fail(key, protocol.BadCount, "", "count %d of unit %q is less than 1", c, unit.Name)
 			return nil, false
 		}
 	}
@@ -379,10 +379,10 @@ func (b *builder) own(u int, pu *protocol.Unit, counts []int) bool {
 	case through && len(pu.Labels) == 1 && len(pu.Labels[0]) == unit.N:
 		unit.Own = append(unit.Own, pu.Labels[0]...)
 	case len(pu.Labels) != 1 && unit.Within < 0:
-		b.fail(key, "labels-length", "give one list", "unit %q lies within nothing, but labels holds %d lists", unit.Name, len(pu.Labels))
+		b.fail(key, protocol.BadCount, "give one list", "unit %q lies within nothing, but labels holds %d lists", unit.Name, len(pu.Labels))
 		return false
 	case len(pu.Labels) != 1 && len(pu.Labels) != len(counts):
-		b.fail(key, "labels-length", "give one list for all, or one list for each",
+		b.fail(key, protocol.BadCount, "give one list for all, or one list for each",
 			"labels holds %d lists, but there are %d instances of %q", len(pu.Labels), len(counts), b.plan.Units[unit.Within].Name)
 		return false
 	default:
@@ -392,7 +392,7 @@ func (b *builder) own(u int, pu *protocol.Unit, counts []int) bool {
 				list, at = pu.Labels[i], fmt.Sprintf("%s[%d]", key, i)
 			}
 			if len(list) != c {
-				b.fail(at, "labels-length", "", "unit %q has %d labels for a count of %d", unit.Name, len(list), c)
+				b.fail(at, protocol.BadCount, "", "unit %q has %d labels for a count of %d", unit.Name, len(list), c)
 				return false
 			}
 			unit.Own = append(unit.Own, list...)
@@ -405,7 +405,7 @@ func (b *builder) own(u int, pu *protocol.Unit, counts []int) bool {
 		}
 		for _, name := range unit.Own[from : from+c] {
 			if seen[name] {
-				b.fail(key, "duplicate-label", "", "label %q stands for two instances of unit %q", name, unit.Name)
+				b.fail(key, protocol.Duplicate, "", "label %q stands for two instances of unit %q", name, unit.Name)
 				return false
 			}
 			seen[name] = true
@@ -459,7 +459,7 @@ func (b *builder) cross(u int) bool {
 			}
 		}
 		if total == 0 {
-			b.fail(unitKey(u, "crosses"), "crosses-nothing", "", "no instances of the units that %q crosses agree in the units they share", unit.Name)
+			b.fail(unitKey(u, "crosses"), protocol.BadUnits, "", "no instances of the units that %q crosses agree in the units they share", unit.Name)
 			return false
 		}
 		next := make([][]int32, k+2)
@@ -501,7 +501,7 @@ func (b *builder) animals(u int) {
 		return
 	}
 	if len(given) != 1 && len(given) != unit.N {
-		b.fail(unitKey(u, "animals"), "animals-length", fmt.Sprintf("give one number, or %d", unit.N),
+		b.fail(unitKey(u, "animals"), protocol.BadCount, fmt.Sprintf("give one number, or %d", unit.N),
 			"animals lists %d numbers, but there are %d instances of %q", len(given), unit.N, unit.Name)
 		return
 	}
@@ -512,7 +512,7 @@ func (b *builder) animals(u int) {
 			unit.Animals[i] = given[i]
 		}
 		if unit.Animals[i] < 0 {
-			b.fail(unitKey(u, "animals"), "animals-range", "", "%d animals in a unit are less than none", unit.Animals[i])
+			b.fail(unitKey(u, "animals"), protocol.BadCount, "", "%d animals in a unit are less than none", unit.Animals[i])
 			return
 		}
 	}
