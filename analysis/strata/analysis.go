@@ -10,7 +10,7 @@ import (
 type Analysis struct {
 	Mean   float64 // of all rows
 	Strata []Stratum
-	Terms  []Term
+	Terms  []Line
 
 	s      *Structure
 	at     float64     // the response is held as y − at − mean
@@ -37,8 +37,9 @@ func (s Stratum) ErrorMS() float64 {
 	return s.ErrorSS / float64(s.ErrorDF)
 }
 
-// Term is the line of a treatment term.
-type Term struct {
+// Line is what a treatment term or contrasts have in the analysis of variance, to be tested
+// over the error of one stratum.
+type Line struct {
 	Stratum int // unit
 	DF      int
 	SS      float64
@@ -89,7 +90,7 @@ func (s *Structure) Analyse(y []float64) *Analysis {
 		s:      s,
 		at:     y[0],
 		Strata: make([]Stratum, len(s.units)),
-		Terms:  make([]Term, len(s.terms)),
+		Terms:  make([]Line, len(s.terms)),
 		error:  make([][]float64, len(s.units)),
 		effect: make([][]float64, len(s.terms)),
 	}
@@ -145,12 +146,12 @@ func (a *Analysis) take(u int, e []float64) {
 			}
 		}
 		a.effect[t] = effect
-		a.Terms[t] = Term{Stratum: u, DF: s.termDF(t), SS: squares(effect, s.reps[t])}
+		a.Terms[t] = Line{Stratum: u, DF: s.termDF(t), SS: squares(effect, s.reps[t])}
 	}
 	for t, at := range s.stratum {
 		if at == u && a.effect[t] == nil {
 			a.effect[t] = make([]float64, s.cells[t].N)
-			a.Terms[t] = Term{Stratum: u}
+			a.Terms[t] = Line{Stratum: u}
 		}
 	}
 	if st.ErrorDF == 0 {

@@ -352,13 +352,6 @@ func Satterthwaite(a, ms, df []float64) (variance, nu float64) {
 	return variance, nu
 }
 
-// Hypothesis is a sum of squares to be tested over the error of one stratum.
-type Hypothesis struct {
-	Stratum int
-	DF      int
-	SS      float64
-}
-
 // SpreadHypothesis: contrasts draw on the errors of several strata, so that no F exists.
 // Units is empty where they draw on none.
 type SpreadHypothesis struct{ Units []int }
@@ -373,7 +366,7 @@ func (e SpreadHypothesis) Error() string {
 //	SS = h′ G⁻ h   on rank G degrees of freedom.
 //
 // Contrasts that depend on others add nothing. The error is SpreadHypothesis.
-func (m *Means) Test(contrasts [][]float64) (Hypothesis, error) {
+func (m *Means) Test(contrasts [][]float64) (Line, error) {
 	units := make([]bool, len(m.a.s.units))
 	for _, w := range contrasts {
 		for u, c := range m.Coefficients(w) {
@@ -389,7 +382,7 @@ func (m *Means) Test(contrasts [][]float64) (Hypothesis, error) {
 		}
 	}
 	if len(in) != 1 {
-		return Hypothesis{}, SpreadHypothesis{Units: in}
+		return Line{}, SpreadHypothesis{Units: in}
 	}
 	u, q := in[0], len(contrasts)
 
@@ -434,10 +427,10 @@ func (m *Means) Test(contrasts [][]float64) (Hypothesis, error) {
 			}
 		}
 	}
-	out := Hypothesis{Stratum: u}
+	out := Line{Stratum: u}
 	var eigen mat.EigenSym
 	if !eigen.Factorize(g, true) {
-		return Hypothesis{}, SpreadHypothesis{Units: in}
+		return Line{}, SpreadHypothesis{Units: in}
 	}
 	var vectors mat.Dense
 	eigen.VectorsTo(&vectors)
@@ -462,12 +455,11 @@ func (m *Means) Test(contrasts [][]float64) (Hypothesis, error) {
 // all other factors. With equal replication that is the term's line in the analysis; with
 // proportional replication and an interaction it is not. Terms adjusted for all that do
 // not contain them, or in sequence, have the lines of the analysis in any case.
-func (a *Analysis) Partial(term int) (Hypothesis, error) {
+func (a *Analysis) Partial(term int) (Line, error) {
 	s := a.s
 	line := a.Terms[term]
-	plain := Hypothesis{Stratum: line.Stratum, DF: line.DF, SS: line.SS}
 	if line.DF == 0 || s.fades(term) {
-		return plain, nil
+		return line, nil
 	}
 	m := a.Means(term)
 	t := s.terms[term]
