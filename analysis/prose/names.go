@@ -161,3 +161,6 @@ func ResponseLabel(r *protocol.Response) string {
 	}
 	return upperFirst(strings.ReplaceAll(r.Name, "_", " "))
 }
+
+// ResponseLabelText is what a response is called in running text.
+func ResponseLabelText(r *protocol.Response) string { return lowerFirst(ResponseLabel(r)) }

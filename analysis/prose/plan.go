@@ -333,3 +333,13 @@ func Blinding(b *protocol.Blinding) []string {
 	}
 	return s
 }
+
+// Design says which design the units make, and whether that is what the protocol calls
+// it.
+func Design(p *layout.Plan) []string {
+	s := fmt.Sprintf("Units and treatments make up this design: %s.", DesignName(p))
+	if c := p.Protocol.Trial.Called; c != "" {
+		s += fmt.Sprintf(" The protocol calls it “%s”.", c)
+	}
+	return []string{s}
+}

@@ -455,3 +455,17 @@ func rangeOfMeans(r *result.Response, term string) (lo, hi *result.Mean) {
 	sort.SliceStable(ms, func(i, j int) bool { return ms[i].Mean < ms[j].Mean })
 	return ms[0], ms[len(ms)-1]
 }
+
+// OwnNotes are the notes of a response that stand under none of its tables.
+func OwnNotes(r *result.Response) []string {
+	if len(r.Anova) > 0 {
+		return nil // they stand under the analysis of variance
+	}
+	var out []string
+	for _, n := range r.Notes {
+		if n.Term == "" {
+			out = append(out, n.Text)
+		}
+	}
+	return out
+}

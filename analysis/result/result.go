@@ -427,6 +427,9 @@ type Contrast struct {
 	F        Number `json:"f"`
 	P        Number `json:"p"`
 	Planned  bool   `json:"planned"`
+	// Lower and Upper are the limits of the estimate alone.
+	Lower Number `json:"lower"`
+	Upper Number `json:"upper"`
 	// NumeratorDF is the df of the contrast itself: 1 but for lack of fit and trends of interactions.
 	NumeratorDF int `json:"numerator_df"`
 }
@@ -450,6 +453,11 @@ type Residual struct {
 	Deleted     Number `json:"deleted"`
 	Leverage    Number `json:"leverage"`
 	Cook        Number `json:"cook"`
+	// Score is the normal score of the studentized residual's rank; Lower and Upper hold
+	// an ordered value of independent normal errors there in 95 of 100 samples.
+	Score Number `json:"normal_score"`
+	Lower Number `json:"envelope_lower"`
+	Upper Number `json:"envelope_upper"`
 }
 
 // Efficiency is a relative efficiency of the design.

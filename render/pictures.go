@@ -1,0 +1,617 @@
+package render
+
+import (
+	"math"
+	"strings"
+
+	"penwright/analysis/dataset"
+	"penwright/analysis/num"
+	"penwright/analysis/prose"
+	"penwright/analysis/result"
+	"penwright/analysis/trial"
+	"penwright/protocol/allot"
+	"penwright/render/doc"
+	"penwright/render/figure"
+)
+
+// pictures draws the figures of a trial from its parts and results.
+type pictures struct {
+	trial *trial.Trial
+	rs    *result.Results
+}
+
+func (v *pictures) response(name string) *result.Response {
+	for i := range v.rs.Responses {
+		if v.rs.Responses[i].Name == name {
+			return &v.rs.Responses[i]
+		}
+	}
+	return nil
+}
+
+func (v *pictures) table(name string) *dataset.Response {
+	if v.trial.Table == nil {
+		return nil
+	}
+	for i := range v.trial.Table.Responses {
+		if v.trial.Table.Responses[i].Protocol.Name == name {
+			return &v.trial.Table.Responses[i]
+		}
+	}
+	return nil
+}
+
+func figureOf(id, caption, file string, draw func() (*doc.Picture, string)) []doc.Block {
+	pic, alt := draw()
+	if pic == nil {
+		return nil
+	}
+	return []doc.Block{doc.Figure{ID: id, Caption: []doc.Inline{doc.Text{Text: caption}}, Alt: alt, Picture: pic, File: file}}
+}
+
+// treatments lists the treatments of the smallest treated unit and the index of each
+// instance's.
+func (v *pictures) treatments(unit int) (names []string, of func(instance int) int) {
+	if v.trial.Allotment == nil || unit < 0 {
+		return nil, func(int) int { return -1 }
+	}
+	names = prose.TreatmentOrder(v.trial, unit)
+	rank := map[string]int{}
+	for i, n := range names {
+		rank[n] = i
+	}
+	return names, func(i int) int { return rank[prose.TreatmentText(v.trial, unit, i)] }
+}
+
+// layoutMap shows the units with what each received.
+func (v *pictures) layoutMap() []doc.Block {
+	p := v.trial.Plan
+	unit := allot.RowUnit(p)
+	names, of := v.treatments(unit)
+	lost := map[[2]int]bool{}
+	finder := allot.NewFinder(p)
+	for _, e := range v.trial.Protocol.Exclusions {
+		if len(e.Responses) == 0 {
+			if u, i, bad := finder.Unit(e.Unit); bad == nil {
+				lost[[2]int{u, int(i)}] = true
+			}
+		}
+	}
+	m := figure.FromPlan(p, func(u, i int) figure.Look {
+		l := figure.Look{Treatment: -1, Value: math.NaN(), Excluded: lost[[2]int{u, i}]}
+		if v.trial.Allotment == nil {
+			return l
+		}
+		if u == unit {
+			l.Treatment = of(i)
+			l.Label = names[l.Treatment]
+		} else {
+			l.Label = v.ownLevels(u, i)
+		}
+		return l
+	})
+	m.Treatments = names
+	caption := "Layout of the trial with the allotment"
+	if v.trial.Allotment == nil {
+		caption = "Layout of the trial; treatments have not been drawn"
+	}
+	return figureOf("figure-map", caption, "map", m.Draw)
+}
+
+// ownLevels names what a unit itself received.
+func (v *pictures) ownLevels(unit, instance int) string {
+	p := v.trial.Plan
+	var parts []string
+	for f := range p.Factors {
+		if p.Factors[f].Unit != unit || v.trial.Allotment.Levels[f] == nil {
+			continue
+		}
+		if l := v.trial.Allotment.Levels[f][instance]; l >= 0 {
+			parts = append(parts, prose.LevelText(p, p.Factors[f].Name, p.Factors[f].Levels[l]))
+		}
+	}
+	return strings.Join(parts, ", ")
+}
+
+// cells groups the rows of a response's data by treatment with the block of each.
+type cellRows struct {
+	names  []string
+	of     []int    // treatment of each row
+	blocks []string // block of each row; empty: none
+	units  []string
+	block  string // what the blocks are called
+}
+
+// groupRows finds treatment, block and name of the instances of a unit.
+func (v *pictures) groupRows(unit int, instances []int32) cellRows {
+	p := v.trial.Plan
+	var out cellRows
+	names, of := v.treatments(unit)
+	out.names = names
+	// The block is the coarsest unit with more than one instance that received nothing.
+	block := -1
+	for _, s := range p.Strata {
+		u := &p.Units[s.Unit]
+		if block < 0 && s.Unit != unit && p.Coarse(unit, s.Unit) != nil && len(u.Receives) == 0 && u.Own != nil && u.N > 1 {
+			block = s.Unit
+		}
+	}
+	if block >= 0 {
+		out.block = prose.UnitName(&p.Units[block])
+	}
+	for _, i := range instances {
+		out.of = append(out.of, of(int(i)))
+		out.units = append(out.units, allot.Describe(p, unit, i))
+		b := ""
+		if block >= 0 {
+			b = p.Units[block].Own[p.Coarse(unit, block)[i]]
+		}
+		out.blocks = append(out.blocks, b)
+	}
+	return out
+}
+
+// points shows the data of a response by treatment with blocks joined.
+func (v *pictures) points(name string) []doc.Block {
+	r, data := v.response(name), v.table(name)
+	if r == nil || data == nil || v.trial.Allotment == nil {
+		return nil
+	}
+	p := v.trial.Plan
+	unit := v.treatedUnit(data.Unit)
+	up := p.Coarse(data.Unit, unit)
+	// Smaller units are shown by the mean of their experimental unit.
+	sum, n, excluded := make([]float64, p.Units[unit].N), make([]int, p.Units[unit].N), make([]bool, p.Units[unit].N)
+	for i, s := range data.Status {
+		if (s != dataset.Used && s != dataset.Excluded && s != dataset.CovariateMissing) || math.IsNaN(data.Value[i]) {
+			continue
+		}
+		u := up[data.Instance[i]]
+		if s == dataset.Excluded {
+			excluded[u] = true
+		}
+		sum[u] += data.Value[i]
+		n[u]++
+	}
+	var instances []int32
+	for u := range n {
+		if n[u] > 0 {
+			instances = append(instances, int32(u))
+		}
+	}
+	g := v.groupRows(unit, instances)
+	fig := figure.Points{Response: axis(r), By: v.treatmentTitle(unit), Blocks: g.block}
+	for _, x := range g.names {
+		fig.Groups = append(fig.Groups, figure.Group{Label: x, Mean: math.NaN()})
+	}
+	total, count := make([]float64, len(g.names)), make([]int, len(g.names))
+	for k, u := range instances {
+		value := sum[u] / float64(n[u])
+		t := g.of[k]
+		fig.Groups[t].Points = append(fig.Groups[t].Points, figure.Point{Unit: g.units[k], Block: g.blocks[k], Value: value, Excluded: excluded[u]})
+		if !excluded[u] {
+			total[t] += value
+			count[t]++
+		}
+	}
+	for t := range total {
+		if count[t] > 0 {
+			fig.Groups[t].Mean = total[t] / float64(count[t])
+		}
+	}
+	caption := "Data: " + prose.ResponseText(r) + " of each " + prose.UnitName(&p.Units[unit]) + " by treatment"
+	if g.block != "" {
+		caption += "; units of a " + g.block + " are joined"
+	}
+	caption += ". Bars: treatment means."
+	return figureOf("figure-points-"+name, caption, "points-"+name, fig.Draw)
+}
+
+// treatedUnit is the smallest treated unit that a unit lies in.
+func (v *pictures) treatedUnit(unit int) int {
+	p := v.trial.Plan
+	u := allot.RowUnit(p)
+	if u >= 0 && p.Coarse(unit, u) != nil {
+		return u
+	}
+	return unit
+}
+
+func (v *pictures) treatmentTitle(unit int) string {
+	p := v.trial.Plan
+	var names []string
+	for i := range p.Factors {
+		f := &p.Factors[i]
+		if f.Unit >= 0 && p.Coarse(unit, f.Unit) != nil {
+			names = append(names, prose.FactorLabel(f))
+		}
+	}
+	return strings.Join(names, ", ")
+}
+
+// axis titles an axis of values.
+func axis(r *result.Response) string {
+	s := r.Label
+	if s == "" {
+		s = strings.ReplaceAll(r.Name, "_", " ")
+	}
+	if r.Unit != "" {
+		s += " (" + num.UnitText(r.Unit) + ")"
+	}
+	return s
+}
+
+// means shows the means of a term with intervals, or the lines of an interaction.
+func (v *pictures) means(name, term string) []doc.Block {
+	r := v.response(name)
+	if r == nil {
+		return nil
+	}
+	p := v.trial.Plan
+	var ms []result.Mean
+	for _, m := range r.Means {
+		if m.Term == term {
+			ms = append(ms, m)
+		}
+	}
+	if len(ms) < 2 || len(ms) > 120 {
+		return nil
+	}
+	id := "figure-means-" + name + "-" + strings.ReplaceAll(term, ":", "-")
+	file := "means-" + name + "-" + strings.ReplaceAll(term, ":", "-")
+	switch len(ms[0].Levels) {
+	case 1:
+		f := ms[0].Levels[0].Factor
+		fig := figure.Means{Response: axis(r), By: prose.FactorHead(p, f), Interval: prose.Interval(p, r)}
+		var doses []float64
+		for i := range p.Factors {
+			if p.Factors[i].Name == f {
+				doses = p.Factors[i].Values
+			}
+		}
+		fig.Dose = doses != nil
+		for i, m := range ms {
+			x := figure.Mean{Label: m.Levels[0].Level, Value: float64(m.Mean), Low: float64(m.Lower), High: float64(m.Upper)}
+			if m.Letters != nil {
+				x.Letters = *m.Letters
+			}
+			if i < len(doses) {
+				x.X = doses[i]
+			}
+			fig.Means = append(fig.Means, x)
+		}
+		caption := prose.MeansCaption(p, r, term) + ", with " + prose.Interval(p, r) + " of each mean."
+		return figureOf(id, caption, file, fig.Draw)
+	case 2:
+		a, b := ms[0].Levels[0].Factor, ms[0].Levels[1].Factor
+		// A graded factor runs along the axis; else the one with more levels does.
+		along, over := 1, 0
+		var values [2][]float64
+		for i := range p.Factors {
+			if p.Factors[i].Name == a {
+				values[0] = p.Factors[i].Values
+			}
+			if p.Factors[i].Name == b {
+				values[1] = p.Factors[i].Values
+			}
+		}
+		var levels [2][]string
+		for _, m := range ms {
+			for k := range 2 {
+				if l := m.Levels[k].Level; !contains(levels[k], l) {
+					levels[k] = append(levels[k], l)
+				}
+			}
+		}
+		if values[0] != nil && values[1] == nil || values[0] == nil && values[1] == nil && len(levels[0]) > len(levels[1]) {
+			along, over = 0, 1
+		}
+		fig := figure.Interaction{Response: axis(r), By: prose.FactorHead(p, ms[0].Levels[along].Factor), Levels: levels[along], X: values[along], Over: prose.FactorHead(p, ms[0].Levels[over].Factor)}
+		for _, l := range levels[over] {
+			line := figure.Line{Label: l}
+			for _, x := range levels[along] {
+				y := math.NaN()
+				for _, m := range ms {
+					if m.Levels[over].Level == l && m.Levels[along].Level == x {
+						y = float64(m.Mean)
+					}
+				}
+				line.Values = append(line.Values, y)
+			}
+			fig.Lines = append(fig.Lines, line)
+		}
+		for _, s := range r.SED {
+			if s.Term == term && s.Mean.Known() {
+				fig.Bar, fig.BarLabel = float64(s.Mean), "SED"
+				if float64(s.Max-s.Min) > 1e-9*float64(s.Max) {
+					fig.BarLabel = "mean SED"
+				}
+			}
+		}
+		caption := prose.MeansCaption(p, r, term) + "."
+		return figureOf(id, caption, file, fig.Draw)
+	}
+	return nil
+}
+
+func contains(list []string, s string) bool {
+	for _, x := range list {
+		if x == s {
+			return true
+		}
+	}
+	return false
+}
+
+// residualRows finds the unit and instance of every listed residual.
+func (v *pictures) residualRows(r *result.Response) (unit int, instances []int32) {
+	p := v.trial.Plan
+	if len(r.Residuals) == 0 {
+		return -1, nil
+	}
+	unit = -1
+	index := map[string]int32{}
+	for _, x := range r.Residuals {
+		if unit < 0 {
+			unit, _ = v.unitOf(x.Units)
+			if unit < 0 {
+				return -1, nil
+			}
+			for i := range p.Units[unit].N {
+				index[v.key(unit, i)] = int32(i)
+			}
+		}
+		var parts []string
+		for _, u := range x.Units {
+			parts = append(parts, u.Level)
+		}
+		i, ok := index[strings.Join(parts, "\x00")]
+		if !ok {
+			return -1, nil
+		}
+		instances = append(instances, i)
+	}
+	return unit, instances
+}
+
+// unitOf is the unit whose named units are those of a row: the coarsest one that lies
+// in all of them and in no other named unit.
+func (v *pictures) unitOf(names result.Levels) (int, bool) {
+	p := v.trial.Plan
+	best := -1
+	for u := range p.Units {
+		count := 0
+		for w := range p.Units {
+			if p.Coarse(u, w) != nil && p.Units[w].Own != nil {
+				count++
+			}
+		}
+		all := true
+		for _, n := range names {
+			found := false
+			for w := range p.Units {
+				found = found || p.Units[w].Name == n.Factor && p.Coarse(u, w) != nil
+			}
+			all = all && found
+		}
+		if all && count == len(names) && (best < 0 || p.Coarse(best, u) != nil) {
+			best = u
+		}
+	}
+	return best, best >= 0
+}
+
+func (v *pictures) key(unit, instance int) string {
+	p := v.trial.Plan
+	var parts []string
+	for u := range p.Units {
+		if up := p.Coarse(unit, u); up != nil && p.Units[u].Own != nil {
+			parts = append(parts, p.Units[u].Own[up[instance]])
+		}
+	}
+	return strings.Join(parts, "\x00")
+}
+
+// residualMap shades the layout by residual.
+func (v *pictures) residualMap(name string) []doc.Block {
+	r := v.response(name)
+	if r == nil {
+		return nil
+	}
+	unit, instances := v.residualRows(r)
+	if unit < 0 {
+		return nil
+	}
+	value := map[int]float64{}
+	for k, i := range instances {
+		value[int(i)] = float64(r.Residuals[k].Residual)
+	}
+	m := figure.FromPlan(v.trial.Plan, func(u, i int) figure.Look {
+		l := figure.Look{Treatment: -1, Value: math.NaN()}
+		if u == unit {
+			if x, ok := value[i]; ok {
+				l.Value = x
+				d := num.SEDecimals(maxAbs(r))
+				l.Label = num.Signed(x, d)
+			} else {
+				l.Excluded = true
+			}
+		}
+		return l
+	})
+	m.Shade = "Residual"
+	if r.Unit != "" {
+		m.Shade += " (" + num.UnitText(r.Unit) + ")"
+	}
+	return figureOf("figure-residual-map-"+name, "Layout shaded by residual: "+prose.ResponseText(r)+". A pattern in the shade is a pattern that the model does not hold.", "residual-map-"+name, m.Draw)
+}
+
+func maxAbs(r *result.Response) float64 {
+	m := 0.0
+	for _, x := range r.Residuals {
+		if a := math.Abs(float64(x.Residual)); a > m {
+			m = a
+		}
+	}
+	return m
+}
+
+// residualPoints shows residuals by treatment with blocks joined.
+func (v *pictures) residualPoints(name string) []doc.Block {
+	r := v.response(name)
+	if r == nil {
+		return nil
+	}
+	unit, instances := v.residualRows(r)
+	if unit < 0 || v.trial.Allotment == nil {
+		return nil
+	}
+	g := v.groupRows(unit, instances)
+	fig := figure.Points{Response: "Residual", By: v.treatmentTitle(unit), Blocks: g.block, Residual: true}
+	if r.Unit != "" {
+		fig.Response += " (" + num.UnitText(r.Unit) + ")"
+	}
+	for _, x := range g.names {
+		fig.Groups = append(fig.Groups, figure.Group{Label: x, Mean: math.NaN()})
+	}
+	for k := range instances {
+		t := g.of[k]
+		fig.Groups[t].Points = append(fig.Groups[t].Points, figure.Point{Unit: g.units[k], Block: g.blocks[k], Value: float64(r.Residuals[k].Residual)})
+	}
+	return figureOf("figure-residuals-"+name, "Residuals of "+prose.ResponseText(r)+" by treatment.", "residuals-"+name, fig.Draw)
+}
+
+// fitted shows residuals against fitted values.
+func (v *pictures) fitted(name string) []doc.Block {
+	r := v.response(name)
+	if r == nil || len(r.Residuals) == 0 {
+		return nil
+	}
+	fig := figure.Fitted{X: "Fitted value", Y: "Studentized residual", Zero: true}
+	if r.Unit != "" {
+		fig.X += " (" + num.UnitText(r.Unit) + ")"
+	}
+	far := v.farthest(r)
+	for i, x := range r.Residuals {
+		fig.Points = append(fig.Points, figure.XY{Unit: prose.UnitText(v.trial.Plan, x.Units), X: float64(x.Fitted), Y: float64(x.Studentized), Named: i == far})
+	}
+	return figureOf("figure-fitted-"+name, "Studentized residuals against fitted values: "+prose.ResponseText(r)+".", "fitted-"+name, fig.Draw)
+}
+
+// farthest is the residual that passes the Bonferroni limit, or -1.
+func (v *pictures) farthest(r *result.Response) int {
+	pass := false
+	for _, d := range r.Diagnostics {
+		pass = pass || d.Name == "outlier" && d.P.Known() && float64(d.P) < 0.05
+	}
+	if !pass {
+		return -1
+	}
+	best := -1
+	for i, x := range r.Residuals {
+		if x.Deleted.Known() && (best < 0 || math.Abs(float64(x.Deleted)) > math.Abs(float64(r.Residuals[best].Deleted))) {
+			best = i
+		}
+	}
+	return best
+}
+
+// spread shows one point a treatment, log SD on log mean.
+func (v *pictures) spread(name string) []doc.Block {
+	r := v.response(name)
+	if r == nil {
+		return nil
+	}
+	fig := figure.Spread{Response: axis(r), Slope: math.NaN()}
+	sx, sy, n := 0.0, 0.0, 0.0
+	for _, s := range r.Summary {
+		if !s.SD.Known() || s.SD <= 0 || s.Mean <= 0 {
+			continue
+		}
+		fig.Points = append(fig.Points, figure.Scale{Label: prose.LevelsText(v.trial.Plan, s.Levels), Mean: float64(s.Mean), SD: float64(s.SD)})
+		sx, sy, n = sx+math.Log10(float64(s.Mean)), sy+math.Log10(float64(s.SD)), n+1
+	}
+	if len(fig.Points) < 3 {
+		return nil
+	}
+	for _, d := range r.Diagnostics {
+		if d.Name == "spread on mean" && d.Statistic.Known() {
+			fig.Slope = float64(d.Statistic)
+			fig.Intercept = sy/n - fig.Slope*sx/n
+		}
+	}
+	return figureOf("figure-spread-"+name, "Standard deviation on mean, one point a treatment, both on logarithmic scales: "+prose.ResponseText(r)+".", "spread-"+name, fig.Draw)
+}
+
+// quantiles shows ordered studentized residuals against normal scores.
+func (v *pictures) quantiles(name string) []doc.Block {
+	r := v.response(name)
+	if r == nil {
+		return nil
+	}
+	fig := figure.Quantiles{X: "Normal score", Y: "Studentized residual", Slope: 1, Envelope: "limits that hold an ordered normal value in 95 of 100 samples"}
+	far := v.farthest(r)
+	for i, x := range r.Residuals {
+		if x.Score.Known() {
+			fig.Points = append(fig.Points, figure.Quantile{Unit: prose.UnitText(v.trial.Plan, x.Units), Expected: float64(x.Score), Value: float64(x.Studentized),
+				Low: float64(x.Lower), High: float64(x.Upper), Named: i == far})
+		}
+	}
+	if len(fig.Points) < 3 {
+		return nil
+	}
+	return figureOf("figure-quantiles-"+name, "Studentized residuals in order against normal scores, with the limits within which each lies in 95 of 100 normal samples: "+prose.ResponseText(r)+".", "quantiles-"+name, fig.Draw)
+}
+
+// flow shows planned, allotted, observed and analysed units of each treatment, for the
+// first primary response or the first of all.
+func (v *pictures) flow() []doc.Block {
+	p := v.trial.Plan
+	if v.trial.Allotment == nil || v.trial.Table == nil || len(v.trial.Table.Responses) == 0 {
+		return nil
+	}
+	data := &v.trial.Table.Responses[0]
+	for i := range v.trial.Table.Responses {
+		if v.trial.Table.Responses[i].Protocol.Role == "primary" {
+			data = &v.trial.Table.Responses[i]
+			break
+		}
+	}
+	unit := v.treatedUnit(data.Unit)
+	names, of := v.treatments(unit)
+	up := p.Coarse(data.Unit, unit)
+	n := p.Units[unit].N
+	allotted, observed, analysed := make([]int, len(names)), make([]int, len(names)), make([]int, len(names))
+	seen, used := make([]bool, n), make([]bool, n)
+	for i, s := range data.Status {
+		u := up[data.Instance[i]]
+		if !math.IsNaN(data.Value[i]) {
+			seen[u] = true
+		}
+		if s == dataset.Used {
+			used[u] = true
+		}
+	}
+	for i := range n {
+		t := of(i)
+		allotted[t]++
+		if seen[i] {
+			observed[t]++
+		}
+		if used[i] {
+			analysed[t]++
+		}
+	}
+	fig := figure.Flow{Unit: prose.UnitName(&p.Units[unit]), Stages: []string{"allotted", "observed", "analysed"}}
+	for t, name := range names {
+		row := figure.FlowRow{Label: name, Counts: []int{allotted[t], observed[t], analysed[t]}, Reasons: []string{"", ""}}
+		if d := allotted[t] - observed[t]; d > 0 {
+			row.Reasons[0] = num.Count(d) + " missing"
+		}
+		if d := observed[t] - analysed[t]; d > 0 {
+			row.Reasons[1] = num.Count(d) + " not used"
+		}
+		fig.Rows = append(fig.Rows, row)
+	}
+	return figureOf("figure-flow", "Flow of units from the allotment to the analysis of "+prose.ResponseLabelText(data.Protocol)+".", "flow", fig.Draw)
+}

@@ -1,0 +1,318 @@
+// Package render makes the report of a trial: it composes a template into a document
+// and hands that to the writers. A report is a function of the trial's files, its
+// results and the few options that ride inside it as report.json; nothing else
+// influences a page.
+package render
+
+import (
+	"bytes"
+	"crypto/sha256"
+	"encoding/hex"
+	"encoding/json"
+	"fmt"
+	"io/fs"
+	"path"
+	"slices"
+	"strings"
+	"time"
+
+	"penwright/analysis/result"
+	"penwright/analysis/trial"
+	"penwright/protocol/diag"
+	"penwright/protocol/folder"
+	"penwright/render/compose"
+	"penwright/render/doc"
+	"penwright/render/html"
+	"penwright/render/md"
+	"penwright/render/pdf"
+	"penwright/templates"
+)
+
+// Options are what a report depends on beside the trial and its results.
+type Options struct {
+	Template string   // built-in name or a file of the trial; empty: as the protocol says
+	Date     string   // ISO 8601 date that the report bears; empty: none
+	Go       string   // version of the toolchain
+	Arch     string   // operating system and processor
+	Only     []string // outputs wanted: pdf, html, md, json, tables, figures; nil: all
+}
+
+// Outputs are the kinds of output, in the order in which they are written.
+var Outputs = []string{"pdf", "html", "md", "json", "tables", "figures"}
+
+// File is a file of the output folder.
+type File struct {
+	Path string
+	Data []byte
+}
+
+// about is report.json: what a report depends on beside the files of the trial.
+type about struct {
+	Format   int            `json:"format"`
+	Program  result.Program `json:"program"`
+	Go       string         `json:"go"`
+	Arch     string         `json:"arch"`
+	Date     string         `json:"date"`
+	Template string         `json:"template"`
+	Paper    string         `json:"paper"`
+	Outputs  []string       `json:"outputs"`
+	Files    []result.Input `json:"files"`
+}
+
+// builder composes one report.
+type builder struct {
+	pictures
+	options     Options
+	fingerprint string
+	list        diag.List
+}
+
+// Report makes the report of a trial. The list tells of faults of templates, texts and
+// characters; the files are those asked for, and nil when the list holds an error.
+func Report(t *trial.Trial, rs *result.Results, opt Options) ([]File, diag.List, error) {
+	d, list := Document(t, rs, opt)
+	if list.HasErrors() {
+		return nil, list, nil
+	}
+	attached, err := attachments(t, rs, opt)
+	if err != nil {
+		return nil, list, err
+	}
+	want := func(kind string) bool { return opt.Only == nil || slices.Contains(opt.Only, kind) }
+	var out []File
+	if want("pdf") {
+		var files []pdf.Attachment
+		for _, a := range attached {
+			files = append(files, pdf.Attachment{Name: a.path, MIME: a.mime, Relationship: a.relationship, Description: a.what, Data: a.data})
+		}
+		var b bytes.Buffer
+		more, err := pdf.Write(&b, d, files, pdf.Options{Date: moment(opt.Date), Producer: rs.Program.Name + " " + rs.Program.Version, Subject: "Report of trial " + rs.Trial.Code})
+		list = append(list, more...)
+		if err != nil {
+			return nil, list, err
+		}
+		out = append(out, File{Path: "report.pdf", Data: b.Bytes()})
+	}
+	if want("html") {
+		var files []html.Attachment
+		for _, a := range attached {
+			files = append(files, html.Attachment{Name: a.path, MIME: a.mime, Data: a.data})
+		}
+		style, err := fs.ReadFile(templates.FS, "style.css")
+		if err != nil {
+			return nil, list, fmt.Errorf("style sheet: %w", err)
+		}
+		var b bytes.Buffer
+		if err := html.Write(&b, d, files, html.Options{Style: string(style)}); err != nil {
+			return nil, list, err
+		}
+		out = append(out, File{Path: "report.html", Data: b.Bytes()})
+	}
+	if want("md") {
+		var b bytes.Buffer
+		if err := md.Write(&b, d); err != nil {
+			return nil, list, err
+		}
+		out = append(out, File{Path: "report.md", Data: b.Bytes()})
+	}
+	if want("json") {
+		var b bytes.Buffer
+		if err := rs.Write(&b); err != nil {
+			return nil, list, err
+		}
+		out = append(out, File{Path: "results.json", Data: b.Bytes()})
+	}
+	if want("tables") {
+		out = append(out, csvFiles(rs)...)
+	}
+	if want("figures") {
+		more, err := figureFiles(d, opt, rs)
+		if err != nil {
+			return nil, list, err
+		}
+		out = append(out, more...)
+	}
+	return out, list, nil
+}
+
+// Document composes the report as a numbered document.
+func Document(t *trial.Trial, rs *result.Results, opt Options) (*doc.Document, diag.List) {
+	b := &builder{pictures: pictures{trial: t, rs: rs}, options: opt, fingerprint: Fingerprint(rs.Inputs)}
+	sources, main, list := b.sources()
+	if list.HasErrors() {
+		return nil, list
+	}
+	text, more := compose.Compose(sources, main, b.view(), b.functions(), compose.Limits{})
+	list = append(append(list, b.list...), more...)
+	p := t.Protocol
+	var authors []string
+	for _, x := range p.Persons {
+		authors = append(authors, x.Name)
+	}
+	d := &doc.Document{
+		Lang: "en", Title: p.Trial.Title, ShortTitle: p.Trial.Title, Code: p.Trial.Code, Status: rs.Trial.Status,
+		Author: strings.Join(authors, ", "), Date: opt.Date, Fingerprint: b.fingerprint, Paper: p.Report.Paper,
+		Blocks: tidy(text.Blocks), Notes: text.Notes,
+	}
+	return d, append(list, doc.Number(d)...)
+}
+
+// sources lists the built-in parts and the template wanted, and names it.
+func (b *builder) sources() ([]compose.Source, string, diag.List) {
+	var list diag.List
+	name := b.options.Template
+	if name == "" {
+		name = b.trial.Protocol.Report.Template
+	}
+	if name == "" {
+		name = "audit"
+	}
+	var out []compose.Source
+	parts, err := fs.Glob(templates.FS, "parts/*.md")
+	if err != nil {
+		panic("render: bad pattern of the built-in parts")
+	}
+	for _, file := range parts {
+		data, err := fs.ReadFile(templates.FS, file)
+		if err != nil {
+			panic("render: a built-in part cannot be read")
+		}
+		out = append(out, compose.Source{Name: strings.TrimSuffix(path.Base(file), ".md"), Text: string(data)})
+	}
+	if data, err := fs.ReadFile(templates.FS, name+".md"); err == nil && !strings.Contains(name, "/") {
+		return append(out, compose.Source{Name: name + ".md", Text: string(data)}), name + ".md", nil
+	}
+	for _, f := range b.trial.Files {
+		if f.Path == name {
+			return append(out, compose.Source{Name: f.Path, Text: string(f.Data)}), f.Path, nil
+		}
+	}
+	list.Add(diag.Diagnostic{Pos: b.trial.Protocol.Pos("report.template"), Key: "report.template", Severity: diag.Error, Code: "unknown-template",
+		Message: fmt.Sprintf("there is no template %q in this version, and no such file in the folder", name), Hint: "built in is \"audit\""})
+	return nil, "", list
+}
+
+// tidy drops headings under which nothing stands, and paragraphs without text, which
+// actions that had nothing to say leave behind.
+func tidy(blocks []doc.Block) []doc.Block {
+	var out []doc.Block
+	for _, b := range blocks {
+		switch x := b.(type) {
+		case doc.Paragraph:
+			if doc.Plain(x.Text) == "" {
+				continue
+			}
+		case doc.Heading:
+			for len(out) > 0 {
+				h, ok := out[len(out)-1].(doc.Heading)
+				if !ok || h.Level < x.Level {
+					break
+				}
+				out = out[:len(out)-1]
+			}
+		}
+		out = append(out, b)
+	}
+	for len(out) > 0 {
+		if _, ok := out[len(out)-1].(doc.Heading); !ok {
+			break
+		}
+		out = out[:len(out)-1]
+	}
+	return out
+}
+
+// Fingerprint is the first twelve hex digits of the SHA-256 over the inputs: one line a
+// file with its hash and path, in the order of paths.
+func Fingerprint(inputs []result.Input) string {
+	h := sha256.New()
+	for _, f := range inputs {
+		fmt.Fprintf(h, "%s  %s\n", f.SHA256, f.Path)
+	}
+	return hex.EncodeToString(h.Sum(nil))[:12]
+}
+
+func moment(date string) time.Time {
+	t, err := time.Parse("2006-01-02", date)
+	if err != nil {
+		return time.Time{}
+	}
+	return t
+}
+
+// attached is a file that rides in a report.
+type attached struct {
+	path, mime, relationship, what string
+	data                           []byte
+}
+
+// attachments lists everything the report is made of, with report.json and the results.
+func attachments(t *trial.Trial, rs *result.Results, opt Options) ([]attached, error) {
+	var out []attached
+	for _, f := range t.Files {
+		out = append(out, attached{path: f.Path, mime: mime(f.Path), relationship: relationship(f), what: "file of the trial", data: f.Data})
+	}
+	name := opt.Template
+	if name == "" {
+		name = t.Protocol.Report.Template
+	}
+	outputs := opt.Only
+	if outputs == nil {
+		outputs = Outputs
+	}
+	info, err := json.MarshalIndent(about{Format: 1, Program: rs.Program, Go: opt.Go, Arch: opt.Arch, Date: opt.Date, Template: name, Paper: t.Protocol.Report.Paper, Outputs: outputs, Files: rs.Inputs}, "", " ")
+	if err != nil {
+		return nil, fmt.Errorf("report.json: %w", err)
+	}
+	var results bytes.Buffer
+	if err := rs.Write(&results); err != nil {
+		return nil, fmt.Errorf("results.json: %w", err)
+	}
+	out = append(out, attached{path: "report.json", mime: "application/json", relationship: "Supplement", what: "how the report was made", data: append(info, '\n')},
+		attached{path: "results.json", mime: "application/json", relationship: "Data", what: "results in full precision", data: results.Bytes()})
+	return out, nil
+}
+
+func mime(name string) string {
+	switch path.Ext(name) {
+	case ".csv":
+		return "text/csv"
+	case ".toml":
+		return "application/toml"
+	case ".md":
+		return "text/markdown"
+	case ".json":
+		return "application/json"
+	}
+	return "application/octet-stream"
+}
+
+func relationship(f folder.File) string {
+	switch {
+	case f.Path == "protocol.toml":
+		return "Source"
+	case path.Ext(f.Path) == ".csv":
+		return "Data"
+	}
+	return "Supplement"
+}
+
+// figureFiles writes each figure as a picture of its own.
+func figureFiles(d *doc.Document, opt Options, rs *result.Results) ([]File, error) {
+	var out []File
+	for _, b := range d.Blocks {
+		f, ok := b.(doc.Figure)
+		if !ok || f.File == "" || f.Picture == nil {
+			continue
+		}
+		var svg, page bytes.Buffer
+		if err := html.SVG(&svg, f.Picture, f.Alt); err != nil {
+			return nil, err
+		}
+		if err := pdf.WritePicture(&page, f.Picture, doc.Plain(f.Caption), pdf.Options{Date: moment(opt.Date), Producer: rs.Program.Name + " " + rs.Program.Version}); err != nil {
+			return nil, err
+		}
+		out = append(out, File{Path: "figures/" + f.File + ".svg", Data: svg.Bytes()}, File{Path: "figures/" + f.File + ".pdf", Data: page.Bytes()})
+	}
+	return out, nil
+}

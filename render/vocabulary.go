@@ -1,0 +1,392 @@
+package render
+
+import (
+	"fmt"
+	"sort"
+	"strings"
+	"text/template"
+
+	"penwright/analysis/prose"
+	"penwright/analysis/result"
+	"penwright/protocol"
+	"penwright/protocol/diag"
+	"penwright/render/compose"
+	"penwright/render/doc"
+	"penwright/render/table"
+)
+
+// maxPrinted is the number of rows of an allotment or of residuals that are printed.
+const maxPrinted = 500
+
+// view is the dot of a template: plain data, no methods.
+type view struct {
+	Code, Title, Status string
+	Objective           string
+	Background          any // compose.Text or blocks; nil when absent
+	SpeciesRationale    string
+	Reduction           string
+	Hypotheses          []string
+	MaterialHeading     string
+	Assumptions         string
+	Complete            bool // there are data
+	Responses           []responseView
+}
+
+// responseView is one response as templates see it.
+type responseView struct {
+	Name, Label, Text, Role string
+	Primary, Analysed       bool
+	Terms                   []termView
+}
+
+// termView is one term with means.
+type termView struct{ Response, Name, Label string }
+
+func (b *builder) view() view {
+	p := b.trial.Protocol
+	v := view{
+		Code: p.Trial.Code, Title: p.Trial.Title, Status: b.rs.Trial.Status,
+		Objective: p.Trial.Objective.Body, SpeciesRationale: p.Trial.SpeciesRationale.Body, Hypotheses: p.Trial.Hypotheses,
+		Assumptions: p.Analysis.Assumptions, Complete: b.trial.Table != nil, MaterialHeading: "Material",
+	}
+	if p.Animals != nil {
+		v.MaterialHeading = "Animals, housing and treatments"
+	} else if p.Material != nil || p.Site != nil {
+		v.MaterialHeading = "Material, site and treatments"
+	}
+	if p.Welfare != nil {
+		v.Reduction = p.Welfare.Reduction.Body
+	}
+	if p.Trial.Background.Body != "" {
+		v.Background = b.text(p.Trial.Background)
+	}
+	for i := range b.rs.Responses {
+		r := &b.rs.Responses[i]
+		x := responseView{Name: r.Name, Label: r.Label, Text: prose.ResponseText(r), Role: r.Role, Primary: r.Role == "primary", Analysed: r.Model != nil}
+		seen := map[string]bool{}
+		for _, m := range r.Means {
+			if !seen[m.Term] {
+				seen[m.Term] = true
+				x.Terms = append(x.Terms, termView{Response: r.Name, Name: m.Term, Label: prose.TermLabel(b.trial.Plan, m.Term)})
+			}
+		}
+		v.Responses = append(v.Responses, x)
+	}
+	return v
+}
+
+// text gives the blocks of a text of the protocol: Markdown where it came from a file,
+// plain paragraphs where it is a string.
+func (b *builder) text(t protocol.Text) any {
+	if t.File != "" {
+		out, list := compose.Markdown(t.File, t.Body)
+		b.list = append(b.list, list...)
+		return out
+	}
+	var blocks []doc.Block
+	for _, part := range strings.Split(t.Body, "\n\n") {
+		if s := strings.Join(strings.Fields(part), " "); s != "" {
+			blocks = append(blocks, paragraph(s))
+		}
+	}
+	return blocks
+}
+
+func paragraph(s string) doc.Block {
+	return doc.Paragraph{Text: []doc.Inline{doc.Text{Text: s}}}
+}
+
+// paragraphs sets sentences as one paragraph.
+func paragraphs(sentences []string) []doc.Block {
+	if len(sentences) == 0 {
+		return nil
+	}
+	return []doc.Block{paragraph(strings.Join(sentences, " "))}
+}
+
+// functions is the vocabulary of templates.
+func (b *builder) functions() template.FuncMap {
+	p := &b.pictures
+	t, rs := b.trial, b.rs
+	fault := func(kind, name string, known []string) error {
+		near := diag.Nearest(name, known)
+		f := &compose.Fault{Code: "unknown-" + kind, Message: fmt.Sprintf("there is no %s %q", kind, name)}
+		if near != "" {
+			f.Hint = fmt.Sprintf("did you mean %q?", near)
+		} else {
+			f.Hint = "known are " + strings.Join(known, ", ")
+		}
+		return f
+	}
+	response := func(args []string) (*result.Response, error) {
+		var names []string
+		for i := range rs.Responses {
+			names = append(names, rs.Responses[i].Name)
+		}
+		if len(args) == 0 {
+			return nil, &compose.Fault{Code: "no-response", Message: "the name of a response is missing", Hint: "known are " + strings.Join(names, ", ")}
+		}
+		r := p.response(args[0])
+		if r == nil {
+			return nil, fault("response", args[0], names)
+		}
+		return r, nil
+	}
+	term := func(r *result.Response, args []string) (string, error) {
+		var names []string
+		for _, m := range r.Means {
+			if len(names) == 0 || names[len(names)-1] != m.Term {
+				names = append(names, m.Term)
+			}
+		}
+		if len(args) < 2 {
+			return "", &compose.Fault{Code: "no-term", Message: "the name of a term is missing", Hint: "known are " + strings.Join(names, ", ")}
+		}
+		if !contains(names, args[1]) {
+			return "", fault("term", args[1], names)
+		}
+		return args[1], nil
+	}
+	// Tables of the trial, and tables of one response.
+	ofTrial := map[string]func() doc.Table{
+		"identity":      func() doc.Table { return table.Identity(t, rs.Trial.Status, b.fingerprint) },
+		"skeleton":      func() doc.Table { return table.Skeleton(t.Plan) },
+		"checks":        func() doc.Table { return table.Checks(rs) },
+		"animals":       func() doc.Table { return table.Animals(t.Protocol) },
+		"site":          func() doc.Table { return table.Site(t.Protocol) },
+		"housing":       func() doc.Table { return table.Housing(t.Protocol) },
+		"eligibility":   func() doc.Table { return table.Eligibility(t.Protocol) },
+		"levels":        func() doc.Table { return table.Levels(t.Plan) },
+		"items":         func() doc.Table { return table.Items(t.Protocol) },
+		"inputs":        func() doc.Table { return table.Inputs(t.Protocol) },
+		"draws":         func() doc.Table { return table.Draws(t.Allotment) },
+		"baseline":      func() doc.Table { return table.Baseline(t) },
+		"disagreements": func() doc.Table { return table.Disagreements(t) },
+		"allotment":     func() doc.Table { return table.Allotment(t, maxPrinted) },
+		"events":        func() doc.Table { return table.Events(t.Protocol) },
+		"exclusions":    func() doc.Table { return table.Exclusions(t.Protocol) },
+		"deviations":    func() doc.Table { return table.Deviations(t.Protocol) },
+		"corrections":   func() doc.Table { return table.Corrections(t.Protocol) },
+		"confirmed":     func() doc.Table { return table.Confirmed(t.Protocol) },
+		"amendments":    func() doc.Table { return table.Amendments(t.Protocol) },
+		"data":          func() doc.Table { return table.Data(t) },
+		"planned":       func() doc.Table { return table.Planned(t.Protocol) },
+		"welfare":       func() doc.Table { return table.Welfare(t.Protocol) },
+		"procedures":    func() doc.Table { return table.Procedures(t.Protocol) },
+		"losses":        func() doc.Table { return table.Losses(t) },
+		"coverage":      func() doc.Table { return table.Coverage(prose.Guideline(t, rs)) },
+		"files":         func() doc.Table { return table.Files(rs) },
+		"signatures":    func() doc.Table { return table.Signatures(t.Protocol) },
+	}
+	ofResponse := map[string]func(r *result.Response) doc.Table{
+		"anova":       func(r *result.Response) doc.Table { return table.Anova(t.Plan, r) },
+		"summary":     func(r *result.Response) doc.Table { return table.Summary(t.Plan, r, b.decimals(r.Name)) },
+		"covariates":  func(r *result.Response) doc.Table { return table.Covariates(t.Plan, r) },
+		"contrasts":   func(r *result.Response) doc.Table { return table.Contrasts(t.Plan, r) },
+		"efficiency":  func(r *result.Response) doc.Table { return table.Efficiency(r) },
+		"diagnostics": func(r *result.Response) doc.Table { return table.Diagnostics(r) },
+		"residuals":   func(r *result.Response) doc.Table { return table.Residuals(t.Plan, r, maxPrinted) },
+	}
+	ofTerm := map[string]func(r *result.Response, term string) doc.Table{
+		"means":       func(r *result.Response, term string) doc.Table { return table.Means(t.Plan, r, term) },
+		"comparisons": func(r *result.Response, term string) doc.Table { return table.Comparisons(t.Plan, r, term) },
+	}
+	figures := map[string]func(name string) []doc.Block{
+		"points": p.points, "residual map": p.residualMap, "residuals": p.residualPoints, "quantiles": p.quantiles, "fitted": p.fitted, "spread": p.spread,
+	}
+	paragraphsOf := map[string]func() []string{
+		"treatments": func() []string { return prose.Treatments(t.Plan) },
+		"units":      func() []string { return prose.Units(t.Plan) },
+		"design":     func() []string { return prose.Design(t.Plan) },
+		"errors":     func() []string { return prose.ErrorTerms(t.Plan) },
+		"size":       func() []string { return prose.Size(t.Plan) },
+		"draw":       func() []string { return prose.Draw(t.Plan, t.Allotment) },
+		"blinding":   func() []string { return prose.Blinding(t.Protocol.Blinding) },
+		"agreement":  func() []string { return prose.Agreement(t) },
+		"repeat":     func() []string { return prose.Repeat(t.Allotment) },
+		"conduct":    func() []string { return prose.Conduct(t) },
+		"later":      func() []string { return prose.Later(t.Protocol) },
+		"welfare":    func() []string { return prose.Welfare(t.Protocol) },
+		"coverage":   func() []string { return prose.Coverage(prose.Guideline(t, rs)) },
+		"provenance": func() []string { return prose.Provenance(rs, b.options.Go, b.options.Arch) },
+		"limits":     prose.Limits,
+	}
+	return template.FuncMap{
+		"contents": func() []doc.Block { return []doc.Block{doc.Contents{}} },
+		"answers":  func() []doc.Block { return b.answers() },
+		"table": func(name string, args ...string) ([]doc.Block, error) {
+			var made doc.Table
+			switch {
+			case ofTrial[name] != nil:
+				made = ofTrial[name]()
+			case ofResponse[name] != nil:
+				r, err := response(args)
+				if err != nil {
+					return nil, err
+				}
+				made = ofResponse[name](r)
+			case ofTerm[name] != nil:
+				r, err := response(args)
+				if err != nil {
+					return nil, err
+				}
+				x, err := term(r, args)
+				if err != nil {
+					return nil, err
+				}
+				made = ofTerm[name](r, x)
+			default:
+				return nil, fault("table", name, keys(ofTrial, keys(ofResponse, keys(ofTerm, nil))))
+			}
+			if len(made.Rows) == 0 {
+				return nil, nil
+			}
+			return []doc.Block{made}, nil
+		},
+		"figure": func(name string, args ...string) ([]doc.Block, error) {
+			switch {
+			case name == "map":
+				return p.layoutMap(), nil
+			case name == "flow":
+				return p.flow(), nil
+			case name == "means":
+				r, err := response(args)
+				if err != nil {
+					return nil, err
+				}
+				x, err := term(r, args)
+				if err != nil {
+					return nil, err
+				}
+				return p.means(r.Name, x), nil
+			case figures[name] != nil:
+				r, err := response(args)
+				if err != nil {
+					return nil, err
+				}
+				return figures[name](r.Name), nil
+			}
+			return nil, fault("figure", name, keys(figures, []string{"map", "flow", "means"}))
+		},
+		"paragraph": func(name string) ([]doc.Block, error) {
+			f := paragraphsOf[name]
+			if f == nil {
+				return nil, fault("paragraph", name, keys(paragraphsOf, nil))
+			}
+			return paragraphs(f()), nil
+		},
+		"list": func(name string) ([]doc.Block, error) {
+			switch name {
+			case "hypotheses":
+				return bullets(t.Protocol.Trial.Hypotheses), nil
+			case "endpoints":
+				if t.Protocol.Welfare != nil {
+					return bullets(t.Protocol.Welfare.HumaneEndpoints), nil
+				}
+				return nil, nil
+			}
+			return nil, fault("list", name, []string{"hypotheses", "endpoints"})
+		},
+		"methods": func(name string) (string, error) {
+			r, err := response([]string{name})
+			if err != nil {
+				return "", err
+			}
+			return prose.Methods(t, r), nil
+		},
+		"results": func(name string) (string, error) {
+			r, err := response([]string{name})
+			if err != nil {
+				return "", err
+			}
+			return prose.Results(t, r), nil
+		},
+		"notes": func(name string) ([]doc.Block, error) {
+			r, err := response([]string{name})
+			if err != nil {
+				return nil, err
+			}
+			return bullets(prose.OwnNotes(r)), nil
+		},
+		"caution": func() []doc.Block {
+			return []doc.Block{doc.Aside{Kind: "caution", Title: []doc.Inline{doc.Text{Text: "Caution"}}, Blocks: paragraphs([]string{prose.Caution(t.Protocol)})}}
+		},
+		"extras": func() []doc.Block { return b.extras() },
+		"references": func() []doc.Block {
+			refs := prose.References(rs)
+			if len(refs) == 0 {
+				return nil
+			}
+			return append([]doc.Block{doc.Heading{Level: 2, Text: []doc.Inline{doc.Text{Text: "References of the methods used"}}}}, bullets(refs)...)
+		},
+		"ref": func(at diag.Pos, id string) doc.Inline { return doc.Ref{ID: id, Pos: at} },
+	}
+}
+
+// keys lists the names of a map in order, for messages, after those given.
+func keys[T any](m map[string]T, more []string) []string {
+	out := append([]string(nil), more...)
+	for k := range m {
+		out = append(out, k)
+	}
+	sort.Strings(out)
+	return out
+}
+
+func bullets(items []string) []doc.Block {
+	if len(items) == 0 {
+		return nil
+	}
+	l := doc.List{Tight: true}
+	for _, s := range items {
+		l.Items = append(l.Items, []doc.Block{paragraph(s)})
+	}
+	return []doc.Block{l}
+}
+
+// decimals of a response as its protocol asks; -1: not said.
+func (b *builder) decimals(name string) int {
+	if r := b.trial.Protocol.Response(name); r != nil && r.Decimals != nil {
+		return *r.Decimals
+	}
+	return -1
+}
+
+// answers is the box with one sentence for each primary response.
+func (b *builder) answers() []doc.Block {
+	box := doc.Aside{Kind: "answer", Title: []doc.Inline{doc.Text{Text: "Answer"}}}
+	if b.trial.Table == nil {
+		box.Blocks = paragraphs([]string{"There are no data yet; this report shows the plan."})
+		return []doc.Block{box}
+	}
+	for i := range b.rs.Responses {
+		r := &b.rs.Responses[i]
+		if r.Role == "primary" {
+			box.Blocks = append(box.Blocks, paragraph(prose.Answer(b.trial.Plan, r)))
+		}
+	}
+	if len(box.Blocks) == 0 {
+		box.Blocks = paragraphs([]string{"The protocol names no primary response."})
+	}
+	return []doc.Block{box}
+}
+
+// extras are the tables that the author brings.
+func (b *builder) extras() []doc.Block {
+	var out []doc.Block
+	for i, x := range b.trial.Protocol.Tables {
+		for _, f := range b.trial.Files {
+			if f.Path != x.File {
+				continue
+			}
+			tab, err := table.FromCSV(fmt.Sprintf("extra-%d", i+1), x.Caption, f.Data)
+			if err != nil {
+				key := fmt.Sprintf("table[%d].file", i)
+				b.list.Add(diag.Diagnostic{Pos: diag.Pos{File: x.File, Line: 1}, Key: key, Severity: diag.Error, Code: "extra-table", Message: err.Error()})
+				continue
+			}
+			out = append(out, tab)
+		}
+	}
+	return out
+}
