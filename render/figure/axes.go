@@ -34,48 +34,57 @@ type frame struct {
 // insets are kept free beside the axes.
 type insets struct{ top, right float64 }
 
-// newFrame draws two axes into the picture, with their grid.
+// strip is what the title of an axis takes.
+const strip = titleSize*leading + 3
+
+// across is the length of the horizontal axis in a picture of width w beside the axis
+// v, with end kept free at the right.
+func across(w, end float64, v axis) float64 {
+	names := 0.0
+	for _, t := range v.ticks {
+		for _, l := range strings.Split(t.Label, "\n") {
+			names = max(names, width(l, textSize, false))
+		}
+	}
+	if v.title != "" {
+		names += strip
+	}
+	const gap = 16 // ticks, padding, and the half of the last label that reaches beyond
+	return max(w-names-gap-end, 10)
+}
+
+// newFrame draws two axes into the picture, with their grid and titles.
 func newFrame(c *canvas, h, v axis, in insets) *frame {
+	f := &frame{canvas: c, h: h, v: v}
 	p := plot.New()
 	p.BackgroundColor = nil
-	label := text.Style{Color: paint(ink), Font: font.Font{Size: textSize}, Handler: handler{}}
-	title := label
-	title.Font.Size = titleSize
-	title.XAlign, title.YAlign = text.XCenter, text.YBottom
-	edge := draw.LineStyle{Color: paint(ink), Width: thin}
-	for _, a := range []struct {
-		to     *plot.Axis
-		from   axis
-		xalign text.XAlignment
-		yalign text.YAlignment
-	}{{&p.X, h, text.XCenter, text.YTop}, {&p.Y, v, text.XRight, text.YCenter}} {
-		a.to.Min, a.to.Max = a.from.lo, a.from.hi
-		a.to.Label.Text = a.from.title
-		a.to.Label.TextStyle = title
-		a.to.Label.Padding = 4
-		a.to.LineStyle = edge
-		a.to.Padding = 4
-		a.to.Tick.Label = label
-		a.to.Tick.Label.XAlign, a.to.Tick.Label.YAlign = a.xalign, a.yalign
-		a.to.Tick.LineStyle = edge
-		a.to.Tick.Length = 3
-		if a.from.bare {
-			a.to.Tick.LineStyle.Color = paint{} // keeps their room
-		}
-		a.to.Tick.Marker = plot.ConstantTicks(a.from.ticks)
-	}
 	p.TextHandler, p.Title.TextStyle.Handler = handler{}, handler{}
-
-	// Labels of the ends reach beyond the ground by half of themselves.
-	over := 1.0
-	if n := len(h.ticks); n > 0 {
-		over += p.X.Tick.Label.Width(h.ticks[n-1].Label).Points() / 2
+	edge := draw.LineStyle{Color: paint(ink), Width: thin}
+	set := func(to *plot.Axis, from axis, x text.XAlignment, y text.YAlignment) {
+		to.Min, to.Max = from.lo, from.hi
+		to.Label.TextStyle.Handler = handler{}
+		to.LineStyle, to.Tick.LineStyle = edge, edge
+		if from.bare {
+			to.Tick.LineStyle.Color = paint{} // keeps their room
+		}
+		to.Padding, to.Tick.Length = 4, 3
+		to.Tick.Label = text.Style{Color: paint(ink), Font: font.Font{Size: textSize}, Handler: handler{}, XAlign: x, YAlign: y}
+		to.Tick.Marker = plot.ConstantTicks(from.ticks)
 	}
-	area := draw.Crop(draw.New(c), 1, vg.Length(-max(in.right, min(over, c.pic.Width/4))), 1, vg.Length(-max(in.top, 5)))
-	f := &frame{canvas: c, h: h, v: v}
+	set(&p.X, h, text.XCenter, text.YTop)
+	set(&p.Y, v, text.XRight, text.YCenter)
+	bottom, side := 1.0, 1.0
+	if h.title != "" {
+		bottom += strip
+	}
+	if v.title != "" {
+		side += strip
+	}
+	area := draw.Crop(draw.New(c), vg.Length(side), vg.Length(-max(in.right, 1)), vg.Length(bottom), vg.Length(-max(in.top, 5)))
 	ground := p.DataCanvas(area)
 	f.x0, f.x1 = ground.Min.X.Points(), ground.Max.X.Points()
 	f.y0, f.y1 = c.pic.Height-ground.Max.Y.Points(), c.pic.Height-ground.Min.Y.Points()
+
 	rule := line{width: 0.4, colour: faint}
 	if v.grid {
 		for _, t := range v.ticks {
@@ -88,6 +97,20 @@ func newFrame(c *canvas, h, v axis, in insets) *frame {
 		}
 	}
 	p.Draw(area)
+
+	// The titles stand at the middle of the ground, or as near as the picture's edges
+	// let them.
+	st := style{size: titleSize, colour: ink}
+	if s := fit(h.title, c.pic.Width-2, titleSize, false); s != "" {
+		half := width(s, titleSize, false) / 2
+		x := min(max((f.x0+f.x1)/2, 1+half), c.pic.Width-1-half)
+		c.text(x, c.pic.Height-1-descent*titleSize, center, st, s)
+	}
+	if s := fit(v.title, c.pic.Height-bottom-2, titleSize, false); s != "" {
+		half := width(s, titleSize, false) / 2
+		y := min(max((f.y0+f.y1)/2, 1+half), c.pic.Height-bottom-half)
+		c.upward(1+ascent*titleSize, y, st, s)
+	}
 	return f
 }
 

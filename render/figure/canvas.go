@@ -90,6 +90,15 @@ func (c *canvas) text(x, y float64, a anchor, st style, s string) {
 	})
 }
 
+// upward sets one line that reads upwards, its baseline at x and its middle at y.
+func (c *canvas) upward(x, y float64, st style, s string) {
+	w := width(s, st.size, st.bold)
+	c.pic.Ops = append(c.pic.Ops, doc.Label{
+		X: tidy(x), Y: tidy(y + w/2), Size: st.size, Angle: 90, Text: s,
+		Bold: st.bold, Italic: st.italic, Colour: st.colour, Width: tidy(w),
+	})
+}
+
 // mark names what is drawn until the next mark.
 func (c *canvas) mark(name string) {
 	name = clean(name)

@@ -82,6 +82,15 @@ const (
 
 func form(i int) shape { return shape(i % int(shapes)) }
 
+// symbols is how many marks are told apart by shape and colour together.
+const symbols = int(shapes) * len(palette)
+
+// symbol is the mark of the i-th of several things; the first of them differ in both.
+func symbol(i int) (shape, doc.Colour) {
+	const period = 18 // after which shapes and colours would meet again
+	return form(i), hue(i + i%symbols/period)
+}
+
 // marker draws a mark of about radius r. Filled marks have a thin edge in the page's
 // colour, so that those that overlap are still seen as several.
 func (c *canvas) marker(s shape, x, y, r float64, colour doc.Colour) {

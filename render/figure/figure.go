@@ -23,8 +23,9 @@ type Size struct{ Width, Height float64 }
 const (
 	columnWidth = 454 // 160 mm
 	pageHeight  = 640 // the most a figure takes by itself, leaving room for its caption
-	smallest    = 72  // nothing can be drawn below this
-	huge        = 1e4 // nor above this
+	leastWidth  = 160 // axes have no room below this
+	leastHeight = 110
+	huge        = 1e4 // nor is anything drawn above this
 
 	textSize  = 8.0
 	titleSize = 8.5
@@ -50,7 +51,7 @@ func (s Size) resolve(height float64) (w, h float64) {
 	if !(h > 0) {
 		h = height
 	}
-	return min(max(w, smallest), huge), min(max(h, smallest), huge)
+	return min(max(w, leastWidth), huge), min(max(h, leastHeight), huge)
 }
 
 // drawable says whether a value can be placed on an axis.
@@ -91,7 +92,8 @@ func (s span) padded(share float64) span {
 
 // note is what is drawn where there is nothing to draw.
 func note(s Size, text string) *doc.Picture {
-	w, h := s.resolve(smallest)
+	w, _ := s.resolve(0)
+	const h = 40
 	c := newCanvas(w, h)
 	st := style{size: textSize, colour: ink}
 	c.text(w/2, h/2+capHeight(textSize)/2, center, st, fit(text, w-12, textSize, false))
@@ -101,6 +103,9 @@ func note(s Size, text string) *doc.Picture {
 // clean makes text of any source fit for one line of bounded length.
 func clean(s string) string {
 	const most = 300
+	if len(s) <= most && plainText(s) {
+		return s
+	}
 	if len(s) > 8*most {
 		s = s[:8*most]
 	}
@@ -119,4 +124,16 @@ func clean(s string) string {
 // words splits at plain spaces only: thin and fixed ones hold a number to its unit.
 func words(s string) []string {
 	return strings.FieldsFunc(s, func(r rune) bool { return r == ' ' })
+}
+
+// plainText says whether text is printable ASCII with single spaces between its words.
+func plainText(s string) bool {
+	space := true
+	for i := 0; i < len(s); i++ {
+		if s[i] < ' ' || s[i] > '~' || space && s[i] == ' ' {
+			return false
+		}
+		space = s[i] == ' '
+	}
+	return !space || s == ""
 }

@@ -193,6 +193,14 @@ func gallery() []struct {
 		return Look{Label: []string{"none", "barley", "beans", "both"}[k], Treatment: k, Value: none}
 	})
 	split.Treatments = []string{"none", "barley", "beans", "both"}
+	power := Power{X: "Pens per treatment", Target: 0.8, Chosen: 6}
+	for k := range 3 {
+		c := PowerCurve{Label: fmt.Sprintf("difference of %d g/d", 30+15*k)}
+		for n := 3; n <= 14; n++ {
+			c.Points = append(c.Points, PowerPoint{N: float64(n), Power: 1 - math.Exp(-float64(n*n*(k+1)*(k+1))/90)})
+		}
+		power.Curves = append(power.Curves, c)
+	}
 	var fitted Fitted
 	fitted.X, fitted.Y, fitted.Zero = "Fitted daily gain, g", "Residual of daily gain, g", true
 	var quantiles Quantiles
@@ -225,6 +233,13 @@ func gallery() []struct {
 		{"map-lattice", planned("replicate 4, block within replicate 6, plot within block 6", 36)},
 		{"map-many", planned("block 8, plot within block 60", 60)},
 		{"map-crowded", planned("block 20, plot within block 120", 120)},
+		{"flow", Flow{Unit: "pen", Stages: []string{"planned", "allotted", "observed", "analysed"}, Rows: []FlowRow{
+			{Label: "0 g/kg", Counts: []int{5, 5, 5, 5}},
+			{Label: "20 g/kg", Counts: []int{5, 5, 5, 4}, Reasons: []string{"", "", "feeder failure"}},
+			{Label: "40 g/kg", Counts: []int{5, 5, 4, 4}, Reasons: []string{"", "humane endpoint reached, whole pen removed", ""}},
+			{Label: "60 g/kg", Counts: []int{5, 5, 5, 5}},
+		}}},
+		{"power", power},
 		{"fitted", fitted},
 		{"quantiles", quantiles},
 		{"spread", spread},
@@ -263,5 +278,14 @@ func TestGolden(t *testing.T) {
 				t.Errorf("the picture differs from %s: look at both, then run with -update", file)
 			}
 		})
+	}
+}
+
+func BenchmarkGallery(b *testing.B) {
+	gallery := gallery()
+	for b.Loop() {
+		for _, g := range gallery {
+			g.Draw()
+		}
 	}
 }

@@ -64,7 +64,8 @@ func (n Interaction) Draw() (*doc.Picture, string) {
 		values.add(mid-n.Bar/2, mid+n.Bar/2)
 	}
 	c := newCanvas(w, h)
-	room := w - 52 - end
+	y := numbers(n.Response, values.padded(0.07), h-45, false)
+	room := across(w, end, y)
 	var x axis
 	if scale {
 		var ms []Mean
@@ -79,7 +80,7 @@ func (n Interaction) Draw() (*doc.Picture, string) {
 		every := 1
 		for i, l := range n.Levels {
 			lines, whole := wrap(l, pitch-4, textSize, 3)
-			if !whole {
+			if !whole && pitch < 45 {
 				// Names that have no room in their own place are set less densely.
 				most := min(width(clean(l), textSize, false), 90)
 				every = max(every, int((most+4)/pitch)+1)
@@ -89,7 +90,8 @@ func (n Interaction) Draw() (*doc.Picture, string) {
 		for i := 0; i < len(n.Levels); i += every {
 			label := wrapped[i]
 			if every > 1 {
-				label = fit(n.Levels[i], pitch*float64(every)-4, textSize, false)
+				// The first and the last have half a place and the margin beside them.
+				label = fit(n.Levels[i], min(pitch*float64(every)-4, pitch+14), textSize, false)
 			}
 			x.ticks = append(x.ticks, plot.Tick{Value: float64(i), Label: label})
 		}
@@ -98,13 +100,10 @@ func (n Interaction) Draw() (*doc.Picture, string) {
 	if bar {
 		top = 8
 	}
-	y := numbers(n.Response, values.padded(0.07), h-45, false)
-	x.title, y.title = fit(x.title, room, titleSize, false), fit(y.title, h-10, titleSize, false)
 	f := newFrame(c, x, y, insets{right: end, top: top})
 
-	var ends []float64
 	var which []int
-	from := make([][2]float64, len(n.Lines))
+	var from [][2]float64 // where the lines end
 	for k, l := range n.Lines {
 		var ordered []float64
 		var at []int
@@ -122,29 +121,39 @@ func (n Interaction) Draw() (*doc.Picture, string) {
 		if len(px) == 0 {
 			continue
 		}
+		shape, colour := symbol(k)
 		f.mark(l.Label)
-		f.curve(px, py, line{width: 1.2, dashes: dash(k), colour: hue(k)})
+		f.curve(px, py, line{width: 1.2, dashes: dash(k), colour: colour})
 		for i := range px {
-			f.marker(form(k), f.x(px[i]), f.y(py[i]), 2.6, hue(k))
+			f.marker(shape, f.x(px[i]), f.y(py[i]), 2.6, colour)
 		}
 		last := len(px) - 1
-		from[k] = [2]float64{f.x(px[last]), f.y(py[last])}
-		ends, which = append(ends, from[k][1]), append(which, k)
+		from, which = append(from, [2]float64{f.x(px[last]), f.y(py[last])}), append(which, k)
 	}
-	ys := spread(ends, textSize*leading, f.y0+textSize/2, f.y1-textSize/2)
-	st := style{size: textSize, colour: ink}
-	for i, at := range ys {
-		k := which[i]
-		f.mark(n.Lines[k].Label)
-		f.leader(from[k][0]+5, ends[i], f.x1+4, at)
-		f.marker(form(k), f.x1+9, at, 2.3, hue(k))
-		f.text(f.x1+15, at+capHeight(st.size)/2, left, st, fit(n.Lines[k].Label, f.pic.Width-f.x1-16, st.size, false))
-	}
+	f.ends(which, from, func(k int) string { return n.Lines[k].Label })
 	f.mark("")
 	if bar {
 		f.bar(n.Bar, fit(n.BarLabel, room*0.6, noteSize, false), n.crowd(f, place))
 	}
 	return c.pic, alt
+}
+
+// ends writes the names of lines, with their marks, beside where they end. Where there
+// are more than the height has room for, none are written: a part would mislead.
+func (f *frame) ends(which []int, from [][2]float64, name func(int) string) {
+	at := make([]float64, len(from))
+	for i, p := range from {
+		at[i] = p[1]
+	}
+	ys := spread(at, textSize*leading, f.y0+textSize/2, f.y1-textSize/2)
+	for i, y := range ys {
+		k := which[i]
+		shape, colour := symbol(k)
+		f.mark(name(k))
+		f.leader(from[i][0]+5, from[i][1], f.x1+4, y)
+		f.marker(shape, f.x1+9, y, 2.3, colour)
+		f.text(f.x1+15, y+capHeight(textSize)/2, left, style{size: textSize, colour: ink}, fit(name(k), f.pic.Width-f.x1-16, textSize, false))
+	}
 }
 
 // crowd lists the places of all means.

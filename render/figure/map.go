@@ -46,7 +46,10 @@ type Cell struct {
 	Empty     bool    // a place of a grid without a unit
 }
 
-const mostCells = maxPoints
+const (
+	mostCells  = maxPoints
+	mostListed = 300 // treatments in a legend
+)
 
 // Draw gives the picture, and the same in words.
 func (m Map) Draw() (*doc.Picture, string) {
@@ -77,14 +80,15 @@ func (m Map) Draw() (*doc.Picture, string) {
 	}
 	p.keys = m.needKeys(all)
 	p.choose(boxes, most-p.foot(nil, 0)-2)
-	if !p.labelled() && !p.keys && len(m.Treatments) > 0 {
+	p.bear = p.bearing()
+	if p.bear != labels {
 		p.keys = true
 		p.choose(boxes, most-p.foot(nil, 0)-2)
-		p.labelled()
+		p.bear = max(p.bearing(), keys)
 	}
 	tree := p.arrange(boxes)
 	h := tree.h + p.foot(nil, 0) + 2
-	c := newCanvas(w, min(max(h, smallest), huge))
+	c := newCanvas(w, min(h, huge))
 	p.draw(c, tree, 1, 1)
 	p.foot(c, tree.h+1)
 	return c.pic, alt
@@ -130,11 +134,22 @@ func cut(boxes []Box, most int) (kept []Box, left int) {
 func (m Map) needKeys(all []Cell) bool {
 	for _, c := range all {
 		if c.Treatment >= 0 && c.Treatment < len(m.Treatments) && c.Label != m.Treatments[c.Treatment] {
-			return len(m.Treatments) <= 400
+			return true
 		}
 	}
 	return false
 }
+
+// bears says what stands in the cells: the labels, or where these have no room keys
+// from a legend, or marks, or nothing at all.
+type bears int
+
+const (
+	labels bears = iota
+	keys
+	marks
+	nothing
+)
 
 // mapper arranges a map at one size of its cells.
 type mapper struct {
@@ -148,7 +163,7 @@ type mapper struct {
 	top     float64 // the end of the scale
 	crossed bool    // some are excluded
 	keys    bool    // a legend is drawn
-	short   bool    // cells bear keys, not labels
+	bear    bears
 }
 
 // arranged is a box with its place for everything in it.
@@ -166,6 +181,8 @@ type arranged struct {
 const (
 	widestCell = 78
 	pad        = 3
+	keySize    = 4   // least size of a key
+	over       = 1.5 // between the label of a box and the box
 )
 
 // choose finds the largest cells with which the boxes are no higher than most.
@@ -229,9 +246,11 @@ func (p *mapper) place(b *Box, most float64, depth int) *arranged {
 	a := &arranged{box: b, label: p.label}
 	rim := 0.0
 	if depth >= 0 {
-		rim = pad * min(p.gap/9, 1)
+		if len(b.Boxes) > 0 && len(b.Across) == 0 {
+			rim = pad * min(p.gap/9, 1)
+		}
 		if p.label > 0 && b.Label != "" {
-			a.head = p.label * leading
+			a.head = p.label*leading + over
 		}
 	}
 	inside := most - 2*rim
@@ -330,20 +349,16 @@ func (p *mapper) draw(c *canvas, a *arranged, x, y float64) {
 	b := a.box
 	st := style{size: a.label, colour: ink}
 	frameTop := y
-	head := a.head
 	if a.label > 0 && b.Label != "" {
 		if s := brief(b.Label, a.w, a.label); s != "" {
 			c.text(x, y+a.label*ascent, left, st, s)
 		}
-		if head > 0 {
-			frameTop += a.label * leading
-			head -= a.label * leading
+		if a.head > 0 {
+			frameTop += a.label*leading + over
 		}
 	}
-	if len(b.Cells) > 0 && len(b.Across) == 0 || len(b.Boxes) > 0 && b.Label != "" && len(b.Across) == 0 {
-		if p.gap > 2 {
-			c.stroke(line{width: thin, colour: grey}, rectangle(x, frameTop, a.w, a.h-(frameTop-y))...)
-		}
+	if len(b.Boxes) > 0 && b.Label != "" && len(b.Across) == 0 && p.gap > 2 {
+		c.stroke(line{width: thin, colour: grey}, rectangle(x, frameTop, a.w, a.h-(frameTop-y))...)
 	}
 	childW := p.cw
 	if len(a.children) > 0 {
@@ -389,6 +404,10 @@ func (p *mapper) draw(c *canvas, a *arranged, x, y float64) {
 		}
 	}
 	c.mark("")
+	if n := len(b.Cells); n > 0 && n%a.columns == 0 && p.cw > 6 {
+		c.stroke(line{width: 0.9, colour: grey},
+			rectangle(x+a.x[0], y+a.y[0], a.x[n-1]-a.x[0]+p.cw, a.y[n-1]-a.y[0]+p.ch)...)
+	}
 }
 
 // key stands for a treatment where its label has no room.
@@ -399,26 +418,44 @@ func key(i, n int) string {
 	return strconv.Itoa(i + 1)
 }
 
-// labelled says whether every label has room in its cell.
-func (p *mapper) labelled() bool {
-	p.short = false
-	for _, c := range p.all {
-		if _, ok := p.labelSize(clean(c.Label)); !ok {
-			p.short = len(p.Treatments) > 0
-			return false
-		}
+// widestKey is as wide as any of the keys of n treatments.
+func widestKey(n int) string {
+	if n <= 26 {
+		return "W"
 	}
-	return true
+	return strings.Repeat("0", len(strconv.Itoa(n)))
 }
 
-// labelSize is the largest size at which a label has room in a cell.
-func (p *mapper) labelSize(s string) (float64, bool) {
-	for size := textSize; size >= tinySize; size -= 0.5 {
-		if width(s, size, false) <= p.cw-3 && size*leading <= p.ch {
-			return size, true
+// bearing finds what the cells have room for.
+func (p *mapper) bearing() bears {
+	fits := true
+	for _, c := range p.all {
+		if p.size(clean(c.Label), tinySize) == 0 && c.Label != "" {
+			fits = false
+			break
 		}
 	}
-	return 0, s == ""
+	n := len(p.Treatments)
+	switch {
+	case fits || n == 0:
+		return labels
+	case p.size(widestKey(n), keySize) > 0:
+		return keys
+	case n <= symbols && p.cw >= 3 && p.ch >= 3:
+		return marks
+	}
+	return nothing
+}
+
+// size is the largest size at which text has room in a cell; 0 where even the least is
+// too large.
+func (p *mapper) size(s string, least float64) float64 {
+	for size := textSize; size >= least; size -= 0.5 {
+		if width(s, size, false) <= p.cw-min(3, p.cw*0.1) && size*leading <= p.ch {
+			return size
+		}
+	}
+	return 0
 }
 
 func (p *mapper) tint(c Cell) doc.Colour {
@@ -462,20 +499,20 @@ func (p *mapper) cell(c *canvas, cell Cell, x, y float64) {
 		d := min(1.0, p.cw/8)
 		c.stroke(line{width: 0.6, colour: grey}, append(segment(x+d, y+d, x+p.cw-d, y+p.ch-d), segment(x+d, y+p.ch-d, x+p.cw-d, y+d)...)...)
 	}
-	label := clean(cell.Label)
-	if p.short && cell.Treatment >= 0 {
-		label = key(cell.Treatment, len(p.Treatments))
+	label, least := clean(cell.Label), tinySize
+	switch {
+	case p.bear == keys && cell.Treatment >= 0:
+		label, least = key(cell.Treatment, len(p.Treatments)), keySize
+	case p.bear == marks && cell.Treatment >= 0:
+		shape, colour := symbol(cell.Treatment)
+		c.marker(shape, x+p.cw/2, y+p.ch/2, min(p.cw, p.ch)*0.3, colour)
+		return
+	case p.bear == marks, p.bear == nothing:
+		return
 	}
-	size, ok := p.labelSize(label)
-	if !ok || label == "" {
-		if cell.Treatment >= 0 && p.cw >= 3 && p.ch >= 3 {
-			i := cell.Treatment
-			c.marker(form(i), x+p.cw/2, y+p.ch/2, min(p.cw, p.ch)*0.3, hue(i+i/18))
-		}
-		if label != "" {
-			return
-		}
-		size = min(textSize, p.ch*0.6)
+	size := p.size(label, least)
+	if size == 0 {
+		return
 	}
 	value := ""
 	if p.Shade != "" && drawable(cell.Value) {
@@ -484,13 +521,13 @@ func (p *mapper) cell(c *canvas, cell Cell, x, y float64) {
 	mid := y + p.ch/2
 	number := clean(cell.Number)
 	corner := 0.0
-	if number != "" && label != "" && p.ch >= 17 && width(number, tinySize, false) < p.cw-4 {
+	if number != "" && label != "" && p.ch >= tinySize+1+size*leading && width(number, tinySize, false) < p.cw-4 {
 		corner = tinySize
 		c.text(x+2, y+1+tinySize*0.8, left, style{size: tinySize, colour: ink}, number)
 	}
 	if label == "" {
 		// Nothing is allotted yet: the unit's own name.
-		if size >= tinySize && number != "" {
+		if size = min(size, p.ch*0.6); size >= tinySize && number != "" {
 			if s := fit(number, p.cw-3, size, false); s != "" {
 				c.text(x+p.cw/2, mid+capHeight(size)/2, center, style{size: size, colour: ink}, s)
 			}
@@ -511,25 +548,31 @@ func (p *mapper) cell(c *canvas, cell Cell, x, y float64) {
 			return
 		}
 	}
+	base := mid + capHeight(size)/2
 	if corner > 0 {
-		low := min(mid+capHeight(size)/2+2.5, y+p.ch-descent*size)
-		if low-capHeight(size) < y+1+tinySize {
-			low = y + p.ch - descent*size
+		base = min(base+2.5, y+p.ch-descent*size)
+		if base-capHeight(size) < y+1+tinySize {
+			base = y + p.ch - descent*size
 		}
-		c.text(x+p.cw/2, low, center, style{size: size, colour: ink}, label)
-		return
 	}
-	c.text(x+p.cw/2, mid+capHeight(size)/2, center, style{size: size, colour: ink}, label)
+	if cell.Excluded {
+		half := width(label, size, false)/2 + 1.5
+		c.fill(paper, rectangle(x+p.cw/2-half, base-capHeight(size)-1, 2*half, capHeight(size)+2)...)
+	}
+	c.text(x+p.cw/2, base, center, style{size: size, colour: ink}, label)
 }
 
 // value prints what a cell is shaded by, with its sign, to about two digits of the
 // largest.
 func (p *mapper) value(v float64) string {
-	if p.top == 0 {
-		return num.Signed(v, 0)
+	if p.top >= 1e6 || p.top < 1e-4 {
+		if s := rounded(v); v <= 0 {
+			return s
+		} else {
+			return "+" + s
+		}
 	}
-	d := min(max(1-int(math.Floor(math.Log10(p.top))), 0), 6)
-	return num.Signed(v, d)
+	return num.Signed(v, min(max(1-int(math.Floor(math.Log10(p.top))), 0), 6))
 }
 
 // foot draws what explains the map, or measures it where there is no canvas, and gives
@@ -551,7 +594,7 @@ func (p *mapper) foot(c *canvas, y float64) float64 {
 		if c != nil {
 			c.stroke(line{width: thin, colour: grey}, rectangle(1, y+2, 12, 9)...)
 			c.stroke(line{width: 0.6, colour: grey}, append(segment(2, y+3, 12, y+10), segment(2, y+10, 12, y+3)...)...)
-			c.text(17, y+9, left, st, "excluded from the analysis")
+			c.text(17, y+9, left, st, fit("excluded from the analysis", p.width-17, noteSize, false))
 		}
 		y += 13
 	}
@@ -566,7 +609,8 @@ func (p *mapper) foot(c *canvas, y float64) float64 {
 
 // scale draws the scale of the shading.
 func (p *mapper) scale(c *canvas, y float64) {
-	const long, steps = 150.0, 30
+	const steps = 30
+	long := min(150, p.width*0.4)
 	st := style{size: noteSize, colour: ink}
 	title := fit(p.Shade, p.width-long-30, textSize, false)
 	x := width(title, textSize, false) + 22
@@ -576,7 +620,8 @@ func (p *mapper) scale(c *canvas, y float64) {
 		c.fill(p.shade(v), rectangle(x+long*float64(i)/steps, y+2, long/steps, 9)...)
 	}
 	c.stroke(line{width: thin, colour: grey}, rectangle(x, y+2, long, 9)...)
-	for _, v := range []float64{-1, 0, 1} {
+	end := math.Inf(-1)
+	for _, v := range []float64{-1, 1, 0} {
 		at := x + long*(v+1)/2
 		c.stroke(line{width: thin, colour: ink}, segment(at, y+11, at, y+13.5)...)
 		s := "0"
@@ -584,31 +629,47 @@ func (p *mapper) scale(c *canvas, y float64) {
 			s = p.value(v * p.top)
 		}
 		half := width(s, noteSize, false) / 2
-		c.text(min(max(at, 1+half), p.width-half), y+21, center, st, s)
+		if v == 0 && (at-half < end+2 || long < 4*half) {
+			continue
+		}
+		at = min(max(at, 1+half), p.width-half)
+		if v < 0 {
+			end = at + half
+		} else if v > 0 && at-half < end+2 {
+			return
+		}
+		c.text(at, y+21, center, st, s)
+		if v > 0 && at-half < x+long/2+6 {
+			return
+		}
 	}
 }
 
 // legend lists what stands for which treatment.
 func (p *mapper) legend(c *canvas, y float64) float64 {
-	marks := p.cw < 3+width("M", tinySize, false) || p.ch < tinySize*leading
+	const pitch = 11.5
+	st := style{size: noteSize, colour: ink}
+	if p.bear == nothing || len(p.Treatments) > mostListed {
+		if c != nil {
+			c.text(1, y+8, left, st, fit(fmt.Sprintf("The %d treatments are too many to be named on a map of this size.", len(p.Treatments)), p.width, noteSize, false))
+		}
+		return pitch + 2
+	}
 	type entry struct{ key, name string }
-	keys := map[int]string{}
-	if !p.short {
+	shown := map[int]string{}
+	if p.bear == labels {
 		for _, cell := range p.all {
-			if cell.Treatment >= 0 && keys[cell.Treatment] == "" {
-				keys[cell.Treatment] = clean(cell.Label)
+			if cell.Treatment >= 0 && shown[cell.Treatment] == "" {
+				shown[cell.Treatment] = clean(cell.Label)
 			}
 		}
 	}
 	entries := make([]entry, len(p.Treatments))
 	wideKey, wideName := 9.0, 0.0
 	for i, name := range p.Treatments {
-		k := keys[i]
-		if p.short {
+		k := shown[i]
+		if p.bear == keys {
 			k = key(i, len(p.Treatments))
-		}
-		if marks {
-			k = ""
 		}
 		entries[i] = entry{key: fit(k, 80, noteSize, false), name: clean(name)}
 		wideKey = max(wideKey, width(entries[i].key, noteSize, false)+5)
@@ -617,16 +678,15 @@ func (p *mapper) legend(c *canvas, y float64) float64 {
 	cell := min(wideKey+5+wideName+12, p.width)
 	columns := min(max(int(p.width/cell), 1), max(len(entries), 1))
 	rows := (len(entries) + columns - 1) / columns
-	const pitch = 11.5
 	if c == nil {
 		return float64(rows)*pitch + 4
 	}
-	st := style{size: noteSize, colour: ink}
 	for i, e := range entries {
 		// Down the columns, so that the order is that of reading a list.
 		x, y := 1+cell*float64(i/rows), y+pitch*float64(i%rows)+1
-		if marks {
-			c.marker(form(i), x+4.5, y+4.5, 2.6, hue(i+i/18))
+		if p.bear == marks {
+			shape, colour := symbol(i)
+			c.marker(shape, x+4.5, y+4.5, 2.6, colour)
 		} else {
 			if p.Shade == "" {
 				c.fill(p.light(i), rectangle(x, y, wideKey, 9.5)...)

@@ -60,7 +60,9 @@ func (m Means) Draw() (*doc.Picture, string) {
 	if m.Dose {
 		return m.doses(values, doses), alt
 	}
-	g := newGroups(m.Size, names, m.By, m.Response, values.padded(0.08), m.end(names, letters))
+	w, _ := m.resolve(0)
+	letters = min(letters, 90, w*0.2)
+	g := newGroups(m.Size, names, m.By, m.Response, values.padded(0.08), room{lying: letters + 8, pitch: letters + 2})
 	for i, q := range m.Means {
 		if !drawable(q.Value) {
 			continue
@@ -74,7 +76,7 @@ func (m Means) Draw() (*doc.Picture, string) {
 	g.mark("")
 	var taken []box
 	for i, q := range m.Means {
-		s := fit(q.Letters, 90, textSize, false)
+		s := fit(q.Letters, letters, textSize, false)
 		if s == "" || !drawable(q.Value) {
 			continue
 		}
@@ -96,22 +98,6 @@ func (m Means) Draw() (*doc.Picture, string) {
 		taken = g.above(taken, x, y-5, st, s)
 	}
 	return g.pic, alt
-}
-
-// end is the room for letters at the right, needed when the groups lie.
-func (m Means) end(names []string, letters float64) float64 {
-	w, _ := m.resolve(240)
-	n := float64(max(len(names), 1))
-	pitch := (w - 52) / n
-	for _, name := range names {
-		if _, whole := wrap(name, pitch-5, textSize, 3); !whole {
-			return min(letters, 90) + 8
-		}
-	}
-	if letters > pitch-2 {
-		return min(letters, 90) + 8
-	}
-	return 0
 }
 
 // above sets text centred over a place, higher where another is in the way.
@@ -174,9 +160,8 @@ func (m Means) doses(values, doses span) *doc.Picture {
 	}
 	w, h := m.resolve(250)
 	c := newCanvas(w, h)
-	x := doseAxis(m.By, m.Means, doses.padded(0.05), w-60)
 	y := numbers(m.Response, values.padded(0.08), h-45, false)
-	x.title, y.title = fit(x.title, w-60, titleSize, false), fit(y.title, h-10, titleSize, false)
+	x := doseAxis(m.By, m.Means, doses.padded(0.05), across(w, 6, y))
 	f := newFrame(c, x, y, insets{right: 6})
 	var xs, ys, lo, hi []float64
 	for _, t := range m.Trend.Points {
@@ -263,7 +248,8 @@ func doseAxis(by string, means []Mean, s span, length float64) axis {
 		}
 		at := (xs[i] - s.lo) / (s.hi - s.lo) * length
 		half := width(ds[i].label, textSize, false) / 2
-		if at-half < last+4 {
+		// Beyond the ground there is room for little more than a number.
+		if at-half < last+4 || at-half < -12 || at+half > length+20 {
 			return numbers(by, s, length, true)
 		}
 		last = at + half

@@ -65,56 +65,44 @@ type groups struct {
 	n     int
 	lying bool
 	pitch float64 // between neighbouring groups
-	size  float64 // of the names
 }
 
-// newGroups draws the frame. The range of values must be padded already. Room at the
-// far end of the axis of groups (upright) or of values (lying) is kept free for end.
-func newGroups(s Size, names []string, by, response string, values span, end float64) *groups {
+// room is what is kept free at the right while the groups stand upright and while they
+// lie, and the least pitch with which they may stand.
+type room struct{ upright, lying, pitch float64 }
+
+// newGroups draws the frame. The range of values must be padded already.
+func newGroups(s Size, names []string, by, response string, values span, r room) *groups {
 	n := max(len(names), 1)
 	w, h := s.resolve(240)
-	pitch := (w - 52 - end) / float64(n)
-	wrapped := make([]string, len(names))
-	upright := true
-	for i, name := range names {
-		lines, whole := wrap(name, pitch-5, textSize, 3)
-		wrapped[i] = strings.Join(lines, "\n")
-		upright = upright && whole
-	}
 	along := axis{title: clean(by), span: span{lo: -0.5, hi: float64(n) - 0.5}, bare: true}
-	if upright || len(names) == 0 {
-		for i := range names {
-			along.ticks = append(along.ticks, plot.Tick{Value: float64(i), Label: wrapped[i]})
-		}
-		along.title = fit(along.title, w-60-end, titleSize, false)
-		c := newCanvas(w, h)
-		v := numbers(response, values, h-45, false)
-		v.title = fit(v.title, h-10, titleSize, false)
-		f := newFrame(c, along, v, insets{right: end})
-		return &groups{frame: f, n: n, pitch: (f.x1 - f.x0) / float64(n), size: textSize}
+	v := numbers(response, values, h-45, false)
+	pitch := across(w, r.upright, v) / float64(n)
+	upright := pitch >= r.pitch
+	for i, name := range names {
+		lines, whole := wrap(name, pitch-4, textSize, 3)
+		upright = upright && whole
+		along.ticks = append(along.ticks, plot.Tick{Value: float64(i), Label: strings.Join(lines, "\n")})
 	}
-	// Lying, the first group stands at the top.
-	g := &groups{n: n, lying: true, size: textSize}
-	pitch = min(max((pageHeight-50)/float64(n), 9.6), 16)
-	if s.Height > 0 {
-		pitch = max((s.Height-45)/float64(n), 1)
+	if upright {
+		f := newFrame(newCanvas(w, h), along, v, insets{right: r.upright})
+		return &groups{frame: f, n: n, pitch: (f.x1 - f.x0) / float64(n)}
 	}
-	h = min(pitch*float64(n)+45, pageHeight)
-	_, h = s.resolve(h)
-	pitch = (h - 45) / float64(n)
-	// Where the pitch is below a line, only every so many is named.
-	every := int(math.Ceil(g.size * leading / pitch))
-	room := w * 0.34
+	// Lying, the first group stands at the top. Where the pitch is below a line, only
+	// every so many is named.
+	g := &groups{n: n, lying: true}
+	const foot = 45
+	_, h = s.resolve(min(min(max((pageHeight-foot)/float64(n), 9.6), 16)*float64(n)+foot, pageHeight))
+	pitch = (h - foot) / float64(n)
+	every := int(math.Ceil(textSize * leading / pitch))
 	along.span = span{lo: -float64(n) + 0.5, hi: 0.5}
+	along.ticks = along.ticks[:0]
 	for i := 0; i < len(names); i += every {
-		along.ticks = append(along.ticks, plot.Tick{Value: -float64(i), Label: fit(names[i], room, g.size, false)})
+		along.ticks = append(along.ticks, plot.Tick{Value: -float64(i), Label: fit(names[i], w*0.34, textSize, false)})
 	}
-	along.title = fit(along.title, h-45, titleSize, false)
-	c := newCanvas(w, h)
-	v := numbers(response, values, w*0.6-end, true)
+	v = numbers(response, values, across(w, r.lying, along), true)
 	v.grid = true
-	v.title = fit(v.title, w*0.6, titleSize, false)
-	g.frame = newFrame(c, v, along, insets{right: end})
+	g.frame = newFrame(newCanvas(w, h), v, along, insets{right: r.lying})
 	g.pitch = (g.y1 - g.y0) / float64(n)
 	return g
 }
@@ -182,7 +170,7 @@ func (p Points) Draw() (*doc.Picture, string) {
 			end = max(end, width(fit(b, 70, noteSize, false), noteSize, false)+10)
 		}
 	}
-	g := newGroups(p.Size, names, p.By, p.Response, values.padded(0.05), end)
+	g := newGroups(p.Size, names, p.By, p.Response, values.padded(0.05), room{upright: end, lying: 1})
 	if p.Residual {
 		g.level(0, line{width: 0.6, colour: ink})
 	}

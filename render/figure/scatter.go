@@ -94,9 +94,8 @@ func extent(points []XY) (xs, ys span, n int) {
 func newScatter(s Size, x, y string, xs, ys span) *frame {
 	w, h := s.resolve(250)
 	c := newCanvas(w, h)
-	h1, v1 := numbers(x, xs.padded(0.05), w-60, true), numbers(y, ys.padded(0.06), h-45, false)
-	h1.title, v1.title = fit(h1.title, w-60, titleSize, false), fit(v1.title, h-10, titleSize, false)
-	return newFrame(c, h1, v1, insets{})
+	up := numbers(y, ys.padded(0.06), h-45, false)
+	return newFrame(c, numbers(x, xs.padded(0.05), across(w, 1, up), true), up, insets{})
 }
 
 // scatter draws the points, or a density where they are too many, and the names,
@@ -373,10 +372,8 @@ func (p Spread) Draw() (*doc.Picture, string) {
 	}
 	w, h := p.resolve(250)
 	c := newCanvas(w, h)
-	x := logarithmic("Mean of "+title(p.Response, "the response")+" (log scale)", wide(xs), w-60, 34)
-	y := logarithmic("Standard deviation (log scale)", wide(ys), h-45, 22)
-	x.title, y.title = fit(x.title, w-60, titleSize, false), fit(y.title, h-10, titleSize, false)
-	x.grid = false
+	y := logarithmic("Standard deviation (log scale)", wide(ys), h-45, false)
+	x := logarithmic("Mean of "+title(p.Response, "the response")+" (log scale)", wide(xs), across(w, 1, y), true)
 	f := newFrame(c, x, y, insets{})
 	f.scatter(points, n, f.straight(p.Intercept, p.Slope))
 	return f.pic, b.String()
@@ -394,15 +391,36 @@ func wide(s span) span {
 
 // logarithmic makes an axis of a range of common logarithms, its ticks at the finest of
 // 1, of 1-2-5, or of evenly spaced numbers that the length has room for.
-func logarithmic(title string, s span, length, apart float64) axis {
-	a := axis{title: clean(title), span: s, grid: true}
+func logarithmic(title string, s span, length float64, across bool) axis {
+	apart := 22.0
+	if across {
+		apart = 34
+	}
+	a := axis{title: clean(title), span: s, grid: !across}
 	room := max(length/apart, 2)
+	add := func(v float64, label string) {
+		if v < s.lo || v > s.hi {
+			return
+		}
+		at := func(v float64) float64 { return (v - s.lo) / (s.hi - s.lo) * length }
+		if n := len(a.ticks); n > 0 {
+			last := a.ticks[n-1]
+			need := textSize * leading
+			if across {
+				need = (width(label, textSize, false)+width(last.Label, textSize, false))/2 + 5
+			}
+			if at(v)-at(last.Value) < need {
+				return
+			}
+		}
+		a.ticks = append(a.ticks, plot.Tick{Value: v, Label: label})
+	}
 	if s.hi-s.lo < 0.7 {
 		lo, hi := math.Pow(10, s.lo), math.Pow(10, s.hi)
 		step := niceStep((hi - lo) / room)
 		for _, v := range steps(span{lo: lo, hi: hi}, step) {
 			if v > 0 {
-				a.ticks = append(a.ticks, plot.Tick{Value: min(max(math.Log10(v), s.lo), s.hi), Label: plain(v, step)})
+				add(min(max(math.Log10(v), s.lo), s.hi), plain(v, step))
 			}
 		}
 		return a
@@ -418,10 +436,6 @@ func logarithmic(title string, s span, length, apart float64) axis {
 			continue
 		}
 		for _, m := range in {
-			v := float64(e) + math.Log10(m)
-			if v < s.lo || v > s.hi {
-				continue
-			}
 			label := plain(m*math.Pow(10, float64(e)), math.Pow(10, float64(e)))
 			if e > 5 || e < -4 {
 				label = "10" + raised(e)
@@ -429,7 +443,7 @@ func logarithmic(title string, s span, length, apart float64) axis {
 					label = fmt.Sprintf("%g × ", m) + label
 				}
 			}
-			a.ticks = append(a.ticks, plot.Tick{Value: v, Label: label})
+			add(float64(e)+math.Log10(m), label)
 		}
 	}
 	return a

@@ -1,0 +1,347 @@
+package figure
+
+import (
+	"bytes"
+	"fmt"
+	"math"
+	"reflect"
+	"strings"
+	"testing"
+
+	"penwright/render/doc"
+)
+
+// outline is the box that the glyphs of a label fill: from the foot of a g to the top of
+// an l. Labels are level or turned by a quarter.
+func outline(l doc.Label) box {
+	const up, down = 0.74, 0.21
+	if l.Angle == 90 {
+		return box{x0: l.X - up*l.Size, x1: l.X + down*l.Size, y0: l.Y - l.Width, y1: l.Y}
+	}
+	return box{x0: l.X, x1: l.X + l.Width, y0: l.Y - up*l.Size, y1: l.Y + down*l.Size}
+}
+
+// inspect fails where texts run into one another, where anything leaves the picture, or
+// where a coordinate is not a number.
+func inspect(t *testing.T, pic *doc.Picture) {
+	t.Helper()
+	if !(pic.Width > 0 && pic.Height > 0) {
+		t.Fatalf("the picture is %v by %v", pic.Width, pic.Height)
+	}
+	var texts []doc.Label
+	const slack = 0.02
+	inside := func(what string, b box) {
+		t.Helper()
+		if !(b.x0 >= -slack && b.y0 >= -slack && b.x1 <= pic.Width+slack && b.y1 <= pic.Height+slack) {
+			t.Errorf("%s leaves the picture of %v by %v: %+v", what, pic.Width, pic.Height, b)
+		}
+	}
+	paths := func(what string, segments []doc.Segment, w float64) {
+		t.Helper()
+		for i, s := range segments {
+			if i == 0 && s.Kind != doc.MoveTo {
+				t.Errorf("%s does not begin with a move", what)
+			}
+			if s.Kind == doc.Close {
+				continue
+			}
+			inside(what, box{x0: s.X, y0: s.Y, x1: s.X, y1: s.Y})
+			if s.Kind == doc.CurveTo {
+				inside(what, box{x0: s.X1, y0: s.Y1, x1: s.X1, y1: s.Y1})
+				inside(what, box{x0: s.X2, y0: s.Y2, x1: s.X2, y1: s.Y2})
+			}
+		}
+	}
+	for _, op := range pic.Ops {
+		switch op := op.(type) {
+		case doc.Stroke:
+			paths("a stroke", op.Path, op.Width)
+		case doc.Fill:
+			paths("a fill", op.Path, 0)
+		case doc.Label:
+			if op.Angle != 0 && op.Angle != 90 {
+				t.Errorf("%q is turned by %v", op.Text, op.Angle)
+			}
+			if op.Text == "" || strings.ContainsAny(op.Text, "\n\t") || strings.Contains(op.Text, "-") && strings.ContainsAny(op.Text[:1], "-") {
+				t.Errorf("text %q", op.Text)
+			}
+			inside(fmt.Sprintf("%q", op.Text), outline(op))
+			texts = append(texts, op)
+		}
+		if t.Failed() {
+			return
+		}
+	}
+	if len(texts) > 3000 {
+		texts = texts[:3000]
+	}
+	for i, a := range texts {
+		for _, b := range texts[:i] {
+			x, y := outline(a), outline(b)
+			if x.x0 < y.x1-slack && y.x0 < x.x1-slack && x.y0 < y.y1-slack && y.y0 < x.y1-slack {
+				t.Errorf("%q and %q run into one another: %+v %+v", a.Text, b.Text, x, y)
+				return
+			}
+		}
+	}
+}
+
+func TestGalleryLooks(t *testing.T) {
+	for _, g := range gallery() {
+		t.Run(g.name, func(t *testing.T) {
+			pic, alt := g.Draw()
+			inspect(t, pic)
+			sentences(t, alt)
+			again, _ := g.Draw()
+			if !reflect.DeepEqual(pic, again) {
+				t.Error("two drawings differ")
+			}
+		})
+	}
+}
+
+// sentences checks that the picture in words is sentences.
+func sentences(t *testing.T, alt string) {
+	t.Helper()
+	if len(alt) < 10 || !strings.HasSuffix(alt, ".") || strings.Contains(alt, "NaN") || strings.Contains(alt, "Inf") ||
+		strings.Contains(alt, "..") || strings.Contains(alt, "  ") || len(alt) > 4000 {
+		t.Errorf("in words: %q", alt)
+	}
+}
+
+func TestAnyNumberOfTreatments(t *testing.T) {
+	long := func(i int) string {
+		return fmt.Sprintf("basal diet with a long description of an additive and its dose no %d", i+1)
+	}
+	unbroken := func(i int) string { return strings.Repeat("Hydroxypropylmethyl", 3) + fmt.Sprint(i+1) }
+	for k, name := range []func(int) string{varietyName, doseName, long, unbroken} {
+		for n := 1; n <= 60; n++ {
+			if n > 12 && n%8 != k {
+				continue // each number of a few treatments, then some with each kind of name
+			}
+			points := trial(n, 3, name)
+			means := meansOf(points)
+			doses := means
+			doses.Dose = true
+			crossing := crossed(min(n, 9), n)
+			inverse := crossed(n, 3)
+			named := inverse
+			named.X = nil
+			flow := Flow{Unit: "pen", Stages: []string{"planned", "allotted", "observed to the end of the trial", "analysed"}}
+			spread := Spread{Response: "yield", Slope: 1}
+			m := Map{Unit: "pen", Boxes: []Box{{}, {Label: "Block 2"}}}
+			for i := range n {
+				flow.Rows = append(flow.Rows, FlowRow{Label: name(i), Counts: []int{6, 6, 5, 5}, Reasons: []string{"", "a long reason why a pen was removed from the trial", ""}})
+				spread.Points = append(spread.Points, Scale{Label: name(i), Mean: 10 + float64(i), SD: 1 + 0.3*noise(i)})
+				crossing.Lines[i].Label = name(i)
+				m.Treatments = append(m.Treatments, name(i))
+				for b := range m.Boxes {
+					m.Boxes[b].Cells = append(m.Boxes[b].Cells, Cell{Unit: fmt.Sprint("pen ", i), Number: fmt.Sprint(i + 1), Label: name(i), Treatment: i, Value: noise(i)})
+				}
+			}
+			for i := range inverse.Levels {
+				inverse.Levels[i] = name(i)
+			}
+			shaded := m
+			shaded.Shade = "Residual of the daily gain of growing barrows in the second period, g"
+			for _, d := range []drawing{points, means, doses, crossing, inverse, named, flow, spread, m, shaded} {
+				pic, alt := d.Draw()
+				inspect(t, pic)
+				sentences(t, alt)
+				if t.Failed() {
+					t.Fatalf("%T with %d treatments such as %q", d, n, name(0))
+				}
+			}
+		}
+	}
+}
+
+// An editor's extremes: none of them may panic, leave the picture or spoil a text.
+func TestExtremes(t *testing.T) {
+	inf := math.Inf(1)
+	values := map[string][]float64{
+		"none":      {},
+		"one":       {3},
+		"equal":     {5, 5, 5, 5},
+		"nought":    {0, 0},
+		"missing":   {none, none},
+		"partly":    {none, 1, inf, 2, -inf},
+		"huge":      {1e308, -1e308, 1e299},
+		"big":       {1e300, -1e300},
+		"tiny":      {1e-310, 3e-310, 0},
+		"small":     {2e-9, 5e-9},
+		"close":     {1e15, 1e15 + 1, 1e15 + 2},
+		"negative":  {-3.5, -0.25},
+		"thousands": {123456, 124567},
+		"millions":  {2.5e6, 7.1e6},
+	}
+	texts := []string{"", "Gain", "kg ha⁻¹", "line\nbreak\tand\x00control", "\xff\xfe broken", "漢字 and \u202eturned", strings.Repeat("long ", 4000), strings.Repeat("x", 100000)}
+	sizes := []Size{{}, {Width: 60, Height: 40}, {Width: 200, Height: 120}, {Width: none, Height: -inf}, {Width: inf, Height: 1e9}}
+	for name, vs := range values {
+		for k, text := range texts {
+			for i, size := range sizes {
+				if i > 0 && k%3 != i%3 {
+					continue // each size with some of the texts
+				}
+				p := Points{Size: size, Response: text, By: text, Blocks: text, Groups: []Group{{Label: text, Mean: none}, {Label: text, Mean: inf}, {}}}
+				m := Means{Size: size, Response: text, By: text, Interval: text}
+				n := Interaction{Size: size, Response: text, By: text, Over: text, BarLabel: text}
+				f := Fitted{Size: size, X: text, Y: text, Zero: k%2 == 0}
+				q := Quantiles{Size: size, X: text, Y: text, Slope: 1, Envelope: text}
+				s := Spread{Size: size, Response: text, Slope: 0.5}
+				fl := Flow{Size: size, Unit: text, Stages: []string{text, text, "analysed"}}
+				mp := Map{Size: size, Unit: text, Boxes: []Box{{Label: text}, {Label: text, Columns: 2, Down: []string{text}, Across: []string{text, text, text}}}, Treatments: []string{text, text}}
+				pw := Power{Size: size, X: text, Target: 0.8}
+				for i, v := range vs {
+					p.Groups[0].Points = append(p.Groups[0].Points, Point{Unit: text, Block: text, Value: v, Excluded: i == 1})
+					p.Groups[1].Points = append(p.Groups[1].Points, Point{Unit: text, Block: text, Value: -v})
+					m.Means = append(m.Means, Mean{Label: text, X: v, Value: v, Low: v - 1, High: v + 1, Letters: text})
+					n.Levels = append(n.Levels, text)
+					n.X = append(n.X, v)
+					n.Lines = append(n.Lines, Line{Label: text, Values: vs})
+					n.Bar = v
+					f.Points = append(f.Points, XY{Unit: text, X: v, Y: -v, Named: true})
+					q.Points = append(q.Points, Quantile{Unit: text, Expected: v, Value: v, Low: v - 1, High: inf, Named: true})
+					s.Points = append(s.Points, Scale{Label: text, Mean: v, SD: v})
+					s.Intercept = v
+					fl.Rows = append(fl.Rows, FlowRow{Label: text, Counts: []int{i, int(min(max(v, -9), 9)), 3, 4, 5}, Reasons: []string{text}})
+					for b := range mp.Boxes {
+						mp.Boxes[b].Cells = append(mp.Boxes[b].Cells, Cell{Unit: text, Number: text, Label: text, Treatment: i - 1, Value: v, Excluded: i == 2})
+					}
+					pw.Curves = append(pw.Curves, PowerCurve{Label: text, Points: []PowerPoint{{N: v, Power: 0.3}, {N: 2 * v, Power: v}}})
+				}
+				dosed, shaded, residual := m, mp, p
+				dosed.Dose, shaded.Shade, residual.Residual = true, title(text, "Residual"), true
+				dosed.Trend = Trend{Label: text, Points: []TrendPoint{{X: 0, Y: 1}, {X: none, Y: 2}, {X: 3, Y: inf, Low: 1, High: none}}}
+				nameless := n
+				nameless.X = nil
+				for _, d := range []drawing{p, residual, m, dosed, n, nameless, f, q, s, fl, mp, shaded, pw} {
+					pic, alt := d.Draw()
+					inspect(t, pic)
+					if strings.Contains(alt, "NaN") || len(alt) > 60000 {
+						t.Errorf("in words: %.300q", alt)
+					}
+					if t.Failed() {
+						t.Fatalf("%T of %s values, text %d, size %+v", d, name, k, size)
+					}
+				}
+			}
+		}
+	}
+}
+
+func TestManyPoints(t *testing.T) {
+	const n = 100_000
+	p := Points{Response: "Mass, g", By: "Diet", Groups: []Group{{Label: "a", Mean: 500}, {Label: "b", Mean: 510}}}
+	f := Fitted{X: "Fitted", Y: "Residual", Zero: true}
+	q := Quantiles{Slope: 1}
+	m := Map{Unit: "bird", Treatments: []string{"a", "b"}}
+	for b := range n / 1000 {
+		box := Box{Label: fmt.Sprint("Block ", b+1)}
+		for i := range 1000 {
+			box.Cells = append(box.Cells, Cell{Unit: fmt.Sprint("bird ", i), Label: "a", Treatment: i % 2})
+		}
+		m.Boxes = append(m.Boxes, box)
+	}
+	for i := range n {
+		v := noise(i) + noise(i+n) + noise(i+2*n)
+		p.Groups[i%2].Points = append(p.Groups[i%2].Points, Point{Unit: fmt.Sprint(i), Value: 500 + v})
+		f.Points = append(f.Points, XY{Unit: fmt.Sprint(i), X: noise(i), Y: v, Named: i == 5})
+		z := math.Sqrt2 * math.Erfinv(2*(float64(i)+0.5)/n-1)
+		q.Points = append(q.Points, Quantile{Unit: fmt.Sprint(i), Expected: z, Value: z})
+	}
+	for _, d := range []drawing{p, f, q, m} {
+		pic, alt := d.Draw()
+		inspect(t, pic)
+		sentences(t, alt)
+		if len(pic.Ops) > 5*maxPoints {
+			t.Errorf("%T: %d operations for %d points", d, len(pic.Ops), n)
+		}
+	}
+	// Nothing is lost between the fields: their counts are those of all points.
+	pic, _ := f.Draw()
+	sum := 0
+	for _, op := range pic.Ops {
+		if mark, ok := op.(doc.Mark); ok {
+			var k int
+			var word string
+			if _, err := fmt.Sscanf(mark.Name, "%d %s", &k, &word); err == nil && strings.HasPrefix(word, "point") {
+				sum += k
+			}
+		}
+	}
+	if sum != n {
+		t.Errorf("the fields hold %d points of %d", sum, n)
+	}
+}
+
+// Every point bears the name of its unit, and lies where its value says.
+func TestMarksNameUnits(t *testing.T) {
+	p := trial(4, 5, doseName)
+	pic, _ := p.Draw()
+	y := map[string]float64{}
+	name := ""
+	for _, op := range pic.Ops {
+		switch op := op.(type) {
+		case doc.Mark:
+			name = op.Name
+		case doc.Fill:
+			if strings.HasPrefix(name, "pen ") {
+				lo, hi := math.Inf(1), math.Inf(-1)
+				for _, s := range op.Path {
+					if s.Kind != doc.Close {
+						lo, hi = min(lo, s.Y), max(hi, s.Y)
+					}
+				}
+				y[name] = (lo + hi) / 2
+			}
+		}
+	}
+	// The scale is read off the axis: two of its labels give it.
+	var at, value [2]float64
+	k := 0
+	for _, op := range pic.Ops {
+		if l, ok := op.(doc.Label); ok && l.X < 40 && l.Angle == 0 && k < 2 {
+			if _, err := fmt.Sscan(l.Text, &value[k]); err == nil {
+				at[k] = l.Y
+				k++
+			}
+		}
+	}
+	if k < 2 {
+		t.Fatal("no two labels on the axis")
+	}
+	first := math.NaN() // the distance from baseline to tick is the same for all
+	for _, g := range p.Groups {
+		for _, q := range g.Points {
+			got, ok := y[q.Unit]
+			if !ok {
+				t.Fatalf("%s is not named", q.Unit)
+			}
+			want := at[0] + (q.Value-value[0])/(value[1]-value[0])*(at[1]-at[0])
+			if math.IsNaN(first) {
+				first = got - want
+			}
+			if math.Abs(first) > 4 || math.Abs(got-want-first) > 0.05 {
+				t.Errorf("%s of %v lies at %v, not %v", q.Unit, q.Value, got, want+first)
+			}
+		}
+	}
+}
+
+func TestBytes(t *testing.T) {
+	draw := func() []byte {
+		var b bytes.Buffer
+		for _, g := range gallery() {
+			pic, alt := g.Draw()
+			b.WriteString(svg(pic) + alt)
+		}
+		return b.Bytes()
+	}
+	first := draw()
+	for range 3 {
+		if !bytes.Equal(first, draw()) {
+			t.Fatal("two drawings differ")
+		}
+	}
+}
