@@ -53,13 +53,48 @@ type Response struct {
 	Covariates [][]float64 // one column for each covariate of the response
 	Status     []Status
 	Reason     []string // why a row is not used; empty for used rows. Shared strings
-	Animals    []int32  // animals or rows that a value was aggregated from; nil: one row each
+	Animals    []int32  // rows that a value was aggregated from; nil: one row each
 	Origin     []Origin // where the value stands
+	// Total is the number that a count of a proportion is of, and Event whether the event
+	// was seen (1) at the time that Value holds (0: not until then); nil for other kinds.
+	Total []float64
+	Event []float64
 	// Confirmed marks values outside the range that a person confirmed.
 	Confirmed []bool
 	// Corrected marks values that a correction touched.
 	Corrected []bool
-	Recorded  []int32 // rank of the day of recording where a date column is given; nil otherwise
+	// Recorded is the rank of the day of recording, from 0, -1 where it is not known; nil
+	// without a date column.
+	Recorded []int32
+}
+
+// Response returns the response of that name, or nil.
+func (t *Table) Response(name string) *Response {
+	for i := range t.Responses {
+		if t.Responses[i].Protocol.Name == name {
+			return &t.Responses[i]
+		}
+	}
+	return nil
+}
+
+// UnitName names the unit of a row of a response: block 2, pen 7.
+func (t *Table) UnitName(r *Response, row int) protocol.UnitName {
+	return allot.UnitName(t.Plan, r.Unit, r.Instance[row])
+}
+
+// LevelOf gives the level of a factor for every row of a response, -1 where it is not
+// known; it is nil where the unit of the response is too large to have one.
+func (t *Table) LevelOf(r *Response, factor int) []int32 {
+	at := t.Allotment.LevelAt(factor, r.Unit)
+	if at == nil {
+		return nil
+	}
+	out := make([]int32, len(r.Instance))
+	for row, i := range r.Instance {
+		out[row] = at[i]
+	}
+	return out
 }
 
 // Origin is the place of a value: a file and the first and last line it came from, 0

@@ -3,12 +3,23 @@
 package trial
 
 import (
+	"errors"
+	"fmt"
+	"io/fs"
+
 	"penwright/analysis/dataset"
 	"penwright/protocol"
 	"penwright/protocol/allot"
+	"penwright/protocol/diag"
 	"penwright/protocol/folder"
 	"penwright/protocol/layout"
 )
+
+// ProtocolFile is the name of the protocol in a trial folder.
+const ProtocolFile = "protocol.toml"
+
+// The limits of files that are read for their text, and of those only named.
+const maxRoster = 16 << 20
 
 // Trial is what a folder holds so far. Allotment and Table are nil until they exist.
 type Trial struct {
@@ -16,5 +27,89 @@ type Trial struct {
 	Protocol  *protocol.Protocol
 	Plan      *layout.Plan
 	Allotment *allot.Allotment
+	Roster    *allot.Roster // nil without one
 	Table     *dataset.Table
+}
+
+// Open reads a trial as far as it goes and collects what is to be said of all stages,
+// sorted by place. A stage whose input has errors is not run, and its part of the Trial
+// is nil. With data but no allotment file, Allotment is what the data tell.
+func Open(files *folder.Folder) (*Trial, diag.List) {
+	t := &Trial{}
+	list := t.open(files)
+	t.Files = files.Files()
+	list.Sort()
+	return t, list
+}
+
+func (t *Trial) open(files *folder.Folder) diag.List {
+	p, list := protocol.Load(files, ProtocolFile)
+	t.Protocol = p
+	if p == nil {
+		return list
+	}
+	for k := range p.Tables {
+		read(files, p, fmt.Sprintf("table[%d].file", k), p.Tables[k].File, folder.MaxFile, &list)
+	}
+	if list.HasErrors() {
+		return list
+	}
+	plan, more := layout.New(p)
+	list = append(list, more...)
+	if list.HasErrors() {
+		return list
+	}
+	t.Plan = plan
+	if p.Roster != nil && p.Roster.File != "" {
+		if file, ok := read(files, p, "roster.file", p.Roster.File, maxRoster, &list); ok {
+			roster, more := allot.ReadRoster(file, plan)
+			t.Roster = roster
+			list = append(list, more...)
+		}
+	}
+	a, more := allot.Read(files, plan)
+	list = append(list, more...)
+	if more.HasErrors() {
+		return list
+	}
+	t.Allotment = t.withClasses(a)
+	table, more := dataset.Read(files, plan, t.Allotment)
+	list = append(list, more...)
+	t.Table = table
+	if table != nil {
+		t.Allotment = table.Allotment
+	}
+	return list
+}
+
+// withClasses adds to an allotment the carried classes that only the roster tells.
+func (t *Trial) withClasses(a *allot.Allotment) *allot.Allotment {
+	if a == nil || t.Roster == nil {
+		return a
+	}
+	full := *a
+	full.Levels = append([][]int32(nil), a.Levels...)
+	for f, levels := range t.Roster.Levels {
+		if full.Levels[f] == nil {
+			full.Levels[f] = levels
+		}
+	}
+	return &full
+}
+
+// read reads a file that the protocol names.
+func read(files *folder.Folder, p *protocol.Protocol, key, name string, limit int64, list *diag.List) (folder.File, bool) {
+	if name == "" {
+		return folder.File{}, false
+	}
+	file, err := files.Read(name, limit)
+	if err == nil {
+		return file, true
+	}
+	d := diag.Diagnostic{Pos: p.Pos(key), Key: key, Code: protocol.Unreadable, Message: err.Error()}
+	if errors.Is(err, fs.ErrNotExist) {
+		d.Message = fmt.Sprintf("there is no file %s in the trial folder", name)
+	}
+	list.Add(d)
+	return folder.File{}, false
 }

@@ -326,15 +326,15 @@ func (s *blocked) draw(g *Generator, combination []int32) {
 
 func (s *blocked) words() string {
 	unit := &s.plan.Units[s.of.Unit]
-	place := "over the whole trial"
+	place := "for the whole trial"
 	if unit.Within >= 0 {
-		place = "within each " + s.plan.Units[unit.Within].Name + ", in the plan's order"
+		place = "anew for each " + s.plan.Units[unit.Within].Name + " in the plan's order"
 	}
-	text := fmt.Sprintf("%s to %s: the %d treatments, as often as planned, in random order %s", factorNames(s.plan, s.of.Factors), unit.Name, len(s.of.Combinations), place)
+	text := fmt.Sprintf("%s to %s: the list of the %d treatments in the protocol's order, each as often as planned, is permuted %s", factorNames(s.plan, s.of.Factors), unit.Name, len(s.of.Combinations), place)
 	if len(unit.Carries) > 0 {
-		text = fmt.Sprintf("%s to %s: the %d treatments in random order within each class of %s %s", factorNames(s.plan, s.of.Factors), unit.Name, len(s.of.Combinations), factorNames(s.plan, unit.Carries), place)
+		text = fmt.Sprintf("%s to %s: the list of the %d treatments in the protocol's order, each as often as planned, is permuted for each class of %s, %s", factorNames(s.plan, s.of.Factors), unit.Name, len(s.of.Combinations), factorNames(s.plan, unit.Carries), place)
 		if s.deal {
-			text += "; what a class holds beyond full sets is dealt from one random order of the treatments, class after class"
+			text += "; what a class holds beyond equal numbers is dealt before, class after class, from one permutation of the treatments"
 		}
 	}
 	return text

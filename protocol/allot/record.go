@@ -296,34 +296,38 @@ func headLines(data []byte) []int {
 // Read reads the allotment of a folder: allotment.csv with the record of
 // allotment.toml, or as brought from elsewhere. It is nil without an allotment, and
 // where the list has an error it may lack levels.
-func Read(files *folder.Folder, plan *layout.Plan) (*Allotment, diag.List, error) {
-	file, err := files.Read(File, folder.MaxFile)
-	noFile := isAbsent(err)
-	if err != nil && !noFile {
-		return nil, nil, err
+func Read(files *folder.Folder, plan *layout.Plan) (*Allotment, diag.List) {
+	var list diag.List
+	read := func(name string) (folder.File, bool) {
+		file, err := files.Read(name, folder.MaxFile)
+		if err != nil && !isAbsent(err) {
+			list.Add(diag.Diagnostic{Pos: diag.Pos{File: name}, Code: protocol.Unreadable, Message: err.Error()})
+		}
+		return file, err == nil
 	}
-	record, err := files.Read(RecordFile, folder.MaxFile)
-	noRecord := isAbsent(err)
-	if err != nil && !noRecord {
-		return nil, nil, err
-	}
+	file, found := read(File)
+	record, recorded := read(RecordFile)
 	switch {
-	case noFile && noRecord:
-		return nil, nil, nil
-	case noFile:
-		return nil, diag.List{{Pos: diag.Pos{File: RecordFile, Line: 1, Col: 1}, Code: AllotmentChanged,
-			Message: "there is a record of the draw, but no " + File, Hint: "restore " + File}}, nil
+	case list.HasErrors():
+		return nil, list
+	case !found && !recorded:
+		return nil, nil
+	case !found:
+		list.Add(diag.Diagnostic{Pos: diag.Pos{File: RecordFile, Line: 1, Col: 1}, Code: AllotmentChanged,
+			Message: "there is a record of the draw, but no " + File, Hint: "restore " + File})
+		return nil, list
 	}
-	draws, list := parseRecord(record)
+	draws, more := parseRecord(record)
+	list = append(list, more...)
 	a, more := parse(file, plan)
 	list = append(list, more...)
 	if a == nil {
-		return nil, list, nil
+		return nil, list
 	}
 	a.Draws = draws
 	method := plan.Protocol.Randomization.Method
 	switch {
-	case noRecord:
+	case !recorded:
 		a.Origin = Elsewhere
 		if method == "" {
 			list.Add(diag.Diagnostic{Pos: diag.Pos{File: File, Line: 1, Col: 1}, Severity: diag.Warning, Code: NoAllotmentRecord,
@@ -341,7 +345,7 @@ func Read(files *folder.Folder, plan *layout.Plan) (*Allotment, diag.List, error
 				Message: "method says that the allotment was drawn elsewhere, but there is a record of a draw", Hint: "leave method out"})
 		}
 	}
-	return a, list, nil
+	return a, list
 }
 
 func lastOf(lines []int) int {

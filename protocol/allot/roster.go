@@ -97,7 +97,7 @@ type first struct {
 // and refuses a level that varies inside an instance. row, if not nil, is called with
 // every row and its instance, and may forbid to use it.
 func fill(s *sheet.Sheet, b *Binding, plan *layout.Plan, columns []column, levels [][]int32, row func(sheet.Row, int32) bool, seen [][]first) diag.List {
-	var list diag.List
+	var list sheet.Faults
 	if seen == nil {
 		seen = make([][]first, len(plan.Factors))
 	}
@@ -113,7 +113,7 @@ func fill(s *sheet.Sheet, b *Binding, plan *layout.Plan, columns []column, level
 			list.Add(diag.Diagnostic{Pos: s.Pos(s.Heading, c.at), Code: UnitColumns,
 				Message: fmt.Sprintf("%s belongs to %s, but the rows are of %s", f.Name, plan.Units[f.Unit].Name, plan.Units[b.Unit].Name),
 				Hint:    "add the columns that name each " + plan.Units[f.Unit].Name})
-			return list
+			return list.List()
 		}
 	}
 	_, _, _, broken := s.Rows(func(r sheet.Row) bool {
@@ -146,7 +146,8 @@ func fill(s *sheet.Sheet, b *Binding, plan *layout.Plan, columns []column, level
 		}
 		return true
 	})
-	return append(list, broken...)
+	list.AddAll(broken)
+	return list.List()
 }
 
 // DecimalOf is the decimal mark of the levels of quantitative factors in a sheet: the

@@ -108,12 +108,12 @@ func Open(path string, data []byte, delimiter string) (*Sheet, diag.List) {
 	case delimiter == "" || delimiter == "auto":
 		s.Delimiter = s.guess()
 	default:
-		s.Delimiter, _ = utf8.DecodeRuneInString(delimiter)
+		s.Delimiter = rune(delimiter[0])
 	}
 	r := s.reader()
 	row, ok := r.next()
 	if !ok {
-		list = append(list, r.list...)
+		list = append(list, r.list.List()...)
 		return nil, list
 	}
 	if len(row.Cells) > MaxColumns {
@@ -261,6 +261,7 @@ func (s *Sheet) Pos(r Row, cell int) diag.Pos {
 // rows are not handed over, and their number is returned with that of the blank ones.
 func (s *Sheet) Rows(do func(Row) bool) (rows, blank, broken int, list diag.List) {
 	r := s.reader()
+	var faults Faults
 	for {
 		row, ok := r.next()
 		if !ok {
@@ -271,9 +272,10 @@ func (s *Sheet) Rows(do func(Row) bool) (rows, blank, broken int, list diag.List
 			continue
 		}
 		if rows++; rows > MaxRows {
-			list.Add(diag.Diagnostic{Pos: diag.Pos{File: s.Path, Line: row.Line}, Code: "too-many-rows",
+			faults.Add(diag.Diagnostic{Pos: diag.Pos{File: s.Path, Line: row.Line}, Code: "too-many-rows",
 				Message: fmt.Sprintf("more than %d rows", MaxRows), Hint: "split the trial's file, or record at a larger unit"})
-			return rows - 1, blank, broken, list
+			rows--
+			break
 		}
 		h := len(s.Headings)
 		for len(row.Cells) > h && row.Cells[len(row.Cells)-1].Text == "" {
@@ -287,7 +289,7 @@ func (s *Sheet) Rows(do func(Row) bool) (rows, blank, broken int, list diag.List
 			} else if s.Delimiter == ',' {
 				hint = "quote fields that hold a comma; with decimal commas put semicolons between the fields"
 			}
-			list.Add(diag.Diagnostic{Pos: s.Pos(row, h), Code: "field-count",
+			faults.Add(diag.Diagnostic{Pos: s.Pos(row, h), Code: "field-count",
 				Message: fmt.Sprintf("%s, but there are %s", count(n, "field"), count(h, "heading")), Hint: hint})
 			continue
 		}
@@ -295,8 +297,8 @@ func (s *Sheet) Rows(do func(Row) bool) (rows, blank, broken int, list diag.List
 			break
 		}
 	}
-	broken += r.broken
-	return rows + r.broken, blank, broken, append(list, r.list...)
+	faults.AddAll(r.list.List())
+	return rows + r.broken, blank, broken + r.broken, faults.List()
 }
 
 func count(n int, noun string) string {
@@ -313,7 +315,7 @@ type reader struct {
 	line   int
 	broken int
 	cells  []Cell
-	list   diag.List
+	list   Faults
 }
 
 func (s *Sheet) reader() *reader { return &reader{s: s, at: s.body, line: s.line} }
@@ -322,7 +324,7 @@ func (s *Sheet) reader() *reader { return &reader{s: s, at: s.body, line: s.line
 // over to the end of its line.
 func (r *reader) next() (Row, bool) {
 	text := r.s.text
-	delimiter := byte(r.s.Delimiter) // one of three ASCII characters, or another the protocol allows
+	delimiter := byte(r.s.Delimiter)
 again:
 	if r.at >= len(text) {
 		return Row{}, false

@@ -1,0 +1,428 @@
+package dataset
+
+import (
+	"fmt"
+	"slices"
+	"strings"
+
+	"penwright/protocol"
+	"penwright/protocol/allot"
+	"penwright/protocol/diag"
+	"penwright/protocol/folder"
+	"penwright/protocol/layout"
+	"penwright/protocol/sheet"
+)
+
+// Codes of what is said about data.
+const (
+	// NoData: the data file does not exist yet.
+	//	Example: [data] file = "data.csv" before the trial.
+	NoData = "no-data"
+	// NoRows: a data file holds only headings.
+	//	Example: "pen,mass".
+	NoRows = "no-rows"
+	// BlankRows: rows of delimiters only.
+	//	Example: ",,,,".
+	BlankRows = "blank-rows"
+	// BadNumber: a cell that should hold a number does not.
+	//	Example: "12.5kg".
+	BadNumber = "bad-number"
+	// BadDate: a cell of the date column is not a date.
+	//	Example: "3/4/26".
+	BadDate = "bad-date"
+	// AmbiguousDecimal: the decimal mark cannot be told from the numbers.
+	//	Example: all numbers like 1,234.
+	AmbiguousDecimal = "ambiguous-decimal"
+	// UnknownTime: a row is of a time that [[repeated]] does not list.
+	//	Example: week 3 of 2, 4, 6.
+	UnknownTime = "unknown-time"
+	// NoColumn: a response or covariate has no column.
+	//	Example: the response adg where no heading is adg.
+	NoColumn = "no-column"
+	// DuplicateRow: two rows are of one unit and time.
+	//	Example: pen 3 of block 1 stands twice.
+	DuplicateRow = "duplicate-row"
+	// WrongLevel: the rows are of another unit than the response is recorded on.
+	//	Example: recorded_on = "pen" where each row is of an animal, without aggregate.
+	WrongLevel = "wrong-level"
+	// OutsideRange: a value outside the range of its response.
+	//	Example: adg 7550 where range = [200, 1500].
+	OutsideRange = "out-of-range"
+	// BadKind: a value that its kind of response cannot have.
+	//	Example: 2.5 for a count.
+	BadKind = "bad-kind"
+	// BadCompute: a computed response that cannot be computed.
+	//	Example: compute = "gain / 0".
+	BadCompute = "bad-compute"
+	// BadCorrection: a correction that does not fit the file.
+	//	Example: old = "77.5" where the cell is "75.7".
+	BadCorrection = "bad-correction"
+	// BadConfirmation: a confirmed value that is not in the data.
+	//	Example: value = 1510 where the value is 1501.
+	BadConfirmation = "bad-confirmation"
+	// BadExclusion: an exclusion of something that is not in the trial.
+	//	Example: at = "9" where there is no week 9.
+	BadExclusion = "bad-exclusion"
+	// BadEvent: an event that does not fit the plan.
+	//	Example: more animals removed from a pen than it held.
+	BadEvent = "bad-event"
+	// NoAllotment: nothing tells what a unit received.
+	//	Example: neither allotment.csv nor a treatment column.
+	NoAllotment = "no-allotment"
+	// TreatmentDisagrees: a treatment in the data is not the allotted one.
+	//	Example: pen 3 with diet B where A was allotted.
+	TreatmentDisagrees = "treatment-disagrees"
+	// TreatmentUnchecked: a treatment column in rows of a larger unit.
+	//	Example: the column supplement in a file of blocks.
+	TreatmentUnchecked = "treatment-unchecked"
+	// CodeDisagrees: a masked code in the data is not that of the allotment.
+	//	Example: code K17 where the allotment has K71.
+	CodeDisagrees = "code-disagrees"
+)
+
+// reader is one reading of a trial's data.
+type reader struct {
+	files    *folder.Folder
+	plan     *layout.Plan
+	data     *protocol.Data
+	allotted *allot.Allotment // as given; nil without
+	finder   *allot.Finder
+	table    *Table
+	faults   sheet.Faults
+
+	frames     []*frame
+	failed     []string // files that could not be opened
+	conditions []protocol.Condition
+	missing    []string // codes of missing values
+	broken     bool
+
+	corrected []bool // corrections whose file is one of the trial's
+	pending   []*correctionAt
+	changes   byUnit[int] // events that explain another treatment
+	learned   []*found    // by factor
+	seen      [][]bool    // by unit: instances with a row
+
+	exclusions byUnit[*exclusion]
+	confirmed  byUnit[*confirmation]
+	departures []byUnitInstance
+	numbers    map[[2]int][]float64 // of animals, by index into animalNames and unit
+	duplicates map[diag.Pos]bool    // repeated rows that were reported
+}
+
+// Read reads the data files of a trial into a Table at the level of the units that each
+// response is recorded on. a is nil where the trial has no allotment file; the treatment
+// columns of the data are then the allotment. The table is nil where there are no data;
+// where the list has errors it holds what could be read. Diagnostics that concern many
+// rows are kept up to a hundred of a kind.
+func Read(files *folder.Folder, plan *layout.Plan, a *allot.Allotment) (*Table, diag.List) {
+	p := plan.Protocol
+	if p.Data == nil || p.Data.File == "" {
+		return nil, nil
+	}
+	r := &reader{files: files, plan: plan, data: p.Data, allotted: a, finder: allot.NewFinder(plan),
+		table: &Table{Plan: plan, Allotment: a}, corrected: make([]bool, len(p.Corrections)),
+		learned: make([]*found, len(plan.Factors)), seen: make([][]bool, len(plan.Units)), numbers: map[[2]int][]float64{}, duplicates: map[diag.Pos]bool{}}
+	late := p.Data.Locked != (protocol.Date{})
+	main := r.openFrame(p.Data.File, "data.file", late)
+	if main == nil {
+		return nil, r.faults.List()
+	}
+	for k, further := range p.Data.Further {
+		key := fmt.Sprintf("data.further[%d]", k)
+		f := r.openFrame(further.File, key+".file", true)
+		if f == nil || further.Unit == "" {
+			continue
+		}
+		if want := r.unit(further.Unit); want >= 0 && want != f.unit {
+			r.fail(key+".unit", WrongLevel, "name its rows by the columns of that unit", "the rows of %s are of %s, not of %s", further.File, plan.Units[f.unit].Name, further.Unit)
+		}
+	}
+	for k := range p.Responses {
+		if file := p.Responses[k].File; file != "" {
+			r.openFrame(file, fmt.Sprintf("response[%d].file", k), true)
+		}
+		r.conditions = append(r.conditions, p.Responses[k].Where...)
+	}
+	if p.Roster != nil && p.Roster.File != "" {
+		r.openFrame(p.Roster.File, "roster.file", true)
+	}
+	r.table.Files = make([]File, len(r.frames))
+	for i, f := range r.frames {
+		s := f.sheet
+		r.table.Files[i] = File{Path: s.Path, Encoding: s.Encoding, Delimiter: s.Delimiter, Columns: s.Headings}
+	}
+	r.events()
+	r.excluded()
+	r.confirmations()
+	jobs := make([]*job, len(p.Responses))
+	for k := range p.Responses {
+		jobs[k] = r.prepare(k)
+	}
+	for _, f := range r.frames {
+		r.load(f)
+	}
+	r.settle()
+	r.table.Allotment = r.completeAllotment()
+	for k, j := range jobs {
+		if j == nil {
+			// What cannot be read keeps its place, without rows.
+			r.table.Responses = append(r.table.Responses, Response{Protocol: &p.Responses[k], Unit: plan.Smallest})
+			continue
+		}
+		r.table.Responses = append(r.table.Responses, r.respond(j))
+	}
+	r.unmet()
+	list := r.faults.List()
+	list.Sort()
+	return r.table, list
+}
+
+func (r *reader) unit(name string) int {
+	return slices.IndexFunc(r.plan.Units, func(u layout.Unit) bool { return u.Name == name })
+}
+
+// fail reports an error at a key of the protocol.
+func (r *reader) fail(key, code, hint, format string, args ...any) {
+	r.faults.Add(diag.Diagnostic{Pos: r.plan.Protocol.Pos(key), Key: key, Code: code, Message: fmt.Sprintf(format, args...), Hint: hint})
+}
+
+// variable is a name that a response is computed from, and where its numbers stand.
+type variable struct {
+	name   string
+	frame  *frame // nil for a number of animals
+	animal int    // index into animalNames, for a number of animals
+}
+
+// job is how one response is to be made.
+type job struct {
+	index      int
+	p          *protocol.Response
+	key        string
+	unit       int // recorded on
+	base       *frame
+	repeated   int // index into Protocol.Repeated, or -1
+	expression *expression
+	variables  []variable // of the expression, or the column itself
+	total      *frame
+	event      *frame
+	covariates []*frame // nil: absent
+}
+
+// candidates lists the frames in which a response's columns are looked for, in order.
+func (r *reader) candidates(p *protocol.Response) []*frame {
+	var first, rest []*frame
+	for _, f := range r.frames {
+		if p.File != "" && f.sheet.Path == p.File {
+			first = append(first, f)
+		} else {
+			rest = append(rest, f)
+		}
+	}
+	return append(first, rest...)
+}
+
+// source finds the frame that holds a name, or nil.
+func (r *reader) source(p *protocol.Response, name string) *frame {
+	for _, f := range r.candidates(p) {
+		if r.find(f, name) >= 0 {
+			return f
+		}
+	}
+	return nil
+}
+
+// headings lists all headings, for suggestions.
+func (r *reader) headings() []string {
+	var all []string
+	for _, f := range r.frames {
+		all = append(all, f.sheet.Headings...)
+	}
+	return all
+}
+
+// prepare finds the columns of a response. It is nil where that fails.
+func (r *reader) prepare(k int) *job {
+	plan := r.plan
+	p := &plan.Protocol.Responses[k]
+	j := &job{index: k, p: p, key: fmt.Sprintf("response[%d]", k), repeated: -1}
+	names := []string{p.Name}
+	if p.Compute != "" {
+		e, bad := parseExpression(p.Compute)
+		if bad != nil {
+			r.fail(j.key+".compute", BadCompute, bad.Hint, "%s, at character %d of %q", bad.Message, bad.At+1, p.Compute)
+			return nil
+		}
+		j.expression, names = e, e.names
+	}
+	wanting := false
+	for _, name := range names {
+		v := variable{name: name, animal: slices.Index(animalNames[:], name)}
+		if v.animal < 0 || p.Compute == "" {
+			if v.frame = r.source(p, name); v.frame == nil {
+				wanting = true
+				key := j.key + ".name"
+				if p.Compute != "" {
+					key = j.key + ".compute"
+				}
+				r.fail(key, NoColumn, near(name, r.headings()), "no data file has a column %q", name)
+				continue
+			}
+			if j.base == nil {
+				j.base = v.frame
+			}
+			r.need(v.frame, name)
+		}
+		j.variables = append(j.variables, v)
+	}
+	if wanting {
+		return nil
+	}
+	if p.File != "" {
+		if f := r.candidates(p)[0]; f.sheet.Path == p.File {
+			j.base = f
+		} else {
+			return nil // said when it was opened
+		}
+		if p.Compute == "" && j.variables[0].frame != j.base {
+			r.fail(j.key+".file", NoColumn, near(p.Name, j.base.sheet.Headings), "%s has no column %q", p.File, p.Name)
+			return nil
+		}
+	}
+	if j.base == nil {
+		j.base = r.frames[0]
+	}
+	extra := func(name, key string) *frame {
+		if name == "" {
+			return nil
+		}
+		if r.find(j.base, name) < 0 {
+			r.fail(j.key+"."+key, NoColumn, near(name, j.base.sheet.Headings), "%s has no column %q", j.base.sheet.Path, name)
+			wanting = true
+			return nil
+		}
+		r.need(j.base, name)
+		return j.base
+	}
+	j.total, j.event = extra(p.Total, "total"), extra(p.Event, "event")
+	for _, c := range p.Where {
+		if r.find(j.base, c.Column) < 0 {
+			r.fail(j.key+".where."+c.Column, NoColumn, near(c.Column, j.base.sheet.Headings), "%s has no column %q", j.base.sheet.Path, c.Column)
+			wanting = true
+		}
+	}
+	if p.Over != "" && r.find(j.base, p.Over) < 0 {
+		r.fail(j.key+".over", NoColumn, near(p.Over, j.base.sheet.Headings), "%s has no column %q", j.base.sheet.Path, p.Over)
+		wanting = true
+	}
+	for i, name := range p.Covariates {
+		f := r.source(p, name)
+		if f == nil {
+			r.fail(fmt.Sprintf("%s.covariates[%d]", j.key, i), NoColumn, near(name, r.headings()), "no data file has a column %q", name)
+			wanting = true
+			continue
+		}
+		r.need(f, name)
+		j.covariates = append(j.covariates, f)
+	}
+	j.unit = j.base.unit
+	if p.RecordedOn != "" {
+		if j.unit = r.unit(p.RecordedOn); j.unit < 0 {
+			return nil // said by the protocol
+		}
+	}
+	if p.Repeated != "" {
+		j.repeated = slices.IndexFunc(plan.Protocol.Repeated, func(rep protocol.Repeated) bool { return rep.Name == p.Repeated })
+		if j.repeated < 0 {
+			return nil // said by the protocol
+		}
+		if r.find(j.base, p.Repeated) < 0 {
+			r.fail(j.key+".repeated", NoColumn, near(p.Repeated, j.base.sheet.Headings), "%s has no column %q that tells the time of each row", j.base.sheet.Path, p.Repeated)
+			wanting = true
+		}
+	}
+	if wanting {
+		return nil
+	}
+	up := plan.Coarse(j.base.unit, j.unit)
+	switch {
+	case up == nil:
+		r.fail(j.key+".recorded_on", WrongLevel, "record it on "+plan.Units[j.base.unit].Name+", or name each "+plan.Units[j.unit].Name+" in the file",
+			"%s is recorded on %s, but the rows of %s are of %s", p.Name, plan.Units[j.unit].Name, j.base.sheet.Path, plan.Units[j.base.unit].Name)
+		return nil
+	case j.base.unit != j.unit && p.Aggregate == "":
+		r.fail(j.key+".recorded_on", WrongLevel, `say aggregate = "mean", "sum" or "ratio"`,
+			"%s is recorded on %s, but the rows of %s are of %s", p.Name, plan.Units[j.unit].Name, j.base.sheet.Path, plan.Units[j.base.unit].Name)
+		return nil
+	}
+	return j
+}
+
+// confirmation is a confirmed value with what it points at.
+type confirmation struct {
+	index int
+	met   bool
+	seen  bool // some value of the response was there
+	value float64
+}
+
+func (r *reader) confirmations() {
+	for k := range r.data.Confirmed {
+		c := &r.data.Confirmed[k]
+		if unit, instance, ok := r.locate(c.Unit, fmt.Sprintf("data.confirmed[%d].unit", k)); ok {
+			r.confirmed.add(unit, instance, &confirmation{index: k})
+		}
+	}
+}
+
+// exclusion is an exclusion with what it points at.
+type exclusion struct {
+	index  int
+	p      *protocol.Exclusion
+	reason string
+}
+
+func (e *exclusion) concerns(response string) bool {
+	return len(e.p.Responses) == 0 || slices.Contains(e.p.Responses, response)
+}
+
+func (r *reader) excluded() {
+	for k := range r.plan.Protocol.Exclusions {
+		p := &r.plan.Protocol.Exclusions[k]
+		key := fmt.Sprintf("exclusion[%d]", k)
+		if p.At != "" && !slices.ContainsFunc(r.plan.Protocol.Repeated, func(rep protocol.Repeated) bool { return timeIndex(&rep, p.At, '.') >= 0 }) {
+			r.fail(key+".at", BadExclusion, "", "no [[repeated]] has the time %q", p.At)
+			continue
+		}
+		if unit, instance, ok := r.locate(p.Unit, key+".unit"); ok {
+			r.exclusions.add(unit, instance, &exclusion{index: k, p: p, reason: "excluded: " + strings.TrimSpace(p.Reason)})
+		}
+	}
+}
+
+// unmet reports confirmed values that no response has.
+func (r *reader) unmet() {
+	for _, x := range r.confirmed {
+		for _, i := range sortedKeys(x.of) {
+			for _, c := range x.of[i] {
+				p := &r.data.Confirmed[c.index]
+				key := fmt.Sprintf("data.confirmed[%d]", c.index)
+				switch {
+				case c.met:
+				case c.seen:
+					r.fail(key+".value", BadConfirmation, "confirm the value that the data give", "%s of %s is %v, not %v", p.Response, unitText(p.Unit), c.value, p.Value)
+				default:
+					r.fail(key+".unit", BadConfirmation, "", "there is no value of %s for %s", p.Response, unitText(p.Unit))
+				}
+			}
+		}
+	}
+}
+
+func sortedKeys[T any](m map[int32]T) []int32 {
+	keys := make([]int32, 0, len(m))
+	for k := range m {
+		keys = append(keys, k)
+	}
+	slices.Sort(keys)
+	return keys
+}
