@@ -25,32 +25,27 @@ func studentizedUpper(q, df float64, tail func(w float64) float64) float64 {
 	integrand := func(u float64) float64 {
 		return math.Exp(lnPeak+df*(u-math.Expm1(2*u)/2)) * tail(q*math.Exp(u))
 	}
-	// The peak of f has standard deviation 1/√(2df) in u.
+	// The peak of f has standard deviation 1/√(2df) in u. Far out the whole integrand may be
+	// zero at u = 0 and have its peak to one side: walk until it has been passed.
 	h := math.Min(0.2, 0.95/math.Sqrt(2*df))
 	sum := integrand(0)
 	largest := sum
-	right, left := 0.0, 0.0
-	for k := 1.0; ; k++ {
-		term := integrand(k * h)
-		sum += term
-		largest = math.Max(largest, term)
-		if term <= 1e-19*largest {
-			right = k
-			break
+	walk := func(h float64) (steps float64) {
+		previous := integrand(0)
+		for {
+			steps++
+			u := steps * h
+			term := integrand(u)
+			sum += term
+			largest = math.Max(largest, term)
+			if term <= 1e-19*largest && term <= previous && (largest > 0 || df*(u-math.Expm1(2*u)/2) < -750) {
+				return steps
+			}
+			previous = term
 		}
 	}
-	previous := sum
-	for k := 1.0; ; k++ {
-		term := integrand(-k * h)
-		sum += term
-		// Far out the integrand may be zero at S = 1 and rise to the left first.
-		largest = math.Max(largest, term)
-		if term <= 1e-19*largest && term <= previous && (largest > 0 || df*k*h > 750) {
-			left = k
-			break
-		}
-		previous = term
-	}
+	right := walk(h)
+	left := walk(-h)
 	for range 12 {
 		var between float64
 		for k := -left; k < right; k++ {
