@@ -394,6 +394,9 @@ func blocks(of [][]int32, treatments int) (block, treatment Factor) {
 func TestMillionRows(t *testing.T) {
 	n := 1_000_000
 	r := rand.New(rand.NewPCG(7, 8))
+	if testing.Short() {
+		t.Skip("a million rows")
+	}
 	f, g := random(r, n, 1000), random(r, n, 500_000)
 	start := time.Now()
 	Infimum(f, g)
