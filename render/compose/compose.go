@@ -23,10 +23,10 @@ import (
 	"penwright/render/doc"
 )
 
-// Source is a template or a Markdown text. Name is what templates call it by and what
-// messages call it.
+// Source is a template or a Markdown text. Name is what templates call it by; messages
+// call it by File, or by Name where File is empty.
 type Source struct {
-	Name, Text string
+	Name, File, Text string
 }
 
 // Text is a composed text: its blocks, and the footnotes that they call by their place
@@ -170,10 +170,13 @@ func newFile(s Source) (*file, diag.List) {
 		list.Add(diag.Diagnostic{Pos: pos, Severity: diag.Error, Code: code, Message: message, Hint: hint})
 		return nil, list
 	}
-	if len(s.Text) > maxSource {
-		return refuse(diag.Pos{File: s.Name}, CodeTooMuch, fmt.Sprintf("%d bytes of text, more than %d", len(s.Text), maxSource), "")
+	if s.File == "" {
+		s.File = s.Name
 	}
-	f := &file{name: s.Name, text: s.Text, lines: []int{0}}
+	if len(s.Text) > maxSource {
+		return refuse(diag.Pos{File: s.File}, CodeTooMuch, fmt.Sprintf("%d bytes of text, more than %d", len(s.Text), maxSource), "")
+	}
+	f := &file{name: s.File, text: s.Text, lines: []int{0}}
 	if rest, ok := strings.CutPrefix(f.text, "\uFEFF"); ok {
 		f.text, f.bom = rest, len("\uFEFF")
 	}

@@ -113,7 +113,7 @@ func (p *program) parse(s Source) {
 	tree.Mode = parse.SkipFuncCheck
 	set := map[string]*parse.Tree{}
 	if _, err := tree.Parse(f.text, "", "", set, nil); err != nil {
-		p.list.Add(syntaxError(f, err))
+		p.list.Add(syntaxError(f, s.Name, err))
 		return
 	}
 	names := make([]string, 0, len(set))
@@ -134,8 +134,8 @@ func (p *program) parse(s Source) {
 }
 
 // syntaxError makes a diagnostic of an error of the parser, which knows only the line.
-func syntaxError(f *file, err error) diag.Diagnostic {
-	line, message := location(err.Error(), f.name)
+func syntaxError(f *file, source string, err error) diag.Diagnostic {
+	line, message := location(err.Error(), source)
 	message, _, _ = strings.Cut(message, "\n")
 	d := diag.Diagnostic{
 		Pos:      diag.Pos{File: f.name, Line: line},

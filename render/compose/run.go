@@ -110,7 +110,7 @@ func (r *runner) executionError(err error) diag.Diagnostic {
 		if err1 != nil || err2 != nil {
 			continue
 		}
-		d.Pos = diag.Pos{File: name, Line: line, Col: col + 1} // text/template counts columns from 0
+		d.Pos = diag.Pos{File: r.files[name].name, Line: line, Col: col + 1} // text/template counts columns from 0
 		d.Message = parts[2]
 		if i := strings.LastIndex(d.Message, ">: "); i >= 0 {
 			d.Message = d.Message[i+len(">: "):]

@@ -207,3 +207,40 @@ func TestMapperLeavesItsSourceAlone(t *testing.T) {
 		t.Errorf("Size = %d", size)
 	}
 }
+
+func TestSplitDecimal(t *testing.T) {
+	tests := []struct{ in, head, tail string }{
+		{"0.842", "0", ".842"},
+		{"12", "12", ""},
+		{"\u221210.9", "\u221210", ".9"},
+		{"< 0.001", "< 0", ".001"},
+		{".5", "", ".5"},
+		{"< .001", "< ", ".001"},
+		{"0.84 (0.80–0.88)", "0", ".84 (0.80–0.88)"},
+		{"5.", "5.", ""},
+		{"P. 3", "P. 3", ""},
+		{"v.3", "v.3", ""},
+		{"", "", ""},
+		{"–", "–", ""},
+	}
+	for _, test := range tests {
+		if head, tail := doc.SplitDecimal(test.in); head != test.head || tail != test.tail {
+			t.Errorf("SplitDecimal(%q) = %q, %q", test.in, head, tail)
+		}
+	}
+}
+
+func TestClean(t *testing.T) {
+	tests := []struct{ in, want string }{
+		{"plain µ ⁻¹ 漢 \U0001F416", "plain µ ⁻¹ 漢 \U0001F416"},
+		{"a\x00b\x1b[0m\r\n\tc", "ab[0m\n\tc"},
+		{"a\xffb", "a\uFFFDb"},
+		{"\u202eabc\u2069\ufeff\u200f", "abc"},
+		{"\u0085\ufffe", ""},
+	}
+	for _, test := range tests {
+		if got := doc.Clean(test.in); got != test.want {
+			t.Errorf("Clean(%q) = %q, want %q", test.in, got, test.want)
+		}
+	}
+}
