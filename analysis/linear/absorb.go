@@ -218,7 +218,7 @@ func (f *Fit) prepareLocal() {
 		}
 	}
 	f.local = l
-	f.level = f.unsupported < f.absorb.N
+	f.based = f.unsupported < f.absorb.N
 }
 
 // trendFunctional gives the powers of scaled time at which a curve enters a mean.
@@ -266,15 +266,14 @@ func code(dst []float64, level int32, n int) {
 	dst[level] = 1
 }
 
-// termCodes writes the products of the effect codes of a term at the given levels, one for
-// each factor of the term, the last factor running fastest.
-func (m *Model) termCodes(dst []float64, t int, level func(v int) int32) {
+// termCodes writes the products of the effect codes of a term, one for each of its factors,
+// the last factor running fastest; level holds the level of every treatment factor.
+func (m *Model) termCodes(dst []float64, t int, level []int32) {
 	dst[0] = 1
 	have := 1
 	for _, v := range m.Terms[t] {
 		n := m.Factors[v].N
-		w := n - 1
-		l := int(level(v))
+		w, l := n-1, int(level[v])
 		for i := have - 1; i >= 0; i-- {
 			x := dst[i]
 			part := dst[i*w : (i+1)*w]
@@ -294,7 +293,11 @@ func (m *Model) termCodes(dst []float64, t int, level func(v int) int32) {
 // fill writes the columns of a row.
 func (f *Fit) fill(x []float64, row int32) {
 	m := &f.model
-	for _, b := range f.blocks {
+	for v := range m.Factors {
+		f.level[v] = m.Factors[v].Level[row]
+	}
+	for i := range f.blocks {
+		b := &f.blocks[i]
 		part := x[b.from:b.to]
 		if len(part) == 0 {
 			continue
@@ -306,10 +309,10 @@ func (f *Fit) fill(x []float64, row int32) {
 		case Covariate:
 			part[0] = f.covariate(b.index, row)
 		case Term:
-			m.termCodes(part, b.index, func(v int) int32 { return m.Factors[v].Level[row] })
+			m.termCodes(part, b.index, f.level)
 		case slope:
 			pair := f.extra[b.index]
-			m.termCodes(part, pair[1], func(v int) int32 { return m.Factors[v].Level[row] })
+			m.termCodes(part, pair[1], f.level)
 			z := f.covariate(pair[0], row)
 			for j := range part {
 				part[j] *= z

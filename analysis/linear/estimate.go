@@ -39,7 +39,7 @@ func (f *Fit) Means(term int) *Estimates {
 		copy(row, f.nuisance)
 		for _, b := range f.blocks {
 			if b.kind == Term && b.to > b.from && within(m.Terms[b.index], t) {
-				m.termCodes(row[b.from:b.to], b.index, func(v int) int32 { return level[v] })
+				m.termCodes(row[b.from:b.to], b.index, level)
 			}
 		}
 		for j := range row {
@@ -138,7 +138,7 @@ func (f *Fit) estimates(rows []float64, k int, level float64) *Estimates {
 	}
 	for i := range k {
 		w := e.w[i*len(f.pivot) : (i+1)*len(f.pivot)]
-		e.Estimable[i] = f.express(w, rows[i*f.p:(i+1)*f.p]) && (level == 0 || f.level)
+		e.Estimable[i] = f.express(w, rows[i*f.p:(i+1)*f.p]) && (level == 0 || f.based)
 		if !e.Estimable[i] {
 			clear(w)
 			e.Value[i] = math.NaN()
@@ -223,7 +223,7 @@ func (e *Estimates) Contrast(w []float64) (value, variance float64, estimable bo
 	row, level := e.combine(w)
 	f := e.fit
 	x := make([]float64, len(f.pivot))
-	if !f.express(x, row) || level != 0 && !f.level {
+	if !f.express(x, row) || level != 0 && !f.based {
 		return math.NaN(), math.NaN(), false
 	}
 	v := level * level * f.uu
@@ -250,7 +250,7 @@ func (e *Estimates) combine(w []float64) (row []float64, level float64) {
 			row[j] += a * v
 		}
 	}
-	if math.Abs(level) <= 1e-12*size { // a contrast, up to rounding of its weights
+	if math.Abs(level) <= 1e-8*size { // a contrast, up to rounding of its weights
 		level = 0
 	}
 	return row, level

@@ -101,6 +101,7 @@ type Fit struct {
 	blocks []block // columns, in order
 	p      int
 	places []place  // of each covariate
+	level  []int32  // of each treatment factor, room for fill
 	extra  [][2]int // covariate k × term, columns beside the model's, for EqualSlopes
 
 	at     float64 // y is held as y − at
@@ -120,7 +121,7 @@ type Fit struct {
 	ux          []float64
 	uy, uu      float64
 	nuisance    []float64 // part of l in the columns of the nuisance factors
-	level       bool      // some absorbed class has an estimable level
+	based       bool      // some absorbed class has an estimable level
 	unsupported int
 }
 
@@ -171,7 +172,7 @@ func (m Model) fit(extra [][2]int) (*Fit, error) {
 			}
 		}
 	}
-	f := &Fit{N: n, model: m, extra: extra}
+	f := &Fit{N: n, model: m, extra: extra, level: make([]int32, len(m.Factors))}
 	f.chooseAbsorbed()
 	f.layColumns()
 	if f.p > MaxColumns {

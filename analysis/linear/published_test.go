@@ -321,10 +321,11 @@ func TestIncompleteBlocks(t *testing.T) {
 func TestLargeCommonPart(t *testing.T) {
 	for _, c := range []struct{ base, tol float64 }{{1, 1e-13}, {1e6, 1e-9}, {1e12, 1e-3}} {
 		var y []float64
-		for _, centre := range []float64{.4, .3, .5, .3, .5, .3, .5, .3, .5} {
-			y = append(y, c.base+centre)
+		for _, tenths := range []float64{4, 3, 5, 3, 5, 3, 5, 3, 5} {
+			at := c.base*10 + tenths
+			y = append(y, at/10)
 			for range 10 {
-				y = append(y, c.base+centre-.1, c.base+centre+.1)
+				y = append(y, (at-1)/10, (at+1)/10)
 			}
 		}
 		m := Model{Y: y, Factors: []factor.Factor{grid(189, 21, 9)}, Terms: [][]int{{0}}}

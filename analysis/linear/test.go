@@ -162,14 +162,14 @@ func (f *Fit) hypothesis(l [][]float64) Test {
 }
 
 // Hypothesis tests that the contrasts, one list of weights over the functions each, are
-// all zero. Contrasts that depend on others add nothing. Each list must sum to zero where
-// the functions are means.
+// all zero. Contrasts that depend on others add nothing. The test is not estimable where one
+// of them is not, or where the weights of a list over means do not sum to zero.
 func (e *Estimates) Hypothesis(contrasts [][]float64) Test {
 	rows := make([][]float64, len(contrasts))
 	for i, w := range contrasts {
 		row, level := e.combine(w)
 		if level != 0 {
-			panic("linear: weights of a contrast of means do not sum to zero")
+			return Test{Kind: Term, Lost: len(contrasts), SS: math.NaN()}
 		}
 		rows[i] = row
 	}
