@@ -580,6 +580,9 @@ func (s *Structure) share(u int) []float64 {
 // Stratum is the unit whose stratum holds the term.
 func (s *Structure) Stratum(term int) int { return s.stratum[term] }
 
+// Random tells whether a unit counts as random in the variance of means.
+func (s *Structure) Random(unit int) bool { return s.random[unit] }
+
 // DF is the degrees of freedom of the stratum of a unit.
 func (s *Structure) DF(unit int) int { return s.df[unit] }
 
