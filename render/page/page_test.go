@@ -482,7 +482,7 @@ func TestDiagnostics(t *testing.T) {
 }
 
 func TestRandomDocuments(t *testing.T) {
-	n := uint64(250)
+	n := uint64(150)
 	if testing.Short() {
 		n = 60
 	}

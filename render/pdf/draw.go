@@ -7,7 +7,6 @@ import (
 	"math"
 	"strconv"
 	"time"
-	"unicode/utf16"
 
 	"github.com/jung-kurt/gofpdf"
 
@@ -246,7 +245,7 @@ func (p *pen) text(o page.Text) {
 	}
 	if o.Actual != "" {
 		p.b = append(p.b, "/Span <</ActualText "...)
-		p.b = append(p.b, utf16Hex(o.Actual)...)
+		p.b = append(p.b, textString(o.Actual)...)
 		p.op(">> BDC")
 	}
 	p.setFill(o.Colour)
@@ -287,14 +286,6 @@ func (p *pen) show(f *face.Face, text string, space float64) {
 		before = r
 	}
 	p.b = append(p.b, ">] TJ"...)
-}
-
-func utf16Hex(s string) string {
-	b := []byte("<FEFF")
-	for _, u := range utf16.Encode([]rune(s)) {
-		b = append(b, fmt.Sprintf("%04X", u)...)
-	}
-	return string(append(b, '>'))
 }
 
 // picture replays a drawing.

@@ -4,6 +4,7 @@ import (
 	"bytes"
 	"compress/zlib"
 	"crypto/md5"
+	"encoding/binary"
 	"encoding/hex"
 	"encoding/xml"
 	"errors"
@@ -12,6 +13,7 @@ import (
 	"sort"
 	"strconv"
 	"strings"
+	"unicode/utf16"
 	"unicode/utf8"
 
 	"penwright/render/face"
@@ -171,11 +173,12 @@ func (f *finisher) fonts(used map[string]*runeSet) error {
 
 // subsetName is the name of a face after the six letters that mark a subset.
 func subsetName(name string, set *runeSet) string {
-	sum := md5.New()
+	var all []byte
 	for _, v := range set {
-		fmt.Fprintf(sum, "%x,", v)
+		all = binary.BigEndian.AppendUint64(all, v)
 	}
-	tag := sum.Sum([]byte(nil))[:6]
+	sum := md5.Sum(all)
+	tag := sum[:6]
 	for i := range tag {
 		tag[i] = 'A' + tag[i]%26
 	}
@@ -287,12 +290,38 @@ func literal(s string) string {
 // textString writes a string for a reader's eyes.
 func textString(s string) string {
 	s = strings.ToValidUTF8(s, "\uFFFD")
-	for i := 0; i < len(s); i++ {
-		if c := s[i]; c < 0x20 || c >= 0x7F {
-			return utf16Hex(s)
-		}
+	if b := encoded(s); b != s {
+		return "<" + strings.ToUpper(hex.EncodeToString([]byte(b))) + ">"
 	}
 	return literal(s)
+}
+
+// encoded gives the bytes that textString writes.
+func encoded(s string) string {
+	for i := 0; i < len(s); i++ {
+		if c := s[i]; c < 0x20 || c >= 0x7F {
+			b := []byte{0xFE, 0xFF}
+			for _, u := range utf16.Encode([]rune(s)) {
+				b = append(b, byte(u>>8), byte(u))
+			}
+			return string(b)
+		}
+	}
+	return s
+}
+
+// key is what a file goes by in the tree of names. Readers look it up by halving and do
+// not agree on the order of letters beyond ASCII, so there are none in it.
+func key(s string) string {
+	var b strings.Builder
+	for i := 0; i < len(s); i++ {
+		if c := s[i]; c < 0x20 || c >= 0x7F || c == '%' {
+			fmt.Fprintf(&b, "%%%02X", c)
+		} else {
+			b.WriteByte(c)
+		}
+	}
+	return b.String()
 }
 
 // name writes a name, its odd bytes as codes.
@@ -372,7 +401,7 @@ func (f *finisher) outline() int {
 // attach writes the files that ride along.
 func (f *finisher) attach(files []Attachment) error {
 	sorted := slices.Clone(files)
-	slices.SortStableFunc(sorted, func(a, b Attachment) int { return strings.Compare(a.Name, b.Name) })
+	slices.SortStableFunc(sorted, func(a, b Attachment) int { return strings.Compare(key(a.Name), key(b.Name)) })
 	for i, a := range sorted {
 		if a.Name == "" || !utf8.ValidString(a.Name) {
 			return fmt.Errorf("attaching %q: a file needs a name in UTF-8", a.Name)
@@ -459,7 +488,7 @@ func (f *finisher) root() error {
 	if len(f.files) > 0 {
 		c.WriteString("/Names <</EmbeddedFiles <</Names [")
 		for i, n := range f.files {
-			fmt.Fprintf(&c, "%s %d 0 R ", textString(f.names[i]), n)
+			fmt.Fprintf(&c, "%s %d 0 R ", literal(key(f.names[i])), n)
 		}
 		c.WriteString("]>>>>\n/AF [")
 		for _, n := range f.files {

@@ -7,7 +7,9 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"slices"
 	"strconv"
+	"strings"
 	"unicode/utf16"
 )
 
@@ -202,6 +204,7 @@ func (r *reader) attachments() ([]Attachment, error) {
 		}
 		out = append(out, a)
 	}
+	slices.SortFunc(out, func(a, b Attachment) int { return strings.Compare(a.Name, b.Name) })
 	return out, nil
 }
 
