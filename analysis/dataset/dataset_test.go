@@ -202,3 +202,208 @@ func TestRead(t *testing.T) {
 		})
 	}
 }
+
+// animalFiles is a folder of pens with many animals, as feeding trials of poultry have.
+func animalFiles(pens, animals int) fstest.MapFS {
+	var data strings.Builder
+	data.WriteString("block,pen,tag,initial_mass,final_mass\n")
+	tag := 0
+	for pen := range pens {
+		for a := range animals {
+			tag++
+			fmt.Fprintf(&data, "%d,%d,%d,%d.%d,%d.%02d\n", pen/10+1, pen%10+1, tag, 40+tag%7, tag%10, 2000+tag%311, a%100)
+		}
+	}
+	protocol := head + fmt.Sprintf(`[[factor]]
+name = "diet"
+levels = ["A", "B", "C", "D", "E"]
+[[unit]]
+name = "block"
+count = %d
+[[unit]]
+name = "pen"
+within = "block"
+count = 10
+animals = %d
+receives = ["diet"]
+[randomization]
+method = "by lot"
+[[covariate]]
+name = "initial_mass"
+[[response]]
+name = "final_mass"
+role = "primary"
+kind = "continuous"
+recorded_on = "pen"
+aggregate = "mean"
+range = [1000, 3000]
+covariates = ["initial_mass"]
+[[response]]
+name = "gain"
+kind = "continuous"
+recorded_on = "pen"
+aggregate = "mean"
+compute = "final_mass - initial_mass"
+[data]
+file = "data.csv"
+`, pens/10, animals)
+	var allotment strings.Builder
+	allotment.WriteString("block,pen,diet\n")
+	for pen := range pens {
+		fmt.Fprintf(&allotment, "%d,%d,%c\n", pen/10+1, pen%10+1, 'A'+pen%5)
+	}
+	return fstest.MapFS{"protocol.toml": {Data: []byte(protocol)}, "data.csv": {Data: []byte(data.String())}, "allotment.csv": {Data: []byte(allotment.String())}}
+}
+
+// TestManyAnimals reads 10⁵ animals in 1000 pens and compares the means with sums taken
+// while the file was written.
+func TestManyAnimals(t *testing.T) {
+	const pens, animals = 1000, 100
+	table, list := read(animalFiles(pens, animals))
+	if len(list) > 0 {
+		t.Fatal(list[0])
+	}
+	tag := 0
+	for pen := range pens {
+		final, initial := 0.0, 0.0
+		for a := range animals {
+			tag++
+			initial += float64(40+tag%7) + float64(tag%10)/10
+			final += float64(2000+tag%311) + float64(a%100)/100
+		}
+		r, g := table.Response("final_mass"), table.Response("gain")
+		if math.Abs(r.Value[pen]-final/animals) > 1e-9 || math.Abs(r.Covariates[0][pen]-initial/animals) > 1e-9 || math.Abs(g.Value[pen]-(final-initial)/animals) > 1e-9 {
+			t.Fatalf("pen %d: %v, %v, %v; want %v, %v, %v", pen, r.Value[pen], r.Covariates[0][pen], g.Value[pen], final/animals, initial/animals, (final-initial)/animals)
+		}
+		if o := r.Origin[pen]; int(o.First) != pen*animals+2 || int(o.Last) != pen*animals+animals+1 || r.Animals[pen] != animals {
+			t.Fatalf("pen %d stands in %v from %d", pen, o, r.Animals[pen])
+		}
+	}
+}
+
+// BenchmarkMillion reads 10⁶ animals in 10 000 pens.
+func BenchmarkMillion(b *testing.B) {
+	files := animalFiles(10_000, 100)
+	b.ReportAllocs()
+	for b.Loop() {
+		if _, list := read(files); len(list) > 0 {
+			b.Fatal(list[0])
+		}
+	}
+}
+
+// FuzzRead feeds data files to a protocol of many parts. Whatever the bytes, reading
+// must end, and everything said must lie inside its file.
+func FuzzRead(f *testing.F) {
+	names, err := filepath.Glob("testdata/*.txtar")
+	if err != nil {
+		f.Fatal(err)
+	}
+	for _, name := range names {
+		archive, err := txtar.ParseFile(name)
+		if err != nil {
+			f.Fatal(err)
+		}
+		for _, file := range archive.Files {
+			if file.Name == "data.csv" {
+				f.Add(file.Data)
+			}
+		}
+	}
+	protocol := head + `[animals]
+species = "pig"
+[[factor]]
+name = "diet"
+levels = [1, 2]
+[[unit]]
+name = "block"
+count = 2
+[[unit]]
+name = "pen"
+within = "block"
+count = 2
+animals = 3
+receives = ["diet"]
+[[repeated]]
+name = "week"
+on = "pen"
+at = [1, 2]
+[[covariate]]
+name = "mass"
+[[response]]
+name = "gain"
+kind = "continuous"
+role = "primary"
+range = [0, 100]
+repeated = "week"
+covariates = ["mass"]
+[[response]]
+name = "feed"
+kind = "continuous"
+recorded_on = "pen"
+aggregate = "ratio"
+compute = "gain / animal_days"
+[[response]]
+name = "y"
+kind = "count"
+recorded_on = "block"
+aggregate = "sum"
+over = "week"
+where = { pen = 1 }
+[data]
+file = "data.csv"
+date = "day"
+[[correction]]
+file = "data.csv"
+unit = { block = "1", pen = "2" }
+column = "gain"
+old = "5"
+new = "6"
+reason = "slip"
+on = 2026-04-01
+by = "A. Verrill"
+`
+	f.Add([]byte("block,pen,week,diet,mass,gain,y,day\n1,1,1,1,5,6,7,2026-03-03\n1,2,1,2,5,5,7,\n1,1,2,2,5,6,7.5,2026-03-03\n"))
+	f.Fuzz(func(t *testing.T, data []byte) {
+		table, list := read(fstest.MapFS{"protocol.toml": {Data: []byte(protocol)}, "data.csv": {Data: data}})
+		lines := strings.Split(strings.ReplaceAll(string(data), "\r\n", "\n"), "\n")
+		if !strings.Contains(string(data), "\n") {
+			lines = strings.Split(string(data), "\r")
+		}
+		for _, d := range list {
+			if d.Message == "" || d.Code == "" {
+				t.Errorf("%+v", d)
+			}
+			if d.Pos.File != "data.csv" || d.Pos.Line == 0 || !utf8Text(data) {
+				continue
+			}
+			if d.Pos.Line > len(lines) || d.Pos.Col > len(lines[d.Pos.Line-1])+2 {
+				t.Errorf("%s lies outside the file: %s", d.Pos, d.Message)
+			}
+		}
+		if table == nil {
+			return
+		}
+		for i := range table.Responses {
+			r := &table.Responses[i]
+			for row, v := range r.Value {
+				if (r.Status[row] == Used) == (math.IsNaN(v) || r.Reason[row] != "") {
+					t.Errorf("%s, row %d: %v with status %d and reason %q", r.Protocol.Name, row, v, r.Status[row], r.Reason[row])
+				}
+				if math.IsInf(v, 0) {
+					t.Errorf("%s, row %d: %v", r.Protocol.Name, row, v)
+				}
+			}
+		}
+	})
+}
+
+// utf8Text tells whether lines and columns of a file can be counted in its bytes.
+func utf8Text(data []byte) bool {
+	for _, b := range data {
+		if b == 0 || b >= 0x80 || b == '\r' {
+			return false
+		}
+	}
+	return true
+}

@@ -29,8 +29,10 @@ type frame struct {
 	columns []*values          // numeric columns that are used
 	times   map[string][]int32 // by repeated name: index of its time, for each row; -1 unknown
 	wheres  map[string][]bool  // by condition: whether the row meets it
-	overs   map[string][]int32 // by column: number of its text
+	overs   map[string][]int32 // by column of periods: number of its text
 	day     []int32            // day of recording, 0 unknown; nil without such a column
+
+	overNames map[string][]string // those texts
 
 	rows []int32 // instance of unit, for each accepted row
 	line []int32
@@ -100,7 +102,7 @@ func (r *reader) openFrame(path, key string, required bool) *frame {
 		return nil
 	}
 	f := &frame{at: len(r.frames), sheet: s, binding: b, unit: b.Unit, from: key, used: map[int]bool{},
-		times: map[string][]int32{}, wheres: map[string][]bool{}, overs: map[string][]int32{}}
+		times: map[string][]int32{}, wheres: map[string][]bool{}, overs: map[string][]int32{}, overNames: map[string][]string{}}
 	for _, c := range allot.Columns(r.plan, s.Headings) {
 		if c >= 0 {
 			f.used[c] = true
@@ -334,7 +336,9 @@ func (r *reader) load(f *frame) {
 			k, ok := o.number[text]
 			if !ok {
 				k = int32(len(o.number))
-				o.number[strings.Clone(text)] = k
+				text = strings.Clone(text)
+				o.number[text] = k
+				f.overNames[o.name] = append(f.overNames[o.name], text)
 			}
 			f.overs[o.name] = append(f.overs[o.name], k)
 		}
@@ -434,7 +438,7 @@ func (r *reader) settle() {
 		case c.line == 0:
 			r.fail(key+".unit", BadCorrection, "", "%s has no row for %s", p.File, unitText(p.Unit))
 		default:
-			r.faults.Add(diag.Diagnostic{Pos: r.plan.Protocol.Pos(key + ".old"), Key: key + ".old", Code: BadCorrection,
+			r.faults.Add(diag.Diagnostic{Pos: r.plan.Protocol.ValuePos(key + ".old"), Key: key + ".old", Code: BadCorrection,
 				Message: fmt.Sprintf("%s of %s is %q in %s, not %q", p.Column, unitText(p.Unit), c.met, p.File, p.Old),
 				Hint:    "old must be what stands in the file", Related: []diag.Related{{Pos: c.pos, Message: "the cell"}}})
 		}

@@ -181,9 +181,9 @@ func (r *reader) unit(name string) int {
 	return slices.IndexFunc(r.plan.Units, func(u layout.Unit) bool { return u.Name == name })
 }
 
-// fail reports an error at a key of the protocol.
+// fail reports an error at the value of a key of the protocol.
 func (r *reader) fail(key, code, hint, format string, args ...any) {
-	r.faults.Add(diag.Diagnostic{Pos: r.plan.Protocol.Pos(key), Key: key, Code: code, Message: fmt.Sprintf(format, args...), Hint: hint})
+	r.faults.Add(diag.Diagnostic{Pos: r.plan.Protocol.ValuePos(key), Key: key, Code: code, Message: fmt.Sprintf(format, args...), Hint: hint})
 }
 
 // variable is a name that a response is computed from, and where its numbers stand.
@@ -394,7 +394,7 @@ func (r *reader) excluded() {
 			continue
 		}
 		if unit, instance, ok := r.locate(p.Unit, key+".unit"); ok {
-			r.exclusions.add(unit, instance, &exclusion{index: k, p: p, reason: "excluded: " + strings.TrimSpace(p.Reason)})
+			r.exclusions.add(unit, instance, &exclusion{index: k, p: p, reason: strings.TrimSpace(p.Reason)})
 		}
 	}
 }

@@ -184,7 +184,7 @@ func (r *reader) firstOf(j *job, g *slots, once map[[2]int32]int32, overs []int3
 			once[key] = f.line[k]
 			return false
 		}
-		what, hint = " and one "+p.Over, "if the rows are of smaller units or animals, name them as a [[unit]]"
+		what, hint = ", "+p.Over+" "+f.overNames[p.Over][overs[k]], "if the rows are of smaller units or animals, name them as a [[unit]]"
 	case p.Aggregate != "" && f.unit == j.unit:
 		return false // rows of animals that the plan does not name
 	case p.Aggregate != "":
@@ -528,8 +528,6 @@ func kindFault(p *protocol.Response, v float64) (message, hint string) {
 		return fmt.Sprintf("%s is %v, not 0 or 1", p.Name, v), "write 1 or 0"
 	case p.Kind == "proportion" && p.Total != "" && (v < 0 || !whole):
 		return fmt.Sprintf("%s counts out of %s, but is %v", p.Name, p.Total, v), "write a whole number from 0"
-	case p.Kind == "proportion" && p.Total == "" && (v < 0 || v > 1):
-		return fmt.Sprintf("%s is a proportion, which %v is not", p.Name, v), "write it between 0 and 1, not in percent"
 	case p.Kind == "time to event" && v < 0:
 		return fmt.Sprintf("%s is a time, which %v is not", p.Name, v), "count from the start of the trial"
 	}
