@@ -182,7 +182,7 @@ const (
 	widestCell = 78
 	pad        = 3
 	keySize    = 4   // least size of a key
-	over       = 1.5 // between the label of a box and the box
+	headGap    = 1.5 // between the label of a box and the box
 )
 
 // choose finds the largest cells with which the boxes are no higher than most.
@@ -250,7 +250,7 @@ func (p *mapper) place(b *Box, most float64, depth int) *arranged {
 			rim = pad * min(p.gap/9, 1)
 		}
 		if p.label > 0 && b.Label != "" {
-			a.head = p.label*leading + over
+			a.head = p.label*leading + headGap
 		}
 	}
 	inside := most - 2*rim
@@ -354,7 +354,7 @@ func (p *mapper) draw(c *canvas, a *arranged, x, y float64) {
 			c.text(x, y+a.label*ascent, left, st, s)
 		}
 		if a.head > 0 {
-			frameTop += a.label*leading + over
+			frameTop += a.label*leading + headGap
 		}
 	}
 	if len(b.Boxes) > 0 && b.Label != "" && len(b.Across) == 0 && p.gap > 2 {
