@@ -223,9 +223,15 @@ func (m *Means) Coefficients(w []float64) []float64 {
 	return out
 }
 
-// Cov is the covariance of two means, NaN where it draws on a stratum without error.
+// Cov is the covariance of two means, NaN where it draws on a stratum without error. It
+// may be negative, unlike a variance.
 func (m *Means) Cov(i, j int) float64 {
-	v, _ := m.a.Combine(m.coefficients(i, j))
+	var v float64
+	for u, c := range m.coefficients(i, j) {
+		if c != 0 {
+			v += c * m.a.Strata[u].ErrorMS()
+		}
+	}
 	return v
 }
 
