@@ -282,7 +282,7 @@ func randomModel(r *rand.Rand) Model {
 // cells, confounded factors, collinear covariates and repeated rows.
 func TestAgainstGeneralizedInverse(t *testing.T) {
 	estimable, tested := 0, 0
-	for seed := range uint64(300) {
+	for seed := range uint64(160) {
 		r := rand.New(rand.NewPCG(seed, 1))
 		m := randomModel(r)
 		t.Run(fmt.Sprint(seed), func(t *testing.T) {
@@ -446,7 +446,7 @@ func TestAgainstGeneralizedInverse(t *testing.T) {
 			}
 		})
 	}
-	if estimable < 500 || tested < 500 {
+	if estimable < 250 || tested < 250 {
 		t.Errorf("too little tested: %d, %d", estimable, tested)
 	}
 }
