@@ -15,8 +15,8 @@ const deepest = 100
 // box is a piece of a page that is never broken: a line, a row, a picture. The
 // operations are relative to the left edge of the column and the top of the box.
 type box struct {
-	gap, height float64
-	below       float64 // space after it, which may be lost at the foot of a page
+	gap, height float64 // gap: space above
+	below       float64 // space below; of two spaces that meet the larger counts
 	keep        bool    // stands on the same page as the box after it
 	ops         []Op
 	notes       []int // footnotes called in it
@@ -443,7 +443,7 @@ func (s *setter) list(l doc.List, w where) []box {
 		if !l.Tight {
 			inner[0].gap = paragraphGap - 1
 		}
-		if i == 0 {
+		if i == 0 && (w.bullets == 0 || !l.Tight) {
 			inner[0].gap = paragraphGap - 1
 		}
 		st := serif(w.size)
@@ -487,7 +487,9 @@ func (s *setter) code(c doc.Code, w where) []box {
 			boxes = append(boxes, lineBoxes([]line{{atoms: []atom{a}}}, st, codeLead, in, w.x+pad, el)...)
 		}
 	}
-	return framed(boxes, in.within, 4, 4, paragraphGap+2)
+	boxes = framed(boxes, in.within, 4, 4, paragraphGap+2)
+	space(boxes, paragraphGap+2, paragraphGap+2)
+	return boxes
 }
 
 // head cuts what fits on a line of so many runes from s, at a space if there is one
@@ -570,7 +572,7 @@ func (s *setter) aside(a doc.Aside, w where) []box {
 	}
 	boxes = framed(append(boxes, inner...), in.within, padY, padY, 10)
 	if len(boxes) > 0 {
-		boxes[len(boxes)-1].below = 5
+		boxes[len(boxes)-1].below = 11
 	}
 	return boxes
 }
@@ -642,7 +644,7 @@ func (s *setter) contents(w where) []box {
 		return nil
 	}
 	boxes = append(head, boxes...)
-	boxes[len(boxes)-1].below = 8
+	boxes[len(boxes)-1].below = 12
 	return boxes
 }
 
@@ -706,7 +708,7 @@ func (s *setter) figure(f doc.Figure, w where, highest float64) []box {
 			}
 			lines[0].anchors = anchors(f.ID)
 			lines[len(lines)-1].keep = len(caption) > 0
-			space(caption, 5, floatGap-4)
+			space(caption, 5, floatGap)
 			return append(lines, caption...)
 		}
 	}
@@ -716,9 +718,9 @@ func (s *setter) figure(f doc.Figure, w where, highest float64) []box {
 	}
 	if len(caption) == 0 {
 		picture.keep = false
-		picture.below = floatGap - 4
+		picture.below = floatGap
 	}
-	space(caption, 7, floatGap-6)
+	space(caption, 7, floatGap)
 	return append([]box{picture}, caption...)
 }
 

@@ -27,7 +27,8 @@ type pager struct {
 	s       *setter
 	sheets  []*sheet
 	cur     *sheet
-	y       float64 // of the next box
+	y       float64 // the foot of the last box
+	below   float64 // space that wants to be below it
 	used    float64 // height taken by footnotes at the foot
 	called  []bool  // footnotes already on a page
 	carry   []*box  // lines of footnotes that are left over from the page before
@@ -113,7 +114,7 @@ func total(boxes []box) float64 {
 	for i, b := range boxes {
 		sum += b.height
 		if i > 0 {
-			sum += b.gap + boxes[i-1].below
+			sum += max(b.gap, boxes[i-1].below)
 		}
 	}
 	return sum
@@ -123,7 +124,7 @@ func total(boxes []box) float64 {
 func (p *pager) fits(boxes []box) bool {
 	height := total(boxes)
 	if len(p.cur.placed) > 0 && len(boxes) > 0 {
-		height += boxes[0].gap
+		height += max(boxes[0].gap, p.below)
 	}
 	return height+p.noteCost(boxes) <= p.room()+0.01
 }
@@ -195,10 +196,11 @@ func (p *pager) place(boxes []box) {
 	for i := range boxes {
 		b := &boxes[i]
 		if len(p.cur.placed) > 0 {
-			p.y += b.gap
+			p.y += max(b.gap, p.below)
 		}
 		p.cur.placed = append(p.cur.placed, placed{b, p.y})
-		p.y += b.height + b.below
+		p.y += b.height
+		p.below = b.below
 		for _, n := range b.notes {
 			p.call(n)
 		}
@@ -244,7 +246,7 @@ func (p *pager) settle(most float64) {
 func (p *pager) open(turned bool) {
 	p.cur = &sheet{turned: turned}
 	p.sheets = append(p.sheets, p.cur)
-	p.y, p.used = 0, 0
+	p.y, p.below, p.used = 0, 0, 0
 	p.settle(p.s.pageHeight(turned) / 2)
 }
 

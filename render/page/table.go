@@ -391,7 +391,7 @@ func (s *setter) setTable(t doc.Table, g *grid, f form, w where, pos diag.Pos) [
 	if len(boxes) == 0 {
 		return nil
 	}
-	boxes[len(boxes)-1].below = floatGap - 5
+	boxes[len(boxes)-1].below = floatGap
 	boxes[0].anchors = append(boxes[0].anchors, anchors(t.ID)...)
 	return boxes
 }
