@@ -51,7 +51,7 @@ func (d *Dunnett) Upper(t, df float64) float64 {
 	case math.IsInf(t, 1):
 		return 0
 	}
-	return studentizedUpper(t, df, d.tail.at)
+	return studentizedUpper(t, df, 0, d.tail.at)
 }
 
 // Quantile returns t with P(max > t) = upperP.

@@ -17,7 +17,7 @@ func MaximumModulusUpper(t float64, k int, df float64) float64 {
 	case math.IsInf(t, 1):
 		return 0
 	}
-	return studentizedUpper(t, df, func(w float64) float64 {
+	return studentizedUpper(t, df, 0, func(w float64) float64 {
 		return -math.Expm1(float64(k) * math.Log1p(-math.Erfc(w/math.Sqrt2)))
 	})
 }

@@ -20,7 +20,7 @@ func NoncentralTUpper(t, df, delta float64) float64 {
 	case math.IsInf(t, -1):
 		return 1
 	}
-	return studentizedUpper(t, df, func(w float64) float64 { return NormalUpper(w - delta) })
+	return studentizedUpper(t, df, delta, func(w float64) float64 { return NormalUpper(w - delta) })
 }
 
 // NoncentralChiSquaredUpper returns P(χ′² > x) on df degrees of freedom with noncentrality

@@ -111,9 +111,9 @@ func TestNoncentralFByIntegration(t *testing.T) {
 	for _, tt := range []struct{ f, d1, d2, lambda float64 }{
 		{3, 4, 20, 12}, {50, 2, 9, 30}, {.02, 3, 12, 40}, {1200, 8, 30, 10000}, {9000, 8, 30, 10000}, {1e-3, 5, 400, 200}, {40, 20, 1000, 10}, {.9, 40, 1e5, 3},
 	} {
-		upper := studentizedUpper(1, tt.d2, func(s float64) float64 { return NoncentralChiSquaredUpper(tt.d1*tt.f*s*s, tt.d1, tt.lambda) })
+		upper := studentizedUpper(1, tt.d2, 0, func(s float64) float64 { return NoncentralChiSquaredUpper(tt.d1*tt.f*s*s, tt.d1, tt.lambda) })
 		needDigits(t, "upper", NoncentralFUpper(tt.f, tt.d1, tt.d2, tt.lambda), upper, 10)
-		lower := studentizedUpper(1, tt.d2, func(s float64) float64 { return NoncentralChiSquaredLower(tt.d1*tt.f*s*s, tt.d1, tt.lambda) })
+		lower := studentizedUpper(1, tt.d2, 0, func(s float64) float64 { return NoncentralChiSquaredLower(tt.d1*tt.f*s*s, tt.d1, tt.lambda) })
 		needDigits(t, "lower", NoncentralFLower(tt.f, tt.d1, tt.d2, tt.lambda), lower, 10)
 	}
 }

@@ -28,7 +28,7 @@ func (d *StudentizedRange) Upper(q, df float64) float64 {
 	case math.IsInf(q, 1):
 		return 0
 	}
-	return studentizedUpper(q, df, d.tail.at)
+	return studentizedUpper(q, df, 0, d.tail.at)
 }
 
 // Quantile returns q with P(Q > q) = upperP.

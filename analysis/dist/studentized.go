@@ -14,31 +14,35 @@ import (
 //
 // By the trapezoidal rule in u: the integrand is analytic, falls off like eᵘ·ᵈᶠ to
 // the left and doubly exponentially to the right, so the error falls as exp(−c/h).
-// The step is halved until two sums agree to 1e-10, when the second is good to
-// about the square of that.
-func studentizedUpper(q, df float64, tail func(w float64) float64) float64 {
+// The step is halved until two sums agree to 2e-10, when the second is good to
+// about the square of that. M is about shift, beyond which its tail falls like
+// that of a normal variable or slower; shift only says where to start.
+func studentizedUpper(q, df, shift float64, tail func(w float64) float64) float64 {
 	// Beyond this the mixture is the tail itself, to 1e-9 relative at q = 15.
 	if df > 1e13 {
 		return tail(q)
 	}
 	lnPeak := 0.5*math.Log(df/math.Pi) - stirling(df/2)
+	exponent := func(u float64) float64 { return df * (u - math.Expm1(2*u)/2) }
 	integrand := func(u float64) float64 {
-		return math.Exp(lnPeak+df*(u-math.Expm1(2*u)/2)) * tail(q*math.Exp(u))
+		return math.Exp(lnPeak+exponent(u)) * tail(q*math.Exp(u))
 	}
-	// The peak of f has standard deviation 1/√(2df) in u. Far out the whole integrand may be
-	// zero at u = 0 and have its peak to one side: walk until it has been passed.
+	start := math.Log(likelyRoot(q, df, shift))
+	// The peak of f has standard deviation 1/√(2df) in u.
 	h := math.Min(0.2, 0.95/math.Sqrt(2*df))
-	sum := integrand(0)
-	largest := sum
+	first := integrand(start)
+	sum, largest := first, first
+	// The integrand has one peak. Walk each way until it has been passed; far out it may be
+	// zero for a while before it rises.
 	walk := func(h float64) (steps float64) {
-		previous := integrand(0)
+		previous := first
 		for {
 			steps++
-			u := steps * h
+			u := start + steps*h
 			term := integrand(u)
 			sum += term
 			largest = math.Max(largest, term)
-			if term <= 1e-19*largest && term <= previous && (largest > 0 || df*(u-math.Expm1(2*u)/2) < -750) {
+			if term <= 1e-19*largest && term <= previous && (largest > 0 || exponent(u) < -750) {
 				return steps
 			}
 			previous = term
@@ -49,7 +53,7 @@ func studentizedUpper(q, df float64, tail func(w float64) float64) float64 {
 	for range 12 {
 		var between float64
 		for k := -left; k < right; k++ {
-			between += integrand((k + 0.5) * h)
+			between += integrand(start + (k+0.5)*h)
 		}
 		agree := math.Abs(between-sum) <= 2e-10*sum
 		sum += between
@@ -61,6 +65,20 @@ func studentizedUpper(q, df float64, tail func(w float64) float64) float64 {
 		}
 	}
 	return math.Min(1, sum*h)
+}
+
+// likelyRoot returns about the S at which M/S exceeds q most probably: where
+// df(ln s − s²/2) − (qs − shift)²/2 is greatest, or 1 if M exceeds q there anyway.
+func likelyRoot(q, df, shift float64) float64 {
+	// In units of the greater of q and √df, so that squares do not overflow.
+	unit := math.Max(math.Abs(q), math.Sqrt(df))
+	q, root, shift := q/unit, math.Sqrt(df)/unit, shift/unit
+	a := root*root + q*q
+	s := (q*shift + math.Sqrt(q*q*shift*shift+4*root*root*a)) / (2 * a)
+	if (q >= 0) == (s > 1) || !(s > 0) {
+		return 1
+	}
+	return s
 }
 
 // studentizedQuantile returns q with upper(q) = p for a continuous decreasing tail.
