@@ -104,6 +104,32 @@ func TestAliased(t *testing.T) {
 	}
 }
 
+// A covariate that blocks or another covariate already hold changes no mean, balanced or not.
+func TestAliasedCovariateLeavesMeans(t *testing.T) {
+	m := without(extrusion(), 9)
+	x := make([]float64, len(m.Y))
+	for i := range x {
+		x[i] = float64(i*i%5) + float64(i)/7
+	}
+	m.Covariates = [][]float64{x}
+	f := fit(t, m)
+	block, double := make([]float64, len(x)), make([]float64, len(x))
+	for i := range x {
+		block[i] = math.Sqrt(float64(3 + m.Nuisance[0].Level[i]))
+		double[i] = 5 - 2*x[i]
+	}
+	m.Covariates = [][]float64{block, x, double}
+	g := fit(t, m)
+	if g.DF != f.DF || len(g.Aliased()) != 2 {
+		t.Errorf("df %d, want %d; %+v", g.DF, f.DF, g.Aliased())
+	}
+	a, b := f.Means(0), g.Means(0)
+	for i := range a.Value {
+		near(t, "mean", b.Value[i], a.Value[i], 1e-12)
+		near(t, "variance", b.Cov(i, i), a.Cov(i, i), 1e-11)
+	}
+}
+
 // Two rectangles of different size, rows and columns within each: means must be estimable
 // although equal weights over rows and over columns contradict each other.
 func TestUnequalSquares(t *testing.T) {

@@ -16,8 +16,8 @@ type Estimates struct {
 
 // Means are the adjusted means of a term, its levels in order with the last factor
 // running fastest: equal weights over the levels of all other factors and over the
-// classes of nuisance factors, covariates at their mean over the rows, time at the centre
-// of the trend (Searle, Speed & Milliken 1980). Classes whose own trend does not determine
+// classes of nuisance factors, covariates at their mean over the rows, aliased ones left out,
+// time at the centre of the trend (Searle, Speed & Milliken 1980). Classes whose own trend does not determine
 // a level at that time are left out of the average; Unsupported counts them.
 func (f *Fit) Means(term int) *Estimates {
 	m := &f.model
@@ -45,8 +45,32 @@ func (f *Fit) Means(term int) *Estimates {
 		for j := range row {
 			row[j] -= f.ux[j]
 		}
+		f.dropCovariates(row)
 	}
 	return f.estimates(rows, k, 1)
+}
+
+// dropCovariates makes a mean what it is without the covariates that are aliased: they
+// follow from nuisance factors or other covariates, and would only take from it a level to
+// be estimable at.
+func (f *Fit) dropCovariates(row []float64) {
+	var w []float64
+	for _, b := range f.blocks {
+		if b.kind != Covariate || f.row[b.from] >= 0 {
+			continue
+		}
+		if w == nil {
+			w = make([]float64, len(f.pivot))
+			for i, j := range f.pivot {
+				w[i] = row[j]
+			}
+			f.forward(w)
+		}
+		row[b.from] = 0
+		for i, v := range w {
+			row[b.from] += f.r[i*f.p+b.from] * v
+		}
+	}
 }
 
 // Unsupported is the number of classes of the trend's unit that enter no mean.
