@@ -49,7 +49,8 @@ type finisher struct {
 	book          *page.Book
 	meta          meta
 	catalog, info int
-	files         []int // of the file specifications
+	packer        *zlib.Writer // kept, since making one costs more than most streams
+	files         []int        // of the file specifications
 	names         []string
 }
 
@@ -109,17 +110,20 @@ func (f *finisher) add(body string) int {
 // stream appends an object with a stream; dict is what its dictionary holds besides
 // length and filter.
 func (f *finisher) stream(dict string, data []byte, compress bool) int {
-	f.objects = append(f.objects, streamObject(dict, data, compress))
+	f.objects = append(f.objects, f.streamObject(dict, data, compress))
 	return len(f.objects) - 1
 }
 
-func streamObject(dict string, data []byte, compress bool) []byte {
+func (f *finisher) streamObject(dict string, data []byte, compress bool) []byte {
 	var b bytes.Buffer
 	if compress {
 		var z bytes.Buffer
-		w := zlib.NewWriter(&z)
-		w.Write(data) // a bytes.Buffer takes everything
-		w.Close()
+		if f.packer == nil {
+			f.packer = zlib.NewWriter(&z)
+		}
+		f.packer.Reset(&z)
+		f.packer.Write(data) // a bytes.Buffer takes everything
+		f.packer.Close()
 		data = z.Bytes()
 		dict += " /Filter /FlateDecode"
 	}
@@ -163,7 +167,7 @@ func (f *finisher) fonts(used map[string]*runeSet) error {
 		if f.objects[i+2] == nil || !bytes.Contains(f.objects[i+2], []byte("begincmap")) {
 			return errShape
 		}
-		f.objects[i+2] = streamObject("", toUnicode(set), true)
+		f.objects[i+2] = f.streamObject("", toUnicode(set), true)
 	}
 	if found != len(used) {
 		return errShape
@@ -219,7 +223,7 @@ func toUnicode(set *runeSet) []byte {
 // pageObject is the number of page i: the library writes page and content in turn.
 func pageObject(i int) int { return 3 + 2*i }
 
-// pages gives each page its links.
+// pages gives each page its links, and packs its contents.
 func (f *finisher) pages() error {
 	for i := range f.book.Pages {
 		pg := &f.book.Pages[i]
@@ -238,7 +242,23 @@ func (f *finisher) pages() error {
 		if err := f.replace(pageObject(i), "<</Type /Page\n", "<</Type /Page\n"+extra); err != nil {
 			return err
 		}
+		if err := f.pack(pageObject(i) + 1); err != nil {
+			return err
+		}
 	}
+	return nil
+}
+
+// pack compresses the stream of an object that the library left plain.
+func (f *finisher) pack(number int) error {
+	if number >= len(f.objects) {
+		return errShape
+	}
+	head, body, ok := bytes.Cut(f.objects[number], []byte(">>\nstream\n"))
+	if !ok || !bytes.HasPrefix(head, []byte("<</Length ")) || !bytes.HasSuffix(body, []byte("\nendstream")) {
+		return errShape
+	}
+	f.objects[number] = f.streamObject("", bytes.TrimSuffix(body, []byte("\nendstream")), true)
 	return nil
 }
 
@@ -471,7 +491,7 @@ func (f *finisher) root() error {
 	f.objects[f.info] = []byte(info.String())
 
 	xmp := f.stream("/Type /Metadata /Subtype /XML", m.xmp(), false)
-	icc := f.stream("/N 3 /Alternate /DeviceRGB", srgb(), true)
+	icc := f.stream("/N 3 /Alternate /DeviceRGB", profile(), true)
 	intent := f.add(fmt.Sprintf("<</Type /OutputIntent /S /GTS_PDFA1 /OutputConditionIdentifier (sRGB IEC61966-2.1)"+
 		" /Info (sRGB IEC61966-2.1) /DestOutputProfile %d 0 R>>", icc))
 	outline := f.outline()

@@ -3,7 +3,10 @@ package pdf
 import (
 	"encoding/binary"
 	"math"
+	"sync"
 )
+
+var profile = sync.OnceValue(srgb)
 
 // srgb builds a colour profile of sRGB: a matrix and one curve for the three colours.
 //
