@@ -116,10 +116,22 @@ func (a *Allotment) Bytes() []byte {
 	return b.Bytes()
 }
 
+// Seed is the seed text of the next draw: the given one, or, where an earlier draw of
+// the record used it, that with the number of the draw, so that no draw repeats another.
+func Seed(record []Draw, seed string) string {
+	used := func(s string) bool { return slices.ContainsFunc(record, func(d Draw) bool { return d.Seed == s }) }
+	next := seed
+	for n := len(record) + 1; used(next); n++ {
+		next = fmt.Sprintf("%s, draw %d", seed, n)
+	}
+	return next
+}
+
 // Changes are the writes that record a draw: the new allotment.csv, the entry at the
 // end of allotment.toml, and, from the second draw on, the old allotment under its
-// number. d's Number, Generator, Candidates and Allotment are set here. files is the folder
-// as it is.
+// number. d's Number, Generator, Candidates and Allotment are set here. files is the
+// folder as it is. It is an error to replace an allotment that this program did not
+// draw, or that was changed since, or without d.Why.
 func Changes(files *folder.Folder, a *Allotment, d Draw) ([]folder.Change, error) {
 	text := a.Bytes()
 	old, err := files.Read(File, folder.MaxFile)
@@ -138,10 +150,17 @@ func Changes(files *folder.Folder, a *Allotment, d Draw) ([]folder.Change, error
 	d.Number, d.Generator, d.Allotment = len(draws)+1, GeneratorText, folder.Hash(text)
 	d.Candidates = max(d.Candidates, 1)
 	var changes []folder.Change
+	switch {
+	case first && len(draws) > 0:
+		return nil, fmt.Errorf("%s: missing, though %s records its draw; restore it", File, RecordFile)
+	case !first && len(draws) == 0:
+		return nil, fmt.Errorf("%s: allotted elsewhere, and never overwritten; remove or rename it to draw here", File)
+	case !first && draws[len(draws)-1].Allotment != old.SHA256:
+		return nil, fmt.Errorf("%s: changed after it was drawn; restore it before it is replaced", File)
+	case !first && strings.TrimSpace(d.Why) == "":
+		return nil, errors.New("a second draw needs the reason why the first is replaced")
+	}
 	if !first {
-		if len(draws) == 0 {
-			return nil, fmt.Errorf("%s: allotted elsewhere, and never overwritten; remove or rename it to draw here", File)
-		}
 		changes = append(changes, folder.Change{Path: fmt.Sprintf("allotment.%d.csv", len(draws)), How: folder.Create, Data: old.Data})
 		changes = append(changes, folder.Change{Path: File, How: folder.Replace, Data: text, Old: old.SHA256})
 	} else {
@@ -357,14 +376,16 @@ func lastOf(lines []int) int {
 
 // parse reads allotment.csv.
 func parse(file folder.File, plan *layout.Plan) (*Allotment, diag.List) {
-	s, list := sheet.Open(file.Path, file.Data, "auto")
+	s, said := sheet.Open(file.Path, file.Data, "auto")
 	if s == nil {
-		return nil, list
+		return nil, said
 	}
+	var list sheet.Faults
+	list.AddAll(said)
 	b, bad := NewFinder(plan).Bind(Columns(plan, s.Headings))
 	if bad != nil {
 		list.Add(diag.Diagnostic{Pos: s.Pos(s.Heading, max(bad.Column, 0)), Code: UnitColumns, Message: bad.Message, Hint: bad.Hint})
-		return nil, list
+		return nil, list.List()
 	}
 	row := RowUnit(plan)
 	rows := plan.Coarse(b.Unit, row)
@@ -372,7 +393,7 @@ func parse(file folder.File, plan *layout.Plan) (*Allotment, diag.List) {
 		list.Add(diag.Diagnostic{Pos: s.Pos(s.Heading, 0), Code: UnitColumns,
 			Message: fmt.Sprintf("the rows are of %s, but treatments are allotted to each %s", plan.Units[b.Unit].Name, plan.Units[row].Name),
 			Hint:    "add the columns that name each " + plan.Units[row].Name})
-		return nil, list
+		return nil, list.List()
 	}
 	var columns []column
 	for f := range plan.Factors {
@@ -390,7 +411,7 @@ func parse(file folder.File, plan *layout.Plan) (*Allotment, diag.List) {
 		}
 	}
 	if list.HasErrors() {
-		return nil, list
+		return nil, list.List()
 	}
 	a := &Allotment{Plan: plan, Levels: make([][]int32, len(plan.Factors)), Order: make([]int, plan.Units[row].N)}
 	order, code := Column(plan, s.Headings, "order"), Column(plan, s.Headings, "code")
@@ -401,7 +422,7 @@ func parse(file folder.File, plan *layout.Plan) (*Allotment, diag.List) {
 	placed := map[int]int{}                    // line by order
 	next := 0
 	seen := make([][]first, len(plan.Factors))
-	list = append(list, fill(s, b, plan, columns, a.Levels, func(r sheet.Row, i int32) bool {
+	list.AddAll(fill(s, b, plan, columns, a.Levels, func(r sheet.Row, i int32) bool {
 		if lines[i] > 0 {
 			list.Add(diag.Diagnostic{Pos: s.Pos(r, 0), Code: DuplicateUnit, Message: fmt.Sprintf("%s stands in line %d already", Describe(plan, b.Unit, i), lines[i]),
 				Related: []diag.Related{{Pos: diag.Pos{File: s.Path, Line: lines[i]}, Message: "the first row"}}})
@@ -430,7 +451,7 @@ func parse(file folder.File, plan *layout.Plan) (*Allotment, diag.List) {
 			a.Codes[at] = r.Cells[code].Text
 		}
 		return true
-	}, seen)...)
+	}, seen))
 	whole := !list.HasErrors() // what was refused above is not said again as missing
 	var missing []int32
 	for i, line := range lines {
@@ -450,9 +471,9 @@ func parse(file folder.File, plan *layout.Plan) (*Allotment, diag.List) {
 			Hint: "every " + plan.Units[row].Name + " of the plan has a row"})
 	}
 	if !list.HasErrors() {
-		list = append(list, Check(a, func(factor int, instance int32) diag.Pos { return seen[factor][instance].pos })...)
+		list.AddAll(Check(a, func(factor int, instance int32) diag.Pos { return seen[factor][instance].pos }))
 	}
-	return a, list
+	return a, list.List()
 }
 
 func nearHeading(name string, headings []string) string {

@@ -60,7 +60,7 @@ func Hint(text string, decimal rune) string {
 			return "write the number alone, or a missing code; what the sign says belongs in a column of its own"
 		}
 	}
-	if i := strings.IndexFunc(stripped, func(r rune) bool { return (r < '0' || r > '9') && r != decimal && r != '-' && r != '+' }); i > 0 {
+	if i := strings.IndexFunc(stripped, func(r rune) bool { return (r < '0' || r > '9') && r != decimal && r != '-' && r != '+' }); i > 0 && !strings.ContainsAny(stripped[i:], "0123456789") {
 		if _, ok := Number(stripped[:i], decimal); ok {
 			return "write " + stripped[:i] + "; units belong in the protocol, remarks in a column of their own"
 		}
@@ -124,6 +124,8 @@ func (m *Marks) Decimal(delimiter rune) (mark rune, ok bool) {
 		return '.', m.pointSure > 0 || delimiter != ';'
 	case m.point == 0:
 		return ',', m.commaOK > 0
+	case delimiter == ',':
+		return '.', true // a quoted comma among points is a slip
 	case m.pointSure > m.commaOK:
 		return '.', true
 	case m.pointSure < m.commaOK:

@@ -183,7 +183,7 @@ func (s *Sheet) decode(data []byte) {
 // halfZero tells whether the beginning of a file is Latin text in UTF-16 without a byte
 // order mark: every second byte, from the one at first, is zero.
 func halfZero(data []byte, first int) bool {
-	if len(data) < 4 {
+	if len(data) < 4 || len(data)%2 != 0 {
 		return false
 	}
 	for i := first; i < min(len(data), 64); i += 2 {
@@ -191,7 +191,7 @@ func halfZero(data []byte, first int) bool {
 			return false
 		}
 	}
-	return len(data)%2 == 0
+	return true
 }
 
 // guess finds the delimiter: the one that divides the headings, and the lines after
