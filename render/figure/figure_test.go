@@ -107,6 +107,9 @@ func plan(units string) *layout.Plan {
 		default:
 			n, _ := strconv.Atoi(w[1])
 			u.Count = []int{n}
+			if len(list) == 1 {
+				cells = n / 2
+			}
 		}
 		p.Units = append(p.Units, u)
 	}

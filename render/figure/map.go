@@ -79,12 +79,12 @@ func (m Map) Draw() (*doc.Picture, string) {
 		_, most = m.resolve(0)
 	}
 	p.keys = m.needKeys(all)
-	p.choose(boxes, most-p.foot(nil, 0)-2)
-	p.bear = p.bearing()
-	if p.bear != labels {
-		p.keys = true
+	for p.bear = labels; ; p.bear++ {
 		p.choose(boxes, most-p.foot(nil, 0)-2)
-		p.bear = max(p.bearing(), keys)
+		if p.room() {
+			break
+		}
+		p.keys = true
 	}
 	tree := p.arrange(boxes)
 	h := tree.h + p.foot(nil, 0) + 2
@@ -426,32 +426,30 @@ func widestKey(n int) string {
 	return strings.Repeat("0", len(strconv.Itoa(n)))
 }
 
-// bearing finds what the cells have room for.
-func (p *mapper) bearing() bears {
-	fits := true
-	for _, c := range p.all {
-		if p.size(clean(c.Label), tinySize) == 0 && c.Label != "" {
-			fits = false
-			break
-		}
-	}
+// room says whether the cells have room for what they are to bear.
+func (p *mapper) room() bool {
 	n := len(p.Treatments)
-	switch {
-	case fits || n == 0:
-		return labels
-	case p.size(widestKey(n), keySize) > 0:
-		return keys
-	case n <= symbols && p.cw >= 3 && p.ch >= 3:
-		return marks
+	switch p.bear {
+	case labels:
+		for _, c := range p.all {
+			if p.size(clean(c.Label), tinySize) == 0 && c.Label != "" {
+				return n == 0
+			}
+		}
+		return true
+	case keys:
+		return p.size(widestKey(n), keySize) > 0
+	case marks:
+		return n <= symbols && p.cw >= 3 && p.ch >= 3
 	}
-	return nothing
+	return true
 }
 
 // size is the largest size at which text has room in a cell; 0 where even the least is
 // too large.
 func (p *mapper) size(s string, least float64) float64 {
 	for size := textSize; size >= least; size -= 0.5 {
-		if width(s, size, false) <= p.cw-min(3, p.cw*0.1) && size*leading <= p.ch {
+		if width(s, size, false) <= p.cw-min(3, p.cw*0.06) && size*leading <= p.ch {
 			return size
 		}
 	}
@@ -511,6 +509,9 @@ func (p *mapper) cell(c *canvas, cell Cell, x, y float64) {
 		return
 	}
 	size := p.size(label, least)
+	if p.bear == keys {
+		size = p.size(widestKey(len(p.Treatments)), least)
+	}
 	if size == 0 {
 		return
 	}
