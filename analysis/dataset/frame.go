@@ -49,7 +49,14 @@ type values struct {
 	corrected map[int32]bool // rows
 }
 
-const unreadable = 1
+// Why there is no value.
+const (
+	unreadable = iota + 1 // the cell is no number
+	impossible            // a number that the kind of response cannot have
+	notFinite             // computed, but no number
+	absent                // a part of it, from another file, is not there
+	firstCode             // a code of missing values
+)
 
 func (f *frame) column(name string) *values {
 	for _, c := range f.columns {
@@ -247,7 +254,7 @@ func (r *reader) load(f *frame) {
 	if len(missing) > 0 {
 		code = make(map[string]uint8, len(missing))
 		for i, m := range missing {
-			code[strings.TrimSpace(m)] = uint8(min(2+i, math.MaxUint8))
+			code[strings.TrimSpace(m)] = uint8(min(firstCode+i, math.MaxUint8))
 		}
 	}
 	r.missing = missing

@@ -304,14 +304,12 @@ func (r *reader) rowValue(j *job, ratio bool) func(k int, i, t int32, buffer []f
 		}
 		buffer[0] = j.expression.eval(values)
 		if math.IsNaN(buffer[0]) || math.IsInf(buffer[0], 0) {
-			r.notFinite(j, diag.Pos{File: f.sheet.Path, Line: int(f.line[k])}, allot.Describe(plan, f.unit, i), values)
-			return unreadable
+			r.notComputed(j, diag.Pos{File: f.sheet.Path, Line: int(f.line[k])}, allot.Describe(plan, f.unit, i), values)
+			return notFinite
 		}
 		return 0
 	}
 }
-
-const absent = math.MaxUint8 // why a value from another file is not there
 
 // spread repeats each value for every time.
 func spread(a []float64, times int32) []float64 {
@@ -342,8 +340,8 @@ func (r *reader) severalRows(f *frame) bool {
 	return false
 }
 
-// notFinite reports a computed value that is no number.
-func (r *reader) notFinite(j *job, pos diag.Pos, unit string, values []float64) {
+// notComputed reports a computed value that is no number.
+func (r *reader) notComputed(j *job, pos diag.Pos, unit string, values []float64) {
 	with := ""
 	for i, v := range j.variables {
 		if i > 0 {
@@ -480,7 +478,7 @@ func (r *reader) checkRow(j *job, g *slots, k int, i, t int32, s int, buffer []f
 	pos := func() diag.Pos { return diag.Pos{File: f.sheet.Path, Line: int(f.line[k])} }
 	bad := func(hint, format string, args ...any) uint8 {
 		r.faults.Add(diag.Diagnostic{Pos: pos(), Code: BadKind, Message: fmt.Sprintf(format, args...), Hint: hint})
-		return unreadable
+		return impossible
 	}
 	v := buffer[0]
 	if p.Aggregate != "ratio" {
@@ -642,7 +640,7 @@ func (r *reader) finish(j *job, g *slots, out *Response, times int, rep *protoco
 				break
 			}
 			if v = j.expression.eval(buffer); math.IsNaN(v) || math.IsInf(v, 0) {
-				r.notFinite(j, diag.Pos{File: f.sheet.Path, Line: int(g.origin[s].First)}, allot.Describe(plan, j.unit, i), buffer)
+				r.notComputed(j, diag.Pos{File: f.sheet.Path, Line: int(g.origin[s].First)}, allot.Describe(plan, j.unit, i), buffer)
 				v = math.NaN()
 				out.Status[s], reason = Missing, "it cannot be computed"
 			} else if message, hint := kindFault(p, v); message != "" {
@@ -710,10 +708,14 @@ func (r *reader) whyText(why uint8, f *frame) string {
 	switch {
 	case why == unreadable:
 		return "not readable"
-	case why == absent || int(why)-2 >= len(r.missing):
+	case why == impossible:
+		return "not a value of its kind"
+	case why == notFinite:
+		return "it cannot be computed"
+	case why == absent || int(why)-firstCode >= len(r.missing):
 		return "a part of it has no value"
 	}
-	if code := r.missing[why-2]; code != "" {
+	if code := r.missing[why-firstCode]; code != "" {
 		return fmt.Sprintf("%q in %s", code, f.sheet.Path)
 	}
 	return "empty in " + f.sheet.Path
