@@ -16,6 +16,7 @@ import (
 	"strings"
 	"time"
 
+	"penwright/analysis/prose"
 	"penwright/analysis/result"
 	"penwright/analysis/trial"
 	"penwright/protocol/diag"
@@ -25,6 +26,7 @@ import (
 	"penwright/render/html"
 	"penwright/render/md"
 	"penwright/render/pdf"
+	"penwright/render/table"
 	"penwright/templates"
 )
 
@@ -315,4 +317,13 @@ func figureFiles(d *doc.Document, opt Options, rs *result.Results) ([]File, erro
 		out = append(out, File{Path: "figures/" + f.File + ".svg", Data: svg.Bytes()}, File{Path: "figures/" + f.File + ".pdf", Data: page.Bytes()})
 	}
 	return out, nil
+}
+
+// Design is a short document on what the layout alone says: the recognised design, what
+// received what, and the skeleton analysis of variance.
+func Design(t *trial.Trial) *doc.Document {
+	blocks := paragraphs(prose.Design(t.Plan))
+	blocks = append(blocks, paragraphs(prose.Units(t.Plan))...)
+	blocks = append(blocks, table.Skeleton(t.Plan))
+	return &doc.Document{Lang: "en", Blocks: blocks}
 }

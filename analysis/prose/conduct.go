@@ -127,10 +127,11 @@ func Repeat(a *allot.Allotment) []string {
 	}
 	d := a.Draws[len(a.Draws)-1]
 	return []string{
-		fmt.Sprintf("Take the SHA-256 of the seed text “%s” as the key of ChaCha8 in the form published for C2SP chacha8rand; take its 64-bit outputs in order.", d.Seed),
-		"A whole number below n is had from an output x as the high 64 bits of the 128-bit product x·n; x is drawn again while the low 64 bits are less than 2⁶⁴ mod n.",
-		"Shuffles run from the last place to the second, changing each place with one at or before it drawn so (Durstenfeld 1964).",
-		"With this program: penwright draw --draws 1 --json prints the same allotment without recording it.",
+		"Seed text, generator and scheme are enough to repeat the draw with any program.",
+		fmt.Sprintf("Seed text: “%s”.", d.Seed),
+		fmt.Sprintf("Generator: %s.", strings.TrimRight(d.Generator, ".")),
+		fmt.Sprintf("Scheme: %s.", strings.TrimRight(d.Scheme, ".")),
+		"With this program, penwright draw --draws 1 --json prints the same allotment without recording it.",
 	}
 }
 

@@ -283,8 +283,8 @@ func Draw(p *layout.Plan, a *allot.Allotment) []string {
 		return []string{"The allotment bears no record of its draw."}
 	}
 	d := a.Draws[len(a.Draws)-1]
-	out := []string{d.Scheme}
-	s := fmt.Sprintf("The draw in force is number %d, made with %s from the seed text “%s”", d.Number, d.Generator, d.Seed)
+	out := []string{upperFirst(strings.TrimRight(d.Scheme, ".")) + "."}
+	s := fmt.Sprintf("The draw in force is number %d, made from the seed text “%s”", d.Number, d.Seed)
 	if d.By != "" {
 		s += " by " + d.By
 	}

@@ -1,0 +1,132 @@
+package main
+
+import (
+	"errors"
+	"fmt"
+	"io"
+
+	"github.com/spf13/cobra"
+
+	"penwright/analysis/trial"
+	"penwright/protocol"
+	"penwright/protocol/diag"
+	"penwright/render"
+	"penwright/render/term"
+)
+
+// keepAlike is how many diagnostics of one kind are shown before the rest is counted.
+const keepAlike = 10
+
+// write writes diagnostics as text.
+func (a *app) write(w io.Writer, o *opened, list diag.List) {
+	t := diag.Text{Source: o.sources(), Color: a.colourful(), Keep: keepAlike}
+	// A terminal or pipe that is gone cannot be told so.
+	_ = t.Write(w, o.placed(list))
+}
+
+func (a *app) check() *cobra.Command {
+	var format string
+	var list bool
+	c := &cobra.Command{
+		Use:   "check [TRIAL…]",
+		Short: "says everything that can be said without analysing",
+		Long: "check reads a trial as far as it goes: protocol, layout, allotment, data. It prints\n" +
+			"every fault with its place and how to mend it, and the skeleton analysis of variance:\n" +
+			"the sources with their degrees of freedom and what each is tested over.",
+		Example: "  penwright check hollowmere",
+		RunE: func(_ *cobra.Command, args []string) error {
+			if list {
+				for _, x := range protocol.Codes() {
+					fmt.Fprintf(a.out, "%-24s %s\n", x.Code, x.Text)
+				}
+				return nil
+			}
+			if format != "text" && format != "json" && format != "sarif" {
+				return fmt.Errorf("unknown format %q: text, json or sarif", format)
+			}
+			if len(args) == 0 {
+				args = []string{"."}
+			}
+			var all diag.List
+			bad := false
+			for i, arg := range args {
+				o, err := a.open(trialArg([]string{arg}))
+				if err != nil {
+					return err
+				}
+				bad = bad || o.list.HasErrors()
+				all = append(all, o.placed(o.list)...)
+				if format == "text" {
+					if i > 0 {
+						fmt.Fprintln(a.out)
+					}
+					a.checked(o)
+				}
+				o.close()
+			}
+			var err error
+			switch format {
+			case "json":
+				err = diag.WriteJSON(a.out, all)
+			case "sarif":
+				err = diag.SARIF{Tool: "penwright", Version: version}.Write(a.out, all)
+			}
+			if err != nil {
+				return failed(err)
+			}
+			if bad {
+				return status{code: findings}
+			}
+			return nil
+		},
+	}
+	c.Flags().StringVar(&format, "format", "text", "form of the findings: text, json or sarif")
+	c.Flags().BoolVar(&list, "list", false, "list the codes of all findings")
+	return c
+}
+
+// checked prints what was found in one trial: the findings, then the design.
+func (a *app) checked(o *opened) {
+	a.write(a.out, o, o.list)
+	errs, warnings, _ := o.list.Count()
+	if t := o.trial; t.Plan != nil {
+		if len(o.list) > 0 {
+			fmt.Fprintln(a.out)
+		}
+		if err := term.Write(a.out, render.Design(t), term.Options{Width: a.width}); err != nil {
+			a.say("penwright: %v", err)
+		}
+		fmt.Fprintln(a.out)
+	}
+	fmt.Fprintf(a.out, "%s: %s, %s\n", o.prefix()+trial.ProtocolFile, number(errs, "error"), number(warnings, "warning"))
+}
+
+func number(n int, what string) string {
+	switch n {
+	case 0:
+		return "no " + what + "s"
+	case 1:
+		return "1 " + what
+	}
+	return fmt.Sprintf("%d %ss", n, what)
+}
+
+// sound opens a trial for work on it: its errors are reported and end the command,
+// warnings are reported.
+func (a *app) sound(args []string) (*opened, error) {
+	o, err := a.open(trialArg(args))
+	if err != nil {
+		return nil, err
+	}
+	if o.list.HasErrors() {
+		a.complain(o, o.list)
+		o.close()
+		return nil, status{code: findings}
+	}
+	a.complain(o, o.list)
+	if o.trial.Plan == nil {
+		o.close()
+		return nil, failed(errors.New("the trial has no plan although nothing was found wrong"))
+	}
+	return o, nil
+}
