@@ -164,6 +164,7 @@ type mapper struct {
 	crossed bool    // some are excluded
 	keys    bool    // a legend is drawn
 	bear    bears
+	set     lettering
 }
 
 // arranged is a box with its place for everything in it.
@@ -368,6 +369,12 @@ func (p *mapper) draw(c *canvas, a *arranged, x, y float64) {
 		}
 	}
 	if len(b.Across) > 0 && a.label > 0 && len(a.x) > 0 {
+		if whole := clean(b.Across[0]); a.side > 0 {
+			// Where the names are shortened to numbers, what these are stands beside.
+			if what, ok := strings.CutSuffix(whole, " "+brief(whole, childW-2, a.label)); ok {
+				c.text(x+a.side-3, frameTop+a.label*ascent, right, st, fit(what, a.side-3, a.label, false))
+			}
+		}
 		end := math.Inf(-1)
 		for i := 0; i < min(len(b.Across), a.columns, len(a.x)); i++ {
 			s := brief(b.Across[i], childW-2, a.label)
@@ -426,34 +433,97 @@ func widestKey(n int) string {
 	return strings.Repeat("0", len(strconv.Itoa(n)))
 }
 
-// room says whether the cells have room for what they are to bear.
+// lettering is how the text of all cells is set, so that they look alike.
+type lettering struct {
+	size   float64 // of what the cells bear; 0: it has no room
+	lines  int     // of a label, at most
+	value  float64 // size of the value below it; 0: none
+	number bool    // the unit's number stands in the corner
+	clear  bool    // and needs a line of its own there
+}
+
+// room finds how the text of the cells is set, and says whether they have room for what
+// they are to bear.
 func (p *mapper) room() bool {
 	n := len(p.Treatments)
+	p.set = lettering{}
 	switch p.bear {
-	case labels:
-		for _, c := range p.all {
-			if p.size(clean(c.Label), tinySize) == 0 && c.Label != "" {
-				return n == 0
-			}
-		}
-		return true
-	case keys:
-		return p.size(widestKey(n), keySize) > 0
 	case marks:
 		return n <= symbols && p.cw >= 3 && p.ch >= 3
+	case nothing:
+		return true
+	case keys:
+		p.letter([]string{widestKey(n)}, keySize, 0)
+		return p.set.size > 0
 	}
+	var labels, numbers, values []string
+	seen := map[string]bool{}
+	for _, c := range p.all {
+		if l := clean(c.Label); !seen[l] && l != "" {
+			seen[l] = true
+			labels = append(labels, l)
+		}
+		numbers = append(numbers, c.Number)
+		if p.Shade != "" && drawable(c.Value) && !c.Excluded {
+			values = append(values, p.value(c.Value))
+		}
+	}
+	// Values are worth a smaller label.
+	if len(values) > 0 {
+		p.letter(labels, tinySize, tinySize*leading)
+	}
+	if p.set.size == 0 {
+		p.letter(labels, tinySize, 0)
+	}
+	if p.set.size == 0 {
+		return n == 0
+	}
+	widest := func(texts []string, size float64, bold bool) float64 {
+		w := 0.0
+		for _, t := range texts {
+			w = max(w, width(clean(t), size, bold))
+		}
+		return w
+	}
+	tall := p.set.size * leading * float64(p.set.lines)
+	for _, size := range []float64{noteSize, tinySize} {
+		if len(values) > 0 && widest(values, size, true) <= p.cw-2 && tall+size*leading <= p.ch {
+			p.set.value = size
+			tall += size * leading
+			break
+		}
+	}
+	corner := widest(numbers, tinySize, false)
+	if corner == 0 || corner > p.cw-4 || len(labels) == 0 {
+		return true
+	}
+	across := widest(labels, p.set.size, false)
+	if p.set.lines > 1 {
+		across = p.cw
+	}
+	p.set.clear = (p.cw-across)/2 < corner+3
+	p.set.number = !p.set.clear && p.ch >= tinySize*leading || tall+tinySize <= p.ch
 	return true
 }
 
-// size is the largest size at which text has room in a cell; 0 where even the least is
-// too large.
-func (p *mapper) size(s string, least float64) float64 {
+// letter finds the largest size at which all the texts have room, on one line or two,
+// with some height left over.
+func (p *mapper) letter(texts []string, least, over float64) {
+	inside := p.cw - min(3, p.cw*0.06)
 	for size := textSize; size >= least; size -= 0.5 {
-		if width(s, size, false) <= p.cw-min(3, p.cw*0.06) && size*leading <= p.ch {
-			return size
+		for lines := 1; lines <= 2 && float64(lines)*size*leading+over <= p.ch; lines++ {
+			fits := true
+			for _, t := range texts {
+				if _, fits = wrap(t, inside, size, lines); !fits {
+					break
+				}
+			}
+			if fits {
+				p.set.size, p.set.lines = size, lines
+				return
+			}
 		}
 	}
-	return 0
 }
 
 func (p *mapper) tint(c Cell) doc.Colour {
@@ -497,70 +567,54 @@ func (p *mapper) cell(c *canvas, cell Cell, x, y float64) {
 		d := min(1.0, p.cw/8)
 		c.stroke(line{width: 0.6, colour: grey}, append(segment(x+d, y+d, x+p.cw-d, y+p.ch-d), segment(x+d, y+p.ch-d, x+p.cw-d, y+d)...)...)
 	}
-	label, least := clean(cell.Label), tinySize
+	if p.Shade != "" && p.set.value == 0 && !cell.Excluded && cell.Value < -p.top/20 && p.cw >= 4 {
+		// Without a printed value a bar says, also in grey, that it is below nought.
+		c.stroke(line{width: 0.8, colour: ink}, segment(x+p.cw*0.3, y+p.ch-1.3, x+p.cw*0.7, y+p.ch-1.3)...)
+	}
+	label := clean(cell.Label)
 	switch {
-	case p.bear == keys && cell.Treatment >= 0:
-		label, least = key(cell.Treatment, len(p.Treatments)), keySize
 	case p.bear == marks && cell.Treatment >= 0:
 		shape, colour := symbol(cell.Treatment)
 		c.marker(shape, x+p.cw/2, y+p.ch/2, min(p.cw, p.ch)*0.3, colour)
 		return
-	case p.bear == marks, p.bear == nothing:
+	case p.bear == marks, p.bear == nothing, p.set.size == 0:
 		return
+	case p.bear == keys && cell.Treatment >= 0:
+		label = key(cell.Treatment, len(p.Treatments))
 	}
-	size := p.size(label, least)
-	if p.bear == keys {
-		size = p.size(widestKey(len(p.Treatments)), least)
-	}
-	if size == 0 {
-		return
-	}
-	value := ""
-	if p.Shade != "" && drawable(cell.Value) {
-		value = p.value(cell.Value)
-	}
-	mid := y + p.ch/2
+	st := style{size: p.set.size, colour: ink}
 	number := clean(cell.Number)
-	corner := 0.0
-	if number != "" && label != "" && p.ch >= tinySize+1+size*leading && width(number, tinySize, false) < p.cw-4 {
-		corner = tinySize
-		c.text(x+2, y+1+tinySize*0.8, left, style{size: tinySize, colour: ink}, number)
-	}
 	if label == "" {
-		// Nothing is allotted yet: the unit's own name.
-		if size = min(size, p.ch*0.6); size >= tinySize && number != "" {
-			if s := fit(number, p.cw-3, size, false); s != "" {
-				c.text(x+p.cw/2, mid+capHeight(size)/2, center, style{size: size, colour: ink}, s)
-			}
-		}
-		return
+		label, number = number, "" // nothing is allotted yet: the unit's own name
 	}
-	if value != "" && width(value, noteSize, false) <= p.cw-3 && p.ch >= 2*noteSize+3 {
-		// With the value below it the label stands beside the number in the corner.
-		lx, most := x+p.cw/2, p.cw-3
-		if corner > 0 {
-			free := width(number, tinySize, false) + 4
-			most = p.cw - free - 2
-			lx = x + free + most/2
-		}
-		if s := fit(label, most, noteSize, false); s == label {
-			c.text(lx, y+2+noteSize*0.8, center, style{size: noteSize, colour: ink}, s)
-			c.text(x+p.cw/2, y+p.ch-3, center, style{size: noteSize, bold: true, colour: ink}, value)
-			return
+	lines, _ := wrap(label, p.cw-min(3, p.cw*0.06), st.size, max(p.set.lines, 1))
+	tall := st.size * leading * float64(len(lines))
+	value := ""
+	if p.set.value > 0 && drawable(cell.Value) && !cell.Excluded {
+		value = p.value(cell.Value)
+		tall += p.set.value * leading
+	}
+	top, room := y, p.ch
+	if p.set.number && number != "" {
+		c.text(x+2, y+1+tinySize*0.8, left, style{size: tinySize, colour: ink}, number)
+		if p.set.clear {
+			// A line's own white space lies below the number's feet.
+			top, room = y+tinySize, p.ch-tinySize
 		}
 	}
-	base := mid + capHeight(size)/2
-	if corner > 0 {
-		base = min(base+2.5, y+p.ch-descent*size)
-		if base-capHeight(size) < y+1+tinySize {
-			base = y + p.ch - descent*size
+	base := top + (room-tall)/2 + st.size*(leading+capHeight(1))/2
+	for _, l := range lines {
+		if cell.Excluded {
+			half := width(l, st.size, false)/2 + 1.5
+			c.fill(paper, rectangle(x+p.cw/2-half, base-capHeight(st.size)-1, 2*half, capHeight(st.size)+2)...)
 		}
+		c.text(x+p.cw/2, base, center, st, l)
+		base += st.size * leading
 	}
-	if cell.Excluded {
-		half := width(label, size, false)/2 + 1.5
-		c.fill(paper, rectangle(x+p.cw/2-half, base-capHeight(size)-1, 2*half, capHeight(size)+2)...)
+	if value != "" {
+		base += (p.set.value - st.size) * (leading + capHeight(1)) / 2
+		c.text(x+p.cw/2, base, center, style{size: p.set.value, bold: true, colour: ink}, value)
 	}
-	c.text(x+p.cw/2, base, center, style{size: size, colour: ink}, label)
 }
 
 // value prints what a cell is shaded by, with its sign, to about two digits of the
@@ -621,6 +675,9 @@ func (p *mapper) scale(c *canvas, y float64) {
 		c.fill(p.shade(v), rectangle(x+long*float64(i)/steps, y+2, long/steps, 9)...)
 	}
 	c.stroke(line{width: thin, colour: grey}, rectangle(x, y+2, long, 9)...)
+	if p.set.value == 0 {
+		c.stroke(line{width: 0.8, colour: ink}, segment(x+long*0.22, y+9.5, x+long*0.28, y+9.5)...)
+	}
 	end := math.Inf(-1)
 	for _, v := range []float64{-1, 1, 0} {
 		at := x + long*(v+1)/2

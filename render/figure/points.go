@@ -187,6 +187,7 @@ func (p Points) Draw() (*doc.Picture, string) {
 		half := min(g.pitch*0.34, 15)
 		x0, y0 := g.at(i, group.Mean, -half)
 		x1, y1 := g.at(i, group.Mean, half)
+		g.stroke(line{width: 3, colour: paper}, segment(x0, y0, x1, y1)...)
 		g.stroke(line{width: 1.6, colour: ink}, segment(x0, y0, x1, y1)...)
 	}
 	g.mark("")
@@ -319,8 +320,8 @@ func (f *frame) leader(x0, y0, x1, y1 float64) {
 	f.stroke(line{width: 0.4, colour: tint(grey, 0.75)}, segment(x0, y0, x1, y1)...)
 }
 
-// density draws each group as bars around its middle, as long as the share of its
-// points in the range they cover.
+// density draws each group as a shape around its middle, as wide as many of its points
+// lie in each range of values.
 func (p Points) density(g *groups) {
 	s := g.v.span
 	if g.lying {
@@ -338,16 +339,22 @@ func (p Points) density(g *groups) {
 			n[b]++
 			most = max(most, n[b])
 		}
-		g.mark(group.Label)
-		for b, k := range n {
-			if k == 0 {
-				continue
-			}
-			half := g.pitch * 0.4 * float64(k) / float64(most)
-			x0, y0 := g.at(i, s.lo+(s.hi-s.lo)*float64(b)/bins, -half)
-			x1, y1 := g.at(i, s.lo+(s.hi-s.lo)*float64(b+1)/bins, half)
-			g.fill(tint(palette[0], 0.75), rectangle(min(x0, x1), min(y0, y1), math.Abs(x1-x0), math.Abs(y1-y0))...)
+		if most == 0 {
+			continue
 		}
+		var near, far [][2]float64 // the two sides, in steps
+		for b, k := range n {
+			half := g.pitch * 0.4 * float64(k) / float64(most)
+			for _, v := range []float64{float64(b), float64(b + 1)} {
+				x, y := g.at(i, s.lo+(s.hi-s.lo)*v/bins, -half)
+				near = append(near, [2]float64{x, y})
+				x, y = g.at(i, s.lo+(s.hi-s.lo)*v/bins, half)
+				far = append(far, [2]float64{x, y})
+			}
+		}
+		slices.Reverse(far)
+		g.mark(group.Label)
+		g.fill(tint(palette[0], 0.75), polyline(true, append(near, far...)...)...)
 	}
 }
 
@@ -393,7 +400,7 @@ func (p Points) words(blocks, total, drawn, excluded, lost int, data span) strin
 		b.WriteString(".")
 	}
 	if total-lost > maxPoints {
-		b.WriteString(" The points are too many to draw: bars show how many lie in each range.")
+		b.WriteString(" The points are too many to draw: the width of each shape shows how many lie at each height.")
 	}
 	if lost > 0 {
 		fmt.Fprintf(&b, " %s without a value.", count(lost, "unit"))

@@ -188,14 +188,27 @@ func (f *frame) fields(points []XY) {
 		n[j*across+i]++
 		most = max(most, n[j*across+i])
 	}
+	// Shades are few, so that neighbours alike become one field.
+	const shades = 8
+	shade := func(k int) int {
+		if k == 0 {
+			return 0
+		}
+		return 1 + int((shades-1)*math.Log1p(float64(k))/math.Log1p(float64(most)+1e-9))
+	}
 	w, h := (f.x1-f.x0)/across, (f.y1-f.y0)/up
 	for j := range up {
-		for i := range across {
-			if k := n[j*across+i]; k > 0 {
-				f.mark(count(k, "point"))
-				share := 0.2 + 0.8*math.Log1p(float64(k))/math.Log1p(float64(most))
-				f.fill(tint(palette[0], share), rectangle(f.x0+w*float64(i), f.y1-h*float64(j+1), w, h)...)
+		for i := 0; i < across; {
+			level, sum, from := shade(n[j*across+i]), 0, i
+			for i < across && shade(n[j*across+i]) == level {
+				sum += n[j*across+i]
+				i++
 			}
+			if level == 0 {
+				continue
+			}
+			f.mark(count(sum, "point"))
+			f.fill(tint(palette[0], 0.12+0.88*float64(level)/shades), rectangle(f.x0+w*float64(from), f.y1-h*float64(j+1), w*float64(i-from), h)...)
 		}
 	}
 }
@@ -257,28 +270,13 @@ func (p Quantiles) Draw() (*doc.Picture, string) {
 	if n == 0 {
 		return note(p.Size, "No residuals to draw."), b.String()
 	}
-	order := byValue(expected)
-	if n > maxPoints {
-		// The points lie on a curve that never falls: every so many of the middle
-		// tell all that all would; the ends stay whole.
-		every := n/1500 + 1
-		var kept []int
-		for i, k := range order {
-			if i < 150 || i >= n-150 || i%every == 0 || held[k].Named {
-				kept = append(kept, k)
-			}
-		}
-		order = kept
-		fmt.Fprintf(&b, " In the middle one point in %d is drawn.", every)
-	}
 	for _, q := range held {
 		ys.add(q.Low, q.High)
 	}
 	f := newScatter(p.Size, title(p.X, "Expected normal quantile"), title(p.Y, "Residual"), xs, ys)
+	order := byValue(expected)
 	var ex, lo, hi []float64
-	shown := make([]XY, 0, len(order))
 	for _, k := range order {
-		shown = append(shown, points[k])
 		if q := held[k]; drawable(q.Low) && drawable(q.High) {
 			ex, lo, hi = append(ex, q.Expected), append(lo, q.Low), append(hi, q.High)
 		}
@@ -287,6 +285,21 @@ func (p Quantiles) Draw() (*doc.Picture, string) {
 		f.mark(title(p.Envelope, "envelope"))
 		f.band(ex, lo, hi, tint(grey, 0.22))
 		f.mark("")
+	}
+	var shown []XY
+	far := math.Inf(-1)
+	for _, k := range order {
+		// The points lie on a curve that never falls: of many, those that would all but
+		// cover the one before tell nothing more.
+		at := f.x(held[k].Expected) - f.y(held[k].Value)
+		if n > 1000 && at-far < 2 && !held[k].Named {
+			continue
+		}
+		far = at
+		shown = append(shown, points[k])
+	}
+	if left := n - len(shown); left > 0 {
+		fmt.Fprintf(&b, " %s that would cover others %s left out.", count(left, "point"), plural(left, "is", "are"))
 	}
 	var crowd []box
 	if p.Slope != 0 {
