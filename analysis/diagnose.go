@@ -4,6 +4,7 @@ import (
 	"math"
 	"sort"
 
+	"penwright/analysis/dist"
 	"penwright/analysis/linear"
 	"penwright/analysis/prose"
 	"penwright/analysis/residual"
@@ -70,7 +71,8 @@ func (a *analyst) diagnose() {
 			}
 		}
 		if t, err := residual.SpreadOnMean(a.groups(rows, rows.y)); err == nil && t.Groups >= 3 {
-			add("spread on mean", t.Slope, none, none, prose.SpreadOnMean(t.Slope, t.SE, t.Power))
+			p := dist.TTwoSided(t.Slope/t.SE, float64(t.Groups-2))
+			add("spread on mean", t.Slope, float64(t.Groups-2), p, prose.SpreadOnMean(p, t.Power))
 		}
 	}
 	if m, ok := a.additive(); ok {

@@ -431,8 +431,6 @@ func (v *pictures) residualMap(name string) []doc.Block {
 		if u == unit {
 			if x, ok := value[i]; ok {
 				l.Value = x
-				d := num.SEDecimals(maxAbs(r))
-				l.Label = num.Signed(x, d)
 			} else {
 				l.Excluded = true
 			}
@@ -444,16 +442,6 @@ func (v *pictures) residualMap(name string) []doc.Block {
 		m.Shade += " (" + num.UnitText(r.Unit) + ")"
 	}
 	return figureOf("figure-residual-map-"+name, "Layout shaded by residual: "+prose.ResponseText(r)+". A pattern in the shade is a pattern that the model does not hold.", "residual-map-"+name, m.Draw)
-}
-
-func maxAbs(r *result.Response) float64 {
-	m := 0.0
-	for _, x := range r.Residuals {
-		if a := math.Abs(float64(x.Residual)); a > m {
-			m = a
-		}
-	}
-	return m
 }
 
 // residualPoints shows residuals by treatment with blocks joined.
@@ -535,7 +523,8 @@ func (v *pictures) spread(name string) []doc.Block {
 		return nil
 	}
 	for _, d := range r.Diagnostics {
-		if d.Name == "spread on mean" && d.Statistic.Known() {
+		// A line that the points do not clearly show is not drawn.
+		if d.Name == "spread on mean" && d.P.Known() && float64(d.P) < 0.05 {
 			fig.Slope = float64(d.Statistic)
 			fig.Intercept = sy/n - fig.Slope*sx/n
 		}

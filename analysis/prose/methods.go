@@ -2,6 +2,7 @@ package prose
 
 import (
 	"fmt"
+	"sort"
 	"strings"
 
 	"penwright/analysis/num"
@@ -303,10 +304,11 @@ func References(rs *result.Results) []string {
 			}
 		}
 	}
+	sort.Strings(out)
 	return out
 }
 
-// sources in alphabetical order; citations from memory.
+// sources of the methods; citations from memory.
 var sources = []struct{ keys, text string }{
 	{keys: "bartlett", text: "Bartlett, M. S. (1937). Properties of sufficiency and statistical tests. Proceedings of the Royal Society A 160, 268–282."},
 	{keys: "bonferroni", text: "Dunn, O. J. (1961). Multiple comparisons among means. Journal of the American Statistical Association 56, 52–64."},

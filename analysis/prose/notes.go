@@ -215,9 +215,10 @@ func NonAdditivity(p float64) string {
 	return "No sign that effects of treatments change with the level of the block."
 }
 
-// SpreadOnMean words the slope of log standard deviation on log mean.
-func SpreadOnMean(slope, se, power float64) string {
-	if !(slope-2*se > 0 || slope+2*se < 0) {
+// SpreadOnMean words the slope of log standard deviation on log mean: its P, and the
+// power of the response that it suggests.
+func SpreadOnMean(p, power float64) string {
+	if !(p < 0.05) {
 		return "Spread does not clearly change with the mean."
 	}
 	near := "the " + num.Fixed(power, 1) + " power"

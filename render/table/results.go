@@ -390,9 +390,11 @@ func Residuals(p *layout.Plan, r *result.Response, limit int) doc.Table {
 		obs = append(obs, float64(x.Observed))
 		res = append(res, float64(x.Residual))
 	}
-	do := Places(obs)
-	d := max(do, num.SEDecimals(rootMeanSquare(res)))
-	d = min(d, 6)
+	// Computed values have more decimals than they bear: one more than the error shows is
+	// enough.
+	de := num.SEDecimals(rootMeanSquare(res))
+	do := min(Places(obs), de+1)
+	d := max(do, de)
 	for i, x := range r.Residuals {
 		if i == limit {
 			t.Notes = append(t.Notes, text("The first "+num.Count(limit)+" of "+num.Count(len(r.Residuals))+" rows; all of them ride inside this report (results.json)."))
