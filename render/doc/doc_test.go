@@ -244,3 +244,14 @@ func TestClean(t *testing.T) {
 		}
 	}
 }
+
+func TestRaisedAndLowered(t *testing.T) {
+	for _, test := range []struct{ got, want string }{
+		{doc.Raised("−1"), "⁻¹"}, {doc.Raised("ab"), "ᵃᵇ"}, {doc.Raised("Q2"), "^(Q2)"}, {doc.Raised(""), ""},
+		{doc.Lowered("i"), "ᵢ"}, {doc.Lowered("12"), "₁₂"}, {doc.Lowered("b"), "_(b)"},
+	} {
+		if test.got != test.want {
+			t.Errorf("%q, want %q", test.got, test.want)
+		}
+	}
+}
