@@ -110,12 +110,23 @@ type Result struct {
 
 	// Approximate: the method's distribution presumes common standard errors (Tukey) or
 	// degrees of freedom (Tukey, Dunnett, Scheffe); they differ, and each difference was
-	// judged with its own.
+	// judged with its own. Or one-sided Sidak, whose inequality is proven for two sides only
+	// (Z. Šidák, JASA 62 (1967) 626).
 	Approximate bool
 
 	// Correlations: the correlations of comparisons with the control are not of the form
 	// λᵢλⱼ that Dunnett's distribution needs; the nearest of that form were used.
 	Correlations bool
+}
+
+// Differ returns whether two estimates were declared different at level alpha, in either
+// order of its arguments. Pairs that were not compared, or could not be, do not differ.
+func (r Result) Differ(alpha float64) func(i, j int) bool {
+	declared := map[Pair]bool{}
+	for _, d := range r.Differences {
+		declared[Pair{A: min(d.A, d.B), B: max(d.A, d.B)}] = d.Adjusted <= alpha
+	}
+	return func(i, j int) bool { return declared[Pair{A: min(i, j), B: max(i, j)}] }
 }
 
 // same is the relative difference up to which standard errors and degrees of freedom
@@ -179,6 +190,7 @@ func (f Family) Run(m Method, side dist.Side, alpha float64) (Result, error) {
 		}
 		level := -math.Expm1(math.Log1p(-alpha) / count)
 		limits(tested, side, func(df float64) float64 { return pointT(level, df, side) })
+		r.Approximate = side != dist.Two
 	case Holm:
 		holm(tested)
 	case Scheffe:

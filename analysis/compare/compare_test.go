@@ -192,7 +192,7 @@ func TestRangeMethods(t *testing.T) {
 		}
 	}
 	r := run(t, f, Duncan, dist.Two)
-	letters := Letters(7, func(i, j int) bool { return r.find(max(i, j), min(i, j)).Adjusted <= .05 }, []int{0, 1, 2, 3, 4, 5, 6})
+	letters := Letters(7, r.Differ(.05), []int{0, 1, 2, 3, 4, 5, 6})
 	for i, want := range []string{"a", "ab", "bc", "bc", "bc", "c", "c"} {
 		if letters[i] != want {
 			t.Errorf("mean %g: letters %q want %q", means[i], letters[i], want)
@@ -352,7 +352,7 @@ func TestFamilyLevel(t *testing.T) {
 	} {
 		f.Pairs = tt.pairs
 		r := run(t, f, tt.method, tt.side)
-		if r.Correlations || r.Approximate != (tt.method == Tukey) {
+		if r.Correlations || r.Approximate != (tt.method == Tukey || tt.method == Sidak) {
 			t.Errorf("%v: flags %v %v", tt.method, r.Approximate, r.Correlations)
 		}
 		random := rand.New(rand.NewPCG(5, 6))

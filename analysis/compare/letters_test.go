@@ -37,8 +37,7 @@ func upTo(n int) []int {
 
 func TestLettersCotton(t *testing.T) {
 	r := run(t, cotton(), Tukey, dist.Two)
-	differ := func(i, j int) bool { return r.find(max(i, j), min(i, j)).Adjusted <= .05 }
-	got := Letters(5, differ, []int{3, 2, 1, 4, 0}) // by falling mean
+	got := Letters(5, r.Differ(.05), []int{3, 2, 1, 4, 0}) // by falling mean
 	if want := []string{"d", "bc", "ab", "a", "cd"}; !slices.Equal(got, want) {
 		t.Errorf("got %q want %q", got, want)
 	}

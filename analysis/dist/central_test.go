@@ -196,3 +196,61 @@ func TestCentralDomain(t *testing.T) {
 		}
 	}
 }
+
+// Nothing hangs, panics or leaves [0, 1], whatever the arguments.
+func TestExtremeArguments(t *testing.T) {
+	extreme := []float64{-inf, -1e300, -1, 0, 5e-324, 1e-300, .5, 37, 1e5, 1e300, inf, math.NaN()}
+	lambda := []float64{.3, .8}
+	dunnett, spread := NewDunnett(lambda, Greater), NewStudentizedRange(5)
+	for _, x := range extreme {
+		for _, df := range extreme {
+			for i, p := range []float64{
+				TUpper(x, df), ChiSquaredUpper(x, df), NormalUpper(x), spread.Upper(x, df), dunnett.Upper(x, df), MaximumModulusUpper(x, 4, df),
+				NoncentralTUpper(x, df, 3), NoncentralTUpper(x, 5, df), NoncentralChiSquaredUpper(x, df, 20), NoncentralChiSquaredLower(x, 4, df),
+				FUpper(x, df, 7), FUpper(x, 7, df), FUpper(2, x, df), FTwoSided(x, df, df), NoncentralFUpper(x, df, 9, 11), NoncentralFLower(x, 3, df, 11), NoncentralFUpper(2, 3, x, df),
+			} {
+				if !(p >= 0 && p <= 1) && !math.IsNaN(p) {
+					t.Errorf("function %d at %g, %g: %g", i, x, df, p)
+				}
+				if math.IsNaN(p) && x >= 0 && df >= .5 && df <= 1e5 && i != 7 && i != 9 && i != 12 && i != 16 {
+					t.Errorf("function %d at %g, %g: NaN", i, x, df)
+				}
+			}
+			TQuantile(x, df)
+			FQuantile(x, df, 3)
+			FQuantile(.01, x, df)
+			ChiSquaredQuantile(x, df)
+			spread.Quantile(x, df)
+			dunnett.Quantile(x, df)
+			NoncentralFQuantile(.05, 3, x, df)
+			NoncentralChiSquaredQuantile(.05, x, df)
+		}
+	}
+}
+
+// Criteria for outliers, which are t in disguise: F. E. Grubbs' two-sided 5 % (his n = 8:
+// 2.127, n = 20: 2.709), and the largest external residual by Bonferroni in the layout of
+// R. E. Lund, Technometrics 17 (1975) 473; digits computed independently.
+func TestOutlierCriteria(t *testing.T) {
+	grubbs := func(alpha, n float64) float64 {
+		x := TQuantile(alpha/n, n-2)
+		return (n - 1) / math.Sqrt(n) * math.Sqrt(x*x/(n-2+x*x))
+	}
+	for _, tt := range []struct{ n, want float64 }{
+		{5, 1.71503731234}, {6, 1.88714511778}, {7, 2.01996850768}, {8, 2.1266450872}, {10, 2.28995408448}, {15, 2.54830777174}, {20, 2.70824564581}, {30, 2.90847305974},
+	} {
+		needDigits(t, "Grubbs, two sides", grubbs(.025, tt.n), tt.want, 11)
+	}
+	needDigits(t, "Grubbs, one side", grubbs(.05, 10), 2.17606839419, 11)
+	needDigits(t, "Grubbs, one side", grubbs(.05, 20), 2.55658133449, 11)
+	for _, tt := range []struct{ n, p, want float64 }{{10, 2, 4.02933717764}, {20, 5, 3.67459390847}, {24, 9, 3.7667297897}, {50, 10, 3.55812008133}} {
+		needDigits(t, "largest residual", TQuantile(.025/tt.n, tt.n-tt.p-1), tt.want, 11)
+	}
+}
+
+// P of published analyses of variance, recomputed: W. G. Cochran & G. M. Cox, Experimental
+// Designs (1957) p. 97, potato scab; cotton of D. C. Montgomery.
+func TestPublishedF(t *testing.T) {
+	needDigits(t, "scab", FUpper(3.60808842629, 6, 25), .0102621846626, 11)
+	needDigits(t, "cotton", FUpper(14.75682382134, 4, 20), 9.12793712406e-6, 11)
+}

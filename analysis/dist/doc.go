@@ -4,7 +4,8 @@
 // A function named XUpper returns P(X > x). An argument called upperP is the
 // probability above the quantile, so that XUpper(XQuantile(upperP)) = upperP
 // and no caller subtracts a small probability from one. Degrees of freedom are
-// any positive number, +Inf included. An argument outside its domain, or NaN,
+// any positive number, +Inf included; those of ranges, maxima, comparisons with a
+// control and noncentral t at least 0.05. An argument outside its domain, or NaN,
 // gives NaN.
 //
 // The incomplete beta and gamma functions are our own, because tails of 1e-300

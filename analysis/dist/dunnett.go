@@ -44,7 +44,7 @@ func NewDunnett(lambda []float64, side Side) *Dunnett {
 // Upper returns P(max > t), for two sides P(max |T| > t).
 func (d *Dunnett) Upper(t, df float64) float64 {
 	switch {
-	case math.IsNaN(t) || !(df > 0):
+	case math.IsNaN(t) || !(df >= minDF):
 		return math.NaN()
 	case t <= d.lowest:
 		return 1
@@ -56,7 +56,7 @@ func (d *Dunnett) Upper(t, df float64) float64 {
 
 // Quantile returns t with P(max > t) = upperP.
 func (d *Dunnett) Quantile(upperP, df float64) float64 {
-	if !(df > 0) {
+	if !(df >= minDF) {
 		return math.NaN()
 	}
 	return studentizedQuantile(upperP, d.lowest, func(t float64) float64 { return d.Upper(t, df) })
@@ -136,7 +136,7 @@ func (m *normalMaximum) exceed(w, z float64) float64 {
 // upper returns P(max > w) = ∫ φ(z) P(max > w | z) dz by the trapezoidal rule, the step
 // halved until two sums agree to 1e-10.
 func (m *normalMaximum) upper(w float64) float64 {
-	if w > 39 {
+	if w > 37.5 {
 		return 0 // below what float64 holds, for any k
 	}
 	if w < -9 {
@@ -159,7 +159,7 @@ func (m *normalMaximum) upper(w float64) float64 {
 	for z := from + h; z < to-h/2; z += h {
 		sum += at(z)
 	}
-	for range 10 {
+	for range 6 {
 		var between float64
 		for z := from + h/2; z < to; z += h {
 			between += at(z)

@@ -4,6 +4,11 @@ import "math"
 
 const epsilon = 0x1p-52
 
+// maxTerms ends a series or fraction that does not settle, with NaN. They take some ten
+// times the square root of the greater parameter, so this is for degrees of freedom
+// beyond 1e10 on both sides of F.
+const maxTerms = 1e6
+
 // stirling returns the error of Stirling's formula,
 //
 //	ln Γ(a) − (a − ½) ln a + a − ½ ln 2π
@@ -36,8 +41,8 @@ func deviance(a, m float64) float64 {
 	for j := 3.0; ; j += 2 {
 		term *= v * v
 		next := s + term/j
-		if next == s {
-			return s
+		if next == s || math.IsNaN(next) {
+			return next
 		}
 		s = next
 	}
@@ -69,7 +74,7 @@ func betaRatio(a, b, x, y float64) float64 {
 	}
 	c := a * (lambda + 1) / (a + 1)
 	h, d := c, 0.0
-	for m := 1.0; ; m++ {
+	for m := 1.0; m <= maxTerms; m++ {
 		s := a + 2*m - 1
 		alpha := (a + m - 1) / s * ((a + b + m - 1) / s) * m * (b - m) * x * x
 		beta := m + m*(b-m)*x/s + (a+m)/(s+2)*(lambda+1+m*(1+y))
@@ -77,10 +82,11 @@ func betaRatio(a, b, x, y float64) float64 {
 		c = beta + alpha/c
 		delta := c * d
 		h *= delta
-		if math.Abs(delta-1) <= 2*epsilon || m > 1e6 {
+		if math.Abs(delta-1) <= 2*epsilon {
 			return 1 / h
 		}
 	}
+	return math.NaN()
 }
 
 // betaTails returns Iₓ(a, b) and 1 − Iₓ(a, b), the smaller with full relative accuracy.
@@ -105,13 +111,14 @@ func betaTails(a, b, x, y float64) (lower, upper float64) {
 func gammaLowerRatio(a, x float64) float64 {
 	term := 1 / a
 	sum := term
-	for n := 1.0; ; n++ {
+	for n := 1.0; n <= maxTerms; n++ {
 		term *= x / (a + n)
 		sum += term
 		if term <= sum*epsilon/4 {
 			return sum
 		}
 	}
+	return math.NaN()
 }
 
 // gammaUpperRatio returns Γ(a, x) / (xᵃ e⁻ˣ) for x ≥ a by Legendre's continued fraction
@@ -120,17 +127,18 @@ func gammaUpperRatio(a, x float64) float64 {
 	beta := x + 1 - a
 	c := beta
 	h, d := beta, 0.0
-	for n := 1.0; ; n++ {
+	for n := 1.0; n <= maxTerms; n++ {
 		alpha := n * (a - n)
 		beta += 2
 		d = 1 / (beta + alpha*d)
 		c = beta + alpha/c
 		delta := c * d
 		h *= delta
-		if math.Abs(delta-1) <= 2*epsilon || n > 1e6 {
+		if math.Abs(delta-1) <= 2*epsilon {
 			return 1 / h
 		}
 	}
+	return math.NaN()
 }
 
 // gammaTails returns P(a, x) and Q(a, x), the smaller with full relative accuracy.

@@ -10,7 +10,7 @@ func MaximumModulusUpper(t float64, k int, df float64) float64 {
 		panic("dist: a maximum needs a value")
 	}
 	switch {
-	case math.IsNaN(t) || !(df > 0):
+	case math.IsNaN(t) || !(df >= minDF):
 		return math.NaN()
 	case t <= 0:
 		return 1
@@ -24,7 +24,7 @@ func MaximumModulusUpper(t float64, k int, df float64) float64 {
 
 // MaximumModulusQuantile returns t with P(max |Tᵢ| > t) = upperP.
 func MaximumModulusQuantile(upperP float64, k int, df float64) float64 {
-	if !(df > 0) {
+	if !(df >= minDF) {
 		return math.NaN()
 	}
 	return studentizedQuantile(upperP, 0, func(t float64) float64 { return MaximumModulusUpper(t, k, df) })

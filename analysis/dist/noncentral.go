@@ -13,7 +13,7 @@ const maxNoncentrality = 1e10
 // The lower tail is NoncentralTUpper(−t, df, −delta). At least 9 digits for |delta| up to 100.
 func NoncentralTUpper(t, df, delta float64) float64 {
 	switch {
-	case math.IsNaN(t) || !(df > 0) || !(math.Abs(delta) <= 1e5):
+	case math.IsNaN(t) || !(df >= minDF) || !(math.Abs(delta) <= 1e5):
 		return math.NaN()
 	case math.IsInf(t, 1):
 		return 0
@@ -98,9 +98,18 @@ func noncentralChiSquared(x, df, lambda float64) (lower, upper float64) {
 	// Consecutive tails differ by xᵃe⁻ˣ/Γ(a+1), in halves.
 	gap := func(j float64) float64 { return half / (a + j + 1) }
 	if x > df+lambda {
+		// √χ′² is at most √χ² + √λ: a bound on how far out the tail ends in float64.
+		if root := math.Sqrt(x) - math.Sqrt(lambda); ChiSquaredUpper(root*root, df) == 0 {
+			return 1, 0
+		}
 		j := firstTerm(lambda / 2)
 		upper = poissonUpper(lambda/2, j, lnGammaDensity(a+j, half)-math.Log(a+j), (a+j)*gammaUpperRatio(a+j, half), gap)
 		return 1 - upper, upper
+	}
+	if gap(0)*lambda < 1e-20 {
+		lower, _ = gammaTails(a, half) // only the first term counts
+		lower *= math.Exp(-lambda / 2)
+		return lower, 1 - lower
 	}
 	j := lastTerm(lambda / 2)
 	lower = poissonLower(lambda/2, j, lnGammaDensity(a+j, half)-math.Log(a+j), (a+j)*gammaLowerRatio(a+j, half), gap)
@@ -141,6 +150,11 @@ func noncentralF(f, d1, d2, lambda float64) (lower, upper float64) {
 		upper = poissonUpper(lambda/2, j, lnBetaDensity(a+j, b, x, y)-math.Log(a+j), (a+j)*betaRatio(b, a+j, y, x), gap)
 		return 1 - upper, upper
 	}
+	if gap(0)*lambda < 1e-20 {
+		lower, _ = betaTails(a, b, x, y)
+		lower *= math.Exp(-lambda / 2)
+		return lower, 1 - lower
+	}
 	j := lastTerm(lambda / 2)
 	lower = poissonLower(lambda/2, j, lnBetaDensity(a+j, b, x, y)-math.Log(a+j), (a+j)*betaRatio(a+j, b, x, y), gap)
 	return lower, 1 - lower
@@ -163,26 +177,28 @@ func lnPoisson(m, j float64) float64 {
 // to the next: Qᵢ₊₁ = Qᵢ + gᵢ. All parts are positive, so nothing is lost.
 //
 // lng is ln gⱼ, ratio is Qⱼ/gⱼ, gap(i) is gᵢ₊₁/gᵢ; the sum is kept in units of pⱼgⱼ, times
-// a power of e when that grows out of range.
+// a power of two when that grows out of range.
 func poissonUpper(m, j, lng, ratio float64, gap func(i float64) float64) float64 {
 	lnUnit := lnPoisson(m, j) + lng
 	weight, sum := 1.0, ratio
-	for {
+	for range int(4 * maxTerms) {
 		g := gap(j)
 		ratio = (ratio + 1) / g
 		weight *= m / (j + 1) * g
 		j++
 		term := weight * ratio
 		sum += term
-		if term <= 1e-17*sum && j > m {
+		if !(term > 1e-17*sum) && j > m {
 			// Unimodal, and past the mode of both factors.
 			return math.Min(1, math.Exp(lnUnit+math.Log(sum)))
 		}
-		if sum > 1e200 {
-			sum, weight = sum*0x1p-600, weight*0x1p-600
-			lnUnit += 600 * math.Ln2
+		if sum > 1e100 {
+			_, power := math.Frexp(sum)
+			sum, weight = math.Ldexp(sum, -power), math.Ldexp(weight, -power)
+			lnUnit += float64(power) * math.Ln2
 		}
 	}
+	return math.NaN()
 }
 
 // poissonLower returns Σ pᵢPᵢ from i = j down to 0, for lower tails with Pᵢ₋₁ = Pᵢ + gᵢ₋₁;
@@ -197,12 +213,13 @@ func poissonLower(m, j, lng, ratio float64, gap func(i float64) float64) float64
 		j--
 		term := weight * ratio
 		sum += term
-		if term <= 1e-17*sum && j < m {
+		if !(term > 1e-17*sum) && j < m {
 			break
 		}
-		if sum > 1e200 {
-			sum, weight = sum*0x1p-600, weight*0x1p-600
-			lnUnit += 600 * math.Ln2
+		if sum > 1e100 {
+			_, power := math.Frexp(sum)
+			sum, weight = math.Ldexp(sum, -power), math.Ldexp(weight, -power)
+			lnUnit += float64(power) * math.Ln2
 		}
 	}
 	return math.Min(1, math.Exp(lnUnit+math.Log(sum)))

@@ -146,6 +146,35 @@ func TestNoncentralT(t *testing.T) {
 	needDigits(t, "one-sided power", NoncentralTUpper(TQuantile(.05, 15), 15, delta), .797667392023, 10)
 }
 
+// J. Cohen, Psychological Bulletin 112 (1992) 155: n of each group for power .80 at α = .05
+// (from memory), and the power they really have.
+func TestSampleSizes(t *testing.T) {
+	for _, tt := range []struct{ f, k, n, power float64 }{
+		{.10, 2, 393, .799594241162}, {.10, 3, 322, .7997944308}, {.10, 4, 274, .800732405814}, {.25, 2, 64, .801459557922}, {.25, 3, 52, .796732861667},
+		{.25, 4, 45, .803986912865}, {.25, 5, 39, .798187201994}, {.40, 2, 26, .807486615147}, {.40, 3, 21, .797817713864}, {.40, 4, 18, .79890221981},
+	} {
+		d2 := tt.k * (tt.n - 1)
+		needDigits(t, "power", NoncentralFUpper(FQuantile(.05, tt.k-1, d2), tt.k-1, d2, tt.k*tt.n*tt.f*tt.f), tt.power, 9.5)
+	}
+	// Smallest n with two means Δ apart and the others midway, as tabled by J. Neter et al.,
+	// Applied Linear Statistical Models (from memory).
+	for _, tt := range []struct{ r, delta, alpha, power, n, reached float64 }{
+		{4, 1.5, .05, .90, 14, .9091825866}, {3, 1, .05, .90, 27, .9077108361}, {3, 1, .05, .80, 21, .8147696928},
+		{4, 2, .05, .80, 7, .8361289022}, {2, 1, .05, .80, 17, .8070367151}, {4, 1, .05, .80, 23, .8038632662}, {5, 2, .05, .90, 9, 0}, {4, 1.5, .01, .90, 19, 0},
+	} {
+		power := func(n float64) float64 {
+			d2 := tt.r * (n - 1)
+			return NoncentralFUpper(FQuantile(tt.alpha, tt.r-1, d2), tt.r-1, d2, n*tt.delta*tt.delta/2)
+		}
+		if power(tt.n) < tt.power || power(tt.n-1) >= tt.power {
+			t.Errorf("r=%g Δ=%g: %g is not the smallest n", tt.r, tt.delta, tt.n)
+		}
+		if tt.reached != 0 {
+			needDigits(t, "power", power(tt.n), tt.reached, 9.5)
+		}
+	}
+}
+
 func TestNoncentralSimulated(t *testing.T) {
 	random := rand.New(rand.NewPCG(15, 16))
 	const draws = 200_000

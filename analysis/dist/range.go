@@ -21,7 +21,7 @@ func NewStudentizedRange(r int) *StudentizedRange {
 // Upper returns P(Q > q).
 func (d *StudentizedRange) Upper(q, df float64) float64 {
 	switch {
-	case math.IsNaN(q) || !(df > 0):
+	case math.IsNaN(q) || !(df >= minDF):
 		return math.NaN()
 	case q <= 0:
 		return 1
@@ -33,7 +33,7 @@ func (d *StudentizedRange) Upper(q, df float64) float64 {
 
 // Quantile returns q with P(Q > q) = upperP.
 func (d *StudentizedRange) Quantile(upperP, df float64) float64 {
-	if !(df > 0) {
+	if !(df >= minDF) {
 		return math.NaN()
 	}
 	return studentizedQuantile(upperP, 0, func(q float64) float64 { return d.Upper(q, df) })
@@ -65,10 +65,17 @@ func newRange(r int) *normalRange {
 	if r < 2 {
 		panic("dist: a range needs two values")
 	}
-	h := 0.25
-	if r > 12 {
-		h = 0.125
+	// The largest of many values varies little: the step follows it.
+	switch {
+	case r > 500:
+		return newRangeGrid(r, 0.0625)
+	case r > 12:
+		return newRangeGrid(r, 0.125)
 	}
+	return newRangeGrid(r, 0.25)
+}
+
+func newRangeGrid(r int, h float64) *normalRange {
 	d := &normalRange{h: h, power: float64(r - 1)}
 	for z := rangeFrom; z <= rangeTo; z += h {
 		cdf := NormalUpper(-z)
@@ -86,6 +93,9 @@ func newRange(r int) *normalRange {
 // (Pearson & Hartley, Biometrika 32 (1942) 301, for the lower tail; subtracted here
 // under the integral, so that no digits are lost far out). Trapezoidal rule.
 func (d *normalRange) upper(w float64) float64 {
+	if w > 54 {
+		return 0 // below what float64 holds
+	}
 	// Far out the integrand lies around z = w/2 with standard deviation 1/√2.
 	from := int((math.Max(rangeFrom, w/2-8.5) - rangeFrom) / d.h)
 	to := int((math.Max(8.5, w/2+6.5) - rangeFrom) / d.h)

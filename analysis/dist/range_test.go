@@ -81,10 +81,11 @@ func TestNormalRange(t *testing.T) {
 		}
 		needDigits(t, "range of three", three.upper(w), sum*h/3, 11)
 	}
-	for _, r := range []int{2, 3, 9, 12, 13, 40, 200, 1000} {
-		d := NewStudentizedRange(r)
-		for w := .003; w < 16; w += .037 {
-			needDigits(t, "interpolated", d.tail.at(w), d.tail.tail(w), 12)
+	for _, r := range []int{2, 3, 9, 12, 13, 40, 200, 1000, 10000} {
+		d, fine := NewStudentizedRange(r), newRangeGrid(r, .03125)
+		for w := .003; w < 16; w += .137 {
+			needDigits(t, "interpolated", d.tail.at(w), d.tail.tail(w), 11)
+			needDigits(t, "half the step", d.tail.tail(w), fine.upper(w), 10.5)
 		}
 	}
 }

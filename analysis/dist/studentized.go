@@ -7,6 +7,10 @@ import (
 	"penwright/analysis/solve"
 )
 
+// minDF is the fewest degrees of freedom of the functions that integrate over the
+// error mean square; below it the integrand reaches too far to the left.
+const minDF = 0.05
+
 // studentizedUpper returns P(M/S > q), where M has the decreasing tail
 // tail(w) = P(M > w) and S² is an independent χ²/df.
 //
@@ -42,7 +46,7 @@ func studentizedUpper(q, df, shift float64, tail func(w float64) float64) float6
 			term := integrand(u)
 			sum += term
 			largest = math.Max(largest, term)
-			if term <= 1e-19*largest && term <= previous && (largest > 0 || exponent(u) < -750) {
+			if !(term > 1e-19*largest) && !(term > previous) && (largest > 0 || exponent(u) < -750) {
 				return steps
 			}
 			previous = term
@@ -50,7 +54,7 @@ func studentizedUpper(q, df, shift float64, tail func(w float64) float64) float6
 	}
 	right := walk(h)
 	left := walk(-h)
-	for range 12 {
+	for range 8 {
 		var between float64
 		for k := -left; k < right; k++ {
 			between += integrand(start + (k+0.5)*h)
@@ -159,11 +163,11 @@ func interpolate(tail func(w float64) float64, from, to float64) *interpolated {
 
 // at returns the tail at w, outside the interpolated range from the function itself.
 func (f *interpolated) at(w float64) float64 {
-	position := (w - f.from) / pieceWidth
-	i := int(position)
-	if !(w >= f.from && w < f.to) || i >= len(f.pieces) {
+	if !(w >= f.from && w < f.to) {
 		return f.tail(w)
 	}
+	position := (w - f.from) / pieceWidth
+	i := min(int(position), len(f.pieces)-1)
 	p := &f.pieces[i]
 	p.once.Do(func() {
 		const n = pieceDegree + 1
@@ -196,5 +200,5 @@ func (f *interpolated) at(w float64) float64 {
 	for j := pieceDegree; j > 0; j-- {
 		b1, b2 = p.coefficient[j]+x*b1-b2, b1
 	}
-	return math.Exp(p.coefficient[0] + x/2*b1 - b2)
+	return math.Min(1, math.Exp(p.coefficient[0]+x/2*b1-b2))
 }
