@@ -163,6 +163,8 @@ func (r *reader) completeAllotment() *allot.Allotment {
 		a = &allot.Allotment{Plan: r.plan, Levels: make([][]int32, len(r.plan.Factors)), Origin: allot.FromData}
 		a.Order = r.order()
 	}
+	// Where a file or its cells could not be read, that has been said already.
+	follows := len(r.failed) > 0 || r.faults.Has(allot.UnknownLevelCode) || r.faults.Has(allot.LevelVaries) || r.faults.Has(allot.UnknownUnit)
 	learned := false
 	for k := range r.plan.Factors {
 		of := &r.plan.Factors[k]
@@ -171,23 +173,21 @@ func (r *reader) completeAllotment() *allot.Allotment {
 		}
 		l := r.learned[k]
 		if l == nil {
-			what := "the class that"
-			key := fmt.Sprintf("unit[%d].carries", of.Unit)
-			if !of.Carried {
-				what, key = "what", fmt.Sprintf("unit[%d].receives", of.Unit)
-			}
 			if a.Levels[k] == nil {
 				a.Levels[k] = make([]int32, r.plan.Units[of.Unit].N)
 				for i := range a.Levels[k] {
 					a.Levels[k][i] = -1
 				}
 			}
+			unit := r.plan.Units[of.Unit].Name
 			hint := fmt.Sprintf("add a column %q to the data, or bring %s", of.Name, allot.File)
-			verb := "received"
-			if of.Carried {
-				verb = "is of"
+			switch {
+			case follows:
+			case of.Carried:
+				r.fail(fmt.Sprintf("unit[%d].carries", of.Unit), NoAllotment, hint, "nothing tells the %s of each %s: no file has a column %q", of.Name, unit, of.Name)
+			default:
+				r.fail(fmt.Sprintf("unit[%d].receives", of.Unit), NoAllotment, hint, "nothing tells the %s that each %s received: no file has a column %q", of.Name, unit, of.Name)
 			}
-			r.fail(key, NoAllotment, hint, "nothing tells %s each %s %s: there is no column %q in the data", what, r.plan.Units[of.Unit].Name, verb, of.Name)
 			continue
 		}
 		learned = true
@@ -207,7 +207,7 @@ func (r *reader) completeAllotment() *allot.Allotment {
 				without = append(without, int32(i))
 			}
 		}
-		if len(without) > 0 {
+		if len(without) > 0 && !follows {
 			more := ""
 			if len(without) > 1 {
 				more = fmt.Sprintf(" and %d more", len(without)-1)

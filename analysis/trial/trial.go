@@ -6,6 +6,7 @@ import (
 	"errors"
 	"fmt"
 	"io/fs"
+	"slices"
 
 	"penwright/analysis/dataset"
 	"penwright/protocol"
@@ -18,7 +19,7 @@ import (
 // ProtocolFile is the name of the protocol in a trial folder.
 const ProtocolFile = "protocol.toml"
 
-// The limits of files that are read for their text, and of those only named.
+// maxRoster is the greatest size of a roster in bytes.
 const maxRoster = 16 << 20
 
 // Trial is what a folder holds so far. Allotment and Table are nil until they exist.
@@ -39,6 +40,10 @@ func Open(files *folder.Folder) (*Trial, diag.List) {
 	list := t.open(files)
 	t.Files = files.Files()
 	list.Sort()
+	// The roster is read for the draw and for the data, which say the same of it.
+	list = slices.CompactFunc(list, func(a, b diag.Diagnostic) bool {
+		return a.Pos == b.Pos && a.Code == b.Code && a.Message == b.Message
+	})
 	return t, list
 }
 

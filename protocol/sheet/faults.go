@@ -36,6 +36,9 @@ func (f *Faults) AddAll(list diag.List) {
 // HasErrors tells whether an error was added.
 func (f *Faults) HasErrors() bool { return f.list.HasErrors() }
 
+// Has tells whether anything of a code was added.
+func (f *Faults) Has(code string) bool { return f.count[code] > 0 }
+
 // Full tells whether more of a code would only be counted.
 func (f *Faults) Full(code string) bool { return f.count[code] >= kept }
 
