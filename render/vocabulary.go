@@ -93,7 +93,7 @@ func (b *builder) text(t protocol.Text) any {
 }
 
 func paragraph(s string) doc.Block {
-	return doc.Paragraph{Text: []doc.Inline{doc.Text{Text: s}}}
+	return doc.Paragraph{Text: inlines(s)}
 }
 
 // paragraphs sets sentences as one paragraph.
@@ -287,19 +287,19 @@ func (b *builder) functions() template.FuncMap {
 			}
 			return nil, fault("list", name, []string{"hypotheses", "endpoints"})
 		},
-		"methods": func(name string) (string, error) {
+		"methods": func(name string) ([]doc.Inline, error) {
 			r, err := response([]string{name})
 			if err != nil {
-				return "", err
+				return nil, err
 			}
-			return prose.Methods(t, r), nil
+			return inlines(prose.Methods(t, r)), nil
 		},
-		"results": func(name string) (string, error) {
+		"results": func(name string) ([]doc.Inline, error) {
 			r, err := response([]string{name})
 			if err != nil {
-				return "", err
+				return nil, err
 			}
-			return prose.Results(t, r), nil
+			return inlines(prose.Results(t, r)), nil
 		},
 		"notes": func(name string) ([]doc.Block, error) {
 			r, err := response([]string{name})
