@@ -188,13 +188,6 @@ func gallery() []struct {
 		}
 	}
 	shaded.Boxes[1].Cells[2].Excluded, shaded.Boxes[1].Cells[2].Value = true, none
-	wideShade := planned("block 8, plot within block 60", 60)
-	wideShade.Shade = "Residual of yield, t/ha"
-	for b := range wideShade.Boxes {
-		for i := range wideShade.Boxes[b].Cells {
-			wideShade.Boxes[b].Cells[i].Value = 0.4*noise(b*60+i) + 0.3*math.Sin(float64(i)/9)
-		}
-	}
 	split := FromPlan(plan("block 4, paddock within block 3, pen within paddock 4"), func(u, i int) Look {
 		if u == 1 {
 			return Look{Label: []string{"rotational", "set stocked", "strip grazed"}[(i+i/3)%3], Value: none}
@@ -240,10 +233,6 @@ func gallery() []struct {
 		{"map-squares", planned("square 2, cow within square 4, period within square 4, sample crosses cow period", 4)},
 		{"map-split", split},
 		{"map-strip", planned("block 3, strip within block 3, lane within block 4, plot crosses strip lane", 12)},
-		{"map-lattice", planned("replicate 4, block within replicate 6, plot within block 6", 36)},
-		{"map-many", planned("block 8, plot within block 60", 60)},
-		{"map-residuals-many", wideShade},
-		{"map-crowded", planned("block 20, plot within block 120", 120)},
 		{"flow", Flow{Unit: "pen", Stages: []string{"planned", "allotted", "observed", "analysed"}, Rows: []FlowRow{
 			{Label: "0 g/kg", Counts: []int{5, 5, 5, 5}},
 			{Label: "20 g/kg", Counts: []int{5, 5, 5, 4}, Reasons: []string{"", "", "feeder failure"}},
@@ -263,6 +252,23 @@ func gallery() []struct {
 		{"interaction", crossed(4, 3)},
 		{"interaction-names", byName},
 		{"interaction-many", crossed(5, 12)},
+	}
+}
+
+// crowds are maps of hundreds of units, too large for golden files.
+func crowds() []Map {
+	wideShade := planned("block 8, plot within block 60", 60)
+	wideShade.Shade = "Residual of yield, t/ha"
+	for b := range wideShade.Boxes {
+		for i := range wideShade.Boxes[b].Cells {
+			wideShade.Boxes[b].Cells[i].Value = 0.4*noise(b*60+i) + 0.3*math.Sin(float64(i)/9)
+		}
+	}
+	return []Map{
+		wideShade,
+		planned("replicate 4, block within replicate 6, plot within block 6", 36),
+		planned("block 8, plot within block 60", 60),
+		planned("block 20, plot within block 120", 120),
 	}
 }
 

@@ -1,7 +1,6 @@
 package figure
 
 import (
-	"bytes"
 	"fmt"
 	"math"
 	"reflect"
@@ -31,13 +30,11 @@ func inspect(t *testing.T, pic *doc.Picture) {
 	var texts []doc.Label
 	const slack = 0.02
 	inside := func(what string, b box) {
-		t.Helper()
 		if !(b.x0 >= -slack && b.y0 >= -slack && b.x1 <= pic.Width+slack && b.y1 <= pic.Height+slack) {
 			t.Errorf("%s leaves the picture of %v by %v: %+v", what, pic.Width, pic.Height, b)
 		}
 	}
-	paths := func(what string, segments []doc.Segment, w float64) {
-		t.Helper()
+	paths := func(what string, segments []doc.Segment) {
 		for i, s := range segments {
 			if i == 0 && s.Kind != doc.MoveTo {
 				t.Errorf("%s does not begin with a move", what)
@@ -55,9 +52,9 @@ func inspect(t *testing.T, pic *doc.Picture) {
 	for _, op := range pic.Ops {
 		switch op := op.(type) {
 		case doc.Stroke:
-			paths("a stroke", op.Path, op.Width)
+			paths("a stroke", op.Path)
 		case doc.Fill:
-			paths("a fill", op.Path, 0)
+			paths("a fill", op.Path)
 		case doc.Label:
 			if op.Angle != 0 && op.Angle != 90 {
 				t.Errorf("%q is turned by %v", op.Text, op.Angle)
@@ -234,6 +231,50 @@ func TestExtremes(t *testing.T) {
 	}
 }
 
+func TestMapsOfAnyShape(t *testing.T) {
+	grid := func(rows, columns int) Map {
+		b := Box{Label: "Field", Columns: columns}
+		for r := range rows {
+			b.Down = append(b.Down, fmt.Sprint("Row ", r+1))
+			for range columns {
+				b.Cells = append(b.Cells, Cell{Unit: "plot", Label: "T1", Value: noise(r)})
+			}
+		}
+		for c := range columns {
+			b.Across = append(b.Across, fmt.Sprint("Column ", c+1))
+		}
+		return Map{Unit: "plot", Boxes: []Box{b}, Treatments: []string{"T1"}}
+	}
+	many := Map{Unit: "pen"}
+	deep := Box{Label: "innermost", Cells: make([]Cell, 3)}
+	for i := range 3000 {
+		many.Boxes = append(many.Boxes, Box{Label: fmt.Sprint("House ", i), Cells: make([]Cell, 1+i%2)})
+		if i < 40 {
+			deep = Box{Label: fmt.Sprint("level ", i), Boxes: []Box{deep, {}}}
+		}
+	}
+	for i, m := range []Map{
+		grid(1, 1), grid(1, 2000), grid(2000, 1), grid(60, 60), grid(3, 900), many,
+		{Boxes: []Box{deep}}, {Boxes: []Box{{Columns: 4}, {Label: "x", Columns: 4, Boxes: []Box{{}, deep}, Across: []string{"a", "b"}, Down: []string{"c", "d"}}}},
+		planned("row 3, column 3, plot crosses row column, subplot within plot 4", 4),
+		planned("block 2, strip within block 3, lane within block 4, plot crosses strip lane, subplot within plot 2", 2),
+		planned("site 3, block within site 4, plot within block 6, sample within plot 2", 2),
+	} {
+		for _, shade := range []string{"", "Residual"} {
+			m.Shade = shade
+			pic, alt := m.Draw()
+			inspect(t, pic)
+			sentences(t, alt)
+			if pic.Height > pageHeight+60 {
+				t.Errorf("map %d is %v high", i, pic.Height)
+			}
+			if t.Failed() {
+				t.Fatalf("map %d %s", i, shade)
+			}
+		}
+	}
+}
+
 func TestManyPoints(t *testing.T) {
 	const n = 100_000
 	p := Points{Response: "Mass, g", By: "Diet", Groups: []Group{{Label: "a", Mean: 500}, {Label: "b", Mean: 510}}}
@@ -333,19 +374,14 @@ func TestMarksNameUnits(t *testing.T) {
 	}
 }
 
-func TestBytes(t *testing.T) {
-	draw := func() []byte {
-		var b bytes.Buffer
-		for _, g := range gallery() {
-			pic, alt := g.Draw()
-			b.WriteString(svg(pic) + alt)
-		}
-		return b.Bytes()
-	}
-	first := draw()
-	for range 3 {
-		if !bytes.Equal(first, draw()) {
-			t.Fatal("two drawings differ")
+func TestCrowds(t *testing.T) {
+	for _, m := range crowds() {
+		pic, alt := m.Draw()
+		inspect(t, pic)
+		sentences(t, alt)
+		again, _ := m.Draw()
+		if !reflect.DeepEqual(pic, again) {
+			t.Error("two drawings differ")
 		}
 	}
 }

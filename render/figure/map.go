@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"sort"
 	"strconv"
 	"strings"
 
@@ -196,10 +197,11 @@ func (p *mapper) choose(boxes []Box, most float64) {
 	if p.Shade != "" {
 		natural = max(natural, 34)
 	}
-	tall := 21.0
-	set := func(s float64) {
-		p.cw, p.ch = max(natural*s, 2), max(tall*math.Pow(s, 0.75), 2)
-		p.gap = min(max(p.cw*0.28, 1.5), 9)
+	const tall = 21.0
+	set := func(k int) {
+		s := math.Pow(0.93, float64(k))
+		p.cw, p.ch = natural*s, tall*math.Pow(s, 0.75)
+		p.gap = min(max(p.cw*0.28, min(p.cw, 1.5)), 9)
 		p.label = noteSize
 		if p.ch < 9 {
 			p.label = tinySize
@@ -208,29 +210,25 @@ func (p *mapper) choose(boxes []Box, most float64) {
 			p.label = 0
 		}
 	}
-	s := 1.0
-	var t *arranged
-	for {
-		set(s)
-		t = p.arrange(boxes)
-		if t.h <= most && t.w <= p.width || p.cw <= 2 && p.ch <= 2 {
-			break
-		}
-		s *= 0.93
-	}
+	// The smaller the cells, the more surely they fit; at the last they are dust.
+	k := sort.Search(180, func(k int) bool {
+		set(k)
+		t := p.arrange(boxes)
+		return t.h <= most && t.w <= p.width
+	})
+	set(k)
 	// What room is left across, the cells take.
-	for {
-		cw := p.cw
-		p.cw *= 1.04
-		if p.cw > widestCell {
-			p.cw = cw
-			break
-		}
-		if wider := p.arrange(boxes); wider.w > p.width || wider.h > t.h {
-			p.cw = cw
-			break
-		}
+	least, h := p.cw, p.arrange(boxes).h
+	steps := 0
+	if least < widestCell {
+		steps = int(math.Log(widestCell/least) / math.Log(1.03))
 	}
+	k = sort.Search(steps, func(k int) bool {
+		p.cw = least * math.Pow(1.03, float64(k+1))
+		wider := p.arrange(boxes)
+		return wider.w > p.width || wider.h > h
+	})
+	p.cw = least * math.Pow(1.03, float64(k))
 }
 
 // arrange places the boxes at the present size of cells.
