@@ -38,9 +38,12 @@ func over(c, ground doc.Colour) doc.Colour {
 	return doc.Colour{R: mix(c.R, ground.R), G: mix(c.G, ground.G), B: mix(c.B, ground.B), A: 255}
 }
 
-// pages are the grounds on which figures are seen, with the text's colour on each.
+// pages are the grounds on which figures are seen, with the text's colour on each: print,
+// the light and the dark page of the style sheet, and a dark page that is less dark.
 var pages = []struct{ paper, ink doc.Colour }{
 	{doc.Colour{R: 255, G: 255, B: 255, A: 255}, doc.Colour{A: 255}},
+	{doc.Colour{R: 255, G: 255, B: 255, A: 255}, doc.Colour{R: 0x1c, G: 0x21, B: 0x26, A: 255}},
+	{doc.Colour{R: 0x15, G: 0x18, B: 0x1b, A: 255}, doc.Colour{R: 0xe4, G: 0xe2, B: 0xdd, A: 255}},
 	{doc.Colour{R: 0x1c, G: 0x1c, B: 0x1f, A: 255}, doc.Colour{R: 0xe4, G: 0xe4, B: 0xe4, A: 255}},
 }
 
