@@ -105,22 +105,36 @@ func MeansNotEstimable(p *layout.Plan, term string) string {
 // LettersWithheld says why a term bears no letters.
 func LettersWithheld(why string) string { return "No letters: " + why + "." }
 
-// SEDKinds words the SEDs of a split plot or strip plot by kind.
+// SEDKinds words the SEDs of a split plot or strip plot by kind: within a level of a
+// factor, and otherwise.
 func SEDKinds(p *layout.Plan, kinds []SEDKind) string {
-	var parts []string
-	for _, k := range kinds {
-		d := num.SEDecimals(k.SED)
-		where := "otherwise"
-		if len(k.Same) > 0 {
-			var same []string
-			for _, f := range k.Same {
-				same = append(same, TermText(p, f))
+	d := 0
+	for i, k := range kinds {
+		d = max(d, num.SEDecimals(k.SED))
+		for _, l := range kinds[:i] {
+			// Kinds that differ are not printed alike.
+			for d < 8 && num.Fixed(k.SED, d) == num.Fixed(l.SED, d) {
+				d++
 			}
-			where = "within a level of " + And(same)
 		}
-		parts = append(parts, num.Fixed(k.SED, d)+" "+where)
 	}
-	return "SED by kind: " + strings.Join(parts, "; ") + "."
+	var parts []string
+	rest := ""
+	for _, k := range kinds {
+		if len(k.Same) == 0 {
+			rest = num.Fixed(k.SED, d) + " otherwise"
+			continue
+		}
+		var same []string
+		for _, f := range k.Same {
+			same = append(same, TermText(p, f))
+		}
+		parts = append(parts, num.Fixed(k.SED, d)+" within a level of "+And(same))
+	}
+	if rest != "" {
+		parts = append(parts, rest)
+	}
+	return "SED " + strings.Join(parts, ", ") + "."
 }
 
 // SEDKind is the SED of pairs of means that agree in the factors Same.

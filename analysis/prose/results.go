@@ -199,8 +199,12 @@ func MeansCaption(p *layout.Plan, r *result.Response, term string) string {
 // difference, what the letters say, and what qualifies the term.
 func MeansNotes(p *layout.Plan, r *result.Response, term string) []string {
 	var out []string
-	for _, k := range sedKinds(p, r, term) {
-		out = append(out, k)
+	kinds := false
+	for _, n := range r.Notes {
+		kinds = kinds || n.Term == term && n.Code == "sed-kinds"
+	}
+	if !kinds {
+		out = append(out, sedRange(r, term)...)
 	}
 	for _, s := range r.SED {
 		if s.Term == term && s.LSD.Known() {
@@ -238,16 +242,15 @@ func levelText(alpha float64) string {
 	return strings.TrimRight(strings.TrimRight(fmt.Sprintf("%.3f", 100*alpha), "0"), ".") + "\u202f%"
 }
 
-// sedKinds words the standard errors of differences of a term: one figure, or by kind
-// for terms of several factors.
-func sedKinds(p *layout.Plan, r *result.Response, term string) []string {
+// sedRange words the standard errors of differences of a term: one figure, or the range.
+func sedRange(r *result.Response, term string) []string {
 	for _, s := range r.SED {
 		if s.Term != term || !s.Mean.Known() {
 			continue
 		}
 		lo, hi := float64(s.Min), float64(s.Max)
 		d := num.SEDecimals(lo)
-		if hi-lo <= 1e-9*hi {
+		if num.Fixed(lo, d) == num.Fixed(hi, d) {
 			return []string{"SED " + num.Fixed(hi, d) + "."}
 		}
 		return []string{fmt.Sprintf("SED from %s to %s, %s in the mean of all pairs.", num.Fixed(lo, d), num.Fixed(hi, d), num.Fixed(float64(s.Mean), d))}

@@ -10,6 +10,7 @@ import (
 	"penwright/analysis/trial"
 	"penwright/protocol"
 	"penwright/protocol/diag"
+	"penwright/protocol/layout"
 	"penwright/render"
 	"penwright/render/term"
 )
@@ -36,7 +37,7 @@ func (a *app) check() *cobra.Command {
 		Example: "  penwright check hollowmere",
 		RunE: func(_ *cobra.Command, args []string) error {
 			if list {
-				for _, x := range protocol.Codes() {
+				for _, x := range append(protocol.Codes(), layout.Codes()...) {
 					fmt.Fprintf(a.out, "%-24s %s\n", x.Code, x.Text)
 				}
 				return nil
