@@ -5,6 +5,7 @@ import (
 	"math"
 	"slices"
 	"strings"
+	"unicode"
 
 	"gonum.org/v1/plot"
 
@@ -167,7 +168,7 @@ func (p Points) Draw() (*doc.Picture, string) {
 	end := 0.0
 	if named {
 		for _, b := range blocks {
-			end = max(end, width(fit(b, 70, noteSize, false), noteSize, false)+10)
+			end = max(end, width(p.block(b), noteSize, false)+10)
 		}
 	}
 	g := newGroups(p.Size, names, p.By, p.Response, values.padded(0.05), room{upright: end, lying: 1})
@@ -268,7 +269,7 @@ func (p Points) points(g *groups, blocks []string, number map[string]int, joined
 		}
 		for b, path := range paths {
 			if len(path) > 1 {
-				g.mark(blocks[b])
+				g.mark(p.block(blocks[b]))
 				g.stroke(line{width: 0.6, colour: tint(grey, 0.75)}, polyline(false, path...)...)
 			}
 		}
@@ -292,6 +293,15 @@ func (p Points) points(g *groups, blocks []string, number map[string]int, joined
 	}
 }
 
+// block names a block, saying what it is where its own name is a bare number.
+func (p Points) block(name string) string {
+	name = clean(name)
+	if what := clean(p.Blocks); what != "" && !strings.ContainsFunc(name, unicode.IsLetter) {
+		name = capital(what) + " " + name
+	}
+	return fit(name, 70, noteSize, false)
+}
+
 // name writes the names of blocks at the far ends of their lines.
 func (p Points) name(g *groups, blocks []string, paths [][][2]float64) {
 	if g.lying {
@@ -311,7 +321,7 @@ func (p Points) name(g *groups, blocks []string, paths [][][2]float64) {
 		path := paths[which[i]]
 		x := path[len(path)-1][0]
 		g.leader(x+4, at[i], g.x1+1, y)
-		g.text(g.x1+3, y+capHeight(noteSize)/2, left, style{size: noteSize, colour: ink}, fit(blocks[which[i]], 70, noteSize, false))
+		g.text(g.x1+3, y+capHeight(noteSize)/2, left, style{size: noteSize, colour: ink}, p.block(blocks[which[i]]))
 	}
 }
 
