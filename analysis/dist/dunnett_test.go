@@ -115,7 +115,7 @@ func TestDunnettSpecialCases(t *testing.T) {
 
 func TestDunnettSimulated(t *testing.T) {
 	random := rand.New(rand.NewPCG(3, 4))
-	const draws = 200_000
+	const draws = 60_000
 	n0, n := 3.0, []float64{2, 9, 30, 4}
 	lambda := control(n0, n...)
 	for _, tt := range []struct {

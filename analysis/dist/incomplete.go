@@ -4,10 +4,10 @@ import "math"
 
 const epsilon = 0x1p-52
 
-// maxTerms ends a series or fraction that does not settle, with NaN. They take some ten
-// times the square root of the greater parameter, so this is for degrees of freedom
-// beyond 1e10 on both sides of F.
-const maxTerms = 1e6
+// mostTerms ends a series or fraction that does not settle, with NaN. They take some ten
+// times the square root of the lesser parameter, so degrees of freedom above 1e10 (for F,
+// on both sides) may be refused.
+const mostTerms = 1e6
 
 // stirling returns the error of Stirling's formula,
 //
@@ -74,7 +74,7 @@ func betaRatio(a, b, x, y float64) float64 {
 	}
 	c := a * (lambda + 1) / (a + 1)
 	h, d := c, 0.0
-	for m := 1.0; m <= maxTerms; m++ {
+	for m := 1.0; m <= mostTerms; m++ {
 		s := a + 2*m - 1
 		alpha := (a + m - 1) / s * ((a + b + m - 1) / s) * m * (b - m) * x * x
 		beta := m + m*(b-m)*x/s + (a+m)/(s+2)*(lambda+1+m*(1+y))
@@ -82,7 +82,7 @@ func betaRatio(a, b, x, y float64) float64 {
 		c = beta + alpha/c
 		delta := c * d
 		h *= delta
-		if math.Abs(delta-1) <= 2*epsilon {
+		if !(math.Abs(delta-1) > 2*epsilon) { // NaN ends it too
 			return 1 / h
 		}
 	}
@@ -97,6 +97,8 @@ func betaTails(a, b, x, y float64) (lower, upper float64) {
 		return 0, 1
 	case y <= 0:
 		return 1, 0
+	case math.Min(a, b) > mostTerms*mostTerms:
+		return math.NaN(), math.NaN()
 	}
 	if (a+b)*y >= b {
 		lower = math.Min(1, math.Exp(lnBetaDensity(a, b, x, y))*betaRatio(a, b, x, y))
@@ -111,10 +113,10 @@ func betaTails(a, b, x, y float64) (lower, upper float64) {
 func gammaLowerRatio(a, x float64) float64 {
 	term := 1 / a
 	sum := term
-	for n := 1.0; n <= maxTerms; n++ {
+	for n := 1.0; n <= mostTerms; n++ {
 		term *= x / (a + n)
 		sum += term
-		if term <= sum*epsilon/4 {
+		if !(term > sum*epsilon/4) {
 			return sum
 		}
 	}
@@ -127,14 +129,14 @@ func gammaUpperRatio(a, x float64) float64 {
 	beta := x + 1 - a
 	c := beta
 	h, d := beta, 0.0
-	for n := 1.0; n <= maxTerms; n++ {
+	for n := 1.0; n <= mostTerms; n++ {
 		alpha := n * (a - n)
 		beta += 2
 		d = 1 / (beta + alpha*d)
 		c = beta + alpha/c
 		delta := c * d
 		h *= delta
-		if math.Abs(delta-1) <= 2*epsilon {
+		if !(math.Abs(delta-1) > 2*epsilon) { // NaN ends it too
 			return 1 / h
 		}
 	}
@@ -148,6 +150,8 @@ func gammaTails(a, x float64) (lower, upper float64) {
 		return 0, 1
 	case math.IsInf(x, 1):
 		return 1, 0
+	case a > mostTerms*mostTerms:
+		return math.NaN(), math.NaN()
 	}
 	if x <= a {
 		lower = math.Min(1, math.Exp(lnGammaDensity(a, x))*gammaLowerRatio(a, x))

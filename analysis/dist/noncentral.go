@@ -120,7 +120,7 @@ func noncentralF(f, d1, d2, lambda float64) (lower, upper float64) {
 	switch {
 	case math.IsNaN(f) || !(d1 > 0 && d2 > 0) || math.IsInf(d1, 1) || !(lambda >= 0 && lambda <= maxNoncentrality):
 		return math.NaN(), math.NaN()
-	case math.IsInf(d2, 1):
+	case d2 > manyDF:
 		return noncentralChiSquared(d1*f, d1, lambda)
 	case lambda == 0:
 		return fTails(f, d1, d2)
@@ -181,7 +181,7 @@ func lnPoisson(m, j float64) float64 {
 func poissonUpper(m, j, lng, ratio float64, gap func(i float64) float64) float64 {
 	lnUnit := lnPoisson(m, j) + lng
 	weight, sum := 1.0, ratio
-	for range int(4 * maxTerms) {
+	for range int(4 * mostTerms) {
 		g := gap(j)
 		ratio = (ratio + 1) / g
 		weight *= m / (j + 1) * g

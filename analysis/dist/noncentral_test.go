@@ -177,7 +177,7 @@ func TestSampleSizes(t *testing.T) {
 
 func TestNoncentralSimulated(t *testing.T) {
 	random := rand.New(rand.NewPCG(15, 16))
-	const draws = 200_000
+	const draws = 60_000
 	count := 0
 	for range draws {
 		var top, bottom float64

@@ -92,7 +92,7 @@ func TestNormalRange(t *testing.T) {
 
 func TestStudentizedRangeSimulated(t *testing.T) {
 	random := rand.New(rand.NewPCG(1, 2))
-	const draws = 200_000
+	const draws = 60_000
 	for _, tt := range []struct {
 		r  int
 		df int
