@@ -164,16 +164,25 @@ func TestClasses(t *testing.T) {
 	}
 }
 
-// FuzzOpen opens folders whose protocol, allotment, roster and data are any bytes.
+// FuzzOpen opens folders of any content: protocol, allotment, roster and data, parted by
+// the character that parts records.
 func FuzzOpen(f *testing.F) {
-	g := good()
-	f.Add([]byte(g["protocol.toml"]), []byte(g["allotment.csv"]), []byte(g["roster.csv"]), []byte(g["data.csv"]))
-	f.Fuzz(func(t *testing.T, protocol, allotment, roster, data []byte) {
-		tr, list := Open(folder.FromFS(fstest.MapFS{
-			"protocol.toml": {Data: protocol}, "allotment.csv": {Data: allotment}, "roster.csv": {Data: roster}, "data.csv": {Data: data},
-			"background.md": {Data: []byte("Why.")}, "diets.csv": {Data: []byte("a\n1\n")},
-		}))
-		if tr.Table == nil && !list.HasErrors() && tr.Protocol != nil && tr.Protocol.Data != nil && tr.Protocol.Data.File == "data.csv" {
+	names := []string{"protocol.toml", "allotment.csv", "roster.csv", "data.csv", "background.md", "diets.csv"}
+	var parts []string
+	for _, name := range names {
+		parts = append(parts, good()[name])
+	}
+	f.Add(strings.Join(parts, "\x1e"))
+	f.Fuzz(func(t *testing.T, folders string) {
+		files := fstest.MapFS{}
+		for i, part := range strings.SplitN(folders, "\x1e", len(names)) {
+			files[names[i]] = &fstest.MapFile{Data: []byte(part)}
+		}
+		tr, list := Open(folder.FromFS(files))
+		if tr.Protocol == nil || tr.Protocol.Data == nil || list.HasErrors() {
+			return
+		}
+		if _, there := files[tr.Protocol.Data.File]; there && tr.Table == nil {
 			t.Errorf("neither a table nor a reason: %v", list)
 		}
 	})
