@@ -16,7 +16,18 @@ func Clean(text string) (string, []rune) {
 	if fit(text) {
 		return text, nil
 	}
-	text = norm.NFC.String(strings.ToValidUTF8(text, "\uFFFD"))
+	// What is dropped goes first: letters and accents it stood between are composed.
+	text = norm.NFC.String(strings.Map(func(r rune) rune {
+		switch {
+		case r == '\t' || r == '\n' || r == '\r' || r == '\u2028' || r == '\u2029' || r == '\u0085':
+			return ' '
+		case r < 0x20 || 0x7F <= r && r < 0xA0 || invisible(r):
+			return -1
+		case r == '\u2011': // its hyphen is in few faces; that it does not break is for the layout
+			return '-'
+		}
+		return r
+	}, strings.ToValidUTF8(text, "\uFFFD")))
 	var (
 		b       strings.Builder
 		missing []rune
@@ -24,23 +35,17 @@ func Clean(text string) (string, []rune) {
 	)
 	b.Grow(len(text))
 	for _, r := range text {
-		switch {
-		case r == '\t' || r == '\n' || r == '\r' || r == '\u2028' || r == '\u2029' || r == '\u0085':
-			b.WriteByte(' ')
-		case r < 0x20 || 0x7F <= r && r < 0xA0 || invisible(r):
-		case r == '\u2011': // its hyphen is in few faces; that it does not break is for the layout
-			b.WriteByte('-')
-		case !Drawable(r):
-			if !seen[r] {
-				if seen == nil {
-					seen = map[rune]bool{}
-				}
-				seen[r] = true
-				missing = append(missing, r)
-			}
-			fmt.Fprintf(&b, "[U+%04X]", r)
-		default:
+		if Drawable(r) {
 			b.WriteRune(r)
+			continue
+		}
+		fmt.Fprintf(&b, "[U+%04X]", r)
+		if !seen[r] {
+			if seen == nil {
+				seen = map[rune]bool{}
+			}
+			seen[r] = true
+			missing = append(missing, r)
 		}
 	}
 	return b.String(), missing
