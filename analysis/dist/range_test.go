@@ -3,6 +3,7 @@ package dist
 import (
 	"math"
 	"math/rand/v2"
+	"sync"
 	"testing"
 )
 
@@ -138,6 +139,22 @@ func TestStudentizedRangeInverts(t *testing.T) {
 	}
 	if d.Upper(0, 3) != 1 || d.Upper(-2, 3) != 1 || d.Upper(inf, 3) != 0 || d.Quantile(0, 3) != inf || d.Quantile(1, 3) != 0 {
 		t.Error("ends of the range")
+	}
+}
+
+// One value serves many goroutines, with the same results as one.
+func TestStudentizedRangeShared(t *testing.T) {
+	d := NewStudentizedRange(6)
+	var got [8]float64
+	var group sync.WaitGroup
+	for i := range got {
+		group.Go(func() { got[i] = d.Upper(1+float64(i%4), 11) })
+	}
+	group.Wait()
+	for i, p := range got {
+		if want := StudentizedRangeUpper(1+float64(i%4), 6, 11); p != want {
+			t.Errorf("shared %g, alone %g", p, want)
+		}
 	}
 }
 
