@@ -14,6 +14,7 @@ import (
 	"path"
 	"slices"
 	"strings"
+	"sync"
 	"time"
 
 	"penwright/analysis/prose"
@@ -37,6 +38,7 @@ type Options struct {
 	Go       string   // version of the toolchain
 	Arch     string   // operating system and processor
 	Only     []string // outputs wanted: pdf, html, md, json, tables, figures; nil: all
+	Workers  int      // jobs done side by side; it changes no byte
 }
 
 // Outputs are the kinds of output, in the order in which they are written.
@@ -80,61 +82,106 @@ func Report(t *trial.Trial, rs *result.Results, opt Options) ([]File, diag.List,
 	if err != nil {
 		return nil, list, err
 	}
-	want := func(kind string) bool { return opt.Only == nil || slices.Contains(opt.Only, kind) }
+	jobs := jobs(d, rs, opt, attached)
+	done := make([]struct {
+		files []File
+		list  diag.List
+		err   error
+	}, len(jobs))
+	next := make(chan int)
+	var wg sync.WaitGroup
+	for range max(1, opt.Workers) {
+		wg.Go(func() {
+			for k := range next {
+				done[k].files, done[k].list, done[k].err = jobs[k]()
+			}
+		})
+	}
+	for k := range jobs {
+		next <- k
+	}
+	close(next)
+	wg.Wait()
 	var out []File
-	if want("pdf") {
-		var files []pdf.Attachment
-		for _, a := range attached {
-			files = append(files, pdf.Attachment{Name: a.path, MIME: a.mime, Relationship: a.relationship, Description: a.what, Data: a.data})
+	for _, x := range done {
+		list = append(list, x.list...)
+		if x.err != nil {
+			return nil, list, x.err
 		}
-		var b bytes.Buffer
-		more, err := pdf.Write(&b, d, files, pdf.Options{Date: moment(opt.Date), Producer: rs.Program.Name + " " + rs.Program.Version, Subject: "Report of trial " + rs.Trial.Code})
-		list = append(list, more...)
-		if err != nil {
-			return nil, list, err
-		}
-		out = append(out, File{Path: "report.pdf", Data: b.Bytes()})
-	}
-	if want("html") {
-		var files []html.Attachment
-		for _, a := range attached {
-			files = append(files, html.Attachment{Name: a.path, MIME: a.mime, Data: a.data})
-		}
-		style, err := fs.ReadFile(templates.FS, "style.css")
-		if err != nil {
-			return nil, list, fmt.Errorf("style sheet: %w", err)
-		}
-		var b bytes.Buffer
-		if err := html.Write(&b, d, files, html.Options{Style: string(style)}); err != nil {
-			return nil, list, err
-		}
-		out = append(out, File{Path: "report.html", Data: b.Bytes()})
-	}
-	if want("md") {
-		var b bytes.Buffer
-		if err := md.Write(&b, d); err != nil {
-			return nil, list, err
-		}
-		out = append(out, File{Path: "report.md", Data: b.Bytes()})
-	}
-	if want("json") {
-		var b bytes.Buffer
-		if err := rs.Write(&b); err != nil {
-			return nil, list, err
-		}
-		out = append(out, File{Path: "results.json", Data: b.Bytes()})
-	}
-	if want("tables") {
-		out = append(out, csvFiles(rs)...)
-	}
-	if want("figures") {
-		more, err := figureFiles(d, opt, rs)
-		if err != nil {
-			return nil, list, err
-		}
-		out = append(out, more...)
+		out = append(out, x.files...)
 	}
 	return out, list, nil
+}
+
+// job makes some files of a report. Jobs share nothing that they change, so that any
+// number of them may run side by side; their results are merged in their order.
+type job func() ([]File, diag.List, error)
+
+// jobs lists what is wanted, the longest first.
+func jobs(d *doc.Document, rs *result.Results, opt Options, attached []attached) []job {
+	want := func(kind string) bool { return opt.Only == nil || slices.Contains(opt.Only, kind) }
+	about := pdf.Options{Date: moment(opt.Date), Producer: rs.Program.Name + " " + rs.Program.Version, Subject: "Report of trial " + rs.Trial.Code}
+	one := func(path string, b *bytes.Buffer, list diag.List, err error) ([]File, diag.List, error) {
+		return []File{{Path: path, Data: b.Bytes()}}, list, err
+	}
+	var out []job
+	if want("pdf") {
+		out = append(out, func() ([]File, diag.List, error) {
+			var files []pdf.Attachment
+			for _, a := range attached {
+				files = append(files, pdf.Attachment{Name: a.path, MIME: a.mime, Relationship: a.relationship, Description: a.what, Data: a.data})
+			}
+			var b bytes.Buffer
+			list, err := pdf.Write(&b, d, files, about)
+			return one("report.pdf", &b, list, err)
+		})
+	}
+	if want("html") {
+		out = append(out, func() ([]File, diag.List, error) {
+			var files []html.Attachment
+			for _, a := range attached {
+				files = append(files, html.Attachment{Name: a.path, MIME: a.mime, Data: a.data})
+			}
+			style, err := fs.ReadFile(templates.FS, "style.css")
+			if err != nil {
+				return nil, nil, fmt.Errorf("style sheet: %w", err)
+			}
+			var b bytes.Buffer
+			return one("report.html", &b, nil, html.Write(&b, d, files, html.Options{Style: string(style)}))
+		})
+	}
+	if want("md") {
+		out = append(out, func() ([]File, diag.List, error) {
+			var b bytes.Buffer
+			return one("report.md", &b, nil, md.Write(&b, d))
+		})
+	}
+	if want("json") {
+		out = append(out, func() ([]File, diag.List, error) {
+			var b bytes.Buffer
+			return one("results.json", &b, nil, rs.Write(&b))
+		})
+	}
+	if want("tables") {
+		out = append(out, func() ([]File, diag.List, error) { return csvFiles(rs), nil, nil })
+	}
+	if want("figures") {
+		for _, b := range d.Blocks {
+			f, ok := b.(doc.Figure)
+			if !ok || f.File == "" || f.Picture == nil {
+				continue
+			}
+			out = append(out, func() ([]File, diag.List, error) {
+				var svg, page bytes.Buffer
+				if err := html.SVG(&svg, f.Picture, f.Alt); err != nil {
+					return nil, nil, err
+				}
+				err := pdf.WritePicture(&page, f.Picture, doc.Plain(f.Caption), about)
+				return []File{{Path: "figures/" + f.File + ".svg", Data: svg.Bytes()}, {Path: "figures/" + f.File + ".pdf", Data: page.Bytes()}}, nil, err
+			})
+		}
+	}
+	return out
 }
 
 // Document composes the report as a numbered document.
@@ -297,26 +344,6 @@ func relationship(f folder.File) string {
 		return "Data"
 	}
 	return "Supplement"
-}
-
-// figureFiles writes each figure as a picture of its own.
-func figureFiles(d *doc.Document, opt Options, rs *result.Results) ([]File, error) {
-	var out []File
-	for _, b := range d.Blocks {
-		f, ok := b.(doc.Figure)
-		if !ok || f.File == "" || f.Picture == nil {
-			continue
-		}
-		var svg, page bytes.Buffer
-		if err := html.SVG(&svg, f.Picture, f.Alt); err != nil {
-			return nil, err
-		}
-		if err := pdf.WritePicture(&page, f.Picture, doc.Plain(f.Caption), pdf.Options{Date: moment(opt.Date), Producer: rs.Program.Name + " " + rs.Program.Version}); err != nil {
-			return nil, err
-		}
-		out = append(out, File{Path: "figures/" + f.File + ".svg", Data: svg.Bytes()}, File{Path: "figures/" + f.File + ".pdf", Data: page.Bytes()})
-	}
-	return out, nil
 }
 
 // Design is a short document on what the layout alone says: the recognised design, what

@@ -59,7 +59,7 @@ func (a *app) makeReport(o *opened, out, template string, only []string) ([]stri
 	}
 	rs, list := a.analysed(o)
 	a.complain(o, list)
-	files, more, err := render.Report(o.trial, rs, render.Options{Template: template, Date: date, Go: runtime.Version(), Arch: runtime.GOOS + "/" + runtime.GOARCH, Only: only})
+	files, more, err := render.Report(o.trial, rs, render.Options{Template: template, Date: date, Go: runtime.Version(), Arch: runtime.GOOS + "/" + runtime.GOARCH, Only: only, Workers: runtime.GOMAXPROCS(0)})
 	a.complain(o, more)
 	if err != nil {
 		return nil, failed(err)
