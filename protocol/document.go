@@ -299,6 +299,8 @@ func (t *table) factor() Factor {
 	f := Factor{Name: name, Label: t.labelled(name), Unit: t.str("unit"), Random: isTrue(t.yes("random"))}
 	f.Levels, f.Values = t.levels("levels", "level")
 	level := func(v any) string { return levelText(v, f.Values != nil) }
+	known := setOf(f.Levels)
+	controls := map[string]bool{}
 	switch v, ok := t.get("control"); {
 	case !ok:
 	default:
@@ -319,11 +321,12 @@ func (t *table) factor() Factor {
 			case l == "":
 				fail(WrongType, oneOf(f.Levels), "expected a level, found %s", found(v))
 			case f.Levels == nil: // said already
-			case !slices.Contains(f.Levels, l):
-				fail(UnknownLevel, suggest(l, f.Levels), "%s is not a level of this factor", quote(l))
-			case slices.Contains(f.Control, l):
+			case !known[l]:
+				fail(UnknownLevel, t.d.suggest(l, f.Levels), "%s is not a level of this factor", quote(l))
+			case controls[l]:
 				fail(Duplicate, "keep one of them", "%s is listed twice", quote(l))
 			default:
+				controls[l] = true
 				f.Control = append(f.Control, l)
 			}
 		}
@@ -334,8 +337,8 @@ func (t *table) factor() Factor {
 			s, l := sub.str(n), levelText(n, f.Values != nil)
 			switch {
 			case f.Levels == nil:
-			case !slices.Contains(f.Levels, l):
-				sub.fail(n, UnknownLevel, suggest(n, f.Levels), "%s is not a level of this factor", quote(n))
+			case !known[l]:
+				sub.fail(n, UnknownLevel, t.d.suggest(n, f.Levels), "%s is not a level of this factor", quote(n))
 			default:
 				texts[l] = s
 			}
@@ -347,6 +350,14 @@ func (t *table) factor() Factor {
 		}
 	}
 	return f
+}
+
+func setOf(words []string) map[string]bool {
+	set := make(map[string]bool, len(words))
+	for _, w := range words {
+		set[w] = true
+	}
+	return set
 }
 
 // levelText is the text of a level as it stands in lists, tables and keys; "" if v
@@ -833,7 +844,7 @@ func (t *table) report() Report {
 			why, hint := badPath(s)
 			switch {
 			case !strings.ContainsAny(s, "./"):
-				t.fail("template", UnknownValue, suggest(s, builtIn)+"; a template of the folder is named with its ending", "there is no template %s", quote(s))
+				t.fail("template", UnknownValue, t.d.suggest(s, builtIn)+"; a template of the folder is named with its ending", "there is no template %s", quote(s))
 			case why != "":
 				t.fail("template", BadPath, hint, "%s", why)
 			}

@@ -79,7 +79,7 @@ func (d *decoder) load(path string) bool {
 	var limit *tomlpos.LimitError
 	if errors.As(err, &limit) {
 		f := diag.Diagnostic{Pos: doc.At(limit.Offset), Severity: diag.Error, Code: TooMany,
-			Message: fmt.Sprintf("the file has more than %d keys and values", tomlpos.MaxNodes)}
+			Message: fmt.Sprintf("the file has more than %d lines, keys and values", tomlpos.MaxNodes)}
 		if limit.Deep {
 			f.Message = fmt.Sprintf("lists or tables are nested more than %d deep here", tomlpos.MaxDepth)
 		}

@@ -2,6 +2,7 @@ package protocol
 
 import (
 	"fmt"
+	"maps"
 	"math"
 	"regexp"
 	"slices"
@@ -33,7 +34,9 @@ type resolver struct {
 	p *Protocol
 
 	factors, units, responses, covariates, repeated, codes declared
-	where                                                  map[string]named // every declared name
+	where                                                  map[string]named           // every declared name
+	levels                                                 map[string]map[string]bool // of each factor, and the codes of the listed treatments
+	rules                                                  map[string]bool            // for exclusions
 }
 
 // declared are the names of one kind that may be referred to.
@@ -42,7 +45,8 @@ type declared struct {
 	key   string // of their table
 	names []string
 	paths []string // dotted key of the name of each
-	open  bool     // one has no usable name, so what is missing may be that one
+	set   map[string]int
+	open  bool // one has no usable name, so what is missing may be that one
 }
 
 type named struct{ word, path string }
@@ -67,9 +71,10 @@ func at(table string, i int, key string) string {
 // declare collects the names, which are one namespace because they are columns.
 func (r *resolver) declare() {
 	p := r.p
-	r.where = map[string]named{}
+	r.where, r.levels = map[string]named{}, map[string]map[string]bool{}
+	r.rules = setOf(p.Eligibility.ExclusionRules)
 	collect := func(into *declared, word, table, key string, n int, name func(i int) string, columns bool) {
-		*into = declared{word: word, key: table}
+		*into = declared{word: word, key: table, set: map[string]int{}}
 		for i := range n {
 			s, path := name(i), at(table, i, key)
 			if s == "" {
@@ -78,7 +83,7 @@ func (r *resolver) declare() {
 			}
 			first, twice := r.where[s], columns && r.where[s].path != ""
 			if !columns {
-				if j := slices.Index(into.names, s); j >= 0 {
+				if j, ok := into.set[s]; ok {
 					first, twice = named{word: word, path: into.paths[j]}, true
 				}
 			}
@@ -88,6 +93,9 @@ func (r *resolver) declare() {
 			}
 			if columns && !twice {
 				r.where[s] = named{word: word, path: path}
+			}
+			if _, ok := into.set[s]; !ok {
+				into.set[s] = len(into.names)
 			}
 			into.names, into.paths = append(into.names, s), append(into.paths, path)
 		}
@@ -105,10 +113,14 @@ func (r *resolver) refer(key, name string, in *declared) bool {
 	if name == "" {
 		return false
 	}
-	if slices.Contains(in.names, name) {
+	if _, ok := in.set[name]; ok {
 		return true
 	}
 	if in.open {
+		return false
+	}
+	if r.d.enough() {
+		r.d.faults++
 		return false
 	}
 	hint := ""
@@ -163,14 +175,19 @@ func (r *resolver) level(key, factor, level string) (string, bool) {
 		known = f.Levels
 		path = at("factor", slices.IndexFunc(r.p.Factors, func(g Factor) bool { return g.Name == factor }), "levels")
 	}
-	if slices.Contains(known, level) {
+	set := r.levels[factor]
+	if set == nil {
+		set = setOf(known)
+		r.levels[factor] = set
+	}
+	if set[level] {
 		return level, true
 	}
 	what := "a level of " + quote(factor)
 	if factor == listed {
 		what = "a listed treatment"
 	}
-	f := r.fail(key, UnknownLevel, suggest(level, known), "%s is not %s", quote(level), what)
+	f := r.fail(key, UnknownLevel, r.d.suggest(level, known), "%s is not %s", quote(level), what)
 	f.Relate(r.p.Pos(path), "they are listed here")
 	return level, false
 }
@@ -449,15 +466,15 @@ func (r *resolver) control(key string) {
 
 // contrasts checks planned contrasts.
 func (r *resolver) contrasts(key string, list []Contrast) {
+	first := map[string]int{}
 	for i := range list {
 		c := &list[i]
 		own := tomlpos.Index(key, i)
-		for j, other := range list[:i] {
-			if c.Name != "" && c.Name == other.Name {
-				f := r.fail(own+".name", Duplicate, "give each contrast its own name", "the name %s is taken by another contrast", quote(c.Name))
-				f.Relate(r.p.ValuePos(tomlpos.Index(key, j)+".name"), "first given here")
-				break
-			}
+		if j, twice := first[c.Name]; twice && c.Name != "" {
+			f := r.fail(own+".name", Duplicate, "give each contrast its own name", "the name %s is taken by another contrast", quote(c.Name))
+			f.Relate(r.p.ValuePos(tomlpos.Index(key, j)+".name"), "first given here")
+		} else {
+			first[c.Name] = i
 		}
 		if !r.factorOrListed(own+".factor", c.Factor) {
 			continue
@@ -630,7 +647,7 @@ func (r *resolver) size() {
 			}
 		}
 		if !slices.Contains(known, s.Contrast) {
-			r.fail("sample_size.contrast", UnknownName, suggest(s.Contrast, known), "there is no contrast %s", quote(s.Contrast))
+			r.fail("sample_size.contrast", UnknownName, r.d.suggest(s.Contrast, known), "there is no contrast %s", quote(s.Contrast))
 		}
 	}
 	for _, v := range s.SD {
@@ -639,7 +656,8 @@ func (r *resolver) size() {
 		}
 		strata := r.units
 		if slices.ContainsFunc(r.p.Units, func(u Unit) bool { return len(u.Animals) > 0 || u.AnimalsColumn != "" }) {
-			strata.names = append(slices.Clone(strata.names), "animal")
+			strata.names, strata.set = append(slices.Clone(strata.names), "animal"), maps.Clone(strata.set)
+			strata.set["animal"] = len(strata.set)
 		}
 		name, times, repeated := strings.Cut(v.Stratum, ":")
 		key := tomlpos.Join("sample_size.sd", v.Stratum)
@@ -697,7 +715,7 @@ func (r *resolver) data() {
 			for _, f := range p.Data.Further {
 				known = append(known, f.File)
 			}
-			r.fail(at("response", i, "file"), UnknownName, suggest(s.File, known)+"; further files stand under [[data.further]]", "the data have no file %s", quote(s.File))
+			r.fail(at("response", i, "file"), UnknownName, r.d.suggest(s.File, known)+"; further files stand under [[data.further]]", "the data have no file %s", quote(s.File))
 		}
 	}
 	for i, c := range p.Data.Confirmed {
@@ -780,7 +798,7 @@ func (r *resolver) conduct() {
 	for i, c := range p.Corrections {
 		own := tomlpos.Index("correction", i)
 		if c.File != "" && !slices.Contains(files, c.File) && !slices.Contains(files, "") {
-			r.fail(own+".file", UnknownName, suggest(c.File, files), "the trial has no file %s of data or roster", quote(c.File))
+			r.fail(own+".file", UnknownName, r.d.suggest(c.File, files), "the trial has no file %s of data or roster", quote(c.File))
 		}
 		if p.Roster == nil || c.File != p.Roster.File { // a roster may have the animals' own numbers
 			r.unitName(own+".unit", c.Unit)
@@ -790,8 +808,8 @@ func (r *resolver) conduct() {
 		own := tomlpos.Index("exclusion", i)
 		r.unitName(own+".unit", e.Unit)
 		r.referAll(own+".responses", e.Responses, &r.responses)
-		if rules := p.Eligibility.ExclusionRules; e.Rule != "" && !slices.Contains(rules, e.Rule) {
-			r.warn(own+".rule", NotPlanned, suggest(e.Rule, rules), "%s is none of the exclusion rules set before the trial", quote(e.Rule))
+		if e.Rule != "" && !r.rules[e.Rule] {
+			r.warn(own+".rule", NotPlanned, r.d.suggest(e.Rule, p.Eligibility.ExclusionRules), "%s is none of the exclusion rules set before the trial", quote(e.Rule))
 		}
 	}
 	for i, e := range p.Events {

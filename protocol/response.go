@@ -182,7 +182,7 @@ func (t *table) analysis() Analysis {
 				case !ok:
 					t.item("models", i, WrongType, oneOf(doseModels), "expected the name of a model, found %s", found(v))
 				case !slices.Contains(doseModels, m):
-					t.item("models", i, UnknownValue, suggest(m, doseModels), "there is no model %s", quote(m))
+					t.item("models", i, UnknownValue, t.d.suggest(m, doseModels), "there is no model %s", quote(m))
 				case slices.Contains(d.Models, m):
 					t.item("models", i, Duplicate, "keep one of them", "%s is listed twice", quote(m))
 				default:

@@ -24,6 +24,7 @@ type table struct {
 	node  *tomlpos.Node
 	m     map[string]any
 	known []string
+	named bool // its names are the author's own; none is known or unknown
 	void  bool // stands for an element that is no table; what it lacks is not missed
 }
 
@@ -44,6 +45,10 @@ func (d *decoder) add(f diag.Diagnostic) *diag.Diagnostic {
 	d.list.Add(f)
 	return &d.list[len(d.list)-1]
 }
+
+// enough tells whether further faults are only counted, so that no work need be
+// spent on their words.
+func (d *decoder) enough() bool { return d.faults >= maxFaults }
 
 func (d *decoder) position(n *tomlpos.Node, value bool) diag.Pos {
 	if n == nil || n == d.p.index.doc.Root {
@@ -99,7 +104,7 @@ func (t *table) item(key string, i int, code, hint, format string, args ...any) 
 
 // get returns the value of a key and makes the key known.
 func (t *table) get(key string) (any, bool) {
-	if !slices.Contains(t.known, key) {
+	if !t.named && !slices.Contains(t.known, key) {
 		t.known = append(t.known, key)
 		if s := t.d.schema; s != nil {
 			s.places = append(s.places, place{table: t.shape, key: key})
@@ -528,7 +533,7 @@ func (t *table) enum(key, otherwise string, values ...string) string {
 	if slices.Contains(values, s) {
 		return s
 	}
-	t.fail(key, UnknownValue, suggest(s, values), "%s is not known here", quote(s))
+	t.fail(key, UnknownValue, t.d.suggest(s, values), "%s is not known here", quote(s))
 	return otherwise
 }
 
@@ -610,6 +615,7 @@ func (t *table) free(key, of string) (*table, []string) {
 		return nil, nil
 	}
 	sub := t.sub(key, m)
+	sub.named = true
 	var names []string
 	if sub.node != nil && len(sub.node.Kids) == len(m) {
 		for _, k := range sub.node.Kids {
@@ -637,13 +643,17 @@ func (t *table) close() {
 	}
 	slices.Sort(unknown)
 	for _, k := range unknown {
-		f := t.fail(k, UnknownKey, t.meant(k), "there is no key %s in %s", quote(k), t.named())
+		if t.d.enough() {
+			t.d.faults++
+			continue
+		}
+		f := t.fail(k, UnknownKey, t.meant(k), "there is no key %s in %s", quote(k), t.title())
 		f.Pos = t.d.position(t.node.Child(k), false)
 	}
 }
 
-// named is how the table is called in a message.
-func (t *table) named() string {
+// title is how the table is called in a message.
+func (t *table) title() string {
 	if t.path == "" {
 		return "the protocol"
 	}
@@ -778,7 +788,10 @@ func withoutQuotes(key string, v any) string {
 
 // suggest names the word that was probably meant, or all that are known if there
 // are few.
-func suggest(s string, known []string) string {
+func (d *decoder) suggest(s string, known []string) string {
+	if d.enough() {
+		return ""
+	}
 	if near := diag.Nearest(s, known); near != "" {
 		return fmt.Sprintf("did you mean %s?", quote(near))
 	}

@@ -1,7 +1,7 @@
 package diag
 
 import (
-	"strings"
+	"unicode"
 	"unicode/utf8"
 )
 
@@ -22,7 +22,7 @@ func Nearest(word string, known []string) string {
 	if word == "" || len(word) > longestWord {
 		return ""
 	}
-	folded := []rune(fold(word))
+	folded := fold(word)
 	best, at := "", 3
 	for _, k := range known {
 		if k == "" || len(k) > longestWord {
@@ -32,7 +32,7 @@ func Nearest(word string, known []string) string {
 		if n-len(folded) >= at || len(folded)-n >= at {
 			continue
 		}
-		d := distance(folded, []rune(fold(k)))
+		d := distance(folded, fold(k))
 		if d < at && 2*d <= max(n, len(folded)) {
 			best, at = k, d
 		}
@@ -41,8 +41,16 @@ func Nearest(word string, known []string) string {
 }
 
 // fold maps spellings that are the same word to one.
-func fold(s string) string {
-	return strings.NewReplacer("-", "_", " ", "_").Replace(strings.ToLower(s))
+func fold(s string) []rune {
+	folded := []rune(s)
+	for i, r := range folded {
+		if r == '-' || r == ' ' {
+			folded[i] = '_'
+		} else {
+			folded[i] = unicode.ToLower(r)
+		}
+	}
+	return folded
 }
 
 // distance is the number of slips between a and b.

@@ -20,6 +20,10 @@ func Scan(file string, src []byte) (*Doc, error) {
 		}
 		i += n
 		s.doc.lines = append(s.doc.lines, i+1)
+		if s.nodes++; s.nodes > MaxNodes {
+			s.stop(i, false)
+			return s.doc, s.err
+		}
 	}
 	s.document()
 	if s.err != nil {

@@ -17,8 +17,8 @@ import (
 // The limits of a source. A decoder that recurses over nested values is safe within
 // them, and so is the memory it needs.
 const (
-	MaxDepth = 64        // of nested arrays and tables, and parts of a dotted key
-	MaxNodes = 2_000_000 // keys and values together
+	MaxDepth = 16        // of nested arrays and tables, and parts of a dotted key
+	MaxNodes = 1_000_000 // lines, keys and values together
 )
 
 // LimitError says that a source is beyond a limit, and where.
@@ -31,7 +31,7 @@ func (e *LimitError) Error() string {
 	if e.Deep {
 		return "nested too deeply"
 	}
-	return "too many keys and values"
+	return "too many lines, keys and values"
 }
 
 // Kind is the shape of a value.

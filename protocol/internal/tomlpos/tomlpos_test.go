@@ -143,6 +143,7 @@ func TestLimits(t *testing.T) {
 		{"tables", "a = " + strings.Repeat("{ a = ", 100_000), true},
 		{"key", strings.Repeat("a.", 1_000_000) + "a = 1", true},
 		{"header", "[" + strings.Repeat("a . ", 100_000) + "a]", true},
+		{"lines", strings.Repeat("\n", MaxNodes+1), false},
 		{"elements", "a = [" + strings.Repeat("1,", MaxNodes+1) + "]", false},
 	}
 	for _, test := range tests {
