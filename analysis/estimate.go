@@ -5,6 +5,7 @@ import (
 	"math"
 	"strings"
 
+	"penwright/analysis/compare"
 	"penwright/analysis/dist"
 	"penwright/analysis/prose"
 	"penwright/analysis/result"
@@ -587,7 +588,7 @@ func (a *analyst) trends(m *termMeans) {
 	if len(x) < 3 {
 		return
 	}
-	steps, rest, restDF, ok := trends(x, y, func(i, j int) float64 { return m.est.cov(at[i], at[j]) / ms }, degree)
+	steps, rest, restDF, ok := compare.Trends(x, y, func(i, j int) float64 { return m.est.cov(at[i], at[j]) / ms }, degree)
 	if !ok {
 		return
 	}
@@ -598,8 +599,8 @@ func (a *analyst) trends(m *termMeans) {
 			name = names[k]
 		}
 		c := result.Contrast{Name: m.name + ": " + name, Term: m.name, Planned: true, NumeratorDF: 1, F: result.NaN, P: result.NaN, SS: result.NaN, Lower: result.NaN, Upper: result.NaN}
-		a.fillContrast(&c, s.estimate, s.variance*ms, df, ms)
-		c.SS = result.Number(s.ss)
+		a.fillContrast(&c, s.Estimate, s.Variance*ms, df, ms)
+		c.SS = result.Number(s.SS)
 		a.out.Contrasts = append(a.out.Contrasts, c)
 	}
 	if restDF > 0 {
@@ -650,5 +651,11 @@ func (a *analyst) summarize() {
 			}
 		}
 		a.out.Summary = append(a.out.Summary, s)
+	}
+}
+
+func add(dst, v []float64, w float64) {
+	for i := range dst {
+		dst[i] += w * v[i]
 	}
 }

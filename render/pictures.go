@@ -426,11 +426,16 @@ func (v *pictures) residualMap(name string) []doc.Block {
 	for k, i := range instances {
 		value[int(i)] = float64(r.Residuals[k].Residual)
 	}
+	label := func(int) string { return "" }
+	if names, of := v.treatments(unit); names != nil {
+		label = func(i int) string { return names[of(i)] }
+	}
 	m := figure.FromPlan(v.trial.Plan, func(u, i int) figure.Look {
 		l := figure.Look{Treatment: -1, Value: math.NaN()}
 		if u == unit {
 			if x, ok := value[i]; ok {
 				l.Value = x
+				l.Label = label(i)
 			} else {
 				l.Excluded = true
 			}

@@ -1,4 +1,4 @@
-package analysis
+package compare
 
 import (
 	"math"
@@ -6,23 +6,29 @@ import (
 	"gonum.org/v1/gonum/mat"
 )
 
-// trend is one step of a polynomial fitted to means in order.
-type trend struct {
-	estimate float64 // coefficient of the highest power, response units per factor unit to that power
-	variance float64 // of the estimate, per unit of error variance
-	ss       float64 // what the step explains, in squared response units
+// Trend is one step of polynomials fitted to means in order.
+type Trend struct {
+	Estimate float64 // coefficient of the highest power, response units per factor unit to that power
+	Variance float64 // of the estimate, per unit of error variance
+	SS       float64 // what the step explains, in squared response units
 }
 
-// trends fits polynomials of degree 1 … degree to the means m at the levels x by
+// Trends fits polynomials of degree 1 … degree to the means m at the levels x by
 // generalized least squares, each after those before it, and gives what is left over.
 //
 // cov is the covariance of the means per unit of error variance; a part common to all
 // means does not matter. Where the means are adjusted ones, the sums of squares of all
 // steps and of the rest add up to that of the equality of the means, since that too is
 // the generalized sum of squares of the means about a constant. ok is false when the
-// covariance is singular.
-func trends(x, m []float64, cov func(i, j int) float64, degree int) (steps []trend, rest float64, restDF int, ok bool) {
+// covariance is singular. There are fewer steps where x has too few distinct levels.
+//
+// Source: A. C. Aitken, Proc. Roy. Soc. Edinb. 55 (1935) 42-48 (from memory); Gram-Schmidt
+// on whitened powers.
+func Trends(x, m []float64, cov func(i, j int) float64, degree int) (steps []Trend, rest float64, restDF int, ok bool) {
 	t := len(x)
+	if t == 0 {
+		return nil, 0, 0, false
+	}
 	degree = min(degree, t-1)
 	top := 0.0
 	c := mat.NewSymDense(t, nil)
@@ -70,7 +76,7 @@ func trends(x, m []float64, cov func(i, j int) float64, degree int) (steps []tre
 		scale = math.Max(scale, math.Abs(v-mean))
 	}
 	if scale == 0 {
-		return nil, 0, 0, false
+		scale = 1
 	}
 	ref := m[0]
 	y := make([]float64, t)
@@ -92,8 +98,9 @@ func trends(x, m []float64, cov func(i, j int) float64, degree int) (steps []tre
 			}
 		}
 		r := math.Sqrt(dot(q, q))
-		if r == 0 {
-			return nil, 0, 0, false
+		if r <= 1e-9*math.Sqrt(dot(white(power), white(power))) {
+			degree = k - 1 // the distinct levels carry no higher power
+			break
 		}
 		for i := range q {
 			q[i] /= r
@@ -102,7 +109,7 @@ func trends(x, m []float64, cov func(i, j int) float64, degree int) (steps []tre
 		add(y, q, -z)
 		if k > 0 {
 			s := math.Pow(scale, float64(k))
-			steps = append(steps, trend{estimate: z / r / s, variance: 1 / (r * r * s * s), ss: z * z})
+			steps = append(steps, Trend{Estimate: z / r / s, Variance: 1 / (r * r * s * s), SS: z * z})
 		}
 		basis = append(basis, q)
 		for i := range power {
