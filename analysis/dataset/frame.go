@@ -77,7 +77,6 @@ func (r *reader) openFrame(path, key string, required bool) *frame {
 	if slices.Contains(r.failed, path) {
 		return nil
 	}
-	r.failed = append(r.failed, path) // until it is opened
 	pos := r.plan.Protocol.Pos(key)
 	file, err := r.files.Read(path, folder.MaxFile)
 	switch {
@@ -85,9 +84,11 @@ func (r *reader) openFrame(path, key string, required bool) *frame {
 		r.faults.Add(diag.Diagnostic{Pos: pos, Key: key, Severity: diag.Note, Code: NoData, Message: fmt.Sprintf("%s does not exist yet", path)})
 		return nil
 	case errors.Is(err, fs.ErrNotExist):
+		r.failed = append(r.failed, path)
 		r.faults.Add(diag.Diagnostic{Pos: pos, Key: key, Code: protocol.Unreadable, Message: fmt.Sprintf("there is no file %s in the trial folder", path)})
 		return nil
 	case err != nil:
+		r.failed = append(r.failed, path)
 		r.faults.Add(diag.Diagnostic{Pos: pos, Key: key, Code: protocol.Unreadable, Message: err.Error()})
 		return nil
 	}
@@ -98,13 +99,15 @@ func (r *reader) openFrame(path, key string, required bool) *frame {
 	s, list := sheet.Open(path, file.Data, delimiter)
 	r.faults.AddAll(list)
 	if s == nil {
+		r.failed = append(r.failed, path)
 		return nil
 	}
-	b, bad := r.finder.Bind(allot.Columns(r.plan, s.Headings))
+	b, bad := r.finder.Bind(allot.Columns(r.plan, s.Headings), s.Headings)
 	if bad != nil {
 		if key == "roster.file" && bad.Column < 0 {
 			return nil // animals that have only their own numbers
 		}
+		r.failed = append(r.failed, path)
 		r.faults.Add(diag.Diagnostic{Pos: s.Pos(s.Heading, max(bad.Column, 0)), Code: allot.UnitColumns, Message: bad.Message, Hint: bad.Hint})
 		return nil
 	}
@@ -116,7 +119,6 @@ func (r *reader) openFrame(path, key string, required bool) *frame {
 		}
 	}
 	r.frames = append(r.frames, f)
-	r.failed = r.failed[:len(r.failed)-1]
 	return f
 }
 
@@ -260,10 +262,11 @@ func (r *reader) load(f *frame) {
 	r.missing = missing
 
 	type timeColumn struct {
-		at   int
-		rep  *protocol.Repeated
-		last string
-		time int32
+		at    int
+		rep   *protocol.Repeated
+		names *allot.Names
+		last  string
+		time  int32
 	}
 	var times []*timeColumn
 	for i := range plan.Protocol.Repeated {
@@ -271,7 +274,7 @@ func (r *reader) load(f *frame) {
 		if at := r.find(f, rep.Name); at >= 0 {
 			f.used[at] = true
 			f.times[rep.Name] = []int32{}
-			times = append(times, &timeColumn{at: at, rep: rep})
+			times = append(times, &timeColumn{at: at, rep: rep, names: allot.NewNames(rep.At, rep.Values)})
 		}
 	}
 	type whereColumn struct {
@@ -311,21 +314,31 @@ func (r *reader) load(f *frame) {
 	masked := r.maskedColumn(f)
 
 	rows, blank, broken, list := s.Rows(func(row sheet.Row) bool {
+		f.binding.Quiet = r.faults.Full(allot.UnknownUnit)
 		i, bad := f.binding.Find(row.Cells)
 		if bad != nil {
 			r.faults.Add(diag.Diagnostic{Pos: s.Pos(row, max(bad.Column, 0)), Code: allot.UnknownUnit, Message: bad.Message, Hint: bad.Hint})
 			return true
 		}
 		n := int32(len(f.rows))
+		if int(n)*len(f.columns) > maxCells {
+			r.faults.Add(diag.Diagnostic{Pos: s.Pos(row, 0), Code: TooMuch, Message: fmt.Sprintf("%d columns are used of more than %d rows; together at most %d million cells are read", len(f.columns), n, maxCells/1_000_000),
+				Hint: "put responses into files of their own"})
+			return false
+		}
 		corrections.each(plan, f.unit, i, func(c *correctionAt) { r.correct(f, c, row, n) })
 		f.rows = append(f.rows, i)
 		f.line = append(f.line, int32(row.Line))
 		for _, t := range times {
 			text := row.Cells[t.at].Text
 			if n == 0 || text != t.last {
-				t.last, t.time = text, timeIndex(t.rep, text, f.decimal)
+				t.last, t.time = text, t.names.Find(text, f.decimal)
 			}
-			if t.time < 0 {
+			switch {
+			case t.time >= 0:
+			case r.faults.Full(UnknownTime):
+				r.faults.Add(diag.Diagnostic{Code: UnknownTime})
+			default:
 				message := fmt.Sprintf("%q is not one of the times of %s", text, t.rep.Name)
 				hint := "they are " + strings.Join(t.rep.At[:min(len(t.rep.At), 12)], ", ")
 				if w := diag.Nearest(text, t.rep.At); w != "" {
@@ -393,7 +406,6 @@ func (r *reader) load(f *frame) {
 			table.Unused = append(table.Unused, h)
 		}
 	}
-	f.sheet = &sheet.Sheet{Path: s.Path, Headings: s.Headings, Delimiter: s.Delimiter, Encoding: s.Encoding} // lets the text go
 }
 
 // correct applies a correction to a cell of a row, whose cells may be written to since
@@ -480,26 +492,13 @@ func sameText(cell, value string, decimal rune) bool {
 	return ok && v == w
 }
 
-// timeIndex finds the time that a cell names, or -1.
-func timeIndex(rep *protocol.Repeated, text string, decimal rune) int32 {
-	for i, at := range rep.At {
-		if at == text {
-			return int32(i)
-		}
+// timeIndex finds the time that the protocol names, or -1.
+func (r *reader) timeIndex(repeated int, text string) int32 {
+	if r.times[repeated] == nil {
+		rep := &r.plan.Protocol.Repeated[repeated]
+		r.times[repeated] = allot.NewNames(rep.At, rep.Values)
 	}
-	if rep.Values == nil {
-		return -1
-	}
-	v, ok := sheet.Number(text, decimal)
-	if !ok {
-		return -1
-	}
-	for i, w := range rep.Values {
-		if v == w {
-			return int32(i)
-		}
-	}
-	return -1
+	return r.times[repeated].Find(text, '.')
 }
 
 // chooseDecimal finds the decimal mark of a frame from its numeric columns.

@@ -15,6 +15,9 @@ import (
 
 // Codes of what is said about data.
 const (
+	// TooMuch: the responses would take more memory than is allowed.
+	//	Example: a thousand responses of a million rows.
+	TooMuch = "too-much-data"
 	// NoData: the data file does not exist yet.
 	//	Example: [data] file = "data.csv" before the trial.
 	NoData = "no-data"
@@ -80,6 +83,13 @@ const (
 	CodeDisagrees = "code-disagrees"
 )
 
+// The greatest numbers of cells of a file, and of rows of all responses together, that
+// are held.
+const (
+	maxCells = 100_000_000
+	maxSlots = 20_000_000
+)
+
 // reader is one reading of a trial's data.
 type reader struct {
 	files    *folder.Folder
@@ -98,9 +108,10 @@ type reader struct {
 
 	corrected []bool // corrections whose file is one of the trial's
 	pending   []*correctionAt
-	changes   byUnit[int] // events that explain another treatment
-	learned   []*found    // by factor
-	seen      [][]bool    // by unit: instances with a row
+	changes   byUnit[int]    // events that explain another treatment
+	learned   []*found       // by factor
+	seen      [][]bool       // by unit: instances with a row
+	times     []*allot.Names // by index of [[repeated]], made when needed
 
 	exclusions byUnit[*exclusion]
 	confirmed  byUnit[*confirmation]
@@ -121,7 +132,7 @@ func Read(files *folder.Folder, plan *layout.Plan, a *allot.Allotment) (*Table, 
 	}
 	r := &reader{files: files, plan: plan, data: p.Data, allotted: a, finder: allot.NewFinder(plan),
 		table: &Table{Plan: plan, Allotment: a}, corrected: make([]bool, len(p.Corrections)),
-		learned: make([]*found, len(plan.Factors)), seen: make([][]bool, len(plan.Units)), numbers: map[[2]int][]float64{}, duplicates: map[diag.Pos]bool{}}
+		learned: make([]*found, len(plan.Factors)), seen: make([][]bool, len(plan.Units)), times: make([]*allot.Names, len(p.Repeated)), numbers: map[[2]int][]float64{}, duplicates: map[diag.Pos]bool{}}
 	late := p.Data.Locked != (protocol.Date{})
 	main := r.openFrame(p.Data.File, "data.file", late)
 	if main == nil {
@@ -163,7 +174,15 @@ func Read(files *folder.Folder, plan *layout.Plan, a *allot.Allotment) (*Table, 
 	}
 	r.settle()
 	r.table.Allotment = r.completeAllotment()
+	slots := 0
 	for k, j := range jobs {
+		if j != nil {
+			slots += r.slots(j)
+			if slots > maxSlots {
+				r.fail(j.key, TooMuch, "record at a larger unit, or split the trial", "the responses down to %s make %d rows; together at most %d million are held", j.p.Name, slots, maxSlots/1_000_000)
+				j, jobs[k] = nil, nil
+			}
+		}
 		if j == nil {
 			// What cannot be read keeps its place, without rows.
 			r.table.Responses = append(r.table.Responses, Response{Protocol: &p.Responses[k], Unit: plan.Smallest})
@@ -171,6 +190,7 @@ func Read(files *folder.Folder, plan *layout.Plan, a *allot.Allotment) (*Table, 
 		}
 		r.table.Responses = append(r.table.Responses, r.respond(j))
 	}
+	r.without(jobs)
 	r.unmet()
 	list := r.faults.List()
 	list.Sort()
@@ -303,6 +323,14 @@ func (r *reader) prepare(k int) *job {
 		r.need(j.base, name)
 		return j.base
 	}
+	switch {
+	case p.Total != "" && p.Aggregate == "mean":
+		r.fail(j.key+".aggregate", BadKind, `say aggregate = "sum"`, "a proportion is counted from sums: %s of %s cannot be averaged", p.Name, p.Total)
+		return nil
+	case p.Event != "" && p.Aggregate != "":
+		r.fail(j.key+".aggregate", BadKind, "", "times to an event cannot be aggregated")
+		return nil
+	}
 	j.total, j.event = extra(p.Total, "total"), extra(p.Event, "event")
 	for _, c := range p.Where {
 		if r.find(j.base, c.Column) < 0 {
@@ -389,12 +417,58 @@ func (r *reader) excluded() {
 	for k := range r.plan.Protocol.Exclusions {
 		p := &r.plan.Protocol.Exclusions[k]
 		key := fmt.Sprintf("exclusion[%d]", k)
-		if p.At != "" && !slices.ContainsFunc(r.plan.Protocol.Repeated, func(rep protocol.Repeated) bool { return timeIndex(&rep, p.At, '.') >= 0 }) {
+		known := p.At == ""
+		for i := range r.plan.Protocol.Repeated {
+			known = known || r.timeIndex(i, p.At) >= 0
+		}
+		if !known {
 			r.fail(key+".at", BadExclusion, "", "no [[repeated]] has the time %q", p.At)
 			continue
 		}
 		if unit, instance, ok := r.locate(p.Unit, key+".unit"); ok {
 			r.exclusions.add(unit, instance, &exclusion{index: k, p: p, reason: strings.TrimSpace(p.Reason)})
+		}
+	}
+}
+
+// slots is the number of rows that a response has.
+func (r *reader) slots(j *job) int {
+	n := r.plan.Units[j.unit].N
+	if j.repeated >= 0 {
+		n *= len(r.plan.Protocol.Repeated[j.repeated].At)
+	}
+	return n
+}
+
+// without warns of exclusions that a response cannot follow, since nothing so small or
+// of such a time is recorded.
+func (r *reader) without(jobs []*job) {
+	for _, x := range r.exclusions {
+		for _, i := range sortedKeys(x.of) {
+			for _, e := range x.of[i] {
+				key, none, any := fmt.Sprintf("exclusion[%d]", e.index), "", false
+				for _, j := range jobs {
+					if j == nil || !e.concerns(j.p.Name) {
+						continue
+					}
+					small := r.plan.Coarse(j.unit, x.unit) != nil || r.plan.Coarse(j.base.unit, x.unit) != nil
+					timely := e.p.At == "" || j.repeated >= 0 && r.timeIndex(j.repeated, e.p.At) >= 0
+					if small && timely {
+						any = true
+					} else if none == "" || len(e.p.Responses) > 0 {
+						none = j.p.Name
+					}
+				}
+				if none == "" || any && len(e.p.Responses) == 0 {
+					continue
+				}
+				hint := ""
+				if e.p.At != "" {
+					hint = "a time concerns repeated responses only"
+				}
+				r.faults.Add(diag.Diagnostic{Pos: r.plan.Protocol.ValuePos(key + ".unit"), Key: key + ".unit", Severity: diag.Warning, Code: BadExclusion,
+					Message: fmt.Sprintf("%s is not recorded by itself in %s, so it cannot be left out there", unitText(e.p.Unit), none), Hint: hint})
+			}
 		}
 	}
 }

@@ -106,7 +106,7 @@ rows:
 		if len(finer) > 0 {
 			reason := ""
 			finer.each(plan, f.unit, i, func(e *exclusion) {
-				if e.p.At == "" || rep != nil && timeIndex(rep, e.p.At, '.') == t {
+				if e.p.At == "" || rep != nil && r.timeIndex(j.repeated, e.p.At) == t {
 					reason = e.reason
 				}
 			})
@@ -203,7 +203,7 @@ func (r *reader) firstOf(j *job, g *slots, once map[[2]int32]int32, overs []int3
 		r.faults.Add(diag.Diagnostic{Code: DuplicateRow})
 		return true
 	}
-	d := diag.Diagnostic{Pos: diag.Pos{File: f.sheet.Path, Line: int(f.line[k])}, Code: DuplicateRow,
+	d := diag.Diagnostic{Pos: f.sheet.Locate(int(f.line[k]), 0), Code: DuplicateRow,
 		Message: fmt.Sprintf("%s%s stands in line %d already", allot.Describe(r.plan, f.unit, i), what, first), Hint: hint,
 		Related: []diag.Related{{Pos: diag.Pos{File: f.sheet.Path, Line: int(first)}, Message: "the first row"}}}
 	if j.repeated >= 0 {
@@ -475,15 +475,18 @@ func (r *reader) finerExclusions(j *job) byUnit[*exclusion] {
 // where rows are averaged, whether it lies in the range.
 func (r *reader) checkRow(j *job, g *slots, k int, i, t int32, s int, buffer []float64) uint8 {
 	p, f := j.p, j.base
-	pos := func() diag.Pos { return diag.Pos{File: f.sheet.Path, Line: int(f.line[k])} }
-	bad := func(hint, format string, args ...any) uint8 {
-		r.faults.Add(diag.Diagnostic{Pos: pos(), Code: BadKind, Message: fmt.Sprintf(format, args...), Hint: hint})
+	bad := func(column, hint, format string, args ...any) uint8 {
+		d := diag.Diagnostic{Code: BadKind}
+		if !r.faults.Full(BadKind) {
+			d.Pos, d.Message, d.Hint = r.place(f, f.line[k], column), fmt.Sprintf(format, args...), hint
+		}
+		r.faults.Add(d)
 		return impossible
 	}
 	v := buffer[0]
 	if p.Aggregate != "ratio" {
 		if message, hint := kindFault(p, v); message != "" {
-			return bad(hint, "%s", message)
+			return bad(p.Name, hint, "%s", message)
 		}
 	}
 	if g.total != nil {
@@ -492,7 +495,7 @@ func (r *reader) checkRow(j *job, g *slots, k int, i, t int32, s int, buffer []f
 			return c.why[k]
 		}
 		if n := c.v[k]; n < 0 || n != math.Trunc(n) || v > n {
-			return bad(fmt.Sprintf("%s is the number out of which %s is counted", p.Total, p.Name), "%s is %v of %v", p.Name, v, n)
+			return bad(p.Name, fmt.Sprintf("%s is the number out of which %s is counted", p.Total, p.Name), "%s is %v of %v", p.Name, v, n)
 		}
 		g.total[s] += c.v[k]
 	}
@@ -502,7 +505,7 @@ func (r *reader) checkRow(j *job, g *slots, k int, i, t int32, s int, buffer []f
 			return c.why[k]
 		}
 		if e := c.v[k]; e != 0 && e != 1 {
-			return bad("1: the event was seen; 0: it was not seen until that time", "%s is %v, not 0 or 1", p.Event, e)
+			return bad(p.Event, "1: the event was seen; 0: it was not seen until that time", "%s is %v, not 0 or 1", p.Event, e)
 		}
 		g.event[s] += c.v[k]
 	}
@@ -510,7 +513,7 @@ func (r *reader) checkRow(j *job, g *slots, k int, i, t int32, s int, buffer []f
 		stands := r.confirm(j, i, t, v, g, s)
 		if p.Range != nil && (v < p.Range[0] || v > p.Range[1]) && !stands {
 			g.out[s] = true
-			r.outside(j, pos(), allot.Describe(r.plan, f.unit, i), v)
+			r.outside(j, f.line[k], allot.Describe(r.plan, f.unit, i), v)
 		}
 	}
 	return 0
@@ -532,8 +535,20 @@ func kindFault(p *protocol.Response, v float64) (message, hint string) {
 	return "", ""
 }
 
-func (r *reader) outside(j *job, pos diag.Pos, unit string, v float64) {
-	r.faults.Add(diag.Diagnostic{Pos: pos, Code: OutsideRange, Message: fmt.Sprintf("%s of %s is %v, outside %v to %v", j.p.Name, unit, v, j.p.Range[0], j.p.Range[1]),
+// place is where the cell of a name stands in a row; without such a cell, the row.
+func (r *reader) place(f *frame, line int32, name string) diag.Pos {
+	if at := r.find(f, name); at >= 0 {
+		return f.sheet.Locate(int(line), at)
+	}
+	return diag.Pos{File: f.sheet.Path, Line: int(line)}
+}
+
+func (r *reader) outside(j *job, line int32, unit string, v float64) {
+	if r.faults.Full(OutsideRange) {
+		r.faults.Add(diag.Diagnostic{Code: OutsideRange})
+		return
+	}
+	r.faults.Add(diag.Diagnostic{Pos: r.place(j.base, line, j.p.Name), Code: OutsideRange, Message: fmt.Sprintf("%s of %s is %v, outside %v to %v", j.p.Name, unit, v, j.p.Range[0], j.p.Range[1]),
 		Hint:    "correct it under [[correction]], or confirm it under [[data.confirmed]] if it was checked and stands",
 		Related: []diag.Related{{Pos: r.plan.Protocol.Pos(j.key + ".range"), Message: "the range"}}})
 }
@@ -552,7 +567,7 @@ func (r *reader) confirm(j *job, i, t int32, v float64, g *slots, s int) bool {
 		}
 		for _, c := range x.of[i] {
 			p := &r.data.Confirmed[c.index]
-			if p.Response != j.p.Name || p.At != "" && (j.repeated < 0 || timeIndex(&r.plan.Protocol.Repeated[j.repeated], p.At, '.') != t) {
+			if p.Response != j.p.Name || p.At != "" && (j.repeated < 0 || r.timeIndex(j.repeated, p.At) != t) {
 				continue
 			}
 			slack := 1e-9 * math.Abs(v)
@@ -667,7 +682,7 @@ func (r *reader) finish(j *job, g *slots, out *Response, times int, rep *protoco
 			stands := r.confirm(j, i, t, v, g, s)
 			if p.Range != nil && (v < p.Range[0] || v > p.Range[1]) && !stands {
 				g.out[s] = true
-				r.outside(j, diag.Pos{File: f.sheet.Path, Line: int(g.origin[s].First)}, allot.Describe(plan, j.unit, i), v)
+				r.outside(j, g.origin[s].First, allot.Describe(plan, j.unit, i), v)
 			}
 		}
 		if g.out[s] {
@@ -691,7 +706,7 @@ func (r *reader) finish(j *job, g *slots, out *Response, times int, rep *protoco
 	out.Total, out.Event = g.total, g.event
 	for s := range n {
 		r.exclusions.each(plan, j.unit, out.Instance[s], func(e *exclusion) {
-			if e.concerns(p.Name) && (e.p.At == "" || rep != nil && timeIndex(rep, e.p.At, '.') == out.Time[s]) {
+			if e.concerns(p.Name) && (e.p.At == "" || rep != nil && r.timeIndex(j.repeated, e.p.At) == out.Time[s]) {
 				out.Status[s], out.Reason[s] = Excluded, e.reason
 			}
 		})

@@ -17,7 +17,8 @@ type treatmentColumn struct {
 	to     []int32 // instance of the rows' unit → of unit
 	want   []int32 // level of every instance of unit by the allotment, -1 unknown; nil without one
 	told   []bool  // instances whose disagreement was reported
-	last   string  // text of the row before
+	names  *allot.Names
+	last   string // text of the row before
 	level  int32
 }
 
@@ -53,6 +54,7 @@ func (r *reader) treatmentColumns(f *frame) []*treatmentColumn {
 		if t.want != nil && slices.Contains(t.want, -1) && of.Unit >= 0 {
 			t.want = nil // what is not known is taken from the data
 		}
+		t.names = allot.NewNames(of.Levels, of.Values)
 		t.told = make([]bool, r.plan.Units[unit].N)
 		out = append(out, t)
 	}
@@ -67,10 +69,14 @@ func (r *reader) compare(f *frame, t *treatmentColumn, row sheet.Row, i int32) {
 		return
 	}
 	if text != t.last {
-		t.last, t.level = text, allot.Level(of, text, f.decimal)
+		t.last, t.level = text, t.names.Find(text, f.decimal)
 	}
 	at := t.to[i]
 	if t.level < 0 {
+		if r.faults.Full(allot.UnknownLevelCode) {
+			r.faults.Add(diag.Diagnostic{Code: allot.UnknownLevelCode})
+			return
+		}
 		message, hint := allot.UnknownLevel(of, text)
 		r.faults.Add(diag.Diagnostic{Pos: f.sheet.Pos(row, t.at), Code: allot.UnknownLevelCode, Message: message, Hint: hint})
 		return

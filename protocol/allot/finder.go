@@ -2,7 +2,6 @@ package allot
 
 import (
 	"fmt"
-	"math"
 	"strconv"
 	"strings"
 
@@ -86,7 +85,8 @@ func crossing(tuple []int32) key {
 
 // Binding reads the unit of a row from the columns of a sheet.
 type Binding struct {
-	Unit  int // the smallest unit that the columns name
+	Unit  int  // the smallest unit that the columns name
+	Quiet bool // faults are only counted, so that their words need not be found
 	find  *Finder
 	steps []bound // units with a column or needed on the way, coarse before fine
 	last  int     // step of Unit
@@ -114,8 +114,9 @@ type BadUnit struct {
 }
 
 // Bind finds the smallest unit that columns name: columns[u] is the column that bears
-// the name of unit u, or -1. Parents may be left out where names tell alone.
-func (f *Finder) Bind(columns []int) (*Binding, *BadUnit) {
+// the name of unit u, or -1. Parents may be left out where names tell alone. headings
+// serve to suggest what is wanting.
+func (f *Finder) Bind(columns []int, headings []string) (*Binding, *BadUnit) {
 	plan := f.Plan
 	b := &Binding{find: f, Unit: -1}
 	at := make([]int, len(plan.Units)) // step of each unit, -1 for none
@@ -161,7 +162,7 @@ func (f *Finder) Bind(columns []int) (*Binding, *BadUnit) {
 		wanting = -1
 		if !visit(u) && columns[u] >= 0 {
 			return nil, &BadUnit{Column: columns[u], Message: fmt.Sprintf("names of unit %q repeat, and no column tells the %s", plan.Units[u].Name, plan.Units[wanting].Name),
-				Hint: fmt.Sprintf("add a column %q, or say which heading stands for it under columns", plan.Units[wanting].Name)}
+				Hint: wanted(plan.Units[wanting].Name, headings)}
 		}
 	}
 	for u := range plan.Units {
@@ -182,11 +183,26 @@ func (f *Finder) Bind(columns []int) (*Binding, *BadUnit) {
 	}
 	switch {
 	case !named:
-		return nil, &BadUnit{Column: -1, Message: "no column names a unit", Hint: "the units are " + unitNames(plan) + "; columns under [data] says which heading stands for which"}
+		bad := &BadUnit{Column: -1, Message: "no column names a unit", Hint: "the units are " + unitNames(plan) + "; columns under [data] says which heading stands for which"}
+		for u := range plan.Units {
+			if name := plan.Units[u].Name; plan.Units[u].Own != nil && diag.Nearest(name, headings) != "" {
+				bad.Hint = wanted(name, headings)
+				break
+			}
+		}
+		return nil, bad
 	case b.Unit < 0:
 		return nil, &BadUnit{Column: -1, Message: "the columns name units that no unit lies within", Hint: "name the units in a way that one of them lies within all others"}
 	}
 	return b, nil
+}
+
+// wanted says how to provide the column of a name.
+func wanted(name string, headings []string) string {
+	if n := diag.Nearest(name, headings); n != "" {
+		return fmt.Sprintf("if %q is the %s, say columns = { %s = %q } under [data]", n, name, name, n)
+	}
+	return fmt.Sprintf("add a column %q, or say under [data] columns which heading stands for it", name)
 }
 
 func unitNames(plan *layout.Plan) string {
@@ -257,7 +273,11 @@ func (b *Binding) step(s *bound, cells []sheet.Cell) *BadUnit {
 		s.name, s.above, s.instance, s.known = name, above, i, true
 		return nil
 	}
-	bad := &BadUnit{Column: s.column, Message: fmt.Sprintf("there is no %s %q", unit.Name, name)}
+	bad := &BadUnit{Column: s.column}
+	if b.Quiet {
+		return bad
+	}
+	bad.Message = fmt.Sprintf("there is no %s %q", unit.Name, name)
 	if name == "" {
 		bad.Message = fmt.Sprintf("the %s is not named", unit.Name)
 	}
@@ -311,7 +331,7 @@ func (f *Finder) Unit(name protocol.UnitName) (unit int, instance int32, bad *Ba
 			return -1, -1, &BadUnit{Column: i, Message: fmt.Sprintf("no unit called %q is named in files", part.Unit), Hint: "the units are " + unitNames(f.Plan)}
 		}
 	}
-	b, bad := f.Bind(columns)
+	b, bad := f.Bind(columns, nil)
 	if bad != nil {
 		return -1, -1, bad
 	}
@@ -340,24 +360,38 @@ func Describe(plan *layout.Plan, unit int, instance int32) string {
 	return strings.Join(parts, ", ")
 }
 
-// Level finds the level of f that a cell names: its text, or, for a quantitative
-// factor, the same number written differently. It is -1 for none.
-func Level(f *layout.Factor, text string, decimal rune) int32 {
-	for l, name := range f.Levels {
-		if name == text {
-			return int32(l)
+// Names finds one of a list of names, such as the levels of a factor, by its text or,
+// where the names are numbers, by the same number written differently.
+type Names struct {
+	text  map[string]int32
+	value map[float64]int32 // nil where names are words
+}
+
+// NewNames takes the names and, where they are numbers, their values; else nil.
+func NewNames(names []string, values []float64) *Names {
+	n := &Names{text: make(map[string]int32, len(names))}
+	for i, name := range names {
+		n.text[name] = int32(i)
+	}
+	if values != nil {
+		n.value = make(map[float64]int32, len(values))
+		for i, v := range values {
+			n.value[v] = int32(i)
 		}
 	}
-	if f.Values == nil {
-		return -1
+	return n
+}
+
+// Find gives the index of the name that a cell bears, or -1.
+func (n *Names) Find(text string, decimal rune) int32 {
+	if i, ok := n.text[text]; ok {
+		return i
 	}
-	v, ok := sheet.Number(text, decimal)
-	if !ok {
-		return -1
-	}
-	for l, w := range f.Values {
-		if v == w || math.Abs(v-w) <= 1e-12*math.Abs(w) {
-			return int32(l)
+	if n.value != nil {
+		if v, ok := sheet.Number(text, decimal); ok {
+			if i, ok := n.value[v]; ok {
+				return i
+			}
 		}
 	}
 	return -1

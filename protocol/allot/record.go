@@ -382,7 +382,7 @@ func parse(file folder.File, plan *layout.Plan) (*Allotment, diag.List) {
 	}
 	var list sheet.Faults
 	list.AddAll(said)
-	b, bad := NewFinder(plan).Bind(Columns(plan, s.Headings))
+	b, bad := NewFinder(plan).Bind(Columns(plan, s.Headings), s.Headings)
 	if bad != nil {
 		list.Add(diag.Diagnostic{Pos: s.Pos(s.Heading, max(bad.Column, 0)), Code: UnitColumns, Message: bad.Message, Hint: bad.Hint})
 		return nil, list.List()

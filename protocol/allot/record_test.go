@@ -109,7 +109,7 @@ func TestReadRefuses(t *testing.T) {
 		{"unknown level", strings.Replace(good, "diet2", "deit2", 1), "", `allotment.csv:3:5: "deit2" is not a level of diet [unknown-level] did you mean "diet2"?`},
 		{"no level", strings.Replace(good, "diet2", "", 1), "", `allotment.csv:3:5: no level of diet is given [unknown-level] levels are diet1, diet2`},
 		{"no column", strings.Replace(good, "diet\n", "deit\n", 1), "", `allotment.csv:1:11: no column "diet" tells what each pen received [no-treatment-column] is it "deit"? name the column "diet", or say so under [data] columns`},
-		{"no block", "pen,diet\n1,diet1\n", "", `allotment.csv:1:1: names of unit "pen" repeat, and no column tells the block [unit-columns] add a column "block", or say which heading stands for it under columns`},
+		{"no block", "pen,diet\n1,diet1\n", "", `allotment.csv:1:1: names of unit "pen" repeat, and no column tells the block [unit-columns] add a column "block", or say under [data] columns which heading stands for it`},
 		{"bad order", "block,pen,order,diet\n1,1,1,diet1\n1,2,1,diet2\n2,1,x,diet2\n2,2,4,diet1\n", "", `allotment.csv:3:5: order 1 stands in line 2 already [bad-order] `},
 		{"unequal", strings.Replace(good, "1,1,diet1", "1,1,diet2", 1), "", `allotment.csv:2:5: diet diet1 stands on 1 of unit pen, 2 are planned [unequal-allotment] the analysis follows the allotment as it is; if this was meant, say so with replicates`},
 		{"not a table", "\"", "", `allotment.csv:1:1: a quoted field is not closed [quoting] `},

@@ -36,7 +36,7 @@ func ReadRoster(file folder.File, plan *layout.Plan) (*Roster, diag.List) {
 	if len(carried) == 0 {
 		return r, list
 	}
-	b, bad := NewFinder(plan).Bind(columns)
+	b, bad := NewFinder(plan).Bind(columns, s.Headings)
 	if bad != nil {
 		if bad.Column >= 0 {
 			list.Add(diag.Diagnostic{Pos: s.Pos(s.Heading, bad.Column), Code: UnitColumns, Message: bad.Message, Hint: bad.Hint})
@@ -101,9 +101,11 @@ func fill(s *sheet.Sheet, b *Binding, plan *layout.Plan, columns []column, level
 	if seen == nil {
 		seen = make([][]first, len(plan.Factors))
 	}
-	decimal := DecimalOf(s, columns)
+	decimal := decimalOf(s, columns)
+	names := make([]*Names, len(plan.Factors))
 	for _, c := range columns {
 		f := &plan.Factors[c.factor]
+		names[c.factor] = NewNames(f.Levels, f.Values)
 		levels[c.factor] = make([]int32, plan.Units[f.Unit].N)
 		seen[c.factor] = make([]first, plan.Units[f.Unit].N)
 		for i := range levels[c.factor] {
@@ -117,6 +119,7 @@ func fill(s *sheet.Sheet, b *Binding, plan *layout.Plan, columns []column, level
 		}
 	}
 	_, _, _, broken := s.Rows(func(r sheet.Row) bool {
+		b.Quiet = list.Full(UnknownUnit)
 		i, bad := b.Find(r.Cells)
 		if bad != nil {
 			list.Add(diag.Diagnostic{Pos: s.Pos(r, max(bad.Column, 0)), Code: UnknownUnit, Message: bad.Message, Hint: bad.Hint})
@@ -129,9 +132,11 @@ func fill(s *sheet.Sheet, b *Binding, plan *layout.Plan, columns []column, level
 			f := &plan.Factors[c.factor]
 			at := plan.Coarse(b.Unit, f.Unit)[i]
 			text := r.Cells[c.at].Text
-			l := Level(f, text, decimal)
+			l := names[c.factor].Find(text, decimal)
 			old, from := &levels[c.factor][at], &seen[c.factor][at]
 			switch {
+			case l < 0 && list.Full(UnknownLevelCode):
+				list.Add(diag.Diagnostic{Code: UnknownLevelCode})
 			case l < 0:
 				message, hint := UnknownLevel(f, text)
 				list.Add(diag.Diagnostic{Pos: s.Pos(r, c.at), Code: UnknownLevelCode, Message: message, Hint: hint})
@@ -150,9 +155,9 @@ func fill(s *sheet.Sheet, b *Binding, plan *layout.Plan, columns []column, level
 	return list.List()
 }
 
-// DecimalOf is the decimal mark of the levels of quantitative factors in a sheet: the
+// decimalOf is the decimal mark of the levels of quantitative factors in a sheet: the
 // comma where commas do not part the fields and levels are written so.
-func DecimalOf(s *sheet.Sheet, columns []column) rune {
+func decimalOf(s *sheet.Sheet, columns []column) rune {
 	var m sheet.Marks
 	s.Rows(func(r sheet.Row) bool {
 		for _, c := range columns {

@@ -255,6 +255,21 @@ func (s *Sheet) Pos(r Row, cell int) diag.Pos {
 	return p
 }
 
+// Locate finds the place of a cell again by the first line of its row.
+func (s *Sheet) Locate(line, cell int) diag.Pos {
+	p := diag.Pos{File: s.Path, Line: line}
+	r := s.reader()
+	for {
+		row, ok := r.next()
+		if !ok || row.Line > line {
+			return p
+		}
+		if row.Line == line {
+			return s.Pos(row, cell)
+		}
+	}
+}
+
 // Rows calls do with every row that is not blank, until it returns false. Cells are as
 // many as there are headings, and valid only during the call. The list tells of broken
 // quoting, of rows with more or fewer fields than headings, and of too many rows; those
