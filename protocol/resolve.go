@@ -34,9 +34,11 @@ type resolver struct {
 	p *Protocol
 
 	factors, units, responses, covariates, repeated, codes declared
-	where                                                  map[string]named           // every declared name
-	levels                                                 map[string]map[string]bool // of each factor, and the codes of the listed treatments
-	rules                                                  map[string]bool            // for exclusions
+
+	where  map[string]named           // every declared name
+	levels map[string]map[string]bool // of each factor, and the codes of the listed treatments
+	times  map[string]map[string]bool // of each repeated set
+	rules  map[string]bool            // for exclusions
 }
 
 // declared are the names of one kind that may be referred to.
@@ -71,7 +73,7 @@ func at(table string, i int, key string) string {
 // declare collects the names, which are one namespace because they are columns.
 func (r *resolver) declare() {
 	p := r.p
-	r.where, r.levels = map[string]named{}, map[string]map[string]bool{}
+	r.where, r.levels, r.times = map[string]named{}, map[string]map[string]bool{}, map[string]map[string]bool{}
 	r.rules = setOf(p.Eligibility.ExclusionRules)
 	collect := func(into *declared, word, table, key string, n int, name func(i int) string, columns bool) {
 		*into = declared{word: word, key: table, set: map[string]int{}}
@@ -403,8 +405,6 @@ func (r *resolver) measured() {
 		}
 		r.refer(at("response", i, "recorded_on"), s.RecordedOn, &r.units)
 		r.refer(at("response", i, "repeated"), s.Repeated, &r.repeated)
-		named[s.Repeated] = true
-		named[s.Over] = true
 		if s.Assessed == "by eye" && (p.Blinding == nil || p.Blinding.Assessment != masked) {
 			r.warn(at("response", i, "assessed"), UnmaskedAssessment, `write assessment = "masked" in [blinding] if it is`, "%s is assessed by eye, and nothing says that the assessment is masked", quote(s.Name))
 		}
@@ -424,9 +424,6 @@ func (r *resolver) measured() {
 	}
 	for i, t := range p.Repeated {
 		r.refer(at("repeated", i, "on"), t.On, &r.units)
-		if t.Name != "" && !named[t.Name] && len(p.Responses) > 0 {
-			r.warn(at("repeated", i, "name"), NotUsed, fmt.Sprintf("write repeated = %s in a response", quote(t.Name)), "no response is measured at the times of %s", quote(t.Name))
-		}
 		if len(t.At) == 1 {
 			r.fail(at("repeated", i, "at"), TooFew, "add the other times", "one time only is not repeated")
 		}
@@ -682,6 +679,36 @@ func (r *resolver) unitName(key string, u UnitName) {
 	}
 }
 
+// time checks the time of a repeated row, and brings it to the form it has in the
+// list of times. Rows that are only gathered over a column may have any.
+func (r *resolver) time(key, time string) string {
+	if time == "" || r.repeated.open {
+		return time
+	}
+	for i := range r.p.Repeated {
+		t := &r.p.Repeated[i]
+		if t.At == nil {
+			return time // said already
+		}
+		if r.times[t.Name] == nil {
+			r.times[t.Name] = setOf(t.At)
+		}
+		if s := levelText(time, t.Values != nil); r.times[t.Name][s] {
+			return s
+		}
+	}
+	if slices.ContainsFunc(r.p.Responses, func(s Response) bool { return s.Over != "" }) {
+		return time
+	}
+	if len(r.p.Repeated) == 0 {
+		r.fail(key, UnknownName, "delete at, or declare the times in [[repeated]]", "there are no repeated times")
+		return time
+	}
+	f := r.fail(key, UnknownLevel, r.d.suggest(time, r.p.Repeated[0].At), "%s is none of the repeated times", quote(time))
+	f.Relate(r.p.Pos("repeated[0].at"), "they are listed here")
+	return time
+}
+
 func (r *resolver) data() {
 	p := r.p
 	r.plot()
@@ -721,6 +748,7 @@ func (r *resolver) data() {
 	for i, c := range p.Data.Confirmed {
 		own := tomlpos.Index("data.confirmed", i)
 		r.unitName(own+".unit", c.Unit)
+		p.Data.Confirmed[i].At = r.time(own+".at", c.At)
 		r.refer(own+".response", c.Response, &r.responses)
 	}
 	r.columns()
@@ -803,10 +831,12 @@ func (r *resolver) conduct() {
 		if p.Roster == nil || c.File != p.Roster.File { // a roster may have the animals' own numbers
 			r.unitName(own+".unit", c.Unit)
 		}
+		p.Corrections[i].At = r.time(own+".at", c.At)
 	}
 	for i, e := range p.Exclusions {
 		own := tomlpos.Index("exclusion", i)
 		r.unitName(own+".unit", e.Unit)
+		p.Exclusions[i].At = r.time(own+".at", e.At)
 		r.referAll(own+".responses", e.Responses, &r.responses)
 		if e.Rule != "" && !r.rules[e.Rule] {
 			r.warn(own+".rule", NotPlanned, r.d.suggest(e.Rule, p.Eligibility.ExclusionRules), "%s is none of the exclusion rules set before the trial", quote(e.Rule))

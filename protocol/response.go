@@ -40,7 +40,7 @@ func (t *table) response() Response {
 		Event:      t.word("event"),
 		Comparison: t.enum("comparison", "", comparisons...),
 		Alpha:      t.number("alpha", proportion),
-		Margin:     t.number("margin", positive),
+		Margin:     t.number("margin", notBelow0),
 	}
 	r.Range = t.limits("range")
 	if t.has("decimals") {

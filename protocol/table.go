@@ -320,7 +320,11 @@ func (t *table) number(key string, s span) *float64 {
 		t.fail(key, why, "", "%s is not a number that can be used", found(v))
 		return nil
 	case !s.holds(x):
-		t.fail(key, OutOfRange, "", "must be %s, is %s", s.words, shortest(x))
+		hint := ""
+		if s.high == 1 && x > 1 && x <= 100 {
+			hint = fmt.Sprintf("write %s = %s for %s %%", key, shortest(x/100), shortest(x))
+		}
+		t.fail(key, OutOfRange, hint, "must be %s, is %s", s.words, shortest(x))
 		return nil
 	}
 	return &x
