@@ -7,6 +7,7 @@ import (
 	"fmt"
 	"io/fs"
 	"slices"
+	"strings"
 
 	"penwright/analysis/dataset"
 	"penwright/protocol"
@@ -19,8 +20,11 @@ import (
 // ProtocolFile is the name of the protocol in a trial folder.
 const ProtocolFile = "protocol.toml"
 
-// maxRoster is the greatest size of a roster in bytes.
-const maxRoster = 16 << 20
+// The greatest sizes of a roster and of a template in bytes.
+const (
+	maxRoster   = 16 << 20
+	maxTemplate = 1 << 20
+)
 
 // Trial is what a folder holds so far. Allotment and Table are nil until they exist.
 type Trial struct {
@@ -53,15 +57,19 @@ func (t *Trial) open(files *folder.Folder) diag.List {
 	if p == nil {
 		return list
 	}
+	whole := !list.HasErrors()
 	for k := range p.Tables {
 		read(files, p, fmt.Sprintf("table[%d].file", k), p.Tables[k].File, folder.MaxFile, &list)
 	}
-	if list.HasErrors() {
+	if strings.ContainsAny(p.Report.Template, "./") { // a file; built-in templates have plain names
+		read(files, p, "report.template", p.Report.Template, maxTemplate, &list)
+	}
+	if !whole {
 		return list
 	}
 	plan, more := layout.New(p)
 	list = append(list, more...)
-	if list.HasErrors() {
+	if more.HasErrors() {
 		return list
 	}
 	t.Plan = plan

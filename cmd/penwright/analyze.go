@@ -20,7 +20,7 @@ func (a *app) analyze() *cobra.Command {
 		Long: "analyze prints the analysis of every response as text, or with --json the same in full\n" +
 			"precision as results.json holds it.",
 		Example: "  penwright analyze hollowmere\n  penwright analyze hollowmere --json",
-		Args:    cobra.MaximumNArgs(1),
+		Args:    one("TRIAL"),
 		RunE: func(_ *cobra.Command, args []string) error {
 			o, err := a.sound(args)
 			if err != nil {

@@ -11,6 +11,7 @@ import (
 
 	"github.com/spf13/cobra"
 
+	"penwright/analysis/trial"
 	"penwright/protocol/folder"
 	"penwright/templates"
 )
@@ -22,7 +23,7 @@ func (a *app) demo() *cobra.Command {
 		Long: "demo writes the trial of the Hollowmere research farm, an invented one, into DIR\n" +
 			"(default hollowmere) and makes its report: the whole work with nothing to prepare.",
 		Example: "  penwright demo\n  penwright check hollowmere",
-		Args:    cobra.MaximumNArgs(1),
+		Args:    one("DIR"),
 		RunE: func(_ *cobra.Command, args []string) error {
 			dir := "hollowmere"
 			if len(args) > 0 {
@@ -64,6 +65,11 @@ func (a *app) writeDemo(dir string) error {
 		return failed(err)
 	}
 	defer func() { _ = f.Close() }() // everything was synced when it was applied
+	if other, err := foreign(f); err != nil {
+		return failed(err)
+	} else if other != "" {
+		return status{code: findings, err: fmt.Errorf("%s holds other files, such as %s; name a folder that is empty or not there yet: penwright demo DIR", dir, other)}
+	}
 	var changes []folder.Change
 	var differ []string
 	err = fs.WalkDir(templates.FS, "demo", func(path string, d fs.DirEntry, err error) error {
@@ -96,4 +102,18 @@ func (a *app) writeDemo(dir string) error {
 		return failed(err)
 	}
 	return nil
+}
+
+// foreign names a file of a folder that is not a trial, or is empty if it holds none.
+func foreign(f *folder.Folder) (string, error) {
+	if _, err := fs.Stat(f, trial.ProtocolFile); !errors.Is(err, fs.ErrNotExist) {
+		return "", err
+	}
+	entries, err := fs.ReadDir(f, ".")
+	for _, e := range entries {
+		if !strings.HasPrefix(e.Name(), ".") {
+			return e.Name(), nil
+		}
+	}
+	return "", err
 }

@@ -30,7 +30,7 @@ func (a *app) draw() *cobra.Command {
 			"and notes the reason. --draws N --json prints N draws without recording any, the first\n" +
 			"being what draw writes.",
 		Example: "  penwright draw hollowmere\n  penwright draw hollowmere --draws 3 --json",
-		Args:    cobra.MaximumNArgs(1),
+		Args:    one("TRIAL"),
 		RunE: func(cmd *cobra.Command, args []string) error {
 			many := cmd.Flags().Changed("draws")
 			switch {

@@ -42,13 +42,19 @@ type app struct {
 	quiet    bool
 	color    string
 	licences bool
+
+	step func(name string) // told each step of a write, so that tests can stop there; nil otherwise
 }
 
 func main() { os.Exit(run(os.Args[1:], os.Stdin, os.Stdout, os.Stderr)) }
 
 // run carries out one command line and gives the exit status.
 func run(args []string, stdin io.Reader, stdout, stderr io.Writer) (code int) {
-	a := &app{in: stdin, out: stdout, err: stderr, now: time.Now, getenv: os.Getenv, width: 80}
+	return (&app{in: stdin, out: stdout, err: stderr, now: time.Now, getenv: os.Getenv, width: 80}).run(args)
+}
+
+func (a *app) run(args []string) (code int) {
+	stdin, stdout, stderr := a.in, a.out, a.err
 	if f, ok := stderr.(*os.File); ok {
 		a.terminal = term.IsTerminal(int(f.Fd()))
 	}
@@ -157,6 +163,12 @@ func (a *app) root() *cobra.Command {
 	root.PersistentFlags().BoolVar(&a.quiet, "quiet", false, "say nothing on standard error but faults")
 	root.PersistentFlags().StringVar(&a.color, "color", "auto", "colour of messages: auto, always or never")
 	root.Flags().BoolVar(&a.licences, "licences", false, "print the licences of the embedded faces")
+	root.PersistentPreRunE = func(*cobra.Command, []string) error {
+		if a.color != "auto" && a.color != "always" && a.color != "never" {
+			return fmt.Errorf("unknown --color %q: auto, always or never", a.color)
+		}
+		return nil
+	}
 	root.AddCommand(a.demo(), a.check(), a.draw(), a.analyze(), a.report())
 	root.SetHelpCommand(&cobra.Command{
 		Use: "help [COMMAND]", Short: "tells more about a command", Args: cobra.ArbitraryArgs,
@@ -169,6 +181,16 @@ func (a *app) root() *cobra.Command {
 		},
 	})
 	return root
+}
+
+// one allows a single argument, or none.
+func one(what string) cobra.PositionalArgs {
+	return func(cmd *cobra.Command, args []string) error {
+		if len(args) > 1 {
+			return fmt.Errorf("%s takes one %s, not %d: %s", cmd.Name(), what, len(args), strings.Join(args, " "))
+		}
+		return nil
+	}
 }
 
 // colourful tells whether messages are coloured.

@@ -1,7 +1,9 @@
 package main
 
 import (
+	"errors"
 	"fmt"
+	"io/fs"
 	"os"
 	"path/filepath"
 	"runtime"
@@ -14,6 +16,9 @@ import (
 	"penwright/render"
 )
 
+// maxTemplate is the greatest size of a template in bytes.
+const maxTemplate = 1 << 20
+
 func (a *app) report() *cobra.Command {
 	var out, template string
 	var only []string
@@ -25,7 +30,7 @@ func (a *app) report() *cobra.Command {
 			"The same files give the same bytes; the date the report bears is the last one the\n" +
 			"trial mentions, or that of SOURCE_DATE_EPOCH.",
 		Example: "  penwright report hollowmere\n  penwright report hollowmere --only pdf,html --out /tmp/hollowmere",
-		Args:    cobra.MaximumNArgs(1),
+		Args:    one("TRIAL"),
 		RunE: func(_ *cobra.Command, args []string) error {
 			for _, k := range only {
 				if !slices.Contains(render.Outputs, k) {
@@ -56,6 +61,15 @@ func (a *app) makeReport(o *opened, out, template string, only []string) ([]stri
 	date, err := a.reportDate(o.trial.Protocol)
 	if err != nil {
 		return nil, err
+	}
+	if strings.ContainsAny(template, "./") {
+		// A template of the folder is one of the files the report is made of.
+		if _, err := o.folder.Read(template, maxTemplate); errors.Is(err, fs.ErrNotExist) {
+			return nil, status{code: findings, err: fmt.Errorf("there is no template %s in the trial folder", template)}
+		} else if err != nil {
+			return nil, failed(err)
+		}
+		o.trial.Files = o.folder.Files()
 	}
 	rs, list := a.analysed(o)
 	a.complain(o, list)

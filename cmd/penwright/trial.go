@@ -5,7 +5,9 @@ import (
 	"fmt"
 	"io/fs"
 	"path/filepath"
+	"strconv"
 	"strings"
+	"syscall"
 	"time"
 
 	"penwright/analysis/trial"
@@ -19,7 +21,7 @@ func trialArg(args []string) string {
 	if len(args) == 0 {
 		return "."
 	}
-	if filepath.Base(args[0]) == "protocol.toml" {
+	if filepath.Base(args[0]) == trial.ProtocolFile {
 		return filepath.Dir(args[0])
 	}
 	return args[0]
@@ -39,9 +41,14 @@ func (a *app) open(dir string) (*opened, error) {
 	if err != nil {
 		return nil, failed(cause(dir, err))
 	}
-	if _, err := fs.Stat(f, "protocol.toml"); errors.Is(err, fs.ErrNotExist) {
+	f.Step = a.step
+	switch _, err := fs.Stat(f, trial.ProtocolFile); {
+	case errors.Is(err, fs.ErrNotExist):
 		_ = f.Close() // it was only read
 		return nil, failed(fmt.Errorf("%s holds no protocol.toml; a trial folder does (penwright demo makes one to look at)", dir))
+	case err != nil:
+		_ = f.Close() // it was only read
+		return nil, failed(cause(filepath.Join(dir, trial.ProtocolFile), err))
 	}
 	t, list := trial.Open(f)
 	return &opened{dir: dir, folder: f, trial: t, list: list}, nil
@@ -56,8 +63,14 @@ func cause(path string, err error) error {
 		return fmt.Errorf("there is no folder %s", path)
 	case errors.Is(err, fs.ErrPermission):
 		return fmt.Errorf("%s cannot be read: permission denied", path)
+	case errors.Is(err, syscall.ENOTDIR):
+		return fmt.Errorf("%s is no folder", path)
 	}
-	return fmt.Errorf("%s: %w", path, err)
+	var of *fs.PathError
+	if errors.As(err, &of) { // the path is said already
+		err = of.Err
+	}
+	return fmt.Errorf("%s cannot be read: %w", path, err)
 }
 
 // sources gives the text of the files that diagnostics point into.
@@ -164,8 +177,8 @@ func latest(p *protocol.Protocol) string {
 // the last one the trial mentions.
 func (a *app) reportDate(p *protocol.Protocol) (string, error) {
 	if s := a.getenv("SOURCE_DATE_EPOCH"); s != "" {
-		var seconds int64
-		if _, err := fmt.Sscanf(s, "%d", &seconds); err != nil {
+		seconds, err := strconv.ParseInt(s, 10, 64)
+		if err != nil {
 			return "", status{code: misuse, err: fmt.Errorf("SOURCE_DATE_EPOCH is %q, not a number of seconds", s)}
 		}
 		return time.Unix(seconds, 0).UTC().Format("2006-01-02"), nil
