@@ -77,7 +77,7 @@ func TestOpen(t *testing.T) {
 		{name: "bad allotment", change: map[string]string{"allotment.csv": "pen,diet\n1,A\n2,A\n3,B\n5,B\n"}, want: `there is no pen "5"`, has: "protocol plan roster"},
 		{name: "no roster", change: map[string]string{"roster.csv": ""}, want: "there is no file roster.csv", has: "protocol plan allotment table"},
 		{name: "bad roster", change: map[string]string{"roster.csv": "pen,sex,mass\n1,X,20\n"}, want: `"X" is not a level of sex`, has: "protocol plan roster allotment table"},
-		{name: "no table of diets", change: map[string]string{"diets.csv": ""}, want: "there is no file diets.csv", has: "protocol"},
+		{name: "no table of diets", change: map[string]string{"diets.csv": ""}, want: "there is no file diets.csv", has: "protocol plan roster allotment table"},
 		{name: "no text", change: map[string]string{"background.md": ""}, want: "background.md", has: "protocol"},
 		{name: "no layout", change: map[string]string{"protocol.toml": head + strings.Replace(units, "count = 4", "count = 1", 1)}, want: "cannot receive", has: "protocol"},
 	} {
