@@ -171,6 +171,7 @@ func (b *builder) functions() template.FuncMap {
 		"amendments":    func() doc.Table { return table.Amendments(t.Protocol) },
 		"data":          func() doc.Table { return table.Data(t) },
 		"planned":       func() doc.Table { return table.Planned(t.Protocol) },
+		"analysis plan": func() doc.Table { return table.AnalysisPlan(t.Protocol) },
 		"welfare":       func() doc.Table { return table.Welfare(t.Protocol) },
 		"procedures":    func() doc.Table { return table.Procedures(t.Protocol) },
 		"losses":        func() doc.Table { return table.Losses(t) },

@@ -41,8 +41,12 @@ func WithinVariance(p *layout.Plan, r *result.Response, from, to int, variance f
 
 // Lost says that units gave no value, so that the layout is no longer balanced.
 func Lost(p *layout.Plan, unit, lost, of int) string {
-	return fmt.Sprintf("%s of %s %s gave no value; the layout is no longer balanced, and effects are estimated by least squares with every unit larger than the %s fixed.",
-		upperFirst(small(lost)), num.Count(of), Plural(UnitName(&p.Units[unit])), UnitName(&p.Units[unit]))
+	is := "are"
+	if lost == 1 {
+		is = "is"
+	}
+	return fmt.Sprintf("%s of %s %s %s missing or excluded; the layout is no longer balanced, and effects are estimated by least squares with every unit larger than the %s fixed.",
+		upperFirst(small(lost)), num.Count(of), Plural(UnitName(&p.Units[unit])), is, UnitName(&p.Units[unit]))
 }
 
 // NotBalanced says that treatments are not in equal or proportional numbers.

@@ -447,14 +447,22 @@ func Data(t *trial.Trial) doc.Table {
 	return listing("data", "Data files as they were read", []string{"File", "Rows", "Encoding", "Between cells", "Decimal mark", "Columns not used"}, rows)
 }
 
+func rangeText(r *protocol.Response) string {
+	if r.Range == nil {
+		return ""
+	}
+	d := Places(r.Range[:])
+	return num.Fixed(r.Range[0], d) + " to " + num.Fixed(r.Range[1], d)
+}
+
 // Planned lists the responses that the protocol names.
 func Planned(p *protocol.Protocol) doc.Table {
 	var rows [][]string
 	for i := range p.Responses {
 		r := &p.Responses[i]
-		rows = append(rows, []string{prose.ResponseLabel(r), num.UnitText(r.Unit), r.Role, r.Kind, r.How, r.Instrument, strings.Join(r.Covariates, ", ")})
+		rows = append(rows, []string{prose.ResponseLabel(r), num.UnitText(r.Unit), r.Role, r.Kind, r.How, r.Instrument, r.Assessed, rangeText(r)})
 	}
-	return listing("planned", "Responses", []string{"Response", "Unit", "Role", "Kind", "How", "Instrument", "Covariates"}, rows)
+	return listing("planned", "Responses", []string{"Response", "Unit", "Role", "Kind", "How", "Instrument", "Assessed", "Plausible range"}, rows)
 }
 
 // Welfare prints what the protocol says of the animals’ welfare.
@@ -723,4 +731,99 @@ func FromCSV(id, caption string, data []byte) (doc.Table, error) {
 		out.Rows = append(out.Rows, doc.Row{Cells: cells})
 	}
 	return out, nil
+}
+
+// AnalysisPlan prints what the protocol says of the analysis beforehand, also what a
+// later version of the program will carry out.
+func AnalysisPlan(p *protocol.Protocol) doc.Table {
+	a := p.Analysis
+	given := func(key, value string) string {
+		if p.Given(key) {
+			return value
+		}
+		return ""
+	}
+	number := func(x float64) string { return num.Fixed(x, Places([]float64{x})) }
+	rows := [][2]string{
+		{"Level of significance", number(a.Alpha)},
+		{"Tendency up to", given("analysis.tendency", number(a.Tendency))},
+		{"Comparison of means", a.Comparison},
+		{"Side", given("analysis.side", a.Side)},
+		{"Pairs of interactions", given("analysis.pairs", a.Pairs)},
+		{"Letters", given("analysis.letters", a.Letters)},
+		{"Highest trend", given("analysis.trend", strconv.Itoa(a.Trend))},
+		{"Interactions", given("analysis.interactions", orders(a.Interactions))},
+		{"Blocks", given("analysis.blocks", a.Blocks)},
+		{"Adjustment", given("analysis.adjustment", a.Adjustment)},
+		{"Degrees of freedom of mixed models", given("analysis.df_method", a.DFMethod)},
+		{"Components of variance", given("analysis.components", a.Components)},
+		{"Limits of components", given("analysis.limits", a.Limits)},
+		{"Residual variance by", a.VarianceBy},
+		{"Draws of the randomization test", given("analysis.randomization_test", num.Count(a.RandomizationTest))},
+		{"Least error degrees of freedom", given("analysis.error_df_min", num.Count(a.ErrorDFMin))},
+		{"Margin of equivalence", given("analysis.margin", number(a.Margin))},
+	}
+	for _, c := range a.Contrasts {
+		rows = append(rows, [2]string{"Contrast", contrastText(c)})
+	}
+	for i := range p.Responses {
+		for _, c := range p.Responses[i].Contrasts {
+			rows = append(rows, [2]string{"Contrast of " + prose.ResponseLabelText(&p.Responses[i]), contrastText(c)})
+		}
+	}
+	if d := a.DoseResponse; d != nil {
+		rows = append(rows, [2]string{"Dose response", d.Factor + ": " + strings.Join(d.Models, ", ")})
+	}
+	for _, c := range p.Covariates {
+		s := prose.CovariateLabel(&c)
+		if d := prose.DateText(c.Measured); d != "" {
+			s += ", measured " + d
+		}
+		if c.Slopes != "" && c.Slopes != "common" {
+			s += ", slopes " + c.Slopes
+		}
+		rows = append(rows, [2]string{"Covariate", s})
+	}
+	for _, r := range p.Repeated {
+		rows = append(rows, [2]string{"Repeated on " + r.On, fmt.Sprintf("%s at %s %s; correlation %s", r.Name, strings.Join(r.At, ", "), num.UnitText(r.Unit), r.Correlation)})
+	}
+	if c := p.CarryOver; c != nil {
+		s := fmt.Sprintf("of %s along %s on %s", c.Factor, c.Along, c.On)
+		for _, q := range c.Sequences {
+			s += "; sequence " + strings.Join(q, ", ")
+		}
+		rows = append(rows, [2]string{"Carry-over", s})
+	}
+	if t := p.TimeTrend; t != nil {
+		rows = append(rows, [2]string{"Time trend", fmt.Sprintf("of order %d along %s for each %s", max(t.Order, 1), t.Along, t.On)})
+	}
+	if len(p.Randomization.BalanceOn) > 0 {
+		rows = append(rows, [2]string{"Draw balanced on", fmt.Sprintf("%s, the best of %d candidates", strings.Join(p.Randomization.BalanceOn, ", "), p.Randomization.Candidates)})
+	}
+	if r := p.Roster; r != nil {
+		s := r.File
+		if r.BlockBy != "" {
+			s += ", blocks formed by " + r.BlockBy
+		}
+		rows = append(rows, [2]string{"Roster", s})
+	}
+	return pairs("analysis-plan", "Analysis as the protocol plans it", rows...)
+}
+
+func orders(n int) string {
+	switch {
+	case n < 0:
+		return "as the layout allows"
+	case n == 1:
+		return "none"
+	}
+	return fmt.Sprintf("of up to %d factors", n)
+}
+
+func contrastText(c protocol.Contrast) string {
+	var parts []string
+	for _, w := range c.Weights {
+		parts = append(parts, fmt.Sprintf("%s × %s", num.Fixed(w.Value, Places([]float64{w.Value})), w.Level))
+	}
+	return fmt.Sprintf("%s (%s): %s", c.Name, c.Factor, strings.Join(parts, ", "))
 }
