@@ -77,6 +77,7 @@
   };
   for (const box of document.querySelectorAll(".table")) {
     const table = box.querySelector("table");
+    if (!table.tHead || table.rows.length < 4) continue; // short enough to type
     const line = document.createElement("p");
     line.className = "tools";
     line.append(button("Copy as CSV", async (b) => {
