@@ -3,7 +3,7 @@
   // What a cell says, without the digits that only align it.
   const text = (cell) => {
     const copy = cell.cloneNode(true);
-    copy.querySelectorAll(".pad, .call, button").forEach((n) => n.remove());
+    copy.querySelectorAll(".pad, .call").forEach((n) => n.remove());
     return copy.textContent.replace(/\s+/g, " ").trim();
   };
   const number = (s) => {

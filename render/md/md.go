@@ -254,11 +254,12 @@ func (w *writer) table(t doc.Table) {
 		}
 		rows = append(rows, spread(cells, columns, false))
 	}
+	const widest = 40 // a column that holds more is left ragged
 	widths := make([]int, columns)
 	for c := range widths {
 		widths[c] = 3
 		for _, row := range rows {
-			widths[c] = max(widths[c], utf8.RuneCountInString(row[c]))
+			widths[c] = max(widths[c], min(utf8.RuneCountInString(row[c]), widest))
 		}
 	}
 	w.gap()
@@ -319,7 +320,7 @@ func headRow(head [][]doc.Cell, columns int) []string {
 func tableRow(cells []string, widths []int, columns []doc.Column) string {
 	var b strings.Builder
 	for c, text := range cells {
-		pad := strings.Repeat(" ", widths[c]-utf8.RuneCountInString(text))
+		pad := strings.Repeat(" ", max(widths[c]-utf8.RuneCountInString(text), 0))
 		if c < len(columns) && (columns[c].Align == doc.Right || columns[c].Align == doc.Decimal) {
 			b.WriteString("| " + pad + text + " ")
 		} else {
