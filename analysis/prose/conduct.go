@@ -122,7 +122,10 @@ func Agreement(t *trial.Trial) []string {
 
 // Repeat tells how to repeat the draw by another program.
 func Repeat(a *allot.Allotment) []string {
-	if a == nil || a.Origin != allot.Drawn || len(a.Draws) == 0 {
+	if a == nil {
+		return []string{"Nothing has been drawn yet."}
+	}
+	if a.Origin != allot.Drawn || len(a.Draws) == 0 {
 		return []string{"The allotment was not drawn by this program, so that it cannot be repeated from a seed."}
 	}
 	d := a.Draws[len(a.Draws)-1]
@@ -186,7 +189,7 @@ func Later(p *protocol.Protocol) []string {
 	if p.Analysis.DoseResponse != nil {
 		what = append(what, "the dose-response models")
 	}
-	if p.Analysis.RandomizationTest > 0 {
+	if p.Analysis.RandomizationTest > 0 && p.Given("analysis.randomization_test") {
 		what = append(what, fmt.Sprintf("the randomization test with %s draws", num.Count(p.Analysis.RandomizationTest)))
 	}
 	if len(what) == 0 {

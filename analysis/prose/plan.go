@@ -161,7 +161,7 @@ func Treatments(p *layout.Plan) []string {
 		if f.Values != nil {
 			kind = "graded levels"
 		}
-		s := fmt.Sprintf("%s has %s %s: %s%s.", FactorLabel(f), small(len(f.Levels)), kind, And(shown), u)
+		s := fmt.Sprintf("%s has %s %s: %s%s.", upperFirst(FactorLabel(f)), small(len(f.Levels)), kind, And(shown), u)
 		if len(f.Control) == 1 {
 			s += fmt.Sprintf(" %s is the control.", upperFirst(LevelText(p, f.Name, f.Levels[f.Control[0]])))
 		} else if len(f.Control) > 1 {

@@ -27,6 +27,9 @@ func (a *app) analyze() *cobra.Command {
 				return err
 			}
 			defer o.close()
+			if o.trial.Table == nil {
+				a.say("there are no data yet; this is what the layout says")
+			}
 			rs, list := a.analysed(o)
 			a.complain(o, list)
 			if asJSON {
