@@ -38,7 +38,7 @@ func Plural(s string) string {
 
 // UnitName is what a unit is called in running text.
 func UnitName(u *layout.Unit) string {
-	if u.Label != "" && u.Label != u.Name {
+	if labelled(u.Label, u.Name) {
 		return lowerFirst(u.Label)
 	}
 	return strings.ReplaceAll(u.Name, "_", " ")
@@ -104,7 +104,7 @@ func ErrorName(p *layout.Plan, unit int) string {
 
 // FactorLabel is what a factor is called in tables.
 func FactorLabel(f *layout.Factor) string {
-	if f.Label != "" && f.Label != f.Name {
+	if labelled(f.Label, f.Name) {
 		return f.Label
 	}
 	return upperFirst(strings.ReplaceAll(f.Name, "_", " "))
@@ -148,7 +148,7 @@ func label(p *layout.Plan, name string) string {
 
 // CovariateLabel is what a covariate is called in tables.
 func CovariateLabel(c *protocol.Covariate) string {
-	if c.Label != "" && c.Label != c.Name {
+	if labelled(c.Label, c.Name) {
 		return c.Label
 	}
 	return upperFirst(strings.ReplaceAll(c.Name, "_", " "))
@@ -156,7 +156,7 @@ func CovariateLabel(c *protocol.Covariate) string {
 
 // ResponseLabel is what a response is called in tables.
 func ResponseLabel(r *protocol.Response) string {
-	if r.Label != "" && r.Label != r.Name {
+	if labelled(r.Label, r.Name) {
 		return r.Label
 	}
 	return upperFirst(strings.ReplaceAll(r.Name, "_", " "))
@@ -164,3 +164,8 @@ func ResponseLabel(r *protocol.Response) string {
 
 // ResponseLabelText is what a response is called in running text.
 func ResponseLabelText(r *protocol.Response) string { return lowerFirst(ResponseLabel(r)) }
+
+// labelled tells whether a label was given and is not just the name made readable.
+func labelled(label, name string) bool {
+	return label != "" && label != name && label != strings.ReplaceAll(name, "_", " ")
+}

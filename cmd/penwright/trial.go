@@ -42,15 +42,24 @@ func (a *app) open(dir string) (*opened, error) {
 		return nil, failed(cause(dir, err))
 	}
 	f.Step = a.step
-	switch _, err := fs.Stat(f, trial.ProtocolFile); {
+	switch info, err := fs.Stat(f, trial.ProtocolFile); {
 	case errors.Is(err, fs.ErrNotExist):
 		_ = f.Close() // it was only read
 		return nil, failed(fmt.Errorf("%s holds no protocol.toml; a trial folder does (penwright demo makes one to look at)", dir))
 	case err != nil:
 		_ = f.Close() // it was only read
 		return nil, failed(cause(filepath.Join(dir, trial.ProtocolFile), err))
+	case !info.Mode().IsRegular():
+		_ = f.Close() // it was only read
+		return nil, failed(fmt.Errorf("%s is no file", filepath.Join(dir, trial.ProtocolFile)))
 	}
 	t, list := trial.Open(f)
+	for _, d := range list {
+		if t.Protocol == nil && d.Code == protocol.Unreadable {
+			_ = f.Close() // it was only read
+			return nil, failed(fmt.Errorf("%s: %s", filepath.Join(dir, d.Pos.File), d.Message))
+		}
+	}
 	return &opened{dir: dir, folder: f, trial: t, list: list}, nil
 }
 
