@@ -5,6 +5,7 @@ import (
 	"math"
 
 	"penwright/protocol"
+	"penwright/protocol/diag"
 	"penwright/protocol/layout"
 )
 
@@ -34,6 +35,8 @@ func (r *reader) events() {
 		switch e.Kind {
 		case "wrong treatment", "treatment changed":
 			r.changes.add(unit, instance, k)
+		case "move":
+			r.moves = append(r.moves, k)
 		case "death", "removal":
 			d := byUnitInstance{index: k, unit: unit, instance: instance, animals: max(e.Animals, 1), mass: math.NaN()}
 			if e.On != (protocol.Date{}) {
@@ -75,6 +78,12 @@ func (r *reader) countAnimals(which int, unit int, key string) []float64 {
 	plan := r.plan
 	name := animalNames[which]
 	start := animalsOf(plan, unit)
+	if start == nil && which == 3 {
+		start = make([]float64, plan.Units[unit].N) // masses need no numbers
+		for i := range start {
+			start[i] = math.Inf(1)
+		}
+	}
 	if start == nil {
 		r.fail(key, BadCompute, fmt.Sprintf("say animals = … on the unit %q", plan.Units[unit].Name), "%s needs the number of animals in each %s", name, plan.Units[unit].Name)
 		return nil
@@ -96,6 +105,11 @@ func (r *reader) countAnimals(which int, unit int, key string) []float64 {
 			out[i] *= float64(to - from)
 		}
 	}
+	for _, k := range r.moves {
+		event := fmt.Sprintf("event[%d]", k)
+		r.faults.Add(diag.Diagnostic{Pos: plan.Protocol.ValuePos(event + ".kind"), Key: event + ".kind", Severity: diag.Warning, Code: BadEvent,
+			Message: fmt.Sprintf("a move of animals changes no %s", name), Hint: `record animals that left a unit for good as kind = "removal"`})
+	}
 	left := make([]float64, len(out))
 	if which == 3 {
 		clear(out)
@@ -103,11 +117,13 @@ func (r *reader) countAnimals(which int, unit int, key string) []float64 {
 	ok := true
 	for _, d := range r.departures {
 		up := plan.Coarse(d.unit, unit)
+		event := fmt.Sprintf("event[%d]", d.index)
 		if up == nil {
-			continue // of a larger unit: which of these it was is not said
+			r.fail(event+".unit", BadEvent, "name the "+plan.Units[unit].Name, "%s is counted for each %s, and the event does not say which one the animals left", name, plan.Units[unit].Name)
+			ok = false
+			continue
 		}
 		i := up[d.instance]
-		event := fmt.Sprintf("event[%d]", d.index)
 		if left[i] += float64(d.animals); left[i] > start[i] {
 			r.fail(event+".animals", BadEvent, "", "more animals left %s than its %v", unitText(plan.Protocol.Events[d.index].Unit), start[i])
 			ok = false

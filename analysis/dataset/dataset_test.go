@@ -7,6 +7,7 @@ import (
 	"math"
 	"os"
 	"path/filepath"
+	"regexp"
 	"strconv"
 	"strings"
 	"testing"
@@ -20,6 +21,7 @@ import (
 	"penwright/protocol/diag"
 	"penwright/protocol/folder"
 	"penwright/protocol/layout"
+	"penwright/protocol/sheet"
 )
 
 var update = flag.Bool("update", false, "rewrite the want sections of testdata")
@@ -406,4 +408,44 @@ func utf8Text(data []byte) bool {
 		}
 	}
 	return true
+}
+
+// TestCodes: every code that the cases bring about is described somewhere.
+func TestCodes(t *testing.T) {
+	known := map[string]bool{}
+	for _, list := range [][]diag.CodeInfo{protocol.Codes(), layout.Codes(), sheet.Codes(), allot.Codes(), Codes()} {
+		for _, c := range list {
+			if c.Code == "" || c.Text == "" {
+				t.Errorf("%+v", c)
+			}
+			known[c.Code] = true
+		}
+	}
+	names, err := filepath.Glob("testdata/*.txtar")
+	if err != nil {
+		t.Fatal(err)
+	}
+	met := map[string]bool{}
+	for _, name := range names {
+		archive, err := txtar.ParseFile(name)
+		if err != nil {
+			t.Fatal(err)
+		}
+		for _, f := range archive.Files {
+			if f.Name != "want" {
+				continue
+			}
+			for _, m := range regexp.MustCompile(`(?m)^[^ ].*: (?:error|warning|note): .* \[([a-z-]+)\]$`).FindAllStringSubmatch(string(f.Data), -1) {
+				met[m[1]] = true
+				if !known[m[1]] {
+					t.Errorf("%s: code %s is not described", name, m[1])
+				}
+			}
+		}
+	}
+	for _, c := range Codes() {
+		if !met[c.Code] && c.Code != TooMuch {
+			t.Errorf("no case brings about %s", c.Code)
+		}
+	}
 }

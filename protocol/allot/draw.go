@@ -9,16 +9,6 @@ import (
 	"penwright/protocol/layout"
 )
 
-// Codes of what is said about a draw.
-const (
-	// NotDrawn is a design whose draw is not made here.
-	//	Example: six treatments in blocks of four.
-	NotDrawn = "not-drawn"
-	// ClassUnknown is a carried class that the draw needs and nothing tells.
-	//	Example: carries = ["sex"] without a roster.
-	ClassUnknown = "class-unknown"
-)
-
 // New draws the allotment of a plan: for each unit that receives something, in the
 // plan's order, its treatments are permuted at random inside what holds it. roster
 // tells the classes that units carry; it may be nil. Where the list has an error the

@@ -1,8 +1,12 @@
 package allot
 
 import (
+	"crypto/sha256"
 	"flag"
 	"fmt"
+	"math"
+	"math/big"
+	"math/rand/v2"
 	"os"
 	"path/filepath"
 	"reflect"
@@ -267,5 +271,92 @@ func BenchmarkDraw(b *testing.B) {
 	g := NewGenerator("x")
 	for b.Loop() {
 		s.draw(g)
+	}
+}
+
+// TestRepeat draws as another program would from the words of the record: 64-bit numbers
+// of the stream, rejection, exchange from the end, treatments in the protocol's order.
+func TestRepeat(t *testing.T) {
+	plan := planOf(t, designs[3].text) // four treatments in five blocks
+	a, list := New(plan, nil, "HM-26-001/1")
+	if list.HasErrors() {
+		t.Fatal(list)
+	}
+	stream := rand.NewChaCha8(sha256.Sum256([]byte("HM-26-001/1")))
+	below := func(k uint64) uint64 {
+		for {
+			v := new(big.Int).SetUint64(stream.Uint64())
+			all, m := new(big.Int).Lsh(big.NewInt(1), 64), new(big.Int).SetUint64(k)
+			if limit := new(big.Int).Sub(all, new(big.Int).Mod(all, m)); v.Cmp(limit) < 0 {
+				return new(big.Int).Mod(v, m).Uint64()
+			}
+		}
+	}
+	var want []int32
+	for range 5 {
+		order := []int32{0, 1, 2, 3}
+		for i := uint64(3); i >= 1; i-- {
+			j := below(i + 1)
+			order[i], order[j] = order[j], order[i]
+		}
+		want = append(want, order...)
+	}
+	if !slices.Equal(a.Levels[0], want) {
+		t.Errorf("drawn %v, by the words of the record %v", a.Levels[0], want)
+	}
+}
+
+// TestCodes: masked codes differ, and leave most numbers unused.
+func TestCodes(t *testing.T) {
+	for _, n := range []int{1, 9, 10, 90, 91, 5000} {
+		c := codes(NewGenerator("codes"), n)
+		seen := map[string]bool{}
+		for _, s := range c {
+			seen[s] = true
+			if len(s) != len(c[0]) || s[0] != 'K' {
+				t.Errorf("%d codes: %s beside %s", n, s, c[0])
+			}
+		}
+		space := 9 * math.Pow10(len(c[0])-2)
+		if len(seen) != n || float64(n) > space/10 && n > 1 {
+			t.Errorf("%d codes: %d different out of %.0f", n, len(seen), space)
+		}
+	}
+}
+
+// TestCheck: departures from the plan, each with the unit it was found in.
+func TestCheck(t *testing.T) {
+	square := "[[unit]]\nname = \"row\"\ncount = 3\n[[unit]]\nname = \"column\"\ncount = 3\n[[unit]]\nname = \"plot\"\ncrosses = [\"row\", \"column\"]\nreceives = [\"a\"]\n"
+	rcb := "[[unit]]\nname = \"block\"\ncount = 2\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 3\nreceives = [\"a\"]\n"
+	for _, test := range []struct {
+		name, text string
+		levels     []int32
+		want       []string
+	}{
+		{"a square", factor("a", 3) + square, []int32{0, 1, 2, 1, 2, 0, 2, 0, 1}, nil},
+		{"not a square", factor("a", 3) + square, []int32{0, 1, 2, 0, 1, 2, 1, 2, 0}, []string{
+			"a a1 stands twice in column 1", "a a2 stands twice in column 2", "a a3 stands twice in column 3",
+			"a a3 stands nowhere in column 1", "a a1 stands nowhere in column 2", "a a2 stands nowhere in column 3"}},
+		{"blocks", factor("a", 3) + rcb, []int32{0, 1, 2, 2, 1, 0}, nil},
+		{"a block with one twice", factor("a", 3) + rcb, []int32{0, 0, 2, 2, 1, 1}, []string{
+			"a a1 stands twice in block 1", "a a2 stands nowhere in block 1", "a a1 stands nowhere in block 2", "a a2 stands twice in block 2"}},
+		{"other replicates", factor("a", 3) + "[[unit]]\nname = \"pen\"\ncount = 5\nreceives = [\"a\"]\nreplicates = { a1 = 3, a2 = 1, a3 = 1 }\n", []int32{0, 0, 1, 1, 2}, []string{
+			"a a1 stands on 2 of unit pen, 3 are planned", "a a2 stands on 2 of unit pen, 1 are planned"}},
+		{"incomplete blocks", factor("a", 3) + "[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 2\nreceives = [\"a\"]\n", []int32{0, 1, 1, 2, 2, 0}, nil},
+		{"incomplete blocks with one twice", factor("a", 3) + "[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 2\nreceives = [\"a\"]\n", []int32{0, 0, 1, 2, 2, 1}, []string{"a a1 stands twice in block 1"}},
+	} {
+		a := &Allotment{Plan: planOf(t, test.text), Levels: [][]int32{test.levels}}
+		var got []string
+		for _, d := range Check(a, func(int, int32) diag.Pos { return diag.Pos{File: File} }) {
+			if d.Severity != diag.Warning || d.Code != UnequalAllotment {
+				t.Errorf("%s: %+v", test.name, d)
+			}
+			got = append(got, d.Message)
+		}
+		slices.Sort(got)
+		slices.Sort(test.want)
+		if !slices.Equal(got, test.want) {
+			t.Errorf("%s:\n got %q\nwant %q", test.name, got, test.want)
+		}
 	}
 }

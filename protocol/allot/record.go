@@ -25,46 +25,6 @@ const (
 	RecordFile = "allotment.toml"
 )
 
-// Codes of what is said about an allotment.
-const (
-	// UnitColumns: the columns name no unit, or not clearly.
-	//	Example: a file without the column "block" where pens are numbered within blocks.
-	UnitColumns = "unit-columns"
-	// UnknownUnit: a row names a unit that the plan does not have.
-	//	Example: pen 21 of 20.
-	UnknownUnit = "unknown-unit"
-	// UnknownLevelCode: a cell names a level that is not declared.
-	//	Example: "contrl" for "control".
-	UnknownLevelCode = "unknown-level"
-	// LevelVaries: a unit has two levels of one factor.
-	//	Example: two subplots of a plot with different levels of what the plot received.
-	LevelVaries = "level-varies"
-	// MissingUnit: a unit of the plan has no row.
-	//	Example: allotment.csv without the last pen.
-	MissingUnit = "missing-unit"
-	// DuplicateUnit: a unit has two rows.
-	//	Example: pen 3 of block 1 stands twice.
-	DuplicateUnit = "duplicate-unit"
-	// NoTreatmentColumn: allotment.csv lacks a treatment factor.
-	//	Example: headings block,pen,order where diet is received.
-	NoTreatmentColumn = "no-treatment-column"
-	// BadOrder: the order is not a whole number, or stands twice.
-	//	Example: order 1, 2, 2.
-	BadOrder = "bad-order"
-	// AllotmentChanged: allotment.csv is not the one that was drawn.
-	//	Example: a level edited by hand after draw.
-	AllotmentChanged = "allotment-changed"
-	// NoAllotmentRecord: allotment.csv came from elsewhere and nothing says how.
-	//	Example: allotment.csv without allotment.toml and without [randomization] method.
-	NoAllotmentRecord = "no-allotment-record"
-	// BadRecord: allotment.toml is damaged.
-	//	Example: draw numbers 1, 3.
-	BadRecord = "bad-record"
-	// UnequalAllotment: levels are not spread as equally as the plan allows.
-	//	Example: a block with treatment A twice and B not at all.
-	UnequalAllotment = "unequal-allotment"
-)
-
 // Bytes is the allotment as allotment.csv: one row for each instance of RowUnit in
 // field or barn order.
 func (a *Allotment) Bytes() []byte {

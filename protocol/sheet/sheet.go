@@ -78,15 +78,15 @@ func Open(path string, data []byte, delimiter string) (*Sheet, diag.List) {
 		return nil, list
 	}
 	if bytes.HasPrefix(data, []byte("PK\x03\x04")) {
-		return fail(0, "not-text", "this is a packed workbook, not a text file", "save the table as text with commas or semicolons between the fields (CSV)")
+		return fail(0, NotText, "this is a packed workbook, not a text file", "save the table as text with commas or semicolons between the fields (CSV)")
 	}
 	s.decode(data)
 	if s.Encoding == Windows1252 {
-		list.Add(diag.Diagnostic{Pos: diag.Pos{File: path, Line: 1}, Severity: diag.Note, Code: "encoding",
+		list.Add(diag.Diagnostic{Pos: diag.Pos{File: path, Line: 1}, Severity: diag.Note, Code: Encoding,
 			Message: "the file is not UTF-8 and was read as Windows-1252", Hint: "save it as UTF-8 if letters come out wrong"})
 	}
 	if i := strings.IndexByte(s.text, 0); i >= 0 {
-		return fail(1+strings.Count(s.text[:i], "\n"), "not-text", "the file holds zero bytes and is no text", "")
+		return fail(1+strings.Count(s.text[:i], "\n"), NotText, "the file holds zero bytes and is no text", "")
 	}
 	if !strings.Contains(s.text, "\n") {
 		s.text = strings.ReplaceAll(s.text, "\r", "\n") // the same length, so places stay
@@ -102,7 +102,7 @@ func Open(path string, data []byte, delimiter string) (*Sheet, diag.List) {
 		s.line++
 	}
 	if strings.TrimSpace(s.text[s.body:]) == "" {
-		return fail(1, "empty-file", "the file has no headings and no rows", "")
+		return fail(1, EmptyFile, "the file has no headings and no rows", "")
 	}
 	switch {
 	case delimiter == "" || delimiter == "auto":
@@ -117,7 +117,7 @@ func Open(path string, data []byte, delimiter string) (*Sheet, diag.List) {
 		return nil, list
 	}
 	if len(row.Cells) > MaxColumns {
-		return fail(row.Line, "too-many-columns", fmt.Sprintf("%d columns; at most %d are read", len(row.Cells), MaxColumns), "")
+		return fail(row.Line, TooManyColumns, fmt.Sprintf("%d columns; at most %d are read", len(row.Cells), MaxColumns), "")
 	}
 	for len(row.Cells) > 1 && row.Cells[len(row.Cells)-1].Text == "" {
 		row.Cells = row.Cells[:len(row.Cells)-1] // delimiters that a spreadsheet left at the end
@@ -128,7 +128,7 @@ func Open(path string, data []byte, delimiter string) (*Sheet, diag.List) {
 	for i, c := range row.Cells {
 		s.Headings = append(s.Headings, c.Text)
 		if j, ok := first[c.Text]; ok && c.Text != "" {
-			list.Add(diag.Diagnostic{Pos: s.Pos(row, i), Code: "duplicate-column",
+			list.Add(diag.Diagnostic{Pos: s.Pos(row, i), Code: DuplicateColumn,
 				Message: fmt.Sprintf("the heading %q stands twice", c.Text), Hint: "give one of the columns another heading",
 				Related: []diag.Related{{Pos: s.Pos(row, j), Message: "the first is here"}}})
 			continue
@@ -287,7 +287,7 @@ func (s *Sheet) Rows(do func(Row) bool) (rows, blank, broken int, list diag.List
 			continue
 		}
 		if rows++; rows > MaxRows {
-			faults.Add(diag.Diagnostic{Pos: diag.Pos{File: s.Path, Line: row.Line}, Code: "too-many-rows",
+			faults.Add(diag.Diagnostic{Pos: diag.Pos{File: s.Path, Line: row.Line}, Code: TooManyRows,
 				Message: fmt.Sprintf("more than %d rows", MaxRows), Hint: "split the trial's file, or record at a larger unit"})
 			rows--
 			break
@@ -304,7 +304,7 @@ func (s *Sheet) Rows(do func(Row) bool) (rows, blank, broken int, list diag.List
 			} else if s.Delimiter == ',' {
 				hint = "quote fields that hold a comma; with decimal commas put semicolons between the fields"
 			}
-			faults.Add(diag.Diagnostic{Pos: s.Pos(row, h), Code: "field-count",
+			faults.Add(diag.Diagnostic{Pos: s.Pos(row, h), Code: FieldCount,
 				Message: fmt.Sprintf("%s, but there are %s", count(n, "field"), count(h, "heading")), Hint: hint})
 			continue
 		}
@@ -366,7 +366,7 @@ again:
 				}
 				r.cells = append(r.cells, cell)
 				row.Cells = r.cells
-				r.list.Add(diag.Diagnostic{Pos: r.s.Pos(row, len(r.cells)), Code: "quoting", Message: message, Hint: hint})
+				r.list.Add(diag.Diagnostic{Pos: r.s.Pos(row, len(r.cells)), Code: Quoting, Message: message, Hint: hint})
 				r.broken++
 				next := strings.IndexByte(text[i:], '\n')
 				if next < 0 {
