@@ -226,7 +226,7 @@ func (b *builder) sources() ([]compose.Source, string, diag.List) {
 		if err != nil {
 			panic("render: a built-in part cannot be read")
 		}
-		out = append(out, compose.Source{Name: strings.TrimSuffix(path.Base(file), ".md"), Text: string(data)})
+		out = append(out, compose.Source{Name: strings.TrimSuffix(path.Base(file), ".md"), File: file, Text: string(data)})
 	}
 	if data, err := fs.ReadFile(templates.FS, name+".md"); err == nil && !strings.Contains(name, "/") {
 		return append(out, compose.Source{Name: name + ".md", Text: string(data)}), name + ".md", nil
@@ -236,8 +236,13 @@ func (b *builder) sources() ([]compose.Source, string, diag.List) {
 			return append(out, compose.Source{Name: f.Path, Text: string(f.Data)}), f.Path, nil
 		}
 	}
-	list.Add(diag.Diagnostic{Pos: b.trial.Protocol.Pos("report.template"), Key: "report.template", Severity: diag.Error, Code: "unknown-template",
-		Message: fmt.Sprintf("there is no template %q in this version, and no such file in the folder", name), Hint: "built in is \"audit\""})
+	fault := diag.Diagnostic{Severity: diag.Error, Code: "unknown-template",
+		Message: fmt.Sprintf("there is no template %q in this version, and no such file in the folder", name), Hint: "built in is \"audit\""}
+	if b.options.Template == "" {
+		fault.Key = "report.template"
+		fault.Pos = b.trial.Protocol.Pos(fault.Key)
+	}
+	list.Add(fault)
 	return nil, "", list
 }
 
