@@ -274,14 +274,11 @@ func lead(items []item) []item {
 			out = append(out, it)
 			continue
 		}
-		next := items[i+1]
-		last := i+2 == len(items) || items[i+2].bare
-		if next.turned && !last {
+		if i+2 < len(items) && items[i+1].turned && !items[i+2].bare && !items[i+2].table {
 			// The heading belongs to the text; the table finds its place behind it.
-			out = append(out, next)
-			items[i+1] = it
-			continue
+			items[i+1], items[i+2] = items[i+2], items[i+1]
 		}
+		next := items[i+1]
 		if next.heading > 0 {
 			next.heading = min(next.heading, it.heading)
 		} else {
@@ -573,6 +570,11 @@ func (s *setter) aside(a doc.Aside, w where) []box {
 	boxes = framed(append(boxes, inner...), in.within, padY, padY, 10)
 	if len(boxes) > 0 {
 		boxes[len(boxes)-1].below = 11
+		if total(boxes) < 0.2*s.pageHeight(false) {
+			for i := range boxes[:len(boxes)-1] {
+				boxes[i].keep = true
+			}
+		}
 	}
 	return boxes
 }

@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"io"
 	"math"
+	"math/rand/v2"
 	"os"
 	"path/filepath"
 	"slices"
@@ -482,7 +483,7 @@ func TestDiagnostics(t *testing.T) {
 }
 
 func TestRandomDocuments(t *testing.T) {
-	n := uint64(150)
+	n := uint64(70)
 	if testing.Short() {
 		n = 60
 	}
@@ -504,6 +505,97 @@ func TestEmpty(t *testing.T) {
 		check(t, book)
 		if len(book.Pages) != 1 {
 			t.Errorf("%d pages", len(book.Pages))
+		}
+	}
+}
+
+// Figures and small tables may wait for the next page, but figures keep their order,
+// tables theirs, text its own, and none of them crosses a heading of the first level.
+func TestOrderIsKept(t *testing.T) {
+	for seed := range uint64(120) {
+		r := rand.New(rand.NewPCG(seed, 2))
+		d := &doc.Document{}
+		section, figures, tables, paragraphs := 0, 0, 0, 0
+		wantSection := map[string]int{}
+		for range 40 {
+			switch r.IntN(6) {
+			case 0:
+				section++
+				level := 1 + r.IntN(3)
+				d.Blocks = append(d.Blocks, doc.Heading{Level: level, ID: fmt.Sprint("s", section), Text: text(fmt.Sprintf("H%d section %d", level, section))})
+			case 1:
+				figures++
+				d.Blocks = append(d.Blocks, doc.Figure{Number: fmt.Sprint(figures), Caption: text("figure"), Picture: pagetest.Curves(300, 80+r.Float64()*400)})
+				wantSection[fmt.Sprintf("Figure\u00A0%d. ", figures)] = section
+			case 2:
+				tables++
+				columns := 2
+				if r.IntN(5) == 0 {
+					columns = 18
+				}
+				tb := pagetest.Large(1+r.IntN(30), columns).Blocks[0].(doc.Table)
+				tb.Number = fmt.Sprint(tables)
+				d.Blocks = append(d.Blocks, tb)
+				wantSection[fmt.Sprintf("Table\u00A0%d. ", tables)] = section
+			default:
+				paragraphs++
+				d.Blocks = append(d.Blocks, doc.Paragraph{Text: text(fmt.Sprintf("paragraph%d ", paragraphs) + strings.Repeat(sentence, r.IntN(8)))})
+			}
+		}
+		book, _ := page.Lay(d)
+		check(t, book)
+		last := map[string]int{}
+		chapter, chapters := 0, map[int]int{} // section → the first level heading it stands under
+		for _, b := range d.Blocks {
+			if h, ok := b.(doc.Heading); ok {
+				n := 0
+				fmt.Sscanf(h.ID, "s%d", &n)
+				if h.Level == 1 {
+					chapter = n
+				}
+				chapters[n] = chapter
+			}
+		}
+		chapter = 0
+		for _, pg := range book.Pages {
+			for _, o := range pg.Ops {
+				o, ok := o.(page.Text)
+				if !ok {
+					continue
+				}
+				var kind string
+				n := 0
+				switch {
+				case strings.HasPrefix(o.Text, "Figure\u00A0") && strings.HasSuffix(o.Text, ". "):
+					kind = "figure"
+					fmt.Sscanf(strings.TrimPrefix(o.Text, "Figure\u00A0"), "%d.", &n)
+				case strings.HasPrefix(o.Text, "Table\u00A0") && strings.HasSuffix(o.Text, ". "):
+					kind = "table"
+					fmt.Sscanf(strings.TrimPrefix(o.Text, "Table\u00A0"), "%d.", &n)
+				case strings.HasPrefix(o.Text, "paragraph"):
+					kind = "text"
+					fmt.Sscanf(o.Text, "paragraph%d", &n)
+				case strings.HasPrefix(o.Text, "H"):
+					level := 0
+					if k, _ := fmt.Sscanf(o.Text, "H%d section %d", &level, &n); k == 2 {
+						kind = "heading"
+						chapter = chapters[n]
+					}
+				}
+				if kind == "" {
+					continue
+				}
+				if n != last[kind]+1 {
+					t.Errorf("seed %d: %s %d comes after %d", seed, kind, n, last[kind])
+				}
+				last[kind] = n
+				if s, ok := wantSection[o.Text]; ok && chapters[s] != chapter {
+					t.Errorf("seed %d: %q of chapter %d stands in chapter %d", seed, o.Text, chapters[s], chapter)
+				}
+			}
+		}
+		if last["figure"] != figures || last["table"] != tables || last["text"] != paragraphs || last["heading"] != section {
+			t.Errorf("seed %d: %v of %d figures, %d tables, %d paragraphs, %d sections", seed, last, figures, tables, paragraphs, section)
 		}
 	}
 }

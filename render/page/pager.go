@@ -69,23 +69,22 @@ func (p *pager) item(it item) {
 			p.flush() // it carries the heading of its section
 		}
 		return
-	case it.figure != nil:
-		if len(p.waiting) > 0 {
-			p.waiting = append(p.waiting, it)
-			return
+	case it.figure != nil && it.heading > 0:
+		// The heading cannot run ahead of the text, so nothing floats.
+		if p.awaits(true) || len(p.waiting) > 0 && p.barrier(it) {
+			p.flush()
 		}
-		if p.fits(it.boxes) {
-			p.place(it.boxes)
-			return
-		}
-		// A little smaller is better than a hole in the page.
-		if height := total(it.boxes); len(p.cur.placed) > 0 && p.room() > 0.8*height {
-			if smaller := it.figure(p.room() - 1); p.fits(smaller) {
-				p.place(smaller)
-				return
+		if !p.fits(it.boxes) {
+			it.boxes = it.figure(p.room() - 1)
+			if !p.fits(it.boxes) || total(it.boxes) < 0.85*total(it.figure(p.s.pageHeight(false))) {
+				p.turn(nil)
+				it.boxes = it.figure(p.room() - 1)
 			}
 		}
-		p.waiting = append(p.waiting, it)
+		p.flow(it.boxes)
+		return
+	case it.figure != nil, it.table && it.heading == 0 && total(it.boxes) < 0.4*p.s.pageHeight(false):
+		p.float(it)
 		return
 	case len(p.waiting) > 0 && p.barrier(it):
 		p.flush()
@@ -93,14 +92,42 @@ func (p *pager) item(it item) {
 	p.flow(it.boxes)
 }
 
-// barrier tells whether what waits must come before it: numbered things keep their
-// order, and a figure is not left behind by its section unless the page is still
-// rather empty.
+// float places a figure or a small table here, or else on the next page, while the text
+// goes on. Figures and tables keep their order each among themselves.
+func (p *pager) float(it item) {
+	if !p.awaits(it.figure != nil) {
+		if p.fits(it.boxes) {
+			p.place(it.boxes)
+			return
+		}
+		// A little smaller is better than a hole in the page.
+		if it.figure != nil && len(p.cur.placed) > 0 && p.room() > 0.85*total(it.boxes) {
+			if smaller := it.figure(p.room() - 1); p.fits(smaller) {
+				p.place(smaller)
+				return
+			}
+		}
+	}
+	p.waiting = append(p.waiting, it)
+}
+
+// awaits tells whether a figure, or a table, is on its way to the next page.
+func (p *pager) awaits(figure bool) bool {
+	for _, w := range p.waiting {
+		if (w.figure != nil) == figure {
+			return true
+		}
+	}
+	return false
+}
+
+// barrier tells whether what waits must come before it: tables keep their order, and
+// nothing is left behind by its section unless the page is still rather empty.
 func (p *pager) barrier(it item) bool {
-	if it.table {
+	if it.table && p.awaits(false) {
 		return true
 	}
-	return it.heading == 1 || it.heading == 2 && p.room() < 0.4*p.s.pageHeight(p.cur.turned)
+	return it.heading == 1 || it.heading == 2 && p.room() < 0.5*p.s.pageHeight(p.cur.turned)
 }
 
 func (p *pager) flush() {
@@ -274,18 +301,18 @@ func (p *pager) turn(within []*band) {
 	}
 	if len(waiting) > 0 {
 		p.open(false)
-		for n := 0; len(waiting) > 0 && !waiting[0].turned; n++ {
-			boxes := waiting[0].boxes
-			if !p.fits(boxes) {
-				if n > 0 {
-					break
-				}
-				boxes = waiting[0].figure(p.room())
-			}
-			p.place(boxes)
-			waiting = waiting[1:]
+		first := waiting[0]
+		if !p.fits(first.boxes) && first.figure != nil {
+			first.boxes = first.figure(p.room())
 		}
-		p.waiting = waiting // for the next break: text may stand below the figures
+		p.flow(first.boxes)
+		for _, it := range waiting[1:] {
+			if it.turned {
+				p.waiting = append(p.waiting, it)
+			} else {
+				p.float(it)
+			}
+		}
 	}
 	if len(before.placed) == 0 {
 		return

@@ -23,7 +23,8 @@ const (
 	tableLead               = 1.28 // of the size
 	rowPad                  = 2.0  // above and below the text of a row
 	columnGap               = 12.0
-	columnGapMin            = 6.0
+	columnGapTight          = 8.0 // before smaller type is taken
+	columnGapMin            = 6.0 // with the smallest type
 	tableNoteSize           = 7.5
 
 	thick, thin, hair = 0.9, 0.5, 0.3 // rules

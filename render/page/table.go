@@ -75,7 +75,7 @@ func (s *setter) table(t doc.Table, w where) item {
 		return item{boxes: s.setTable(t, g, f, w, pos), table: true}
 	}
 	if w.depth == 0 {
-		return item{turned: true}
+		return item{turned: true, table: true}
 	}
 	return item{boxes: s.divide(t, g, w, pos), table: true}
 }
@@ -221,11 +221,10 @@ func (g *grid) measure() {
 			}
 		}
 	}
-	const cramped = 54.0
 	for i, c := range g.columns {
 		g.natural[i] = max(g.natural[i], g.left[i]+g.right[i])
 		body := g.left[i] + g.right[i]
-		g.comfort[i] = max(body, g.narrow[i], min(g.natural[i], cramped))
+		g.comfort[i] = max(body, g.narrow[i], min(g.natural[i], 54+g.natural[i]/8, 120))
 		if c.Align != doc.Left {
 			g.comfort[i] = max(body, g.narrow[i])
 		}
@@ -262,11 +261,11 @@ func (g *grid) fit(avail, least float64) (form, bool) {
 			need += v * k
 		}
 		gaps := float64(max(len(g.columns)-1, 0))
-		gap := columnGap * k
-		if size <= tableSizeMin+0.25 {
+		gap := columnGapTight * k
+		if size-0.5 < least-1e-9 {
 			gap = columnGapMin
 		}
-		if need+gaps*columnGapMin <= avail && (need+gaps*gap <= avail || size-0.5 < least-1e-9) {
+		if need+gaps*gap <= avail {
 			return g.form(size, avail), true
 		}
 	}
@@ -294,8 +293,21 @@ func (g *grid) form(size, avail float64) form {
 		for i := range f.widths {
 			f.widths[i] = g.natural[i] * k
 		}
-		if n > 1 {
-			gap = min((avail-natural)/gaps, 34)
+		// Tables look alike where they are as wide as the text, unless that tears the
+		// columns apart.
+		const apart, torn = 34, 80
+		switch rest := avail - natural; {
+		case n == 1:
+			if g.columns[0].Align == doc.Left {
+				f.widths[0] = avail
+			}
+		case g.columns[n-1].Align == doc.Left:
+			gap = min(rest/gaps, apart)
+			f.widths[n-1] += rest - gap*gaps
+		case rest/gaps <= torn:
+			gap = rest / gaps
+		default:
+			gap = apart
 		}
 	default:
 		if least+gaps*gap > avail && n > 1 {
@@ -392,6 +404,11 @@ func (s *setter) setTable(t doc.Table, g *grid, f form, w where, pos diag.Pos) [
 		return nil
 	}
 	boxes[len(boxes)-1].below = floatGap
+	if total(boxes) < 0.3*s.pageHeight(false) {
+		for i := range boxes[:len(boxes)-1] {
+			boxes[i].keep = true
+		}
+	}
 	boxes[0].anchors = append(boxes[0].anchors, anchors(t.ID)...)
 	return boxes
 }

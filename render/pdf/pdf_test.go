@@ -151,7 +151,7 @@ func TestBrokenFiles(t *testing.T) {
 }
 
 func TestRandomDocuments(t *testing.T) {
-	n := uint64(16)
+	n := uint64(8)
 	if testing.Short() {
 		n = 8
 	}
