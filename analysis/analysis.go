@@ -83,7 +83,6 @@ func design(p *layout.Plan) result.Design {
 	for _, s := range p.Strata {
 		d.Strata = append(d.Strata, result.Stratum{Name: s.Name, DF: s.DF})
 	}
-	least := p.Protocol.Analysis.ErrorDFMin
 	for i := range p.Terms {
 		t := &p.Terms[i]
 		df := -1
@@ -91,15 +90,25 @@ func design(p *layout.Plan) result.Design {
 			df = t.ErrorDF
 		}
 		d.ErrorDF = append(d.ErrorDF, result.TermDF{Term: t.Name, DF: df})
-		level := "pass"
-		if df >= 0 && df < least {
-			level = "warning"
-		}
-		if df >= 0 {
-			d.Checks = append(d.Checks, result.Check{Code: "error-df", Level: level, Text: prose.ErrorDFCheck(p, t, df, least), Where: termPos(p, t).String()})
+		if c, ok := errorDF(p, t); ok {
+			d.Checks = append(d.Checks, c)
 		}
 	}
 	return d
+}
+
+// errorDF compares the error degrees of freedom of a term with those asked for; false:
+// the term is not tested.
+func errorDF(p *layout.Plan, t *layout.Term) (result.Check, bool) {
+	if t.Stratum < 0 && t.Over < 0 {
+		return result.Check{}, false
+	}
+	least := p.Protocol.Analysis.ErrorDFMin
+	c := result.Check{Code: "error-df", Level: "pass", Text: prose.ErrorDFCheck(p, t, t.ErrorDF, least), Where: termPos(p, t).String()}
+	if t.ErrorDF < least {
+		c.Level = "warning"
+	}
+	return c, t.ErrorDF >= 0
 }
 
 // termPos is the place of the unit that is a term's experimental unit.

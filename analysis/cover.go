@@ -3,8 +3,10 @@ package analysis
 import (
 	"fmt"
 
+	"penwright/analysis/prose"
 	"penwright/analysis/trial"
 	"penwright/protocol"
+	"penwright/protocol/diag"
 )
 
 // refusal says why a response is not analysed and which key makes it so.
@@ -13,6 +15,29 @@ type refusal struct {
 	key  string // dotted key; empty: the response itself
 	why  string
 	hint string
+}
+
+// Foresee says what is known of the analysis before there are data: as errors the keys
+// for which responses will not be analysed, as warnings the treatment terms with fewer
+// error degrees of freedom than the protocol asks for. It needs the plan.
+func Foresee(t *trial.Trial) diag.List {
+	var list diag.List
+	for i := range t.Protocol.Responses {
+		r := &t.Protocol.Responses[i]
+		if x := uncovered(t, r, i); x != nil {
+			list.Add(diag.Diagnostic{Pos: t.Protocol.Pos(x.key), Key: x.key, Severity: diag.Error, Code: x.code,
+				Message: fmt.Sprintf("response %q will not be analysed: %s", r.Name, x.why), Hint: x.hint})
+		}
+	}
+	for i := range t.Plan.Terms {
+		x := &t.Plan.Terms[i]
+		if c, ok := errorDF(t.Plan, x); ok && c.Level != "pass" {
+			list.Add(diag.Diagnostic{Pos: termPos(t.Plan, x), Severity: diag.Warning, Code: c.Code,
+				Message: fmt.Sprintf("the test of %s has %d error degrees of freedom, fewer than the %d asked for", prose.TermText(t.Plan, x.Name), x.ErrorDF, t.Protocol.Analysis.ErrorDFMin),
+				Hint:    "plan more experimental units, or state the limit under analysis.error_df_min"})
+		}
+	}
+	return list
 }
 
 // uncovered finds what would change the numbers of a response and is not carried out by

@@ -7,6 +7,7 @@ import (
 
 	"github.com/spf13/cobra"
 
+	"penwright/analysis"
 	"penwright/analysis/trial"
 	"penwright/protocol"
 	"penwright/protocol/diag"
@@ -54,6 +55,10 @@ func (a *app) check() *cobra.Command {
 				o, err := a.open(trialArg([]string{arg}))
 				if err != nil {
 					return err
+				}
+				if o.trial.Plan != nil {
+					o.list = append(o.list, analysis.Foresee(o.trial)...)
+					o.list.Sort()
 				}
 				bad = bad || o.list.HasErrors()
 				all = append(all, o.placed(o.list)...)

@@ -63,6 +63,9 @@ func (a *app) makeReport(o *opened, out, template string, only []string) ([]stri
 		return nil, err
 	}
 	if strings.ContainsAny(template, "./") {
+		if !fs.ValidPath(template) {
+			return nil, fmt.Errorf("--template %s is no path inside the trial folder", template)
+		}
 		// A template of the folder is one of the files the report is made of.
 		if _, err := o.folder.Read(template, maxTemplate); errors.Is(err, fs.ErrNotExist) {
 			return nil, status{code: findings, err: fmt.Errorf("there is no template %s in the trial folder", template)}

@@ -32,11 +32,12 @@ func TestMain(m *testing.M) {
 //
 //	exits N COMMAND [ARG…]   runs a command that must end with exit status N
 //	trial NAME DIR           puts a trial into a folder: demo, split-plot, latin-square
-//	edit FILE REGEXP TEXT    replaces every match, of which there must be one
+//	edit FILE REGEXP TEXT [all]
+//	                         replaces the match, which must be the only one without all
 //	bytes FILE TEXT          writes a file from a Go string, for what a script cannot hold
 //	keep DIR                 remembers a folder
 //	unchanged DIR            the folder is as it was when it was kept
-//	json FILE [PATH REGEXP]  FILE is JSON, and the value at a.b.0 matches
+//	json FILE [PATH REGEXP]  FILE is JSON, and the value at a.b.0 matches; len is the length of a list
 func TestScripts(t *testing.T) {
 	testscript.Run(t, testscript.Params{
 		Dir:                 "../../testdata/script",
@@ -88,14 +89,15 @@ func putTrial(ts *testscript.TestScript, neg bool, args []string) {
 }
 
 func edit(ts *testscript.TestScript, neg bool, args []string) {
-	usage(ts, !neg && len(args) == 3, "edit FILE REGEXP TEXT")
+	all := len(args) == 4 && args[3] == "all"
+	usage(ts, !neg && (len(args) == 3 || all), "edit FILE REGEXP TEXT [all]")
 	file := ts.MkAbs(args[0])
 	data, err := os.ReadFile(file)
 	ts.Check(err)
 	re, err := regexp.Compile("(?m)" + args[1])
 	ts.Check(err)
-	if n := len(re.FindAllIndex(data, -1)); n != 1 {
-		ts.Fatalf("%s: %d matches of %s, want 1", args[0], n, args[1])
+	if n := len(re.FindAllIndex(data, -1)); n == 0 || n > 1 && !all {
+		ts.Fatalf("%s: %d matches of %s", args[0], n, args[1])
 	}
 	text, err := strconv.Unquote(`"` + strings.ReplaceAll(args[2], `"`, `\"`) + `"`)
 	ts.Check(err)
@@ -168,7 +170,7 @@ func checkJSON(ts *testscript.TestScript, neg bool, args []string) {
 				ts.Fatalf("%s: no %s on the way to %s", args[0], part, args[1])
 			}
 		case []any:
-			if part == "#" {
+			if part == "len" {
 				v = len(x)
 				continue
 			}
