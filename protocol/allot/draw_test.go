@@ -360,3 +360,70 @@ func TestCheck(t *testing.T) {
 		}
 	}
 }
+
+// TestRandomStructures: whatever the units, a plan is refused with advice, or its draw
+// has every treatment as often in every block, row and column as the plan allows.
+func TestRandomStructures(t *testing.T) {
+	g := NewGenerator("structures")
+	drawn, refused := 0, 0
+	for range 1500 {
+		var text strings.Builder
+		factors := 1 + g.Below(3)
+		for f := range factors {
+			text.WriteString(factor(string(rune('a'+f)), 2+g.Below(3)))
+		}
+		names := []string{}
+		next := 0
+		for len(names) < 4 {
+			name := fmt.Sprintf("u%d", len(names))
+			unit := fmt.Sprintf("[[unit]]\nname = %q\n", name)
+			crosses := len(names) >= 2 && g.Below(3) == 0
+			switch {
+			case crosses:
+				unit += fmt.Sprintf("crosses = [%q, %q]\n", names[len(names)-2], names[len(names)-1])
+			case len(names) > 0 && g.Below(3) > 0:
+				unit += fmt.Sprintf("within = %q\ncount = %d\n", names[len(names)-1], 2+g.Below(5))
+			default:
+				unit += fmt.Sprintf("count = %d\n", 2+g.Below(5))
+			}
+			if next < factors && g.Below(2) == 0 {
+				take := 1 + g.Below(factors-next)
+				var list []string
+				for range take {
+					list = append(list, fmt.Sprintf("%q", string(rune('a'+next))))
+					next++
+				}
+				unit += "receives = [" + strings.Join(list, ", ") + "]\n"
+			}
+			text.WriteString(unit)
+			names = append(names, name)
+		}
+		p, list := protocol.Load(fstest.MapFS{"protocol.toml": {Data: []byte(head + text.String())}}, "protocol.toml")
+		if list.HasErrors() {
+			continue
+		}
+		plan, list := layout.New(p)
+		if list.HasErrors() {
+			continue
+		}
+		a, list := New(plan, nil, "x")
+		if a == nil {
+			refused++
+			if !list.HasErrors() || list[0].Code != NotDrawn || list[0].Hint == "" {
+				t.Errorf("neither drawn nor refused with advice: %v\n%s", list, text.String())
+			}
+			continue
+		}
+		drawn++
+		if list := Check(a, func(int, int32) diag.Pos { return diag.Pos{} }); len(list) > 0 {
+			t.Errorf("%v\n%s", list, text.String())
+		}
+		if back, list := parse(file(File, string(a.Bytes())), plan); len(list) > 0 || !reflect.DeepEqual(back.Levels, a.Levels) {
+			t.Errorf("read back %v: %v\n%s", back, list, text.String())
+		}
+	}
+	if drawn < 50 || refused < 50 {
+		t.Errorf("%d drawn and %d refused: the structures are too much alike", drawn, refused)
+	}
+	t.Logf("%d drawn, %d refused", drawn, refused)
+}
