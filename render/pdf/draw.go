@@ -56,7 +56,7 @@ func draw(book *page.Book) (*drawn, error) {
 	pdf.SetMargins(0, 0, 0)
 	pdf.SetAutoPageBreak(false, 0)
 	pdf.SetCatalogSort(true)
-	pdf.SetCompression(false) // of pages, which finish packs with less ado
+	pdf.SetCompression(false)                  // of pages, which finish packs with less ado
 	pdf.SetCreationDate(time.Unix(0, 0).UTC()) // replaced when the file is finished
 	pdf.SetModificationDate(time.Unix(0, 0).UTC())
 	p := &pen{pdf: pdf, faces: make([]*runeSet, face.Count())}
