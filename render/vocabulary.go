@@ -380,10 +380,9 @@ func (b *builder) extras() []doc.Block {
 			if f.Path != x.File {
 				continue
 			}
-			tab, err := table.FromCSV(fmt.Sprintf("extra-%d", i+1), x.Caption, f.Data)
-			if err != nil {
-				key := fmt.Sprintf("table[%d].file", i)
-				b.list.Add(diag.Diagnostic{Pos: diag.Pos{File: x.File, Line: 1}, Key: key, Severity: diag.Error, Code: "extra-table", Message: err.Error()})
+			tab, list := table.FromFile(fmt.Sprintf("extra-%d", i+1), x.Caption, f.Path, f.Data)
+			b.list = append(b.list, list...)
+			if len(tab.Rows) == 0 {
 				continue
 			}
 			out = append(out, tab)

@@ -143,14 +143,12 @@ func (a *app) record(args []string, redraw bool, why string) error {
 	if err != nil {
 		return failed(err)
 	}
-	number := 1
+	var record []allot.Draw
 	if t.Allotment != nil {
-		number = len(t.Allotment.Draws) + 1
+		record = t.Allotment.Draws
 	}
-	if number > 1 {
-		// A second draw from the same seed text would be the first one again.
-		seed = fmt.Sprintf("%s redraw %d", seed, number)
-	}
+	// A second draw from the same seed text would be the first one again.
+	seed = allot.Seed(record, seed)
 	drawn, list := allot.New(t.Plan, t.Roster, seed)
 	a.complain(o, list)
 	if list.HasErrors() {
@@ -158,7 +156,7 @@ func (a *app) record(args []string, redraw bool, why string) error {
 	}
 	scheme, _ := allot.Scheme(t.Plan, t.Roster)
 	on := t.Protocol.Randomization.On
-	if on.Year == 0 || number > 1 {
+	if on.IsZero() || len(record) > 0 {
 		now := a.now()
 		on = protocol.Date{Year: now.Year(), Month: int(now.Month()), Day: now.Day()}
 	}

@@ -1,9 +1,6 @@
 package table
 
 import (
-	"bytes"
-	"encoding/csv"
-	"errors"
 	"fmt"
 	"math"
 	"strconv"
@@ -16,7 +13,9 @@ import (
 	"penwright/analysis/trial"
 	"penwright/protocol"
 	"penwright/protocol/allot"
+	"penwright/protocol/diag"
 	"penwright/protocol/layout"
+	"penwright/protocol/sheet"
 	"penwright/render/doc"
 )
 
@@ -677,33 +676,41 @@ func moments(v []float64) (mean, sd float64) {
 	return mean, math.Sqrt(sd / float64(len(v)-1))
 }
 
-// FromCSV makes a table of a CSV file, its first row being the head. Columns that hold
-// nothing but numbers are aligned at the decimal mark. The error says what is wrong with
-// the file.
-func FromCSV(id, caption string, data []byte) (doc.Table, error) {
-	r := csv.NewReader(bytes.NewReader(bytes.TrimPrefix(data, []byte("\xef\xbb\xbf"))))
-	r.FieldsPerRecord = -1
-	if first, _, _ := bytes.Cut(data, []byte("\n")); bytes.Count(first, []byte(";")) > bytes.Count(first, []byte(",")) {
-		r.Comma = ';'
-	}
-	records, err := r.ReadAll()
-	if err != nil {
-		return doc.Table{}, err
-	}
-	if len(records) == 0 {
-		return doc.Table{}, errors.New("the table is empty")
-	}
-	if len(records) > 2000 || len(records[0]) > 60 {
-		return doc.Table{}, fmt.Errorf("the table has %d rows and %d columns; a report prints up to 2000 and 60", len(records), len(records[0]))
-	}
+// FromFile makes a table of a delimited text file, its first row being the head. Columns
+// that hold nothing but numbers are aligned at the decimal mark. The table is empty where
+// the list has an error.
+func FromFile(id, caption, path string, data []byte) (doc.Table, diag.List) {
 	out := doc.Table{ID: id, Caption: text(caption)}
+	s, list := sheet.Open(path, data, "auto")
+	if list.HasErrors() {
+		return doc.Table{}, list
+	}
+	var rows [][]string
+	_, _, _, more := s.Rows(func(r sheet.Row) bool {
+		var cells []string
+		for c := range s.Headings {
+			cell := ""
+			if c < len(r.Cells) {
+				cell = strings.TrimSpace(r.Cells[c].Text)
+			}
+			cells = append(cells, cell)
+		}
+		rows = append(rows, cells)
+		return len(rows) <= maxRows
+	})
+	list = append(list, more...)
+	if len(rows) > maxRows || len(s.Headings) > maxColumns {
+		list.Add(diag.Diagnostic{Pos: diag.Pos{File: path, Line: 1}, Severity: diag.Error, Code: "table-too-large",
+			Message: fmt.Sprintf("the table has %d columns and %d rows or more; a report prints up to %d and %d", len(s.Headings), len(rows), maxColumns, maxRows)})
+		return doc.Table{}, list
+	}
 	var h []doc.Cell
-	for c, name := range records[0] {
+	for c, name := range s.Headings {
 		numeric, any := true, false
-		for _, row := range records[1:] {
-			if c < len(row) && strings.TrimSpace(row[c]) != "" {
+		for _, row := range rows {
+			if row[c] != "" {
 				any = true
-				if _, err := strconv.ParseFloat(strings.TrimSpace(row[c]), 64); err != nil {
+				if _, err := strconv.ParseFloat(strings.Replace(row[c], ",", ".", 1), 64); err != nil {
 					numeric = false
 				}
 			}
@@ -713,25 +720,27 @@ func FromCSV(id, caption string, data []byte) (doc.Table, error) {
 			col.Align = doc.Decimal
 		}
 		out.Columns = append(out.Columns, col)
-		h = append(h, cell(strings.TrimSpace(name)))
+		h = append(h, cell(name))
 	}
 	out.Head = head(h...)
-	for _, row := range records[1:] {
+	for _, row := range rows {
 		var cells []doc.Cell
-		for c := range records[0] {
-			s := ""
-			if c < len(row) {
-				s = strings.TrimSpace(row[c])
-			}
+		for c, v := range row {
 			if out.Columns[c].Align == doc.Decimal {
-				s = strings.Replace(s, "-", "−", 1)
+				v = strings.Replace(v, "-", "−", 1)
 			}
-			cells = append(cells, cell(s))
+			cells = append(cells, cell(v))
 		}
 		out.Rows = append(out.Rows, doc.Row{Cells: cells})
 	}
-	return out, nil
+	return out, list
 }
+
+// The greatest table of a file that is printed.
+const (
+	maxRows    = 2000
+	maxColumns = 60
+)
 
 // AnalysisPlan prints what the protocol says of the analysis beforehand, also what a
 // later version of the program will carry out.
