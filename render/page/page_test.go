@@ -16,7 +16,7 @@ import (
 	"penwright/render/doc"
 	"penwright/render/face"
 	"penwright/render/page"
-	"penwright/render/page/testdata/pagetest"
+	"penwright/render/page/pagetest"
 )
 
 var update = flag.Bool("update", false, "rewrite the golden files")

@@ -7,7 +7,7 @@ import (
 
 	"penwright/render/doc"
 	"penwright/render/page"
-	"penwright/render/page/testdata/pagetest"
+	"penwright/render/page/pagetest"
 	"penwright/render/pdf"
 )
 

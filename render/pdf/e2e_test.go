@@ -11,7 +11,7 @@ import (
 	"strings"
 	"testing"
 
-	"penwright/render/page/testdata/pagetest"
+	"penwright/render/page/pagetest"
 )
 
 // run runs a program that reads PDF, which must be there.

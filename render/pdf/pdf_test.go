@@ -14,7 +14,7 @@ import (
 	"time"
 
 	"penwright/render/doc"
-	"penwright/render/page/testdata/pagetest"
+	"penwright/render/page/pagetest"
 	"penwright/render/pdf"
 )
 
