@@ -41,16 +41,17 @@ var lattice = map[string]string{
 	"analysis": "analysis/trial analysis/trial+ analysis/prose analysis/result analysis/num protocol/factor analysis/dist analysis/strata " +
 		"analysis/linear analysis/compare analysis/residual",
 
-	"render/doc":        "protocol/diag",
-	"render/doc/sample": "render/doc protocol/diag", // for the tests of the writers
-	"render/compose":    "render/doc protocol/diag",
-	"render/table":      "analysis/result analysis/num analysis/prose analysis/prose+ render/doc render/face",
-	"render/figure":     "analysis/result analysis/num analysis/prose analysis/prose+ render/doc render/face",
-	"render/page":       "render/doc render/face protocol/diag",
-	"render/pdf":        "render/page render/doc render/face protocol/diag",
-	"render/html":       "render/doc render/face",
-	"render/md":         "render/doc render/face",
-	"render/term":       "render/doc render/face",
+	"render/doc":           "protocol/diag",
+	"render/doc/sample":    "render/doc protocol/diag", // for the tests of the writers
+	"render/compose":       "render/doc protocol/diag",
+	"render/table":         "analysis/result analysis/num analysis/prose analysis/prose+ render/doc render/face",
+	"render/figure":        "analysis/result analysis/num analysis/prose analysis/prose+ render/doc render/face",
+	"render/page/pagetest": "render/doc protocol/diag",
+	"render/page":          "render/doc render/face protocol/diag",
+	"render/pdf":           "render/page render/doc render/face protocol/diag",
+	"render/html":          "render/doc render/face",
+	"render/md":            "render/doc render/face",
+	"render/term":          "render/doc render/face",
 	"render": "render/doc render/compose render/table render/figure render/page render/pdf render/html render/md render/term render/face " +
 		"analysis/trial analysis/trial+ analysis/result analysis/prose analysis/num templates",
 
