@@ -17,6 +17,22 @@ type refusal struct {
 	hint string
 }
 
+// Codes describes the codes of this package's findings.
+func Codes() []diag.CodeInfo {
+	return []diag.CodeInfo{
+		{Code: "not-carried-out", Text: "a key asks for what this version does not do and would change the numbers"},
+		{Code: "needs-mixed-model", Text: "unbalanced values would need a mixed model, which this version does not fit"},
+		{Code: "error-df", Text: "a treatment is tested with fewer error degrees of freedom than asked for"},
+		{Code: "no-values", Text: "no unit gave a value of the response"},
+		{Code: "no-terms", Text: "the response is recorded on a unit larger than those that received treatments"},
+		{Code: "one-level", Text: "only one level of a factor gave a value"},
+		{Code: "unknown-treatment", Text: "the treatment of a unit with data is not known"},
+		{Code: "no-error", Text: "no degrees of freedom are left to estimate error"},
+		{Code: "time-trend", Text: "rows do not lie within the units of the time trend"},
+		{Code: "too-large", Text: "the model of a response has too many columns"},
+	}
+}
+
 // Foresee says what is known of the analysis before there are data: as errors the keys
 // for which responses will not be analysed, as warnings the treatment terms with fewer
 // error degrees of freedom than the protocol asks for. It needs the plan.

@@ -4,14 +4,18 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"slices"
 
 	"github.com/spf13/cobra"
 
 	"penwright/analysis"
+	"penwright/analysis/dataset"
 	"penwright/analysis/trial"
 	"penwright/protocol"
+	"penwright/protocol/allot"
 	"penwright/protocol/diag"
 	"penwright/protocol/layout"
+	"penwright/protocol/sheet"
 	"penwright/render"
 	"penwright/render/term"
 )
@@ -38,8 +42,12 @@ func (a *app) check() *cobra.Command {
 		Example: "  penwright check hollowmere",
 		RunE: func(_ *cobra.Command, args []string) error {
 			if list {
-				for _, x := range append(protocol.Codes(), layout.Codes()...) {
-					fmt.Fprintf(a.out, "%-24s %s\n", x.Code, x.Text)
+				said := map[string]bool{}
+				for _, x := range slices.Concat(protocol.Codes(), layout.Codes(), sheet.Codes(), allot.Codes(), dataset.Codes(), analysis.Codes()) {
+					if !said[x.Code] {
+						said[x.Code] = true
+						fmt.Fprintf(a.out, "%-24s %s\n", x.Code, x.Text)
+					}
 				}
 				return nil
 			}
