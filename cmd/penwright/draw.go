@@ -170,7 +170,10 @@ func (a *app) record(args []string, redraw bool, why string) error {
 	if err != nil {
 		return status{code: findings, err: err}
 	}
-	if err := o.folder.Apply(changes...); err != nil {
+	switch err := o.folder.Apply(changes...); {
+	case errors.Is(err, fs.ErrExist):
+		return status{code: findings, err: fmt.Errorf("%w; a record is never overwritten: move it away first", err)}
+	case err != nil:
 		return failed(err)
 	}
 	for _, c := range changes {
