@@ -459,6 +459,8 @@ func (a *analyst) leastSquaresTable(m linear.Model, nuisance []int, adjustment l
 			if float64(c.EqualSlopesP) < a.alpha {
 				a.note("slopes-differ", "", prose.SlopesDiffer(a.plan, name, float64(c.EqualSlopesP)))
 			}
+		} else {
+			a.note("equal-slopes", name, prose.EqualSlopesUntested(a.plan, name))
 		}
 		out.Covariates = append(out.Covariates, c)
 	}

@@ -329,11 +329,16 @@ func (w weighted) test(contrasts [][]float64) (ss float64, df int) {
 // maxPairs is the number of means up to which standard errors of all pairs are looked at.
 const maxPairs = 1500
 
+// minMixtureDF is the least df for which limits of a mean are given. A single mean square
+// has one at least; a difference of mean squares that comes out near zero may have fewer,
+// and limits then run to any size.
+const minMixtureDF = 1 - 1e-9
+
 // tabulate writes the means of a term and the standard errors of their differences.
 func (a *analyst) tabulate(m *termMeans) {
 	n, inModel, units := a.counts(m)
 	alpha := a.alpha
-	missing := false
+	missing, imprecise := false, false
 	for c := range m.cells {
 		x := result.Mean{Term: m.name, Levels: m.levels(a.plan, c), Mean: result.NaN, SE: result.NaN, SEM: result.NaN, DF: result.NaN,
 			Lower: result.NaN, Upper: result.NaN, N: n[c], Units: units[c]}
@@ -344,11 +349,12 @@ func (a *analyst) tabulate(m *termMeans) {
 			if v >= 0 {
 				se := math.Sqrt(v)
 				x.SE, x.DF = result.Number(se), result.Number(df)
-				if df > 0 && !math.IsNaN(se) {
+				if df >= minMixtureDF {
 					h := dist.TQuantile(alpha/2, df) * se
 					x.Lower, x.Upper = x.Mean-result.Number(h), x.Mean+result.Number(h)
 				}
 			}
+			imprecise = imprecise || !x.Lower.Known()
 			if inModel[c] > 0 {
 				x.SEM = result.Number(math.Sqrt(m.test.errorMS / float64(inModel[c])))
 			}
@@ -359,6 +365,9 @@ func (a *analyst) tabulate(m *termMeans) {
 	}
 	if missing {
 		a.note("not-estimable", m.name, prose.MeansNotEstimable(a.plan, m.name))
+	}
+	if imprecise {
+		a.note("no-limits", m.name, prose.NoLimits(a.plan, m.name))
 	}
 	a.seds(m)
 }

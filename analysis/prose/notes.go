@@ -101,6 +101,16 @@ func SlopesDiffer(p *layout.Plan, name string, pv float64) string {
 	return fmt.Sprintf("The slope on %s seems to differ between treatments (P %s): differences between adjusted means then depend on the value at which they are taken.", TermText(p, name), num.PStatement(pv))
 }
 
+// EqualSlopesUntested says that the slopes of a covariate cannot be compared.
+func EqualSlopesUntested(p *layout.Plan, name string) string {
+	return fmt.Sprintf("Too few units are left to fit a slope on %s for each treatment, so that equal slopes are taken for granted.", TermText(p, name))
+}
+
+// NoLimits says that means of a term have no limits.
+func NoLimits(p *layout.Plan, term string) string {
+	return fmt.Sprintf("Means of %s draw on the variation of several units, which these data estimate too poorly for limits; the standard errors of differences are sound.", TermText(p, term))
+}
+
 // MeansNotEstimable says that some means of a term have no estimate.
 func MeansNotEstimable(p *layout.Plan, term string) string {
 	return fmt.Sprintf("Not all means of %s can be estimated from the units that are left.", TermText(p, term))
