@@ -44,6 +44,12 @@ type Options struct {
 // Outputs are the kinds of output, in the order in which they are written.
 var Outputs = []string{"pdf", "html", "md", "json", "tables", "figures"}
 
+// What rides in a report beside the files of the trial.
+const (
+	aboutFile   = "report.json"
+	resultsFile = "results.json"
+)
+
 // File is a file of the output folder.
 type File struct {
 	Path string
@@ -75,6 +81,15 @@ type builder struct {
 // characters; the files are those asked for, and nil when the list holds an error.
 func Report(t *trial.Trial, rs *result.Results, opt Options) ([]File, diag.List, error) {
 	d, list := Document(t, rs, opt)
+	if list.HasErrors() {
+		return nil, list, nil
+	}
+	for _, f := range t.Files {
+		if f.Path == aboutFile || f.Path == resultsFile {
+			list.Add(diag.Diagnostic{Pos: diag.Pos{File: f.Path}, Severity: diag.Error, Code: "reserved-file",
+				Message: "a file of the trial has a name that the report gives to what rides inside it", Hint: "rename it, and name it so in the protocol"})
+		}
+	}
 	if list.HasErrors() {
 		return nil, list, nil
 	}
@@ -322,8 +337,8 @@ func attachments(t *trial.Trial, rs *result.Results, opt Options) ([]attached, e
 	if err := rs.Write(&results); err != nil {
 		return nil, fmt.Errorf("results.json: %w", err)
 	}
-	out = append(out, attached{path: "report.json", mime: "application/json", relationship: "Supplement", what: "how the report was made", data: append(info, '\n')},
-		attached{path: "results.json", mime: "application/json", relationship: "Data", what: "results in full precision", data: results.Bytes()})
+	out = append(out, attached{path: aboutFile, mime: "application/json", relationship: "Supplement", what: "how the report was made", data: append(info, '\n')},
+		attached{path: resultsFile, mime: "application/json", relationship: "Data", what: "results in full precision", data: results.Bytes()})
 	return out, nil
 }
 

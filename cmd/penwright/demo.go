@@ -58,7 +58,7 @@ func (a *app) demo() *cobra.Command {
 // those of the trial; nothing of somebody else's is overwritten.
 func (a *app) writeDemo(dir string) error {
 	if err := os.MkdirAll(dir, 0o755); err != nil {
-		return failed(err)
+		return failed(cause(dir, err))
 	}
 	f, err := folder.Open(dir)
 	if err != nil {

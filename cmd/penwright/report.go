@@ -96,7 +96,7 @@ func (a *app) makeReport(o *opened, out, template string, only []string) ([]stri
 		}
 	}
 	if err := os.MkdirAll(out, 0o755); err != nil {
-		return nil, failed(err)
+		return nil, failed(cause(out, err))
 	}
 	target, err := folder.Open(out)
 	if err != nil {

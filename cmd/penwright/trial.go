@@ -71,7 +71,7 @@ func cause(path string, err error) error {
 	case errors.Is(err, fs.ErrNotExist):
 		return fmt.Errorf("there is no folder %s", path)
 	case errors.Is(err, fs.ErrPermission):
-		return fmt.Errorf("%s cannot be read: permission denied", path)
+		return fmt.Errorf("%s: permission denied", path)
 	case errors.Is(err, syscall.ENOTDIR):
 		return fmt.Errorf("%s is no folder", path)
 	}
@@ -79,7 +79,7 @@ func cause(path string, err error) error {
 	if errors.As(err, &of) { // the path is said already
 		err = of.Err
 	}
-	return fmt.Errorf("%s cannot be read: %w", path, err)
+	return fmt.Errorf("%s cannot be opened: %w", path, err)
 }
 
 // sources gives the text of the files that diagnostics point into.
