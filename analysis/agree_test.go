@@ -191,6 +191,9 @@ func (c *check) wellFormed(rs *result.Results) {
 			if !x.P.Known() && !has("no-variation", x.Term) && !has("not-estimable", x.Term) {
 				c.fault("P of contrast %s is null without a note", x.Name)
 			}
+			if !x.SS.Known() && !has("no-variation", x.Term) && !has("not-estimable", x.Term) && !has("no-single-error", x.Term) {
+				c.fault("SS of contrast %s is null without a note", x.Name)
+			}
 		}
 		for _, x := range r.Comparisons {
 			if !x.P.Known() && !has("no-variation", x.Term) && !has("not-estimable", x.Term) {
@@ -600,6 +603,11 @@ func (c *check) holdTrends(out *result.Response, b *reckoning, t int, weights []
 		}
 		return (vp - vm) / 4
 	}
+	for _, w := range d {
+		if !b.single(t, w) {
+			return
+		}
+	}
 	k := len(d)
 	cm := make([][]float64, k)
 	y := make([]float64, k)
@@ -690,6 +698,11 @@ func (c *check) holdContrast(out *result.Response, b *reckoning) {
 	c.number("contrast", got.Estimate, b.value(a), math.Sqrt(v))
 	c.number("contrast se", got.SE, math.Sqrt(v), 0)
 	c.number("contrast df", got.DF, df, 0)
+	ss := math.NaN()
+	if b.single(0, a) {
+		ss = b.value(a) * b.value(a) / v * b.tests[0].errMS
+	}
+	c.number("contrast ss", got.SS, ss, b.tests[0].errMS)
 	c.number("contrast F", got.F, b.value(a)*b.value(a)/v, 1e-3)
 	c.number("contrast P", got.P, upperTail(b.value(a)*b.value(a)/v, 1, df), 1e-3)
 }
@@ -722,6 +735,11 @@ func (c *check) holdParts(out *result.Response, b *reckoning, total float64) {
 		var a [][]float64
 		for _, w := range contrasts {
 			a = append(a, combine(w))
+		}
+		for _, w := range a {
+			if !b.single(0, w) {
+				return // over several errors there is no part, and a note says so
+			}
 		}
 		ss, df := squaredLength(a, b.level.y)
 		i := slices.IndexFunc(out.Anova, func(l result.Line) bool { return l.Source == name })
@@ -782,9 +800,12 @@ func (c *check) holdResiduals(out *result.Response, b *reckoning, spread float64
 		c.number(name+" fitted", got.Fitted, b.fitted[i], spread)
 		c.number(name, got.Residual, e, spread)
 		c.number(name+" leverage", got.Leverage, h, 1)
-		if h > 1-1e-6 {
+		switch {
+		case h > 1-1e-10:
 			c.number(name+" studentized", got.Studentized, math.NaN(), 0)
 			c.number(name+" cook", got.Cook, math.NaN(), 0)
+			continue
+		case h > 1-1e-5: // a residual that is all rounding
 			continue
 		}
 		r := e / math.Sqrt(b.errMS*(1-h))

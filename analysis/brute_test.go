@@ -1190,6 +1190,16 @@ func unitColumns(columns []column) []column {
 	return out
 }
 
+// single tells whether weights draw on the error of a term alone.
+func (b *reckoning) single(t int, a []float64) bool {
+	for k := range b.strata {
+		if k != b.tests[t].stratum && quadratic(b.strata[k].s, a) > tiny*floats.Dot(a, a) {
+			return false
+		}
+	}
+	return true
+}
+
 // value of weights over the values of the model.
 func (b *reckoning) value(a []float64) float64 {
 	y := b.level.y

@@ -49,6 +49,12 @@ func (m *termMeans) known(cell int) bool {
 	return m.at[cell] >= 0 && !math.IsNaN(m.est.value(m.at[cell]))
 }
 
+// single tells whether a contrast whose variance has df draws on the error of the term
+// alone, and not on that of other strata as well.
+func (m *termMeans) single(df float64) bool {
+	return math.Abs(df-m.test.errorDF) <= 1e-9*m.test.errorDF
+}
+
 // product lists all combinations, the last running fastest.
 func product(sizes []int) [][]int {
 	out := [][]int{{}}
@@ -261,6 +267,10 @@ func (a *analyst) partLines(k int, stratum *string) {
 			continue
 		}
 		ss, df := m.est.test(partContrasts(a.plan, a.terms[k], part, rows))
+		if df == 0 {
+			a.note("no-single-error", m.name, prose.NoSingleError(a.plan, part.Name))
+			continue
+		}
 		t := m.test
 		t.df, t.ss = df, ss
 		f := result.Number(t.f())
@@ -553,7 +563,12 @@ func (a *analyst) weightedContrast(m *termMeans, c protocol.Contrast) {
 	}
 	if ok {
 		v, variance, df := m.est.contrast(w)
-		a.fillContrast(&x, v, variance, df, m.test.errorMS)
+		ms := m.test.errorMS
+		if !m.single(df) {
+			ms = math.NaN() // no sum of squares stands over one error
+			a.note("no-single-error", m.name, prose.NoSingleError(a.plan, c.Name))
+		}
+		a.fillContrast(&x, v, variance, df, ms)
 	}
 	if !x.Estimate.Known() {
 		a.note("not-estimable", m.name, prose.MeansNotEstimable(a.plan, m.name))
@@ -561,7 +576,8 @@ func (a *analyst) weightedContrast(m *termMeans, c protocol.Contrast) {
 	a.out.Contrasts = append(a.out.Contrasts, x)
 }
 
-// fillContrast completes a contrast with one degree of freedom.
+// fillContrast completes a contrast with one degree of freedom; ms, NaN where there is none,
+// is the mean square of its error.
 func (a *analyst) fillContrast(x *result.Contrast, estimate, variance, df, ms float64) {
 	x.Estimate, x.SE, x.DF = result.Number(estimate), result.Number(math.Sqrt(variance)), result.Number(df)
 	if !(variance > 0) || !(df > 0) {
@@ -596,6 +612,12 @@ func (a *analyst) trends(m *termMeans) {
 	}
 	if len(x) < 3 {
 		return
+	}
+	for _, i := range at[1:] {
+		if _, d := m.est.diff(at[0], i); !m.single(d) {
+			a.note("no-single-error", m.name, prose.NoSingleError(a.plan, m.name))
+			return
+		}
 	}
 	steps, rest, restDF, ok := compare.Trends(x, y, func(i, j int) float64 { return m.est.cov(at[i], at[j]) / ms }, degree)
 	if !ok {

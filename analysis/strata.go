@@ -28,8 +28,10 @@ func (a *analyst) fitStrata(x *rows) error {
 	d := strata.Design{Terms: a.modelTerms()}
 	s := &byStrata{rows: x, units: x.units(), inst: a.at.inst, y: a.at.y}
 	for k, u := range s.units {
-		d.Units = append(d.Units, x.unitFactor(u))
-		d.Random = append(d.Random, a.plan.Units[u].Random)
+		f := x.unitFactor(u)
+		d.Units = append(d.Units, f)
+		// Of a single block left nothing is known of how blocks vary: it is no source of error.
+		d.Random = append(d.Random, a.plan.Units[u].Random && f.Compact().N > 1)
 		if u == a.bottom {
 			s.at = k
 		}

@@ -111,6 +111,11 @@ func NoLimits(p *layout.Plan, term string) string {
 	return fmt.Sprintf("Means of %s draw on the variation of several units, which these data estimate too poorly for limits; the standard errors of differences are sound.", TermText(p, term))
 }
 
+// NoSingleError says that a contrast or part has no F over one error.
+func NoSingleError(p *layout.Plan, what string) string {
+	return fmt.Sprintf("Means with equal weights draw on the variation of several units, since treatments are not equally replicated: %s has no sum of squares over a single error.", TermText(p, what))
+}
+
 // MeansNotEstimable says that some means of a term have no estimate.
 func MeansNotEstimable(p *layout.Plan, term string) string {
 	return fmt.Sprintf("Not all means of %s can be estimated from the units that are left.", TermText(p, term))
