@@ -274,6 +274,7 @@ func (t *table) procedure() Procedure {
 		Name:        t.str("name"),
 		Volume:      t.quantity("volume", positive),
 		Every:       t.quantity("every", positive),
+		Duration:    t.quantity("duration", positive),
 		Times:       t.whole("times", 1, maxCount, 0),
 		Route:       t.str("route"),
 		How:         t.str("how"),

@@ -163,6 +163,7 @@ type Monitoring struct {
 type Procedure struct {
 	Kind, Name             string
 	Volume, Every          *Quantity
+	Duration               *Quantity // of fasting, restraint, single housing, transport
 	Times                  int
 	Route, How, Where      string
 	Why                    string

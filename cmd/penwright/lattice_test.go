@@ -28,6 +28,7 @@ var lattice = map[string]string{
 	"protocol/sheet":            "protocol/diag",
 	"protocol":                  "protocol/diag protocol/internal/tomlpos",
 	"protocol/layout":           "protocol protocol/factor protocol/diag",
+	"protocol/welfare":          "protocol protocol/layout protocol/diag",
 	"protocol/allot":            "protocol protocol/layout protocol/factor protocol/folder protocol/sheet protocol/diag",
 
 	"analysis/dist":     "analysis/solve",
@@ -36,7 +37,7 @@ var lattice = map[string]string{
 	"analysis/residual": "protocol/factor analysis/dist analysis/solve analysis/strata analysis/linear",
 	"analysis/compare":  "analysis/dist analysis/solve",
 	"analysis/dataset":  "protocol protocol/layout protocol/allot protocol/folder protocol/sheet protocol/diag",
-	"analysis/trial":    "analysis/dataset+ analysis/dataset",
+	"analysis/trial":    "analysis/dataset+ analysis/dataset protocol/welfare",
 	"analysis/prose":    "analysis/result analysis/num analysis/trial analysis/trial+",
 	"analysis": "analysis/trial analysis/trial+ analysis/prose analysis/result analysis/num protocol/factor analysis/dist analysis/strata " +
 		"analysis/linear analysis/compare analysis/residual",
