@@ -97,26 +97,7 @@ func Report(t *trial.Trial, rs *result.Results, opt Options) ([]File, diag.List,
 	if err != nil {
 		return nil, list, err
 	}
-	jobs := jobs(d, rs, opt, attached)
-	done := make([]struct {
-		files []File
-		list  diag.List
-		err   error
-	}, len(jobs))
-	next := make(chan int)
-	var wg sync.WaitGroup
-	for range max(1, opt.Workers) {
-		wg.Go(func() {
-			for k := range next {
-				done[k].files, done[k].list, done[k].err = jobs[k]()
-			}
-		})
-	}
-	for k := range jobs {
-		next <- k
-	}
-	close(next)
-	wg.Wait()
+	done := carryOut(jobs(d, rs, opt, attached), opt.Workers)
 	var out []File
 	for _, x := range done {
 		list = append(list, x.list...)
@@ -131,6 +112,43 @@ func Report(t *trial.Trial, rs *result.Results, opt Options) ([]File, diag.List,
 // job makes some files of a report. Jobs share nothing that they change, so that any
 // number of them may run side by side; their results are merged in their order.
 type job func() ([]File, diag.List, error)
+
+// outcome is what a job gave.
+type outcome struct {
+	files []File
+	list  diag.List
+	err   error
+}
+
+// carryOut does jobs with so many workers, and gives the outcomes in the order of the
+// jobs. A panic in a job is one of the caller, who alone can tell the user.
+func carryOut(jobs []job, workers int) []outcome {
+	done := make([]outcome, len(jobs))
+	panics := make([]any, len(jobs))
+	next := make(chan int)
+	var wg sync.WaitGroup
+	for range max(1, workers) {
+		wg.Go(func() {
+			for k := range next {
+				func() {
+					defer func() { panics[k] = recover() }()
+					done[k].files, done[k].list, done[k].err = jobs[k]()
+				}()
+			}
+		})
+	}
+	for k := range jobs {
+		next <- k
+	}
+	close(next)
+	wg.Wait()
+	for _, x := range panics {
+		if x != nil {
+			panic(x)
+		}
+	}
+	return done
+}
 
 // jobs lists what is wanted, the longest first.
 func jobs(d *doc.Document, rs *result.Results, opt Options, attached []attached) []job {
