@@ -2,6 +2,8 @@ package allot
 
 import (
 	"fmt"
+	"slices"
+	"strings"
 
 	"penwright/protocol/diag"
 	"penwright/protocol/layout"
@@ -70,6 +72,10 @@ func check(a *Allotment, of *layout.Allocation, fs []int, at func(int, int32) di
 		list.Add(diag.Diagnostic{Pos: at(fs[0], i), Severity: diag.Warning, Code: UnequalAllotment, Message: fmt.Sprintf(format, args...),
 			Hint: "the analysis follows the allotment as it is; if this was meant, say so with replicates"})
 	}
+	if s := given(plan, of); s != nil {
+		s.check(a, of, combination, name, warn)
+		return list
+	}
 	counts := make([]int, n)
 	for _, c := range combination {
 		counts[c]++
@@ -102,8 +108,12 @@ func check(a *Allotment, of *layout.Allocation, fs []int, at func(int, int32) di
 					lo = of.Total[c] * len(members) / unit.N
 					hi = (of.Total[c]*len(members) + unit.N - 1) / unit.N
 				}
-				if of.Checks != nil && !of.Checks[c] {
+				switch {
+				case of.Checks == nil:
+				case !of.Checks[c]:
 					lo, hi = 0, 1
+				case len(of.Blocks) == 1:
+					lo, hi = of.Total[c]/len(inside), of.Total[c]/len(inside)
 				}
 				if k < lo || k > hi {
 					warn(members[0], "%s stands %s in %s", name(c), times(k), Describe(plan, v, int32(b)))
@@ -112,6 +122,61 @@ func check(a *Allotment, of *layout.Allocation, fs []int, at func(int, int32) di
 		}
 	}
 	return list
+}
+
+// check compares what each row went through with sequences that are fixed beforehand.
+func (s *sequences) check(a *Allotment, of *layout.Allocation, combination []int, name func(int) string, warn func(int32, string, ...any)) {
+	plan := a.Plan
+	on, along := carrier(plan)
+	if on < 0 || along < 0 || plan.Coarse(of.Unit, on) == nil || plan.Coarse(of.Unit, along) == nil {
+		return
+	}
+	known, open := map[string]int{}, false
+	if half := s.count(); s.names {
+		// Names are permuted, so that any pair may alternate; where only half the pairs
+		// do, it is open which.
+		t := len(of.Combinations)
+		s = alternating(t, len(s.sets[0][0]), t*(t-1))
+		open = s.count() > half
+	}
+	counts := make([]int, s.count())
+	for k, row := range s.sets[0] {
+		known[fmt.Sprint(row)] = k
+	}
+	for r, members := range members(plan, of.Unit, on) {
+		row := make([]int32, len(members))
+		slices.SortStableFunc(members, func(i, j int32) int {
+			return int(plan.Coarse(of.Unit, along)[i]) - int(plan.Coarse(of.Unit, along)[j])
+		})
+		for k, i := range members {
+			row[k] = int32(combination[i])
+		}
+		k, ok := known[fmt.Sprint(row)]
+		if !ok {
+			var words []string
+			for _, c := range row {
+				_, level, _ := strings.Cut(name(int(c)), " ")
+				words = append(words, level)
+			}
+			warn(members[0], "%s goes through %s, which is none of %s", Describe(plan, on, int32(r)), strings.Join(words, ", "), s.how)
+			continue
+		}
+		counts[k]++
+	}
+	if lo, hi := slices.Min(counts), slices.Max(counts); hi-lo > 1 && !open {
+		warn(0, "of %s one stands on %d of unit %s and another on %d", s.how, hi, plan.Units[on].Name, lo)
+	}
+}
+
+// carrier tells who goes through sequences and along what.
+func carrier(plan *layout.Plan) (on, along int) {
+	switch p := plan.Protocol; {
+	case p.CarryOver != nil:
+		return unitNamed(plan, p.CarryOver.On), unitNamed(plan, p.CarryOver.Along)
+	case p.TimeTrend != nil:
+		return unitNamed(plan, p.TimeTrend.On), unitNamed(plan, p.TimeTrend.Along)
+	}
+	return -1, -1
 }
 
 func times(n int) string {

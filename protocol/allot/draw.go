@@ -86,7 +86,9 @@ type scheme struct {
 
 // step draws what one unit receives.
 type step interface {
-	draw(g *Generator, combination []int32) // one for each instance of the unit
+	// draw gives each instance of the unit the number of its combination of levels, the
+	// first factor slowest. levels holds what is drawn so far and classes.
+	draw(g *Generator, levels [][]int32, combination []int32)
 	words() string
 	allocation() *layout.Allocation
 }
@@ -97,18 +99,24 @@ func (s *scheme) draw(g *Generator) *Allotment {
 		a.Order[i] = i + 1
 	}
 	for _, st := range s.steps {
-		of := st.allocation()
-		combination := make([]int32, s.plan.Units[of.Unit].N)
-		st.draw(g, combination)
-		for k, f := range of.Factors {
-			levels := make([]int32, len(combination))
-			for i, c := range combination {
-				levels[i] = int32(of.Combinations[c][k])
-			}
-			a.Levels[f] = levels
-		}
+		s.take(st, g, a.Levels)
 	}
 	return a
+}
+
+// take draws one step into levels.
+func (s *scheme) take(st step, g *Generator, levels [][]int32) {
+	of := st.allocation()
+	combination := make([]int32, s.plan.Units[of.Unit].N)
+	st.draw(g, levels, combination)
+	for k := len(of.Factors) - 1; k >= 0; k-- {
+		n := int32(len(s.plan.Factors[of.Factors[k]].Levels))
+		at := make([]int32, len(combination))
+		for i, c := range combination {
+			at[i], combination[i] = c%n, c/n
+		}
+		levels[of.Factors[k]] = at
+	}
 }
 
 // refusal collects why a plan is not drawn.
@@ -138,33 +146,61 @@ func newScheme(plan *layout.Plan, roster *Roster) (*scheme, diag.List) {
 			s.fixed[f] = roster.Levels[f]
 		}
 	}
-	for u := range plan.Units {
-		a := plan.Allocation(u)
-		if a == nil {
-			continue
-		}
-		key := fmt.Sprintf("unit[%d].receives", u)
-		names := factorNames(plan, a.Factors)
-		switch {
-		case a.Separate:
-			r.add(key, NotDrawn, elsewhere, "%s on %s are each a Latin square, orthogonal to one another (a Graeco-Latin square); such squares are not drawn", names, plan.Units[u].Name)
-		case a.Checks != nil:
-			r.add(fmt.Sprintf("unit[%d].checks", u), NotDrawn, elsewhere, "an augmented design, checks in every block and each entry once, is not drawn")
-		case p.CarryOver != nil && slices.ContainsFunc(a.Factors, func(f int) bool { return plan.Factors[f].Name == p.CarryOver.Factor }):
-			r.add("carryover", NotDrawn, elsewhere, "a crossover with carry-over, whose sequences must be balanced for what precedes, is not drawn")
-		case p.TimeTrend != nil && plan.Units[u].Crosses != nil:
-			r.add("time_trend", NotDrawn, elsewhere, "a switchback or reversal design, whose sequences alternate, is not drawn")
-		case plan.Units[u].Crosses != nil:
-			if st := r.latin(a, s.fixed); st != nil {
-				s.steps = append(s.steps, st)
-			}
-		default:
-			if st := r.inBlocks(a, s.fixed); st != nil {
-				s.steps = append(s.steps, st)
-			}
+	// What rows received decides which of them belong together, though not how many, so
+	// a trial run of the steps before stands for every draw.
+	g, levels := NewGenerator("trial run"), slices.Clone(s.fixed)
+	for _, u := range coarseFirst(plan) {
+		if st := r.step(plan.Allocation(u), s.fixed, levels); st != nil {
+			s.steps = append(s.steps, st)
+			s.take(st, g, levels)
 		}
 	}
 	return s, r.list
+}
+
+// coarseFirst lists the units that receive something in the plan's order, but none
+// before a larger one that holds it.
+func coarseFirst(plan *layout.Plan) []int {
+	var out []int
+	done := make([]bool, len(plan.Units))
+	for range plan.Units {
+		for u := range plan.Units {
+			free := !done[u]
+			for v := range plan.Units {
+				free = free && (v == u || done[v] || plan.Coarse(u, v) == nil)
+			}
+			if free {
+				done[u] = true
+				if plan.Allocation(u) != nil {
+					out = append(out, u)
+				}
+				break
+			}
+		}
+	}
+	return out
+}
+
+// step prepares the draw of what one unit receives, nil where it is refused.
+func (r *refusal) step(a *layout.Allocation, fixed, levels [][]int32) step {
+	plan, p, u := r.plan, r.plan.Protocol, a.Unit
+	names := factorNames(plan, a.Factors)
+	crosses := plan.Units[u].Crosses != nil
+	switch {
+	case a.Separate:
+		r.add(fmt.Sprintf("unit[%d].receives", u), NotDrawn, elsewhere, "%s on %s are each a Latin square, orthogonal to one another (a Graeco-Latin square); such squares are not drawn", names, plan.Units[u].Name)
+	case a.Checks != nil:
+		return r.augmented(a, fixed, levels)
+	case crosses && p.CarryOver != nil && slices.ContainsFunc(a.Factors, func(f int) bool { return plan.Factors[f].Name == p.CarryOver.Factor }):
+		return r.sequenced(a, fixed, levels, "carryover", p.CarryOver.On, p.CarryOver.Along)
+	case crosses && p.TimeTrend != nil:
+		return r.sequenced(a, fixed, levels, "time_trend", p.TimeTrend.On, p.TimeTrend.Along)
+	case crosses:
+		return r.latin(a, fixed, levels)
+	default:
+		return r.inBlocks(a, fixed)
+	}
+	return nil
 }
 
 func factorNames(plan *layout.Plan, fs []int) string {
@@ -286,7 +322,7 @@ func (r *refusal) inBlocks(a *layout.Allocation, fixed [][]int32) step {
 
 func (s *blocked) allocation() *layout.Allocation { return s.of }
 
-func (s *blocked) draw(g *Generator, combination []int32) {
+func (s *blocked) draw(g *Generator, _ [][]int32, combination []int32) {
 	for b := range s.blocks {
 		bl := &s.blocks[b]
 		var dealt []int32
@@ -336,17 +372,13 @@ func (s *blocked) words() string {
 type squared struct {
 	of     *layout.Allocation
 	plan   *layout.Plan
+	grid   *grid
 	square square
-	fields []field
+
+	fields, rows, columns int // number of fields, and the size of the first
 }
 
-// field is a rectangle of rows and columns that belong together.
-type field struct {
-	rows, columns int
-	cells         []int32 // instance at row × columns + column
-}
-
-func (r *refusal) latin(a *layout.Allocation, fixed [][]int32) step {
+func (r *refusal) latin(a *layout.Allocation, fixed, levels [][]int32) step {
 	plan, u := r.plan, a.Unit
 	unit := &plan.Units[u]
 	key := fmt.Sprintf("unit[%d].receives", u)
@@ -370,81 +402,30 @@ func (r *refusal) latin(a *layout.Allocation, fixed [][]int32) step {
 	} else if class != nil {
 		return refuse("it carries a class of its own")
 	}
-	// Rows belong together when they lie in the same parent and are of the same class
-	// or treatment; so do columns.
-	groups := make([][]int32, 2)
-	counts := make([]int, 2)
-	for k, v := range unit.Crosses {
-		class, ok := r.classes(v, fixed)
-		if !ok {
+	gr, why := r.grid(u, unit.Crosses[0], unit.Crosses[1], fixed)
+	if gr == nil {
+		if why == "" {
 			return nil
 		}
-		if len(plan.Units[v].Receives) > 0 {
-			return refuse(fmt.Sprintf("%s receives treatments of its own", plan.Units[v].Name))
-		}
-		number := map[[2]int32]int32{}
-		groups[k] = make([]int32, plan.Units[v].N)
-		for i := range groups[k] {
-			var of [2]int32
-			if w := plan.Units[v].Within; w >= 0 {
-				of[0] = plan.Coarse(v, w)[i]
-			}
-			if class != nil {
-				of[1] = class[i]
-			}
-			if _, ok := number[of]; !ok {
-				number[of] = int32(len(number))
-			}
-			groups[k][i] = number[of]
-		}
-		counts[k] = len(number)
+		return refuse(why)
 	}
-	// Place of every row and column in its group.
-	place := make([][]int32, 2)
-	size := make([][]int, 2)
-	for k := range groups {
-		size[k] = make([]int, counts[k])
-		place[k] = make([]int32, len(groups[k]))
-		for i, of := range groups[k] {
-			place[k][i] = int32(size[k][of])
-			size[k][of]++
+	fields := gr.fields(levels)
+	if fields == nil {
+		return refuse("not every row meets every column")
+	}
+	for _, f := range fields {
+		if f.rows%t != 0 || f.columns%t != 0 {
+			return refuse(fmt.Sprintf("%d rows (%s) by %d columns (%s) cannot each hold every treatment equally often", f.rows, plan.Units[unit.Crosses[0]].Name, f.columns, plan.Units[unit.Crosses[1]].Name))
 		}
 	}
-	rowOf, columnOf := plan.Coarse(u, unit.Crosses[0]), plan.Coarse(u, unit.Crosses[1])
-	number := map[[2]int32]int{}
-	s := &squared{of: a, plan: plan, square: newSquare(t)}
-	for i := range unit.N {
-		of := [2]int32{groups[0][rowOf[i]], groups[1][columnOf[i]]}
-		f, ok := number[of]
-		if !ok {
-			f = len(s.fields)
-			number[of] = f
-			rows, columns := size[0][of[0]], size[1][of[1]]
-			if rows%t != 0 || columns%t != 0 {
-				return refuse(fmt.Sprintf("%d rows (%s) by %d columns (%s) cannot each hold every treatment equally often", rows, plan.Units[unit.Crosses[0]].Name, columns, plan.Units[unit.Crosses[1]].Name))
-			}
-			cells := make([]int32, rows*columns)
-			for c := range cells {
-				cells[c] = -1
-			}
-			s.fields = append(s.fields, field{rows: rows, columns: columns, cells: cells})
-		}
-		fd := &s.fields[f]
-		fd.cells[int(place[0][rowOf[i]])*fd.columns+int(place[1][columnOf[i]])] = int32(i)
-	}
-	for _, f := range s.fields {
-		if slices.Contains(f.cells, -1) {
-			return refuse("not every row meets every column")
-		}
-	}
-	return s
+	return &squared{of: a, plan: plan, grid: gr, square: newSquare(t), fields: len(fields), rows: fields[0].rows, columns: fields[0].columns}
 }
 
 func (s *squared) allocation() *layout.Allocation { return s.of }
 
-func (s *squared) draw(g *Generator, combination []int32) {
+func (s *squared) draw(g *Generator, levels [][]int32, combination []int32) {
 	t := s.square.n
-	for _, f := range s.fields {
+	for _, f := range s.grid.fields(levels) {
 		rows, columns := identity(f.rows), identity(f.columns)
 		if f.rows > t {
 			g.Shuffle(rows)
@@ -466,17 +447,12 @@ func (s *squared) draw(g *Generator, combination []int32) {
 func (s *squared) words() string {
 	unit := &s.plan.Units[s.of.Unit]
 	t := s.square.n
-	how := "every square with the same probability: a reduced square is chosen from all in ascending order of their rows, then its columns and its rows but the first are permuted"
-	if s.square.reduced == nil {
-		how = fmt.Sprintf("by the chain of Jacobson and Matthews (1996) from the cyclic square over %d proper squares, then columns, rows and letters are permuted", t*t*t)
-	}
 	text := fmt.Sprintf("%s to %s: a Latin square of the %d treatments on %s × %s", factorNames(s.plan, s.of.Factors), unit.Name, t, s.plan.Units[unit.Crosses[0]].Name, s.plan.Units[unit.Crosses[1]].Name)
-	if n := len(s.fields); n > 1 {
+	if n := s.fields; n > 1 {
 		text = fmt.Sprintf("%s to %s: %d Latin squares of the %d treatments on %s × %s, each drawn by itself", factorNames(s.plan, s.of.Factors), unit.Name, n, t, s.plan.Units[unit.Crosses[0]].Name, s.plan.Units[unit.Crosses[1]].Name)
 	}
-	f := s.fields[0]
-	if f.rows > t || f.columns > t {
-		text += fmt.Sprintf(" (%d rows and %d columns, in random order, are cut into squares)", f.rows, f.columns)
+	if s.rows > t || s.columns > t {
+		text += fmt.Sprintf(" (%d rows and %d columns, in random order, are cut into squares)", s.rows, s.columns)
 	}
-	return text + "; " + how
+	return text + "; " + s.square.words()
 }

@@ -244,8 +244,6 @@ func TestNotDrawn(t *testing.T) {
 		{"incomplete block", factor("a", 7) + "[[unit]]\nname = \"block\"\ncount = 7\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 3\nreceives = [\"a\"]\n", "incomplete block"},
 		{"rows and columns", factor("a", 4) + fmt.Sprintf(square, 4, 7, `"a"`), "4 rows (cow) by 7 columns (period)"},
 		{"graeco-latin", factor("a", 4) + factor("b", 4) + fmt.Sprintf(square, 4, 4, `"a", "b"`), "Graeco-Latin"},
-		{"crossover", factor("a", 4) + fmt.Sprintf(square, 4, 4, `"a"`) + "[carryover]\nfactor = \"a\"\nalong = \"period\"\non = \"cow\"\n", "crossover"},
-		{"switchback", factor("a", 2) + fmt.Sprintf(square, 4, 4, `"a"`) + "[time_trend]\non = \"cow\"\nalong = \"period\"\norder = 1\n", "switchback"},
 		{"blocks by the roster", factor("a", 2) + "[roster]\nfile = \"roster.csv\"\nblock_by = \"mass\"\n[[unit]]\nname = \"block\"\ncount = 2\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 2\nreceives = [\"a\"]\n", "mass"},
 		{"candidates", factor("a", 2) + "[randomization]\nbalance_on = [\"mass\"]\ncandidates = 10\n[[covariate]]\nname = \"mass\"\n[roster]\nfile = \"roster.csv\"\n[[unit]]\nname = \"pen\"\ncount = 4\nreceives = [\"a\"]\n", "candidates"},
 	} {

@@ -1,5 +1,7 @@
 package allot
 
+import "fmt"
+
 // largestSquare is the greatest order of a Latin square that is drawn; the chain's work
 // grows with the fourth power of it.
 const largestSquare = 64
@@ -85,6 +87,14 @@ func (s square) draw(g *Generator) []int32 {
 		}
 	}
 	return out
+}
+
+// words says how a square is drawn.
+func (s square) words() string {
+	if s.reduced == nil {
+		return fmt.Sprintf("by the chain of Jacobson and Matthews (1996) from the cyclic square over %d proper squares, then columns, rows and letters are permuted", s.n*s.n*s.n)
+	}
+	return "every square with the same probability: a reduced square is chosen from all in ascending order of their rows, then its columns and its rows but the first are permuted"
 }
 
 // chain runs the Markov chain of Jacobson and Matthews from the cyclic square until it
