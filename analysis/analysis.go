@@ -10,6 +10,7 @@ import (
 	"penwright/analysis/dataset"
 	"penwright/analysis/prose"
 	"penwright/analysis/result"
+	"penwright/analysis/sound"
 	"penwright/analysis/trial"
 	"penwright/protocol/diag"
 	"penwright/protocol/layout"
@@ -30,6 +31,7 @@ func Run(t *trial.Trial, program result.Program, progress func(done, of int)) (*
 		Design:    design(t.Plan),
 		Responses: []result.Response{},
 	}
+	out.Design.Checks = sound.Results(sound.Check(t))
 	out.SampleSize = size(t.Plan)
 	if t.Table == nil {
 		return out, nil
@@ -90,33 +92,8 @@ func design(p *layout.Plan) result.Design {
 			df = t.ErrorDF
 		}
 		d.ErrorDF = append(d.ErrorDF, result.TermDF{Term: t.Name, DF: df})
-		if c, ok := errorDF(p, t); ok {
-			d.Checks = append(d.Checks, c)
-		}
 	}
 	return d
-}
-
-// errorDF compares the error degrees of freedom of a term with those asked for; false:
-// the term is not tested.
-func errorDF(p *layout.Plan, t *layout.Term) (result.Check, bool) {
-	if t.Stratum < 0 && t.Over < 0 {
-		return result.Check{}, false
-	}
-	least := p.Protocol.Analysis.ErrorDFMin
-	c := result.Check{Code: "error-df", Level: "pass", Text: prose.ErrorDFCheck(p, t, t.ErrorDF, least), Where: termPos(p, t).String()}
-	if t.ErrorDF < least {
-		c.Level = "warning"
-	}
-	return c, t.ErrorDF >= 0
-}
-
-// termPos is the place of the unit that is a term's experimental unit.
-func termPos(p *layout.Plan, t *layout.Term) diag.Pos {
-	if t.Unit < 0 {
-		return diag.Pos{File: p.Protocol.File}
-	}
-	return p.Protocol.Pos(fmt.Sprintf("unit[%d]", t.Unit))
 }
 
 // treatments is the number of different treatments that units can receive.

@@ -3,7 +3,7 @@ package analysis
 import (
 	"fmt"
 
-	"penwright/analysis/prose"
+	"penwright/analysis/sound"
 	"penwright/analysis/trial"
 	"penwright/protocol"
 	"penwright/protocol/diag"
@@ -22,7 +22,6 @@ func Codes() []diag.CodeInfo {
 	return []diag.CodeInfo{
 		{Code: "not-carried-out", Text: "a key asks for what this version does not do and would change the numbers"},
 		{Code: "needs-mixed-model", Text: "unbalanced values would need a mixed model, which this version does not fit"},
-		{Code: "error-df", Text: "a treatment is tested with fewer error degrees of freedom than asked for"},
 		{Code: "no-values", Text: "no unit gave a value of the response"},
 		{Code: "no-terms", Text: "the response is recorded on a unit larger than those that received treatments"},
 		{Code: "one-level", Text: "only one level of a factor gave a value"},
@@ -34,8 +33,8 @@ func Codes() []diag.CodeInfo {
 }
 
 // Foresee says what is known of the analysis before there are data: as errors the keys
-// for which responses will not be analysed, as warnings the treatment terms with fewer
-// error degrees of freedom than the protocol asks for. It needs the plan.
+// for which responses will not be analysed, as warnings and notes what the checks of the
+// design found. It needs the plan.
 func Foresee(t *trial.Trial) diag.List {
 	var list diag.List
 	for i := range t.Protocol.Responses {
@@ -45,14 +44,7 @@ func Foresee(t *trial.Trial) diag.List {
 				Message: fmt.Sprintf("response %q will not be analysed: %s", r.Name, x.why), Hint: x.hint})
 		}
 	}
-	for i := range t.Plan.Terms {
-		x := &t.Plan.Terms[i]
-		if c, ok := errorDF(t.Plan, x); ok && c.Level != "pass" {
-			list.Add(diag.Diagnostic{Pos: termPos(t.Plan, x), Severity: diag.Warning, Code: c.Code,
-				Message: fmt.Sprintf("the test of %s has %d error degrees of freedom, fewer than the %d asked for", prose.TermText(t.Plan, x.Name), x.ErrorDF, t.Protocol.Analysis.ErrorDFMin),
-				Hint:    "plan more experimental units, or state the limit under analysis.error_df_min"})
-		}
-	}
+	list = append(list, sound.List(sound.Check(t))...)
 	return list
 }
 

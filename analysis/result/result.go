@@ -242,6 +242,8 @@ type Check struct {
 	Level string `json:"level"`
 	Text  string `json:"text"`
 	Where string `json:"where,omitempty"`
+	// Reason says why it is looked at, with its source.
+	Reason string `json:"reason,omitempty"`
 }
 
 // SampleSize is the justification of the size as far as it was computed.

@@ -34,6 +34,7 @@ type Trial struct {
 	Allotment *allot.Allotment
 	Roster    *allot.Roster // nil without one
 	Table     *dataset.Table
+	Said      diag.List // what Open said, for those who come later
 }
 
 // Open reads a trial as far as it goes and collects what is to be said of all stages,
@@ -48,6 +49,7 @@ func Open(files *folder.Folder) (*Trial, diag.List) {
 	list = slices.CompactFunc(list, func(a, b diag.Diagnostic) bool {
 		return a.Pos == b.Pos && a.Code == b.Code && a.Message == b.Message
 	})
+	t.Said = list
 	return t, list
 }
 

@@ -35,11 +35,13 @@ var lattice = map[string]string{
 	"analysis/strata":   "protocol/factor analysis/dist",
 	"analysis/linear":   "protocol/factor analysis/dist",
 	"analysis/residual": "protocol/factor analysis/dist analysis/solve analysis/strata analysis/linear",
+	"analysis/power":    "protocol/factor analysis/dist analysis/solve analysis/strata analysis/linear",
 	"analysis/compare":  "analysis/dist analysis/solve",
 	"analysis/dataset":  "protocol protocol/layout protocol/allot protocol/folder protocol/sheet protocol/diag",
 	"analysis/trial":    "analysis/dataset+ analysis/dataset protocol/welfare",
 	"analysis/prose":    "analysis/result analysis/num analysis/trial analysis/trial+",
-	"analysis": "analysis/trial analysis/trial+ analysis/prose analysis/result analysis/num protocol/factor analysis/dist analysis/strata " +
+	"analysis/sound":    "analysis/trial analysis/trial+ analysis/prose analysis/result protocol/factor analysis/linear analysis/power",
+	"analysis": "analysis/sound analysis/trial analysis/trial+ analysis/prose analysis/result analysis/num protocol/factor analysis/dist analysis/strata " +
 		"analysis/linear analysis/compare analysis/residual",
 
 	"render/doc":           "protocol/diag",

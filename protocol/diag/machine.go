@@ -9,8 +9,9 @@ import (
 	"unicode/utf8"
 )
 
-// CodeInfo describes a diagnostic code in one sentence.
-type CodeInfo struct{ Code, Text string }
+// CodeInfo describes a diagnostic code in one sentence, and by the smallest input that
+// brings it about where there is one.
+type CodeInfo struct{ Code, Text, Example string }
 
 // WriteJSON writes l as one JSON object, in its order and unfolded:
 //
