@@ -37,7 +37,7 @@ func Draws(plan *layout.Plan, roster *Roster, seed string, n int) ([]*Allotment,
 		// A stream of their own, so that codes change no draw.
 		g := NewGenerator(seed + " codes")
 		for _, a := range all {
-			a.Codes = codes(g, len(a.Order))
+			a.Codes = maskedCodes(g, len(a.Order))
 		}
 	}
 	return all, list
@@ -56,9 +56,9 @@ func Scheme(plan *layout.Plan, roster *Roster) (string, diag.List) {
 	return strings.Join(words, "; "), list
 }
 
-// codes gives n different codes K… at random, of as many digits as leave nine in ten
+// maskedCodes gives n different codes K… at random, of as many digits as leave nine in ten
 // numbers unused, so that a slip of the pen rarely hits another code.
-func codes(g *Generator, n int) []string {
+func maskedCodes(g *Generator, n int) []string {
 	low := 10
 	for 9*low < 10*n {
 		low *= 10

@@ -307,7 +307,7 @@ func TestRepeat(t *testing.T) {
 // TestCodes: masked codes differ, and leave most numbers unused.
 func TestCodes(t *testing.T) {
 	for _, n := range []int{1, 9, 10, 90, 91, 5000} {
-		c := codes(NewGenerator("codes"), n)
+		c := maskedCodes(NewGenerator("codes"), n)
 		seen := map[string]bool{}
 		for _, s := range c {
 			seen[s] = true
