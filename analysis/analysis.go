@@ -31,8 +31,9 @@ func Run(t *trial.Trial, program result.Program, progress func(done, of int)) (*
 		Design:    design(t.Plan),
 		Responses: []result.Response{},
 	}
-	out.Design.Checks = sound.Results(sound.Check(t))
-	out.SampleSize = size(t.Plan)
+	var checks []result.Check
+	out.SampleSize, checks = size(t)
+	out.Design.Checks = append(sound.Results(sound.Check(t)), checks...)
 	if t.Table == nil {
 		return out, nil
 	}
@@ -109,46 +110,6 @@ func treatments(p *layout.Plan) int {
 		return 0
 	}
 	return n
-}
-
-// size takes from the protocol and the plan what is known of the size without power.
-func size(p *layout.Plan) *result.SampleSize {
-	s := p.Protocol.SampleSize
-	if s == nil {
-		return nil
-	}
-	out := &result.SampleSize{Basis: s.Basis, Response: s.Response, Power: result.NaN, Difference: result.NaN, Curve: []result.PowerPoint{}}
-	if s.Difference != nil {
-		out.Difference = result.Number(*s.Difference)
-	}
-	term := -1
-	for i := range p.Terms {
-		if p.Terms[i].Name == s.Term {
-			term = i
-		}
-	}
-	if term < 0 && len(p.Terms) > 0 {
-		term = 0
-	}
-	if term >= 0 && p.Terms[term].Unit >= 0 {
-		t := &p.Terms[term]
-		cells := 1
-		for _, f := range t.Factors {
-			cells *= len(p.Factors[f].Levels)
-		}
-		out.Units = p.Units[t.Unit].N
-		out.Replicates = out.Units / cells
-		if t.Stratum >= 0 || t.Over >= 0 {
-			df := t.ErrorDF
-			out.ErrorDF = &df
-		}
-	}
-	for i := range p.Units {
-		for _, a := range p.Units[i].Animals {
-			out.Animals += a
-		}
-	}
-	return out
 }
 
 // respond analyses one response.

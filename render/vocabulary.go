@@ -152,6 +152,10 @@ func (b *builder) functions() template.FuncMap {
 		"identity":      func() doc.Table { return table.Identity(t, rs.Trial.Status, b.fingerprint) },
 		"skeleton":      func() doc.Table { return table.Skeleton(t.Plan) },
 		"checks":        func() doc.Table { return table.Checks(rs) },
+		"sizes":         func() doc.Table { return table.Sizes(t.Plan, rs.SampleSize) },
+		"size spread":   func() doc.Table { return table.SizeSpread(t.Plan, rs.SampleSize) },
+		"size groups":   func() doc.Table { return table.SizeGroups(t.Plan, rs.SampleSize) },
+		"size terms":    func() doc.Table { return table.SizeTerms(t.Plan, rs.SampleSize) },
 		"animals":       func() doc.Table { return table.Animals(t.Protocol) },
 		"site":          func() doc.Table { return table.Site(t.Protocol) },
 		"housing":       func() doc.Table { return table.Housing(t.Protocol) },
@@ -201,6 +205,7 @@ func (b *builder) functions() template.FuncMap {
 		"design":     func() []string { return prose.Design(t.Plan) },
 		"errors":     func() []string { return prose.ErrorTerms(t.Plan) },
 		"size":       func() []string { return prose.Size(t.Plan) },
+		"size found": func() []string { return prose.SizeFound(t.Plan, rs.SampleSize) },
 		"draw":       func() []string { return prose.Draw(t.Plan, t.Allotment) },
 		"blinding":   func() []string { return prose.Blinding(t.Protocol.Blinding) },
 		"agreement":  func() []string { return prose.Agreement(t) },
@@ -250,6 +255,8 @@ func (b *builder) functions() template.FuncMap {
 				return p.layoutMap(), nil
 			case name == "flow":
 				return p.flow(), nil
+			case name == "power":
+				return p.power(), nil
 			case name == "means":
 				r, err := response(args)
 				if err != nil {
@@ -267,7 +274,7 @@ func (b *builder) functions() template.FuncMap {
 				}
 				return figures[name](r.Name), nil
 			}
-			return nil, fault("figure", name, keys(figures, []string{"map", "flow", "means"}))
+			return nil, fault("figure", name, keys(figures, []string{"map", "flow", "means", "power"}))
 		},
 		"paragraph": func(name string) ([]doc.Block, error) {
 			f := paragraphsOf[name]
@@ -280,13 +287,15 @@ func (b *builder) functions() template.FuncMap {
 			switch name {
 			case "hypotheses":
 				return bullets(t.Protocol.Trial.Hypotheses), nil
+			case "size notes":
+				return bullets(prose.SizeNotes(rs.SampleSize)), nil
 			case "endpoints":
 				if t.Protocol.Welfare != nil {
 					return bullets(t.Protocol.Welfare.HumaneEndpoints), nil
 				}
 				return nil, nil
 			}
-			return nil, fault("list", name, []string{"hypotheses", "endpoints"})
+			return nil, fault("list", name, []string{"hypotheses", "endpoints", "size notes"})
 		},
 		"methods": func(name string) ([]doc.Inline, error) {
 			r, err := response([]string{name})

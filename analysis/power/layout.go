@@ -231,6 +231,56 @@ func (c *Covariance) Contrast(w []float64) float64 {
 	return v
 }
 
+// Connected tells whether every contrast of the means can be estimated.
+func (c *Covariance) Connected() bool {
+	if c.space == nil {
+		return true
+	}
+	n, k := c.space.Dims()
+	return k >= n-1
+}
+
+// Average is the mean variance, per unit of error variance, of contrasts with one on half
+// of their cells and minus one on the other half, as differences and differences of
+// differences are, over the space of a main effect or interaction of factors with the
+// given levels, the first slowest: 2ᵏ tr(P V)/df for k factors, P being the projector on
+// that space. It is NaN when the means are not connected.
+func (c *Covariance) Average(levels []int) float64 {
+	if !c.Connected() {
+		return math.NaN()
+	}
+	n := c.V.SymmetricDim()
+	df, scale := 1, 1.0
+	for _, l := range levels {
+		df *= l - 1
+		scale *= 2
+	}
+	at := func(cell int) []int {
+		out := make([]int, len(levels))
+		for f := len(levels) - 1; f >= 0; f-- {
+			out[f] = cell % levels[f]
+			cell /= levels[f]
+		}
+		return out
+	}
+	trace := 0.0
+	for i := range n {
+		a := at(i)
+		for j := range n {
+			p := 1.0
+			for f, b := range at(j) {
+				if a[f] == b {
+					p *= 1 - 1/float64(levels[f])
+				} else {
+					p *= -1 / float64(levels[f])
+				}
+			}
+			trace += p * c.V.At(i, j)
+		}
+	}
+	return scale * trace / float64(df)
+}
+
 // Bound is an upper bound of the average efficiency factor of a block design with blocks
 // of the given sizes for t treatments as equally replicated as can be: the mean of the
 // canonical efficiency factors when treatments stand in the blocks as equally as can be,

@@ -242,6 +242,12 @@ func TestAdjusted(t *testing.T) {
 		}
 	}
 	near(t, "mean variance of a difference", sum/pairs, 2/(2*2./3), 1e-12)
+	near(t, "mean variance by the trace", c.Average([]int{9}), sum/pairs, 1e-12)
+	if c.Connected() != true || !math.IsNaN(func() float64 { c, _ := Adjusted(apart, in, nil, 0); return c.Average([]int{4}) }()) {
+		t.Error("connectedness")
+	}
+	// Differences of differences of cells with five units each: 4/5.
+	near(t, "interaction", Diagonal([]float64{5, 5, 5, 5, 5, 5}).Average([]int{2, 3}), 4./5, 1e-12)
 	near(t, "bound of 24 in 3 replicates of 6", ResolvableBound(24, 3, 6), .754098360656, 1e-11) // Patterson & Williams 1976
 }
 

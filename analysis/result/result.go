@@ -246,7 +246,9 @@ type Check struct {
 	Reason string `json:"reason,omitempty"`
 }
 
-// SampleSize is the justification of the size as far as it was computed.
+// SampleSize is the justification of the size as far as it was computed. Replicates, units,
+// animals, error df and power are those of the plan as it stands; Power and Difference are
+// of the term or contrast that the size was chosen for.
 type SampleSize struct {
 	Basis      string       `json:"basis"`
 	Response   string       `json:"response,omitempty"`
@@ -257,6 +259,94 @@ type SampleSize struct {
 	Power      Number       `json:"power"`
 	Difference Number       `json:"difference"`
 	Curve      []PowerPoint `json:"curve"`
+
+	Term     string `json:"term,omitempty"`
+	Contrast string `json:"contrast,omitempty"`
+	// Method is "noncentral F", "noncentral t", "two one-sided t", "half width" or "error df".
+	Method string `json:"method,omitempty"`
+	Alpha  Number `json:"alpha"`
+	Sides  int    `json:"sides,omitempty"`
+	Wished Number `json:"wished_power"`
+	Margin Number `json:"margin"`
+	// Scale of difference, SD, margin and half width: "unit" of the response, "percent" of
+	// the mean, "log" or, where no SD is stated, "sd".
+	Scale      string `json:"scale,omitempty"`
+	SD         Number `json:"sd"`         // of one experimental unit in the term's stratum
+	Efficiency Number `json:"efficiency"` // of the layout for the term: 1 where nothing is lost
+	Bound      bool   `json:"efficiency_is_bound,omitempty"`
+	SED        Number `json:"sed"` // of the difference, or of the contrast
+	// Detectable is the difference (for equivalence the margin) that reaches the wished power.
+	Detectable Number `json:"detectable"`
+	HalfWidth  Number `json:"half_width"`
+	WishedHalf Number `json:"wished_half_width"`
+	Attrition  Number `json:"attrition"`
+
+	Grows        *Grows            `json:"grows"`  // what more replication means in this layout
+	Needed       *Needed           `json:"needed"` // nil: not known, or not reached
+	WithLosses   *Needed           `json:"needed_with_losses"`
+	ErrorDFRule  *Needed           `json:"error_df_rule"` // smallest replication that leaves the wished error df
+	ByDifference []DifferencePower `json:"by_difference"`
+	BySD         []SDPower         `json:"by_sd"`
+	Groups       []GroupPower      `json:"groups"`
+	Terms        []TermPower       `json:"terms"`
+	Notes        []Note            `json:"notes"`
+}
+
+// Grows names the unit whose number grows with replication and how many there are; Step
+// is by how many it grows so that treatments stay as equally replicated as they are.
+type Grows struct {
+	Unit  string `json:"unit"`
+	Count int    `json:"count"`
+	Step  int    `json:"step"`
+}
+
+// Needed is a replication with what it means in units, and what it gives.
+type Needed struct {
+	Replicates int    `json:"replicates"`
+	Count      int    `json:"count"` // of the unit that grows
+	Units      int    `json:"units"`
+	Animals    int    `json:"animals,omitempty"`
+	ErrorDF    int    `json:"error_df"`
+	Power      Number `json:"power"`
+	HalfWidth  Number `json:"half_width"`
+}
+
+// DifferencePower is the power for a difference, in multiples of the stated one.
+type DifferencePower struct {
+	Difference Number `json:"difference"`
+	Power      Number `json:"power"`
+}
+
+// SDPower is the power, and the replication that is needed, at another SD. Replicates is 0
+// where the wished power is not reached.
+type SDPower struct {
+	SD         Number `json:"sd"`
+	Power      Number `json:"power"`
+	Replicates int    `json:"replicates"`
+}
+
+// GroupPower is the power with other numbers of replicates and of animals in a unit.
+type GroupPower struct {
+	Replicates int    `json:"replicates"`
+	PerUnit    Number `json:"animals_per_unit"` // null: as many as could ever be
+	Animals    int    `json:"animals,omitempty"`
+	SD         Number `json:"sd"`
+	Power      Number `json:"power"`
+	HalfWidth  Number `json:"half_width"`
+}
+
+// TermPower is what the plan gives for a treatment term. DetectableSD is in SDs of the
+// term's experimental unit.
+type TermPower struct {
+	Term         string `json:"term"`
+	Unit         string `json:"unit"`
+	Replicates   int    `json:"replicates"`
+	DF           int    `json:"df"`
+	ErrorDF      *int   `json:"error_df"`
+	SD           Number `json:"sd"`
+	Efficiency   Number `json:"efficiency"`
+	Detectable   Number `json:"detectable"`
+	DetectableSD Number `json:"detectable_sd"`
 }
 
 // PowerPoint is a point of a power curve.
@@ -264,6 +354,8 @@ type PowerPoint struct {
 	Replicates int    `json:"replicates"`
 	ErrorDF    int    `json:"error_df"`
 	Power      Number `json:"power"`
+	Count      int    `json:"count,omitempty"` // of the unit that grows
+	HalfWidth  Number `json:"half_width"`
 }
 
 // Response is the analysis of one response.
@@ -482,6 +574,14 @@ func (r *Results) Write(w io.Writer) error {
 	e.SetEscapeHTML(false)
 	e.SetIndent("", " ")
 	return e.Encode(r)
+}
+
+// WriteSize writes the part of the results on the number of units, as Write does.
+func WriteSize(w io.Writer, s *SampleSize) error {
+	e := json.NewEncoder(w)
+	e.SetEscapeHTML(false)
+	e.SetIndent("", " ")
+	return e.Encode(s)
 }
 
 // Read reads a results file of format 1 of any program version; unknown keys are
