@@ -30,8 +30,8 @@ title = "A trial"
 objective = "To test the draw."
 `
 
-// factor writes a factor of n levels a1, a2, …
-func factor(name string, n int) string {
+// factorText writes a factor of n levels a1, a2, …
+func factorText(name string, n int) string {
 	levels := make([]string, n)
 	for i := range levels {
 		levels[i] = fmt.Sprintf("%q", fmt.Sprintf("%s%d", name, i+1))
@@ -58,25 +58,25 @@ func file(name, text string) folder.File {
 
 // designs that are drawn.
 var designs = []struct{ name, text string }{
-	{"completely randomized", factor("a", 4) + "[[unit]]\nname = \"pen\"\ncount = 16\nreceives = [\"a\"]\n"},
-	{"unequal replication", factor("a", 3) + "[[unit]]\nname = \"pen\"\ncount = 16\nreceives = [\"a\"]\nreplicates = { a1 = 8, a2 = 4, a3 = 4 }\n"},
-	{"no multiple", factor("a", 3) + "control = \"a2\"\n[[unit]]\nname = \"pen\"\ncount = 10\nreceives = [\"a\"]\n"},
-	{"randomized block", factor("a", 4) + "[[unit]]\nname = \"block\"\ncount = 5\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 4\nnumbered = \"through\"\nreceives = [\"a\"]\n"},
-	{"generalized block", factor("a", 3) + "[[unit]]\nname = \"block\"\ncount = [2]\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 6\nreceives = [\"a\"]\n"},
-	{"doubled control", factor("a", 3) + "control = \"a1\"\n[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 4\nreceives = [\"a\"]\nreplicates = { a1 = 2 }\n"},
-	{"factorial", factor("a", 2) + factor("b", 3) + "[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 6\nreceives = [\"a\", \"b\"]\n"},
-	{"latin square", factor("a", 4) + "[[unit]]\nname = \"cow\"\ncount = 4\n[[unit]]\nname = \"period\"\ncount = 4\n[[unit]]\nname = \"sample\"\ncrosses = [\"cow\", \"period\"]\nreceives = [\"a\"]\n"},
-	{"latin square of a factorial", factor("a", 2) + factor("b", 3) + "[[unit]]\nname = \"row\"\ncount = 6\n[[unit]]\nname = \"column\"\ncount = 6\n[[unit]]\nname = \"plot\"\ncrosses = [\"row\", \"column\"]\nreceives = [\"a\", \"b\"]\n"},
-	{"replicated squares", factor("a", 3) + "[[unit]]\nname = \"square\"\ncount = 2\n[[unit]]\nname = \"cow\"\nwithin = \"square\"\ncount = 3\n[[unit]]\nname = \"period\"\nwithin = \"square\"\ncount = 3\n[[unit]]\nname = \"sample\"\ncrosses = [\"cow\", \"period\"]\nreceives = [\"a\"]\n"},
-	{"squares with common periods", factor("a", 3) + "[[unit]]\nname = \"square\"\ncount = 2\n[[unit]]\nname = \"cow\"\nwithin = \"square\"\ncount = 3\n[[unit]]\nname = \"period\"\ncount = 3\n[[unit]]\nname = \"sample\"\ncrosses = [\"cow\", \"period\"]\nreceives = [\"a\"]\n"},
-	{"eight cows in four periods", factor("a", 4) + "[[unit]]\nname = \"cow\"\ncount = 8\n[[unit]]\nname = \"period\"\ncount = 4\n[[unit]]\nname = \"sample\"\ncrosses = [\"cow\", \"period\"]\nreceives = [\"a\"]\n"},
-	{"split plot", factor("a", 3) + factor("b", 4) + "[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"plot\"\nwithin = \"block\"\ncount = 3\nreceives = [\"a\"]\n[[unit]]\nname = \"subplot\"\nwithin = \"plot\"\ncount = 4\nreceives = [\"b\"]\n"},
-	{"split-split plot", factor("a", 2) + factor("b", 2) + factor("c", 3) + "[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"plot\"\nwithin = \"block\"\ncount = 2\nreceives = [\"a\"]\n[[unit]]\nname = \"subplot\"\nwithin = \"plot\"\ncount = 2\nreceives = [\"b\"]\n[[unit]]\nname = \"bed\"\nwithin = \"subplot\"\ncount = 3\nreceives = [\"c\"]\n"},
-	{"split plot in a latin square", factor("a", 3) + factor("b", 2) + "[[unit]]\nname = \"row\"\ncount = 3\n[[unit]]\nname = \"column\"\ncount = 3\n[[unit]]\nname = \"plot\"\ncrosses = [\"row\", \"column\"]\nreceives = [\"a\"]\n[[unit]]\nname = \"subplot\"\nwithin = \"plot\"\ncount = 2\nreceives = [\"b\"]\n"},
-	{"strip plot", factor("a", 3) + factor("b", 2) + "[[unit]]\nname = \"block\"\ncount = 4\n[[unit]]\nname = \"strip\"\nwithin = \"block\"\ncount = 3\nreceives = [\"a\"]\n[[unit]]\nname = \"lane\"\nwithin = \"block\"\ncount = 2\nreceives = [\"b\"]\n[[unit]]\nname = \"cell\"\ncrosses = [\"strip\", \"lane\"]\n"},
-	{"sampling", factor("a", 2) + "[[unit]]\nname = \"pen\"\ncount = 6\nreceives = [\"a\"]\n[[unit]]\nname = \"animal\"\nwithin = \"pen\"\ncount = 3\n"},
-	{"listed", factor("dose", 2) + "[[treatment]]\ncode = \"none\"\nlevels = {}\ncontrol = true\n[[treatment]]\ncode = \"low\"\nlevels = { dose = \"dose1\" }\n[[treatment]]\ncode = \"high\"\nlevels = { dose = \"dose2\" }\n[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 3\nreceives = [\"treatment\"]\n"},
-	{"codes", factor("a", 2) + "[randomization]\ncodes = true\n[[unit]]\nname = \"pen\"\ncount = 8\nreceives = [\"a\"]\n"},
+	{"completely randomized", factorText("a", 4) + "[[unit]]\nname = \"pen\"\ncount = 16\nreceives = [\"a\"]\n"},
+	{"unequal replication", factorText("a", 3) + "[[unit]]\nname = \"pen\"\ncount = 16\nreceives = [\"a\"]\nreplicates = { a1 = 8, a2 = 4, a3 = 4 }\n"},
+	{"no multiple", factorText("a", 3) + "control = \"a2\"\n[[unit]]\nname = \"pen\"\ncount = 10\nreceives = [\"a\"]\n"},
+	{"randomized block", factorText("a", 4) + "[[unit]]\nname = \"block\"\ncount = 5\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 4\nnumbered = \"through\"\nreceives = [\"a\"]\n"},
+	{"generalized block", factorText("a", 3) + "[[unit]]\nname = \"block\"\ncount = [2]\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 6\nreceives = [\"a\"]\n"},
+	{"doubled control", factorText("a", 3) + "control = \"a1\"\n[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 4\nreceives = [\"a\"]\nreplicates = { a1 = 2 }\n"},
+	{"factorial", factorText("a", 2) + factorText("b", 3) + "[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 6\nreceives = [\"a\", \"b\"]\n"},
+	{"latin square", factorText("a", 4) + "[[unit]]\nname = \"cow\"\ncount = 4\n[[unit]]\nname = \"period\"\ncount = 4\n[[unit]]\nname = \"sample\"\ncrosses = [\"cow\", \"period\"]\nreceives = [\"a\"]\n"},
+	{"latin square of a factorial", factorText("a", 2) + factorText("b", 3) + "[[unit]]\nname = \"row\"\ncount = 6\n[[unit]]\nname = \"column\"\ncount = 6\n[[unit]]\nname = \"plot\"\ncrosses = [\"row\", \"column\"]\nreceives = [\"a\", \"b\"]\n"},
+	{"replicated squares", factorText("a", 3) + "[[unit]]\nname = \"square\"\ncount = 2\n[[unit]]\nname = \"cow\"\nwithin = \"square\"\ncount = 3\n[[unit]]\nname = \"period\"\nwithin = \"square\"\ncount = 3\n[[unit]]\nname = \"sample\"\ncrosses = [\"cow\", \"period\"]\nreceives = [\"a\"]\n"},
+	{"squares with common periods", factorText("a", 3) + "[[unit]]\nname = \"square\"\ncount = 2\n[[unit]]\nname = \"cow\"\nwithin = \"square\"\ncount = 3\n[[unit]]\nname = \"period\"\ncount = 3\n[[unit]]\nname = \"sample\"\ncrosses = [\"cow\", \"period\"]\nreceives = [\"a\"]\n"},
+	{"eight cows in four periods", factorText("a", 4) + "[[unit]]\nname = \"cow\"\ncount = 8\n[[unit]]\nname = \"period\"\ncount = 4\n[[unit]]\nname = \"sample\"\ncrosses = [\"cow\", \"period\"]\nreceives = [\"a\"]\n"},
+	{"split plot", factorText("a", 3) + factorText("b", 4) + "[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"plot\"\nwithin = \"block\"\ncount = 3\nreceives = [\"a\"]\n[[unit]]\nname = \"subplot\"\nwithin = \"plot\"\ncount = 4\nreceives = [\"b\"]\n"},
+	{"split-split plot", factorText("a", 2) + factorText("b", 2) + factorText("c", 3) + "[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"plot\"\nwithin = \"block\"\ncount = 2\nreceives = [\"a\"]\n[[unit]]\nname = \"subplot\"\nwithin = \"plot\"\ncount = 2\nreceives = [\"b\"]\n[[unit]]\nname = \"bed\"\nwithin = \"subplot\"\ncount = 3\nreceives = [\"c\"]\n"},
+	{"split plot in a latin square", factorText("a", 3) + factorText("b", 2) + "[[unit]]\nname = \"row\"\ncount = 3\n[[unit]]\nname = \"column\"\ncount = 3\n[[unit]]\nname = \"plot\"\ncrosses = [\"row\", \"column\"]\nreceives = [\"a\"]\n[[unit]]\nname = \"subplot\"\nwithin = \"plot\"\ncount = 2\nreceives = [\"b\"]\n"},
+	{"strip plot", factorText("a", 3) + factorText("b", 2) + "[[unit]]\nname = \"block\"\ncount = 4\n[[unit]]\nname = \"strip\"\nwithin = \"block\"\ncount = 3\nreceives = [\"a\"]\n[[unit]]\nname = \"lane\"\nwithin = \"block\"\ncount = 2\nreceives = [\"b\"]\n[[unit]]\nname = \"cell\"\ncrosses = [\"strip\", \"lane\"]\n"},
+	{"sampling", factorText("a", 2) + "[[unit]]\nname = \"pen\"\ncount = 6\nreceives = [\"a\"]\n[[unit]]\nname = \"animal\"\nwithin = \"pen\"\ncount = 3\n"},
+	{"listed", factorText("dose", 2) + "[[treatment]]\ncode = \"none\"\nlevels = {}\ncontrol = true\n[[treatment]]\ncode = \"low\"\nlevels = { dose = \"dose1\" }\n[[treatment]]\ncode = \"high\"\nlevels = { dose = \"dose2\" }\n[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 3\nreceives = [\"treatment\"]\n"},
+	{"codes", factorText("a", 2) + "[randomization]\ncodes = true\n[[unit]]\nname = \"pen\"\ncount = 8\nreceives = [\"a\"]\n"},
 }
 
 // TestGolden pins what the seed text gives: a change of it would make every record
@@ -148,14 +148,14 @@ func TestUniform(t *testing.T) {
 		name, text string
 		allotments int
 	}{
-		{"three of each of two on six", factor("a", 2) + "[[unit]]\nname = \"pen\"\ncount = 6\nreceives = [\"a\"]\n", 20},                                                                                                                                                                                                               // C(6,3)
-		{"two, one, one on four", factor("a", 3) + "[[unit]]\nname = \"pen\"\ncount = 4\nreceives = [\"a\"]\nreplicates = { a1 = 2 }\n", 12},                                                                                                                                                                                            // 4!/2!
-		{"three in two blocks", factor("a", 3) + "[[unit]]\nname = \"block\"\ncount = 2\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 3\nreceives = [\"a\"]\n", 36},                                                                                                                                                            // 3!²
-		{"square of three", factor("a", 3) + "[[unit]]\nname = \"row\"\ncount = 3\n[[unit]]\nname = \"column\"\ncount = 3\n[[unit]]\nname = \"plot\"\ncrosses = [\"row\", \"column\"]\nreceives = [\"a\"]\n", 12},                                                                                                                       // 3!·2!
-		{"square of four", factor("a", 4) + "[[unit]]\nname = \"row\"\ncount = 4\n[[unit]]\nname = \"column\"\ncount = 4\n[[unit]]\nname = \"plot\"\ncrosses = [\"row\", \"column\"]\nreceives = [\"a\"]\n", 576},                                                                                                                       // OEIS A002860
-		{"strips and lanes", factor("a", 3) + factor("b", 2) + "[[unit]]\nname = \"block\"\ncount = 2\n[[unit]]\nname = \"strip\"\nwithin = \"block\"\ncount = 3\nreceives = [\"a\"]\n[[unit]]\nname = \"lane\"\nwithin = \"block\"\ncount = 2\nreceives = [\"b\"]\n[[unit]]\nname = \"cell\"\ncrosses = [\"strip\", \"lane\"]\n", 144}, // (3!·2!)²
-		{"split plot", factor("a", 2) + factor("b", 2) + "[[unit]]\nname = \"block\"\ncount = 2\n[[unit]]\nname = \"plot\"\nwithin = \"block\"\ncount = 2\nreceives = [\"a\"]\n[[unit]]\nname = \"subplot\"\nwithin = \"plot\"\ncount = 2\nreceives = [\"b\"]\n", 64},                                                                   // 2!²·2!⁴
-		{"two squares' worth of rows", factor("a", 2) + "[[unit]]\nname = \"row\"\ncount = 4\n[[unit]]\nname = \"column\"\ncount = 2\n[[unit]]\nname = \"plot\"\ncrosses = [\"row\", \"column\"]\nreceives = [\"a\"]\n", 6},                                                                                                             // C(4,2): rows are 12 or 21, two of each
+		{"three of each of two on six", factorText("a", 2) + "[[unit]]\nname = \"pen\"\ncount = 6\nreceives = [\"a\"]\n", 20},                                                                                                                                                                                                               // C(6,3)
+		{"two, one, one on four", factorText("a", 3) + "[[unit]]\nname = \"pen\"\ncount = 4\nreceives = [\"a\"]\nreplicates = { a1 = 2 }\n", 12},                                                                                                                                                                                            // 4!/2!
+		{"three in two blocks", factorText("a", 3) + "[[unit]]\nname = \"block\"\ncount = 2\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 3\nreceives = [\"a\"]\n", 36},                                                                                                                                                            // 3!²
+		{"square of three", factorText("a", 3) + "[[unit]]\nname = \"row\"\ncount = 3\n[[unit]]\nname = \"column\"\ncount = 3\n[[unit]]\nname = \"plot\"\ncrosses = [\"row\", \"column\"]\nreceives = [\"a\"]\n", 12},                                                                                                                       // 3!·2!
+		{"square of four", factorText("a", 4) + "[[unit]]\nname = \"row\"\ncount = 4\n[[unit]]\nname = \"column\"\ncount = 4\n[[unit]]\nname = \"plot\"\ncrosses = [\"row\", \"column\"]\nreceives = [\"a\"]\n", 576},                                                                                                                       // OEIS A002860
+		{"strips and lanes", factorText("a", 3) + factorText("b", 2) + "[[unit]]\nname = \"block\"\ncount = 2\n[[unit]]\nname = \"strip\"\nwithin = \"block\"\ncount = 3\nreceives = [\"a\"]\n[[unit]]\nname = \"lane\"\nwithin = \"block\"\ncount = 2\nreceives = [\"b\"]\n[[unit]]\nname = \"cell\"\ncrosses = [\"strip\", \"lane\"]\n", 144}, // (3!·2!)²
+		{"split plot", factorText("a", 2) + factorText("b", 2) + "[[unit]]\nname = \"block\"\ncount = 2\n[[unit]]\nname = \"plot\"\nwithin = \"block\"\ncount = 2\nreceives = [\"a\"]\n[[unit]]\nname = \"subplot\"\nwithin = \"plot\"\ncount = 2\nreceives = [\"b\"]\n", 64},                                                                   // 2!²·2!⁴
+		{"two squares' worth of rows", factorText("a", 2) + "[[unit]]\nname = \"row\"\ncount = 4\n[[unit]]\nname = \"column\"\ncount = 2\n[[unit]]\nname = \"plot\"\ncrosses = [\"row\", \"column\"]\nreceives = [\"a\"]\n", 6},                                                                                                             // C(4,2): rows are 12 or 21, two of each
 	} {
 		plan := planOf(t, test.text)
 		n := 40 * test.allotments
@@ -187,7 +187,7 @@ const woodman = "[[unit]]\nname = \"pen\"\ncount = 3\n[[unit]]\nname = \"pig\"\n
 
 // TestCarried: within each sex of each pen the diets are as equal as its number allows.
 func TestCarried(t *testing.T) {
-	plan := planOf(t, factor("diet", 3)+"[[factor]]\nname = \"sex\"\nlevels = [\"F\", \"M\"]\n"+woodman)
+	plan := planOf(t, factorText("diet", 3)+"[[factor]]\nname = \"sex\"\nlevels = [\"F\", \"M\"]\n"+woodman)
 	var roster strings.Builder
 	roster.WriteString("pen,pig,sex\n")
 	for pen := range 3 {
@@ -241,11 +241,11 @@ func TestCarried(t *testing.T) {
 func TestNotDrawn(t *testing.T) {
 	square := "[[unit]]\nname = \"cow\"\ncount = %d\n[[unit]]\nname = \"period\"\ncount = %d\n[[unit]]\nname = \"sample\"\ncrosses = [\"cow\", \"period\"]\nreceives = [%s]\n"
 	for _, test := range []struct{ name, text, want string }{
-		{"incomplete block", factor("a", 7) + "[[unit]]\nname = \"block\"\ncount = 7\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 3\nreceives = [\"a\"]\n", "incomplete block"},
-		{"rows and columns", factor("a", 4) + fmt.Sprintf(square, 4, 7, `"a"`), "4 rows (cow) by 7 columns (period)"},
-		{"graeco-latin", factor("a", 4) + factor("b", 4) + fmt.Sprintf(square, 4, 4, `"a", "b"`), "Graeco-Latin"},
-		{"blocks by the roster", factor("a", 2) + "[roster]\nfile = \"roster.csv\"\nblock_by = \"mass\"\n[[unit]]\nname = \"block\"\ncount = 2\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 2\nreceives = [\"a\"]\n", "mass"},
-		{"candidates", factor("a", 2) + "[randomization]\nbalance_on = [\"mass\"]\ncandidates = 10\n[[covariate]]\nname = \"mass\"\n[roster]\nfile = \"roster.csv\"\n[[unit]]\nname = \"pen\"\ncount = 4\nreceives = [\"a\"]\n", "candidates"},
+		{"incomplete block", factorText("a", 7) + "[[unit]]\nname = \"block\"\ncount = 7\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 3\nreceives = [\"a\"]\n", "incomplete block"},
+		{"rows and columns", factorText("a", 4) + fmt.Sprintf(square, 4, 7, `"a"`), "4 rows (cow) by 7 columns (period)"},
+		{"graeco-latin", factorText("a", 4) + factorText("b", 4) + fmt.Sprintf(square, 4, 4, `"a", "b"`), "Graeco-Latin"},
+		{"blocks by the roster", factorText("a", 2) + "[roster]\nfile = \"roster.csv\"\nblock_by = \"mass\"\n[[unit]]\nname = \"block\"\ncount = 2\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 2\nreceives = [\"a\"]\n", "mass"},
+		{"candidates", factorText("a", 2) + "[randomization]\nbalance_on = [\"mass\"]\ncandidates = 10\n[[covariate]]\nname = \"mass\"\n[roster]\nfile = \"roster.csv\"\n[[unit]]\nname = \"pen\"\ncount = 4\nreceives = [\"a\"]\n", "candidates"},
 	} {
 		a, list := New(planOf(t, test.text), nil, "x")
 		if a != nil || len(list) == 0 {
@@ -261,7 +261,7 @@ func TestNotDrawn(t *testing.T) {
 
 // BenchmarkDraw: a randomized block of four treatments in six blocks.
 func BenchmarkDraw(b *testing.B) {
-	plan := planOf(b, factor("a", 4)+"[[unit]]\nname = \"block\"\ncount = 6\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 4\nreceives = [\"a\"]\n")
+	plan := planOf(b, factorText("a", 4)+"[[unit]]\nname = \"block\"\ncount = 6\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 4\nreceives = [\"a\"]\n")
 	s, list := newScheme(plan, nil)
 	if list.HasErrors() {
 		b.Fatal(list)
@@ -331,17 +331,17 @@ func TestCheck(t *testing.T) {
 		levels     []int32
 		want       []string
 	}{
-		{"a square", factor("a", 3) + square, []int32{0, 1, 2, 1, 2, 0, 2, 0, 1}, nil},
-		{"not a square", factor("a", 3) + square, []int32{0, 1, 2, 0, 1, 2, 1, 2, 0}, []string{
+		{"a square", factorText("a", 3) + square, []int32{0, 1, 2, 1, 2, 0, 2, 0, 1}, nil},
+		{"not a square", factorText("a", 3) + square, []int32{0, 1, 2, 0, 1, 2, 1, 2, 0}, []string{
 			"a a1 stands twice in column 1", "a a2 stands twice in column 2", "a a3 stands twice in column 3",
 			"a a3 stands nowhere in column 1", "a a1 stands nowhere in column 2", "a a2 stands nowhere in column 3"}},
-		{"blocks", factor("a", 3) + rcb, []int32{0, 1, 2, 2, 1, 0}, nil},
-		{"a block with one twice", factor("a", 3) + rcb, []int32{0, 0, 2, 2, 1, 1}, []string{
+		{"blocks", factorText("a", 3) + rcb, []int32{0, 1, 2, 2, 1, 0}, nil},
+		{"a block with one twice", factorText("a", 3) + rcb, []int32{0, 0, 2, 2, 1, 1}, []string{
 			"a a1 stands twice in block 1", "a a2 stands nowhere in block 1", "a a1 stands nowhere in block 2", "a a2 stands twice in block 2"}},
-		{"other replicates", factor("a", 3) + "[[unit]]\nname = \"pen\"\ncount = 5\nreceives = [\"a\"]\nreplicates = { a1 = 3, a2 = 1, a3 = 1 }\n", []int32{0, 0, 1, 1, 2}, []string{
+		{"other replicates", factorText("a", 3) + "[[unit]]\nname = \"pen\"\ncount = 5\nreceives = [\"a\"]\nreplicates = { a1 = 3, a2 = 1, a3 = 1 }\n", []int32{0, 0, 1, 1, 2}, []string{
 			"a a1 stands on 2 of unit pen, 3 are planned", "a a2 stands on 2 of unit pen, 1 are planned"}},
-		{"incomplete blocks", factor("a", 3) + "[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 2\nreceives = [\"a\"]\n", []int32{0, 1, 1, 2, 2, 0}, nil},
-		{"incomplete blocks with one twice", factor("a", 3) + "[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 2\nreceives = [\"a\"]\n", []int32{0, 0, 1, 2, 2, 1}, []string{"a a1 stands twice in block 1"}},
+		{"incomplete blocks", factorText("a", 3) + "[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 2\nreceives = [\"a\"]\n", []int32{0, 1, 1, 2, 2, 0}, nil},
+		{"incomplete blocks with one twice", factorText("a", 3) + "[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 2\nreceives = [\"a\"]\n", []int32{0, 0, 1, 2, 2, 1}, []string{"a a1 stands twice in block 1"}},
 	} {
 		a := &Allotment{Plan: planOf(t, test.text), Levels: [][]int32{test.levels}}
 		var got []string
@@ -368,7 +368,7 @@ func TestRandomStructures(t *testing.T) {
 		var text strings.Builder
 		factors := 1 + g.Below(3)
 		for f := range factors {
-			text.WriteString(factor(string(rune('a'+f)), 2+g.Below(3)))
+			text.WriteString(factorText(string(rune('a'+f)), 2+g.Below(3)))
 		}
 		names := []string{}
 		next := 0

@@ -16,7 +16,7 @@ const blocks = "[[unit]]\nname = \"block\"\ncount = 2\n[[unit]]\nname = \"pen\"\
 
 // TestRecord draws twice into a folder and reads the record back.
 func TestRecord(t *testing.T) {
-	plan := planOf(t, factor("diet", 2)+"[randomization]\ncodes = true\n"+blocks)
+	plan := planOf(t, factorText("diet", 2)+"[randomization]\ncodes = true\n"+blocks)
 	dir := t.TempDir()
 	open := func() *folder.Folder {
 		f, err := folder.Open(dir)
@@ -97,7 +97,7 @@ func TestRecord(t *testing.T) {
 
 // TestReadRefuses: allotments brought along, and what is said of them.
 func TestReadRefuses(t *testing.T) {
-	plan := planOf(t, factor("diet", 2)+"[randomization]\nmethod = \"by lot\"\n"+blocks)
+	plan := planOf(t, factorText("diet", 2)+"[randomization]\nmethod = \"by lot\"\n"+blocks)
 	const good = "block,pen,diet\n1,1,diet1\n1,2,diet2\n2,1,diet2\n2,2,diet1\n"
 	for _, test := range []struct{ name, csv, toml, want string }{
 		{"good", good, "", ""},
@@ -141,7 +141,7 @@ func TestReadRefuses(t *testing.T) {
 // TestLevelAt: a whole plot's level holds for its subplots, and a listed treatment tells
 // the levels it is made of.
 func TestLevelAt(t *testing.T) {
-	plan := planOf(t, factor("a", 2)+factor("b", 2)+"[[unit]]\nname = \"plot\"\ncount = 2\nreceives = [\"a\"]\n[[unit]]\nname = \"subplot\"\nwithin = \"plot\"\ncount = 2\nreceives = [\"b\"]\n")
+	plan := planOf(t, factorText("a", 2)+factorText("b", 2)+"[[unit]]\nname = \"plot\"\ncount = 2\nreceives = [\"a\"]\n[[unit]]\nname = \"subplot\"\nwithin = \"plot\"\ncount = 2\nreceives = [\"b\"]\n")
 	a := &Allotment{Plan: plan, Levels: [][]int32{{1, 0}, {0, 1, 1, 0}}}
 	if got := a.LevelAt(0, 1); !slices.Equal(got, []int32{1, 1, 0, 0}) {
 		t.Errorf("a at subplots: %v", got)
@@ -149,7 +149,7 @@ func TestLevelAt(t *testing.T) {
 	if got := a.LevelAt(1, 0); got != nil {
 		t.Errorf("b at plots: %v", got)
 	}
-	plan = planOf(t, factor("dose", 2)+"[[treatment]]\ncode = \"none\"\nlevels = {}\n[[treatment]]\ncode = \"two\"\nlevels = { dose = \"dose2\" }\n[[treatment]]\ncode = \"one\"\nlevels = { dose = \"dose1\" }\n[[unit]]\nname = \"pen\"\ncount = 3\nreceives = [\"treatment\"]\n")
+	plan = planOf(t, factorText("dose", 2)+"[[treatment]]\ncode = \"none\"\nlevels = {}\n[[treatment]]\ncode = \"two\"\nlevels = { dose = \"dose2\" }\n[[treatment]]\ncode = \"one\"\nlevels = { dose = \"dose1\" }\n[[unit]]\nname = \"pen\"\ncount = 3\nreceives = [\"treatment\"]\n")
 	a = &Allotment{Plan: plan, Levels: [][]int32{{0, 1, 2}, nil}}
 	if got := a.LevelAt(1, 0); !slices.Equal(got, []int32{-1, 1, 0}) {
 		t.Errorf("dose at pens: %v", got)
@@ -159,7 +159,7 @@ func TestLevelAt(t *testing.T) {
 // FuzzRecord reads any allotment.csv and allotment.toml: no panic, and what is accepted
 // without a word is written and read back the same.
 func FuzzRecord(f *testing.F) {
-	plan := planOf(f, factor("diet", 2)+"[randomization]\nmethod = \"by lot\"\n"+blocks)
+	plan := planOf(f, factorText("diet", 2)+"[randomization]\nmethod = \"by lot\"\n"+blocks)
 	f.Add([]byte("block,pen,order,code,diet\n1,1,1,K1,diet1\n1,2,2,K2,diet2\n2,1,3,K3,diet2\n2,2,4,K4,diet1\n"), []byte(""))
 	f.Add([]byte("block;pen;diet\n1;1;diet1\n"), []byte("[[draw]]\nnumber = 1\non = 2026-02-20\nallotment = \"x\"\n"))
 	f.Fuzz(func(t *testing.T, csv, toml []byte) {

@@ -142,16 +142,16 @@ func TestCrossoversAreBalanced(t *testing.T) {
 		treatments, period int
 		self               bool // treatments follow themselves as well
 	}{
-		{"four on four", factor("a", 4) + cows(4, 4) + carried, 4, 4, false},
-		{"four on twelve", factor("a", 4) + cows(12, 4) + carried, 4, 4, false},
-		{"five on ten", factor("a", 5) + cows(10, 5) + carried, 5, 5, false},
-		{"three, two squares of three", factor("a", 3) + squares(2, 3, 3) + carried, 3, 3, false},
-		{"three, four squares of nine", factor("a", 3) + squares(4, 9, 3) + carried, 3, 3, false},
-		{"four, three squares", factor("a", 4) + squares(3, 4, 4) + carried, 4, 4, false},
-		{"an extra period", factor("a", 3) + cows(6, 4) + carried, 3, 4, true},
-		{"two over four", factor("a", 2) + cows(8, 4) + carried, 2, 4, true},
-		{"four over three", factor("a", 4) + cows(12, 3) + carried, 4, 3, false},
-		{"factorial", factor("a", 2) + factor("b", 2) + strings.Replace(cows(4, 4), `["a"]`, `["a", "b"]`, 1) + carried, 4, 4, false},
+		{"four on four", factorText("a", 4) + cows(4, 4) + carried, 4, 4, false},
+		{"four on twelve", factorText("a", 4) + cows(12, 4) + carried, 4, 4, false},
+		{"five on ten", factorText("a", 5) + cows(10, 5) + carried, 5, 5, false},
+		{"three, two squares of three", factorText("a", 3) + squares(2, 3, 3) + carried, 3, 3, false},
+		{"three, four squares of nine", factorText("a", 3) + squares(4, 9, 3) + carried, 3, 3, false},
+		{"four, three squares", factorText("a", 4) + squares(3, 4, 4) + carried, 4, 4, false},
+		{"an extra period", factorText("a", 3) + cows(6, 4) + carried, 3, 4, true},
+		{"two over four", factorText("a", 2) + cows(8, 4) + carried, 2, 4, true},
+		{"four over three", factorText("a", 4) + cows(12, 3) + carried, 4, 3, false},
+		{"factorial", factorText("a", 2) + factorText("b", 2) + strings.Replace(cows(4, 4), `["a"]`, `["a", "b"]`, 1) + carried, 4, 4, false},
 	} {
 		plan := planOf(t, test.text)
 		all, list := Draws(plan, nil, "x", 40)
@@ -199,7 +199,7 @@ func TestCrossoversAreBalanced(t *testing.T) {
 // equally often. Of four treatments there are three cyclic orders, and of names that
 // give the same set of sequences 8, so that 4!·4!/8 allotments are met.
 func TestSequencesUniform(t *testing.T) {
-	plan := planOf(t, factor("a", 4)+cows(4, 4)+carried)
+	plan := planOf(t, factorText("a", 4)+cows(4, 4)+carried)
 	all, list := Draws(plan, nil, "sequences", 5000)
 	if list.HasErrors() {
 		t.Fatal(list)
@@ -224,7 +224,7 @@ func TestSequencesUniform(t *testing.T) {
 		uniform(t, "treatment of a sample", cell[4*i:4*i+4])
 	}
 	// Two given sequences on six cows: 6!/(3!·3!) allotments.
-	plan = planOf(t, factor("a", 2)+cows(6, 3)+carried+"sequences = [[\"a1\", \"a2\", \"a2\"], [\"a2\", \"a1\", \"a1\"]]\n")
+	plan = planOf(t, factorText("a", 2)+cows(6, 3)+carried+"sequences = [[\"a1\", \"a2\", \"a2\"], [\"a2\", \"a1\", \"a1\"]]\n")
 	if all, list = Draws(plan, nil, "given", 800); list.HasErrors() {
 		t.Fatal(list)
 	}
@@ -250,10 +250,10 @@ func TestGivenSequences(t *testing.T) {
 		name, text string
 		want       []string // what rows go through, without those of the other names
 	}{
-		{"reversal", factor("a", 2) + cows(4, 3) + trend, []string{"[0 1 0]", "[0 1 0]", "[1 0 1]", "[1 0 1]"}},
-		{"reversal of three", factor("a", 3) + cows(6, 3) + trend, []string{"[0 1 0]", "[0 2 0]", "[1 0 1]", "[1 2 1]", "[2 0 2]", "[2 1 2]"}},
-		{"given", factor("a", 3) + cows(3, 3) + trend + "sequences = [[\"a1\", \"a2\", \"a1\"], [\"a1\", \"a3\", \"a1\"], [\"a2\", \"a3\", \"a2\"]]\n", []string{"[0 1 0]", "[0 2 0]", "[1 2 1]"}},
-		{"given, doubled", factor("a", 2) + cows(4, 2) + carried + "sequences = [[\"a1\", \"a2\"], [\"a2\", \"a1\"]]\n", []string{"[0 1]", "[0 1]", "[1 0]", "[1 0]"}},
+		{"reversal", factorText("a", 2) + cows(4, 3) + trend, []string{"[0 1 0]", "[0 1 0]", "[1 0 1]", "[1 0 1]"}},
+		{"reversal of three", factorText("a", 3) + cows(6, 3) + trend, []string{"[0 1 0]", "[0 2 0]", "[1 0 1]", "[1 2 1]", "[2 0 2]", "[2 1 2]"}},
+		{"given", factorText("a", 3) + cows(3, 3) + trend + "sequences = [[\"a1\", \"a2\", \"a1\"], [\"a1\", \"a3\", \"a1\"], [\"a2\", \"a3\", \"a2\"]]\n", []string{"[0 1 0]", "[0 2 0]", "[1 2 1]"}},
+		{"given, doubled", factorText("a", 2) + cows(4, 2) + carried + "sequences = [[\"a1\", \"a2\"], [\"a2\", \"a1\"]]\n", []string{"[0 1]", "[0 1]", "[1 0]", "[1 0]"}},
 	} {
 		plan := planOf(t, test.text)
 		a, list := New(plan, nil, "x")
@@ -281,7 +281,7 @@ func TestGivenSequences(t *testing.T) {
 	}
 	// Three pairs of three treatments alternate in one order only; each treatment comes
 	// first once.
-	plan := planOf(t, factor("a", 3)+cows(3, 4)+trend)
+	plan := planOf(t, factorText("a", 3)+cows(3, 4)+trend)
 	a, list := New(plan, nil, "x")
 	if list.HasErrors() {
 		t.Fatal(list)
@@ -299,10 +299,10 @@ func TestGivenSequences(t *testing.T) {
 // TestSequencesRefused: the nearest possible numbers are named.
 func TestSequencesRefused(t *testing.T) {
 	for _, test := range []struct{ name, text, want string }{
-		{"five on five", factor("a", 5) + cows(5, 5) + carried, "take 10 of cow"},
-		{"four on ten", factor("a", 4) + cows(10, 4) + carried, "take 8 or 12 of cow"},
-		{"six over three on six", factor("a", 6) + cows(6, 3) + carried, "6 or 7 periods are always possible"},
-		{"squares of five", factor("a", 5) + "[[unit]]\nname = \"square\"\ncount = 3\n[[unit]]\nname = \"cow\"\nwithin = \"square\"\ncount = 5\n[[unit]]\nname = \"period\"\ncount = 5\n[[unit]]\nname = \"sample\"\ncrosses = [\"cow\", \"period\"]\nreceives = [\"a\"]\n" + carried, "take 10 or 20 of cow"},
+		{"five on five", factorText("a", 5) + cows(5, 5) + carried, "take 10 of cow"},
+		{"four on ten", factorText("a", 4) + cows(10, 4) + carried, "take 8 or 12 of cow"},
+		{"six over three on six", factorText("a", 6) + cows(6, 3) + carried, "6 or 7 periods are always possible"},
+		{"squares of five", factorText("a", 5) + "[[unit]]\nname = \"square\"\ncount = 3\n[[unit]]\nname = \"cow\"\nwithin = \"square\"\ncount = 5\n[[unit]]\nname = \"period\"\ncount = 5\n[[unit]]\nname = \"sample\"\ncrosses = [\"cow\", \"period\"]\nreceives = [\"a\"]\n" + carried, "take 10 or 20 of cow"},
 	} {
 		a, list := New(planOf(t, test.text), nil, "x")
 		if a != nil || len(list) == 0 {
@@ -374,7 +374,7 @@ func TestAugmented(t *testing.T) {
 // TestRowsThatReceived: where cows received treatments of their own, each of their
 // groups is a Latin square.
 func TestRowsThatReceived(t *testing.T) {
-	plan := planOf(t, factor("a", 4)+factor("b", 2)+"[[unit]]\nname = \"cow\"\ncount = 8\nreceives = [\"b\"]\n[[unit]]\nname = \"period\"\ncount = 4\n[[unit]]\nname = \"sample\"\ncrosses = [\"cow\", \"period\"]\nreceives = [\"a\"]\n")
+	plan := planOf(t, factorText("a", 4)+factorText("b", 2)+"[[unit]]\nname = \"cow\"\ncount = 8\nreceives = [\"b\"]\n[[unit]]\nname = \"period\"\ncount = 4\n[[unit]]\nname = \"sample\"\ncrosses = [\"cow\", \"period\"]\nreceives = [\"a\"]\n")
 	all, list := Draws(plan, nil, "x", 100)
 	if list.HasErrors() {
 		t.Fatal(list)
