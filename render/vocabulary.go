@@ -29,6 +29,7 @@ type view struct {
 	MaterialHeading     string
 	Assumptions         string
 	Complete            bool // there are data
+	Animals             bool // there are findings on the welfare of animals
 	Responses           []responseView
 }
 
@@ -47,7 +48,7 @@ func (b *builder) view() view {
 	v := view{
 		Code: p.Trial.Code, Title: p.Trial.Title, Status: b.rs.Trial.Status,
 		Objective: p.Trial.Objective.Body, SpeciesRationale: p.Trial.SpeciesRationale.Body, Hypotheses: p.Trial.Hypotheses,
-		Assumptions: p.Analysis.Assumptions, Complete: b.trial.Table != nil, MaterialHeading: "Material",
+		Assumptions: p.Analysis.Assumptions, Complete: b.trial.Table != nil, Animals: len(b.trial.Welfare) > 0, MaterialHeading: "Material",
 	}
 	if p.Animals != nil {
 		v.MaterialHeading = "Animals, housing and treatments"
@@ -179,6 +180,10 @@ func (b *builder) functions() template.FuncMap {
 		"welfare":       func() doc.Table { return table.Welfare(t.Protocol) },
 		"procedures":    func() doc.Table { return table.Procedures(t.Protocol) },
 		"losses":        func() doc.Table { return table.Losses(t) },
+		"limits":        func() doc.Table { return table.Limits(t.Welfare) },
+		"rules":         func() doc.Table { return table.Rules(t.Welfare) },
+		"look-ups":      func() doc.Table { return table.LookUps(t.Protocol) },
+		"documents":     func() doc.Table { return table.Documents(t.Welfare) },
 		"coverage":      func() doc.Table { return table.Coverage(prose.Guideline(t, rs)) },
 		"files":         func() doc.Table { return table.Files(rs) },
 		"signatures":    func() doc.Table { return table.Signatures(t.Protocol) },
@@ -213,6 +218,8 @@ func (b *builder) functions() template.FuncMap {
 		"conduct":    func() []string { return prose.Conduct(t) },
 		"later":      func() []string { return prose.Later(t.Protocol) },
 		"welfare":    func() []string { return prose.Welfare(t.Protocol) },
+		"compared":   func() []string { return prose.Compared(t.Welfare) },
+		"look-ups":   func() []string { return prose.LookUps(t.Protocol) },
 		"coverage":   func() []string { return prose.Coverage(prose.Guideline(t, rs)) },
 		"provenance": func() []string { return prose.Provenance(rs, b.options.Go, b.options.Arch) },
 		"limits":     prose.Limits,

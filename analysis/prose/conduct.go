@@ -217,7 +217,7 @@ func Caution(p *protocol.Protocol) string {
 	if p.Animals == nil && p.Welfare == nil {
 		return "Local codes for safety at work and for the handling of plants, soils and chemicals hold whatever this report says."
 	}
-	return "This report approves nothing. It prints what the protocol states; whether that is enough is for the ethics committee, the attending veterinarian and the law of the place to say, and their word goes before any plan."
+	return "This report approves nothing. It prints what the protocol states, beside published limits where there are some; whether that is enough is for the ethics committee, the attending veterinarian and the law of the place to say, and their word goes before any plan."
 }
 
 // Provenance says what the report was made of and how to check it.

@@ -15,6 +15,7 @@ import (
 	"penwright/protocol/diag"
 	"penwright/protocol/folder"
 	"penwright/protocol/layout"
+	"penwright/protocol/welfare"
 )
 
 // ProtocolFile is the name of the protocol in a trial folder.
@@ -27,10 +28,12 @@ const (
 )
 
 // Trial is what a folder holds so far. Allotment and Table are nil until they exist.
+// Welfare is what the animals came to beside published limits; nil without animals.
 type Trial struct {
 	Files     []folder.File // every file that was read, sorted by path
 	Protocol  *protocol.Protocol
 	Plan      *layout.Plan
+	Welfare   []welfare.Finding
 	Allotment *allot.Allotment
 	Roster    *allot.Roster // nil without one
 	Table     *dataset.Table
@@ -75,6 +78,8 @@ func (t *Trial) open(files *folder.Folder) diag.List {
 		return list
 	}
 	t.Plan = plan
+	t.Welfare = welfare.Check(p, plan)
+	list = append(list, welfare.Diagnostics(p, t.Welfare)...)
 	if p.Roster != nil && p.Roster.File != "" {
 		if file, ok := read(files, p, "roster.file", p.Roster.File, maxRoster, &list); ok {
 			roster, more := allot.ReadRoster(file, plan)

@@ -68,7 +68,7 @@ func (c *checker) approval() {
 			q := Quoted{Limit: l, Stated: a.Date.String() + " to " + a.Expires.String(), Met: plus(a.Date, l.value).Compare(a.Expires) >= 0, Applied: true}
 			f := Finding{Code: Approval, About: "duration of the approval", Key: "approval.expires", Stated: q.Stated, Limits: []Quoted{q}, Text: "the approval lasts no longer than an authorisation may"}
 			if !q.Met {
-				f.Level, f.Text, f.Hint = Warning, "the approval lasts longer than "+l.Printed+" years, the most of "+l.Where(), "look at the dates"
+				f.Level, f.Text, f.Hint = Warning, "the approval lasts longer than "+l.Printed+" years, the limit of "+l.Where(), "look at the dates"
 			}
 			c.add(f)
 		}
@@ -170,7 +170,7 @@ func (c *checker) environment() {
 			best, _ := strictest(q)
 			f := Finding{Code: Housing, About: "light", Key: "housing.lighting", Stated: h.Lighting, Limits: q, Text: "the light keeps to the limit; its hours are to be seen to by hand"}
 			if !q[best].Met {
-				f.Level, f.Text, f.Hint = Warning, fmt.Sprintf("light of %s is less than %s, the least of %s", q[best].Stated, q[best].Printed+shown("lx"), q[best].Where()), "give more light, or say why less is needed"
+				f.Level, f.Text, f.Hint = Warning, fmt.Sprintf("light of %s is less than %s, the limit of %s", q[best].Stated, q[best].Printed+shown("lx"), q[best].Where()), "give more light, or say why less is needed"
 			}
 			c.add(f)
 		}
@@ -264,7 +264,7 @@ func (c *checker) monitoring() {
 		return
 	}
 	var q []Quoted
-	for _, l := range c.pick("monitoring", "looks a day") {
+	for _, l := range c.pick("monitoring", "looks at the animals") {
 		if l.Aim == "" || c.welfare.Aim != "laboratory" {
 			q = append(q, Quoted{Limit: l, Stated: digits(x) + shown("/d"), Met: l.met(x)})
 		}
@@ -274,7 +274,7 @@ func (c *checker) monitoring() {
 		Text: fmt.Sprintf("animals are looked at as often as the strictest limit asks, %s", q[best].Printed+shown("/d"))}
 	if !q[best].Met {
 		f.Level, f.Hint = Warning, "look at the animals more often, and oftener near end points"
-		f.Text = fmt.Sprintf("animals are looked at %s, less than %s, the least of %s", digits(x)+shown("/d"), q[best].Printed+shown("/d"), q[best].Where())
+		f.Text = fmt.Sprintf("animals are looked at %s, less than %s, the limit of %s", digits(x)+shown("/d"), q[best].Printed+shown("/d"), q[best].Where())
 	}
 	c.add(f)
 }
@@ -336,7 +336,7 @@ func (c *checker) endpoints() {
 		f := Finding{Code: MassLoss, About: "loss of body mass", Key: key, Stated: e, Limits: q, Text: fmt.Sprintf("the end point comes no later than the strictest limit that applies, %s", q[best].Printed+shown("%"))}
 		if !q[best].Met {
 			f.Level, f.Hint = Warning, "set the end point earlier, or give the veterinarian’s reason; judge growing animals against controls"
-			f.Text = fmt.Sprintf("the end point allows a loss of %s, more than %s, the most of %s", digits(x)+shown("%"), q[best].Printed+shown("%"), q[best].Where())
+			f.Text = fmt.Sprintf("the end point allows a loss of %s, more than %s, the limit of %s", digits(x)+shown("%"), q[best].Printed+shown("%"), q[best].Where())
 		}
 		c.add(f)
 	}
@@ -474,7 +474,7 @@ func (c *checker) records() {
 		f.Limits = append(f.Limits, q)
 		if !q.Met && !l.shown {
 			f.Level, f.Hint = Warning, "keep them longer"
-			f.Text = fmt.Sprintf("records are kept until %s, less than %s years after %s, the least of %s", r.RetainUntil, l.Printed, from, l.Where())
+			f.Text = fmt.Sprintf("records are kept until %s, less than %s years after %s, the limit of %s", r.RetainUntil, l.Printed, from, l.Where())
 		}
 	}
 	c.add(f)

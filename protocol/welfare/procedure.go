@@ -99,6 +99,9 @@ func (c *checker) trigger(p *protocol.Procedure) (grade, id string) {
 	text := p.Name + "; " + p.How + "; " + p.Why
 	switch p.Kind {
 	case "blood sample":
+		if terminal(p) {
+			return "", ""
+		}
 		if d, ok := c.draw(p); ok && d.share(7) > 10 && saysNone(p.Anaesthesia) {
 			return is("blood", "moderate")
 		}
@@ -214,6 +217,14 @@ func (c *checker) draw(p *protocol.Procedure) (draw, bool) {
 func (c *checker) blood(p *protocol.Procedure, key string) {
 	volume := c.circulating()
 	stated := c.bloodWords(p)
+	if terminal(p) {
+		f := Finding{Code: Pain, Level: Note, About: title(p), Key: key, Stated: strings.Trim(stated+"; "+p.Anaesthesia, "; "), Text: "a terminal draw is not compared with the limits for animals that live on", Rules: []Rule{rule("terminal"), rule("terminal-wsu")}}
+		if saysNone(p.Anaesthesia) {
+			f.Level, f.Text, f.Hint = Warning, "a terminal draw is planned and no general anaesthesia is stated", "give anaesthesia"
+		}
+		c.add(f)
+		return
+	}
 	d, ok := c.draw(p)
 	d.key = key
 	switch {
@@ -250,9 +261,11 @@ func (c *checker) blood(p *protocol.Procedure, key string) {
 	if !d.untimed() {
 		c.drawn = append(c.drawn, d)
 	}
-	if says(p.Name+"; "+p.How+"; "+p.Why, "terminal", "exsanguination", "final bleed") && saysNone(p.Anaesthesia) {
-		c.add(Finding{Code: Pain, Level: Warning, About: title(p), Key: key, Text: "a terminal draw is planned and no general anaesthesia is stated", Hint: "give anaesthesia", Rules: []Rule{rule("terminal"), rule("terminal-wsu")}})
-	}
+}
+
+// terminal tells whether blood is drawn from an animal that does not wake again.
+func terminal(p *protocol.Procedure) bool {
+	return says(p.Name+"; "+p.How+"; "+p.Why, "terminal", "exsanguination", "exsanguinated", "final bleed", "at slaughter", "after death", "post mortem")
 }
 
 func (c *checker) bloodWords(p *protocol.Procedure) string {
@@ -314,8 +327,11 @@ func (c *checker) against(d draw) ([]Quoted, string) {
 		x := d.share(window(&l))
 		q := Quoted{Limit: l, Stated: about(x) + shown("%"), Met: l.met(x), Applied: true}
 		rested := slices.ContainsFunc(applied[i+1:], func(m Limit) bool { return m.met(day) && d.share(window(&m)) == day })
-		if !q.Met && !rested && text == "" {
-			text = fmt.Sprintf("%s of the circulating volume in %s is more than %s, the most of %s", q.Stated, digits(l.band.high)+shown(l.band.unit), l.Printed+shown("%"), l.Where())
+		if !q.Met && rested {
+			q.Applied, q.Stated = false, q.Stated+", with the rest of a longer row"
+		}
+		if q.Applied && !q.Met {
+			text = fmt.Sprintf("%s of the circulating volume in %s is more than %s, the limit of %s", q.Stated, digits(l.band.high)+shown(l.band.unit), l.Printed+shown("%"), l.Where())
 		}
 		out = append(out, q)
 	}
@@ -360,7 +376,7 @@ func (c *checker) bloodTogether() {
 		q := Quoted{Limit: l, Stated: about(x) + shown("%"), Met: l.met(x), Applied: true}
 		limits = append(limits, q)
 		if !q.Met && i == len(applied)-1 {
-			text = fmt.Sprintf("together %s take up to %s of the circulating volume in %s, more than %s, the most of %s", join(names), q.Stated, digits(l.band.high)+shown(l.band.unit), l.Printed+shown("%"), l.Where())
+			text = fmt.Sprintf("together %s take up to %s of the circulating volume in %s, more than %s, the limit of %s", join(names), q.Stated, digits(l.band.high)+shown(l.band.unit), l.Printed+shown("%"), l.Where())
 		}
 	}
 	f := Finding{Code: Blood, About: "blood of all procedures", Key: c.drawn[0].key, Stated: join(names), Limits: limits, Text: "together the samples keep to the limit over the longest time"}
@@ -621,10 +637,10 @@ func (c *checker) challenge(p *protocol.Procedure, key, code, what string) {
 		missing = append(missing, "humane end points")
 	}
 	if strings.TrimSpace(c.welfare.Rescue.Body) == "" {
-		missing = append(missing, "a rule of rescue, which untreated controls need first")
+		missing = append(missing, "rule of rescue")
 	}
 	if len(missing) > 0 {
-		f.Level, f.Text, f.Hint = Warning, what+" and the protocol has no "+join(missing), "state them under [welfare]"
+		f.Level, f.Text, f.Hint = Warning, what+" and the protocol states no "+strings.Join(missing, " and no "), "state them under [welfare]; untreated controls need the rescue first"
 	}
 	c.add(f)
 }

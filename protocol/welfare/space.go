@@ -216,7 +216,7 @@ func (c *checker) floor(all []Limit, farm bool, area float64) {
 	}
 	quoted[best].Applied = true
 	f := Finding{Code: Space, About: "floor per animal", Key: "housing.floor_area", Stated: c.floorWords(), Limits: quoted, Rules: []Rule{rule("final-mass")}}
-	wants := about(worst) + shown("m2")
+	wants := c.inFloor(worst)
 	if s := c.share(&quoted[best].Limit, n); s != 1 {
 		wants += fmt.Sprintf(" (%s %% of the row for a group of %d)", digits(s*100), n)
 	}
@@ -231,6 +231,12 @@ func (c *checker) floor(all []Limit, farm bool, area float64) {
 		f.Hint = "give more room, or say to the committee why less is needed and for how long"
 	}
 	c.add(f)
+}
+
+// inFloor prints an area in m2 in the unit that the protocol uses for the floor.
+func (c *checker) inFloor(m2 float64) string {
+	u := c.housing.FloorArea.Unit
+	return about(m2/units[u].factor) + shown(u)
 }
 
 func allMet(q []Quoted) bool {
@@ -308,12 +314,12 @@ func (c *checker) whole(all []Limit, farm bool, area float64, n int, key string)
 	}
 	quoted[best].Applied = true
 	f := Finding{Code: Enclosure, About: "floor of the group", Key: "housing.floor_area", Limits: quoted,
-		Stated: fmt.Sprintf("%d animals on %s in all", n, about(area*float64(n))+shown("m2"))}
+		Stated: fmt.Sprintf("%s on %s in all", animals(n), c.inFloor(area*float64(n)))}
 	if quoted[best].Met {
-		f.Text = fmt.Sprintf("the floor of the group keeps to the least that applies, %s", about(worst)+shown("m2"))
+		f.Text = fmt.Sprintf("the floor of the group keeps to the least that applies, %s", c.inFloor(worst))
 	} else {
 		f.Level = Warning
-		f.Text = fmt.Sprintf("%s for a group of %d is less than %s, asked for by %s", about(area*float64(n))+shown("m2"), n, about(worst)+shown("m2"), quoted[best].Where())
+		f.Text = fmt.Sprintf("%s for a group of %d is less than %s, asked for by %s", c.inFloor(area*float64(n)), n, c.inFloor(worst), quoted[best].Where())
 		f.Hint = "give the group more room, or say to the committee why less is needed"
 	}
 	if key == "" {
@@ -407,7 +413,7 @@ func (c *checker) water(all []Limit) {
 	}
 	f := Finding{Code: Space, About: "volume of water", Key: "housing.floor_area", Stated: amount(c.housing.FloorArea) + " per animal", Limits: quoted, Text: "the density keeps to the limit"}
 	if !quoted[best].Met {
-		f.Level, f.Text, f.Hint = Warning, fmt.Sprintf("%s is above %s, the most of %s", quoted[best].Stated, quoted[best].Printed+shown(quoted[best].Unit), quoted[best].Where()), "keep fewer animals in the volume, or say to the committee why"
+		f.Level, f.Text, f.Hint = Warning, fmt.Sprintf("%s is above %s, the limit of %s", quoted[best].Stated, quoted[best].Printed+shown(quoted[best].Unit), quoted[best].Where()), "keep fewer animals in the volume, or say to the committee why"
 	}
 	c.later(&f)
 	c.add(f)
@@ -448,6 +454,13 @@ func (c *checker) group() {
 			c.add(f)
 		}
 	}
+}
+
+func animals(n int) string {
+	if n == 1 {
+		return "one animal"
+	}
+	return fmt.Sprintf("%d animals", n)
 }
 
 func span(a, b int) string {

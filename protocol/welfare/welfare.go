@@ -65,57 +65,45 @@ type Quoted struct {
 	Applied bool   // it is the one, or one of those, that the finding rests on
 }
 
-// Words is the limit as it is printed, without its source: "at least 0.55 m² floor per
-// animal, over 50 to 85 kg".
+// Words is the limit as it is printed, without its source: "floor per animal, over 50 to
+// 85 kg: at least 0.55 m²".
 func (l *Limit) Words() string {
-	s := l.Printed + shown(l.Unit)
+	what := l.Quantity
 	switch {
-	case l.most:
-		s = "at most " + s
-	case l.Quantity != "circulating volume":
-		s = "at least " + s
-	}
-	switch l.Topic {
-	case "blood":
-		if l.Unit == "%" {
-			s += " of the circulating volume"
-		}
-		if t := l.band.words(); t != "" {
-			t = digits(l.band.high) + shown(l.band.unit)
-			s += " in " + t
-		}
-		if l.Class != "" {
-			s += ", " + map[string]string{"single": "one sample", "several": "several samples"}[l.Class]
-		}
-	case "dose":
-		s += " " + l.Quantity
-		if l.Class != "" {
-			s += " (" + l.Class + ")"
-		}
+	case l.Topic == "blood" && l.band.unit != "":
+		what += " in " + digits(l.band.high) + shown(l.band.unit)
+	case l.Topic == "dose" && l.Class != "":
+		what += ", " + l.Class
 	default:
-		if l.Quantity != "looks a day" {
-			s += " " + l.Quantity
-		}
 		if l.Class != "" {
-			s += ", " + l.Class
+			what += ", " + l.Class
 		}
 		if t := l.band.words(); t != "" {
-			s += ", " + t
+			what += ", " + t
 		}
 		if t := l.animals.words(); t != "" {
-			s += ", for " + t + " animals"
+			what += ", " + t + " animals"
 		}
 	}
-	if l.Note != "" {
-		s += " (" + l.Note + ")"
+	value := l.Printed + shown(l.Unit)
+	switch {
+	case l.most:
+		value = "at most " + value
+	case l.Topic != "circulating volume":
+		value = "at least " + value
 	}
-	return s
+	if l.Topic == "blood" && l.Unit == "%" {
+		value += " of the circulating volume"
+	}
+	if l.Note != "" {
+		value += " (" + l.Note + ")"
+	}
+	return what + ": " + value
 }
 
-// Where is the source of a citation in a few words: document, clause, jurisdiction,
-// reading.
+// Where is the source of a citation in a few words: document, clause, jurisdiction.
 func (c Citation) Where() string {
-	return SourceOf(c).Title + ", " + c.Clause + "; " + c.Jurisdiction + "; " + c.Reading.String()
+	return SourceOf(c).Title + ", " + c.Clause + " (" + c.Jurisdiction + ")"
 }
 
 // Check compares the animals of a protocol with the tables. Plan may be nil. Without
@@ -278,7 +266,9 @@ func strictest(q []Quoted) (best int, ok bool) {
 	if best < 0 {
 		return 0, false
 	}
-	q[best].Applied = true
+	for i := range q {
+		q[i].Applied = !q[i].shown && q[i].value == q[best].value && q[i].Unit == q[best].Unit
+	}
 	return best, true
 }
 

@@ -497,9 +497,9 @@ func Procedures(p *protocol.Protocol) doc.Table {
 		if name == "" {
 			name = x.Kind
 		}
-		rows = append(rows, []string{name, x.Kind, prose.QuantityText(x.Volume), times, prose.QuantityText(x.Every), x.Route, x.How, x.Where, x.Why, x.Analgesia, x.Anaesthesia})
+		rows = append(rows, []string{name, x.Kind, prose.QuantityText(x.Volume), times, prose.QuantityText(x.Every), prose.QuantityText(x.Duration), x.Route, x.How, x.Where, x.Why, x.Analgesia, x.Anaesthesia})
 	}
-	return listing("procedures", "Procedures", []string{"Procedure", "Kind", "Volume", "Times", "Every", "Route", "How", "Where", "Why", "Analgesia", "Anaesthesia"}, rows)
+	return listing("procedures", "Procedures", []string{"Procedure", "Kind", "Volume", "Times", "Every", "Duration", "Route", "How", "Where", "Why", "Analgesia", "Anaesthesia"}, rows)
 }
 
 // Losses counts removals and deaths by treatment.
