@@ -1,6 +1,8 @@
 package protocol
 
 import (
+	_ "embed"
+
 	"penwright/protocol/diag"
 )
 
@@ -422,9 +424,14 @@ const (
 	UnmaskedAssessment = "unmasked-assessment"
 )
 
+// The examples of the codes stand in their comments.
+//
+//go:embed codes.go
+var codesFile string
+
 // Codes describes the codes of Load, in the order of the constants.
 func Codes() []diag.CodeInfo {
-	return []diag.CodeInfo{
+	return diag.WithExamples([]diag.CodeInfo{
 		{Code: Unreadable, Text: "the protocol file, or a file that it names, cannot be read"},
 		{Code: Syntax, Text: "the file is not TOML"},
 		{Code: TooMany, Text: "a limit of size or number is exceeded"},
@@ -467,5 +474,5 @@ func Codes() []diag.CodeInfo {
 		{Code: NotUsed, Text: "something is declared and nothing refers to it"},
 		{Code: NotPlanned, Text: "an exclusion follows no rule that was set before the trial"},
 		{Code: UnmaskedAssessment, Text: "something is assessed by eye and the assessment is not masked"},
-	}
+	}, codesFile)
 }

@@ -1,6 +1,10 @@
 package dataset
 
-import "penwright/protocol/diag"
+import (
+	_ "embed"
+
+	"penwright/protocol/diag"
+)
 
 // Codes of what is said about data.
 const (
@@ -72,9 +76,14 @@ const (
 	CodeDisagrees = "code-disagrees"
 )
 
+// The examples of the codes stand in their comments.
+//
+//go:embed codes.go
+var codesFile string
+
 // Codes describes the codes of Read, in the order of the constants.
 func Codes() []diag.CodeInfo {
-	return []diag.CodeInfo{
+	return diag.WithExamples([]diag.CodeInfo{
 		{Code: TooMuch, Text: "the responses would take more memory than is allowed"},
 		{Code: NoData, Text: "the data file does not exist yet"},
 		{Code: NoRows, Text: "a data file holds only headings"},
@@ -97,5 +106,5 @@ func Codes() []diag.CodeInfo {
 		{Code: TreatmentDisagrees, Text: "a treatment in the data is not the allotted one"},
 		{Code: TreatmentUnchecked, Text: "a treatment column in rows of a larger unit"},
 		{Code: CodeDisagrees, Text: "a masked code in the data is not that of the allotment"},
-	}
+	}, codesFile)
 }

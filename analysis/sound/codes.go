@@ -318,7 +318,7 @@ const (
 )
 
 //go:embed codes.go
-var source string
+var codesFile string
 
 // table holds what is said of each code, in the order of the constants, and the reason
 // for looking at it.
@@ -361,7 +361,7 @@ func Codes() []diag.CodeInfo {
 	for _, c := range table {
 		out = append(out, diag.CodeInfo{Code: c.code, Text: c.text})
 	}
-	return diag.WithExamples(out, source)
+	return diag.WithExamples(out, codesFile)
 }
 
 // reason says why a code is looked at; empty for a code of an earlier stage.

@@ -5,11 +5,13 @@ import (
 	"fmt"
 	"io"
 	"slices"
+	"strings"
 
 	"github.com/spf13/cobra"
 
 	"penwright/analysis"
 	"penwright/analysis/dataset"
+	"penwright/analysis/sound"
 	"penwright/analysis/trial"
 	"penwright/protocol"
 	"penwright/protocol/allot"
@@ -39,17 +41,10 @@ func (a *app) check() *cobra.Command {
 		Long: "check reads a trial as far as it goes: protocol, layout, allotment, data. It prints\n" +
 			"every fault with its place and how to mend it, and the skeleton analysis of variance:\n" +
 			"the sources with their degrees of freedom and what each is tested over.",
-		Example: "  penwright check hollowmere",
+		Example: "  penwright check hollowmere\n  penwright check --list error-df",
 		RunE: func(_ *cobra.Command, args []string) error {
 			if list {
-				said := map[string]bool{}
-				for _, x := range slices.Concat(protocol.Codes(), layout.Codes(), sheet.Codes(), allot.Codes(), dataset.Codes(), analysis.Codes()) {
-					if !said[x.Code] {
-						said[x.Code] = true
-						fmt.Fprintf(a.out, "%-24s %s\n", x.Code, x.Text)
-					}
-				}
-				return nil
+				return a.listCodes(args)
 			}
 			if format != "text" && format != "json" && format != "sarif" {
 				return fmt.Errorf("unknown format %q: text, json or sarif", format)
@@ -95,8 +90,51 @@ func (a *app) check() *cobra.Command {
 		},
 	}
 	c.Flags().StringVar(&format, "format", "text", "form of the findings: text, json or sarif")
-	c.Flags().BoolVar(&list, "list", false, "list the codes of all findings")
+	c.Flags().BoolVar(&list, "list", false, "list the codes of all findings, or those named, each with an example")
 	return c
+}
+
+// codes lists what every stage may find, in the order of the stages.
+func codes() []diag.CodeInfo {
+	var out []diag.CodeInfo
+	said := map[string]bool{}
+	for _, x := range slices.Concat(protocol.Codes(), layout.Codes(), sheet.Codes(), allot.Codes(), dataset.Codes(), sound.Codes(), analysis.Codes()) {
+		if !said[x.Code] {
+			said[x.Code] = true
+			out = append(out, x)
+		}
+	}
+	return out
+}
+
+// listCodes prints codes, all or those named, with what brings each about.
+func (a *app) listCodes(names []string) error {
+	all := codes()
+	var known []string
+	for _, x := range all {
+		known = append(known, x.Code)
+	}
+	for _, n := range names {
+		if !slices.Contains(known, n) {
+			near := ""
+			if w := diag.Nearest(n, known); w != "" {
+				near = fmt.Sprintf("; did you mean %q?", w)
+			}
+			return fmt.Errorf("there is no code %q%s", n, near)
+		}
+	}
+	for _, x := range all {
+		if len(names) > 0 && !slices.Contains(names, x.Code) {
+			continue
+		}
+		fmt.Fprintf(a.out, "%-24s %s\n", x.Code, x.Text)
+		for _, line := range strings.Split(x.Example, "\n") {
+			if line != "" {
+				fmt.Fprintf(a.out, "    %s\n", line)
+			}
+		}
+	}
+	return nil
 }
 
 // checked prints what was found in one trial: the findings, then the design.

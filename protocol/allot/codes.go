@@ -1,6 +1,10 @@
 package allot
 
-import "penwright/protocol/diag"
+import (
+	_ "embed"
+
+	"penwright/protocol/diag"
+)
 
 // Codes of what is said about a draw and an allotment.
 const (
@@ -48,9 +52,14 @@ const (
 	UnequalAllotment = "unequal-allotment"
 )
 
+// The examples of the codes stand in their comments.
+//
+//go:embed codes.go
+var codesFile string
+
 // Codes describes the codes of this package, in the order of the constants.
 func Codes() []diag.CodeInfo {
-	return []diag.CodeInfo{
+	return diag.WithExamples([]diag.CodeInfo{
 		{Code: NotDrawn, Text: "a design whose draw is not made here"},
 		{Code: ClassUnknown, Text: "a carried class that the draw needs and nothing tells"},
 		{Code: UnitColumns, Text: "the columns name no unit, or not clearly"},
@@ -65,5 +74,5 @@ func Codes() []diag.CodeInfo {
 		{Code: NoAllotmentRecord, Text: "allotment.csv came from elsewhere and nothing says how"},
 		{Code: BadRecord, Text: "allotment.toml is damaged"},
 		{Code: UnequalAllotment, Text: "levels are not spread as equally as the plan allows"},
-	}
+	}, codesFile)
 }

@@ -1,6 +1,10 @@
 package layout
 
-import "penwright/protocol/diag"
+import (
+	_ "embed"
+
+	"penwright/protocol/diag"
+)
 
 // The codes of what New reports beside those of the protocol package, which it uses
 // for the same faults. Each example is the part of a file that brings the code about,
@@ -146,9 +150,14 @@ const (
 	CalledUnknown = "called-unknown"
 )
 
+// The examples of the codes stand in their comments.
+//
+//go:embed codes.go
+var codesFile string
+
 // Codes describes the codes that only New reports, in the order of the constants.
 func Codes() []diag.CodeInfo {
-	return []diag.CodeInfo{
+	return diag.WithExamples([]diag.CodeInfo{
 		{Code: UnitsNotJoined, Text: "no unit lies within all others"},
 		{Code: UnnamedUnit, Text: "two units share classes that are no unit of the trial"},
 		{Code: TooFewUnits, Text: "there are fewer units than treatments"},
@@ -159,5 +168,5 @@ func Codes() []diag.CodeInfo {
 		{Code: NoExactError, Text: "two errors act on a term at once, so that no single mean square tests it"},
 		{Code: CalledDiffers, Text: "the trial is called something that its units do not make it"},
 		{Code: CalledUnknown, Text: "what the trial is called is no known name of a design"},
-	}
+	}, codesFile)
 }

@@ -1,6 +1,10 @@
 package sheet
 
-import "penwright/protocol/diag"
+import (
+	_ "embed"
+
+	"penwright/protocol/diag"
+)
 
 // Codes of what is said about a file of cells.
 const (
@@ -30,9 +34,14 @@ const (
 	Quoting = "quoting"
 )
 
+// The examples of the codes stand in their comments.
+//
+//go:embed codes.go
+var codesFile string
+
 // Codes describes the codes of this package, in the order of the constants.
 func Codes() []diag.CodeInfo {
-	return []diag.CodeInfo{
+	return diag.WithExamples([]diag.CodeInfo{
 		{Code: NotText, Text: "the file is no text"},
 		{Code: Encoding, Text: "the file is not UTF-8 and was read as Windows-1252"},
 		{Code: EmptyFile, Text: "the file has neither headings nor rows"},
@@ -41,5 +50,5 @@ func Codes() []diag.CodeInfo {
 		{Code: DuplicateColumn, Text: "two columns have one heading"},
 		{Code: FieldCount, Text: "a row has more or fewer fields than there are headings"},
 		{Code: Quoting, Text: "a quoted field is not closed, or goes on after its closing quote"},
-	}
+	}, codesFile)
 }
