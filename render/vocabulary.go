@@ -180,6 +180,7 @@ func (b *builder) functions() template.FuncMap {
 		"welfare":       func() doc.Table { return table.Welfare(t.Protocol) },
 		"procedures":    func() doc.Table { return table.Procedures(t.Protocol) },
 		"losses":        func() doc.Table { return table.Losses(t) },
+		"cautions":      func() doc.Table { return table.Cautions(t.Welfare) },
 		"limits":        func() doc.Table { return table.Limits(t.Welfare) },
 		"rules":         func() doc.Table { return table.Rules(t.Welfare) },
 		"look-ups":      func() doc.Table { return table.LookUps(t.Protocol) },

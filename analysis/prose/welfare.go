@@ -47,25 +47,19 @@ func LookUps(p *protocol.Protocol) []string {
 	return []string{"Nothing was compared with the following, because it was not seen in a document (M). Look this up in the official text."}
 }
 
-// LimitText is a limit beside what the protocol states: its words, where it stands, and
-// whether it is kept.
-func LimitText(q *welfare.Quoted) string {
-	s := q.Words() + " (" + welfare.SourceOf(q.Citation).Title + ", " + q.Clause + "; " + q.Jurisdiction + "; " + q.Reading.String() + ")"
-	if q.Stated == "" {
-		return s
-	}
-	s += ": " + q.Stated
+// KeptText says whether the protocol keeps to a limit.
+func KeptText(q *welfare.Quoted) string {
+	s := "no"
 	switch {
-	case q.Quantity == "circulating volume":
-	case q.Applied && q.Met:
-		s += ", kept"
-	case q.Applied:
-		s += ", not kept"
+	case q.Stated == "":
+		return "shown"
+	case q.Topic == "circulating volume" || q.Topic == "withdrawal":
+		return ""
 	case q.Met:
-		s += ", kept; shown, not applied"
-	case q.Topic == "withdrawal":
-	default:
-		s += ", not kept; shown, not applied"
+		s = "yes"
+	}
+	if !q.Applied {
+		s += ", shown"
 	}
 	return s
 }
@@ -77,7 +71,7 @@ func FindingText(f *welfare.Finding) string {
 		s += " " + upperFirst(f.Hint) + "."
 	}
 	if f.Level == welfare.Warning {
-		s += " " + Deference()
+		s += " The ethics committee, the attending veterinarian and local law decide."
 	}
 	return s
 }

@@ -1,6 +1,10 @@
 package welfare
 
-import "penwright/protocol/diag"
+import (
+	_ "embed"
+
+	"penwright/protocol/diag"
+)
 
 // The codes of findings. Each example is the part of a file that brings the code about,
 // beside [animals] with a species where it gives none.
@@ -301,9 +305,14 @@ const (
 	Records = "welfare-records"
 )
 
+// The examples of the codes stand in their comments.
+//
+//go:embed codes.go
+var codesFile string
+
 // Codes describes the codes of findings, in the order of the constants.
 func Codes() []diag.CodeInfo {
-	return []diag.CodeInfo{
+	return diag.WithExamples([]diag.CodeInfo{
 		{Code: NotCompared, Text: "something was not compared with the tables, and why"},
 		{Code: Aim, Text: "it is not stated which tables of space serve the trial"},
 		{Code: Approval, Text: "an approval is missing, has no number, or lasts too long"},
@@ -336,5 +345,5 @@ func Codes() []diag.CodeInfo {
 		{Code: Fate, Text: "what becomes of the animals"},
 		{Code: Killing, Text: "animals are killed and nothing is said of how"},
 		{Code: Records, Text: "how long records are kept"},
-	}
+	}, codesFile)
 }

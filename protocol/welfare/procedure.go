@@ -491,8 +491,10 @@ func (c *checker) dose(p *protocol.Procedure, key string) {
 		site = " if given at one site"
 	}
 	for _, k := range []int{best, gravest} {
-		if k >= 0 {
-			quoted[k].Applied = true
+		for i := range quoted {
+			if q := &quoted[i]; k >= 0 && !q.shown && q.Class == quoted[k].Class && q.Unit == quoted[k].Unit && q.value == quoted[k].value {
+				q.Applied = true
+			}
 		}
 	}
 	switch {

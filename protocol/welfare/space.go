@@ -128,8 +128,12 @@ func (c *checker) space() {
 		return
 	}
 	if c.welfare.Aim == "" {
-		c.add(Finding{Code: Aim, Level: Warning, About: "space", Key: "welfare.aim", Text: "the aim is not stated, so that the strictest of the laboratory and farm tables is compared",
-			Hint: `write aim = "laboratory" or aim = "commercial conditions"`, Rules: []Rule{rule("commercial")}})
+		f := Finding{Code: Aim, Level: Warning, About: "space", Key: "welfare.aim", Text: "the aim is not stated, so that the strictest of the laboratory and farm tables is compared",
+			Hint: `write aim = "laboratory" or aim = "commercial conditions"`, Rules: []Rule{rule("commercial")}}
+		if floor == nil {
+			f.Level, f.Text = Note, "the aim is not stated, so that it is not known which tables of space serve the trial"
+		}
+		c.add(f)
 	}
 	if c.welfare.Aim == commercial && !farm && len(all) > 0 {
 		c.uncompared("space", "welfare.aim", c.welfare.Aim, fmt.Sprintf("the tables have no farm standard of space for %s as the protocol describes it; laboratory tables are compared instead", c.name()), "say more of the kind of animal: broiler, laying hen, calf, sow")

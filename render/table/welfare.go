@@ -11,29 +11,55 @@ import (
 	"penwright/render/doc"
 )
 
-// Limits sets every finding on the welfare of animals beside the published limits, what
-// is outside a limit first.
-func Limits(found []welfare.Finding) doc.Table {
-	out := doc.Table{ID: "limits", Caption: text("What the protocol states beside published limits"), Wide: true,
-		Columns: []doc.Column{left(true), left(false), left(false), left(false), left(false)},
-		Head:    head(cell("Looked at"), cell("Outcome"), cell("The protocol states"), cell("Finding"), cell("Published limits"))}
-	sorted := slices.Clone(found)
-	slices.SortStableFunc(sorted, func(a, b welfare.Finding) int { return cmp.Compare(b.Level, a.Level) })
+// Cautions lists the findings on the welfare of animals, what is outside a limit first.
+func Cautions(found []welfare.Finding) doc.Table {
+	out := doc.Table{ID: "cautions", Caption: text("What the protocol states of its animals, looked at"), Sortable: true,
+		Columns: []doc.Column{left(true), left(false), left(false), left(false)},
+		Head:    head(cell("Looked at"), cell("Outcome"), cell("The protocol states"), cell("Finding"))}
+	sorted := gravest(found)
 	for i := range sorted {
 		f := &sorted[i]
+		out.Rows = append(out.Rows, doc.Row{Rule: i > 0 && sorted[i-1].Level != f.Level, Cells: []doc.Cell{
+			cell(upper(f.About)), cell(upper(f.Level.String())), cell(f.Stated), cell(prose.FindingText(f))}})
+	}
+	out.Notes = [][]doc.Inline{text("Pass: nothing was found outside the limits that apply; that approves nothing. " + prose.Deference())}
+	return out
+}
+
+// gravest sorts findings, warnings first.
+func gravest(found []welfare.Finding) []welfare.Finding {
+	sorted := slices.Clone(found)
+	slices.SortStableFunc(sorted, func(a, b welfare.Finding) int { return cmp.Compare(b.Level, a.Level) })
+	return sorted
+}
+
+// Limits lists the published limits of each finding, those that apply first. A limit that
+// was shown before without being applied, and is kept, is not repeated for a finding of
+// the same kind.
+func Limits(found []welfare.Finding) doc.Table {
+	out := doc.Table{ID: "limits", Caption: text("Published limits beside what the protocol states"), Wide: true,
+		Columns: []doc.Column{left(true), left(false), left(false), left(false), left(false), left(false)},
+		Head:    head(cell("Limit"), cell("Document"), cell("Jurisdiction"), cell("Read"), cell("The protocol"), cell("Kept"))}
+	shown := map[string]bool{}
+	for _, f := range gravest(found) {
 		limits := slices.Clone(f.Limits)
 		slices.SortStableFunc(limits, func(a, b welfare.Quoted) int { return cmp.Compare(rank(&a), rank(&b)) })
-		var lines []doc.Inline
+		var rows []doc.Row
 		for k := range limits {
-			if k > 0 {
-				lines = append(lines, doc.Break{})
+			q := &limits[k]
+			key := f.Code + " " + q.Words() + " " + q.Where()
+			if shown[key] && !q.Applied && (q.Met || q.Stated == "") {
+				continue
 			}
-			lines = append(lines, doc.Text{Text: upper(prose.LimitText(&limits[k])) + "."})
+			shown[key] = true
+			rows = append(rows, doc.Row{Cells: []doc.Cell{cell(upper(q.Words())), cell(welfare.SourceOf(q.Citation).Title + ", " + q.Clause), cell(q.Jurisdiction),
+				cell(q.Reading.String()), cell(q.Stated), cell(prose.KeptText(q))}})
 		}
-		out.Rows = append(out.Rows, doc.Row{Rule: i > 0 && sorted[i-1].Level != f.Level, Cells: []doc.Cell{
-			cell(upper(f.About)), cell(upper(f.Level.String())), cell(f.Stated), cell(prose.FindingText(f)), {Text: lines}}})
+		if len(rows) > 0 {
+			out.Rows = append(append(out.Rows, doc.Row{Rule: len(out.Rows) > 0, Group: true, Cells: []doc.Cell{cell(upper(f.About))}}), rows...)
+		}
 	}
-	out.Notes = [][]doc.Inline{text("Pass: nothing was found outside the limits shown; that approves nothing. C: read in the official text or a full copy of it. C2: read in a document that reproduces it.")}
+	out.Notes = [][]doc.Inline{text("C: read in the official text or a full copy of it. C2: read in a document that reproduces it. Shown: the limit is quoted and the finding does not rest on it.")}
 	return out
 }
 
