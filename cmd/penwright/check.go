@@ -17,8 +17,8 @@ import (
 	"penwright/protocol/allot"
 	"penwright/protocol/diag"
 	"penwright/protocol/layout"
-	"penwright/protocol/welfare"
 	"penwright/protocol/sheet"
+	"penwright/protocol/welfare"
 	"penwright/render"
 	"penwright/render/term"
 )
