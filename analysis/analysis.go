@@ -40,6 +40,7 @@ func Run(t *trial.Trial, program result.Program, progress func(done, of int)) (*
 	for i := range t.Table.Responses {
 		r := &t.Table.Responses[i]
 		out.Responses = append(out.Responses, respond(t, r, &list))
+		markPlanned(t, &out.Responses[i])
 		if progress != nil {
 			progress(i+1, len(t.Table.Responses))
 		}
@@ -47,11 +48,13 @@ func Run(t *trial.Trial, program result.Program, progress func(done, of int)) (*
 	return out, list
 }
 
-// Status is how far a trial has come: planned, allotted or complete.
+// Status is how far a trial has come: planned, allotted, sealed or complete.
 func Status(t *trial.Trial) string {
 	switch {
 	case t.Table != nil:
 		return "complete"
+	case t.Seal != nil:
+		return "sealed"
 	case t.Allotment != nil:
 		return "allotted"
 	}

@@ -30,6 +30,7 @@ type view struct {
 	Assumptions         string
 	Complete            bool // there are data
 	Animals             bool // there are findings on the welfare of animals
+	Unplanned           bool // something was not planned before the data
 	Responses           []responseView
 }
 
@@ -37,6 +38,8 @@ type view struct {
 type responseView struct {
 	Name, Label, Text, Role string
 	Primary, Analysed       bool
+	Planned                 bool // its analysis was in the plan that was sealed before the data
+	Unplanned               bool // it has contrasts that were not, though its analysis was
 	Terms                   []termView
 }
 
@@ -71,6 +74,11 @@ func (b *builder) view() view {
 				x.Terms = append(x.Terms, termView{Response: r.Name, Name: m.Term, Label: prose.TermLabel(b.trial.Plan, m.Term)})
 			}
 		}
+		x.Planned = prose.Planned(r)
+		for _, c := range r.Contrasts {
+			x.Unplanned = x.Unplanned || x.Planned && !c.Planned
+		}
+		v.Unplanned = v.Unplanned || !x.Planned || x.Unplanned
 		v.Responses = append(v.Responses, x)
 	}
 	return v
@@ -169,11 +177,13 @@ func (b *builder) functions() template.FuncMap {
 		"disagreements": func() doc.Table { return table.Disagreements(t) },
 		"allotment":     func() doc.Table { return table.Allotment(t, maxPrinted) },
 		"events":        func() doc.Table { return table.Events(t.Protocol) },
-		"exclusions":    func() doc.Table { return table.Exclusions(t.Protocol) },
+		"exclusions":    func() doc.Table { return table.Exclusions(t) },
 		"deviations":    func() doc.Table { return table.Deviations(t.Protocol) },
 		"corrections":   func() doc.Table { return table.Corrections(t.Protocol) },
 		"confirmed":     func() doc.Table { return table.Confirmed(t.Protocol) },
 		"amendments":    func() doc.Table { return table.Amendments(t.Protocol) },
+		"seals":         func() doc.Table { return table.Seals(t) },
+		"revisions":     func() doc.Table { return table.Revisions(t) },
 		"data":          func() doc.Table { return table.Data(t) },
 		"planned":       func() doc.Table { return table.Planned(t.Protocol) },
 		"analysis plan": func() doc.Table { return table.AnalysisPlan(t.Protocol) },
@@ -190,13 +200,14 @@ func (b *builder) functions() template.FuncMap {
 		"signatures":    func() doc.Table { return table.Signatures(t.Protocol) },
 	}
 	ofResponse := map[string]func(r *result.Response) doc.Table{
-		"anova":       func(r *result.Response) doc.Table { return table.Anova(t.Plan, r) },
-		"summary":     func(r *result.Response) doc.Table { return table.Summary(t.Plan, r, b.decimals(r.Name)) },
-		"covariates":  func(r *result.Response) doc.Table { return table.Covariates(t.Plan, r) },
-		"contrasts":   func(r *result.Response) doc.Table { return table.Contrasts(t.Plan, r) },
-		"efficiency":  func(r *result.Response) doc.Table { return table.Efficiency(r) },
-		"diagnostics": func(r *result.Response) doc.Table { return table.Diagnostics(r) },
-		"residuals":   func(r *result.Response) doc.Table { return table.Residuals(t.Plan, r, maxPrinted) },
+		"anova":               func(r *result.Response) doc.Table { return table.Anova(t.Plan, r) },
+		"summary":             func(r *result.Response) doc.Table { return table.Summary(t.Plan, r, b.decimals(r.Name)) },
+		"covariates":          func(r *result.Response) doc.Table { return table.Covariates(t.Plan, r) },
+		"contrasts":           func(r *result.Response) doc.Table { return table.Contrasts(t.Plan, r, true) },
+		"unplanned contrasts": func(r *result.Response) doc.Table { return table.Contrasts(t.Plan, r, false) },
+		"efficiency":          func(r *result.Response) doc.Table { return table.Efficiency(r) },
+		"diagnostics":         func(r *result.Response) doc.Table { return table.Diagnostics(r) },
+		"residuals":           func(r *result.Response) doc.Table { return table.Residuals(t.Plan, r, maxPrinted) },
 	}
 	ofTerm := map[string]func(r *result.Response, term string) doc.Table{
 		"means":       func(r *result.Response, term string) doc.Table { return table.Means(t.Plan, r, term) },
@@ -223,6 +234,7 @@ func (b *builder) functions() template.FuncMap {
 		"look-ups":   func() []string { return prose.LookUps(t.Protocol) },
 		"coverage":   func() []string { return prose.Coverage(prose.Guideline(t, rs)) },
 		"provenance": func() []string { return prose.Provenance(rs, b.options.Go, b.options.Arch) },
+		"seal":       func() []string { return prose.Seal(t) },
 		"limits":     prose.Limits,
 	}
 	return template.FuncMap{
@@ -380,7 +392,11 @@ func (b *builder) answers() []doc.Block {
 	for i := range b.rs.Responses {
 		r := &b.rs.Responses[i]
 		if r.Role == "primary" {
-			box.Blocks = append(box.Blocks, paragraph(prose.Answer(b.trial.Plan, r)))
+			s := prose.Answer(b.trial.Plan, r)
+			if !prose.Planned(r) {
+				s = "Not planned before the data: " + s
+			}
+			box.Blocks = append(box.Blocks, paragraph(s))
 		}
 	}
 	if len(box.Blocks) == 0 {

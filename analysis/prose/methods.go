@@ -215,7 +215,7 @@ func Results(t *trial.Trial, r *result.Response) string {
 		}
 		s = append(s, fmt.Sprintf("%s: F(%s, %s) = %s, P %s.", verb, num.DF(float64(x.DF)), num.DF(float64(x.ErrorDF)), num.Statistic(float64(x.F)), num.PStatement(float64(x.P))))
 	}
-	for _, c := range r.Contrasts {
+	for _, c := range foremost(r) {
 		if !c.Estimate.Known() || !c.Lower.Known() {
 			continue
 		}

@@ -329,9 +329,9 @@ func PairText(a, b string) string {
 }
 
 // ContrastNotes are the notes of a table of contrasts.
-func ContrastNotes(p *layout.Plan, r *result.Response) []string {
+func ContrastNotes(contrasts []result.Contrast) []string {
 	trend, weights := false, false
-	for _, c := range r.Contrasts {
+	for _, c := range contrasts {
 		if strings.Contains(c.Name, ": linear") {
 			trend = true
 		} else if !strings.Contains(c.Name, ": ") {
@@ -343,7 +343,7 @@ func ContrastNotes(p *layout.Plan, r *result.Response) []string {
 		out = append(out, "Trends are polynomials on the actual levels, fitted in order; the estimate is the coefficient of the highest power, in units of the response per unit of the factor to that power. Lack of fit is what they leave of the term.")
 	}
 	if weights {
-		out = append(out, "Planned contrasts are weighted sums of adjusted means.")
+		out = append(out, "Contrasts are weighted sums of adjusted means.")
 	}
 	return out
 }
@@ -377,7 +377,7 @@ func Answer(p *layout.Plan, r *result.Response) string {
 		return name + ": not analysed; see the notes."
 	}
 	// A planned trend of the first order says most of a graded factor.
-	for _, c := range r.Contrasts {
+	for _, c := range foremost(r) {
 		if strings.HasSuffix(c.Name, ": linear") && c.Estimate.Known() {
 			d := num.SEDecimals(float64(c.SE))
 			f := strings.TrimSuffix(c.Name, ": linear")

@@ -15,6 +15,7 @@ import (
 	"penwright/protocol/diag"
 	"penwright/protocol/folder"
 	"penwright/protocol/layout"
+	"penwright/protocol/seal"
 	"penwright/protocol/welfare"
 )
 
@@ -34,6 +35,7 @@ type Trial struct {
 	Protocol  *protocol.Protocol
 	Plan      *layout.Plan
 	Welfare   []welfare.Finding
+	Seal      *seal.Seal // nil: the plan was not sealed
 	Allotment *allot.Allotment
 	Roster    *allot.Roster // nil without one
 	Table     *dataset.Table
@@ -70,8 +72,12 @@ func (t *Trial) open(files *folder.Folder) diag.List {
 		read(files, p, "report.template", p.Report.Template, maxTemplate, &list)
 	}
 	if !whole {
-		return list
+		_, more := seal.Read(files, nil)
+		return append(list, more...)
 	}
+	s, more := seal.Read(files, p)
+	t.Seal = s
+	list = append(list, more...)
 	plan, more := layout.New(p)
 	list = append(list, more...)
 	if more.HasErrors() {

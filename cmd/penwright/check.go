@@ -17,6 +17,7 @@ import (
 	"penwright/protocol/allot"
 	"penwright/protocol/diag"
 	"penwright/protocol/layout"
+	"penwright/protocol/seal"
 	"penwright/protocol/sheet"
 	"penwright/protocol/welfare"
 	"penwright/render"
@@ -99,7 +100,7 @@ func (a *app) check() *cobra.Command {
 func codes() []diag.CodeInfo {
 	var out []diag.CodeInfo
 	said := map[string]bool{}
-	for _, x := range slices.Concat(protocol.Codes(), layout.Codes(), welfare.Codes(), sheet.Codes(), allot.Codes(), dataset.Codes(), sound.Codes(), analysis.Codes()) {
+	for _, x := range slices.Concat(protocol.Codes(), layout.Codes(), welfare.Codes(), sheet.Codes(), allot.Codes(), seal.Codes(), dataset.Codes(), sound.Codes(), analysis.Codes()) {
 		if !said[x.Code] {
 			said[x.Code] = true
 			out = append(out, x)

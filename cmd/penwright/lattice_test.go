@@ -30,6 +30,7 @@ var lattice = map[string]string{
 	"protocol/layout":           "protocol protocol/factor protocol/diag",
 	"protocol/welfare":          "protocol protocol/layout protocol/diag",
 	"protocol/allot":            "protocol protocol/layout protocol/factor protocol/folder protocol/sheet protocol/diag",
+	"protocol/seal":             "protocol/allot protocol/allot+",
 
 	"analysis/dist":     "analysis/solve",
 	"analysis/strata":   "protocol/factor analysis/dist",
@@ -38,7 +39,7 @@ var lattice = map[string]string{
 	"analysis/power":    "protocol/factor analysis/dist analysis/solve analysis/strata analysis/linear",
 	"analysis/compare":  "analysis/dist analysis/solve",
 	"analysis/dataset":  "protocol protocol/layout protocol/allot protocol/folder protocol/sheet protocol/diag",
-	"analysis/trial":    "analysis/dataset+ analysis/dataset protocol/welfare",
+	"analysis/trial":    "analysis/dataset+ analysis/dataset protocol/seal protocol/welfare",
 	"analysis/prose":    "analysis/result analysis/num analysis/trial analysis/trial+",
 	"analysis/sound":    "analysis/trial analysis/trial+ analysis/prose analysis/result protocol/factor analysis/linear analysis/power",
 	"analysis": "analysis/sound analysis/trial analysis/trial+ analysis/prose analysis/result analysis/num protocol/factor analysis/dist analysis/strata " +

@@ -114,22 +114,12 @@ func present(files *folder.Folder, p *protocol.Protocol) (*Entry, error) {
 		return nil, err
 	}
 	e.SHA256 = folder.Hash(e.Plan)
-	hash := func(name string) (string, error) {
-		if name == "" {
-			return "", nil
-		}
-		f, err := files.Read(name, folder.MaxFile)
-		if errors.Is(err, fs.ErrNotExist) {
-			return "", nil
-		}
-		return f.SHA256, err
-	}
 	if p.Roster != nil {
-		if e.Roster, err = hash(p.Roster.File); err != nil {
+		if e.Roster, err = hash(files, p.Roster.File); err != nil {
 			return nil, err
 		}
 	}
-	e.Allotment, err = hash(allot.File)
+	e.Allotment, err = hash(files, allot.File)
 	return e, err
 }
 
@@ -158,7 +148,12 @@ func between(a, b *Entry) []Difference {
 }
 
 // short shows the first hex digits of a hash.
-func short(hash string) string { return hash[:min(len(hash), 12)] + "…" }
+func short(hash string) string {
+	if len(hash) > 12 {
+		return hash[:12] + "…"
+	}
+	return hash
+}
 
 // Changes are the writes that seal a trial as it is now: the entry at the end of the
 // record. e gives By, On and Data; the rest is set here. It is an error to add to a

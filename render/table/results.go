@@ -220,21 +220,29 @@ func Comparisons(p *layout.Plan, r *result.Response, term string) doc.Table {
 	return t
 }
 
-// Contrasts lists planned contrasts and trends; planned says which of the two kinds,
-// those in the plan or those not in it, is wanted.
-func Contrasts(p *layout.Plan, r *result.Response) doc.Table {
+// Contrasts lists contrasts and trends; planned says which of the two kinds, those in the
+// plan or those not in it, is wanted.
+func Contrasts(p *layout.Plan, r *result.Response, planned bool) doc.Table {
+	id, caption := "contrasts-", "Planned contrasts and trends of "
+	if !planned {
+		id, caption = "unplanned-contrasts-", "Contrasts and trends that were not planned before the data, of "
+	}
 	t := doc.Table{
-		ID:      "contrasts-" + r.Name,
-		Caption: text("Planned contrasts and trends of " + prose.ResponseText(r)),
+		ID:      id + r.Name,
+		Caption: text(caption + prose.ResponseText(r)),
 		Columns: []doc.Column{left(true), decimal(), decimal(), decimal(), decimal(), decimal(), decimal()},
 		Head:    head(cell("Contrast"), cell("Estimate"), cell("SE"), emph("SS"), emph("df"), emph("F"), emph("P")),
 	}
 	var ss []float64
+	var contrasts []result.Contrast
 	for _, c := range r.Contrasts {
-		ss = append(ss, float64(c.SS))
+		if c.Planned == planned {
+			contrasts = append(contrasts, c)
+			ss = append(ss, float64(c.SS))
+		}
 	}
 	dss := num.ColumnDecimals(positive(ss), 3, 4)
-	for _, c := range r.Contrasts {
+	for _, c := range contrasts {
 		d := num.SEDecimals(float64(c.SE))
 		df := num.DF(float64(c.NumeratorDF)) + ", " + num.DF(float64(c.DF))
 		t.Rows = append(t.Rows, doc.Row{Cells: []doc.Cell{
@@ -242,7 +250,7 @@ func Contrasts(p *layout.Plan, r *result.Response) doc.Table {
 			cell(fixed(c.SS, float64(c.SS), dss)), {Text: text(df), Own: true, Align: doc.Right}, cell(fixed(c.F, float64(c.F), 2)), cell(pText(c.P)),
 		}})
 	}
-	for _, s := range prose.ContrastNotes(p, r) {
+	for _, s := range prose.ContrastNotes(contrasts) {
 		t.Notes = append(t.Notes, text(s))
 	}
 	return t

@@ -361,12 +361,16 @@ func Events(p *protocol.Protocol) doc.Table {
 }
 
 // Exclusions lists units left out, and whether the rule stood beforehand.
-func Exclusions(p *protocol.Protocol) doc.Table {
+func Exclusions(t *trial.Trial) doc.Table {
+	p := t.Protocol
 	var rows [][]string
 	for _, e := range p.Exclusions {
 		rule := "not among the rules set before the trial"
 		if e.Rule != "" {
 			rule = e.Rule
+			if !t.Seal.Rule(e.Rule) {
+				rule += " (not planned before the data)"
+			}
 		}
 		masked := ""
 		if e.BeforeUnblinding != nil {
