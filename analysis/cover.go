@@ -29,6 +29,9 @@ func Codes() []diag.CodeInfo {
 		{Code: "no-error", Text: "no degrees of freedom are left to estimate error"},
 		{Code: "time-trend", Text: "rows do not lie within the units of the time trend"},
 		{Code: "too-large", Text: "the model of a response has too many columns"},
+		{Code: sizeCheck, Text: "what the number of units gives beside what it is to give"},
+		{Code: sizeShort, Text: "the number of units does not reach the power, precision or error df that [sample_size] states"},
+		{Code: sizeUnknown, Text: "what the number of units reaches cannot be computed; the message names what is missing"},
 	}
 }
 
@@ -45,6 +48,10 @@ func Foresee(t *trial.Trial) diag.List {
 		}
 	}
 	list = append(list, sound.List(sound.Check(t))...)
+	if t.Protocol.SampleSize != nil {
+		_, found := Size(t)
+		list = append(list, found...)
+	}
 	return list
 }
 

@@ -16,6 +16,7 @@ import (
 
 // Codes of what Size reports beside the notes of its result.
 const (
+	sizeCheck   = "size"
 	sizeUnknown = "size-not-computed"
 	sizeShort   = "size-too-small"
 )
@@ -64,7 +65,8 @@ type sizer struct {
 	eff    efficiency
 
 	grower grower
-	known  bool     // something is wished for that the plan reaches or does not
+	known  bool     // something is wished for
+	does   bool     // and the plan reaches it
 	losses int      // replicates needed with the losses that are expected; 0: none are
 	now    *setting // of the plan as it stands
 	out    *result.SampleSize
@@ -98,6 +100,9 @@ func newSizer(t *trial.Trial) *sizer {
 		z.alpha = *z.r.Alpha
 	}
 	z.out.Basis, z.out.Response = z.s.Basis, z.s.Response
+	if z.r != nil {
+		z.out.Response = z.r.Name
+	}
 	return z
 }
 
@@ -194,13 +199,19 @@ func (z *sizer) compute() {
 func (z *sizer) amounts() bool {
 	s, out := z.s, z.out
 	z.diff, z.margin, z.half = math.NaN(), math.NaN(), math.NaN()
-	logs := z.r != nil && z.r.Transform == "log"
+	transform := ""
+	if z.r != nil && z.r.Transform != "none" {
+		transform = z.r.Transform
+	}
+	logs := transform == "log"
 	percent := len(s.SD) == 0 && s.CV != nil && !logs
 	switch {
 	case logs:
 		z.scale = "log"
 	case percent:
 		z.scale = "percent"
+	case transform != "":
+		z.scale = "transformed"
 	default:
 		z.scale = "unit"
 	}
@@ -331,7 +342,11 @@ func (z *sizer) judge() {
 	}
 	out.Detectable = result.Number(t.Detectable(z.wished(), se, at))
 	needed := z.grower.first(func(x *setting) bool { yes, _ := z.reached(x, sd); return yes })
-	if _, z.known = z.reached(now, sd); z.known {
+	z.does, z.known = z.reached(now, sd)
+	if z.does && (needed == nil || now.units < needed.units) {
+		needed = now // of unequal replication, beside those that were tried
+	}
+	if z.known {
 		out.Needed = z.needed(needed)
 		out.WithLosses = z.needed(z.withLosses(needed))
 		if needed == nil && z.grower.step > 0 {
@@ -387,7 +402,7 @@ func (z *sizer) rule() {
 	}
 	z.out.ErrorDFRule = plain(first)
 	if z.s.Basis == "error df" {
-		z.known = true
+		z.does, z.known = z.now.errorDF >= least, true
 		z.out.Method = "error df"
 		z.out.Needed, z.out.WithLosses = plain(first), plain(z.withLosses(first))
 	}
@@ -407,7 +422,7 @@ func (z *sizer) curve(sd float64, needed *setting) {
 	if math.IsNaN(z.diff) && math.IsNaN(z.margin) && math.IsNaN(z.half) {
 		return
 	}
-	last := z.grower.index(z.now.count)
+	last := max(z.grower.index(z.now.count), 0)
 	if needed != nil {
 		last = max(last, z.grower.index(needed.count))
 	}
@@ -426,6 +441,9 @@ func (z *sizer) curve(sd float64, needed *setting) {
 		x := z.grower.at(j)
 		if x == nil || x.replicates <= seen {
 			continue
+		}
+		if x.replicates == z.now.replicates {
+			x = z.now // which may have some treatments once more
 		}
 		seen = x.replicates
 		z.out.Curve = append(z.out.Curve, result.PowerPoint{
@@ -457,7 +475,7 @@ func (z *sizer) groups() {
 		}
 		z.out.Groups = append(z.out.Groups, g)
 	}
-	at := z.grower.index(z.now.count)
+	at := max(z.grower.index(z.now.count), 0)
 	for _, per := range sizes {
 		row(z.now, per)
 	}
@@ -485,6 +503,9 @@ func (z *sizer) explain() {
 	if z.eff.reason != "" && z.now.errorDF > 0 {
 		z.missing("", z.eff.reason, "")
 	}
+	if z.s.Basis != "" && z.s.Term == "" && z.s.Contrast == "" && len(p.Terms) > 1 {
+		z.note("size-first-term", prose.SizeFirstTerm(p, z.target.name))
+	}
 	if n := len(z.covariates()); n > 0 && out.ErrorDF != nil {
 		z.note("size-covariates", prose.SizeCovariates(n))
 	}
@@ -496,6 +517,9 @@ func (z *sizer) explain() {
 	}
 	if z.scale == "percent" && out.SD.Known() {
 		z.note("size-scale", prose.SizePercent())
+	}
+	if z.scale == "transformed" && out.SD.Known() {
+		z.note("size-scale", prose.SizeTransformed(z.r.Transform))
 	}
 	if z.scale == "log" && out.SD.Known() {
 		z.note("size-scale", prose.SizeLog(z.s.CV != nil))
@@ -519,16 +543,12 @@ func (z *sizer) explain() {
 // short tells whether the plan does not hold what is wished of it, or with the losses that
 // are expected will not.
 func (z *sizer) short() bool {
-	if !z.known {
-		return false
-	}
-	need := z.out.Needed
-	return need == nil || z.out.Replicates < max(need.Replicates, z.losses)
+	return z.known && (!z.does || z.out.Replicates < z.losses)
 }
 
 // checks are the findings on size for the checks of the design.
 func (z *sizer) checks() []result.Check {
-	c := result.Check{Code: "size", Level: "pass", Where: z.trial.Protocol.Pos("sample_size").String()}
+	c := result.Check{Code: sizeCheck, Level: "pass", Where: z.trial.Protocol.Pos("sample_size").String(), Reason: prose.SizeReason()}
 	switch {
 	case z.known:
 		if z.short() {
@@ -546,6 +566,7 @@ func (z *sizer) checks() []result.Check {
 // terms tells for every treatment term what the plan gives: replicates, error df, and the
 // difference that the wished power, or the usual one, detects.
 func (z *sizer) terms() {
+	out := z.out
 	for i := range z.plan.Terms {
 		t := &z.plan.Terms[i]
 		tg := target{name: t.Name, unit: t.Unit, term: i, df: t.DF, rep: -1, order: len(t.Factors)}
@@ -566,12 +587,22 @@ func (z *sizer) terms() {
 				row.DetectableSD = result.Number(f.Detectable(z.wished(), math.Sqrt(x.variance/e.value), 0))
 			}
 		}
-		if sd := z.sd(tg); sd.why == "" {
+		// A single SD is that of the unit of the size's own term.
+		single := len(z.s.SD) == 0 || len(z.s.SD) == 1 && z.s.SD[0].Stratum == ""
+		if sd := z.sd(tg); sd.why == "" && out.SD.Known() && (!single || z.sameError(tg)) {
 			row.SD = result.Number(sd.value)
 			row.Detectable = row.SD * row.DetectableSD
 		}
-		z.out.Terms = append(z.out.Terms, row)
+		out.Terms = append(out.Terms, row)
 	}
+}
+
+// sameError tells whether a term is tested over the error of the size's own target.
+func (z *sizer) sameError(t target) bool {
+	if z.target.rep >= 0 || z.target.term < 0 || z.target.unit != t.unit {
+		return false
+	}
+	return z.plan.Terms[t.term].Over < 0 && z.plan.Terms[z.target.term].Over < 0 || z.target.term == t.term
 }
 
 // covariates are those that the response is adjusted for; each takes one degree of

@@ -2,9 +2,13 @@ package analysis
 
 import (
 	"math"
+	"math/rand/v2"
+	"path/filepath"
 	"strings"
 	"testing"
 	"testing/fstest"
+
+	"github.com/rogpeppe/go-internal/txtar"
 
 	"penwright/analysis/dist"
 	"penwright/analysis/result"
@@ -87,6 +91,7 @@ func TestErrorDFRule(t *testing.T) {
 		{"three", diets(3, strings.Replace(sizePens, "16", "9", 1), rule, ""), 5, 15, 12},
 		{"five", diets(5, strings.Replace(sizePens, "16", "20", 1), rule, ""), 3, 15, 10},
 		{"six", diets(6, strings.Replace(sizePens, "16", "12", 1), rule, ""), 3, 18, 12},
+		{"of 18, unequal", four(strings.Replace(sizePens, "16", "18", 1), rule), 4, 16, 12},
 		{"eight", diets(8, sizePens, rule, ""), 3, 24, 16},
 		{"blocks", four(blocks, "[analysis]\nerror_df_min = 12\n"+rule), 5, 20, 12},
 	} {
@@ -365,5 +370,245 @@ func TestMissingKeys(t *testing.T) {
 	stated, list := sized(t, four(blocks, ""))
 	if stated.Basis != "" || len(list) > 0 || stated.ErrorDFRule == nil || stated.ErrorDFRule.Replicates != 5 {
 		t.Errorf("without [sample_size]: %+v, %v", stated, list)
+	}
+}
+
+// Sites at which treatments interact at random: the error is site × diet, with as many
+// replicates as there are sites.
+func TestSitesSize(t *testing.T) {
+	units := "[[unit]]\nname = \"site\"\ncount = 5\ninteracts = true\n[[unit]]\nname = \"pen\"\nwithin = \"site\"\ncount = 12\nreceives = [\"diet\"]\n"
+	s, list := sized(t, four(units, "[sample_size]\nbasis = \"power\"\ndifference = 2\nsd = 1\n"))
+	if s.Replicates != 5 || s.ErrorDF == nil || *s.ErrorDF != 12 || s.Grows == nil || s.Grows.Unit != "site" {
+		t.Fatalf("%+v %v", s, list)
+	}
+	close9(t, "power", s.Power, dist.NoncentralFUpper(dist.FQuantile(.05, 3, 12), 3, 12, 5*4/2.))
+}
+
+// An augmented design cannot grow: entries stand once. Its checks and entries have what
+// the allotment leaves them, once there is one.
+func TestFixedSize(t *testing.T) {
+	protocol := `protocol = 1
+[trial]
+code = "HM-2"
+title = "Lines"
+objective = "Which line?"
+[[treatment]]
+code = "c1"
+levels = {}
+[[treatment]]
+code = "c2"
+levels = {}
+`
+	for _, e := range []string{"e1", "e2", "e3", "e4", "e5", "e6", "e7", "e8", "e9"} {
+		protocol += "[[treatment]]\ncode = \"" + e + "\"\nlevels = {}\n"
+	}
+	protocol += `[[unit]]
+name = "block"
+count = 3
+[[unit]]
+name = "plot"
+within = "block"
+count = 5
+receives = ["treatment"]
+checks = ["c1", "c2"]
+[[response]]
+name = "yield"
+unit = "t/ha"
+kind = "continuous"
+[sample_size]
+basis = "stated"
+source = "land at hand"
+difference = 2
+sd = 1
+power = 0.8
+`
+	s, list := sized(t, protocol)
+	if s.Power.Known() || s.Grows != nil || len(s.Notes) == 0 || len(list) > 0 {
+		t.Errorf("%+v %v", s, list)
+	}
+}
+
+// Second road: data made by the components of variance and analysed by the textbook sums
+// of squares of blocks and of a split plot reject as often as computed.
+func TestSizesSimulated(t *testing.T) {
+	random := rand.New(rand.NewPCG(8, 21))
+	const draws = 20_000
+	agree := func(what string, count int, p result.Number) {
+		t.Helper()
+		if got := float64(count) / draws; math.Abs(got-float64(p)) > 4*math.Sqrt(float64(p)*(1-float64(p))/draws) {
+			t.Errorf("%s: simulated %.4f, computed %.4f", what, got, float64(p))
+		}
+	}
+	// Six blocks of four pens of six animals; two means 60 apart, the others midway.
+	penned := strings.Replace(blocks, "count = 4", "count = 4\nanimals = 6", 1)
+	s, _ := sized(t, four(penned, "[sample_size]\nbasis = \"power\"\ndifference = 60\nsd = { pen = 20, animal = 60 }\n"))
+	count := 0
+	for range draws {
+		y := make([][]float64, 6)
+		for b := range y {
+			level := 50 * random.NormFloat64()
+			for d := range 4 {
+				pen := level + []float64{-30, 0, 0, 30}[d] + 20*random.NormFloat64()
+				sum := 0.0
+				for range 6 {
+					sum += pen + 60*random.NormFloat64()
+				}
+				y[b] = append(y[b], sum/6)
+			}
+		}
+		f, _ := twoWay(y)
+		if dist.FUpper(f, 3, 15) < .05 {
+			count++
+		}
+	}
+	agree("blocks", count, s.Power)
+
+	// Four blocks of three paddocks of four pens; grazing in paddocks, diet in pens.
+	split := func(term, d string) *result.SampleSize {
+		s, _ := sized(t, four(splitUnits, "[sample_size]\nbasis = \"power\"\nterm = \""+term+"\"\ndifference = "+d+"\nsd = { paddock = 0.9, pen = 1.2 }\n"))
+		return s
+	}
+	whole, sub := split("grazing", "2.5"), split("diet", "1.5")
+	wholes, subs := 0, 0
+	for range draws {
+		means := make([][]float64, 4) // of paddocks, for the whole plots
+		within := 0.0                 // error sum of squares of pens
+		diet := make([]float64, 4)
+		type cell struct{ v [4][4]float64 }
+		var y [3]cell // grazing → block × diet
+		for b := range means {
+			for g := range 3 {
+				paddock := random.NormFloat64()*.9 + []float64{-1.25, 0, 1.25}[g]
+				mean := 0.0
+				for d := range 4 {
+					v := paddock + []float64{-.75, 0, 0, .75}[d] + 1.2*random.NormFloat64()
+					y[g].v[b][d] = v
+					diet[d] += v / 12
+					mean += v / 4
+				}
+				means[b] = append(means[b], mean)
+			}
+		}
+		if f, _ := twoWay(means); dist.FUpper(f, 2, 6) < .05 {
+			wholes++
+		}
+		// Pens: within each grazing, blocks × diet leave 9 degrees of freedom of error.
+		for g := range 3 {
+			var rows [][]float64
+			for b := range 4 {
+				rows = append(rows, y[g].v[b][:])
+			}
+			_, e := twoWay(rows)
+			within += e
+		}
+		grand, ss := 0.0, 0.0
+		for _, m := range diet {
+			grand += m / 4
+		}
+		for _, m := range diet {
+			ss += 12 * (m - grand) * (m - grand)
+		}
+		if dist.FUpper(ss/3/(within/27), 3, 27) < .05 {
+			subs++
+		}
+	}
+	agree("whole plots", wholes, whole.Power)
+	agree("subplots", subs, sub.Power)
+
+	// Equivalence of two groups of twelve within ± 1.2, truly 0.2 apart.
+	s, _ = sized(t, diets(2, strings.Replace(sizePens, "16", "24", 1), "[sample_size]\nbasis = \"power\"\nmargin = 1.2\ndifference = 0.2\nsd = 1\n", ""))
+	count = 0
+	x := dist.TQuantile(.05, 22)
+	for range draws {
+		var m, ss [2]float64
+		for g := range 2 {
+			var v [12]float64
+			for i := range v {
+				v[i] = random.NormFloat64() + .2*float64(g)
+				m[g] += v[i] / 12
+			}
+			for i := range v {
+				ss[g] += (v[i] - m[g]) * (v[i] - m[g])
+			}
+		}
+		se := math.Sqrt((ss[0] + ss[1]) / 22 * 2 / 12)
+		if d := m[1] - m[0]; (d+1.2)/se > x && (1.2-d)/se > x {
+			count++
+		}
+	}
+	agree("equivalence", count, s.Power)
+}
+
+// twoWay is F of the columns of a two-way table without repetition, and the error sum of
+// squares.
+func twoWay(y [][]float64) (f, errorSS float64) {
+	r, c := len(y), len(y[0])
+	rows, columns, grand := make([]float64, r), make([]float64, c), 0.0
+	for i := range y {
+		for j, v := range y[i] {
+			rows[i] += v / float64(c)
+			columns[j] += v / float64(r)
+			grand += v / float64(r*c)
+		}
+	}
+	between := 0.0
+	for _, m := range columns {
+		between += float64(r) * (m - grand) * (m - grand)
+	}
+	for i := range y {
+		for j, v := range y[i] {
+			e := v - rows[i] - columns[j] + grand
+			errorSS += e * e
+		}
+	}
+	return between / float64(c-1) / (errorSS / float64((r-1)*(c-1))), errorSS
+}
+
+// Every published and hand-made layout has a size, whatever it is: nothing panics, the
+// curve rises, and what the plan is said to need is reached by it and not by less.
+func TestSizesOfAllLayouts(t *testing.T) {
+	files, err := filepath.Glob("../testdata/reference/*.txtar")
+	if err != nil || len(files) == 0 {
+		t.Fatal(err)
+	}
+	computed := 0
+	for _, name := range files {
+		a, err := txtar.ParseFile(name)
+		if err != nil {
+			t.Fatal(err)
+		}
+		m := fstest.MapFS{}
+		for _, f := range a.Files {
+			m[f.Name] = &fstest.MapFile{Data: f.Data}
+		}
+		if m["protocol.toml"] == nil || strings.Contains(string(m["protocol.toml"].Data), "[sample_size]") {
+			continue
+		}
+		m["protocol.toml"].Data = append(m["protocol.toml"].Data, "\n[sample_size]\nbasis = \"power\"\ndifference = 2\nsd = 1\npower = 0.9\nattrition = 0.1\n"...)
+		tr, list := trial.Open(folder.FromFS(m))
+		if tr.Plan == nil {
+			t.Errorf("%s: %v", name, list)
+			continue
+		}
+		s, _ := Size(tr)
+		if s.Power.Known() {
+			computed++
+		} else if len(s.Notes) == 0 {
+			t.Errorf("%s: no power and no reason", name)
+		}
+		for i := range s.Curve {
+			if i > 0 && s.Curve[i].Power < s.Curve[i-1].Power-1e-12 {
+				t.Errorf("%s: the curve falls: %+v", name, s.Curve)
+			}
+			if n := s.Needed; n != nil && (s.Curve[i].Power >= .9) != (s.Curve[i].Replicates >= n.Replicates) {
+				t.Errorf("%s: needs %+v, but %+v", name, n, s.Curve[i])
+			}
+		}
+		if s.Needed != nil && s.WithLosses != nil && s.WithLosses.Replicates < s.Needed.Replicates {
+			t.Errorf("%s: losses need less: %+v", name, s.WithLosses)
+		}
+	}
+	if computed < len(files)*3/4 {
+		t.Errorf("the power of %d layouts of %d was computed", computed, len(files))
 	}
 }

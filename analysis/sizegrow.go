@@ -100,7 +100,7 @@ func trendOf(t *protocol.TimeTrend) string {
 }
 
 // prepared finds count and step of the unit: the smallest number that can be added so
-// that the plan keeps its kind.
+// that the plan keeps its kind, and the smallest count from which it can.
 func (g grower) prepared() grower {
 	p := g.z.plan
 	n := perParentCount(&p.Protocol.Units[g.unit])
@@ -108,19 +108,28 @@ func (g grower) prepared() grower {
 		return g
 	}
 	g.count = n
-	for step := 1; step <= growTries; step++ {
-		q := g.rebuilt(n + step)
-		if g.spent > growTotal/2 {
-			return g
+	// The first two counts from the planned one on at which the plan is of its kind, all
+	// treatments as often as each other; where the plan itself is not, it stands beside
+	// the counts that are tried.
+	first := 0
+	for c := n; c <= n+growTries && g.spent <= growTotal/2; c++ {
+		q := p
+		if c != n {
+			q = g.rebuilt(c)
 		}
-		if q != nil && sameKind(p, q) {
-			g.step = step
-			g.base = n % step
-			if g.base == 0 {
-				g.base = step
-			}
-			return g
+		if q == nil || !sameKind(p, q) {
+			continue
 		}
+		if first == 0 {
+			first = c
+			continue
+		}
+		g.step = c - first
+		g.base = first % g.step
+		if g.base == 0 {
+			g.base = g.step
+		}
+		break
 	}
 	return g
 }
@@ -180,8 +189,9 @@ func (g *grower) rebuilt(count int) *layout.Plan {
 	return plan
 }
 
-// sameKind tells whether plan q replicates its treatments in the way that p does: all equally
-// where p does, complete in blocks where p is, and every term in its stratum.
+// sameKind tells whether plan q replicates its treatments in the way that p does: all
+// equally unless the protocol states other numbers, complete in blocks where p is, and
+// every term in its stratum.
 func sameKind(p, q *layout.Plan) bool {
 	if len(p.Terms) != len(q.Terms) {
 		return false
@@ -199,7 +209,7 @@ func sameKind(p, q *layout.Plan) bool {
 		if b == nil || b.Separate || a.Complete != b.Complete {
 			return false
 		}
-		if slices.Min(a.Total) == slices.Max(a.Total) && slices.Min(b.Total) != slices.Max(b.Total) {
+		if len(p.Protocol.Units[u].Replicates) == 0 && a.Checks == nil && slices.Min(b.Total) != slices.Max(b.Total) {
 			return false
 		}
 	}
@@ -214,7 +224,8 @@ func (g *grower) countOf(p *layout.Plan) int {
 	return p.Units[g.unit].N
 }
 
-// index is the place of a count in the order of those that are tried.
+// index is the place of a count in the order of those that are tried, or of the next
+// smaller one.
 func (g *grower) index(count int) int {
 	if g.step == 0 {
 		return 0
@@ -244,7 +255,7 @@ func (g *grower) at(j int) *setting {
 	if count != g.count {
 		plan = g.rebuilt(count)
 	}
-	if plan != nil && (count == g.count || sameKind(g.z.plan, plan)) {
+	if plan != nil && sameKind(g.z.plan, plan) {
 		if s := g.z.setting(plan); s.errorDF > 0 {
 			s.count = count
 			x = s

@@ -274,6 +274,21 @@ func (z *sizer) counts(p *layout.Plan) []float64 {
 		return []float64{n, n} // each time is measured on every unit
 	}
 	term := &p.Terms[t.term]
+	if term.Over >= 0 {
+		// Its error is that of the mean of one treatment in one of the units that interact.
+		size := 1
+		if t.groups == nil && len(term.Factors) == 1 {
+			size = len(p.Factors[term.Factors[0]].Levels)
+		}
+		out := make([]float64, max(size, len(t.groups)))
+		for i := range out {
+			out[i] = float64(p.Units[p.Crossed[term.Over].Unit].N)
+			if t.groups != nil {
+				out[i] *= float64(len(t.groups[i]))
+			}
+		}
+		return out
+	}
 	switch {
 	case t.groups != nil:
 		each := levelShares(p, term.Factors[0])
@@ -462,6 +477,11 @@ func (z *sizer) sd(t target) spread {
 	case single > 0:
 		if holder < 0 {
 			return spread{why: prose.SizeNoGroup(p, t.unit)}
+		}
+		for u := range p.Units {
+			if u != t.unit && p.Units[u].Role == layout.Experimental && p.Coarse(u, t.unit) != nil {
+				return spread{why: prose.SizeGroupsInside(p, t.unit, u)}
+			}
 		}
 		rho := *s.ICC
 		x := spread{between: rho * single * single, inside: (1 - rho) * single * single, per: per, text: prose.SizeICC(p, t.unit, rho, per)}

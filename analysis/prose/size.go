@@ -141,6 +141,28 @@ func SizeLog(cv bool) string {
 	return s
 }
 
+// SizeTransformed says on which scale the size is computed.
+func SizeTransformed(transform string) string {
+	return fmt.Sprintf("Difference, margin, half width and spread are on the scale of the transformation (%s), on which the response is analysed.", transform)
+}
+
+// SizeFirstTerm says which term was taken where none is named.
+func SizeFirstTerm(p *layout.Plan, term string) string {
+	return fmt.Sprintf("%s names no term; the first, %s, was taken.", upperFirst("[sample_size]"), TermText(p, term))
+}
+
+// SizeGroupsInside says that a single correlation does not tell the spread of a unit that
+// holds smaller treated units.
+func SizeGroupsInside(p *layout.Plan, unit, inside int) string {
+	u, v := &p.Units[unit], &p.Units[inside]
+	return fmt.Sprintf("A %s holds several %s, so one correlation of animals does not tell its spread; give sd for each: { %s = …, %s = …, animal = … }.", UnitName(u), Plural(UnitName(v)), u.Name, v.Name)
+}
+
+// SizeReason says why the number of units is looked at.
+func SizeReason() string {
+	return "too few units answer no question and too many use animals for nothing (ARRIVE 2.0, item 2b: how the number was decided)"
+}
+
 // SizeSides says that one-sidedness bears on no F test.
 func SizeSides(p *layout.Plan, term string) string {
 	return fmt.Sprintf("The F test of %s has no sides, so sides = 1 does not bear on it; a contrast would have them.", TermText(p, term))
@@ -213,7 +235,8 @@ func fewDecimals(x float64) string {
 	return num.Fixed(x, 1)
 }
 
-// amount prints a number on the scale of a size with decimals to two digits of its spread.
+// amount prints a computed number on the scale of a size, to the place that shows its
+// spread to two digits.
 func amount(p *layout.Plan, s *result.SampleSize, x result.Number) string {
 	if !x.Known() {
 		return num.Absent
@@ -222,18 +245,24 @@ func amount(p *layout.Plan, s *result.SampleSize, x result.Number) string {
 	if s.SD.Known() {
 		d = num.SEDecimals(float64(s.SD))
 	}
-	return SizeAmount(p, s, num.Fixed(float64(x), max(d, min(places(round(float64(x))), 3))))
+	return SizeAmount(p, s, num.Fixed(float64(x), d))
 }
 
-// round drops what binary fractions leave behind the sixth decimal.
-func round(x float64) float64 { return math.Round(x*1e6) / 1e6 }
+// stated prints a number as the protocol has it; one that was brought to another scale
+// with four decimals.
+func stated(p *layout.Plan, s *result.SampleSize, x result.Number) string {
+	if !x.Known() {
+		return num.Absent
+	}
+	return SizeAmount(p, s, num.Fixed(float64(x), min(places(float64(x)), 4)))
+}
 
 // SizeAmount puts the unit of a size behind a printed number.
 func SizeAmount(p *layout.Plan, s *result.SampleSize, number string) string {
 	switch s.Scale {
 	case "percent":
 		return number + "\u202f%"
-	case "log", "":
+	case "log", "transformed", "":
 		return number
 	}
 	if r := p.Protocol.Response(s.Response); r != nil {
@@ -296,12 +325,12 @@ func counted(p *layout.Plan, s *result.SampleSize, count int) string {
 func wish(p *layout.Plan, s *result.SampleSize) string {
 	switch s.Method {
 	case "half width":
-		return fmt.Sprintf("a half width of %s", amount(p, s, s.WishedHalf))
+		return fmt.Sprintf("a half width of %s", stated(p, s, s.WishedHalf))
 	case "error df":
 		return fmt.Sprintf("%d degrees of freedom for the error", p.Protocol.Analysis.ErrorDFMin)
 	}
 	if !s.Difference.Known() && !s.Margin.Known() {
-		return fmt.Sprintf("a half width of %s", amount(p, s, s.WishedHalf))
+		return fmt.Sprintf("a half width of %s", stated(p, s, s.WishedHalf))
 	}
 	return fmt.Sprintf("a power of %s", PowerText(s.Wished))
 }
@@ -381,10 +410,10 @@ func SizeFound(p *layout.Plan, s *result.SampleSize) []string {
 		case s.Method == "two one-sided t" || s.Margin.Known():
 			what := "when the means are truly equal"
 			if s.Difference.Known() {
-				what = fmt.Sprintf("when they truly differ by %s", amount(p, s, s.Difference))
+				what = fmt.Sprintf("when they truly differ by %s", stated(p, s, s.Difference))
 			}
 			out = append(out, fmt.Sprintf("The probability to show that two means lie within %s of each other is %s %s (%s, each at α = %s).",
-				amount(p, s, s.Margin), PowerText(s.Power), what, test, num.Fixed(float64(s.Alpha), places(float64(s.Alpha)))))
+				stated(p, s, s.Margin), PowerText(s.Power), what, test, num.Fixed(float64(s.Alpha), places(float64(s.Alpha)))))
 		default:
 			of := "between two means"
 			if s.Contrast != "" {
@@ -396,7 +425,7 @@ func SizeFound(p *layout.Plan, s *result.SampleSize) []string {
 			if by != "" {
 				by = " (" + by + ", α = " + num.Fixed(float64(s.Alpha), places(float64(s.Alpha))) + ")"
 			}
-			out = append(out, fmt.Sprintf("The power to detect a difference of %s %s is %s%s.", amount(p, s, s.Difference), of, PowerText(s.Power), by))
+			out = append(out, fmt.Sprintf("The power to detect a difference of %s %s is %s%s.", stated(p, s, s.Difference), of, PowerText(s.Power), by))
 		}
 	}
 	if s.Detectable.Known() {
@@ -478,7 +507,7 @@ func SizeNotes(s *result.SampleSize) []string {
 func PowerCaption(p *layout.Plan, s *result.SampleSize) string {
 	text := fmt.Sprintf("Power by replication for %s", subject(p, s))
 	if s.Margin.Known() {
-		return text + fmt.Sprintf(", equivalence within %s", amount(p, s, s.Margin))
+		return text + fmt.Sprintf(", equivalence within %s", stated(p, s, s.Margin))
 	}
-	return text + fmt.Sprintf(", a difference of %s and a standard deviation of %s", amount(p, s, s.Difference), amount(p, s, s.SD))
+	return text + fmt.Sprintf(", a difference of %s and a standard deviation of %s", stated(p, s, s.Difference), amount(p, s, s.SD))
 }
