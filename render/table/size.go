@@ -63,7 +63,7 @@ func Sizes(p *layout.Plan, s *result.SampleSize) doc.Table {
 		h = append(h, cell("Power"))
 	}
 	t.Columns = append(t.Columns, decimal(), left(false))
-	h = append(h, cell(sizeUnit(p, s, "Half width")), cell(""))
+	h = append(h, cell(sizeUnit(p, s, "Half width")), cell("Remark"))
 	t.Head = head(h...)
 	d := sizeDecimals(s)
 	for _, c := range s.Curve {
