@@ -64,6 +64,7 @@ func (a *app) writeDemo(dir string) error {
 	if err != nil {
 		return failed(err)
 	}
+	f.Step = a.step
 	defer func() { _ = f.Close() }() // everything was synced when it was applied
 	if other, err := foreign(f); err != nil {
 		return failed(err)

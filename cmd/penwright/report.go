@@ -102,6 +102,7 @@ func (a *app) makeReport(o *opened, out, template string, only []string) ([]stri
 	if err != nil {
 		return nil, failed(err)
 	}
+	target.Step = a.step
 	defer func() { _ = target.Close() }() // everything was synced when it was applied
 	var changes []folder.Change
 	var paths []string

@@ -25,7 +25,7 @@ import (
 var update = flag.Bool("update", false, "rewrite the expected output in the test data")
 
 func TestMain(m *testing.M) {
-	testscript.Main(m, map[string]func(){"penwright": main})
+	testscript.Main(m, map[string]func(){"penwright": main, "penwright-killed": killed})
 }
 
 // The commands that the scripts have beside the usual ones:

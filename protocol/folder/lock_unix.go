@@ -26,5 +26,10 @@ func (f *Folder) Lock() (unlock func(), err error) {
 		}
 		return nil, fmt.Errorf("lock the folder: %w", err)
 	}
-	return func() { _ = dir.Close() }, nil // closing releases the lock
+	return func() {
+		// Closing alone would leave the lock to a child that is just being started, which
+		// holds a copy of every descriptor until its own program begins.
+		_ = syscall.Flock(int(dir.Fd()), syscall.LOCK_UN)
+		_ = dir.Close() // only locked
+	}, nil
 }
