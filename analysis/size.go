@@ -168,7 +168,7 @@ func (z *sizer) compute() {
 	}
 	ok := z.find()
 	if ok {
-		out.Term, out.Contrast = z.target.name, z.s.Contrast
+		out.Term, out.Contrast, out.Unit = z.target.name, z.s.Contrast, z.plan.Units[z.target.unit].Name
 		z.eff = z.efficiency(z.target)
 		z.now = z.setting(z.plan)
 		out.Replicates, out.Units = z.now.replicates, z.plan.Units[z.target.unit].N
@@ -353,7 +353,7 @@ func (z *sizer) judge() {
 			z.note("size-unreached", prose.SizeUnreached(z.plan, z.grower.unit))
 		}
 	}
-	z.curve(sd, needed)
+	settings := z.curve(sd, needed)
 	if !math.IsNaN(z.diff) {
 		for k := 1; k <= 8; k++ {
 			d := z.diff * float64(k) / 4
@@ -361,7 +361,10 @@ func (z *sizer) judge() {
 		}
 	}
 	for _, share := range []float64{0.75, 1, 1.25} {
-		x := result.SDPower{SD: result.Number(sd * share), Power: result.Number(z.power(now, z.diff, sd*share))}
+		x := result.SDPower{SD: result.Number(sd * share), Power: result.Number(z.power(now, z.diff, sd*share)), Curve: []result.Number{}}
+		for _, at := range settings {
+			x.Curve = append(x.Curve, result.Number(z.power(at, z.diff, sd*share)))
+		}
 		if _, known := z.reached(now, sd); known {
 			if first := z.grower.first(func(x *setting) bool { yes, _ := z.reached(x, sd*share); return yes }); first != nil {
 				x.Replicates = first.replicates
@@ -417,11 +420,12 @@ func plain(x *setting) *result.Needed {
 }
 
 // curve is power by replication, from the smallest that leaves an error to half as much
-// again as is planned or needed.
-func (z *sizer) curve(sd float64, needed *setting) {
+// again as is planned or needed. It returns the settings of its points.
+func (z *sizer) curve(sd float64, needed *setting) []*setting {
 	if math.IsNaN(z.diff) && math.IsNaN(z.margin) && math.IsNaN(z.half) {
-		return
+		return nil
 	}
+	var out []*setting
 	last := max(z.grower.index(z.now.count), 0)
 	if needed != nil {
 		last = max(last, z.grower.index(needed.count))
@@ -446,11 +450,13 @@ func (z *sizer) curve(sd float64, needed *setting) {
 			x = z.now // which may have some treatments once more
 		}
 		seen = x.replicates
+		out = append(out, x)
 		z.out.Curve = append(z.out.Curve, result.PowerPoint{
 			Replicates: x.replicates, ErrorDF: x.errorDF, Count: x.count,
 			Power: result.Number(z.power(x, z.diff, sd)), HalfWidth: result.Number(z.halfWidth(x, sd)),
 		})
 	}
+	return out
 }
 
 // groups compares more units with more animals in each, where the SD is made of both.
@@ -536,7 +542,7 @@ func (z *sizer) explain() {
 	if z.short() {
 		pos := z.trial.Protocol.Pos("sample_size")
 		z.list.Add(diag.Diagnostic{Pos: pos, Key: "sample_size", Severity: diag.Warning, Code: sizeShort,
-			Message: strings.TrimSuffix(prose.SizeCheck(p, out), "."), Hint: prose.SizeHint(out)})
+			Message: lowerStart(strings.TrimSuffix(prose.SizeCheck(p, out), ".")), Hint: prose.SizeHint(out)})
 	}
 }
 

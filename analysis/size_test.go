@@ -4,6 +4,7 @@ import (
 	"math"
 	"math/rand/v2"
 	"path/filepath"
+	"slices"
 	"strings"
 	"testing"
 	"testing/fstest"
@@ -584,13 +585,16 @@ func TestSizesOfAllLayouts(t *testing.T) {
 		if m["protocol.toml"] == nil || strings.Contains(string(m["protocol.toml"].Data), "[sample_size]") {
 			continue
 		}
-		m["protocol.toml"].Data = append(m["protocol.toml"].Data, "\n[sample_size]\nbasis = \"power\"\ndifference = 2\nsd = 1\npower = 0.9\nattrition = 0.1\n"...)
+		m["protocol.toml"].Data = append(slices.Clip(m["protocol.toml"].Data), "\n[sample_size]\nbasis = \"power\"\ndifference = 2\nsd = 1\npower = 0.9\nattrition = 0.1\n"...)
 		tr, list := trial.Open(folder.FromFS(m))
 		if tr.Plan == nil {
 			t.Errorf("%s: %v", name, list)
 			continue
 		}
 		s, _ := Size(tr)
+		if filepath.Base(name) == "catalyst.txtar" && (math.Abs(float64(s.Efficiency)-8./9) > 1e-12 || s.Bound) {
+			t.Errorf("%s: E = λv/(rk) = 8/9, got %v", name, s.Efficiency) // balanced incomplete blocks, from the data
+		}
 		if s.Power.Known() {
 			computed++
 		} else if len(s.Notes) == 0 {

@@ -569,7 +569,11 @@ func harmonic(n []float64) float64 {
 	for _, x := range n {
 		s += 1 / x
 	}
-	return float64(len(n)) / s
+	h := float64(len(n)) / s
+	if r := math.Round(h); math.Abs(h-r) < 1e-9*r {
+		return r // equal numbers, but for rounding
+	}
+	return h
 }
 
 // animalsIn finds the animals or sampling units inside an experimental unit: the unit

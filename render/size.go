@@ -17,20 +17,21 @@ func powerFigure(p *layout.Plan, s *result.SampleSize) figure.Power {
 	if s == nil || !s.Power.Known() {
 		return f
 	}
-	label := "power"
-	if s.Difference.Known() {
-		label = prose.SizeAmount(p, s, num.Fixed(float64(s.Difference), num.SEDecimals(float64(s.SD))))
-	}
-	c := figure.PowerCurve{Label: label}
-	for _, q := range s.Curve {
-		if q.Power.Known() {
-			c.Points = append(c.Points, figure.PowerPoint{N: float64(q.Replicates), Power: float64(q.Power)})
+	d := num.SEDecimals(float64(s.SD) * 0.75)
+	for _, x := range s.BySD {
+		c := figure.PowerCurve{Label: "SD " + prose.SizeAmount(p, s, num.Fixed(float64(x.SD), d))}
+		for i, q := range s.Curve {
+			if i < len(x.Curve) && x.Curve[i].Known() {
+				c.Points = append(c.Points, figure.PowerPoint{N: float64(q.Replicates), Power: float64(x.Curve[i])})
+			}
+		}
+		if len(c.Points) > 1 {
+			f.Curves = append(f.Curves, c)
 		}
 	}
-	if len(c.Points) < 2 {
+	if len(f.Curves) == 0 {
 		return f
 	}
-	f.Curves = []figure.PowerCurve{c}
 	f.Chosen = float64(s.Replicates)
 	if s.Wished.Known() {
 		f.Target = float64(s.Wished)

@@ -217,6 +217,12 @@ func Size(p *layout.Plan) []string {
 	unit := ""
 	if r := p.Protocol.Response(s.Response); r != nil {
 		unit = r.Unit
+		if r.Transform != "" && r.Transform != "none" {
+			unit = "" // on the scale of analysis
+		}
+	}
+	if len(s.SD) == 0 && s.CV != nil && unit != "" {
+		unit = "%"
 	}
 	show := func(x float64) string { return num.Unit(num.Fixed(x, places(x)), unit) }
 	var parts []string

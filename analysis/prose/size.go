@@ -295,7 +295,7 @@ func subject(p *layout.Plan, s *result.SampleSize) string {
 // replication tells how many replicates there are in which units.
 func replication(p *layout.Plan, s *result.SampleSize, n *result.Needed) string {
 	text := some(n.Replicates, "replicate")
-	if s.Grows != nil {
+	if s.Grows != nil && s.Grows.Unit != s.Unit && s.Grows.Unit != "replicate" {
 		text += fmt.Sprintf(" (%s)", counted(p, s, n.Count))
 	}
 	return text
@@ -367,7 +367,16 @@ func SizeHint(s *result.SampleSize) string {
 	if need == nil || s.Grows == nil {
 		return "a greater difference, a smaller spread or another layout is needed"
 	}
-	return fmt.Sprintf("count = %d for unit %q, or a greater difference", need.Count, s.Grows.Unit)
+	hint := fmt.Sprintf("count = %d for unit %q would do", need.Count, s.Grows.Unit)
+	switch {
+	case s.Method == "error df":
+		return hint
+	case s.Method == "half width" || !s.Power.Known():
+		return hint + ", or a greater half width"
+	case s.Margin.Known():
+		return hint + ", or a greater margin"
+	}
+	return hint + ", or a greater difference"
 }
 
 // SizeUnknown says that the stated basis of the size could not be checked.
@@ -382,9 +391,9 @@ func SizeFound(p *layout.Plan, s *result.SampleSize) []string {
 	}
 	var out []string
 	unit := ""
-	for i := range p.Terms {
-		if p.Terms[i].Name == s.Term {
-			unit = UnitName(&p.Units[p.Terms[i].Unit])
+	for i := range p.Units {
+		if p.Units[i].Name == s.Unit {
+			unit = UnitName(&p.Units[i])
 		}
 	}
 	line := fmt.Sprintf("The plan gives %s %s", subject(p, s), some(s.Replicates, "replicate"))
@@ -415,17 +424,17 @@ func SizeFound(p *layout.Plan, s *result.SampleSize) []string {
 			out = append(out, fmt.Sprintf("The probability to show that two means lie within %s of each other is %s %s (%s, each at α = %s).",
 				stated(p, s, s.Margin), PowerText(s.Power), what, test, num.Fixed(float64(s.Alpha), places(float64(s.Alpha)))))
 		default:
-			of := "between two means"
+			what := "a difference of %s between two means"
 			if s.Contrast != "" {
-				of = "as the value of the contrast by its weights"
+				what = "a value of %s of the contrast by its weights"
 			} else if strings.Contains(s.Term, ":") {
-				of = "of differences between two levels"
+				what = "a difference of differences of %s"
 			}
 			by := test
 			if by != "" {
 				by = " (" + by + ", α = " + num.Fixed(float64(s.Alpha), places(float64(s.Alpha))) + ")"
 			}
-			out = append(out, fmt.Sprintf("The power to detect a difference of %s %s is %s%s.", stated(p, s, s.Difference), of, PowerText(s.Power), by))
+			out = append(out, fmt.Sprintf("The power to detect "+what+" is %s%s.", stated(p, s, s.Difference), PowerText(s.Power), by))
 		}
 	}
 	if s.Detectable.Known() {
@@ -507,7 +516,7 @@ func SizeNotes(s *result.SampleSize) []string {
 func PowerCaption(p *layout.Plan, s *result.SampleSize) string {
 	text := fmt.Sprintf("Power by replication for %s", subject(p, s))
 	if s.Margin.Known() {
-		return text + fmt.Sprintf(", equivalence within %s", stated(p, s, s.Margin))
+		return text + fmt.Sprintf(", equivalence within %s, with the standard deviation stated and a quarter less and more", stated(p, s, s.Margin))
 	}
-	return text + fmt.Sprintf(", a difference of %s and a standard deviation of %s", stated(p, s, s.Difference), amount(p, s, s.SD))
+	return text + fmt.Sprintf(", a difference of %s, with a standard deviation of %s and a quarter less and more", stated(p, s, s.Difference), amount(p, s, s.SD))
 }

@@ -262,6 +262,7 @@ type SampleSize struct {
 
 	Term     string `json:"term,omitempty"`
 	Contrast string `json:"contrast,omitempty"`
+	Unit     string `json:"unit,omitempty"` // the experimental unit
 	// Method is "noncentral F", "noncentral t", "two one-sided t", "half width" or "error df".
 	Method string `json:"method,omitempty"`
 	Alpha  Number `json:"alpha"`
@@ -320,9 +321,10 @@ type DifferencePower struct {
 // SDPower is the power, and the replication that is needed, at another SD. Replicates is 0
 // where the wished power is not reached.
 type SDPower struct {
-	SD         Number `json:"sd"`
-	Power      Number `json:"power"`
-	Replicates int    `json:"replicates"`
+	SD         Number   `json:"sd"`
+	Power      Number   `json:"power"`
+	Replicates int      `json:"replicates"`
+	Curve      []Number `json:"curve"` // the power at each point of the curve
 }
 
 // GroupPower is the power with other numbers of replicates and of animals in a unit.

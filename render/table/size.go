@@ -48,7 +48,7 @@ func Sizes(p *layout.Plan, s *result.SampleSize) doc.Table {
 		return doc.Table{}
 	}
 	t := doc.Table{ID: "size-replication", Caption: text("What replication gives")}
-	counted := s.Grows != nil && s.Curve[0].Count > 0
+	counted := s.Grows != nil && s.Curve[0].Count > 0 && s.Grows.Unit != "replicate"
 	powers := s.Power.Known()
 	t.Columns = append(t.Columns, doc.Column{Align: doc.Decimal, Key: true})
 	h := []doc.Cell{cell("Replicates")}
@@ -162,7 +162,7 @@ func SizeSpread(p *layout.Plan, s *result.SampleSize) doc.Table {
 		Columns: []doc.Column{left(true), decimal(), decimal()},
 		Head:    head(cell("Changed"), cell(sizeUnit(p, s, "To")), cell("Power")),
 	}
-	d := sizeDecimals(s)
+	d := max(sizeDecimals(s, s.Difference), num.SEDecimals(float64(s.ByDifference[0].Difference)))
 	for _, x := range s.ByDifference {
 		t.Rows = append(t.Rows, doc.Row{Cells: []doc.Cell{cell("Difference"), cell(fixed(x.Difference, float64(x.Difference), d)), powerCell(x.Power)}})
 	}
@@ -177,12 +177,7 @@ func SizeGroups(p *layout.Plan, s *result.SampleSize) doc.Table {
 	if s == nil || len(s.Groups) == 0 {
 		return doc.Table{}
 	}
-	unit := "unit"
-	for i := range p.Terms {
-		if p.Terms[i].Name == s.Term {
-			unit = prose.UnitName(&p.Units[p.Terms[i].Unit])
-		}
-	}
+	unit := unitLabel(p, s.Unit)
 	powers := s.Power.Known()
 	t := doc.Table{
 		ID: "size-groups", Caption: text("More " + prose.Plural(unit) + " against more animals in each"),
