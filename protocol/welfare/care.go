@@ -180,7 +180,7 @@ func (c *checker) environment() {
 	}
 	if !c.animal.is("fish") || c.animal == nil {
 		water := []Rule{rule("water"), rule("water-us")}
-		switch restricted := says(h.Water, "restricted", "restriction", "withheld", "limited", "none"); {
+		switch restricted := says(h.Water, "restricted", "restriction", "withheld", "limited") && !negated(h.Water); {
 		case strings.TrimSpace(h.Water) == "":
 			c.add(Finding{Code: Water, Level: Note, About: "water", Key: "housing.water", Text: "how the animals get water is not stated", Hint: "say how", Rules: water})
 		case restricted && !slices.ContainsFunc(c.welfare.Procedures, func(x protocol.Procedure) bool { return x.Kind == "water restriction" && x.Why != "" }):
@@ -191,7 +191,7 @@ func (c *checker) environment() {
 	} else {
 		c.add(Finding{Code: Fish, Level: Note, About: "water for fish", Key: "housing", Stated: strings.Trim(h.Water+"; "+amount(h.Temperature), "; "), Text: "the quality of water is not compared: the protocol has no keys for it", Rules: []Rule{rule("fish")}, Limits: quotedOnly(c.pick("water", ""))})
 	}
-	if says(h.Feed, "restricted", "restriction", "limited", "pair fed", "limit fed") && !slices.ContainsFunc(c.welfare.Procedures, func(x protocol.Procedure) bool { return x.Kind == "fasting" }) {
+	if says(h.Feed, "restricted", "restriction", "limited", "pair fed", "limit fed") && !negated(h.Feed) && !slices.ContainsFunc(c.welfare.Procedures, func(x protocol.Procedure) bool { return x.Kind == "fasting" }) {
 		c.add(Finding{Code: Fasting, Level: Note, About: "restricted feed", Key: "housing.feed", Stated: h.Feed, Text: "feed is restricted: say why, and how mass and condition are followed"})
 	}
 	if c.animals.Acclimatization == nil {
@@ -284,6 +284,11 @@ var percent = regexp.MustCompile(`(\d+(?:\.\d+)?)\s*(?:%|per ?cent)`)
 // harmful are the kinds of procedure after which an animal may have to leave the trial.
 var harmful = []string{"surgery", "challenge", "deficient diet", "fasting", "water restriction", "injection", "gavage", "blood sample"}
 
+// deadly tells whether an end point is death itself.
+func deadly(e string) bool {
+	return says(e, "death", "dead", "dies", "die", "mortality") && !negated(e)
+}
+
 // endpoints looks at the humane end points and at the loss of mass that they allow.
 func (c *checker) endpoints() {
 	ends := c.welfare.HumaneEndpoints
@@ -311,7 +316,7 @@ func (c *checker) endpoints() {
 	compared := false
 	for i, e := range ends {
 		key := fmt.Sprintf("welfare.humane_endpoints[%d]", i)
-		if says(e, "death", "dead", "dies", "die", "mortality") {
+		if deadly(e) {
 			c.add(Finding{Code: Endpoints, Level: Warning, About: "death as an end point", Key: key, Stated: e, Text: "an end point speaks of death", Hint: "choose earlier signs; death is avoided as an end point", Rules: []Rule{rule("death")}})
 		}
 		if !says(e, "mass", "weight", "bodyweight") || !says(e, "loss", "loses", "lose", "lost", "losing", "decline", "drop", "decrease", "reduction") {
@@ -348,7 +353,7 @@ func (c *checker) endpoints() {
 // previous looks at earlier use.
 func (c *checker) previous() {
 	u := strings.TrimSpace(c.animals.PreviousUse)
-	if u == "" || says(u, "none", "no", "naive", "not used") {
+	if saysNone(u) || says(u, "naive", "not used", "unused", "never used") {
 		return
 	}
 	f := Finding{Code: Reuse, Level: Note, About: "reuse", Key: "animals.previous_use", Stated: u, Text: "the animals were used before: say how severe that was and what the veterinarian advised", Rules: []Rule{rule("reuse")}}
@@ -431,21 +436,31 @@ func (c *checker) ending() {
 	} else {
 		c.add(Finding{Code: Fate, About: "fate", Key: "welfare.fate", Stated: fate, Text: "the fate of the animals is stated", Rules: []Rule{rule("fate")}})
 	}
-	killed := []string{"killed", "kill", "killing", "euthanasia", "euthanised", "euthanized", "slaughter", "slaughtered", "culled", "cull", "necropsy", "dissection", "dissected", "terminal"}
-	text, key := fate, "welfare.fate"
-	for i, p := range c.welfare.Procedures {
-		if !says(fate, killed...) && says(p.Name+"; "+p.How+"; "+p.Why, killed...) {
-			text, key = title(&c.welfare.Procedures[i]), fmt.Sprintf("welfare.procedure[%d]", i)
-			break
-		}
-	}
 	stated := strings.TrimSpace(c.welfare.Euthanasia.Body)
 	rules := []Rule{rule("killing"), rule("killing-eu")}
-	switch {
-	case stated != "":
+	if stated != "" {
 		c.add(Finding{Code: Killing, Level: Note, About: "killing", Key: "welfare.euthanasia", Stated: stated, Text: "the statement is printed and not judged", Rules: rules})
-	case says(fate, killed...) || key != "welfare.fate":
-		c.add(Finding{Code: Killing, Level: Warning, About: "killing", Key: key, Stated: text, Text: "animals are killed and nothing is said of how", Hint: "state method, operator and check of death in welfare.euthanasia; the documents quoted name methods, this program names none", Rules: rules})
+		return
+	}
+	killed := []string{"killed", "kill", "killing", "euthanasia", "euthanised", "euthanized", "culled", "cull", "necropsy", "dissection", "dissected", "terminal", "exsanguination"}
+	slaughter := []string{"slaughter", "slaughtered", "abattoir"}
+	texts, keys := []string{fate}, []string{"welfare.fate"}
+	for i, p := range c.welfare.Procedures {
+		texts, keys = append(texts, p.Name+"; "+p.How+"; "+p.Why), append(keys, fmt.Sprintf("welfare.procedure[%d]", i))
+	}
+	for i, text := range texts {
+		f := Finding{Code: Killing, Level: Warning, About: "killing", Key: keys[i], Stated: strings.Trim(text, "; "), Text: "animals are killed and nothing is said of how", Hint: "state method, operator and check of death in welfare.euthanasia; the documents quoted name methods, this program names none", Rules: rules}
+		switch {
+		case says(text, killed...) && negated(text):
+			f.Level, f.Text, f.Hint = Note, "whether animals are killed is not read from this", "if they are, say how in welfare.euthanasia"
+		case says(text, killed...):
+		case says(text, slaughter...):
+			f.Level, f.Text, f.Hint = Note, "animals are slaughtered; if the trial does that itself, it says how", "state it in welfare.euthanasia"
+		default:
+			continue
+		}
+		c.add(f)
+		return
 	}
 }
 

@@ -25,6 +25,10 @@ func saysNone(s string) bool {
 	return len(w) == 0 || w[0] == "none" || w[0] == "no" || w[0] == "nil" || w[0] == "without" || strings.TrimSpace(s) == "-"
 }
 
+// negated tells whether a text denies something, so that its words cannot be taken for
+// what they name.
+func negated(s string) bool { return says(s, "no", "not", "none", "never", "without", "nothing") }
+
 // procedures compares every procedure, in the order of the file.
 func (c *checker) procedures() {
 	for i := range c.welfare.Procedures {
@@ -137,7 +141,7 @@ func (c *checker) trigger(p *protocol.Procedure) (grade, id string) {
 		}
 		return is("surgery", "moderate")
 	case "challenge":
-		if slices.ContainsFunc(c.welfare.HumaneEndpoints, func(e string) bool { return says(e, "death", "dead", "dies", "die") }) || says(text, "lethal", "death") {
+		if slices.ContainsFunc(c.welfare.HumaneEndpoints, func(e string) bool { return deadly(e) }) || says(text, "lethal", "death") {
 			return is("challenge", "severe")
 		}
 		return is("challenge", "moderate")

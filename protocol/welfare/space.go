@@ -136,7 +136,7 @@ func (c *checker) space() {
 		c.add(f)
 	}
 	if c.welfare.Aim == commercial && !farm && len(all) > 0 {
-		c.uncompared("space", "welfare.aim", c.welfare.Aim, fmt.Sprintf("the tables have no farm standard of space for %s as the protocol describes it; laboratory tables are compared instead", c.name()), "say more of the kind of animal: broiler, laying hen, calf, sow")
+		c.uncompared("space", "welfare.aim", c.welfare.Aim, fmt.Sprintf("the tables have no farm standard of space for %s as the protocol describes it; laboratory tables are shown instead", c.name()), "say more of the kind of animal: broiler, laying hen, calf, sow")
 	}
 	known := 0
 	for _, l := range loaded().limits {
@@ -233,6 +233,7 @@ func (c *checker) floor(all []Limit, farm bool, area float64) {
 		f.Level = Warning
 		f.Text = fmt.Sprintf("%s a head is less than %s, asked for by %s", amount(c.housing.FloorArea), wants, quoted[best].Where())
 		f.Hint = "give more room, or say to the committee why less is needed and for how long"
+		c.noFarm(&f, farm)
 	}
 	c.add(f)
 }
@@ -241,6 +242,15 @@ func (c *checker) floor(all []Limit, farm bool, area float64) {
 func (c *checker) inFloor(m2 float64) string {
 	u := c.housing.FloorArea.Unit
 	return about(m2/units[u].factor) + shown(u)
+}
+
+// noFarm turns a warning by a laboratory table into a note where the aim is commercial
+// conditions and there is no farm standard to stand in its place.
+func (c *checker) noFarm(f *Finding, farm bool) {
+	if c.welfare.Aim == commercial && !farm {
+		f.Level, f.Hint = Note, ""
+		f.Text += "; that table is for laboratories and is only shown"
+	}
 }
 
 func allMet(q []Quoted) bool {
@@ -325,6 +335,7 @@ func (c *checker) whole(all []Limit, farm bool, area float64, n int, key string)
 		f.Level = Warning
 		f.Text = fmt.Sprintf("%s for a group of %d is less than %s, asked for by %s", c.inFloor(area*float64(n)), n, c.inFloor(worst), quoted[best].Where())
 		f.Hint = "give the group more room, or say to the committee why less is needed"
+		c.noFarm(&f, farm)
 	}
 	if key == "" {
 		f.Key = "housing.floor_area"

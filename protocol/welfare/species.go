@@ -108,7 +108,22 @@ func classes(p *protocol.Protocol, a *animal) []string {
 	var out []string
 	text := strings.Join([]string{p.Animals.Species, p.Animals.Breed, p.Animals.Sex}, "; ")
 	_, oldest, aged := in(p.Animals.Age, "time")
+	litter := says(text, "with litter", "with litters", "with a litter", "dam", "dams")
 	switch a.name {
+	case "mouse", "rat":
+		if says(text, "breeding pair", "breeding pairs", "breeding trio", "breeding trios") {
+			out = append(out, "breeding pair")
+		}
+		if says(text, "weaned stock") {
+			out = append(out, "weaned stock at breeder")
+		}
+		if litter {
+			out = append(out, "mother with litter")
+		}
+	case "guinea pig":
+		if litter {
+			out = append(out, "pair with litter")
+		}
 	case "cattle":
 		if says(text, "calf", "calves") || aged && oldest <= 6*units["mo"].factor {
 			out = append(out, "calf")
@@ -134,6 +149,9 @@ func classes(p *protocol.Protocol, a *animal) []string {
 			}
 		}
 	case "rabbit":
+		if litter {
+			out = append(out, "doe with litter")
+		}
 		switch youngest, _, _ := in(p.Animals.Age, "time"); {
 		case !aged || oldest > 70:
 			out = append(out, "rabbit over 10 wk")
