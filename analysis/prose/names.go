@@ -3,6 +3,7 @@
 package prose
 
 import (
+	"slices"
 	"strings"
 
 	"penwright/protocol"
@@ -42,6 +43,21 @@ func UnitName(u *layout.Unit) string {
 		return lowerFirst(u.Label)
 	}
 	return strings.ReplaceAll(u.Name, "_", " ")
+}
+
+// inTime are words for units that follow one another in time (common practice, no
+// source).
+var inTime = []string{"period", "week", "day", "month", "phase", "time", "stage", "round", "season", "run"}
+
+// InTime tells whether a unit is named as one that follows others in time, such as a
+// period.
+func InTime(u *layout.Unit) bool {
+	for _, word := range strings.FieldsFunc(strings.ToLower(u.Name+" "+u.Label), func(r rune) bool { return r == '_' || r == ' ' || r == '-' }) {
+		if slices.Contains(inTime, strings.TrimSuffix(word, "s")) {
+			return true
+		}
+	}
+	return false
 }
 
 // lowerFirst lowers the first letter of a label unless the word looks like a name or

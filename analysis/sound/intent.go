@@ -3,7 +3,6 @@ package sound
 import (
 	"fmt"
 	"slices"
-	"strings"
 
 	"penwright/analysis/prose"
 	"penwright/protocol"
@@ -59,19 +58,6 @@ func (c *checker) primary() {
 	}
 }
 
-// inTime are words for units that follow one another in time (common practice, no
-// source).
-var inTime = []string{"period", "week", "day", "month", "phase", "time", "stage", "round", "season", "run"}
-
-func timely(name, label string) bool {
-	for _, word := range strings.FieldsFunc(strings.ToLower(name+" "+label), func(r rune) bool { return r == '_' || r == ' ' || r == '-' }) {
-		if slices.Contains(inTime, strings.TrimSuffix(word, "s")) {
-			return true
-		}
-	}
-	return false
-}
-
 // carryOver finds units that receive one treatment after another with nothing planned
 // for what is left behind.
 func (c *checker) carryOver() {
@@ -85,7 +71,7 @@ func (c *checker) carryOver() {
 			continue
 		}
 		x, y := unit.Crosses[0], unit.Crosses[1]
-		tx, ty := timely(p.Units[x].Name, p.Units[x].Label), timely(p.Units[y].Name, p.Units[y].Label)
+		tx, ty := prose.InTime(&p.Units[x]), prose.InTime(&p.Units[y])
 		if tx == ty {
 			continue
 		}

@@ -22,7 +22,7 @@ func WithExamples(codes []CodeInfo, source string) []CodeInfo {
 			continue
 		}
 		if name, value, ok := strings.Cut(line, " = \""); ok && !strings.Contains(name, " ") && strings.HasSuffix(value, `"`) {
-			examples[strings.TrimSuffix(value, `"`)] = example(comment)
+			examples[strings.TrimSuffix(value, `"`)] = exampleIn(comment)
 		}
 		comment = nil
 	}
@@ -33,8 +33,8 @@ func WithExamples(codes []CodeInfo, source string) []CodeInfo {
 	return out
 }
 
-// example is the example in the lines of a comment, without their strokes.
-func example(comment []string) string {
+// exampleIn is the example in the lines of a comment, without their strokes.
+func exampleIn(comment []string) string {
 	for i, line := range comment {
 		after, ok := strings.CutPrefix(strings.TrimSpace(line), "Example:")
 		if !ok {

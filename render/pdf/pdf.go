@@ -90,3 +90,8 @@ func write(w io.Writer, book *page.Book, m meta, files []Attachment) error {
 	}
 	return nil
 }
+
+// WriteBook writes pages that were set by hand.
+func WriteBook(w io.Writer, book *page.Book, lang, title string, opt Options) error {
+	return write(w, book, meta{lang: lang, title: title, options: opt}, nil)
+}
