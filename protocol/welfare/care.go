@@ -273,7 +273,7 @@ func (c *checker) monitoring() {
 	f := Finding{Code: Monitoring, About: "monitoring", Key: "welfare.monitoring", Stated: digits(x) + shown("/d"), Limits: q, Rules: rules,
 		Text: fmt.Sprintf("animals are looked at as often as the strictest limit asks, %s", q[best].Printed+shown("/d"))}
 	if !q[best].Met {
-		f.Level, f.Hint = Warning, "look at the animals more often, and oftener near end points"
+		f.Level, f.Hint = Warning, "look at the animals more often, and oftener near endpoints"
 		f.Text = fmt.Sprintf("animals are looked at %s, less than %s, the limit of %s", digits(x)+shown("/d"), q[best].Printed+shown("/d"), q[best].Where())
 	}
 	c.add(f)
@@ -284,17 +284,17 @@ var percent = regexp.MustCompile(`(\d+(?:\.\d+)?)\s*(?:%|per ?cent)`)
 // harmful are the kinds of procedure after which an animal may have to leave the trial.
 var harmful = []string{"surgery", "challenge", "deficient diet", "fasting", "water restriction", "injection", "gavage", "blood sample"}
 
-// deadly tells whether an end point is death itself.
+// deadly tells whether an endpoint is death itself.
 func deadly(e string) bool {
 	return says(e, "death", "dead", "dies", "die", "mortality") && !negated(e)
 }
 
-// endpoints looks at the humane end points and at the loss of mass that they allow.
+// endpoints looks at the humane endpoints and at the loss of mass that they allow.
 func (c *checker) endpoints() {
 	ends := c.welfare.HumaneEndpoints
 	rules := []Rule{rule("endpoints"), rule("death")}
 	if len(ends) == 0 {
-		f := Finding{Code: Endpoints, Level: Note, About: "humane end points", Key: "welfare.humane_endpoints", Text: "no humane end points are stated", Hint: "give observable signs, thresholds, who acts and how soon; or say “none” and why", Rules: rules}
+		f := Finding{Code: Endpoints, Level: Note, About: "humane endpoints", Key: "welfare.humane_endpoints", Text: "no humane endpoints are stated", Hint: "give observable signs, thresholds, who acts and how soon; or say “none” and why", Rules: rules}
 		grave := c.p.Approval != nil && grades[c.p.Approval.Severity] >= grades["moderate"]
 		for _, p := range c.welfare.Procedures {
 			if slices.Contains(harmful, p.Kind) {
@@ -302,12 +302,12 @@ func (c *checker) endpoints() {
 			}
 		}
 		if grave {
-			f.Level, f.Text = Warning, "no humane end points are stated although the procedures or the class of severity call for them"
+			f.Level, f.Text = Warning, "no humane endpoints are stated although the procedures or the class of severity call for them"
 		}
 		c.add(f)
 		return
 	}
-	c.add(Finding{Code: Endpoints, About: "humane end points", Key: "welfare.humane_endpoints", Stated: fmt.Sprintf("%d stated", len(ends)), Text: "humane end points are stated; whether they are early enough is for the veterinarian", Rules: rules})
+	c.add(Finding{Code: Endpoints, About: "humane endpoints", Key: "welfare.humane_endpoints", Stated: fmt.Sprintf("%d stated", len(ends)), Text: "humane endpoints are stated; whether they are early enough is for the veterinarian", Rules: rules})
 	tumour := []string{c.p.Trial.Title, c.p.Trial.Objective.Body}
 	for _, p := range c.welfare.Procedures {
 		tumour = append(tumour, p.Name, p.How)
@@ -317,7 +317,7 @@ func (c *checker) endpoints() {
 	for i, e := range ends {
 		key := fmt.Sprintf("welfare.humane_endpoints[%d]", i)
 		if deadly(e) {
-			c.add(Finding{Code: Endpoints, Level: Warning, About: "death as an end point", Key: key, Stated: e, Text: "an end point speaks of death", Hint: "choose earlier signs; death is avoided as an end point", Rules: []Rule{rule("death")}})
+			c.add(Finding{Code: Endpoints, Level: Warning, About: "death as an endpoint", Key: key, Stated: e, Text: "an endpoint speaks of death", Hint: "choose earlier signs; death is avoided as an endpoint", Rules: []Rule{rule("death")}})
 		}
 		if !says(e, "mass", "weight", "bodyweight") || !says(e, "loss", "loses", "lose", "lost", "losing", "decline", "drop", "decrease", "reduction") {
 			continue
@@ -338,15 +338,15 @@ func (c *checker) endpoints() {
 			}
 		}
 		best, _ := strictest(q)
-		f := Finding{Code: MassLoss, About: "loss of body mass", Key: key, Stated: e, Limits: q, Text: fmt.Sprintf("the end point comes no later than the strictest limit that applies, %s", q[best].Printed+shown("%"))}
+		f := Finding{Code: MassLoss, About: "loss of body mass", Key: key, Stated: e, Limits: q, Text: fmt.Sprintf("the endpoint comes no later than the strictest limit that applies, %s", q[best].Printed+shown("%"))}
 		if !q[best].Met {
-			f.Level, f.Hint = Warning, "set the end point earlier, or give the veterinarian’s reason; judge growing animals against controls"
-			f.Text = fmt.Sprintf("the end point allows a loss of %s, more than %s, the limit of %s", digits(x)+shown("%"), q[best].Printed+shown("%"), q[best].Where())
+			f.Level, f.Hint = Warning, "set the endpoint earlier, or give the veterinarian’s reason; judge growing animals against controls"
+			f.Text = fmt.Sprintf("the endpoint allows a loss of %s, more than %s, the limit of %s", digits(x)+shown("%"), q[best].Printed+shown("%"), q[best].Where())
 		}
 		c.add(f)
 	}
 	if !compared {
-		c.add(Finding{Code: MassLoss, Level: Note, About: "loss of body mass", Key: "welfare.humane_endpoints", Text: "no end point states a loss of body mass in percent", Limits: quotedOnly(slices.DeleteFunc(c.pick("mass loss", ""), func(l Limit) bool { return l.Class == "tumour" && !bearing }))})
+		c.add(Finding{Code: MassLoss, Level: Note, About: "loss of body mass", Key: "welfare.humane_endpoints", Text: "no endpoint states a loss of body mass in percent", Limits: quotedOnly(slices.DeleteFunc(c.pick("mass loss", ""), func(l Limit) bool { return l.Class == "tumour" && !bearing }))})
 	}
 }
 

@@ -152,7 +152,7 @@ const (
 	//	monitoring = { times_per_day = 0.5, by = "stockperson" }
 	Monitoring = "welfare-monitoring"
 
-	// Endpoints: humane end points are missing, or speak of death.
+	// Endpoints: humane endpoints are missing, or speak of death.
 	//
 	// Example:
 	//
@@ -160,7 +160,7 @@ const (
 	//	kind = "challenge"
 	Endpoints = "welfare-endpoints"
 
-	// MassLoss: the loss of body mass that an end point allows.
+	// MassLoss: the loss of body mass that an endpoint allows.
 	//
 	// Example:
 	//
@@ -234,7 +234,7 @@ const (
 	//	kind = "transport"
 	Transport = "welfare-transport"
 
-	// Challenge: animals are challenged without rescue or end points.
+	// Challenge: animals are challenged without rescue or endpoints.
 	//
 	// Example:
 	//
@@ -242,7 +242,7 @@ const (
 	//	kind = "challenge"
 	Challenge = "welfare-challenge"
 
-	// Diet: the diet is deficient and there is no rescue or end point.
+	// Diet: the diet is deficient and there is no rescue or endpoint.
 	//
 	// Example:
 	//
@@ -328,8 +328,8 @@ func Codes() []diag.CodeInfo {
 		{Code: Acclimatization, Text: "no time of acclimatization is stated"},
 		{Code: Young, Text: "what holds for calves and piglets"},
 		{Code: Monitoring, Text: "how often the animals are looked at"},
-		{Code: Endpoints, Text: "humane end points are missing, or speak of death"},
-		{Code: MassLoss, Text: "the loss of body mass that an end point allows"},
+		{Code: Endpoints, Text: "humane endpoints are missing, or speak of death"},
+		{Code: MassLoss, Text: "the loss of body mass that an endpoint allows"},
 		{Code: Blood, Text: "the blood drawn beside the limits, single and repeated"},
 		{Code: Dose, Text: "the volume given beside the limits of the route"},
 		{Code: Fasting, Text: "feed is off longer than a limit, or without reason or duration"},
@@ -337,8 +337,8 @@ func Codes() []diag.CodeInfo {
 		{Code: Restraint, Text: "animals are restrained"},
 		{Code: Pain, Text: "surgery, marking or a terminal draw without pain relief"},
 		{Code: Transport, Text: "animals are transported"},
-		{Code: Challenge, Text: "animals are challenged without rescue or end points"},
-		{Code: Diet, Text: "the diet is deficient and there is no rescue or end point"},
+		{Code: Challenge, Text: "animals are challenged without rescue or endpoints"},
+		{Code: Diet, Text: "the diet is deficient and there is no rescue or endpoint"},
 		{Code: Reuse, Text: "the animals were used before"},
 		{Code: Staff, Text: "the safety of staff"},
 		{Code: Residues, Text: "the food chain and withdrawal periods"},

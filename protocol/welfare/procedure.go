@@ -635,12 +635,12 @@ func (c *checker) pickAny(topic string) []Limit {
 	return out
 }
 
-// challenge asks for rescue and end points.
+// challenge asks for rescue and endpoints.
 func (c *checker) challenge(p *protocol.Procedure, key, code, what string) {
-	f := Finding{Code: code, Level: Note, About: title(p), Key: key, Stated: p.Why, Text: what + "; rescue and end points are printed and not judged", Rules: append(c.graded(p), rule("endpoints"))}
+	f := Finding{Code: code, Level: Note, About: title(p), Key: key, Stated: p.Why, Text: what + "; rescue and endpoints are printed and not judged", Rules: append(c.graded(p), rule("endpoints"))}
 	var missing []string
 	if len(c.welfare.HumaneEndpoints) == 0 {
-		missing = append(missing, "humane end points")
+		missing = append(missing, "humane endpoints")
 	}
 	if strings.TrimSpace(c.welfare.Rescue.Body) == "" {
 		missing = append(missing, "rule of rescue")

@@ -1,5 +1,5 @@
 // Package welfare compares what a protocol says of its animals with published limits:
-// space, group, monitoring, blood, doses, feed off, end points, severity, residues.
+// space, group, monitoring, blood, doses, feed off, endpoints, severity, residues.
 // The numbers are data rows (data/*.csv), each with its document, jurisdiction, clause,
 // the day it was taken over from the checked list, and how it was read. What is known
 // from memory alone is a Recalled: it holds no number and can reach no comparison.
