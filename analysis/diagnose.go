@@ -107,6 +107,10 @@ func (a *analyst) groups(rows *rows, values []float64) [][]float64 {
 	return residual.Groups(values, cells)
 }
 
+// maxAdditive is the number of treatments up to which non-additivity is looked for: with
+// more the fit takes long, and one product of effects among so many tells little.
+const maxAdditive = 200
+
 // additive gives the additive model of larger units and treatments in which one degree
 // of freedom for non-additivity is looked for: one kind of treated unit, some larger
 // unit, and a single combination of treatments in each.
@@ -117,7 +121,7 @@ func (a *analyst) additive() (linear.Model, bool) {
 		}
 	}
 	nuisance := a.nuisance()
-	if len(nuisance) == 0 || len(a.covs) > 0 || a.plan.Protocol.TimeTrend != nil || len(a.terms) != 1 {
+	if len(nuisance) == 0 || a.classes[0].N > maxAdditive || len(a.covs) > 0 || a.plan.Protocol.TimeTrend != nil || len(a.terms) != 1 {
 		return linear.Model{}, false
 	}
 	m := linear.Model{Y: a.at.y, Factors: a.classes, Terms: a.modelTerms()}

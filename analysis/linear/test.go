@@ -121,8 +121,12 @@ func (f *Fit) kindOf(column int) Kind {
 	panic("linear: no such column")
 }
 
-// partial tests that the coefficients of the block are all zero.
+// partial tests that the coefficients of the block are all zero. Where nothing is aliased
+// and the block stands last, that is its own share in sequence.
 func (f *Fit) partial(b block) Test {
+	if b.to == f.p && len(f.pivot) == f.p {
+		return f.sequential(b)
+	}
 	rows := make([][]float64, 0, b.to-b.from)
 	for j := b.from; j < b.to; j++ {
 		l := make([]float64, f.p)
@@ -210,25 +214,27 @@ func (f *Fit) EqualSlopes(covariate int) (t Test, errorDF int, errorSS float64, 
 func (f *Fit) Nuisance(adjustment Adjustment) ([]Test, error) {
 	var out []Test
 	for k, g := range f.model.Nuisance {
-		small, large := f.model, f.model
+		small := f.model
 		small.Nuisance = append(append(small.Nuisance[:0:0], f.model.Nuisance[:k]...), f.model.Nuisance[k+1:]...)
+		rank, rss := f.Rank, f.RSS
 		if adjustment == Sequential {
-			small.Nuisance = f.model.Nuisance[:k]
-			large.Nuisance = f.model.Nuisance[:k+1]
+			large := f.model
+			small.Nuisance, large.Nuisance = f.model.Nuisance[:k], f.model.Nuisance[:k+1]
 			small.Covariates, large.Covariates = nil, nil
 			small.Terms, large.Terms = nil, nil
-		}
-		with, err := large.Fit()
-		if err != nil {
-			return nil, err
+			with, err := large.Fit()
+			if err != nil {
+				return nil, err
+			}
+			rank, rss = with.Rank, with.RSS
 		}
 		without, err := small.Fit()
 		if err != nil {
 			return nil, err
 		}
-		t := Test{Kind: Nuisance, Index: k, DF: with.Rank - without.Rank, Estimable: true}
+		t := Test{Kind: Nuisance, Index: k, DF: rank - without.Rank, Estimable: true}
 		if t.DF > 0 {
-			t.SS = math.Max(0, without.RSS-with.RSS)
+			t.SS = math.Max(0, without.RSS-rss)
 		}
 		t.Lost = g.N - 1 - t.DF
 		out = append(out, t)

@@ -210,12 +210,12 @@ func NonAdditivity(m linear.Model) (t Test, ss float64, err error) {
 	if err != nil {
 		return Test{}, 0, err
 	}
-	one := g.Tests(linear.Partial)[k]
-	if one.DF == 0 || !one.Estimable {
+	slope := g.Slopes()
+	if !slope.Estimable[k] {
 		return Test{}, 0, ErrAliased
 	}
 	t = Test{DF: 1, ErrorDF: g.DF}
-	t.Statistic = one.SS / g.MS()
+	t.Statistic = slope.Value[k] * slope.Value[k] / slope.Cov(k, k)
 	t.P = dist.FUpper(t.Statistic, 1, float64(g.DF))
-	return t, one.SS, nil
+	return t, t.Statistic * g.MS(), nil
 }
