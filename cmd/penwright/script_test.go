@@ -18,6 +18,7 @@ import (
 	"testing"
 
 	"github.com/rogpeppe/go-internal/testscript"
+	"github.com/spf13/pflag"
 
 	"penwright/templates"
 )
@@ -192,6 +193,29 @@ func checkJSON(ts *testscript.TestScript, neg bool, args []string) {
 	ts.Check(err)
 	if !re.MatchString(got) {
 		ts.Fatalf("%s: %s is %s, want %s", args[0], args[1], got, args[2])
+	}
+}
+
+// Every command tells what it does and gives an example that names it.
+func TestHelpOfEveryCommand(t *testing.T) {
+	for _, c := range (&app{}).root().Commands() {
+		if c.Name() == "help" {
+			continue
+		}
+		var out, errs bytes.Buffer
+		if code := run([]string{"help", c.Name()}, strings.NewReader(""), &out, &errs); code != fine || errs.Len() > 0 {
+			t.Errorf("help %s: exit status %d: %s", c.Name(), code, errs.String())
+		}
+		for _, want := range []string{"usage: penwright " + c.Name(), "\nexample:\n", "\n  penwright " + c.Name()} {
+			if !strings.Contains(out.String(), want) {
+				t.Errorf("help %s does not say %q:\n%s", c.Name(), want, out.String())
+			}
+		}
+		c.Flags().VisitAll(func(f *pflag.Flag) {
+			if f.Usage == "" || !strings.Contains(out.String(), "--"+f.Name) && f.Name != "help" {
+				t.Errorf("help %s does not explain --%s", c.Name(), f.Name)
+			}
+		})
 	}
 }
 
