@@ -15,16 +15,30 @@ import (
 // differs: the name or label of the table that repeats (a unit, a response, a contrast),
 // or, where there is none, the key or how it is called. Upper case, the plural, and
 // underscores for spaces make no difference.
-func covers(amendments []protocol.Amendment, sealed protocol.Date, d *Difference) int {
+func covers(amendments []amendment, sealed protocol.Date, d *Difference) int {
 	for i, a := range amendments {
-		if a.On.IsZero() || a.On.Before(sealed) {
+		if a.on.IsZero() || a.on.Before(sealed) {
 			continue
 		}
-		if slices.ContainsFunc(called(d), func(name string) bool { return names(a.What, name) }) {
+		if slices.ContainsFunc(called(d), func(name string) bool { return names(a.words, name) }) {
 			return i
 		}
 	}
 	return -1
+}
+
+// amendment is one of the protocol with the words of its text.
+type amendment struct {
+	on    protocol.Date
+	words string
+}
+
+func amendments(p *protocol.Protocol) []amendment {
+	var out []amendment
+	for _, a := range p.Amendments {
+		out = append(out, amendment{on: a.On, words: words(a.What)})
+	}
+	return out
 }
 
 // called lists what a difference may be called in an amendment, the first as one would.
@@ -40,29 +54,25 @@ func called(d *Difference) []string {
 	return []string{spaced(key), d.What, join(d.Table, d.Field)}
 }
 
-// names tells whether a text has the words of a name in sequence.
+// names tells whether the words of a text have those of a name in sequence.
 func names(text, name string) bool {
-	t, n := words(text), words(name)
-	if len(n) == 0 {
-		return strings.Contains(text, name)
-	}
-	for i := range len(t) - len(n) + 1 {
-		if slices.Equal(t[i:i+len(n)], n) {
-			return true
-		}
-	}
-	return false
+	n := words(name)
+	return n != "  " && strings.Contains(text, n)
 }
 
-// words are the words of a text in lower case and in the singular.
-func words(s string) []string {
+// words are the words of a text in lower case and in the singular, a space on either
+// side of each. A text without letters and digits is one word.
+func words(s string) string {
 	w := strings.FieldsFunc(strings.ToLower(s), func(r rune) bool { return !unicode.IsLetter(r) && !unicode.IsDigit(r) })
+	if len(w) == 0 {
+		w = strings.Fields(s)
+	}
 	for i := range w {
 		if len(w[i]) > 2 {
 			w[i] = strings.TrimSuffix(w[i], "s")
 		}
 	}
-	return w
+	return " " + strings.Join(w, " ") + " "
 }
 
 // mostFindings bounds the differences that are reported one by one.

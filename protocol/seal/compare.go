@@ -217,10 +217,7 @@ func asTables(v any) []map[string]any {
 // repeated compares tables that repeat: those of one name with each other.
 func (c *comparison) repeated(at place, old, new []map[string]any) {
 	before, after := identities(at.path(), old), identities(at.path(), new)
-	where := map[string]int{}
-	for i, id := range before {
-		where[id] = i
-	}
+	was, is := numbered(before), numbered(after)
 	inner := func(i int, id string, t map[string]any) place {
 		p := at.element(i, id, t)
 		p.table, p.field = at.path(), ""
@@ -228,9 +225,9 @@ func (c *comparison) repeated(at place, old, new []map[string]any) {
 	}
 	var kept, common []string
 	for i, id := range after {
-		k, was := where[id]
+		k, there := was[id]
 		p := inner(i, id, new[i])
-		if !was {
+		if !there {
 			c.add(p, Added, nil, new[i])
 			continue
 		}
@@ -238,7 +235,7 @@ func (c *comparison) repeated(at place, old, new []map[string]any) {
 		c.table(p, old[k], new[i])
 	}
 	for i, id := range before {
-		if !slices.Contains(after, id) {
+		if _, there := is[id]; !there {
 			c.add(inner(-1, id, old[i]), Removed, old[i], nil)
 			continue
 		}
@@ -249,6 +246,14 @@ func (c *comparison) repeated(at place, old, new []map[string]any) {
 		p.names, p.field = at.names, "order"
 		c.add(p, Changed, list(common), list(kept))
 	}
+}
+
+func numbered(names []string) map[string]int {
+	out := make(map[string]int, len(names))
+	for i, n := range names {
+		out[n] = i
+	}
+	return out
 }
 
 func list(names []string) []any {
@@ -330,16 +335,23 @@ func (c *comparison) texts(at place, old, new any) {
 	}
 	before, _ := old.([]any)
 	after, _ := new.([]any)
+	was, is := map[any]bool{}, map[any]bool{}
+	for _, x := range before {
+		was[x] = true
+	}
+	for _, x := range after {
+		is[x] = true
+	}
 	n := len(c.found)
 	for i, x := range after {
-		if !slices.Contains(before, x) {
+		if !was[x] {
 			p := at
 			p.key = fmt.Sprintf("%s[%d]", at.key, i)
 			c.add(p, Added, nil, x)
 		}
 	}
 	for _, x := range before {
-		if !slices.Contains(after, x) {
+		if !is[x] {
 			c.add(at, Removed, x, nil)
 		}
 	}

@@ -57,7 +57,7 @@ func (s *Seal) Response(name string) Bearing {
 			of("analysis", "comparison") && r.Comparison == "",
 			of("analysis", "alpha") && r.Alpha == nil,
 			of("analysis", "margin") && r.Margin == nil,
-			of("analysis", "tendency", "side", "pairs"):
+			of("analysis", "tendency", "side", "pairs"), d.Table == "analysis.dose_response", of("factor", "control"):
 			b.Other = append(b.Other, d)
 		}
 	}

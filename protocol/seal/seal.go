@@ -88,13 +88,14 @@ func Read(files *folder.Folder, p *protocol.Protocol) (*Seal, diag.List) {
 		return s, list
 	}
 	s.present = now.plan
+	amended := amendments(p)
 	for i := range s.Entries {
 		next := now
 		if i+1 < len(s.Entries) {
 			next = &s.Entries[i+1]
 		}
 		for _, d := range between(&s.Entries[i], next) {
-			s.Revisions = append(s.Revisions, Revision{Difference: d, Since: i + 1, Amendment: covers(p.Amendments, s.Entries[i].On, &d)})
+			s.Revisions = append(s.Revisions, Revision{Difference: d, Since: i + 1, Amendment: covers(amended, s.Entries[i].On, &d)})
 		}
 	}
 	if s.before != nil {
@@ -163,7 +164,11 @@ func Changes(files *folder.Folder, p *protocol.Protocol, e Entry) ([]folder.Chan
 	if err != nil && !errors.Is(err, fs.ErrNotExist) {
 		return nil, err
 	}
-	entries, list := parse(record.Data)
+	var entries []Entry
+	var list diag.List
+	if err == nil {
+		entries, list = parse(record.Data)
+	}
 	if list.HasErrors() {
 		return nil, fmt.Errorf("%s: %s", list[0].Pos, list[0].Message)
 	}
@@ -251,9 +256,6 @@ func parse(data []byte) ([]Entry, diag.List) {
 	add := func(line int, format string, args ...any) {
 		list.Add(diag.Diagnostic{Pos: diag.Pos{File: File, Line: line, Col: 1}, Code: Broken, Message: fmt.Sprintf(format, args...),
 			Hint: "the record grows by appending only; restore what stood there"})
-	}
-	if len(data) == 0 {
-		return nil, nil
 	}
 	type entry struct {
 		Number    int    `toml:"number"`

@@ -4,6 +4,8 @@ import (
 	"bytes"
 	"encoding/json"
 	"fmt"
+	"maps"
+	"math/rand/v2"
 	"slices"
 	"strings"
 	"testing"
@@ -300,6 +302,7 @@ func TestTampered(t *testing.T) {
 		"no TOML":            []byte("[[seal"),
 		"something else":     []byte("[[draw]]\nnumber = 1\n"),
 		"blank":              []byte(" "),
+		"empty":              nil,
 	} {
 		if !broken(data) {
 			t.Errorf("%s: not noticed", name)
@@ -439,35 +442,45 @@ func TestNames(t *testing.T) {
 		{"mass, initial", "initial_mass", false},
 		{"Exclusion rules: one more", "exclusion rule", true},
 		{"contrast ‘high v. low’ added", "high v. low", true},
-		{"+ is not -", "+", true},
+		{"of +", "+", false},
+		{"+", "+", true},
+		{"anything", "", false},
 		{"", "pen", false},
 	}
 	for _, test := range tests {
-		if got := names(test.text, test.name); got != test.want {
+		if got := names(words(test.text), test.name); got != test.want {
 			t.Errorf("%q names %q: %v", test.text, test.name, got)
 		}
 	}
 }
 
-// TestExamples brings about each code.
+// TestExamples runs the example of each code: a record, or what was added to a protocol
+// that was sealed on the day in its first line.
 func TestExamples(t *testing.T) {
-	said := map[string]bool{}
-	note := func(list diag.List) {
-		for _, d := range list {
-			said[d.Code] = true
-		}
-	}
-	x := newTrial(t, base)
-	x.seal(Entry{On: on(4, 1)})
-	x.m["protocol.toml"].Data = []byte(edit(t, base, "count = 4", "count = 5"))
-	_, list := Read(x.files(), x.protocol())
-	note(list)
-	x.m[File].Data = bytes.Replace(x.m[File].Data, []byte("2026-04-01"), []byte("2026-02-01"), 1)
-	_, list = Read(x.files(), x.protocol())
-	note(list)
+	const plain = "protocol = 1\n[trial]\ncode = \"HM-1\"\ntitle = \"Small\"\nobjective = \"Which diet?\"\n[[factor]]\nname = \"diet\"\nlevels = [\"A\", \"B\"]\n" +
+		"[[unit]]\nname = \"pen\"\ncount = 8\nreceives = [\"diet\"]\n"
 	for _, c := range Codes() {
-		if !said[c.Code] {
-			t.Errorf("nothing brings about %s", c.Code)
+		var list diag.List
+		x := newTrial(t, plain)
+		if date, rest, ok := strings.Cut(strings.TrimPrefix(c.Example, "# sealed on "), "\n"); ok && date != "[[seal]]" {
+			var day protocol.Date
+			if _, err := fmt.Sscanf(date, "%d-%d-%d", &day.Year, &day.Month, &day.Day); err != nil {
+				t.Fatal(c.Code, err)
+			}
+			with := plain + rest
+			if keys, of := strings.CutPrefix(rest, "[trial]\n"); of {
+				with = strings.Replace(plain, "[trial]\n", "[trial]\n"+keys+"\n", 1)
+				x = newTrial(t, with)
+			}
+			x.seal(Entry{On: day})
+			x.m["protocol.toml"].Data = []byte(with)
+			_, list = Read(x.files(), x.protocol())
+		} else {
+			x.m[File] = &fstest.MapFile{Data: []byte(c.Example)}
+			_, list = Read(x.files(), x.protocol())
+		}
+		if len(list) == 0 || list[0].Code != c.Code {
+			t.Errorf("the example of %s brings about %v:\n%s", c.Code, list, c.Example)
 		}
 	}
 }
@@ -489,9 +502,70 @@ func FuzzRead(f *testing.F) {
 	})
 }
 
+// TestAnyPlan compares a plan with what is left of it after parts were replaced by JSON
+// of any kind, as somebody might who makes up a record.
+func TestAnyPlan(t *testing.T) {
+	p := load(t, base)
+	text, err := p.CanonicalPlan()
+	if err != nil {
+		t.Fatal(err)
+	}
+	mine, err := parsePlan(text)
+	if err != nil {
+		t.Fatal(err)
+	}
+	random := rand.New(rand.NewPCG(7, 7))
+	odd := []any{nil, true, 1.5, "", "x y", []any{}, []any{[]any{}}, []any{map[string]any{}}, map[string]any{}, map[string]any{"name": []any{}}, []any{"a b", 1.0}}
+	var spoil func(v any, path string) any
+	spoil = func(v any, path string) any {
+		if path != "" && path != ".protocol" && random.IntN(12) == 0 {
+			return odd[random.IntN(len(odd))]
+		}
+		switch v := v.(type) {
+		case map[string]any:
+			out := map[string]any{}
+			for _, k := range slices.Sorted(maps.Keys(v)) {
+				out[k] = spoil(v[k], path+"."+k)
+			}
+			return out
+		case []any:
+			var out []any
+			for _, x := range v {
+				out = append(out, spoil(x, path))
+			}
+			return out
+		}
+		return v
+	}
+	for range 1000 {
+		other, _ := spoil(mine, "").(map[string]any)
+		use(t, p, mine, other)
+	}
+}
+
+// use asks all that can be asked of two plans.
+func use(t *testing.T, p *protocol.Protocol, mine, other map[string]any) {
+	t.Helper()
+	for _, found := range [][]Difference{compare(mine, other), compare(other, mine)} {
+		s := &Seal{p: p, before: &Entry{plan: other}, present: mine, against: found}
+		s.Response("adg")
+		s.Contrast("adg", "yeast v. none")
+		s.Rule("outlier")
+		s.Trend(3)
+		for i := range found {
+			if found[i].String() == "" || found[i].What == "" {
+				t.Errorf("a difference has no words: %+v", found[i])
+			}
+			p.ValuePos(found[i].Key)
+			covers([]amendment{{on: on(3, 1), words: words("pen")}}, on(2, 1), &found[i])
+		}
+	}
+}
+
 // FuzzCompare compares a plan with any other JSON.
 func FuzzCompare(f *testing.F) {
-	plan, err := load(f, base).CanonicalPlan()
+	p := load(f, base)
+	plan, err := p.CanonicalPlan()
 	if err != nil {
 		f.Fatal(err)
 	}
@@ -506,20 +580,6 @@ func FuzzCompare(f *testing.F) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		p := load(t, base)
-		for _, found := range [][]Difference{compare(mine, other), compare(other, mine)} {
-			s := &Seal{p: p, before: &Entry{plan: other}, present: mine, against: found}
-			s.Response("adg")
-			s.Contrast("adg", "yeast v. none")
-			s.Rule("outlier")
-			s.Trend(3)
-			for i := range found {
-				if found[i].String() == "" {
-					t.Error("a difference has no words")
-				}
-				p.ValuePos(found[i].Key)
-				covers([]protocol.Amendment{{On: on(3, 1), What: "pen"}}, on(2, 1), &found[i])
-			}
-		}
+		use(t, p, mine, other)
 	})
 }

@@ -126,8 +126,7 @@ func (c *comparison) what(d *Difference) string {
 	if len(d.Names) > 0 {
 		name = d.Names[len(d.Names)-1]
 	}
-	p, own := phrases[join(d.Table, d.Field)]
-	if own {
+	if p := phrases[join(d.Table, d.Field)]; p.text != "" {
 		per := ""
 		if w := c.within(name); w != "" {
 			per = " per " + w
