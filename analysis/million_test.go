@@ -158,7 +158,7 @@ func TestManyTreatments(t *testing.T) {
 	}{
 		{"one way", 1, 600, false, "strata", "completely randomized"},
 		{"blocks", 3, 600, false, "strata", "randomized complete block"},
-		{"units lost", 3, 200, true, "least squares", "randomized complete block"},
+		{"units lost", 3, 300, true, "least squares", "randomized complete block"},
 	} {
 		t.Run(c.name, func(t *testing.T) {
 			files := animals(c.blocks, c.diets, 1, false)
