@@ -259,15 +259,7 @@ func (r *refusal) inBlocks(a *layout.Allocation, fixed [][]int32) step {
 	unit := &plan.Units[u]
 	key := fmt.Sprintf("unit[%d].receives", u)
 	if !a.Complete {
-		size := 0
-		for _, b := range plan.Coarse(u, unit.Within) {
-			if b == 0 {
-				size++
-			}
-		}
-		r.add(key, NotDrawn, "let every "+plan.Units[unit.Within].Name+" hold each treatment equally often; or "+elsewhere,
-			"%d treatments of %s cannot stand in the same numbers in every %s (%d in the first): an incomplete block design, which is not drawn", len(a.Combinations), factorNames(plan, a.Factors), plan.Units[unit.Within].Name, size)
-		return nil
+		return r.incomplete(a, fixed)
 	}
 	class, ok := r.classes(u, fixed)
 	if !ok {
@@ -385,22 +377,16 @@ func (r *refusal) latin(a *layout.Allocation, fixed, levels [][]int32) step {
 	t := len(a.Combinations)
 	refuse := func(why string) step {
 		r.add(key, NotDrawn, "a Latin square needs as many rows and as many columns as treatments, or whole multiples; or "+elsewhere,
-			"%d treatments of %s on %s: %s; such a row-and-column design is not drawn", t, factorNames(plan, a.Factors), unit.Name, why)
+			"%d treatments of %s on %s: %s", t, factorNames(plan, a.Factors), unit.Name, why)
 		return nil
-	}
-	if len(unit.Crosses) != 2 {
-		return refuse(fmt.Sprintf("it crosses %d units", len(unit.Crosses)))
-	}
-	if slices.ContainsFunc(a.Total, func(n int) bool { return n != a.Total[0] }) {
-		return refuse("the replicates are not equal")
-	}
-	if t > largestSquare {
-		return refuse(fmt.Sprintf("squares larger than %d × %d are not drawn", largestSquare, largestSquare))
 	}
 	if class, ok := r.classes(u, fixed); !ok {
 		return nil
 	} else if class != nil {
-		return refuse("it carries a class of its own")
+		return refuse("rows and columns are not drawn on a unit that carries a class of its own")
+	}
+	if len(unit.Crosses) != 2 || slices.ContainsFunc(a.Total, func(n int) bool { return n != a.Total[0] }) {
+		return r.incomplete(a, fixed)
 	}
 	gr, why := r.grid(u, unit.Crosses[0], unit.Crosses[1], fixed)
 	if gr == nil {
@@ -410,13 +396,17 @@ func (r *refusal) latin(a *layout.Allocation, fixed, levels [][]int32) step {
 		return refuse(why)
 	}
 	fields := gr.fields(levels)
-	if fields == nil {
-		return refuse("not every row meets every column")
-	}
 	for _, f := range fields {
 		if f.rows%t != 0 || f.columns%t != 0 {
-			return refuse(fmt.Sprintf("%d rows (%s) by %d columns (%s) cannot each hold every treatment equally often", f.rows, plan.Units[unit.Crosses[0]].Name, f.columns, plan.Units[unit.Crosses[1]].Name))
+			fields = nil
+			break
 		}
+	}
+	switch {
+	case fields == nil:
+		return r.incomplete(a, fixed)
+	case t > largestSquare:
+		return refuse(fmt.Sprintf("squares larger than %d × %d are not drawn", largestSquare, largestSquare))
 	}
 	return &squared{of: a, plan: plan, grid: gr, square: newSquare(t), fields: len(fields), rows: fields[0].rows, columns: fields[0].columns}
 }
