@@ -267,7 +267,8 @@ func (c *checker) blood(p *protocol.Procedure, key string) {
 	}
 }
 
-// terminal tells whether blood is drawn from an animal that does not wake again.
+// terminal tells whether blood is drawn from an animal that does not wake again. The
+// words are read here and printed nowhere.
 func terminal(p *protocol.Procedure) bool {
 	return says(p.Name+"; "+p.How+"; "+p.Why, "terminal", "exsanguination", "exsanguinated", "final bleed", "at slaughter", "after death", "post mortem")
 }
@@ -371,6 +372,10 @@ func (c *checker) bloodTogether() {
 	for _, d := range c.drawn {
 		names = append(names, d.name)
 	}
+	together := join(names)
+	if len(names) > 4 {
+		together = fmt.Sprintf("the %d procedures that draw blood", len(names))
+	}
 	applied := c.windows()
 	for i, l := range applied {
 		x := 0.0
@@ -380,10 +385,10 @@ func (c *checker) bloodTogether() {
 		q := Quoted{Limit: l, Stated: about(x) + shown("%"), Met: l.met(x), Applied: true}
 		limits = append(limits, q)
 		if !q.Met && i == len(applied)-1 {
-			text = fmt.Sprintf("together %s take up to %s of the circulating volume in %s, more than %s, the limit of %s", join(names), q.Stated, digits(l.band.high)+shown(l.band.unit), l.Printed+shown("%"), l.Where())
+			text = fmt.Sprintf("together %s take up to %s of the circulating volume in %s, more than %s, the limit of %s", together, q.Stated, digits(l.band.high)+shown(l.band.unit), l.Printed+shown("%"), l.Where())
 		}
 	}
-	f := Finding{Code: Blood, About: "blood of all procedures", Key: c.drawn[0].key, Stated: join(names), Limits: limits, Text: "together the samples keep to the limit over the longest time"}
+	f := Finding{Code: Blood, About: "blood of all procedures", Key: c.drawn[0].key, Stated: together, Limits: limits, Text: "together the samples keep to the limit over the longest time"}
 	if text != "" {
 		f.Level, f.Text, f.Hint = Warning, text, "space the samples, or take less"
 	}
