@@ -249,12 +249,6 @@ func rule(id string) Rule {
 	panic("welfare: there is no such rule")
 }
 
-// Value is the number of l, in its unit.
-func (l *Limit) Value() float64 { return l.value }
-
-// Most tells whether the number is the greatest allowed; else it is the least.
-func (l *Limit) Most() bool { return l.most }
-
 // tolerance keeps the rounding of a conversion from turning an equality round.
 const tolerance = 1e-9
 
