@@ -343,13 +343,13 @@ func (z *sizer) judge() {
 	out.Detectable = result.Number(t.Detectable(z.wished(), se, at))
 	needed := z.grower.first(func(x *setting) bool { yes, _ := z.reached(x, sd); return yes })
 	z.does, z.known = z.reached(now, sd)
-	if z.does && (needed == nil || now.units < needed.units) {
+	if z.does && z.grower.step > 0 && (needed == nil || now.units < needed.units) {
 		needed = now // of unequal replication, beside those that were tried
 	}
 	if z.known {
 		out.Needed = z.needed(needed)
 		out.WithLosses = z.needed(z.withLosses(needed))
-		if needed == nil && z.grower.step > 0 {
+		if needed == nil && !z.does && z.grower.step > 0 {
 			z.note("size-unreached", prose.SizeUnreached(z.plan, z.grower.unit))
 		}
 	}
@@ -400,9 +400,6 @@ func (z *sizer) needed(x *setting) *result.Needed {
 func (z *sizer) rule() {
 	least := z.trial.Protocol.Analysis.ErrorDFMin
 	first := z.grower.first(func(x *setting) bool { return x.errorDF >= least })
-	if first == nil {
-		return
-	}
 	z.out.ErrorDFRule = plain(first)
 	if z.s.Basis == "error df" {
 		z.does, z.known = z.now.errorDF >= least, true
@@ -542,7 +539,7 @@ func (z *sizer) explain() {
 	if z.short() {
 		pos := z.trial.Protocol.Pos("sample_size")
 		z.list.Add(diag.Diagnostic{Pos: pos, Key: "sample_size", Severity: diag.Warning, Code: sizeShort,
-			Message: lowerStart(strings.TrimSuffix(prose.SizeCheck(p, out), ".")), Hint: prose.SizeHint(out)})
+			Message: lowerStart(strings.TrimSuffix(prose.SizeCheck(p, out, z.does), ".")), Hint: prose.SizeHint(out)})
 	}
 }
 
@@ -560,7 +557,7 @@ func (z *sizer) checks() []result.Check {
 		if z.short() {
 			c.Level = "warning"
 		}
-		c.Text = prose.SizeCheck(z.plan, z.out)
+		c.Text = prose.SizeCheck(z.plan, z.out, z.does)
 	case z.s.Basis == "power" || z.s.Basis == "precision":
 		c.Level, c.Text = "warning", prose.SizeUnknown(z.s.Basis)
 	default:

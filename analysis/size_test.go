@@ -385,6 +385,21 @@ func TestSitesSize(t *testing.T) {
 	close9(t, "power", s.Power, dist.NoncentralFUpper(dist.FQuantile(.05, 3, 12), 3, 12, 5*4/2.))
 }
 
+// A plan near the greatest a trial may have is still told how many would do, and hens by
+// the thousand in each house do not keep houses from being counted.
+func TestLargeSizes(t *testing.T) {
+	s, _ := sized(t, four("[[unit]]\nname = \"block\"\ncount = 25000\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 4\nreceives = [\"diet\"]\n",
+		"[sample_size]\nbasis = \"power\"\ndifference = 0.5\nsd = 1\n"))
+	if s.Needed == nil || s.Needed.Replicates < 80 || s.Needed.Replicates > 100 || s.ErrorDFRule == nil || s.ErrorDFRule.Replicates != 5 {
+		t.Errorf("blocks: %+v, %+v, %+v", s.Needed, s.ErrorDFRule, s.Grows)
+	}
+	s, _ = sized(t, four("[[unit]]\nname = \"house\"\ncount = 8\nreceives = [\"diet\"]\n[[unit]]\nname = \"hen\"\nwithin = \"house\"\ncount = 50000\n",
+		"[sample_size]\nbasis = \"power\"\ndifference = 1\nsd = { house = 1, hen = 4 }\n"))
+	if s.Needed == nil || s.Needed.Replicates != 23 { // as for two means 1 σ apart, four levels, in Neter's table
+		t.Errorf("houses: %+v", s.Needed)
+	}
+}
+
 // An augmented design cannot grow: entries stand once. Its checks and entries have what
 // the allotment leaves them, once there is one.
 func TestFixedSize(t *testing.T) {
@@ -614,5 +629,64 @@ func TestSizesOfAllLayouts(t *testing.T) {
 	}
 	if computed < len(files)*3/4 {
 		t.Errorf("the power of %d layouts of %d was computed", computed, len(files))
+	}
+}
+
+// Random layouts with amounts that are usual or extreme: no panic, no power outside 0 and
+// 1, no number that is infinite, and each gives power or a reason.
+func TestSizesOfRandomTrials(t *testing.T) {
+	n := 160
+	if testing.Short() {
+		n = 40
+	}
+	amounts := []string{
+		"basis = \"power\"\ndifference = 2\nsd = 1\n", "basis = \"power\"\ndifference = 1e-200\nsd = 1e200\n", "basis = \"power\"\ndifference = 1e200\nsd = 1e-200\n",
+		"basis = \"power\"\nmargin = 3\nsd = 1\nsides = 1\nattrition = 0.999\n", "basis = \"precision\"\nhalf_width = 1e-6\ncv = 10\n", "basis = \"error df\"\nattrition = 0.2\n",
+		"basis = \"stated\"\nsource = \"x\"\ndifference = 1\nsd = 1\nicc = 0.3\npower = 0.999999\n", "basis = \"power\"\ndifference_percent = 10\ncv = 12\npower = 1e-9\n",
+	}
+	for seed := range uint64(n) {
+		r := rand.New(rand.NewPCG(seed, 77))
+		s := randomTrial(r)
+		s.build()
+		s.allot(r, true)
+		order := make([]int, len(s.y))
+		for i := range order {
+			order[i] = i
+		}
+		m := s.files(order)
+		term := ""
+		if k := r.IntN(len(s.factors) + 1); k < len(s.factors) {
+			term = "term = \"" + s.factors[k].name + "\"\n"
+		}
+		text := "\n[sample_size]\n" + amounts[int(seed)%len(amounts)] + term
+		m["protocol.toml"] = &fstest.MapFile{Data: append(slices.Clip(m["protocol.toml"].Data), text...)}
+		if seed%3 == 0 {
+			delete(m, "allotment.csv")
+			delete(m, "data.csv")
+		}
+		tr, list := trial.Open(folder.FromFS(m))
+		if tr.Plan == nil {
+			if list.HasErrors() {
+				continue
+			}
+			t.Fatalf("seed %d: no plan", seed)
+		}
+		out, _ := Size(tr)
+		for _, x := range []result.Number{out.Power, out.Efficiency} {
+			if x.Known() && !(x >= 0 && x <= 1) {
+				t.Errorf("seed %d: %g is no share; %s\n%s", seed, float64(x), text, m["protocol.toml"].Data)
+			}
+		}
+		if !out.Power.Known() && !out.HalfWidth.Known() && out.Needed == nil && len(out.Notes) == 0 {
+			t.Errorf("seed %d: neither numbers nor a reason\n%s", seed, m["protocol.toml"].Data)
+		}
+		if n := out.Needed; n != nil && n.Power.Known() && out.Basis == "power" && n.Power < out.Wished-1e-9 {
+			t.Errorf("seed %d: %+v does not reach %g", seed, n, float64(out.Wished))
+		}
+		for i := range out.Curve {
+			if i > 0 && out.Curve[i].Power.Known() && out.Curve[i].Power < out.Curve[i-1].Power-1e-9 && out.Curve[i].Replicates > out.Curve[i-1].Replicates {
+				t.Errorf("seed %d: the curve falls\n%+v\n%s", seed, out.Curve, m["protocol.toml"].Data)
+			}
+		}
 	}
 }

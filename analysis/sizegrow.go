@@ -8,12 +8,35 @@ import (
 )
 
 // Bounds of the search for a replication, so that it ends: rows of a plan that is tried,
-// rows of all plans together, and tries until the step is found.
+// though as many times the planned ones are allowed as growTimes says; rows of any plan;
+// rows of all plans together; and tries until the step is found.
 const (
-	growRows  = 200_000
-	growTotal = 4_000_000
+	growRows  = 20_000
+	growTimes = 8
+	growMost  = 200_000
+	growTotal = 2_000_000
 	growTries = 400
 )
+
+// rows is the number of rows of a plan with another count. Sampling units have no part in
+// the errors of treatments and are made two at a time.
+func (g *grower) rows(count int) float64 {
+	n := 0
+	sampled := 1
+	for u := range g.z.plan.Units {
+		if unit := &g.z.plan.Units[u]; unit.Role == layout.Sampling && unit.Crosses == nil {
+			sampled *= 2
+		} else {
+			n = max(n, unit.N)
+		}
+	}
+	return float64(min(n*sampled, g.z.plan.Units[g.z.plan.Smallest].N)) / float64(g.count) * float64(count)
+}
+
+// fits tells whether a plan of so many rows may be tried.
+func (g *grower) fits(rows float64) bool {
+	return rows <= growRows || rows <= growMost && rows <= growTimes*g.rows(g.count)
+}
 
 // grower makes plans with another number of the unit that stands for replication, and
 // remembers what the target has in them.
@@ -110,11 +133,20 @@ func (g grower) prepared() grower {
 	g.count = n
 	// The first two counts from the planned one on at which the plan is of its kind, all
 	// treatments as often as each other; where the plan itself is not, it stands beside
-	// the counts that are tried.
-	first := 0
-	for c := n; c <= n+growTries && g.spent <= growTotal/2; c++ {
+	// the counts that are tried. A plan too large to be made larger is looked at from below.
+	if !g.stepFrom(n) {
+		g.stepFrom(2)
+	}
+	return g
+}
+
+// stepFrom finds step and base from the first two counts at or above c that do.
+func (g *grower) stepFrom(c int) bool {
+	p := g.z.plan
+	first, limit := 0, g.spent+growTotal/4
+	for end := c + growTries; c <= end && g.spent <= limit; c++ {
 		q := p
-		if c != n {
+		if c != g.count {
 			q = g.rebuilt(c)
 		}
 		if q == nil || !sameKind(p, q) {
@@ -129,9 +161,9 @@ func (g grower) prepared() grower {
 		if g.base == 0 {
 			g.base = g.step
 		}
-		break
+		return true
 	}
-	return g
+	return false
 }
 
 // perParentCount is the number of a unit in each parent, 0 where it differs.
@@ -153,8 +185,8 @@ func perParentCount(u *protocol.Unit) int {
 // rebuilt is the plan with another count of the unit; nil when there is none.
 func (g *grower) rebuilt(count int) *layout.Plan {
 	p := g.z.plan
-	rows := float64(p.Units[p.Smallest].N) / float64(g.count) * float64(count)
-	if count < 1 || rows > growRows || float64(g.spent)+rows > growTotal {
+	rows := g.rows(count)
+	if count < 1 || !g.fits(rows) || float64(g.spent)+rows > growTotal {
 		return nil
 	}
 	g.spent += int(rows)
@@ -166,6 +198,9 @@ func (g *grower) rebuilt(count int) *layout.Plan {
 			u.Count = []int{n}
 		}
 		u.Labels = nil
+		if p.Units[i].Role == layout.Sampling && p.Units[i].Crosses == nil {
+			u.Count = []int{min(2, slices.Min(u.Count))}
+		}
 		if len(u.Animals) > 1 {
 			u.Animals = nil
 		}
@@ -270,17 +305,13 @@ func (g *grower) at(j int) *setting {
 func (g *grower) first(does func(*setting) bool) *setting {
 	yes := func(j int) bool { x := g.at(j); return x != nil && does(x) }
 	if g.step == 0 {
-		if x := g.at(0); x != nil && x.errorDF > 0 && does(x) {
-			return x
-		}
-		return nil
+		return nil // whether fewer would do is not known
 	}
 	lo, hi := -1, 0
 	for !yes(hi) {
 		lo = hi
 		hi = 2*hi + 1
-		count := g.base + hi*g.step
-		if rows := float64(g.z.plan.Units[g.z.plan.Smallest].N) / float64(g.count) * float64(count); rows > growRows || g.spent > growTotal*3/4 {
+		if !g.fits(g.rows(g.base+hi*g.step)) || g.spent > growTotal*3/4 {
 			return nil
 		}
 	}

@@ -175,7 +175,7 @@ func SizeNormal(r *protocol.Response) string {
 
 // SizeFixed says that no other replication of the layout can be tried.
 func SizeFixed(p *layout.Plan, unit int) string {
-	return fmt.Sprintf("Other numbers of %s would change the kind of the layout or its counts are given one by one, so no other replication was tried.", Plural(UnitName(&p.Units[unit])))
+	return fmt.Sprintf("Other numbers of %s would change the kind of the layout, or counts are given one by one, so no other replication was tried.", Plural(UnitName(&p.Units[unit])))
 }
 
 // SizeUnreached says that no replication within bounds does.
@@ -243,7 +243,7 @@ func amount(p *layout.Plan, s *result.SampleSize, x result.Number) string {
 	}
 	d := num.SEDecimals(float64(x))
 	if s.SD.Known() {
-		d = num.SEDecimals(float64(s.SD))
+		d = max(d, num.SEDecimals(float64(s.SD)))
 	}
 	return SizeAmount(p, s, num.Fixed(float64(x), d))
 }
@@ -336,7 +336,7 @@ func wish(p *layout.Plan, s *result.SampleSize) string {
 }
 
 // SizeCheck says whether the number of units does what it was chosen for.
-func SizeCheck(p *layout.Plan, s *result.SampleSize) string {
+func SizeCheck(p *layout.Plan, s *result.SampleSize, does bool) string {
 	got := ""
 	switch {
 	case s.Method == "error df" && s.ErrorDF != nil:
@@ -348,6 +348,7 @@ func SizeCheck(p *layout.Plan, s *result.SampleSize) string {
 	}
 	text := fmt.Sprintf("With %s the plan %s for %s, and %s is wished", some(s.Replicates, "replicate"), got, subject(p, s), wish(p, s))
 	switch {
+	case s.Needed == nil && does:
 	case s.Needed == nil:
 		text += ", which no replication that could be tried reaches"
 	case s.WithLosses != nil:
@@ -401,7 +402,7 @@ func SizeFound(p *layout.Plan, s *result.SampleSize) []string {
 		line += fmt.Sprintf(", %s in all", some(s.Units, unit))
 	}
 	if s.ErrorDF != nil {
-		line += fmt.Sprintf(", and %s degrees of freedom for the error", num.DF(float64(*s.ErrorDF)))
+		line += fmt.Sprintf(", and %s degrees of freedom for the error", num.Count(*s.ErrorDF))
 	}
 	if s.Term != "" {
 		out = append(out, line+".")

@@ -12,18 +12,16 @@ import (
 	"penwright/render/doc"
 )
 
-// sizeDecimals is the number of decimals of a column of numbers on the scale of a size.
+// sizeDecimals is the number of decimals of a column of numbers on the scale of a size:
+// those that show its spread, and each number, to two digits.
 func sizeDecimals(s *result.SampleSize, xs ...result.Number) int {
-	if s.SD.Known() {
-		return num.SEDecimals(float64(s.SD))
-	}
 	var v []float64
-	for _, x := range xs {
+	for _, x := range append(xs, s.SD) {
 		if x.Known() {
 			v = append(v, float64(x))
 		}
 	}
-	return num.ColumnDecimals(v, 2, 4)
+	return num.ColumnDecimals(v, 2, 6)
 }
 
 // sizeUnit is a heading with the unit of a size behind it.
@@ -65,7 +63,7 @@ func Sizes(p *layout.Plan, s *result.SampleSize) doc.Table {
 	t.Columns = append(t.Columns, decimal(), left(false))
 	h = append(h, cell(sizeUnit(p, s, "Half width")), cell("Remark"))
 	t.Head = head(h...)
-	d := sizeDecimals(s)
+	d := sizeDecimals(s, s.Curve[len(s.Curve)-1].HalfWidth)
 	for _, c := range s.Curve {
 		row := []doc.Cell{cell(num.Count(c.Replicates))}
 		if counted {
@@ -126,7 +124,11 @@ func SizeTerms(p *layout.Plan, s *result.SampleSize) doc.Table {
 		h = append(h, cell(sizeUnit(p, s, "Difference")))
 	}
 	t.Head = head(h...)
-	d := sizeDecimals(s)
+	var shown []result.Number
+	for _, x := range s.Terms {
+		shown = append(shown, x.Detectable)
+	}
+	d := sizeDecimals(s, shown...)
 	interaction := false
 	for _, x := range s.Terms {
 		df := ""
@@ -162,7 +164,7 @@ func SizeSpread(p *layout.Plan, s *result.SampleSize) doc.Table {
 		Columns: []doc.Column{left(true), decimal(), decimal()},
 		Head:    head(cell("Changed"), cell(sizeUnit(p, s, "To")), cell("Power")),
 	}
-	d := max(sizeDecimals(s, s.Difference), num.SEDecimals(float64(s.ByDifference[0].Difference)))
+	d := sizeDecimals(s, s.ByDifference[0].Difference)
 	for _, x := range s.ByDifference {
 		t.Rows = append(t.Rows, doc.Row{Cells: []doc.Cell{cell("Difference"), cell(fixed(x.Difference, float64(x.Difference), d)), powerCell(x.Power)}})
 	}
