@@ -26,12 +26,16 @@ func ErrorDF(p *layout.Plan, t *layout.Term, least int) (message, hint string) {
 	return message + fmt.Sprintf(", fewer than the %d asked for", least), "plan more experimental units, or state the limit under analysis.error_df_min"
 }
 
-// SmallSquare words a Latin or Graeco-Latin square whose error has too few degrees of
-// freedom: squares of that side are enough, which leave own degrees of freedom with
-// rows and columns of their own and common with one of them in common.
-func SmallSquare(p *layout.Plan, t *layout.Term, least, side, squares, own, common int) (message, hint string) {
-	message = fmt.Sprintf("a square of side %d leaves the test of %s %s error degrees of freedom, fewer than the %d asked for",
-		side, TermText(p, t.Name), num.DF(float64(t.ErrorDF)), least)
+// SmallSquare words Latin or Graeco-Latin squares, now of them, whose error has too few
+// degrees of freedom: so many squares are enough, which leave own degrees of freedom
+// with rows and columns of their own and common with one of them in common.
+func SmallSquare(p *layout.Plan, t *layout.Term, least, side, now, squares, own, common int) (message, hint string) {
+	which := fmt.Sprintf("a square of side %d leaves", side)
+	if now > 1 {
+		which = fmt.Sprintf("%s of side %d leave", some(now, "square"), side)
+	}
+	message = fmt.Sprintf("%s the test of %s %s error degrees of freedom, fewer than the %d asked for",
+		which, TermText(p, t.Name), num.DF(float64(t.ErrorDF)), least)
 	return message, fmt.Sprintf("%s such squares leave %d, or %d where they share rows or columns", small(squares), own, common)
 }
 
@@ -91,6 +95,23 @@ func UndeclaredUnit(p *layout.Plan, factor, unit int, heading string, classes in
 	return fmt.Sprintf("%q is no unit of the trial, but all %s with the same %s have the same %s: if that is what was treated, it is the experimental unit, %s of them and not %s",
 			heading, Plural(u), name, f, num.Count(classes), num.Count(p.Units[unit].N)),
 		fmt.Sprintf("declare it as a [[unit]] that receives %s, with %s within it", p.Factors[factor].Name, p.Units[unit].Name)
+}
+
+// GroupHoused words animals that are kept in groups of n while each is said to be an
+// experimental unit.
+func GroupHoused(p *layout.Plan, unit, n int) (message, hint string) {
+	u := UnitName(&p.Units[unit])
+	what := factorNames(p, p.Units[unit].Receives)
+	return fmt.Sprintf("animals are kept in groups of %s, and each %s is said to receive %s by itself", small(n), u, what),
+		fmt.Sprintf("if a group is given it together, the group is the experimental unit: declare it as a [[unit]] that receives %s, with %s within it", factorKeys(p, p.Units[unit].Receives), p.Units[unit].Name)
+}
+
+func factorKeys(p *layout.Plan, fs []int) string {
+	var names []string
+	for _, f := range fs {
+		names = append(names, p.Factors[f].Name)
+	}
+	return And(names)
 }
 
 // Inseparable words two units of which each holds the other alone.

@@ -125,6 +125,24 @@ const (
 	//	4,8,B
 	UndeclaredUnit = "undeclared-unit"
 
+	// GroupHoused: animals are kept in groups, and each is said to be an experimental
+	// unit by itself.
+	//
+	// Example:
+	//
+	//	[animals]
+	//	species = "pig"
+	//	[housing]
+	//	group_size = 6
+	//	[[factor]]
+	//	name = "diet"
+	//	levels = ["A", "B"]
+	//	[[unit]]
+	//	name = "pig"
+	//	count = 48
+	//	receives = ["diet"]
+	GroupHoused = "group-housed"
+
 	// Inseparable: each of a larger unit holds one of a smaller one only.
 	//
 	// Example:
@@ -335,6 +353,8 @@ var table = []struct{ code, text, reason string }{
 		"samples from one treated unit are no replicates of the treatment (S. H. Hurlbert, Ecological Monographs 54 (1984) 187-211; from memory)"},
 	{UndeclaredUnit, "a treatment does not vary inside the classes of a column that is no unit of the trial",
 		"samples from one treated unit are no replicates of the treatment (S. H. Hurlbert, Ecological Monographs 54 (1984) 187-211; from memory)"},
+	{GroupHoused, "animals are kept in groups, and each is said to be an experimental unit by itself",
+		"what a group shares, such as its feeder, treats all of it at once (ARRIVE 2.0, item 1b)"},
 	{Inseparable, "each of a larger unit holds one of a smaller one only",
 		"two units of one and the same extent have one stratum between them"},
 	{Confounded, "a term is told only by differences between units larger than those that received it",

@@ -58,6 +58,33 @@ func (c *checker) primary() {
 	}
 }
 
+// grouped finds animals that are kept in groups while each is an experimental unit of
+// its own, and no unit stands for the group.
+func (c *checker) grouped() {
+	p := c.plan
+	if p.Protocol.Animals == nil || p.Protocol.Housing == nil || p.Protocol.Housing.GroupSize < 2 {
+		return
+	}
+	n := p.Protocol.Housing.GroupSize
+	for u := range p.Units {
+		unit := &p.Units[u]
+		if len(unit.Receives) == 0 || unit.Crosses != nil || unit.Animals != nil || p.Protocol.Units[u].AnimalsColumn != "" {
+			continue
+		}
+		group := false // a unit that holds as many, or that lies within this one
+		for v := range p.Units {
+			if v == u {
+				continue
+			}
+			group = group || p.Coarse(v, u) != nil || p.Coarse(u, v) != nil && p.Units[v].N*n == p.Units[u].N
+		}
+		if !group {
+			message, hint := prose.GroupHoused(p, u, n)
+			c.at(unitKey(u), GroupHoused, Note, message, hint)
+		}
+	}
+}
+
 // carryOver finds units that receive one treatment after another with nothing planned
 // for what is left behind.
 func (c *checker) carryOver() {

@@ -50,6 +50,7 @@ func Check(t *trial.Trial) []Finding {
 	c.errors()
 	c.replication()
 	c.undeclared()
+	c.grouped()
 	c.inseparable()
 	c.blocks()
 	c.terms()
@@ -125,7 +126,8 @@ func (c *checker) errors() {
 				for (side-1)*(s*(side-1)-factors) < least {
 					s++
 				}
-				message, hint := prose.SmallSquare(c.plan, t, least, side, s, (side-1)*(s*(side-1)-factors), (side-1)*(s*side-1-factors))
+				now := c.plan.Units[t.Unit].N / (side * side)
+				message, hint := prose.SmallSquare(c.plan, t, least, side, now, s, (side-1)*(s*(side-1)-factors), (side-1)*(s*side-1-factors))
 				c.at(unitKey(t.Unit), SmallSquare, Warning, message, hint)
 				continue
 			}

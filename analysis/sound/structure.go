@@ -70,6 +70,9 @@ func (c *checker) on(u, v int) factor.Factor {
 // all, and how much of the information they keep.
 func (c *checker) blocks() {
 	p := c.plan
+	if p.Protocol.TimeTrend != nil || p.Protocol.CarryOver != nil {
+		return // what else is fitted takes information too, which the size counts
+	}
 	for u := range p.Units {
 		a := p.Allocation(u)
 		if a == nil || a.Separate || a.Complete || a.Checks != nil || len(a.Blocks) == 0 || len(a.Combinations) > power.Most {
@@ -146,8 +149,12 @@ next:
 	return out
 }
 
-// wide bounds the columns of the models that are looked at for aliasing.
-const wide = 600
+// The columns of the models that are looked at for aliasing, and the work on one, are
+// bounded: a check is to take no longer than the analysis.
+const (
+	wide = 600
+	work = 500_000_000
+)
 
 // terms finds treatment terms that the allotment confounds with larger units or with
 // one another.
@@ -235,7 +242,7 @@ func (c *checker) lost(u int, terms, fixed []int) []int {
 		columns += width
 		m.Terms = append(m.Terms, indices)
 	}
-	if columns > wide {
+	if columns > wide || columns*columns > work/max(len(m.Y), 1) {
 		return nil
 	}
 	fit, err := m.Fit()
