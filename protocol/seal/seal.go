@@ -94,12 +94,12 @@ func Read(files *folder.Folder, p *protocol.Protocol) (*Seal, diag.List) {
 		if i+1 < len(s.Entries) {
 			next = &s.Entries[i+1]
 		}
-		for _, d := range between(&s.Entries[i], next) {
+		for _, d := range s.between(&s.Entries[i], next) {
 			s.Revisions = append(s.Revisions, Revision{Difference: d, Since: i + 1, Amendment: covers(amended, s.Entries[i].On, &d)})
 		}
 	}
 	if s.before != nil {
-		s.against = between(s.before, now)
+		s.against = s.between(s.before, now)
 	}
 	return s, append(list, s.check()...)
 }
@@ -125,11 +125,14 @@ func present(files *folder.Folder, p *protocol.Protocol) (*Entry, error) {
 }
 
 // between lists the differences of two seals. People who joined are none; nor are a
-// roster and an allotment that were not there yet.
-func between(a, b *Entry) []Difference {
+// roster and an allotment that were not there yet, and the default of a key that the
+// program did not know when the first of them was made.
+func (s *Seal) between(a, b *Entry) []Difference {
 	var out []Difference
 	for _, d := range compare(a.plan, b.plan) {
-		if d.Kind != Added || d.Table != "person" || d.Field != "" {
+		joined := d.Kind == Added && d.Table == "person" && d.Field == ""
+		unknown := d.Kind == Added && d.Field != "" && !s.p.Given(d.Key)
+		if !joined && !unknown {
 			out = append(out, d)
 		}
 	}

@@ -322,6 +322,10 @@ func TestFindings(t *testing.T) {
 		want  []string
 	}{
 		{"uncovered", pens, []string{finding}},
+		{"a rule", []string{`, "feeder failure over 12 h"`, `, "feeder failure over 12 h", "outlier"`},
+			[]string{"protocol.toml:11:75 warning: exclusion rule added: outlier, since seal 1 of 2026-02-20, and no amendment says so [not-amended]"}},
+		{"keys that were absent", []string{"name = \"initial_mass\"", "name = \"initial_mass\"\nunit = \"kg\""},
+			[]string{"protocol.toml:36:1 warning: unit of covariate initial_mass added: kg, since seal 1 of 2026-02-20, and no amendment says so [not-amended]"}},
 		{"covered", append(slices.Clone(pens), "[analysis]\n", amendment("2026-02-20", "Five pens in each block.")), nil},
 		{"too early", append(slices.Clone(pens), "[analysis]\n", amendment("2026-02-19", "Five pens in each block.")), []string{finding}},
 		{"about something else", append(slices.Clone(pens), "[analysis]\n", amendment("2026-03-01", "Penelope joins.")), []string{finding}},
@@ -428,6 +432,29 @@ func TestPlanned(t *testing.T) {
 	s = nil
 	if !s.Response("backfat").Planned() || !s.Contrast("adg", "high v. low") || !s.Rule("outlier") || !s.Trend(9) {
 		t.Error("a trial without seal has nothing planned")
+	}
+}
+
+// TestSealOfOlderProgram reads a plan that was sealed when the format had fewer keys.
+func TestSealOfOlderProgram(t *testing.T) {
+	x := newTrial(t, base)
+	plan, err := x.protocol().CanonicalPlan()
+	if err != nil {
+		t.Fatal(err)
+	}
+	older := bytes.Replace(plan, []byte(`"df_method":"kenward-roger",`), nil, 1)
+	if len(older) == len(plan) {
+		t.Fatal("the plan has no df_method")
+	}
+	e := Entry{Number: 1, On: on(2, 20), Plan: older, SHA256: folder.Hash(older)}
+	x.m[File] = &fstest.MapFile{Data: e.bytes(nil)}
+	s, said := x.read()
+	if said != nil || !s.Response("adg").Planned() {
+		t.Errorf("a new default is a difference: %q", said)
+	}
+	x.m["protocol.toml"].Data = []byte(edit(t, base, "[analysis]\n", "[analysis]\ndf_method = \"satterthwaite\"\n"))
+	if s, said = x.read(); len(said) != 1 || s.Response("adg").Planned() {
+		t.Errorf("a new key that is stated is none: %q", said)
 	}
 }
 
