@@ -199,22 +199,34 @@ func jobs(d *doc.Document, rs *result.Results, opt Options, attached []attached)
 		out = append(out, func() ([]File, diag.List, error) { return csvFiles(rs), nil, nil })
 	}
 	if want("figures") {
-		for _, b := range d.Blocks {
-			f, ok := b.(doc.Figure)
-			if !ok || f.File == "" || f.Picture == nil {
-				continue
-			}
-			out = append(out, func() ([]File, diag.List, error) {
-				var svg, page bytes.Buffer
-				if err := html.SVG(&svg, f.Picture, f.Alt); err != nil {
-					return nil, nil, err
-				}
-				err := pdf.WritePicture(&page, f.Picture, doc.Plain(f.Caption), about)
-				return []File{{Path: "figures/" + f.File + ".svg", Data: svg.Bytes()}, {Path: "figures/" + f.File + ".pdf", Data: page.Bytes()}}, nil, err
-			})
-		}
+		out = append(out, func() ([]File, diag.List, error) { return figures(d, about) })
 	}
 	return out
+}
+
+// figures writes each figure of a report as files of its own.
+func figures(d *doc.Document, about pdf.Options) ([]File, diag.List, error) {
+	var shown []doc.Figure
+	var pics []pdf.Picture
+	for _, b := range d.Blocks {
+		if f, ok := b.(doc.Figure); ok && f.File != "" && f.Picture != nil {
+			shown = append(shown, f)
+			pics = append(pics, pdf.Picture{Title: doc.Plain(f.Caption), Picture: f.Picture})
+		}
+	}
+	pages, err := pdf.Pictures(pics, about)
+	if err != nil {
+		return nil, nil, err
+	}
+	var out []File
+	for i, f := range shown {
+		var svg bytes.Buffer
+		if err := html.SVG(&svg, f.Picture, f.Alt); err != nil {
+			return nil, nil, err
+		}
+		out = append(out, File{Path: "figures/" + f.File + ".svg", Data: svg.Bytes()}, File{Path: "figures/" + f.File + ".pdf", Data: pages[i]})
+	}
+	return out, nil, nil
 }
 
 // Document composes the report as a numbered document.

@@ -28,11 +28,19 @@ func finish(d *drawn, book *page.Book, m meta, files []Attachment) ([]byte, erro
 	if err != nil {
 		return nil, err
 	}
-	f := &finisher{objects: objects, book: book, meta: m}
+	f := &finisher{objects: objects}
+	if err := f.fonts(d.runes); err != nil {
+		return nil, err
+	}
+	return f.finish(book, m, files)
+}
+
+// finish does what remains once the fonts are done.
+func (f *finisher) finish(book *page.Book, m meta, files []Attachment) ([]byte, error) {
+	f.book, f.meta = book, m
 	// The library ends with the information and the catalog.
-	f.catalog, f.info = len(objects)-1, len(objects)-2
+	f.catalog, f.info = len(f.objects)-1, len(f.objects)-2
 	for _, step := range []func() error{
-		func() error { return f.fonts(d.runes) },
 		f.pages,
 		func() error { return f.attach(files) },
 		f.root,

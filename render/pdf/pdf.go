@@ -47,19 +47,14 @@ func Write(w io.Writer, d *doc.Document, files []Attachment, opt Options) (diag.
 
 // WritePicture writes one picture as a page of its own size.
 func WritePicture(w io.Writer, pic *doc.Picture, title string, opt Options) error {
-	width, height := 1.0, 1.0
-	if pic != nil {
-		width, height = limited(pic.Width, 1), limited(pic.Height, 1)
+	files, err := Pictures([]Picture{{Title: title, Picture: pic}}, opt)
+	if err != nil {
+		return err
 	}
-	pg := page.Page{Width: width, Height: height}
-	if pic != nil {
-		pg.Ops = []page.Op{
-			page.Begin{Element: &page.Element{Role: page.Figure, Alt: title}},
-			page.Picture{Scale: 1, Picture: pic},
-			page.End{},
-		}
+	if _, err := w.Write(files[0]); err != nil {
+		return fmt.Errorf("writing the PDF: %w", err)
 	}
-	return write(w, &page.Book{Pages: []page.Page{pg}}, meta{title: title, options: opt}, nil)
+	return nil
 }
 
 // limited keeps the size of a page within what readers take (PDF 32000-1, annex C).
