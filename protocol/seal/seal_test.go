@@ -265,7 +265,8 @@ func TestOddTexts(t *testing.T) {
 	}
 }
 
-// TestTampered changes every byte of a record of two seals, and removes and adds lines.
+// TestTampered changes every byte of a record of two seals, of the long plans every 13th,
+// and removes and adds lines.
 func TestTampered(t *testing.T) {
 	x := newTrial(t, base)
 	x.seal(Entry{By: "Ansa Verrill", On: on(2, 20)})
@@ -281,6 +282,9 @@ func TestTampered(t *testing.T) {
 		t.Fatal("a whole record is taken as broken")
 	}
 	for i := range two {
+		if start := bytes.LastIndexByte(two[:i], '\n') + 1; bytes.HasPrefix(two[start:], []byte("plan = ")) && i%13 != 0 {
+			continue
+		}
 		data := bytes.Clone(two)
 		data[i] ^= 1
 		if !broken(data) {
