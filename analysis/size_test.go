@@ -12,6 +12,7 @@ import (
 	"github.com/rogpeppe/go-internal/txtar"
 
 	"penwright/analysis/dist"
+	"penwright/analysis/prose"
 	"penwright/analysis/result"
 	"penwright/analysis/trial"
 	"penwright/protocol/diag"
@@ -99,6 +100,24 @@ func TestErrorDFRule(t *testing.T) {
 		s, _ := sized(t, tt.protocol)
 		if s.Needed == nil || s.Needed.Replicates != tt.replicates || s.Needed.Units != tt.units || s.Needed.ErrorDF != tt.df {
 			t.Errorf("%s: %+v", tt.name, s.Needed)
+		}
+	}
+}
+
+// R. Mead, The Design of Experiments (1988): error df N − 1 − blocks − treatments, advised
+// between 10 and 20: 24 units of four treatments 20, in six blocks 15; four blocks 9.
+func TestWindow(t *testing.T) {
+	for _, tt := range []struct {
+		units string
+		df    int
+		want  string
+	}{
+		{strings.Replace(sizePens, "16", "24", 1), 20, "lie in the window"}, {blocks, 15, "lie in the window"},
+		{strings.Replace(blocks, "count = 6", "count = 4", 1), 9, "below the window"}, {strings.Replace(sizePens, "16", "28", 1), 24, "above the window"},
+	} {
+		s, _ := sized(t, four(tt.units, ""))
+		if s.ErrorDF == nil || *s.ErrorDF != tt.df || !strings.Contains(prose.Window(*s.ErrorDF), tt.want) {
+			t.Errorf("error df %v, want %d %s", s.ErrorDF, tt.df, tt.want)
 		}
 	}
 }
