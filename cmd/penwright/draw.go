@@ -12,6 +12,7 @@ import (
 
 	"github.com/spf13/cobra"
 
+	"penwright/analysis/prose"
 	"penwright/protocol"
 	"penwright/protocol/allot"
 	"penwright/protocol/folder"
@@ -154,13 +155,12 @@ func (a *app) record(args []string, redraw bool, why string) error {
 	if list.HasErrors() {
 		return status{code: findings}
 	}
-	scheme, _ := allot.Scheme(t.Plan, t.Roster)
 	on := t.Protocol.Randomization.On
 	if on.IsZero() || len(record) > 0 {
 		now := a.now()
 		on = protocol.Date{Year: now.Year(), Month: int(now.Month()), Day: now.Day()}
 	}
-	entry := allot.Draw{Scheme: scheme, Seed: seed, By: t.Protocol.Randomization.By, On: on, Why: why, Plan: folder.Hash([]byte(t.Plan.String()))}
+	entry := allot.Draw{Seed: seed, By: t.Protocol.Randomization.By, On: on, Why: why, Plan: folder.Hash([]byte(t.Plan.String()))}
 	if t.Roster != nil && t.Protocol.Roster != nil {
 		if f, err := o.folder.Read(t.Protocol.Roster.File, folder.MaxFile); err == nil {
 			entry.Roster = f.SHA256
@@ -178,6 +178,9 @@ func (a *app) record(args []string, redraw bool, why string) error {
 	}
 	for _, c := range changes {
 		fmt.Fprintln(a.out, o.prefix()+c.Path)
+	}
+	for _, line := range prose.Arrangement(t.Plan, drawn) {
+		a.say("%s", line)
 	}
 	return nil
 }

@@ -26,6 +26,8 @@ type Allotment struct {
 
 	Origin Origin
 	Draws  []Draw // the record, oldest first; nil when the trial was allotted elsewhere
+
+	made Draw // what the record will say of this draw, before it is recorded
 }
 
 // Origin tells where an allotment comes from.
@@ -42,6 +44,7 @@ const (
 type Draw struct {
 	Number     int
 	Scheme     string // in words
+	Start      string // arrangements that were permuted: treatments counted from 1, unit by unit in the plan's order
 	Generator  string
 	Seed       string
 	Candidates int

@@ -100,8 +100,8 @@ func concurrences(blocks [][]int32, v int) (low, high, least, most int) {
 var fisherYates = [][5]int{
 	{6, 10, 5, 3, 2}, {6, 20, 10, 3, 4}, {7, 7, 3, 3, 1}, {8, 14, 7, 4, 3}, {9, 12, 4, 3, 1}, {9, 18, 8, 4, 3}, {10, 15, 6, 4, 2},
 	{10, 18, 9, 5, 4}, {10, 30, 9, 3, 2}, {11, 11, 5, 5, 2}, {13, 13, 4, 4, 1}, {13, 26, 6, 3, 1}, {15, 15, 7, 7, 3}, {15, 35, 7, 3, 1},
-	{16, 16, 6, 6, 2}, {16, 20, 5, 4, 1}, {19, 19, 9, 9, 4}, {19, 57, 9, 3, 1}, {21, 21, 5, 5, 1},
-	{21, 42, 10, 5, 2}, {25, 30, 6, 5, 1}, {25, 50, 8, 4, 1}, {28, 36, 9, 7, 2}, {31, 31, 6, 6, 1},
+	{16, 16, 6, 6, 2}, {16, 20, 5, 4, 1}, {16, 24, 9, 6, 3}, {19, 19, 9, 9, 4}, {19, 57, 9, 3, 1}, {21, 21, 5, 5, 1},
+	{21, 30, 10, 7, 3}, {21, 42, 10, 5, 2}, {25, 25, 9, 9, 3}, {25, 30, 6, 5, 1}, {25, 50, 8, 4, 1}, {28, 36, 9, 7, 2}, {31, 31, 6, 6, 1},
 	{37, 37, 9, 9, 2}, {49, 56, 8, 7, 1}, {57, 57, 8, 8, 1},
 }
 
@@ -198,6 +198,75 @@ func TestLattices(t *testing.T) {
 		}
 		if list := Check(a, func(int, int32) diag.Pos { return diag.Pos{} }); len(list) > 0 {
 			t.Errorf("%d², %d replicates: %v", x.k, x.r, list)
+		}
+	}
+}
+
+// TestGraecoLatin: each factor is a Latin square, every pair of levels stands once, and
+// the orders without such squares are refused with the nearest ones.
+func TestGraecoLatin(t *testing.T) {
+	text := func(n, m int) string {
+		s, names := "", []string{}
+		for k := range m {
+			name := string(rune('a' + k))
+			s += factorText(name, n)
+			names = append(names, fmt.Sprintf("%q", name))
+		}
+		return s + fmt.Sprintf("[[unit]]\nname = \"row\"\ncount = %d\n[[unit]]\nname = \"column\"\ncount = %d\n[[unit]]\nname = \"plot\"\ncrosses = [\"row\", \"column\"]\nreceives = [%s]\n", n, n, strings.Join(names, ", "))
+	}
+	for _, x := range [][2]int{{3, 2}, {4, 2}, {4, 3}, {5, 2}, {5, 4}, {7, 2}, {8, 2}, {9, 2}, {10, 2}, {12, 2}} {
+		n, m := x[0], x[1]
+		plan := planOf(t, text(n, m))
+		all, list := Draws(plan, nil, "graeco", 10)
+		if list.HasErrors() {
+			t.Errorf("order %d: %v", n, list)
+			continue
+		}
+		for _, a := range all {
+			for f := range m {
+				if !isLatin(a.Levels[f], n) {
+					t.Fatalf("order %d: factor %d is not Latin", n, f)
+				}
+				for e := range f {
+					pairs := map[[2]int32]bool{}
+					for c := range n * n {
+						pairs[[2]int32{a.Levels[e][c], a.Levels[f][c]}] = true
+					}
+					if len(pairs) != n*n {
+						t.Fatalf("order %d: factors %d and %d are not orthogonal", n, e, f)
+					}
+				}
+			}
+		}
+		if len(all[0].Efficiency()) > 0 {
+			t.Errorf("order %d: %v", n, all[0].Efficiency())
+		}
+	}
+	// Order 3: 3!·2! = 12 Latin squares, for each of them the one other class with its
+	// 3! letterings: 72 allotments, all met equally often.
+	all, list := Draws(planOf(t, text(3, 2)), nil, "three", 3000)
+	if list.HasErrors() {
+		t.Fatal(list)
+	}
+	seen := map[string]int{}
+	for _, a := range all {
+		seen[spell(a.Levels[0])+spell(a.Levels[1])]++
+	}
+	if len(seen) != 72 {
+		t.Errorf("%d pairs of squares of order 3, want 72", len(seen))
+	}
+	counts := make([]int, 0, 72)
+	for _, n := range seen {
+		counts = append(counts, n)
+	}
+	uniform(t, "pairs of squares of order 3", counts)
+	for _, x := range []struct {
+		n, m int
+		want string
+	}{{6, 2, "5 or 7 levels"}, {14, 2, "13 or 15 levels"}, {10, 3, "9 or 11 levels"}, {3, 3, "4 levels"}} {
+		_, list := New(planOf(t, text(x.n, x.m)), nil, "x")
+		if len(list) == 0 || list[0].Code != NotDrawn || !strings.Contains(list[0].Hint, x.want) {
+			t.Errorf("order %d, %d factors: %v", x.n, x.m, list)
 		}
 	}
 }

@@ -30,8 +30,10 @@ func Draws(plan *layout.Plan, roster *Roster, seed string, n int) ([]*Allotment,
 	}
 	g := NewGenerator(seed)
 	all := make([]*Allotment, n)
+	made := Draw{Scheme: s.words(), Start: s.start(), Candidates: 1}
 	for i := range all {
 		all[i] = s.draw(g)
+		all[i].made = made
 	}
 	if plan.Protocol.Randomization.Codes {
 		// A stream of their own, so that codes change no draw.
@@ -49,11 +51,26 @@ func Scheme(plan *layout.Plan, roster *Roster) (string, diag.List) {
 	if list.HasErrors() {
 		return "", list
 	}
+	return s.words(), list
+}
+
+func (s *scheme) words() string {
 	var words []string
 	for _, st := range s.steps {
 		words = append(words, st.words())
 	}
-	return strings.Join(words, "; "), list
+	return strings.Join(words, "; ")
+}
+
+// start writes the arrangements that are permuted.
+func (s *scheme) start() string {
+	var words []string
+	for _, st := range s.steps {
+		if st, ok := st.(*arranged); ok {
+			words = append(words, s.plan.Units[st.of.Unit].Name+": "+st.text())
+		}
+	}
+	return strings.Join(words, "; ")
 }
 
 // maskedCodes gives n different codes K… at random, of as many digits as leave nine in ten
@@ -184,11 +201,10 @@ func coarseFirst(plan *layout.Plan) []int {
 // step prepares the draw of what one unit receives, nil where it is refused.
 func (r *refusal) step(a *layout.Allocation, fixed, levels [][]int32) step {
 	plan, p, u := r.plan, r.plan.Protocol, a.Unit
-	names := factorNames(plan, a.Factors)
 	crosses := plan.Units[u].Crosses != nil
 	switch {
 	case a.Separate:
-		r.add(fmt.Sprintf("unit[%d].receives", u), NotDrawn, elsewhere, "%s on %s are each a Latin square, orthogonal to one another (a Graeco-Latin square); such squares are not drawn", names, plan.Units[u].Name)
+		return r.graeco(a, fixed, levels)
 	case a.Checks != nil:
 		return r.augmented(a, fixed, levels)
 	case crosses && p.CarryOver != nil && slices.ContainsFunc(a.Factors, func(f int) bool { return plan.Factors[f].Name == p.CarryOver.Factor }):
@@ -200,7 +216,6 @@ func (r *refusal) step(a *layout.Allocation, fixed, levels [][]int32) step {
 	default:
 		return r.inBlocks(a, fixed)
 	}
-	return nil
 }
 
 func factorNames(plan *layout.Plan, fs []int) string {

@@ -89,8 +89,8 @@ func Seed(record []Draw, seed string) string {
 
 // Changes are the writes that record a draw: the new allotment.csv, the entry at the
 // end of allotment.toml, and, from the second draw on, the old allotment under its
-// number. d's Number, Generator, Candidates and Allotment are set here. files is the
-// folder as it is. It is an error to replace an allotment that this program did not
+// number. d's Number, Generator, Start, Candidates, Rejected, Allotment and, where it is
+// empty, Scheme are set here. files is the folder as it is. It is an error to replace an allotment that this program did not
 // draw, or that was changed since, or without d.Why.
 func Changes(files *folder.Folder, a *Allotment, d Draw) ([]folder.Change, error) {
 	text := a.Bytes()
@@ -108,7 +108,10 @@ func Changes(files *folder.Folder, a *Allotment, d Draw) ([]folder.Change, error
 		return nil, fmt.Errorf("%s: %s", list[0].Pos, list[0].Message)
 	}
 	d.Number, d.Generator, d.Allotment = len(draws)+1, GeneratorText, folder.Hash(text)
-	d.Candidates = max(d.Candidates, 1)
+	d.Start, d.Candidates, d.Rejected = a.made.Start, max(a.made.Candidates, 1), a.made.Rejected
+	if d.Scheme == "" {
+		d.Scheme = a.made.Scheme
+	}
 	var changes []folder.Change
 	switch {
 	case first && len(draws) > 0:
@@ -143,6 +146,7 @@ func (d Draw) Bytes() []byte {
 	}
 	fmt.Fprintf(&b, "number = %d\n", d.Number)
 	text("scheme", d.Scheme)
+	text("start", d.Start)
 	text("generator", d.Generator)
 	fmt.Fprintf(&b, "seed = %s\n", quote(d.Seed))
 	fmt.Fprintf(&b, "candidates = %d\nrejected = %d\n", d.Candidates, d.Rejected)
@@ -184,6 +188,7 @@ func quote(s string) string {
 type entry struct {
 	Number     int    `toml:"number"`
 	Scheme     string `toml:"scheme"`
+	Start      string `toml:"start"`
 	Generator  string `toml:"generator"`
 	Seed       string `toml:"seed"`
 	Candidates int    `toml:"candidates"`
@@ -232,7 +237,7 @@ func parseRecord(file folder.File) ([]Draw, diag.List) {
 	}
 	var draws []Draw
 	for k, e := range record.Draw {
-		d := Draw{Number: e.Number, Scheme: e.Scheme, Generator: e.Generator, Seed: e.Seed, Candidates: e.Candidates, Rejected: e.Rejected,
+		d := Draw{Number: e.Number, Scheme: e.Scheme, Start: e.Start, Generator: e.Generator, Seed: e.Seed, Candidates: e.Candidates, Rejected: e.Rejected,
 			By: e.By, Plan: e.Plan, Roster: e.Roster, Allotment: e.Allotment, Why: e.Why}
 		if t, ok := e.On.(interface{ Format(string) string }); ok {
 			var ok bool
