@@ -261,7 +261,7 @@ func (r *recorder) columnsOf(b *batch) (fixed, boxes []sheetColumn) {
 		if c.head == "" || c.head == e.Name {
 			c.head = capital(strings.ReplaceAll(e.Name, "_", " "))
 		}
-		if e.Unit != "" {
+		if e.Unit != "" && e.Unit != "1" {
 			c.unit = num.UnitText(e.Unit)
 		}
 		boxes = append(boxes, c)

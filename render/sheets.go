@@ -372,19 +372,24 @@ func (r *recorder) notes() []string {
 // only these.
 func (r *recorder) mapOf(unit int, units []int, size figure.Size) figure.Map {
 	plan := r.trial.Plan
-	here := make([]bool, plan.Units[unit].N)
-	for _, i := range units {
-		here[i] = true
+	here := make([]int, plan.Units[unit].N) // the row of each unit of the sheet, from 1
+	for row, i := range units {
+		here[i] = row + 1
 	}
+	all := len(units) == len(here) // nothing is to be told apart
+	grid := plan.Units[unit].Own == nil
 	m := figure.FromPlan(plan, func(u, i int) figure.Look {
 		look := figure.Look{Treatment: -1, Value: math.NaN()}
 		switch up, down := plan.Coarse(u, unit), plan.Coarse(unit, u); {
 		case up != nil:
-			if here[up[i]] {
+			if row := here[up[i]]; row > 0 && !all {
 				look.Treatment = 0
 			}
+			if row := here[up[i]]; row > 0 && grid && u == unit {
+				look.Label = num.Count(row) // which its row and column do not say
+			}
 		case down != nil: // cells that hold what is recorded
-			if slices.ContainsFunc(units, func(k int) bool { return int(down[k]) == i }) {
+			if !all && slices.ContainsFunc(units, func(k int) bool { return int(down[k]) == i }) {
 				look.Treatment = 0
 			}
 		}
