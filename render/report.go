@@ -251,6 +251,9 @@ func Document(t *trial.Trial, rs *result.Results, opt Options) (*doc.Document, d
 	return d, append(list, doc.Number(d)...)
 }
 
+// Templates names the built-in templates of reports.
+func Templates() []string { return []string{"audit", "plan"} }
+
 // sources lists the built-in parts and the template wanted, and names it.
 func (b *builder) sources() ([]compose.Source, string, diag.List) {
 	var list diag.List
@@ -282,7 +285,7 @@ func (b *builder) sources() ([]compose.Source, string, diag.List) {
 		}
 	}
 	fault := diag.Diagnostic{Severity: diag.Error, Code: "unknown-template",
-		Message: fmt.Sprintf("there is no template %q in this version, and no such file in the folder", name), Hint: "built in is \"audit\""}
+		Message: fmt.Sprintf("there is no template %q in this version, and no such file in the folder", name), Hint: "built in are " + strings.Join(Templates(), " and ")}
 	if b.options.Template == "" {
 		fault.Key = "report.template"
 		fault.Pos = b.trial.Protocol.Pos(fault.Key)

@@ -196,6 +196,7 @@ func (b *builder) functions() template.FuncMap {
 		"look-ups":      func() doc.Table { return table.LookUps(t.Protocol) },
 		"documents":     func() doc.Table { return table.Documents(t.Welfare) },
 		"coverage":      func() doc.Table { return table.Coverage(prose.Guideline(t, rs)) },
+		"plan coverage": func() doc.Table { return table.Coverage(prose.PlanGuideline(t, rs)) },
 		"files":         func() doc.Table { return table.Files(rs) },
 		"signatures":    func() doc.Table { return table.Signatures(t.Protocol) },
 	}
@@ -217,29 +218,34 @@ func (b *builder) functions() template.FuncMap {
 		"points": p.points, "residual map": p.residualMap, "residuals": p.residualPoints, "quantiles": p.quantiles, "fitted": p.fitted, "spread": p.spread,
 	}
 	paragraphsOf := map[string]func() []string{
-		"treatments": func() []string { return prose.Treatments(t.Plan) },
-		"units":      func() []string { return prose.Units(t.Plan) },
-		"design":     func() []string { return prose.Design(t.Plan) },
-		"errors":     func() []string { return prose.ErrorTerms(t.Plan) },
-		"size":       func() []string { return prose.Size(t.Plan) },
-		"size found": func() []string { return prose.SizeFound(t.Plan, rs.SampleSize) },
-		"draw":       func() []string { return prose.Draw(t.Plan, t.Allotment) },
-		"blinding":   func() []string { return prose.Blinding(t.Protocol.Blinding) },
-		"agreement":  func() []string { return prose.Agreement(t) },
-		"repeat":     func() []string { return prose.Repeat(t.Allotment) },
-		"conduct":    func() []string { return prose.Conduct(t) },
-		"later":      func() []string { return prose.Later(t.Protocol) },
-		"welfare":    func() []string { return prose.Welfare(t.Protocol) },
-		"compared":   func() []string { return prose.Compared(t.Welfare) },
-		"look-ups":   func() []string { return prose.LookUps(t.Protocol) },
-		"coverage":   func() []string { return prose.Coverage(prose.Guideline(t, rs)) },
-		"provenance": func() []string { return prose.Provenance(rs, b.options.Go, b.options.Arch) },
-		"seal":       func() []string { return prose.Seal(t) },
-		"limits":     prose.Limits,
+		"treatments":       func() []string { return prose.Treatments(t.Plan) },
+		"units":            func() []string { return prose.Units(t.Plan) },
+		"design":           func() []string { return prose.Design(t.Plan) },
+		"planned analysis": func() []string { return prose.PlannedAnalysis(t) },
+		"errors":           func() []string { return prose.ErrorTerms(t.Plan) },
+		"size":             func() []string { return prose.Size(t.Plan) },
+		"size found":       func() []string { return prose.SizeFound(t.Plan, rs.SampleSize) },
+		"draw":             func() []string { return b.draw() },
+		"blinding":         func() []string { return prose.Blinding(t.Protocol.Blinding) },
+		"agreement":        func() []string { return prose.Agreement(t) },
+		"repeat":           func() []string { return prose.Repeat(t.Allotment) },
+		"conduct":          func() []string { return prose.Conduct(t) },
+		"later":            func() []string { return prose.Later(t.Protocol) },
+		"welfare":          func() []string { return prose.Welfare(t.Protocol) },
+		"compared":         func() []string { return prose.Compared(t.Welfare) },
+		"look-ups":         func() []string { return prose.LookUps(t.Protocol) },
+		"coverage":         func() []string { return prose.Coverage(prose.Guideline(t, rs)) },
+		"plan coverage":    func() []string { return prose.PlanCoverage(prose.PlanGuideline(t, rs)) },
+		"provenance":       func() []string { return prose.Provenance(rs, b.options.Go, b.options.Arch) },
+		"seal":             func() []string { return prose.Seal(t) },
+		"limits":           prose.Limits,
 	}
 	return template.FuncMap{
 		"contents": func() []doc.Block { return []doc.Block{doc.Contents{}} },
 		"answers":  func() []doc.Block { return b.answers() },
+		"short": func() []doc.Block {
+			return []doc.Block{doc.Aside{Kind: "answer", Title: inlines("The plan in short"), Blocks: bullets(prose.Short(t))}}
+		},
 		"table": func(name string, args ...string) ([]doc.Block, error) {
 			var made doc.Table
 			switch {
@@ -403,6 +409,14 @@ func (b *builder) answers() []doc.Block {
 		box.Blocks = paragraphs([]string{"The protocol names no primary response."})
 	}
 	return []doc.Block{box}
+}
+
+// draw tells how the treatments were drawn, or will be.
+func (b *builder) draw() []string {
+	if b.trial.Allotment == nil {
+		return prose.Scheme(b.trial)
+	}
+	return prose.Draw(b.trial.Plan, b.trial.Allotment)
 }
 
 // extras are the tables that the author brings.

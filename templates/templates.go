@@ -4,7 +4,8 @@ package templates
 
 import "embed"
 
-// FS holds audit.md and its parts, style.css, and demo/, a whole trial folder.
+// FS holds the report templates and their parts, style.css, demo/, a whole trial folder,
+// and start/, a folder for each design with a protocol to start from.
 //
-//go:embed *.md parts *.css demo
+//go:embed *.md parts *.css demo start
 var FS embed.FS

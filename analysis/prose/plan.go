@@ -89,7 +89,7 @@ func Units(p *layout.Plan) []string {
 			s += fmt.Sprintf(" %s are formed by %s.", upperFirst(Plural(name)), lowerFirst(b))
 		}
 		if got := factorNames(p, u.Receives); got != "" {
-			s += fmt.Sprintf(" The %s received %s and is its experimental unit.", name, got)
+			s += fmt.Sprintf(" The %s receives %s and is its experimental unit.", name, got)
 		}
 		if got := factorNames(p, u.Carries); got != "" {
 			s += fmt.Sprintf(" The %s carries %s, which was not randomized.", name, got)
@@ -314,8 +314,8 @@ func Blinding(b *protocol.Blinding) []string {
 	}
 	var out []string
 	for _, x := range []struct{ stage, word string }{
-		{stage: "while treatments were allotted", word: b.Allocation}, {stage: "during conduct", word: b.Conduct},
-		{stage: "when outcomes were assessed", word: b.Assessment}, {stage: "in the analysis", word: b.Analysis},
+		{stage: "at allotment", word: b.Allocation}, {stage: "during conduct", word: b.Conduct},
+		{stage: "when outcomes are assessed", word: b.Assessment}, {stage: "in the analysis", word: b.Analysis},
 	} {
 		switch x.word {
 		case "":
@@ -332,7 +332,7 @@ func Blinding(b *protocol.Blinding) []string {
 	}
 	s := []string{"Knowledge of the allotment: " + strings.Join(out, "; ") + "."}
 	if b.KeyHolder != "" {
-		s = append(s, "The key was held by "+strings.TrimRight(b.KeyHolder, ".")+".")
+		s = append(s, "The key is held by "+strings.TrimRight(b.KeyHolder, ".")+".")
 	}
 	if d := DateText(b.Unblinded); d != "" {
 		s = append(s, "It was opened on "+d+".")

@@ -169,7 +169,7 @@ func (a *app) root() *cobra.Command {
 		}
 		return nil
 	}
-	root.AddCommand(a.demo(), a.check(), a.size(), a.draw(), a.sheets(), a.seal(), a.changes(), a.analyze(), a.report())
+	root.AddCommand(a.demo(), a.new(), a.check(), a.size(), a.draw(), a.sheets(), a.seal(), a.changes(), a.analyze(), a.report())
 	root.SetHelpCommand(&cobra.Command{
 		Use: "help [COMMAND]", Short: "tells more about a command", Args: cobra.ArbitraryArgs,
 		RunE: func(cmd *cobra.Command, args []string) error {

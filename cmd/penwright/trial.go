@@ -151,7 +151,10 @@ func latest(p *protocol.Protocol) string {
 			}
 		}
 	}
-	see(p.Trial.Start, p.Trial.End, p.Randomization.On)
+	see(p.Randomization.On)
+	if p.Data != nil { // without data the trial lies ahead
+		see(p.Trial.Start, p.Trial.End)
+	}
 	if p.Approval != nil {
 		see(p.Approval.Date)
 	}

@@ -155,9 +155,10 @@ type Link struct {
 // Ref stands for the number of a heading, table or figure; Text is filled in by the
 // numbering of the finished document: "Table 3".
 type Ref struct {
-	ID   string
-	Text string
-	Pos  diag.Pos
+	ID       string
+	Text     string
+	Optional bool // where nothing has the ID the Text given stands, as it is
+	Pos      diag.Pos
 }
 
 // FootnoteRef calls footnote N, from 1.

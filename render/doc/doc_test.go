@@ -255,3 +255,18 @@ func TestRaisedAndLowered(t *testing.T) {
 		}
 	}
 }
+
+// A reference that may fail says its own words where its target is not there, and
+// nothing is reported.
+func TestOptionalRef(t *testing.T) {
+	d := doc.Document{Blocks: []doc.Block{
+		doc.Heading{Level: 1, Text: words("Welfare")},
+		doc.Paragraph{Text: []doc.Inline{doc.Ref{ID: "welfare", Text: "here", Optional: true}, doc.Text{Text: ", "}, doc.Ref{ID: "conduct", Text: "here", Optional: true}}},
+	}}
+	if list := doc.Number(&d); len(list) > 0 {
+		t.Errorf("reported: %v", list)
+	}
+	if got := doc.Plain(d.Blocks[1].(doc.Paragraph).Text); got != "section 1, here" {
+		t.Errorf("got %q", got)
+	}
+}

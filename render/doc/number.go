@@ -206,7 +206,10 @@ func (n *numbering) resolve(in Inline) Inline {
 	switch in := in.(type) {
 	case Ref:
 		t, ok := n.targets[in.ID]
-		if !ok {
+		switch {
+		case !ok && in.Optional:
+			return Text{Text: in.Text}
+		case !ok:
 			n.unknown(in.ID, in.Pos)
 			in.Text = "[" + in.ID + "]"
 			return in

@@ -583,7 +583,7 @@ func Coverage(items []prose.Item) doc.Table {
 	for _, x := range items {
 		answer := text(x.Answer)
 		if x.Section != "" {
-			answer = append(answer, doc.Text{Text: " ("}, doc.Ref{ID: x.Section}, doc.Text{Text: ")"})
+			answer = append(answer, doc.Text{Text: " ("}, doc.Ref{ID: x.Section, Optional: true, Text: "in this report"}, doc.Text{Text: ")"})
 		}
 		t.Rows = append(t.Rows, doc.Row{Cells: []doc.Cell{cell(x.Number), cell(x.Asks), {Text: answer}}})
 	}
