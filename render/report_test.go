@@ -342,7 +342,11 @@ func TestReportFromItself(t *testing.T) {
 	for name, from := range stages(t) {
 		t.Run(name, func(t *testing.T) {
 			t.Parallel()
-			closed(t, from, fixed)
+			opt := fixed
+			if name != "demo" { // whose figures stand for those of all
+				opt.Only = []string{"pdf", "html", "md", "json", "tables"}
+			}
+			closed(t, from, opt)
 		})
 	}
 	t.Run("some outputs, another date", func(t *testing.T) {
@@ -362,7 +366,7 @@ func TestReportFromItself(t *testing.T) {
 func TestWorkersChangeNothing(t *testing.T) {
 	x, rs, _ := opened(t, trials(t)["demo"])
 	var first []File
-	for _, workers := range []int{0, 1, 2, 7} {
+	for _, workers := range []int{1, 2, 7} {
 		opt := fixed
 		opt.Workers = workers
 		files, list, err := Report(x, rs, opt)
