@@ -197,10 +197,13 @@ func isUnit(t *trial.Trial, name string) bool {
 // the greatest effect with its interval. It does not interpret beyond the design.
 func Results(t *trial.Trial, r *result.Response) string {
 	p := t.Plan
-	if r.Model == nil {
-		return Methods(t, r)
-	}
 	var s []string
+	if r.Model == nil {
+		for _, n := range r.Notes {
+			s = append(s, n.Text)
+		}
+		return strings.Join(s, " ")
+	}
 	for _, x := range r.Tests {
 		if isCovariate(r, x.Source) || strings.Contains(x.Source, " v. ") {
 			continue
@@ -220,7 +223,16 @@ func Results(t *trial.Trial, r *result.Response) string {
 			continue
 		}
 		d := num.SEDecimals(float64(c.SE))
-		s = append(s, fmt.Sprintf("%s: %s (%s limits %s to %s; P %s).", TermLabel(p, c.Name), num.Fixed(float64(c.Estimate), d), confidence(Alpha(p, r)),
+		what, estimate := TermLabel(p, c.Name), num.Unit(num.Fixed(float64(c.Estimate), d), r.Unit)
+		switch factor, trend, _ := strings.Cut(c.Name, ": "); trend {
+		case "linear":
+			what = "Linear trend in " + TermText(p, factor)
+			estimate += " for each " + factorUnit(p, factor)
+		case "quadratic", "cubic", "quartic", "quintic":
+			what = upperFirst(trend) + " coefficient of " + TermText(p, factor)
+			estimate = num.Fixed(float64(c.Estimate), d)
+		}
+		s = append(s, fmt.Sprintf("%s: %s (%s limits %s to %s; P %s).", what, estimate, confidence(Alpha(p, r)),
 			num.Fixed(float64(c.Lower), d), num.Fixed(float64(c.Upper), d), num.PStatement(float64(c.P))))
 	}
 	return strings.Join(append(s, Advice(t, r)...), " ")

@@ -332,7 +332,7 @@ func Blinding(b *protocol.Blinding) []string {
 	}
 	s := []string{"Knowledge of the allotment: " + strings.Join(out, "; ") + "."}
 	if b.KeyHolder != "" {
-		s = append(s, "The key is held by "+strings.TrimRight(b.KeyHolder, ".")+".")
+		s = append(s, "Holder of the key: "+strings.TrimRight(b.KeyHolder, ".")+".")
 	}
 	if d := DateText(b.Unblinded); d != "" {
 		s = append(s, "It was opened on "+d+".")

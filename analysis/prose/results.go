@@ -382,9 +382,9 @@ func Answer(p *layout.Plan, r *result.Response) string {
 			d := num.SEDecimals(float64(c.SE))
 			f := strings.TrimSuffix(c.Name, ": linear")
 			lo, hi := float64(c.Lower), float64(c.Upper)
-			return fmt.Sprintf("%s changed by %s for each %s of %s (linear trend; %s limits %s to %s; P %s).",
+			return fmt.Sprintf("%s changed by %s for each %s of %s (linear trend; %s limits %s to %s; P %s).%s",
 				name, num.Unit(num.Signed(float64(c.Estimate), d), r.Unit), factorUnit(p, f), TermText(p, f), confidence(alpha),
-				num.Fixed(lo, d), num.Fixed(hi, d), num.PStatement(float64(c.P)))
+				num.Fixed(lo, d), num.Fixed(hi, d), num.PStatement(float64(c.P)), depends(p, r, f))
 		}
 	}
 	t := r.Tests[0]
@@ -404,11 +404,11 @@ func Answer(p *layout.Plan, r *result.Response) string {
 	if best < 0 {
 		lo, hi := rangeOfMeans(r, t.Source)
 		if lo == nil {
-			return fmt.Sprintf("%s by %s: %s.", name, TermText(p, t.Source), test)
+			return fmt.Sprintf("%s by %s: %s.%s", name, TermText(p, t.Source), test, depends(p, r, t.Source))
 		}
 		d := num.SEDecimals(float64(lo.SE))
-		return fmt.Sprintf("%s ranged from %s (%s) to %s (%s) between levels of %s: %s.", name,
-			num.Fixed(float64(lo.Mean), d), LevelsText(p, lo.Levels), num.Unit(num.Fixed(float64(hi.Mean), d), r.Unit), LevelsText(p, hi.Levels), TermText(p, t.Source), test)
+		return fmt.Sprintf("%s ranged from %s (%s) to %s (%s) between levels of %s: %s.%s", name,
+			num.Fixed(float64(lo.Mean), d), LevelsText(p, lo.Levels), num.Unit(num.Fixed(float64(hi.Mean), d), r.Unit), LevelsText(p, hi.Levels), TermText(p, t.Source), test, depends(p, r, t.Source))
 	}
 	c := r.Comparisons[best]
 	d := num.SEDecimals(float64(c.SE))
@@ -416,8 +416,36 @@ func Answer(p *layout.Plan, r *result.Response) string {
 	if c.Lower.Known() && c.Upper.Known() {
 		lim = fmt.Sprintf("; %s limits %s to %s", confidence(alpha), num.Fixed(float64(c.Lower), d), num.Fixed(float64(c.Upper), d))
 	}
-	return fmt.Sprintf("%s by %s: %s. The widest difference is %s, %s (%s%s; P %s).", name, TermText(p, t.Source), test,
-		PairText(pairLevel(p, t.Source, c.A), pairLevel(p, t.Source, c.B)), num.Unit(num.Fixed(float64(c.Difference), d), r.Unit), Method(c.Method), lim, num.PStatement(float64(c.PAdjusted)))
+	return fmt.Sprintf("%s by %s: %s. The widest difference is %s, %s (%s%s; P %s).%s", name, TermText(p, t.Source), test,
+		PairText(pairLevel(p, t.Source, c.A), pairLevel(p, t.Source, c.B)), num.Unit(num.Fixed(float64(c.Difference), d), r.Unit), Method(c.Method), lim, num.PStatement(float64(c.PAdjusted)), depends(p, r, t.Source))
+}
+
+// depends says, as a sentence to follow another, with which other factors the effect of
+// one interacts at the level of significance; empty: with none.
+func depends(p *layout.Plan, r *result.Response, factor string) string {
+	var with []string
+	for _, x := range r.Tests {
+		parts := strings.Split(x.Source, ":")
+		if len(parts) < 2 || !x.P.Known() || float64(x.P) >= Alpha(p, r) {
+			continue
+		}
+		var others []string
+		here := false
+		for _, part := range parts {
+			if part == factor {
+				here = true
+			} else {
+				others = append(others, TermText(p, part))
+			}
+		}
+		if here {
+			with = append(with, fmt.Sprintf("%s (interaction: P %s)", And(others), num.PStatement(float64(x.P))))
+		}
+	}
+	if len(with) == 0 {
+		return ""
+	}
+	return fmt.Sprintf(" This is an average: the effect of %s depends on %s.", TermText(p, factor), And(with))
 }
 
 func pairLevel(p *layout.Plan, term, level string) string {
@@ -461,8 +489,8 @@ func rangeOfMeans(r *result.Response, term string) (lo, hi *result.Mean) {
 
 // OwnNotes are the notes of a response that stand under none of its tables.
 func OwnNotes(r *result.Response) []string {
-	if len(r.Anova) > 0 {
-		return nil // they stand under the analysis of variance
+	if len(r.Anova) > 0 || r.Model == nil {
+		return nil // they stand under the analysis of variance, or are all that is said
 	}
 	var out []string
 	for _, n := range r.Notes {
