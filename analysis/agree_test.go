@@ -183,7 +183,7 @@ func (c *check) wellFormed(rs *result.Results) {
 			}
 		}
 		for _, x := range r.Tests {
-			if !x.F.Known() && !has("no-variation", x.Source) && !has("term-lost", x.Source) && !has("not-estimable", x.Source) {
+			if !x.F.Known() && !has("no-variation", x.Source) && !has("term-lost", x.Source) && !has("not-testable", x.Source) {
 				c.fault("F of %s is null without a note", x.Source)
 			}
 		}

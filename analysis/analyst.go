@@ -32,9 +32,15 @@ type analyst struct {
 	ls      *leastSquares // the model where it is least squares; else nil
 	st      *byStrata     // the model where it is by strata; else nil
 	covs    []int         // indices of the covariates in the model, into the response's
+	noise   float64       // mean square at or below which an error is rounding
 }
 
 func (a *analyst) note(code, term, text string) {
+	for _, n := range a.out.Notes {
+		if n.Code == code && n.Term == term && n.Text == text {
+			return
+		}
+	}
 	a.out.Notes = append(a.out.Notes, result.Note{Code: code, Text: text, Term: term})
 }
 
@@ -45,6 +51,10 @@ func (a *analyst) run() *refusal {
 		return &refusal{code: "no-values", why: "no unit gave a value"}
 	}
 	a.out.GrandMean = result.Number(mean(a.rows.y))
+	for _, v := range a.rows.y {
+		// Values as written and their sums are off by a few units in the last place.
+		a.noise = math.Max(a.noise, 64*epsilon*epsilon*v*v)
+	}
 	var cannot []int
 	a.terms, cannot = a.rows.terms()
 	if len(a.terms) == 0 {
@@ -73,6 +83,18 @@ func (a *analyst) run() *refusal {
 	a.estimate()
 	a.diagnose()
 	return nil
+}
+
+// epsilon is the spacing of float64 at 1.
+const epsilon = 0x1p-52
+
+// quiet gives 0 for a mean square that is no more than rounding leaves of no variation,
+// and any other as it is.
+func (a *analyst) quiet(ms float64) float64 {
+	if ms <= a.noise {
+		return 0
+	}
+	return ms
 }
 
 func mean(y []float64) float64 {
@@ -215,8 +237,12 @@ func (a *analyst) nuisance() []int {
 // strata was not possible, nil when something else asks for least squares.
 func (a *analyst) fitLeastSquares(unbalanced error) *refusal {
 	p := a.plan.Protocol
+	var none noError
 	for _, t := range a.terms {
 		if u := a.plan.Terms[t].Unit; u != a.bottom {
+			if errors.As(unbalanced, &none) {
+				return &refusal{code: "no-error", why: "no degrees of freedom are left to test " + a.plan.Terms[none.term].Name, hint: a.fewerTerms(a.strataLeaveError)}
+			}
 			why := "its treatments were given to units of different size (" + a.plan.Units[u].Name + ", " + a.plan.Units[a.bottom].Name + ")"
 			hint := ""
 			switch {
@@ -311,13 +337,62 @@ func (a *analyst) fitLeastSquares(unbalanced error) *refusal {
 		}
 	}
 	if ls.fit.DF < 1 {
-		return &refusal{code: "no-error", why: "no degrees of freedom are left to estimate error",
-			hint: "set analysis.interactions to a smaller number, so that high interactions serve as error only if that was planned"}
+		return &refusal{code: "no-error", why: "no degrees of freedom are left to estimate error", hint: a.fewerTerms(func(order int) bool {
+			small := m
+			small.Terms = nil
+			for _, t := range m.Terms {
+				if len(t) <= order {
+					small.Terms = append(small.Terms, t)
+				}
+			}
+			f, err := small.Fit()
+			return err == nil && f.DF > 0
+		})}
 	}
+	ls.ms = a.quiet(ls.fit.MS())
 	a.model, a.ls = ls, ls
 	a.whyLeastSquares(unbalanced, nuisance)
 	a.leastSquaresTable(m, nuisanceUnits, adjustment, hypothesis)
 	return nil
+}
+
+// fewerTerms words what to do when nothing is left for error: the highest order of
+// interactions that leaves some, as left tells, if there is one.
+func (a *analyst) fewerTerms(left func(order int) bool) string {
+	highest := 0
+	for _, t := range a.terms {
+		highest = max(highest, len(a.plan.Terms[t].Factors))
+	}
+	for order := highest - 1; order >= 1; order-- {
+		if left(order) {
+			return fmt.Sprintf("interactions = %d under [analysis] leaves some, if interactions of more factors may be taken as error", order)
+		}
+	}
+	return "more units for each treatment are needed"
+}
+
+// strataLeaveError tells whether terms of up to order factors leave error in every stratum.
+func (a *analyst) strataLeaveError(order int) bool {
+	left := map[int]int{}
+	for _, t := range a.terms {
+		term := &a.plan.Terms[t]
+		if _, known := left[term.Unit]; !known {
+			for _, s := range a.plan.Strata {
+				if s.Unit == term.Unit {
+					left[term.Unit] = s.DF
+				}
+			}
+		}
+		if len(term.Factors) <= order {
+			left[term.Unit] -= term.DF
+		}
+	}
+	for _, df := range left {
+		if df < 1 {
+			return false
+		}
+	}
+	return true
 }
 
 func (a *analyst) linearRefusal(err error) *refusal {
@@ -422,7 +497,7 @@ func periodNumber(p *layout.Plan, unit int) []float64 {
 func (a *analyst) leastSquaresTable(m linear.Model, nuisance []int, adjustment linear.Adjustment, hypothesis string) {
 	fit, out := a.ls.fit, a.out
 	df := result.Number(fit.DF)
-	ms := fit.MS()
+	ms := a.ls.ms
 	line := func(source string, d int, ss float64, tested bool) {
 		l := result.Line{Source: source, DF: d, SS: result.Number(ss), MS: result.Number(ss / float64(d)), F: result.NaN, P: result.NaN}
 		if d == 0 {
@@ -450,10 +525,10 @@ func (a *analyst) leastSquaresTable(m linear.Model, nuisance []int, adjustment l
 		name := a.rows.resp.Protocol.Covariates[k]
 		line(name, t.DF, t.SS, true)
 		c := result.Covariate{Name: name, Slope: result.Number(slopes.Value[i]), SE: result.Number(math.Sqrt(slopes.Cov(i, i))), DF: df, P: result.NaN, EqualSlopesP: result.NaN}
-		if c.SE > 0 {
+		if c.SE > 0 && ms > 0 {
 			c.P = result.Number(dist.TTwoSided(float64(c.Slope/c.SE), float64(fit.DF)))
 		}
-		if s, edf, ess, err := fit.EqualSlopes(i); err == nil && s.DF > 0 && edf > 0 && ess > 0 {
+		if s, edf, ess, err := fit.EqualSlopes(i); err == nil && s.DF > 0 && edf > 0 && a.quiet(ess/float64(max(edf, 1))) > 0 {
 			f := s.SS / float64(s.DF) / (ess / float64(edf))
 			c.EqualSlopesP = result.Number(dist.FUpper(f, float64(s.DF), float64(edf)))
 			if float64(c.EqualSlopesP) < a.alpha {
@@ -467,7 +542,10 @@ func (a *analyst) leastSquaresTable(m linear.Model, nuisance []int, adjustment l
 	for k, t := range a.terms {
 		x := a.ls.test(k)
 		name := a.plan.Terms[t].Name
-		if x.lost > 0 || x.whole {
+		switch {
+		case !x.estimable:
+			a.note("not-testable", name, prose.NotTestable(a.plan, name))
+		case x.lost > 0 || x.whole:
 			a.note("term-lost", name, prose.TermLost(a.plan, name, x.lost, x.whole))
 		}
 		line(name, x.df, x.ss, true)

@@ -195,6 +195,9 @@ func reckon(s *sketch, tr *trial.Trial) *reckoning {
 	for _, u := range b.units {
 		if u != b.bottom {
 			b.refused = "several strata"
+			if why == "no error" {
+				b.refused = why
+			}
 			return b
 		}
 	}

@@ -24,8 +24,15 @@ func (a *analyst) diagnose() {
 	for i := range e {
 		e[i] = rows.y[i] - r.fitted[i]
 	}
+	if a.quiet(r.ms) == 0 { // what is left is rounding, and says nothing
+		r.ms = 0
+		clear(e)
+	}
 	cases := residual.Cases(e, r.leverage, r.ms, r.df, len(e)-r.df)
 	order := byStudentized(cases)
+	if r.ms > 0 && len(order) < len(cases) {
+		a.note("leverage-one", "", prose.LeverageOne(len(cases)-len(order)))
+	}
 	envelope := residual.OrderStatistics(len(order), 0.95)
 	place := make([]int, len(cases))
 	for i := range place {

@@ -31,6 +31,9 @@ func (a *analyst) differences(m *termMeans) {
 		a.note("two-sided", m.name, prose.TwoSidedOnly(name))
 		side = dist.Two
 	}
+	if m.test.errorMS == 0 {
+		return // no variation to judge differences by, and a note says so
+	}
 	families := a.families(m, method)
 	if len(families) == 0 {
 		if method == compare.Dunnett {
@@ -52,12 +55,9 @@ func (a *analyst) differences(m *termMeans) {
 			// The F of a slice is not computed; a slice is protected by the F of its term.
 			family.TermDF = float64(len(fam.cells) - 1)
 		}
-		for c := range m.cells {
-			v := math.NaN()
-			if m.known(c) {
-				v = m.est.value(m.at[c])
-			}
-			family.Estimates = append(family.Estimates, v)
+		family.Estimates = make([]float64, len(m.cells))
+		for i, v := range m.relative(fam.cells) {
+			family.Estimates[fam.cells[i]] = v
 		}
 		family.Diff = func(i, j int) (se, df float64) {
 			if !m.known(i) || !m.known(j) {
@@ -213,9 +213,15 @@ func (a *analyst) letters(m *termMeans, method compare.Method, p float64, fam fa
 			return
 		}
 	}
-	if (method == compare.LSD || method == compare.NewmanKeuls || method == compare.Duncan) && !(p <= a.alpha) {
-		a.note("letters-withheld", m.name, prose.LettersWithheld("F of the term is above the level of significance"))
-		return
+	if method == compare.LSD || method == compare.NewmanKeuls || method == compare.Duncan {
+		switch {
+		case math.IsNaN(p):
+			a.note("letters-withheld", m.name, prose.LettersWithheld("the term has no F to protect them"))
+			return
+		case p > a.alpha:
+			a.note("letters-withheld", m.name, prose.LettersWithheld("F of the term is above the level of significance"))
+			return
+		}
 	}
 	differ := map[compare.Pair]bool{}
 	for _, d := range r.Differences {
@@ -226,6 +232,9 @@ func (a *analyst) letters(m *termMeans, method compare.Method, p float64, fam fa
 		if m.known(c) {
 			known = append(known, c)
 		}
+	}
+	if len(known) < 2 {
+		return
 	}
 	order := make([]int, len(known))
 	for i := range order {

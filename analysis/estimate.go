@@ -49,6 +49,27 @@ func (m *termMeans) known(cell int) bool {
 	return m.at[cell] >= 0 && !math.IsNaN(m.est.value(m.at[cell]))
 }
 
+// relative gives the means of cells less that of the first of them: differences that keep
+// their digits where the means are large. NaN where there is no estimate.
+func (m *termMeans) relative(cells []int) []float64 {
+	out := make([]float64, len(cells))
+	w := make([]float64, m.est.count())
+	first := -1
+	for i, c := range cells {
+		switch {
+		case !m.known(c):
+			out[i] = math.NaN()
+		case first < 0:
+			first = m.at[c]
+		default:
+			w[m.at[c]], w[first] = 1, -1
+			out[i], _, _ = m.est.contrast(w)
+			w[m.at[c]], w[first] = 0, 0
+		}
+	}
+	return out
+}
+
 // single tells whether a contrast whose variance has df draws on the error of the term
 // alone, and not on that of other strata as well.
 func (m *termMeans) single(df float64) bool {
@@ -81,8 +102,23 @@ func (a *analyst) estimate() {
 	for _, m := range all {
 		a.tabulate(m)
 		a.differences(m)
+		a.twoLevels(m)
 	}
 	a.contrasts(all)
+}
+
+// twoLevels notes where the F of a factor of two levels is of another hypothesis than the
+// difference of its two adjusted means.
+func (a *analyst) twoLevels(m *termMeans) {
+	f := m.test.f()
+	if len(m.factors) != 1 || len(m.cells) != 2 || m.test.df != 1 || !m.known(0) || !m.known(1) || math.IsNaN(f) {
+		return
+	}
+	d := m.relative([]int{0, 1})[1]
+	v, _ := m.est.diff(m.at[0], m.at[1])
+	if t := d * d / v; math.Abs(t-f) > 1e-6*math.Max(t, f) {
+		a.note("two-levels", m.name, prose.TwoLevel(a.plan, m.name))
+	}
 }
 
 // termMeans gathers the means of term k of the model.
@@ -533,6 +569,7 @@ func (a *analyst) contrasts(all []*termMeans) {
 	for _, c := range planned {
 		m := main[c.Factor]
 		if m == nil {
+			a.note("contrast-not-told", "", prose.ContrastNotTold(a.plan, c.Name, c.Factor, a.rows.unit))
 			continue
 		}
 		a.weightedContrast(m, c)
@@ -580,7 +617,7 @@ func (a *analyst) weightedContrast(m *termMeans, c protocol.Contrast) {
 // is the mean square of its error.
 func (a *analyst) fillContrast(x *result.Contrast, estimate, variance, df, ms float64) {
 	x.Estimate, x.SE, x.DF = result.Number(estimate), result.Number(math.Sqrt(variance)), result.Number(df)
-	if !(variance > 0) || !(df > 0) {
+	if !(variance > 0) || !(df > 0) || ms == 0 {
 		return
 	}
 	f := estimate * estimate / variance
@@ -601,13 +638,12 @@ func (a *analyst) trends(m *termMeans) {
 	if !(ms > 0) || !(df > 0) {
 		return
 	}
-	var x, y []float64
-	var at []int
+	var x []float64
+	var cells, at []int
 	for c := range m.cells {
 		if m.known(c) {
 			x = append(x, f.Values[m.cells[c][0]])
-			y = append(y, m.est.value(m.at[c]))
-			at = append(at, m.at[c])
+			cells, at = append(cells, c), append(at, m.at[c])
 		}
 	}
 	if len(x) < 3 {
@@ -619,7 +655,7 @@ func (a *analyst) trends(m *termMeans) {
 			return
 		}
 	}
-	steps, rest, restDF, ok := compare.Trends(x, y, func(i, j int) float64 { return m.est.cov(at[i], at[j]) / ms }, degree)
+	steps, rest, restDF, ok := compare.Trends(x, m.relative(cells), func(i, j int) float64 { return m.est.cov(at[i], at[j]) / ms }, degree)
 	if !ok {
 		return
 	}

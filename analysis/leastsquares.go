@@ -10,6 +10,7 @@ import (
 type leastSquares struct {
 	fit        *linear.Fit
 	tests      []linear.Test // of covariates, then of terms
+	ms         float64       // error mean square, 0 where it is rounding
 	covariates int
 	aliased    map[int]linear.Alias // by term
 }
@@ -30,7 +31,7 @@ func newLeastSquares(m linear.Model, adjustment linear.Adjustment) (*leastSquare
 
 func (x *leastSquares) test(k int) test {
 	t := x.tests[x.covariates+k]
-	out := test{df: t.DF, ss: t.SS, errorDF: float64(x.fit.DF), errorMS: x.fit.MS(), stratum: -1, lost: t.Lost, whole: t.DF == 0, estimable: t.Estimable}
+	out := test{df: t.DF, ss: t.SS, errorDF: float64(x.fit.DF), errorMS: x.ms, stratum: -1, lost: t.Lost, whole: t.DF == 0, estimable: t.Estimable}
 	if !t.Estimable {
 		out.ss = math.NaN()
 	}

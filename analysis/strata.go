@@ -61,7 +61,7 @@ func (a *analyst) fitStrata(x *rows) error {
 	for k := range a.terms {
 		st := s.an.Strata[s.st.Stratum(k)]
 		line := s.an.Terms[k]
-		t := test{df: line.DF, ss: line.SS, errorDF: float64(st.ErrorDF), errorMS: st.ErrorMS(), stratum: s.units[s.st.Stratum(k)], estimable: true}
+		t := test{df: line.DF, ss: line.SS, errorDF: float64(st.ErrorDF), errorMS: a.quiet(st.ErrorMS()), stratum: s.units[s.st.Stratum(k)], estimable: true}
 		if st.ErrorDF < 1 {
 			return noError{term: a.terms[k]}
 		}
@@ -202,7 +202,7 @@ func (a *analyst) strataTable(s *byStrata, partial bool) {
 			cv = result.Number(100 * math.Sqrt(st.ErrorMS()) / math.Abs(float64(out.GrandMean)))
 		}
 		out.Strata = append(out.Strata, result.StratumResult{Name: name, CVPercent: cv})
-		if !(st.ErrorMS() > 0) {
+		if a.quiet(st.ErrorMS()) == 0 {
 			a.note("no-variation", "", prose.Exact())
 		}
 	}
@@ -286,7 +286,7 @@ func (a *analyst) efficiencies() {
 	}
 	s := a.st
 	err := s.an.Strata[s.at]
-	if err.ErrorDF < 1 || !(err.ErrorMS() > 0) {
+	if err.ErrorDF < 1 || a.quiet(err.ErrorMS()) == 0 {
 		return
 	}
 	treatment := 0

@@ -101,6 +101,25 @@ func SlopesDiffer(p *layout.Plan, name string, pv float64) string {
 	return fmt.Sprintf("The slope on %s seems to differ between treatments (P %s): differences between adjusted means then depend on the value at which they are taken.", TermText(p, name), num.PStatement(pv))
 }
 
+// NotTestable says that a partial hypothesis compares means that have no estimate.
+func NotTestable(p *layout.Plan, term string) string {
+	return fmt.Sprintf("Equality of all adjusted means of %s cannot be tested, since some cannot be estimated; adjustment “marginal” tests what is left.", TermText(p, term))
+}
+
+// ContrastNotTold says that the factor of a planned contrast cannot be seen at the unit a
+// response is recorded on.
+func ContrastNotTold(p *layout.Plan, contrast, factor string, unit int) string {
+	return fmt.Sprintf("The contrast “%s” cannot be told: the response is recorded on the %s, which is larger than the unit that received %s.", contrast, UnitName(&p.Units[unit]), TermText(p, factor))
+}
+
+// LeverageOne says that some rows have no studentized residual.
+func LeverageOne(n int) string {
+	if n == 1 {
+		return "One unit alone determines its fitted value, so that it has no studentized residual."
+	}
+	return fmt.Sprintf("%s units each alone determine their fitted value, so that they have no studentized residual.", upperFirst(small(n)))
+}
+
 // EqualSlopesUntested says that the slopes of a covariate cannot be compared.
 func EqualSlopesUntested(p *layout.Plan, name string) string {
 	return fmt.Sprintf("Too few units are left to fit a slope on %s for each treatment, so that equal slopes are taken for granted.", TermText(p, name))
