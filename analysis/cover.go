@@ -20,18 +20,18 @@ type refusal struct {
 // Codes describes the codes of this package's findings.
 func Codes() []diag.CodeInfo {
 	return []diag.CodeInfo{
-		{Code: "not-carried-out", Text: "a key asks for what this version does not do and would change the numbers"},
-		{Code: "needs-mixed-model", Text: "unbalanced values would need a mixed model, which this version does not fit"},
-		{Code: "no-values", Text: "no unit gave a value of the response"},
-		{Code: "no-terms", Text: "the response is recorded on a unit larger than those that received treatments"},
-		{Code: "one-level", Text: "only one level of a factor gave a value"},
-		{Code: "unknown-treatment", Text: "the treatment of a unit with data is not known"},
-		{Code: "no-error", Text: "no degrees of freedom are left to estimate error"},
-		{Code: "time-trend", Text: "rows do not lie within the units of the time trend"},
-		{Code: "too-large", Text: "the model of a response has too many columns"},
-		{Code: sizeCheck, Text: "what the number of units gives beside what it is to give"},
-		{Code: sizeShort, Text: "the number of units does not reach the power, precision or error df that [sample_size] states"},
-		{Code: sizeUnknown, Text: "what the number of units reaches cannot be computed; the message names what is missing"},
+		{Code: "not-carried-out", Text: "a key asks for what this version does not do and would change the numbers", Example: "[analysis]\nvariance_by = \"diet\""},
+		{Code: "needs-mixed-model", Text: "unbalanced values would need a mixed model, which this version does not fit", Example: "a split plot that lost one subplot"},
+		{Code: "no-values", Text: "no unit gave a value of the response", Example: "gain empty in every row"},
+		{Code: "no-terms", Text: "the response is recorded on a unit larger than those that received treatments", Example: "recorded_on = \"block\" where pens receive the diets"},
+		{Code: "one-level", Text: "only one level of a factor gave a value", Example: "gain written down for diet A alone"},
+		{Code: "unknown-treatment", Text: "the treatment of a unit with data is not known", Example: "a carried class that the roster leaves empty for a pen with data"},
+		{Code: "no-error", Text: "no degrees of freedom are left to estimate error", Example: "as many values as treatments"},
+		{Code: "time-trend", Text: "rows do not lie within the units of the time trend", Example: "[time_trend] on = \"cow\" for a response of the whole herd"},
+		{Code: "too-large", Text: "the model of a response has too many columns", Example: "a thousand lines at a thousand sites"},
+		{Code: sizeCheck, Text: "what the number of units gives beside what it is to give", Example: "[sample_size]\nbasis = \"error df\""},
+		{Code: sizeShort, Text: "the number of units does not reach the power, precision or error df that [sample_size] states", Example: "[sample_size]\nbasis = \"error df\""},
+		{Code: sizeUnknown, Text: "what the number of units reaches cannot be computed; the message names what is missing", Example: "[sample_size]\nbasis = \"power\"\nresponse = \"gain\"\npower = 0.8\ndifference = 60"},
 	}
 }
 
