@@ -24,6 +24,11 @@ type Allotment struct {
 	Order []int    // place of each instance of RowUnit in field or barn order, from 1
 	Codes []string // masked code of each instance of RowUnit; nil without codes
 
+	// Animals is animals.csv: where the animals of the roster went whose blocks were formed
+	// by rank, spare ones without a unit; nil without such blocks, and for an
+	// allotment that was read back.
+	Animals []byte
+
 	Origin Origin
 	Draws  []Draw // the record, oldest first; nil when the trial was allotted elsewhere
 
@@ -54,6 +59,7 @@ type Draw struct {
 	Plan       string // SHA-256 of the canonical plan, hex
 	Roster     string // SHA-256 of the roster, or empty
 	Allotment  string // SHA-256 of allotment.csv
+	Animals    string // SHA-256 of animals.csv, or empty
 	Why        string // from the second draw on
 }
 

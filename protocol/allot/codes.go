@@ -14,6 +14,10 @@ const (
 	// ClassUnknown: a carried class that the draw needs and nothing tells.
 	//	Example: carries = ["sex"] without a roster.
 	ClassUnknown = "class-unknown"
+	// RosterColumn: a column of the roster that the draw needs is not there, or holds
+	// something else.
+	//	Example: block_by = "mass" and a roster with the headings animal, weight.
+	RosterColumn = "roster-column"
 	// UnitColumns: the columns name no unit, or not clearly.
 	//	Example: a file without the column "block" where pens are numbered within blocks.
 	UnitColumns = "unit-columns"
@@ -62,6 +66,7 @@ func Codes() []diag.CodeInfo {
 	return diag.WithExamples([]diag.CodeInfo{
 		{Code: NotDrawn, Text: "a design whose draw is not made here"},
 		{Code: ClassUnknown, Text: "a carried class that the draw needs and nothing tells"},
+		{Code: RosterColumn, Text: "a column of the roster that the draw needs is not there, or holds something else"},
 		{Code: UnitColumns, Text: "the columns name no unit, or not clearly"},
 		{Code: UnknownUnit, Text: "a row names a unit that the plan does not have"},
 		{Code: UnknownLevelCode, Text: "a cell names a level that is not declared"},

@@ -22,17 +22,27 @@ func New(plan *layout.Plan, roster *Roster, seed string) (*Allotment, diag.List)
 }
 
 // Draws makes n draws from one stream without recording them; the first is that of
-// New, the next take the numbers that follow.
+// New, the next take the numbers that follow. Each may be the best of several candidates,
+// as the protocol asks.
 func Draws(plan *layout.Plan, roster *Roster, seed string, n int) ([]*Allotment, diag.List) {
 	s, list := newScheme(plan, roster)
 	if list.HasErrors() {
 		return nil, list
 	}
-	g := NewGenerator(seed)
-	all := make([]*Allotment, n)
 	made := Draw{Scheme: s.words(), Start: s.start(), Candidates: 1}
+	if s.balance != nil {
+		made.Candidates = s.balance.candidates
+		made.Rejected = made.Candidates - 1
+		if made.Candidates*n > mostCandidates/max(1, s.rows) {
+			r := &refusal{plan: plan}
+			r.add("randomization.candidates", NotDrawn, "ask for fewer candidates", "%d draws of %d candidates on %d units are more than %d million units", n, made.Candidates, s.rows, mostCandidates/1_000_000)
+			return nil, r.list
+		}
+	}
+	g, animals := NewGenerator(seed), NewGenerator(seed+" animals") // a stream of their own
+	all := make([]*Allotment, n)
 	for i := range all {
-		all[i] = s.draw(g)
+		all[i] = s.best(g, animals)
 		all[i].made = made
 	}
 	if plan.Protocol.Randomization.Codes {
@@ -56,8 +66,14 @@ func Scheme(plan *layout.Plan, roster *Roster) (string, diag.List) {
 
 func (s *scheme) words() string {
 	var words []string
+	if s.ranking != nil {
+		words = append(words, s.ranking.words())
+	}
 	for _, st := range s.steps {
 		words = append(words, st.words())
+	}
+	if s.balance != nil {
+		words = append(words, s.balance.words())
 	}
 	return strings.Join(words, "; ")
 }
@@ -99,6 +115,9 @@ type scheme struct {
 	steps []step
 	fixed [][]int32 // levels that are not drawn: carried classes
 	rows  int
+
+	ranking *ranking // where blocks are formed by rank
+	balance *balance // where the best of several draws is kept
 }
 
 // step draws what one unit receives.
@@ -119,6 +138,39 @@ func (s *scheme) draw(g *Generator) *Allotment {
 		s.take(st, g, a.Levels)
 	}
 	return a
+}
+
+// best makes the candidates of a draw and keeps the one that is balanced best.
+func (s *scheme) best(g, animals *Generator) *Allotment {
+	one := func() (a *Allotment, at []int32) {
+		a = s.draw(g)
+		if s.ranking != nil {
+			at = s.ranking.assign(animals)
+		}
+		return a, at
+	}
+	kept, at := one()
+	if s.balance != nil {
+		score := func(a *Allotment, at []int32) float64 {
+			values := s.balance.values
+			if s.ranking != nil {
+				values = average(s.plan.Units[s.ranking.holder].N, s.ranking.roster.values, at)
+			}
+			return s.balance.score(a.Levels, values)
+		}
+		least := score(kept, at)
+		for range s.balance.candidates - 1 {
+			a, place := one()
+			// Draws that differ by names alone are equal but for rounding.
+			if x := score(a, place); x < least*(1-1e-9) {
+				kept, at, least = a, place, x
+			}
+		}
+	}
+	if s.ranking != nil {
+		kept.Animals = s.ranking.file(at)
+	}
+	return kept
 }
 
 // take draws one step into levels.
@@ -151,16 +203,18 @@ const elsewhere = "draw it elsewhere, bring allotment.csv and say under [randomi
 func newScheme(plan *layout.Plan, roster *Roster) (*scheme, diag.List) {
 	r := &refusal{plan: plan}
 	p := plan.Protocol
-	if len(p.Randomization.BalanceOn) > 0 || p.Randomization.Candidates > 1 {
-		r.add("randomization.balance_on", NotDrawn, elsewhere, "a draw balanced on baseline values, chosen among candidates, is not made")
-	}
-	if p.Roster != nil && p.Roster.BlockBy != "" {
-		r.add("roster.block_by", NotDrawn, "form the blocks, name them in the roster's unit columns and leave block_by out; or "+elsewhere, "blocks are not formed from the roster by %s", p.Roster.BlockBy)
-	}
 	s := &scheme{plan: plan, fixed: make([][]int32, len(plan.Factors)), rows: plan.Units[RowUnit(plan)].N}
 	for f := range plan.Factors {
 		if plan.Factors[f].Carried && roster != nil {
 			s.fixed[f] = roster.Levels[f]
+		}
+	}
+	if p.Roster != nil && p.Roster.BlockBy != "" {
+		if s.ranking = r.rank(roster); s.ranking == nil {
+			return s, r.list
+		}
+		if !s.ranking.drawn {
+			s.ranking.classes(s.fixed)
 		}
 	}
 	// What rows received decides which of them belong together, though not how many, so
@@ -172,6 +226,7 @@ func newScheme(plan *layout.Plan, roster *Roster) (*scheme, diag.List) {
 			s.take(st, g, levels)
 		}
 	}
+	s.balance = r.balance(s, roster)
 	return s, r.list
 }
 

@@ -242,8 +242,6 @@ func TestNotDrawn(t *testing.T) {
 	square := "[[unit]]\nname = \"cow\"\ncount = %d\n[[unit]]\nname = \"period\"\ncount = %d\n[[unit]]\nname = \"sample\"\ncrosses = [\"cow\", \"period\"]\nreceives = [%s]\n"
 	for _, test := range []struct{ name, text, want string }{
 		{"graeco-latin", factorText("a", 6) + factorText("b", 6) + fmt.Sprintf(square, 6, 6, `"a", "b"`), "no two Latin squares of order 6"},
-		{"blocks by the roster", factorText("a", 2) + "[roster]\nfile = \"roster.csv\"\nblock_by = \"mass\"\n[[unit]]\nname = \"block\"\ncount = 2\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 2\nreceives = [\"a\"]\n", "mass"},
-		{"candidates", factorText("a", 2) + "[randomization]\nbalance_on = [\"mass\"]\ncandidates = 10\n[[covariate]]\nname = \"mass\"\n[roster]\nfile = \"roster.csv\"\n[[unit]]\nname = \"pen\"\ncount = 4\nreceives = [\"a\"]\n", "candidates"},
 	} {
 		a, list := New(planOf(t, test.text), nil, "x")
 		if a != nil || len(list) == 0 {

@@ -129,6 +129,23 @@ func Changes(files *folder.Folder, a *Allotment, d Draw) ([]folder.Change, error
 	} else {
 		changes = append(changes, folder.Change{Path: File, How: folder.Create, Data: text})
 	}
+	animals, err := files.Read(AnimalsFile, folder.MaxFile)
+	absent := isAbsent(err)
+	switch {
+	case err != nil && !absent:
+		return nil, err
+	case a.Animals == nil:
+	case absent:
+		changes = append(changes, folder.Change{Path: AnimalsFile, How: folder.Create, Data: a.Animals})
+	case len(draws) == 0 || draws[len(draws)-1].Animals != animals.SHA256:
+		return nil, fmt.Errorf("%s: not of the draw that is replaced; remove or rename it to draw here", AnimalsFile)
+	default:
+		changes = append(changes, folder.Change{Path: fmt.Sprintf("animals.%d.csv", len(draws)), How: folder.Create, Data: animals.Data},
+			folder.Change{Path: AnimalsFile, How: folder.Replace, Data: a.Animals, Old: animals.SHA256})
+	}
+	if a.Animals != nil {
+		d.Animals = folder.Hash(a.Animals)
+	}
 	return append(changes, folder.Change{Path: RecordFile, How: folder.Append, Data: d.Bytes(), Old: record.SHA256}), nil
 }
 
@@ -157,6 +174,7 @@ func (d Draw) Bytes() []byte {
 	text("plan", d.Plan)
 	text("roster", d.Roster)
 	text("allotment", d.Allotment)
+	text("animals", d.Animals)
 	text("why", d.Why)
 	return b.Bytes()
 }
@@ -198,6 +216,7 @@ type entry struct {
 	Plan       string `toml:"plan"`
 	Roster     string `toml:"roster"`
 	Allotment  string `toml:"allotment"`
+	Animals    string `toml:"animals"`
 	Why        string `toml:"why"`
 }
 
@@ -238,7 +257,7 @@ func parseRecord(file folder.File) ([]Draw, diag.List) {
 	var draws []Draw
 	for k, e := range record.Draw {
 		d := Draw{Number: e.Number, Scheme: e.Scheme, Start: e.Start, Generator: e.Generator, Seed: e.Seed, Candidates: e.Candidates, Rejected: e.Rejected,
-			By: e.By, Plan: e.Plan, Roster: e.Roster, Allotment: e.Allotment, Why: e.Why}
+			By: e.By, Plan: e.Plan, Roster: e.Roster, Allotment: e.Allotment, Animals: e.Animals, Why: e.Why}
 		if t, ok := e.On.(interface{ Format(string) string }); ok {
 			var ok bool
 			if d.On, ok = date(t.Format("2006-01-02")); !ok {
@@ -323,6 +342,12 @@ func Read(files *folder.Folder, plan *layout.Plan) (*Allotment, diag.List) {
 			list.Add(diag.Diagnostic{Pos: diag.Pos{File: File, Line: 1, Col: 1}, Code: AllotmentChanged,
 				Message: File + " was changed after it was drawn", Hint: "restore the file that was drawn; what was done otherwise is an event of kind \"wrong treatment\"",
 				Related: []diag.Related{{Pos: diag.Pos{File: RecordFile, Line: lastOf(headLines(record.Data)), Col: 1}, Message: "its fingerprint is in this draw"}}})
+		}
+		if last.Animals != "" {
+			if animals, ok := read(AnimalsFile); !ok || animals.SHA256 != last.Animals {
+				list.Add(diag.Diagnostic{Pos: diag.Pos{File: AnimalsFile, Line: 1, Col: 1}, Code: AllotmentChanged,
+					Message: AnimalsFile + " is not as it was when it was drawn", Hint: "restore the file that was drawn; an animal that was moved is an event of kind \"move\""})
+			}
 		}
 		if method != "" {
 			list.Add(diag.Diagnostic{Pos: plan.Protocol.Pos("randomization.method"), Key: "randomization.method", Severity: diag.Warning, Code: NoAllotmentRecord,

@@ -2,6 +2,8 @@ package allot
 
 import (
 	"fmt"
+	"math"
+	"slices"
 
 	"penwright/protocol/diag"
 	"penwright/protocol/folder"
@@ -16,12 +18,29 @@ type Roster struct {
 	// the unit that carries it, -1 where the roster does not tell; nil for a factor
 	// without a column.
 	Levels [][]int32
+
+	unit    int     // the unit of the rows, -1: animals by their own numbers
+	rows    []int32 // instance of unit of each row
+	animals []animal
+	heading string      // of the animals' own numbers
+	by      string      // heading of the values that block_by ranks
+	values  [][]float64 // for each name of balance_on the value of each row; NaN: missing
 }
 
-// ReadRoster reads the classes that units carry from the roster. A roster without unit
-// columns, of animals that have only their own number, tells none.
+// animal is a row of a roster of animals by their own numbers.
+type animal struct {
+	name  string
+	text  string  // as the roster writes what it is ranked by
+	value float64 // what it is ranked by
+	class []int32 // level of each factor that is carried, -1 where there is no column
+}
+
+// ReadRoster reads from the roster the classes that units carry, what block_by ranks and
+// what balance_on names. A roster without unit columns, of animals that have only their
+// own number, tells classes of units only where blocks are formed from it.
 func ReadRoster(file folder.File, plan *layout.Plan) (*Roster, diag.List) {
-	r := &Roster{SHA256: file.SHA256, Levels: make([][]int32, len(plan.Factors))}
+	p := plan.Protocol
+	r := &Roster{SHA256: file.SHA256, Levels: make([][]int32, len(plan.Factors)), unit: -1}
 	s, list := sheet.Open(file.Path, file.Data, "auto")
 	if s == nil {
 		return nil, list
@@ -33,18 +52,121 @@ func ReadRoster(file folder.File, plan *layout.Plan) (*Roster, diag.List) {
 			carried = append(carried, column{factor: f, at: c})
 		}
 	}
-	if len(carried) == 0 {
+	ranked := p.Roster != nil && p.Roster.BlockBy != ""
+	if len(carried) == 0 && len(p.Randomization.BalanceOn) == 0 && !ranked {
 		return r, list
 	}
 	b, bad := NewFinder(plan).Bind(columns, s.Headings)
-	if bad != nil {
-		if bad.Column >= 0 {
-			list.Add(diag.Diagnostic{Pos: s.Pos(s.Heading, bad.Column), Code: UnitColumns, Message: bad.Message, Hint: bad.Hint})
-		}
-		return r, list // animals by their own numbers
+	if bad != nil && bad.Column >= 0 {
+		list.Add(diag.Diagnostic{Pos: s.Pos(s.Heading, bad.Column), Code: UnitColumns, Message: bad.Message, Hint: bad.Hint})
+		return r, list
 	}
-	list = append(list, fill(s, b, plan, carried, r.Levels, nil, nil)...)
+	if b != nil && ranked {
+		list.Add(diag.Diagnostic{Pos: s.Pos(s.Heading, max(slices.Max(columns), 0)), Code: UnitColumns, Message: "the roster names units, and blocks are to be formed by rank",
+			Hint: "leave block_by out, or list animals by numbers of their own without unit columns"})
+		return r, list
+	}
+	if b != nil {
+		r.unit = b.Unit
+		list = append(list, fill(s, b, plan, carried, r.Levels, func(_ sheet.Row, i int32) bool {
+			r.rows = append(r.rows, i)
+			return true
+		}, nil)...)
+		if list.HasErrors() {
+			return r, list
+		}
+	}
+	numbers := func(key, name string) []float64 {
+		at := Column(plan, s.Headings, name)
+		if at < 0 {
+			list.Add(diag.Diagnostic{Pos: p.Pos(key), Key: key, Code: RosterColumn, Message: fmt.Sprintf("the roster has no column %q", name), Hint: nearHeading(name, s.Headings)})
+			return nil
+		}
+		decimal := decimalOf(s, []column{{at: at}})
+		var out []float64
+		faults := sheet.Faults{}
+		s.Rows(func(row sheet.Row) bool {
+			text := row.Cells[at].Text
+			v, ok := sheet.Number(text, decimal)
+			if !ok {
+				v = math.NaN()
+				if !slices.Contains(missing(plan), text) || ranked {
+					faults.Add(diag.Diagnostic{Pos: s.Pos(row, at), Code: RosterColumn, Message: fmt.Sprintf("%s %q is not a number", name, text), Hint: sheet.Hint(text, decimal)})
+				}
+			}
+			out = append(out, v)
+			return true
+		})
+		list = append(list, faults.List()...)
+		return out
+	}
+	for k, name := range p.Randomization.BalanceOn {
+		r.values = append(r.values, numbers(fmt.Sprintf("randomization.balance_on[%d]", k), name))
+	}
+	if ranked {
+		r.by = p.Roster.BlockBy
+		values := numbers("roster.block_by", r.by)
+		if list.HasErrors() {
+			return r, list
+		}
+		list = append(list, r.read(s, plan, carried, values)...)
+	}
 	return r, list
+}
+
+func missing(plan *layout.Plan) []string {
+	if d := plan.Protocol.Data; d != nil {
+		return d.Missing
+	}
+	return []string{"", "NA", "."}
+}
+
+// read reads the animals that blocks are formed of. Their own number stands in the first
+// column that tells all of them apart.
+func (r *Roster) read(s *sheet.Sheet, plan *layout.Plan, carried []column, values []float64) diag.List {
+	var list sheet.Faults
+	by := Column(plan, s.Headings, r.by)
+	own := -1
+	for c := range s.Headings {
+		used := c == by || slices.ContainsFunc(carried, func(x column) bool { return x.at == c }) || slices.Contains(plan.Protocol.Randomization.BalanceOn, s.Headings[c])
+		seen := map[string]bool{}
+		n := 0
+		s.Rows(func(row sheet.Row) bool {
+			seen[row.Cells[c].Text] = true
+			n++
+			return !used
+		})
+		if !used && len(seen) == n && !seen[""] {
+			own = c
+			break
+		}
+	}
+	if own < 0 {
+		list.Add(diag.Diagnostic{Pos: s.Pos(s.Heading, 0), Code: RosterColumn, Message: "no column of the roster tells all animals apart", Hint: "give every animal a number of its own, in a column such as animal"})
+		return list.List()
+	}
+	r.heading = s.Headings[own]
+	decimal := decimalOf(s, carried)
+	names := make([]*Names, len(carried))
+	for k, c := range carried {
+		names[k] = NewNames(plan.Factors[c.factor].Levels, plan.Factors[c.factor].Values)
+	}
+	s.Rows(func(row sheet.Row) bool {
+		a := animal{name: row.Cells[own].Text, text: row.Cells[by].Text, value: values[len(r.animals)], class: make([]int32, len(plan.Factors))}
+		for f := range a.class {
+			a.class[f] = -1
+		}
+		for k, c := range carried {
+			text := row.Cells[c.at].Text
+			if a.class[c.factor] = names[k].Find(text, decimal); a.class[c.factor] < 0 {
+				message, hint := UnknownLevel(&plan.Factors[c.factor], text)
+				list.Add(diag.Diagnostic{Pos: s.Pos(row, c.at), Code: UnknownLevelCode, Message: message, Hint: hint})
+			}
+		}
+		r.animals = append(r.animals, a)
+		return true
+	})
+	return list.List()
 }
 
 // Columns finds the column of each unit's name by the headings, -1 where it has none.
