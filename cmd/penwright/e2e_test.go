@@ -40,8 +40,8 @@ var built = sync.OnceValues(func() (string, error) {
 	return file, nil
 })
 
-// penwright runs the built program in a process of its own.
-func penwright(t *testing.T, env []string, args ...string) *os.ProcessState {
+// spawn runs the built program in a process of its own.
+func spawn(t *testing.T, env []string, args ...string) *os.ProcessState {
 	t.Helper()
 	file, err := built()
 	if err != nil {
@@ -83,7 +83,7 @@ func reported(t *testing.T, name string) string {
 	if err := os.CopyFS(dir, from); err != nil {
 		t.Fatal(err)
 	}
-	penwright(t, nil, "report", dir)
+	spawn(t, nil, "report", dir)
 	return dir
 }
 
@@ -309,7 +309,7 @@ func TestSameBytes(t *testing.T) {
 		}
 		for i, env := range [][]string{{"GOMAXPROCS=1"}, {"GOMAXPROCS=4"}, {"GOMAXPROCS=4", "TZ=Pacific/Auckland", "LANG=de_DE.UTF-8", "LC_ALL=de_DE.UTF-8"}, {"GOMAXPROCS=1", "GOGC=5"}} {
 			out := filepath.Join(t.TempDir(), fmt.Sprint("again", i))
-			penwright(t, env, "report", dir, "--out", out)
+			spawn(t, env, "report", dir, "--out", out)
 			alike(t, strings.Join(env, " "), first, tree(t, out))
 		}
 	})
@@ -634,7 +634,7 @@ func TestSpeed(t *testing.T) {
 		var walls, works []time.Duration
 		for range 10 {
 			start := time.Now()
-			state := penwright(t, nil, test.args...)
+			state := spawn(t, nil, test.args...)
 			walls = append(walls, time.Since(start))
 			works = append(works, state.UserTime()+state.SystemTime())
 		}
@@ -684,7 +684,7 @@ func TestKilledDraw(t *testing.T) {
 		t.Fatal(err)
 	}
 	start := time.Now()
-	penwright(t, nil, "draw", done)
+	spawn(t, nil, "draw", done)
 	whole := time.Since(start)
 	after := tree(t, done)
 	killed := 0
@@ -704,7 +704,7 @@ func TestKilledDraw(t *testing.T) {
 			killed++
 		}
 		// Opening the trial finishes or forgets what was begun.
-		penwright(t, nil, "check", dir)
+		spawn(t, nil, "check", dir)
 		got := tree(t, dir)
 		maps.DeleteFunc(got, func(name string, _ []byte) bool { return strings.HasPrefix(name, ".penwright") })
 		if _, drawn := got["allotment.csv"]; drawn {
@@ -712,7 +712,7 @@ func TestKilledDraw(t *testing.T) {
 		} else if len(got) != 1 {
 			t.Errorf("killed at step %d the folder holds %v", k, slices.Sorted(maps.Keys(got)))
 		} else {
-			penwright(t, nil, "draw", dir)
+			spawn(t, nil, "draw", dir)
 			got := tree(t, dir)
 			maps.DeleteFunc(got, func(name string, _ []byte) bool { return strings.HasPrefix(name, ".penwright") })
 			alike(t, "drawn after a kill", after, got)
