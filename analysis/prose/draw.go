@@ -22,8 +22,8 @@ func Arrangement(p *layout.Plan, a *allot.Allotment) []string {
 		for _, f := range e.Factors {
 			names = append(names, lowerFirst(FactorLabel(&p.Factors[f])))
 		}
-		for _, c := range e.Concurrence {
-			blocks = append(blocks, Plural(UnitName(&p.Units[c.Unit])))
+		for _, v := range e.Eliminated {
+			blocks = append(blocks, Plural(UnitName(&p.Units[v])))
 		}
 		of, after := strings.Join(names, " × "), And(blocks)
 		if e.Mean == 0 {

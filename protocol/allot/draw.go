@@ -316,18 +316,20 @@ type blocked struct {
 	plan   *layout.Plan
 	blocks []block
 	deal   bool // some class takes fewer than all treatments once more
+	round  bool // unequal numbers are rounded to those of classes
 }
 
 type block struct {
 	classes [][]int32 // instances of each class
 	counts  [][]int32 // for each class, how often it gets each combination for certain
 	rest    []int     // for each class, how many more it gets from the dealt order
+	share   [][]int   // of unequal replication, for each class and combination its part of size; nil: dealt
+	size    int
 }
 
 func (r *refusal) inBlocks(a *layout.Allocation, fixed [][]int32) step {
 	plan, u := r.plan, a.Unit
 	unit := &plan.Units[u]
-	key := fmt.Sprintf("unit[%d].receives", u)
 	if !a.Complete {
 		return r.incomplete(a, fixed)
 	}
@@ -370,13 +372,18 @@ func (r *refusal) inBlocks(a *layout.Allocation, fixed [][]int32) step {
 				counts[c] = int32(int(total[c]) * len(members) / size)
 				rest -= int(counts[c])
 			}
-			if rest > 0 && !equal {
-				r.add(key, NotDrawn, "choose numbers that every class can hold in proportion; or "+elsewhere,
-					"unequal replication cannot be shared out in proportion among the classes that %s carries", unit.Name)
-				return nil
-			}
-			st.deal = st.deal || rest > 0
+			st.deal = st.deal || rest > 0 && equal
 			bl.counts, bl.rest = append(bl.counts, counts), append(bl.rest, rest)
+		}
+		if !equal && slices.ContainsFunc(bl.rest, func(n int) bool { return n > 0 }) {
+			st.round, bl.size = true, size
+			for _, members := range bl.classes {
+				share := make([]int, len(total))
+				for c, n := range total {
+					share[c] = int(n) * len(members)
+				}
+				bl.share = append(bl.share, share)
+			}
 		}
 	}
 	return st
@@ -389,18 +396,22 @@ func (s *blocked) draw(g *Generator, _ [][]int32, combination []int32) {
 		bl := &s.blocks[b]
 		var dealt []int32
 		next := 0
-		if slices.ContainsFunc(bl.rest, func(n int) bool { return n > 0 }) {
+		counts, rest := bl.counts, bl.rest
+		if bl.share != nil {
+			counts, rest = bl.rounded(g), make([]int, len(bl.rest))
+		}
+		if slices.ContainsFunc(rest, func(n int) bool { return n > 0 }) {
 			dealt = identity(len(s.of.Combinations))
 			g.Shuffle(dealt)
 		}
 		for k, members := range bl.classes {
 			list := make([]int32, 0, len(members))
-			for c, n := range bl.counts[k] {
+			for c, n := range counts[k] {
 				for range n {
 					list = append(list, int32(c))
 				}
 			}
-			for range bl.rest[k] {
+			for range rest[k] {
 				list = append(list, dealt[next%len(dealt)])
 				next++
 			}
@@ -410,6 +421,23 @@ func (s *blocked) draw(g *Generator, _ [][]int32, combination []int32) {
 			}
 		}
 	}
+}
+
+// rounded gives numbers of combinations in classes as near to proportion as whole
+// numbers can be.
+func (bl *block) rounded(g *Generator) [][]int32 {
+	share := make([][]int, len(bl.share))
+	for k := range share {
+		share[k] = slices.Clone(bl.share[k])
+	}
+	round(g, share, bl.size)
+	out := make([][]int32, len(share))
+	for k := range share {
+		for _, n := range share[k] {
+			out[k] = append(out[k], int32(n/bl.size))
+		}
+	}
+	return out
 }
 
 func (s *blocked) words() string {
@@ -423,6 +451,9 @@ func (s *blocked) words() string {
 		text = fmt.Sprintf("%s to %s: the list of the %d treatments in the protocol's order, each as often as planned, is permuted for each class of %s, %s", factorNames(s.plan, s.of.Factors), unit.Name, len(s.of.Combinations), factorNames(s.plan, unit.Carries), place)
 		if s.deal {
 			text += "; what a class holds beyond equal numbers is dealt before, class after class, from one permutation of the treatments"
+		}
+		if s.round {
+			text += "; numbers that are not proportional are rounded before by Cox (1987): from the first broken share in the order of classes and treatments a way leads to the first other broken one of its class, then of its treatment, and so on until a ring closes; its shares are raised and lowered in turn by as much (in parts of the size of the block) as makes one whole, raised first by u when a whole number below u + d is below d, else lowered by d"
 		}
 	}
 	return text

@@ -14,15 +14,17 @@ type Efficiency struct {
 	Factor []float64
 	Mean   float64 // their harmonic mean, 0 where one is 0
 
-	// Concurrence tells for each of the smallest of Blocks how often two treatments stand
-	// together in one of its instances.
+	// Eliminated are the smallest of Blocks that treatments are not orthogonal to.
+	Eliminated []int
+	// Concurrence tells for each of Eliminated how often two treatments stand together in
+	// one of its instances; none where a treatment stands in one more than once.
 	Concurrence []Concurrence
 }
 
 // Concurrence is how many pairs of treatments stand together how often.
 type Concurrence struct {
 	Unit  int   // the block
-	Pairs []int // Pairs[n] is the number of pairs that stand together n times, counting every pair of their units
+	Pairs []int // Pairs[n] is the number of pairs of treatments that stand together n times
 }
 
 // mostEfficiency bounds the work on eigenvalues.
@@ -86,7 +88,11 @@ func (a *Allotment) efficiency(u int, fs []int) (Efficiency, bool) {
 		for _, w := range e.Blocks {
 			smallest = smallest && (w == v || plan.Coarse(w, v) == nil)
 		}
-		if smallest {
+		if !smallest || factor.Orthogonal(blocks[k], treatment) && factor.Connected(blocks[k], treatment) {
+			continue
+		}
+		e.Eliminated = append(e.Eliminated, v)
+		if factor.Infimum(blocks[k], treatment).N == treatment.Len() {
 			e.Concurrence = append(e.Concurrence, Concurrence{Unit: v, Pairs: pairs(blocks[k], treatment)})
 		}
 	}
