@@ -129,13 +129,16 @@ func Repeat(a *allot.Allotment) []string {
 		return []string{"The allotment was not drawn by this program, so that it cannot be repeated from a seed."}
 	}
 	d := a.Draws[len(a.Draws)-1]
-	return []string{
+	out := []string{
 		"Seed text, generator and scheme are enough to repeat the draw with any program.",
 		fmt.Sprintf("Seed text: “%s”.", d.Seed),
 		fmt.Sprintf("Generator: %s.", strings.TrimRight(d.Generator, ".")),
 		fmt.Sprintf("Scheme: %s.", strings.TrimRight(d.Scheme, ".")),
-		"With this program, penwright draw --draws 1 --json prints the same allotment without recording it.",
 	}
+	if d.Start != "" {
+		out = append(out, "The arrangement before it was permuted stands in allotment.toml under start, treatments counted from 1 in the protocol’s order, so that no search needs to be repeated.")
+	}
+	return append(out, "With this program, penwright draw --draws 1 --json prints the same allotment without recording it.")
 }
 
 // Conduct sums up what happened.

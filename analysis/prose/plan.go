@@ -277,13 +277,13 @@ func Draw(p *layout.Plan, a *allot.Allotment) []string {
 		} else {
 			s += " The protocol does not say how it was made."
 		}
-		return []string{s}
+		return append([]string{s}, Arrangement(p, a)...)
 	case allot.FromData:
 		s := "No allotment file exists: the treatments written in the data are taken as the allotment, and no record of a draw exists."
 		if r.Method != "" {
 			s += " Method, in the words of the protocol: " + strings.TrimRight(r.Method, ".") + "."
 		}
-		return []string{s}
+		return append([]string{s}, Arrangement(p, a)...)
 	}
 	if len(a.Draws) == 0 {
 		return []string{"The allotment bears no record of its draw."}
@@ -301,6 +301,10 @@ func Draw(p *layout.Plan, a *allot.Allotment) []string {
 	if d.Candidates > 1 {
 		out = append(out, fmt.Sprintf("Of %d candidate draws the best balanced was kept; %d were rejected.", d.Candidates, d.Rejected))
 	}
+	if d.Animals != "" {
+		out = append(out, "Which animal went where, and which are spare, is listed in animals.csv.")
+	}
+	out = append(out, Arrangement(p, a)...)
 	if len(a.Draws) > 1 {
 		out = append(out, fmt.Sprintf("Earlier draws, %s in number, are kept with the reason for drawing again.", small(len(a.Draws)-1)))
 	}
