@@ -14,15 +14,6 @@ func Refused(p *layout.Plan, r *result.Response, why string) string {
 	return upperFirst(strings.SplitN(ResponseText(r), " (", 2)[0]) + " was not analysed: " + strings.TrimRight(why, ".") + "."
 }
 
-// ErrorDFCheck words the check of a term's error degrees of freedom.
-func ErrorDFCheck(p *layout.Plan, t *layout.Term, df, least int) string {
-	s := fmt.Sprintf("%s is tested with %s error degrees of freedom", upperFirst(TermText(p, t.Name)), num.DF(float64(df)))
-	if df < least {
-		return s + fmt.Sprintf(", fewer than the %d asked for: only large effects can be found.", least)
-	}
-	return s + "."
-}
-
 // Averaged says that values were averaged before the analysis; unequal tells that their
 // number differed.
 func Averaged(p *layout.Plan, from, to int, unequal bool) string {
@@ -215,11 +206,6 @@ func NoSimultaneousLimits(method string) string {
 // different hypotheses.
 func TwoLevel(p *layout.Plan, term string) string {
 	return fmt.Sprintf("The F of %s is adjusted for fewer terms than the difference of its two adjusted means, so that F is not the square of t.", TermText(p, term))
-}
-
-// FewErrorDF warns where tests rest on few degrees of freedom.
-func FewErrorDF(p *layout.Plan, term string, df float64, least int) string {
-	return fmt.Sprintf("%s is tested with %s error degrees of freedom, fewer than %d: only large effects can be found.", upperFirst(TermText(p, term)), num.DF(df), least)
 }
 
 // ManyResiduals says that residuals are not listed one by one.
