@@ -11,6 +11,8 @@ import (
 	"slices"
 	"strconv"
 	"strings"
+	"unicode"
+	"unicode/utf8"
 
 	"penwright/analysis/trial"
 	"penwright/protocol/folder"
@@ -114,6 +116,10 @@ func (t *talker) ask(question, otherwise string, accept func(string) (string, er
 			}
 			return "", errEnded
 		}
+		if !utf8.ValidString(t.in.Text()) || strings.ContainsFunc(strings.TrimSpace(t.in.Text()), unicode.IsControl) {
+			fmt.Fprintln(t.out, "  without control characters, and in UTF-8, please")
+			continue
+		}
 		s := strings.Join(strings.Fields(t.in.Text()), " ")
 		if s == "" {
 			s = otherwise
@@ -148,11 +154,8 @@ func (t *talker) menu(question string, words []string) (int, error) {
 // say asks for words; empty ones are refused.
 func (t *talker) say(question, otherwise string) (string, error) {
 	return t.ask(question, otherwise, func(s string) (string, error) {
-		switch {
-		case s == "":
+		if s == "" {
 			return "", errors.New("a few words are needed here")
-		case strings.ContainsFunc(s, func(r rune) bool { return r < ' ' || r == 0x7f }):
-			return "", errors.New("without control characters, please")
 		}
 		return s, nil
 	})
