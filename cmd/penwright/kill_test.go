@@ -190,3 +190,68 @@ func again(t *testing.T, dir string, steps int, args []string) int {
 	}
 	return 0
 }
+
+// Of several draws at once one is made, and the others say why they are not.
+func TestDrawsAtOnce(t *testing.T) {
+	dir := t.TempDir()
+	plan := `protocol = 1
+
+[trial]
+code = "HM-26-B2"
+title = "Two mashes for layers"
+objective = "Does the coarse mash change egg mass?"
+
+[[factor]]
+name = "mash"
+levels = ["fine", "coarse"]
+
+[[unit]]
+name = "pen"
+count = 12
+receives = ["mash"]
+
+[[response]]
+name = "egg_mass"
+kind = "continuous"
+role = "primary"
+`
+	if err := os.WriteFile(filepath.Join(dir, "protocol.toml"), []byte(plan), 0o644); err != nil {
+		t.Fatal(err)
+	}
+	const many = 6
+	codes := make(chan int, many)
+	for range many {
+		go func() {
+			err := exec.Command("penwright", "draw", dir).Run()
+			var exit *exec.ExitError
+			switch {
+			case err == nil:
+				codes <- fine
+			case errors.As(err, &exit):
+				codes <- exit.ExitCode()
+			default:
+				codes <- -1
+			}
+		}()
+	}
+	made := 0
+	for range many {
+		switch code := <-codes; code {
+		case fine:
+			made++
+		case findings, broken: // it exists already, or is being made
+		default:
+			t.Errorf("exit status %d", code)
+		}
+	}
+	if made != 1 {
+		t.Errorf("%d draws were made", made)
+	}
+	got := content(t, dir)
+	if len(got) != 3 || strings.Count(got["allotment.toml"], "[[draw]]") != 1 {
+		t.Errorf("the folder holds %v", names(got))
+	}
+	if out, err := exec.Command("penwright", "check", dir).CombinedOutput(); err != nil {
+		t.Errorf("%v\n%s", err, out)
+	}
+}
