@@ -78,7 +78,7 @@ func Sizes(p *layout.Plan, s *result.SampleSize) doc.Table {
 			marks = append(marks, "planned")
 		}
 		if s.Needed != nil && c.Replicates == s.Needed.Replicates {
-			marks = append(marks, "smallest that does")
+			marks = append(marks, "smallest that will do")
 		}
 		if s.WithLosses != nil && c.Replicates == s.WithLosses.Replicates {
 			marks = append(marks, "with losses")
