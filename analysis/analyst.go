@@ -524,6 +524,9 @@ func (a *analyst) leastSquaresTable(m linear.Model, nuisance []int, adjustment l
 		t := a.ls.tests[i]
 		name := a.rows.resp.Protocol.Covariates[k]
 		line(name, t.DF, t.SS, true)
+		if t.DF == 0 {
+			a.note("covariate-untested", name, prose.CovariateUntested(a.plan, name))
+		}
 		c := result.Covariate{Name: name, Slope: result.Number(slopes.Value[i]), SE: result.Number(math.Sqrt(slopes.Cov(i, i))), DF: df, P: result.NaN, EqualSlopesP: result.NaN}
 		if c.SE > 0 && ms > 0 {
 			c.P = result.Number(dist.TTwoSided(float64(c.Slope/c.SE), float64(fit.DF)))

@@ -44,6 +44,7 @@ type reckoning struct {
 	tests    []testReckoning
 	estimate func(l []float64) (weights []float64, ok bool) // weights over level.y of a row of coefficients
 	variance func(weights []float64) (v, df float64)
+	joint    func(a, b []float64) float64 // covariance
 	columns  []column
 	fitted   []float64
 	leverage []float64
@@ -529,26 +530,41 @@ func (b *reckoning) byStrata(l *level) string {
 		columns = append(columns, b.termColumns(l, t)...)
 	}
 	q := newSpace(columns, n)
-	variance := func(a []float64) (float64, float64) {
-		coef := make([]float64, k)
-		size := 0.0
+	// The covariance of two rows of weights is Σ share·(sums within classes)·MS.
+	coefficients := func(a, e []float64) (coef []float64, size float64) {
+		coef = make([]float64, k)
 		for v := range strata {
 			if !strata[v].random || strata[v].df == 0 {
 				continue
 			}
-			sums := map[int]float64{}
+			x, y := map[int]float64{}, map[int]float64{}
 			for i, c := range class[strata[v].unit] {
-				sums[c] += a[i]
+				x[c] += a[i]
+				y[c] += e[i]
 			}
 			quad := 0.0
-			for _, x := range sums {
-				quad += x * x
+			for c := range x {
+				quad += x[c] * y[c]
 			}
 			for u, share := range strata[v].share {
 				coef[u] += quad * share
 				size = math.Max(size, math.Abs(quad*share))
 			}
 		}
+		return coef, size
+	}
+	b.joint = func(a, e []float64) float64 {
+		coef, size := coefficients(a, e)
+		v := 0.0
+		for u, c := range coef {
+			if math.Abs(c) > 1e-9*size {
+				v += c * strata[u].ms()
+			}
+		}
+		return v
+	}
+	variance := func(a []float64) (float64, float64) {
+		coef, size := coefficients(a, a)
 		v, below := 0.0, 0.0
 		single := -1
 		for u, c := range coef {
@@ -1000,6 +1016,7 @@ func (b *reckoning) byLeastSquares() {
 		}
 		return q.weights(s)
 	}
+	b.joint = func(a, e []float64) float64 { return floats.Dot(a, e) * b.errMS }
 	b.variance = func(a []float64) (float64, float64) { return floats.Dot(a, a) * b.errMS, float64(b.errDF) }
 
 	residual := func(cols []column) (float64, int) {
@@ -1193,6 +1210,17 @@ func unitColumns(columns []column) []column {
 	return out
 }
 
+// covariance of rows of weights, per unit of an error mean square.
+func (b *reckoning) covariance(rows [][]float64, ms float64) [][]float64 {
+	out := make([][]float64, len(rows))
+	for i, x := range rows {
+		for _, y := range rows {
+			out[i] = append(out[i], b.joint(x, y)/ms)
+		}
+	}
+	return out
+}
+
 // single tells whether weights draw on the error of a term alone.
 func (b *reckoning) single(t int, a []float64) bool {
 	for k := range b.strata {
@@ -1220,9 +1248,10 @@ func tQuantile(p, df float64) float64 {
 	return distuv.StudentsT{Mu: 0, Sigma: 1, Nu: df}.Quantile(1 - p)
 }
 
-// weightedResidual is the least of (y − Xβ)′ C⁻ (y − Xβ) with the last β.
-func weightedResidual(c [][]float64, cols [][]float64, y []float64) (rss, last float64) {
-	n := len(y)
+// whitener turns vectors with covariance c into ones with covariance 1; what c does not hold
+// is dropped.
+func whitener(c [][]float64) func(v []float64) []float64 {
+	n := len(c)
 	m := mat.NewSymDense(n, nil)
 	for i := range n {
 		for j := i; j < n; j++ {
@@ -1231,12 +1260,12 @@ func weightedResidual(c [][]float64, cols [][]float64, y []float64) (rss, last f
 	}
 	var eigen mat.EigenSym
 	if !eigen.Factorize(m, true) {
-		return math.NaN(), math.NaN()
+		panic("analysis: no eigenvalues")
 	}
 	var vectors mat.Dense
 	eigen.VectorsTo(&vectors)
 	values := eigen.Values(nil)
-	white := func(v []float64) []float64 {
+	return func(v []float64) []float64 {
 		var out []float64
 		for k, x := range values {
 			if x <= 1e-10*values[n-1] {
@@ -1250,6 +1279,11 @@ func weightedResidual(c [][]float64, cols [][]float64, y []float64) (rss, last f
 		}
 		return out
 	}
+}
+
+// weightedResidual is the least of (y − Xβ)′ C⁻ (y − Xβ) with the last β.
+func weightedResidual(c, cols [][]float64, y []float64) (rss, last float64) {
+	white := whitener(c)
 	z := white(y)
 	if len(cols) == 0 {
 		return floats.Dot(z, z), math.NaN()
@@ -1268,4 +1302,31 @@ func weightedResidual(c [][]float64, cols [][]float64, y []float64) (rss, last f
 		rss += (z[i] - fit.AtVec(i)) * (z[i] - fit.AtVec(i))
 	}
 	return rss, beta.AtVec(len(cols) - 1)
+}
+
+// weightedLeft is the same residual where columns may depend on each other, with its
+// degrees of freedom.
+func weightedLeft(c, cols [][]float64, y []float64) (rss float64, df int) {
+	white := whitener(c)
+	z := white(y)
+	df = len(z)
+	var basis [][]float64
+	for _, col := range cols {
+		v := white(col)
+		size := floats.Dot(v, v)
+		for range 2 {
+			for _, q := range basis {
+				floats.AddScaled(v, -floats.Dot(q, v), q)
+			}
+		}
+		left := floats.Dot(v, v)
+		if left <= 1e-14*size {
+			continue
+		}
+		floats.Scale(1/math.Sqrt(left), v)
+		basis = append(basis, v)
+		floats.AddScaled(z, -floats.Dot(v, z), v)
+		df--
+	}
+	return floats.Dot(z, z), df
 }

@@ -1,11 +1,9 @@
 package analysis
 
 import (
-	"fmt"
 	"math"
 	"strings"
 
-	"penwright/analysis/compare"
 	"penwright/analysis/dist"
 	"penwright/analysis/prose"
 	"penwright/analysis/result"
@@ -563,6 +561,13 @@ func (a *analyst) contrasts(all []*termMeans) {
 			a.trends(m)
 		}
 	}
+	for _, m := range all {
+		for i, f := range m.factors {
+			if len(m.factors) > 1 && a.plan.Factors[f].Values != nil {
+				a.interactionTrends(m, i)
+			}
+		}
+	}
 	var planned []protocol.Contrast
 	planned = append(planned, a.plan.Protocol.Analysis.Contrasts...)
 	planned = append(planned, a.rows.resp.Protocol.Contrasts...)
@@ -625,56 +630,6 @@ func (a *analyst) fillContrast(x *result.Contrast, estimate, variance, df, ms fl
 	x.SS = result.Number(f * ms)
 	h := dist.TQuantile(a.alpha/2, df) * math.Sqrt(variance)
 	x.Lower, x.Upper = result.Number(estimate-h), result.Number(estimate+h)
-}
-
-// trends fits polynomials over the levels of a quantitative factor.
-func (a *analyst) trends(m *termMeans) {
-	degree := a.plan.Protocol.Analysis.Trend
-	if degree < 1 {
-		return
-	}
-	f := &a.plan.Factors[m.factors[0]]
-	ms, df := m.test.errorMS, m.test.errorDF
-	if !(ms > 0) || !(df > 0) {
-		return
-	}
-	var x []float64
-	var cells, at []int
-	for c := range m.cells {
-		if m.known(c) {
-			x = append(x, f.Values[m.cells[c][0]])
-			cells, at = append(cells, c), append(at, m.at[c])
-		}
-	}
-	if len(x) < 3 {
-		return
-	}
-	for _, i := range at[1:] {
-		if _, d := m.est.diff(at[0], i); !m.single(d) {
-			a.note("no-single-error", m.name, prose.NoSingleError(a.plan, m.name))
-			return
-		}
-	}
-	steps, rest, restDF, ok := compare.Trends(x, m.relative(cells), func(i, j int) float64 { return m.est.cov(at[i], at[j]) / ms }, degree)
-	if !ok {
-		return
-	}
-	names := [...]string{"linear", "quadratic", "cubic", "quartic", "quintic"}
-	for k, s := range steps {
-		name := fmt.Sprintf("degree %d", k+1)
-		if k < len(names) {
-			name = names[k]
-		}
-		c := result.Contrast{Name: m.name + ": " + name, Term: m.name, Planned: true, NumeratorDF: 1, F: result.NaN, P: result.NaN, SS: result.NaN, Lower: result.NaN, Upper: result.NaN}
-		a.fillContrast(&c, s.Estimate, s.Variance*ms, df, ms)
-		c.SS = result.Number(s.SS)
-		a.out.Contrasts = append(a.out.Contrasts, c)
-	}
-	if restDF > 0 {
-		fr := rest / float64(restDF) / ms
-		a.out.Contrasts = append(a.out.Contrasts, result.Contrast{Name: m.name + ": lack of fit", Term: m.name, Estimate: result.NaN, SE: result.NaN, DF: result.Number(df),
-			SS: result.Number(rest), F: result.Number(fr), P: result.Number(dist.FUpper(fr, float64(restDF), df)), Lower: result.NaN, Upper: result.NaN, Planned: true, NumeratorDF: restDF})
-	}
 }
 
 // summarize describes the values of experimental units by combination of treatments.

@@ -87,6 +87,11 @@ func CovariateAliased(p *layout.Plan, name string) string {
 	return fmt.Sprintf("%s is constant within the units that the model takes as fixed, so that it cannot adjust comparisons within them; it was left out.", upperFirst(TermText(p, name)))
 }
 
+// CovariateUntested says that a covariate has no test of its own.
+func CovariateUntested(p *layout.Plan, name string) string {
+	return fmt.Sprintf("%s cannot be told apart from the treatments and the other covariates: its slope has no test.", upperFirst(TermText(p, name)))
+}
+
 // SlopesDiffer warns where the slopes of a covariate seem to differ.
 func SlopesDiffer(p *layout.Plan, name string, pv float64) string {
 	return fmt.Sprintf("The slope on %s seems to differ between treatments (P %s): differences between adjusted means then depend on the value at which they are taken.", TermText(p, name), num.PStatement(pv))
