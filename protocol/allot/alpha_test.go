@@ -8,8 +8,11 @@ import (
 	"penwright/protocol/factor"
 )
 
-func resolvable(t, k, r int) string {
-	return factorText("a", t) + fmt.Sprintf("[[unit]]\nname = \"replicate\"\ncount = %d\n[[unit]]\nname = \"block\"\nwithin = \"replicate\"\ncount = %d\n[[unit]]\nname = \"plot\"\nwithin = \"block\"\ncount = %d\nreceives = [\"a\"]\n", r, t/k, k)
+// resolvable writes t treatments in r replicates of blocks of k.
+func resolvable(t, k, r int) string { return factorText("a", t) + resolvableText(t, k, r) }
+
+func resolvableText(t, k, r int) string {
+	return fmt.Sprintf("[[unit]]\nname = \"replicate\"\ncount = %d\n[[unit]]\nname = \"block\"\nwithin = \"replicate\"\ncount = %d\n[[unit]]\nname = \"plot\"\nwithin = \"block\"\ncount = %d\nreceives = [\"a\"]\n", r, t/k, k)
 }
 
 // secondBound is an upper limit of the harmonic mean of the efficiency factors of t

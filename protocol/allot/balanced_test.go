@@ -184,7 +184,7 @@ func TestLattices(t *testing.T) {
 		{3, 2, .666666666667}, {3, 3, .727272727273}, {3, 4, .75}, {4, 2, .714285714286}, {5, 2, .75}, {5, 3, .8}, {5, 6, .833333333333},
 		{6, 3, 14. / 17}, {10, 4, 33. / 37}, {12, 4, 39. / 43},
 	} {
-		text := factorText("a", x.k*x.k) + fmt.Sprintf("[[unit]]\nname = \"replicate\"\ncount = %d\n[[unit]]\nname = \"block\"\nwithin = \"replicate\"\ncount = %d\n[[unit]]\nname = \"plot\"\nwithin = \"block\"\ncount = %d\nreceives = [\"a\"]\n", x.r, x.k, x.k)
+		text := resolvable(x.k*x.k, x.k, x.r)
 		plan := planOf(t, text)
 		a, list := New(plan, nil, "lattice")
 		if list.HasErrors() {

@@ -77,6 +77,20 @@ var designs = []struct{ name, text string }{
 	{"sampling", factorText("a", 2) + "[[unit]]\nname = \"pen\"\ncount = 6\nreceives = [\"a\"]\n[[unit]]\nname = \"animal\"\nwithin = \"pen\"\ncount = 3\n"},
 	{"listed", factorText("dose", 2) + "[[treatment]]\ncode = \"none\"\nlevels = {}\ncontrol = true\n[[treatment]]\ncode = \"low\"\nlevels = { dose = \"dose1\" }\n[[treatment]]\ncode = \"high\"\nlevels = { dose = \"dose2\" }\n[[unit]]\nname = \"block\"\ncount = 3\n[[unit]]\nname = \"pen\"\nwithin = \"block\"\ncount = 3\nreceives = [\"treatment\"]\n"},
 	{"codes", factorText("a", 2) + "[randomization]\ncodes = true\n[[unit]]\nname = \"pen\"\ncount = 8\nreceives = [\"a\"]\n"},
+	{"crossover", factorText("a", 4) + cows(8, 4) + carried},
+	{"crossover of an odd number", factorText("a", 3) + cows(6, 3) + carried},
+	{"crossover of few periods", factorText("a", 4) + cows(12, 3) + carried},
+	{"given sequences", factorText("a", 2) + cows(4, 3) + carried + "sequences = [[\"a1\", \"a2\", \"a2\"], [\"a2\", \"a1\", \"a1\"]]\n"},
+	{"reversal", factorText("a", 3) + cows(6, 3) + "[time_trend]\non = \"cow\"\nalong = \"period\"\n"},
+	{"rows that received", factorText("a", 3) + factorText("b", 2) + strings.Replace(cows(6, 3), "count = 6\n", "count = 6\nreceives = [\"b\"]\n", 1)},
+	{"graeco-latin square", factorText("a", 4) + factorText("b", 4) + strings.Replace(cows(4, 4), `["a"]`, `["a", "b"]`, 1)},
+	{"balanced incomplete blocks", factorText("a", 7) + blockText(7, "3")},
+	{"incomplete blocks of two sizes", factorText("a", 5) + blockText(4, "[3, 2, 3, 2]")},
+	{"square lattice", factorText("a", 9) + resolvableText(9, 3, 3)},
+	{"rectangular lattice", factorText("a", 12) + resolvableText(12, 3, 3)},
+	{"alpha design", factorText("a", 15) + resolvableText(15, 3, 2)},
+	{"rows and columns", factorText("a", 7) + gridText(3, 7)},
+	{"augmented", "[[treatment]]\ncode = \"c\"\nlevels = {}\n[[treatment]]\ncode = \"e1\"\nlevels = {}\n[[treatment]]\ncode = \"e2\"\nlevels = {}\n[[treatment]]\ncode = \"e3\"\nlevels = {}\n[[treatment]]\ncode = \"e4\"\nlevels = {}\n[[unit]]\nname = \"block\"\ncount = 2\n[[unit]]\nname = \"plot\"\nwithin = \"block\"\ncount = 3\nreceives = [\"treatment\"]\nchecks = [\"c\"]\n"},
 }
 
 // TestGolden pins what the seed text gives: a change of it would make every record

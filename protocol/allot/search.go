@@ -119,7 +119,8 @@ type optimizer struct {
 	h       [][]float64 // for each system g times its counts, b × t
 	trace   float64
 	members [][]int32
-	moves   int // exchanges that were looked at
+	moves   int // exchanges whose variance was worked out
+	looks   int // exchanges that the bounds of counts forbade
 	gu, gw  []float64
 }
 
@@ -143,9 +144,10 @@ func (o *optimizer) start(at []int32) {
 	}
 }
 
-// invert works out what evaluate needs.
+// invert works out what evaluate needs. Its work counts as that of so many moves.
 func (o *optimizer) invert() {
 	t := o.t
+	o.moves += t*t/50 + len(o.at)/10
 	c := mat.NewSymDense(t, nil)
 	mean := float64(len(o.at)) / float64(t)
 	for i := range t {
@@ -360,6 +362,10 @@ func (o *optimizer) exchange(p, q int32) {
 // accept makes an exchange and brings the inverse up to date.
 func (o *optimizer) accept(p, q int32, change float64) {
 	t := o.t
+	o.moves += t / 10
+	for s := range o.blocks {
+		o.moves += o.blocks[s].N / 10
+	}
 	uu, uw, ww := o.vectors(p, q)
 	det := uu*ww - (1-uw)*(1-uw)
 	m00, m01, m11 := -ww/det, -(1-uw)/det, -uu/det
@@ -413,6 +419,7 @@ func (o *optimizer) accept(p, q int32, change float64) {
 func (o *optimizer) mend(g *Generator, budget int) bool {
 	bad := o.violation()
 	for bad > 0 && budget > 0 {
+		budget -= len(o.at) / 10
 		// A plot of a treatment that stands too often in a block, at random.
 		var wrong []int32
 		for p := range o.at {
@@ -470,6 +477,9 @@ func (o *optimizer) climb(g *Generator, budget int) {
 		idle++
 		for _, q := range o.members[o.cell[p]] {
 			if !o.allowed(p, q) {
+				if o.looks++; o.looks > searchLooks {
+					return
+				}
 				continue
 			}
 			if o.moves++; o.moves > budget {
@@ -487,13 +497,18 @@ func (o *optimizer) climb(g *Generator, budget int) {
 }
 
 // searchMoves is the most exchanges that a search looks at, and searchWork the most
-// such looks times treatments.
+// such looks times treatments. Exchanges that bounds forbid cost less and are counted by
+// themselves.
 const (
 	searchMoves = 200_000
 	searchWork  = 20_000_000
+	searchLooks = 50_000_000
+	mendLooks   = 10_000_000
 )
 
-func (p *problem) budget() int { return min(searchMoves, 10_000*p.t, searchWork/p.t) }
+func (p *problem) budget() int {
+	return min(searchMoves, 10_000*p.t, searchWork/p.t) + 4*(p.t*p.t/50+len(p.cell)/10)
+}
 
 // search improves the starts by exchanges, then again and again the best after a few
 // random exchanges, until the budget of moves is used up or the mean variance has
@@ -511,7 +526,7 @@ func (p *problem) search(g *Generator, starts [][]int32, bound float64) (best []
 	enough := func() bool { return trace <= bound*(1+1e-9) }
 	for k, at := range starts {
 		o.start(at)
-		if !o.mend(g, budget/len(starts)) {
+		if !o.mend(g, mendLooks/len(starts)) {
 			continue
 		}
 		o.invert()
@@ -526,7 +541,7 @@ func (p *problem) search(g *Generator, starts [][]int32, bound float64) (best []
 	if best == nil {
 		return nil, 0
 	}
-	for o.moves < budget && !enough() {
+	for o.moves < budget && o.looks < searchLooks && !enough() {
 		o.moves++
 		o.start(best)
 		for range 2 + g.Below(3) {

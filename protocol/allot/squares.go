@@ -183,12 +183,19 @@ func lattice(t, k, r int) (blocks [][]int32, how string, best bool) {
 // alphaArray searches the generating array of an alpha design of k plots a block, s
 // blocks a replicate, r replicates: numbers modulo s, at row × r + replicate, such that
 // no two rows have the same difference in two replicates, so that two treatments meet
-// at most once. It is nil where none is found within its counted budget.
+// at most once. Numbers are tried in a random order, since arrays that are too regular
+// join treatments badly. It is nil where none is found within its counted budget.
 //
 // Source: H. D. Patterson & E. R. Williams, Biometrika 63 (1976) 83-92 (from memory).
 func alphaArray(k, s, r int) []int32 {
 	a := make([]int32, k*r)
 	moves := 0
+	g := NewGenerator("generating array")
+	orders := make([][]int32, k*r)
+	for i := range orders {
+		orders[i] = identity(s)
+		g.Shuffle(orders[i])
+	}
 	var fill func(at int) bool
 	fill = func(at int) bool {
 		if at == k*r {
@@ -199,7 +206,7 @@ func alphaArray(k, s, r int) []int32 {
 			return fill(at + 1) // 0 in the first row and replicate
 		}
 	next:
-		for v := range int32(s) {
+		for _, v := range orders[at] {
 			if moves++; moves > 200_000 {
 				return false
 			}

@@ -25,6 +25,7 @@ type structure struct {
 
 	cell  int   // the smallest unit that holds the treatments in proportion; -1: the whole trial
 	units []int // the units of the first closed factors
+	named []int // the unit of each of problem.blocks, -1: none
 }
 
 // newStructure reads the units above a.Unit; why is said where they do not do.
@@ -97,7 +98,11 @@ func newStructure(plan *layout.Plan, a *layout.Allocation) (s *structure, why st
 			s.mean = s.weights[k] // which exchanges do not change
 			continue
 		}
-		s.blocks = append(s.blocks, b)
+		unit := -1
+		if k < len(s.units) {
+			unit = s.units[k]
+		}
+		s.blocks, s.named = append(s.blocks, b), append(s.named, unit)
 	}
 	return s, ""
 }
@@ -253,7 +258,11 @@ func (s *structure) find() (start []int32, how string) {
 		how = "the most precise arrangement on rows and columns that a search found"
 	}
 	g := NewGenerator("search of an arrangement")
-	for len(starts) < 3 {
+	most := 3
+	if s.t > 300 {
+		most = 1 // every inversion of the matrix is dear
+	}
+	for len(starts) < most {
 		starts = append(starts, s.deal(g))
 	}
 	start, _ = s.search(g, starts, s.bound())
@@ -271,12 +280,15 @@ func (s *structure) deal(g *Generator) []int32 {
 	for i, c := range s.problem.cell {
 		members[c] = append(members[c], int32(i))
 	}
-	// The finest system that is wholly inside cells.
+	// The finest system that is wholly inside cells, of two that cross that with more
+	// blocks, since the other is made even afterwards.
 	var blocks []int32
-	for _, b := range s.blocks {
+	side := s.cell
+	for k, b := range s.blocks {
 		f := factor.Factor{Level: s.problem.cell, N: s.cells}
-		if factor.Finer(b.Factor, f) && b.low != nil {
+		if factor.Finer(b.Factor, f) && b.low != nil && (blocks == nil || b.N > s.blocks[k-1].N) {
 			blocks = b.Level
+			side = s.named[k]
 		}
 	}
 	for _, plots := range members {
@@ -323,6 +335,15 @@ func (s *structure) deal(g *Generator) []int32 {
 					}
 				}
 			}
+		}
+	}
+	if crosses := s.plan.Units[s.of.Unit].Crosses; len(crosses) == 2 && slices.Contains(crosses, side) {
+		colour := crosses[0]
+		if side == colour {
+			colour = crosses[1]
+		}
+		if n := s.plan.Units[colour].N; n*len(at) <= mostCounts*10 {
+			equitable(at, s.plan.Coarse(s.of.Unit, side), s.plan.Coarse(s.of.Unit, colour), s.plan.Units[side].N, n, s.t)
 		}
 	}
 	return at
