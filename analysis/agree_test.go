@@ -777,7 +777,6 @@ func (c *check) holdContrast(out *result.Response, b *reckoning) {
 		return
 	}
 	got := out.Contrasts[i]
-	a := make([]float64, len(b.level.y))
 	lost := false
 	row := make([]float64, len(b.columns))
 	for l, w := range b.s.contrast {

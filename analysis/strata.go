@@ -212,6 +212,9 @@ func (a *analyst) strataTable(s *byStrata, partial bool) {
 		out.Tests = append(out.Tests, result.Test{Source: a.plan.Terms[t].Name, DF: x.df, ErrorDF: result.Number(x.errorDF), F: result.Number(f), P: result.Number(upperF(f, x.df, x.errorDF)), Planned: true})
 		name := a.plan.Units[x.stratum].Name
 		a.insertParts(k, &name)
+		if u := a.plan.Terms[t].Unit; a.plan.Units[x.stratum].N < a.plan.Units[u].N {
+			a.note("other-stratum", a.plan.Terms[t].Name, prose.OtherStratum(a.plan, a.plan.Terms[t].Name, u, x.stratum))
+		}
 	}
 	if treated == 1 {
 		out.CVPercent = out.Strata[0].CVPercent

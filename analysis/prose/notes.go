@@ -126,6 +126,13 @@ func NoLimits(p *layout.Plan, term string) string {
 	return fmt.Sprintf("Means of %s draw on the variation of several units, which these data estimate too poorly for limits; the standard errors of differences are sound.", TermText(p, term))
 }
 
+// OtherStratum warns that a term does not vary within the units it was planned to be
+// compared within.
+func OtherStratum(p *layout.Plan, term string, planned, actual int) string {
+	return fmt.Sprintf("%s does not vary within any %s, though it was given to single %s: it is tested against the variation between %s, which leaves fewer degrees of freedom than planned.",
+		upperFirst(TermText(p, term)), UnitName(&p.Units[actual]), Plural(UnitName(&p.Units[planned])), Plural(UnitName(&p.Units[actual])))
+}
+
 // NoSingleError says that a contrast or part has no F over one error.
 func NoSingleError(p *layout.Plan, what string) string {
 	return fmt.Sprintf("Means with equal weights draw on the variation of several units, since treatments are not equally replicated: %s has no sum of squares over a single error.", TermText(p, what))
