@@ -13,7 +13,7 @@ import (
 // mean is the share.
 func TestRound(t *testing.T) {
 	g := NewGenerator("round")
-	for range 300 {
+	for range 100 {
 		// Shares of columns in rows in proportion: n_i m_j / n.
 		rows, columns := 1+g.Below(4), 1+g.Below(5)
 		size := make([]int, rows)

@@ -507,7 +507,7 @@ const (
 )
 
 func (p *problem) budget() int {
-	return min(searchMoves, 10_000*p.t, searchWork/p.t) + 4*(p.t*p.t/50+len(p.cell)/10)
+	return min(searchMoves, 4_000*p.t, searchWork/p.t) + 4*(p.t*p.t/50+len(p.cell)/10)
 }
 
 // search improves the starts by exchanges, then again and again the best after a few
