@@ -34,7 +34,7 @@ func TestRowsAndColumns(t *testing.T) {
 		want             float64 // 0: not known
 	}{
 		{7, 3, 7, 7. / 9}, {7, 7, 4, 14. / 16}, {11, 5, 11, 22. / 25}, {13, 4, 13, 13. / 16}, {4, 4, 7, 0}, {4, 3, 4, 8. / 9},
-		{10, 5, 8, 0}, {12, 6, 6, 0}, {5, 7, 9, 0}, {30, 10, 12, 0}, {50, 20, 20, 0},
+		{10, 5, 8, 0}, {12, 6, 6, 0}, {5, 7, 9, 0}, {30, 10, 12, 0},
 	} {
 		plan := planOf(t, factorText("a", x.t)+gridText(x.rows, x.columns))
 		all, list := Draws(plan, nil, "rows", 3)
@@ -113,7 +113,7 @@ func TestEfficiencyOfRowsAndColumns(t *testing.T) {
 func TestIncompleteRandom(t *testing.T) {
 	g := NewGenerator("incomplete")
 	drawn := 0
-	for range 60 {
+	for range 30 {
 		n := 3 + g.Below(10)
 		var text strings.Builder
 		text.WriteString(factorText("a", n))
@@ -162,7 +162,7 @@ func TestIncompleteRandom(t *testing.T) {
 			}
 		}
 	}
-	if drawn < 20 {
+	if drawn < 10 {
 		t.Errorf("%d drawn", drawn)
 	}
 }
