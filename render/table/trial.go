@@ -168,7 +168,8 @@ func Site(p *protocol.Protocol) doc.Table {
 	if s := p.Site; s != nil {
 		place := ""
 		if s.Latitude != nil && s.Longitude != nil {
-			place = fmt.Sprintf("%s°, %s°", num.Fixed(*s.Latitude, 4), num.Fixed(*s.Longitude, 4))
+			d := Places([]float64{*s.Latitude, *s.Longitude})
+			place = fmt.Sprintf("%s°, %s°", num.Fixed(*s.Latitude, d), num.Fixed(*s.Longitude, d))
 		}
 		rows = append(rows, [2]string{"Site", s.Name}, [2]string{"Latitude, longitude", place}, [2]string{"Soil", s.Soil}, [2]string{"Season", s.Season},
 			[2]string{"Previous crop", s.PreviousCrop}, [2]string{"Weather", s.Weather})
