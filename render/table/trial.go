@@ -761,7 +761,7 @@ func AnalysisPlan(p *protocol.Protocol) doc.Table {
 	rows := [][2]string{
 		{"Level of significance", number(a.Alpha)},
 		{"Tendency up to", given("analysis.tendency", number(a.Tendency))},
-		{"Comparison of means", a.Comparison},
+		{"Comparison of means", prose.Method(a.Comparison)},
 		{"Side", given("analysis.side", a.Side)},
 		{"Pairs of interactions", given("analysis.pairs", a.Pairs)},
 		{"Letters", given("analysis.letters", a.Letters)},
