@@ -352,6 +352,7 @@ func (a *analyst) fitLeastSquares(unbalanced error) *refusal {
 	ls.ms = a.quiet(ls.fit.MS())
 	a.model, a.ls = ls, ls
 	a.whyLeastSquares(unbalanced, nuisance)
+	a.withinLarger(nuisance)
 	a.leastSquaresTable(m, nuisanceUnits, adjustment, hypothesis)
 	return nil
 }
@@ -393,6 +394,23 @@ func (a *analyst) strataLeaveError(order int) bool {
 		}
 	}
 	return true
+}
+
+// withinLarger notes larger units that have no line of their own, since what lies between
+// them is held by the units within them. Where several kinds of unit lie within one, none
+// of their lines shows it, and the degrees of freedom do not add up to the total.
+func (a *analyst) withinLarger(nuisance []int) {
+	for _, u := range a.at.units() {
+		var within []int
+		for _, v := range nuisance {
+			if v != u && a.plan.Coarse(v, u) != nil {
+				within = append(within, v)
+			}
+		}
+		if u != a.bottom && len(within) > 0 && a.plan.Units[u].N > 1 {
+			a.note("no-own-line", "", prose.NoOwnLine(a.plan, u, within))
+		}
+	}
 }
 
 func (a *analyst) linearRefusal(err error) *refusal {

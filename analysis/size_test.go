@@ -112,8 +112,8 @@ func TestWindow(t *testing.T) {
 		df    int
 		want  string
 	}{
-		{strings.Replace(sizePens, "16", "24", 1), 20, "lie in the window"}, {blocks, 15, "lie in the window"},
-		{strings.Replace(blocks, "count = 6", "count = 4", 1), 9, "below the window"}, {strings.Replace(sizePens, "16", "28", 1), 24, "above the window"},
+		{strings.Replace(sizePens, "16", "24", 1), 20, ", in the window"}, {blocks, 15, ", in the window"},
+		{strings.Replace(blocks, "count = 6", "count = 4", 1), 9, ", below the window"}, {strings.Replace(sizePens, "16", "28", 1), 24, ", above the window"},
 	} {
 		s, _ := sized(t, four(tt.units, ""))
 		if s.ErrorDF == nil || *s.ErrorDF != tt.df || !strings.Contains(prose.Window(*s.ErrorDF), tt.want) {

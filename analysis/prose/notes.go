@@ -320,3 +320,16 @@ func ComparisonRefused(p *layout.Plan, term, method string, unequal bool) string
 	}
 	return fmt.Sprintf("%s was not carried out for %s: %s.", upperFirst(Method(method)), TermText(p, term), why)
 }
+
+// NoOwnLine says why a larger unit has no line in a table of least squares.
+func NoOwnLine(p *layout.Plan, unit int, within []int) string {
+	name := Plural(UnitName(&p.Units[unit]))
+	var names []string
+	for _, w := range within {
+		names = append(names, Plural(UnitName(&p.Units[w])))
+	}
+	if len(within) == 1 {
+		return fmt.Sprintf("Differences between %s are part of the line of %s.", name, names[0])
+	}
+	return fmt.Sprintf("Differences between %s are removed with %s together and stand in no line, so that degrees of freedom do not add up to the total.", name, And(names))
+}

@@ -148,7 +148,7 @@ func SizeTransformed(transform string) string {
 
 // SizeFirstTerm says which term was taken where none is named.
 func SizeFirstTerm(p *layout.Plan, term string) string {
-	return fmt.Sprintf("%s names no term; the first, %s, was taken.", upperFirst("[sample_size]"), TermText(p, term))
+	return fmt.Sprintf("The protocol names no term for the size; the first, %s, was taken.", TermText(p, term))
 }
 
 // SizeGroupsInside says that a single correlation does not tell the spread of a unit that
@@ -494,11 +494,11 @@ func sidesText(sides int) string {
 func Window(df int) string {
 	switch {
 	case df < 10:
-		return fmt.Sprintf("%s degrees of freedom for the error are below the window of 10 to 20 that Mead (1988) advises: the error would be poorly known.", upperFirst(small(df)))
+		return fmt.Sprintf("The error has %s degrees of freedom, below the window of 10 to 20 that Mead (1988) advises: it would be poorly known.", small(df))
 	case df > 20:
-		return fmt.Sprintf("%s degrees of freedom for the error are above the window of 10 to 20 that Mead (1988) advises: fewer units, or more questions asked of them, may do if the wished power allows.", num.Count(df))
+		return fmt.Sprintf("The error has %s degrees of freedom, above the window of 10 to 20 that Mead (1988) advises: fewer units, or more questions asked of them, may do if the wished power allows.", num.Count(df))
 	}
-	return fmt.Sprintf("%s degrees of freedom for the error lie in the window of 10 to 20 that Mead (1988) advises.", upperFirst(small(df)))
+	return fmt.Sprintf("The error has %s degrees of freedom, in the window of 10 to 20 that Mead (1988) advises.", small(df))
 }
 
 // SizeNotes lists the notes of a size.

@@ -386,7 +386,7 @@ func (p Spread) Draw() (*doc.Picture, string) {
 	w, h := p.resolve(250)
 	c := newCanvas(w, h)
 	y := logarithmic("Standard deviation (log scale)", wide(ys), h-45, false)
-	x := logarithmic("Mean of "+title(p.Response, "the response")+" (log scale)", wide(xs), across(w, 1, y), true)
+	x := logarithmic(title(p.Response, "Response")+", mean (log scale)", wide(xs), across(w, 1, y), true)
 	f := newFrame(c, x, y, insets{})
 	f.scatter(points, n, f.straight(p.Intercept, p.Slope))
 	return f.pic, b.String()

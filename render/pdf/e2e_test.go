@@ -102,7 +102,7 @@ func TestPDFA(t *testing.T) {
 	var path []string
 	for _, j := range []string{"pdfbox2", "preflight", "xmpbox", "fontbox2", "commons-logging", "commons-io", "javax.activation", "jaxb-api"} {
 		if _, err := os.Stat(jars + j + ".jar"); err != nil {
-			t.Skip("PDFBox is not there: apt-get install libpdfbox2-java libcommons-logging-java libcommons-io-java libactivation-java libjaxb-api-java")
+			t.Fatal("PDFBox is not there: apt-get install libpdfbox2-java libcommons-logging-java libcommons-io-java libactivation-java libjaxb-api-java")
 		}
 		path = append(path, jars+j+".jar")
 	}
