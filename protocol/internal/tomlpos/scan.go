@@ -315,10 +315,10 @@ func (s *scanner) text() {
 			return
 		case bytes.HasPrefix(s.src[s.i:], []byte{q, q, q}):
 			s.i = min(s.i+3, len(s.src))
-			for range 2 { // up to two quotes may stand before the closing three
-				if s.peek() == q {
-					s.step()
-				}
+			// The closing three are the last of the run: up to two quotes may stand
+			// before them, and the decoder takes a third after a backslash.
+			for s.peek() == q {
+				s.step()
 			}
 			return
 		default:

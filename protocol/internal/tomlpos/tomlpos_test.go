@@ -375,6 +375,7 @@ func FuzzScan(f *testing.F) {
 	f.Add(sample)
 	f.Add("a = [[1], [2, { b = 3 }]]\n[c.d]\n[[c.e]]\n")
 	f.Add("a = \"\"\"x\"\"\"\"\"\n'b' = '''\n'''")
+	f.Add("a = \"\"\"x\\\\\"\"\"\"\"\"")
 	f.Fuzz(func(t *testing.T, src string) {
 		doc, err := Scan("f", []byte(src))
 		if err != nil && err.(*LimitError).Offset > len(src) {
