@@ -853,6 +853,10 @@ func (t *table) report() Report {
 	}
 	if sub, names := t.free("narrative", "places of the report and files"); sub != nil {
 		for _, n := range names {
+			if !slices.Contains(NarrativePlaces(), n) {
+				sub.fail(n, UnknownName, t.d.suggest(n, NarrativePlaces()), "the report has no place %s for a narrative", quote(n))
+				continue
+			}
 			if f := sub.file(n); f != "" {
 				sub.read(n, f)
 				r.Narrative = append(r.Narrative, NarrativePart{Place: n, File: f})

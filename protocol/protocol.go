@@ -463,5 +463,12 @@ type Report struct {
 	Decimals  string
 }
 
-// NarrativePart is a file that the author brings for a place of the report.
+// NarrativePart is a file that the author brings for a place of the report, which is one
+// of NarrativePlaces.
 type NarrativePart struct{ Place, File string }
+
+// NarrativePlaces are the places of a report that an author may write for, in the order
+// in which they are read. A summary and an abstract stand at the same place.
+func NarrativePlaces() []string {
+	return []string{"summary", "abstract", "introduction", "methods", "results", "discussion", "conclusion", "acknowledgements"}
+}
