@@ -2,6 +2,7 @@ package page
 
 import (
 	"fmt"
+	"slices"
 	"strings"
 
 	"penwright/protocol/diag"
@@ -91,11 +92,14 @@ type setter struct {
 	entries       []entry
 	headings      int // met so far
 	notes         [][]box
+	noteElements  []*Element         // by number of the footnote, from 0
+	calls         map[int][]*Element // the links that call a footnote, by its number
 	root          *Element
+	made          int // elements so far
 }
 
 func newSetter(d *doc.Document) *setter {
-	s := &setter{doc: d, lacking: map[lack]bool{}, root: &Element{Role: Section}}
+	s := &setter{doc: d, lacking: map[lack]bool{}, calls: map[int][]*Element{}, root: &Element{Role: Section}}
 	s.width, s.height = paper(d.Paper)
 	s.measure = s.width - 2*marginSide
 	s.collect(d.Blocks, 0)
@@ -183,20 +187,47 @@ func baseline(st style, lead float64) float64 {
 	return (lead+f.Ascent(st.size)-f.Descent(st.size))/2 - 0.02*st.size
 }
 
-// enclose puts ops between the marks of their element; links stand outside, since they
-// are no ink.
+// element makes an element that comes after those made before.
+func (s *setter) element(e Element) *Element {
+	s.made++
+	e.Order = s.made
+	return &e
+}
+
+// enclose puts ops between the marks of their element, but for what already stands
+// between marks of its own, as the text of links, which becomes a part of it. The
+// rectangles of links stand outside, since they are no ink.
 func enclose(el *Element, ops []Op) []Op {
 	if len(ops) == 0 {
 		return nil
 	}
 	out := make([]Op, 0, len(ops)+2)
-	out = append(out, Begin{el})
+	open, own := false, false
 	for _, o := range ops {
-		if _, ok := o.(Link); !ok {
-			out = append(out, o)
+		switch o := o.(type) {
+		case Link:
+			continue
+		case Begin:
+			if open {
+				out = append(out, End{})
+			}
+			open, own = false, true
+			if o.Element.Parent == nil {
+				o.Element.Parent = el
+			}
+		case End:
+			own = false
+		default:
+			if !open && !own {
+				out = append(out, Begin{el})
+				open = true
+			}
 		}
+		out = append(out, o)
 	}
-	out = append(out, End{})
+	if open {
+		out = append(out, End{})
+	}
 	for _, o := range ops {
 		if _, ok := o.(Link); ok {
 			out = append(out, o)
@@ -215,7 +246,7 @@ func (s *setter) title() []item {
 	w := s.top()
 	var boxes []box
 	if d.Title != "" {
-		el := &Element{Role: Title, Parent: s.root}
+		el := s.element(Element{Role: Title, Parent: s.root})
 		st := bold(sans(19))
 		boxes = append(boxes, lineBoxes(ragged(s.plainAtoms(d.Title, st), w.width), st, 23, w, 0, el)...)
 	}
@@ -226,7 +257,7 @@ func (s *setter) title() []item {
 		}
 	}
 	if len(parts) > 0 {
-		el := &Element{Role: Paragraph, Parent: s.root}
+		el := s.element(Element{Role: Paragraph, Parent: s.root})
 		st := in(grey, sans(9))
 		lines := lineBoxes(ragged(s.plainAtoms(strings.Join(parts, "  ·  "), st), w.width), st, 12.5, w, 0, el)
 		space(lines, 5, 0)
@@ -329,7 +360,7 @@ func (s *setter) block(b doc.Block, w where) []box {
 		return s.heading(b, w)
 	case doc.Paragraph:
 		st := serif(w.size)
-		el := &Element{Role: Paragraph, Parent: w.parent}
+		el := s.element(Element{Role: Paragraph, Parent: w.parent})
 		lines := lineBoxes(justified(s.atoms(b.Text, st, s.at(b.Pos, w)), w.width), st, w.lead, w, w.x, el)
 		if len(lines) > 0 {
 			lines[0].gap = paragraphGap
@@ -339,7 +370,7 @@ func (s *setter) block(b doc.Block, w where) []box {
 		return s.list(b, w)
 	case doc.Quote:
 		in := w
-		in.parent = &Element{Role: Quote, Parent: w.parent}
+		in.parent = s.element(Element{Role: Quote, Parent: w.parent})
 		step := min(quoteStep, w.width/6)
 		in.x, in.width = w.x+step, w.width-2*step
 		in.size, in.lead = w.size-0.5, w.lead-0.75
@@ -359,7 +390,8 @@ func (s *setter) block(b doc.Block, w where) []box {
 	case doc.Table:
 		return s.table(b, w).boxes
 	case doc.Figure:
-		return s.figure(b, w, s.pageHeight(false))
+		el, caption := s.figureElements(b, w)
+		return s.setFigure(b, w, s.pageHeight(false), el, caption)
 	default:
 		panic("page: unknown block")
 	}
@@ -392,7 +424,7 @@ func (s *setter) heading(h doc.Heading, w where) []box {
 	if h.Number != "" {
 		text = append([]doc.Inline{doc.Text{Text: h.Number + "\u2002"}}, text...)
 	}
-	el := &Element{Role: Heading, Level: level, Parent: w.parent}
+	el := s.element(Element{Role: Heading, Level: level, Parent: w.parent})
 	boxes := lineBoxes(ragged(s.atoms(text, st, s.at(h.Pos, w)), w.width), st, look.lead, w, w.x, el)
 	if len(boxes) == 0 {
 		boxes = []box{{within: w.within}}
@@ -416,21 +448,22 @@ func (s *setter) heading(h doc.Heading, w where) []box {
 
 func (s *setter) list(l doc.List, w where) []box {
 	var boxes []box
-	el := &Element{Role: List, Parent: w.parent}
+	el := s.element(Element{Role: List, Ordered: l.Ordered, Parent: w.parent})
 	step := min(listStep, w.width/5)
 	if l.Ordered {
 		last := textWidth(fmt.Sprintf("%d.", l.Start+len(l.Items)), serif(w.size))
 		step = min(max(step, last+6), w.width/2)
 	}
 	for i, content := range l.Items {
-		it := &Element{Role: Item, Parent: el}
+		it := s.element(Element{Role: Item, Parent: el})
 		in := w
 		in.x, in.width = w.x+step, w.width-step
-		in.parent = &Element{Role: ItemBody, Parent: it}
+		label := s.element(Element{Role: ItemLabel, Parent: it})
+		in.parent = s.element(Element{Role: ItemBody, Parent: it})
 		in.bullets++
-		label := []string{"•", "–", "◦"}[w.bullets%3]
+		sign := []string{"•", "–", "◦"}[w.bullets%3]
 		if l.Ordered {
-			label = fmt.Sprintf("%d.", l.Start+i)
+			sign = fmt.Sprintf("%d.", l.Start+i)
 		}
 		inner := s.blocks(content, in)
 		if len(inner) == 0 {
@@ -445,8 +478,7 @@ func (s *setter) list(l doc.List, w where) []box {
 		}
 		st := serif(w.size)
 		right := w.x + step - 6
-		mark := lineBoxes(ragged(s.plainAtoms(label, st), w.width), st, w.lead, w,
-			right-textWidth(label, st), &Element{Role: ItemLabel, Parent: it})
+		mark := lineBoxes(ragged(s.plainAtoms(sign, st), w.width), st, w.lead, w, right-textWidth(sign, st), label)
 		if len(mark) > 0 {
 			inner[0].ops = append(mark[0].ops, inner[0].ops...)
 		}
@@ -457,7 +489,7 @@ func (s *setter) list(l doc.List, w where) []box {
 
 func (s *setter) code(c doc.Code, w where) []box {
 	st := style{family: face.Mono, size: codeSize, colour: ink, code: true}
-	el := &Element{Role: Code, Parent: w.parent}
+	el := s.element(Element{Role: Code, Parent: w.parent})
 	const pad = 6
 	advance := float64(face.Get(face.Mono, false, false).Advance('m')) * codeSize / 1000
 	most := max(int((w.width-2*pad)/advance), 8)
@@ -553,11 +585,11 @@ func (s *setter) aside(a doc.Aside, w where) []box {
 		)
 	}})
 	in.x, in.width = w.x+padX, w.width-2*padX
-	in.parent = &Element{Role: Aside, Parent: w.parent}
+	in.parent = s.element(Element{Role: Aside, Parent: w.parent})
 	var boxes []box
 	if len(a.Title) > 0 {
 		st := bold(sans(9))
-		el := &Element{Role: Paragraph, Parent: in.parent}
+		el := s.element(Element{Role: Paragraph, Parent: in.parent})
 		boxes = lineBoxes(ragged(s.atoms(a.Title, st, w.pos), in.width), st, 12.5, in, in.x, el)
 		for i := range boxes {
 			boxes[i].keep = true
@@ -592,11 +624,11 @@ func (s *setter) contents(w where) []box {
 	if n > 45 {
 		deep = 2
 	}
-	parent := &Element{Role: Contents, Parent: w.parent}
+	title := s.element(Element{Role: Paragraph, Parent: w.parent})
+	parent := s.element(Element{Role: Contents, Parent: w.parent})
 	var boxes []box
 	st := bold(sans(headings[2].size))
-	head := lineBoxes(ragged(s.plainAtoms("Contents", st), w.width), st, headings[2].lead, w, w.x,
-		&Element{Role: Paragraph, Parent: parent})
+	head := lineBoxes(ragged(s.plainAtoms("Contents", st), w.width), st, headings[2].lead, w, w.x, title)
 	space(head, 14, 4)
 	for i := range head {
 		head[i].keep = true
@@ -615,12 +647,16 @@ func (s *setter) contents(w where) []box {
 		if number != "" {
 			numberWidth = max(22, textWidth(number, st)+7)
 		}
-		el := &Element{Role: ContentsEntry, Parent: parent}
+		el := s.element(Element{Role: ContentsEntry, Parent: parent})
 		x := w.x + indent
 		avail := max(w.width-(x-w.x)-numberWidth-34, 40)
 		link := st
 		link.link = "#" + e.anchor
-		lines := lineBoxes(ragged(s.atoms(e.text, link, w.pos), avail), st, w.lead, w, x+numberWidth, el)
+		link.target = &Element{Role: Linked, Alt: e.title}
+		// A space before the number of the page, and after that of the heading, for those
+		// who copy the text.
+		text := append(slices.Clone(e.text), doc.Text{Text: " "})
+		lines := lineBoxes(ragged(s.atoms(text, link, w.pos), avail), st, w.lead, w, x+numberWidth, el)
 		if len(lines) == 0 {
 			continue
 		}
@@ -628,7 +664,7 @@ func (s *setter) contents(w where) []box {
 			lines[i].notes = nil // a note belongs to the heading itself
 		}
 		if number != "" {
-			label := lineBoxes(ragged(s.plainAtoms(number, st), w.width), st, w.lead, w, x, el)
+			label := lineBoxes(ragged(s.plainAtoms(number+" ", st), w.width), st, w.lead, w, x, el)
 			if len(label) > 0 {
 				lines[0].ops = append(label[0].ops, lines[0].ops...)
 			}
@@ -638,7 +674,7 @@ func (s *setter) contents(w where) []box {
 		if e.level > 1 {
 			at = serif(w.size)
 		}
-		at.link = link.link
+		at.link, at.target = link.link, link.target
 		lines[len(lines)-1].pageOf = &pageOf{anchor: e.anchor, right: w.x + w.width, y: baseline(st, w.lead), style: at, element: el}
 		boxes = append(boxes, lines...)
 	}
@@ -669,25 +705,38 @@ func (s *setter) caption(label, number string, text []doc.Inline, w where, pos d
 }
 
 func (s *setter) figureItem(f doc.Figure, w where) item {
-	return item{
-		boxes:  s.figure(f, w, s.pageHeight(false)),
-		figure: func(highest float64) []box { return s.figure(f, w, highest) },
-	}
+	// However often it is set, it is one element.
+	el, caption := s.figureElements(f, w)
+	set := func(highest float64) []box { return s.setFigure(f, w, highest, el, caption) }
+	return item{boxes: set(s.pageHeight(false)), figure: set}
 }
 
-// figure sets a picture no wider than the column with its caption below, together no
+// figureElements makes the elements of a picture and of its caption.
+func (s *setter) figureElements(f doc.Figure, w where) (picture, caption *Element) {
+	alt := firstOf(f.Alt, plain(f.Caption, 0), "Figure "+f.Number)
+	picture = s.element(Element{Role: Figure, Alt: alt, Parent: w.parent})
+	if !drawable(f.Picture) {
+		picture.Role, picture.Alt = Paragraph, ""
+	}
+	return picture, s.element(Element{Role: Caption, Parent: w.parent})
+}
+
+func drawable(pic *doc.Picture) bool {
+	return pic != nil && pic.Width > 0 && pic.Height > 0 && finite(pic.Width) && finite(pic.Height)
+}
+
+// setFigure sets a picture no wider than the column with its caption below, together no
 // higher than a limit.
-func (s *setter) figure(f doc.Figure, w where, highest float64) []box {
+func (s *setter) setFigure(f doc.Figure, w where, highest float64, el, captionElement *Element) []box {
 	pos := s.at(f.Pos, w)
-	el := &Element{Role: Figure, Alt: f.Alt, Parent: w.parent}
-	caption := s.caption("Figure", f.Number, f.Caption, w, pos, &Element{Role: Caption, Parent: w.parent})
+	caption := s.caption("Figure", f.Number, f.Caption, w, pos, captionElement)
 	below := 0.0
 	for _, b := range caption {
 		below += b.height
 	}
 	pic := f.Picture
 	picture := box{gap: floatGap, keep: true, within: w.within}
-	if pic != nil && pic.Width > 0 && pic.Height > 0 && finite(pic.Width) && finite(pic.Height) {
+	if drawable(pic) {
 		room := max(highest-below-floatGap-7, 40)
 		scale := min(1, w.width/pic.Width, room/pic.Height)
 		picture.height = pic.Height * scale
@@ -740,7 +789,9 @@ func (s *setter) layNotes() {
 	for i, blocks := range s.doc.Notes {
 		label := fmt.Sprint(i + 1)
 		st := serif(noteSize)
-		el := &Element{Role: Note, Parent: s.root}
+		el := s.element(Element{Role: Note, Parent: s.root})
+		s.noteElements = append(s.noteElements, el)
+		number := s.element(Element{Role: NoteLabel, Parent: el})
 		hang := 12.0
 		if i >= 99 {
 			hang = 18
@@ -752,13 +803,49 @@ func (s *setter) layNotes() {
 		}
 		boxes[0].gap = 2
 		mark := raised(st, raise)
-		l := lineBoxes(ragged(s.plainAtoms(label, mark), s.measure), st, noteLead, w, 0, el)
+		l := lineBoxes(ragged(s.plainAtoms(label, mark), s.measure), st, noteLead, w, 0, number)
 		if len(l) > 0 {
 			boxes[0].ops = append(l[0].ops, boxes[0].ops...)
 		}
 		boxes[0].anchors = append(boxes[0].anchors, anchor{id: noteAnchor(i + 1)[1:]})
 		s.notes = append(s.notes, boxes)
 	}
+}
+
+// seat gives the element of footnote n, from 1, its place in the reading order: behind
+// the paragraph, heading or table that calls it first.
+func (s *setter) seat(n int) {
+	for _, call := range s.calls[n] {
+		block, ok := caller(call.Parent)
+		if ok {
+			note := s.noteElements[n-1]
+			note.Parent, note.Order = block.Parent, block.Order
+			return
+		}
+	}
+}
+
+// caller is the block that an element with a call in it belongs to; ok is false for a
+// heading as the contents show it, and for what was measured but never set.
+func caller(e *Element) (block *Element, ok bool) {
+	for ; e != nil && e.Parent != nil; e = e.Parent {
+		switch e.Role {
+		case ContentsEntry:
+			return nil, false
+		case Paragraph, Heading, Caption, Table:
+			block = e
+			if e.Role == Caption && e.Parent.Role == Table {
+				block = e.Parent
+			}
+			for up := block.Parent; up != nil; up = up.Parent {
+				if up.Role == Note {
+					block = up // a note called in a note comes behind that
+				}
+			}
+			return block, true
+		}
+	}
+	return nil, false
 }
 
 // pageHeight is the height of the text on a page.

@@ -20,6 +20,7 @@ type frag struct {
 	width      float64
 	colour     doc.Colour
 	link       string
+	target     *Element // what the link reads
 	actual     string
 }
 
@@ -100,14 +101,14 @@ func (w *words) inlines(text []doc.Inline, st style, depth int) {
 			w.text(n.Text, in)
 		case doc.Link:
 			in := st
-			in.link = n.Dest
+			in.link, in.target = n.Dest, &Element{Role: Linked, Alt: plain(n.Text, depth)}
 			if !strings.HasPrefix(n.Dest, "#") {
 				in.colour = blue
 			}
 			w.inlines(n.Text, in, depth+1)
 		case doc.Ref:
 			in := st
-			in.link = "#" + n.ID
+			in.link, in.target = "#"+n.ID, &Element{Role: Linked, Alt: n.Text}
 			w.text(strings.ReplaceAll(n.Text, " ", "\u00A0"), in)
 		case doc.FootnoteRef:
 			w.note(n.N, st)
@@ -129,7 +130,8 @@ func raised(st style, rise float64) style {
 
 func (w *words) note(n int, st style) {
 	in := raised(st, raise)
-	in.link = noteAnchor(n)
+	in.link, in.target = noteAnchor(n), &Element{Role: Linked, Alt: fmt.Sprintf("footnote %d", n)}
+	w.set.calls[n] = append(w.set.calls[n], in.target)
 	in.italic = false
 	if n := len(w.cur.frags); n > 0 && w.cur.frags[n-1].rise != 0 {
 		w.add("\u2009", st) // a raised figure before it is no part of the number
@@ -308,7 +310,7 @@ func (w *words) piece(s string, st style) {
 	}
 	for _, run := range runs {
 		fr := frag{
-			face: run.Face, text: run.Text, size: st.size, rise: st.rise, colour: st.colour, link: st.link,
+			face: run.Face, text: run.Text, size: st.size, rise: st.rise, colour: st.colour, link: st.link, target: st.target,
 			width: run.Face.Width(run.Text, st.size),
 		}
 		if len(runs) == 1 {

@@ -227,8 +227,8 @@ type pen struct {
 	links  []Link
 	text   []byte
 	cur    frag
-	linked string // where the piece before led to
-	closed bool   // the piece takes no more text
+	linked *Element // the link that the piece before belongs to
+	closed bool     // the piece takes no more text
 	start  float64
 	x      float64
 }
@@ -243,8 +243,14 @@ func (l line) draw(x, y float64) []Op {
 		for _, f := range a.frags {
 			p.put(f, y, l.space)
 		}
-		if i < len(l.atoms)-1 && a.glue > 0 {
+		switch {
+		case i < len(l.atoms)-1 && a.glue > 0:
 			p.space(a.glue, l.space)
+		case i == len(l.atoms)-1 && (a.glue > 0 || a.forced) && len(p.text) > 0:
+			p.text = append(p.text, ' ') // who copies the text has a word end here
+			if p.cur.actual != "" {
+				p.cur.actual += " "
+			}
 		}
 	}
 	p.flush(y, l.space)
@@ -256,7 +262,7 @@ func (l line) draw(x, y float64) []Op {
 
 func (p *pen) put(f frag, y, space float64) {
 	joins := !p.closed && p.cur.face == f.face && p.cur.size == f.size && p.cur.rise == f.rise &&
-		p.cur.colour == f.colour && p.cur.actual == "" && f.actual == ""
+		p.cur.colour == f.colour && p.cur.target == f.target && p.cur.actual == "" && f.actual == ""
 	if !joins {
 		p.flush(y, space)
 		p.start, p.cur = p.x, f
@@ -265,18 +271,18 @@ func (p *pen) put(f frag, y, space float64) {
 	if f.link != "" {
 		p.link(f, y)
 	}
-	p.linked = f.link
+	p.linked = f.target
 	p.x += f.width
 }
 
 // link widens the rectangle of the link before where it is the same one.
 func (p *pen) link(f frag, y float64) {
-	if n := len(p.links); n > 0 && p.linked == f.link {
+	if n := len(p.links); n > 0 && p.linked == f.target {
 		p.links[n-1].Width = p.x + f.width - p.links[n-1].X
 		return
 	}
 	p.links = append(p.links, Link{
-		X: p.x, Y: y - 0.8*f.size - f.rise, Width: f.width, Height: 1.05 * f.size, Dest: f.link,
+		X: p.x, Y: y - 0.8*f.size - f.rise, Width: f.width, Height: 1.05 * f.size, Dest: f.link, Element: f.target,
 	})
 }
 
@@ -297,10 +303,15 @@ func (p *pen) space(glue, extra float64) {
 
 func (p *pen) flush(y, space float64) {
 	if len(p.text) > 0 {
-		p.ops = append(p.ops, Text{
+		set := Text{
 			X: p.start, Y: y - p.cur.rise, Face: p.cur.face, Size: p.cur.size, Colour: p.cur.colour,
 			Text: string(p.text), Space: space, Actual: p.cur.actual,
-		})
+		}
+		if p.cur.target != nil {
+			p.ops = append(p.ops, Begin{p.cur.target}, set, End{})
+		} else {
+			p.ops = append(p.ops, set)
+		}
 	}
 	p.text, p.cur, p.closed = p.text[:0], frag{}, false
 }

@@ -70,13 +70,16 @@ type Picture struct {
 }
 
 // Link makes a rectangle lead to a URL, or to an anchor when Dest begins with "#".
+// Element is the Linked element whose text it covers, if it is known.
 type Link struct {
 	X, Y, Width, Height float64
 	Dest                string
+	Element             *Element
 }
 
 // Begin and End enclose the operations of one element. They do not nest: what an
-// element is part of stands in the element.
+// element is part of stands in the element. With nothing between them they tell that
+// there is such an element, as an empty cell.
 type (
 	Begin struct{ Element *Element }
 	End   struct{}
@@ -92,10 +95,12 @@ func (End) op()     {}
 // Role is what an element is in the structure of the document.
 type Role int
 
-// The roles. Artifact is what is no part of the text: rules, running heads, the heads
-// of a table repeated on its further pages.
+// The roles. Artifact is what is no part of the text: rules, the heads of a table
+// repeated on its further pages; so are running heads and feet.
 const (
 	Artifact Role = iota
+	RunningHead
+	RunningFoot
 	Section
 	Title
 	Heading
@@ -116,15 +121,22 @@ const (
 	Figure
 	Caption
 	Note
+	NoteLabel
+	Linked // what a link reads
 )
 
 // Element is a node of the structure. The same Element may appear on several pages.
 type Element struct {
-	Role   Role
-	Level  int    // of a heading
-	Span   int    // columns that a cell covers; 0 means one
-	Alt    string // a figure in words
-	Parent *Element
+	Role    Role
+	Level   int    // of a heading
+	Span    int    // columns that a cell covers; 0 means one
+	Row     bool   // of a head cell: it names its row, not its column
+	Ordered bool   // of a list: its items are numbered
+	Alt     string // a figure, or where a link leads, in words
+	Parent  *Element
+	// Order is the place among the parts of Parent in reading order, which that on the
+	// pages is not where figures float. 0 means behind the part before it on the pages.
+	Order int
 }
 
 // Lay lays d out on the paper it names. The diagnostics tell of runes that no face

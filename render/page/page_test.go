@@ -419,7 +419,7 @@ func TestContents(t *testing.T) {
 		case page.Begin:
 			el = o.Element
 		case page.Text:
-			if el.Role == page.ContentsEntry && o.X > 500 {
+			if el.Role == page.Linked && el.Parent.Role == page.ContentsEntry && o.X > 500 {
 				got = append(got, o.Text)
 			}
 		}

@@ -240,6 +240,7 @@ func (p *pager) call(n int) {
 		return
 	}
 	p.called[n] = true
+	p.s.seat(n)
 	boxes := p.s.notes[n-1]
 	for i := range boxes {
 		p.carry = append(p.carry, &boxes[i])
@@ -458,7 +459,7 @@ func (p *pager) running(pg *Page, i, n int) {
 	d := p.s.doc
 	st := in(grey, sans(7.5))
 	right := pg.Width - marginSide
-	set := func(text string, x, y float64, rightAligned bool) {
+	set := func(role Role, text string, x, y float64, rightAligned bool) {
 		text, _ = face.Clean(text)
 		room := pg.Width - 2*marginSide
 		atoms := p.s.plainAtoms(text, st)
@@ -472,7 +473,7 @@ func (p *pager) running(pg *Page, i, n int) {
 		if rightAligned {
 			x -= math.Min(l.width, room)
 		}
-		pg.Ops = append(pg.Ops, artifact(l.draw(x, y)...)...)
+		pg.Ops = append(pg.Ops, enclose(&Element{Role: role}, l.draw(x, y))...)
 	}
 	if i > 0 {
 		var parts []string
@@ -483,17 +484,17 @@ func (p *pager) running(pg *Page, i, n int) {
 		}
 		status := p.s.shorten(d.Status, st, (right-marginSide)*0.3)
 		head := p.s.shorten(strings.Join(parts, "  ·  "), st, (right-marginSide)*0.65)
-		set(head, marginSide, headBaseline, false)
-		set(status, right, headBaseline, true)
+		set(RunningHead, head, marginSide, headBaseline, false)
+		set(RunningHead, status, right, headBaseline, true)
 		if head != "" || status != "" {
-			pg.Ops = append(pg.Ops, artifact(Box{X: marginSide, Y: headBaseline + 5, Width: right - marginSide, Height: hair, Colour: faint})...)
+			pg.Ops = append(pg.Ops, enclose(&Element{Role: RunningHead}, []Op{Box{X: marginSide, Y: headBaseline + 5, Width: right - marginSide, Height: hair, Colour: faint}})...)
 		}
 	}
 	y := pg.Height - footBaseline
 	if d.Fingerprint != "" {
-		set(p.s.shorten("Fingerprint "+d.Fingerprint, st, (right-marginSide)*0.65), marginSide, y, false)
+		set(RunningFoot, p.s.shorten("Fingerprint "+d.Fingerprint, st, (right-marginSide)*0.65), marginSide, y, false)
 	}
-	set(fmt.Sprintf("page %d of %d", i+1, n), right, y, true)
+	set(RunningFoot, fmt.Sprintf("page %d of %d", i+1, n), right, y, true)
 }
 
 func firstOf(list ...string) string {

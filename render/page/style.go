@@ -75,6 +75,7 @@ type style struct {
 	size, rise   float64
 	colour       doc.Colour
 	link         string
+	target       *Element // what the link reads
 	code         bool
 	actual       string
 }

@@ -382,7 +382,7 @@ func scaled(atoms []atom, k float64) []atom {
 
 // setTable makes the boxes of a table: caption, head, rows, notes.
 func (s *setter) setTable(t doc.Table, g *grid, f form, w where, pos diag.Pos) []box {
-	el := &Element{Role: Table, Parent: w.parent}
+	el := s.element(Element{Role: Table, Parent: w.parent})
 	boxes := s.caption("Table", t.Number, t.Caption, w, pos, &Element{Role: Caption, Parent: el})
 	for i := range boxes {
 		boxes[i].keep = true
@@ -395,7 +395,7 @@ func (s *setter) setTable(t doc.Table, g *grid, f form, w where, pos diag.Pos) [
 		}
 		boxes = append(boxes, rows...)
 	}
-	notes := s.tableNotes(t, w, pos, el)
+	notes := s.tableNotes(t, w, pos)
 	if n := len(boxes); n > 0 && len(notes) > 0 {
 		boxes[n-1].keep = true
 	}
@@ -413,11 +413,11 @@ func (s *setter) setTable(t doc.Table, g *grid, f form, w where, pos diag.Pos) [
 	return boxes
 }
 
-func (s *setter) tableNotes(t doc.Table, w where, pos diag.Pos, el *Element) []box {
+func (s *setter) tableNotes(t doc.Table, w where, pos diag.Pos) []box {
 	var boxes []box
 	st := sans(tableNoteSize)
 	for i, n := range t.Notes {
-		note := lineBoxes(ragged(s.atoms(n, st, pos), w.width), st, tableNoteSize*1.3, w, w.x, &Element{Role: Note, Parent: el})
+		note := lineBoxes(ragged(s.atoms(n, st, pos), w.width), st, tableNoteSize*1.3, w, w.x, s.element(Element{Role: Paragraph, Parent: w.parent}))
 		if len(note) > 0 {
 			note[0].gap = 1
 			if i == 0 {
@@ -573,7 +573,7 @@ func (g *grid) rowBoxes(r row, f form, lead float64, w where, table *Element, ta
 		if r.head || g.columns[c.cell.col].Key {
 			role = HeadCell
 		}
-		ce := &Element{Role: role, Parent: el}
+		ce := &Element{Role: role, Row: role == HeadCell && !r.head, Parent: el}
 		if c.cell.span > 1 {
 			ce.Span = c.cell.span
 		}
@@ -593,6 +593,17 @@ func (g *grid) rowBoxes(r row, f form, lead float64, w where, table *Element, ta
 			b.ops = append(b.ops, enclose(ce, l.draw(x, y))...)
 			b.notes = append(b.notes, l.notes()...)
 		}
+		if len(c.lines) == 0 {
+			boxes[0].ops = append(boxes[0].ops, Begin{ce}, End{})
+		}
+	}
+	// Every row has as many cells as the table has columns.
+	have := 0
+	if n := len(r.cells); n > 0 {
+		have = r.cells[n-1].col + r.cells[n-1].span
+	}
+	if lack := len(g.columns) - have; lack > 0 {
+		boxes[0].ops = append(boxes[0].ops, Begin{&Element{Role: Cell, Span: lack, Parent: el}}, End{})
 	}
 	return boxes
 }
