@@ -663,6 +663,14 @@ func (t *table) data() Data {
 		CheckedBy:  t.str("checked_by"),
 	}
 	d.Delimiter = t.enum("delimiter", "auto", "auto", ",", ";", "\t")
+	for _, w := range t.words("none") {
+		if kinds := []string{"exclusion", "event", "deviation"}; slices.Contains(kinds, w) {
+			d.None = append(d.None, w)
+		} else {
+			written, _ := t.list("none", "")
+			t.item("none", slices.Index(written, any(w)), UnknownValue, t.d.suggest(w, kinds), "%s is not known here", quote(w))
+		}
+	}
 	if d.Delimiter == "," && d.Decimal == "," {
 		t.fail("decimal", Conflict, `write delimiter = ";" or decimal = "."`, "the comma cannot be both delimiter and decimal sign")
 	}

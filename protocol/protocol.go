@@ -371,6 +371,7 @@ type Data struct {
 	Locked             Date
 	EnteredBy          string
 	CheckedBy          string
+	None               []string // what the author confirms that there was none of: exclusion, event, deviation
 	Further            []FurtherData
 	Confirmed          []Confirmed
 }

@@ -845,4 +845,13 @@ func (r *resolver) conduct() {
 	for i, e := range p.Events {
 		r.unitName(tomlpos.Index("event", i)+".unit", e.Unit)
 	}
+	if p.Data != nil {
+		listed := map[string]int{"exclusion": len(p.Exclusions), "event": len(p.Events), "deviation": len(p.Deviations)}
+		for _, w := range p.Data.None {
+			if listed[w] > 0 {
+				f := r.fail("data.none", Conflict, "take the word out, or the table", "it is confirmed that there was no %s, and one is recorded", w)
+				f.Relate(r.p.Pos(tomlpos.Index(w, 0)), "recorded here")
+			}
+		}
+	}
 }

@@ -152,6 +152,13 @@ func Conduct(t *trial.Trial) []string {
 	}
 	s := []string{fmt.Sprintf("The protocol records %s, %s, %s, %s and %s.", count(len(p.Events), "event"), count(len(p.Exclusions), "exclusion"),
 		count(len(p.Deviations), "deviation"), count(len(p.Corrections), "correction"), count(len(p.Amendments), "amendment"))}
+	if p.Data != nil && len(p.Data.None) > 0 {
+		var none []string
+		for _, w := range p.Data.None {
+			none = append(none, "no "+w)
+		}
+		s = append(s, fmt.Sprintf("Its author confirms that there was %s.", And(none)))
+	}
 	if t.Table == nil {
 		return s
 	}
