@@ -21,6 +21,7 @@ type drawn struct {
 	// blocks tells for each face, by its name, which blocks of 256 runes it was used
 	// for, and for which runes.
 	runes map[string]*runeSet
+	trees []*tree // one, or one for each page where pages are to be files of their own
 }
 
 // runeSet is a set of runes up to U+FFFF.
@@ -44,10 +45,19 @@ type pen struct {
 	width        float64
 	dashed       bool
 
+	// The structure, and where the page stands in it.
+	tree    *tree
+	at      int           // page of the tree
+	element *page.Element // nil: none
+	marked  bool          // marked content is open
+	of      *page.Element // whose it is
+	touched bool          // the element has content since its Begin
+
 	b []byte
 }
 
-func draw(book *page.Book) (*drawn, error) {
+// draw draws the pages of a book: of one file, or, apart, each for a file of its own.
+func draw(book *page.Book, apart bool) (*drawn, error) {
 	if len(book.Pages) == 0 {
 		return nil, fmt.Errorf("writing the PDF: there is no page")
 	}
@@ -60,7 +70,18 @@ func draw(book *page.Book) (*drawn, error) {
 	pdf.SetCreationDate(time.Unix(0, 0).UTC()) // replaced when the file is finished
 	pdf.SetModificationDate(time.Unix(0, 0).UTC())
 	p := &pen{pdf: pdf, faces: make([]*runeSet, face.Count())}
+	d := &drawn{runes: map[string]*runeSet{}}
 	for i := range book.Pages {
+		if apart || i == 0 {
+			n := len(book.Pages)
+			if apart {
+				n = 1
+			}
+			p.tree, p.at = newTree(n), 0
+			d.trees = append(d.trees, p.tree)
+		} else {
+			p.at = i
+		}
 		p.page(&book.Pages[i])
 	}
 	p.register()
@@ -68,7 +89,7 @@ func draw(book *page.Book) (*drawn, error) {
 	if err := pdf.Output(&out); err != nil {
 		return nil, fmt.Errorf("writing the PDF: %w", err)
 	}
-	d := &drawn{file: out.Bytes(), runes: map[string]*runeSet{}}
+	d.file = out.Bytes()
 	for i, set := range p.faces {
 		if set != nil {
 			d.runes[faceAt(i).Name] = set
@@ -111,9 +132,19 @@ func (p *pen) page(pg *page.Page) {
 	p.face, p.size = nil, 0
 	p.fill, p.stroke, p.alpha = [3]uint8{}, [3]uint8{}, 255
 	p.width, p.dashed = -1, false
+	p.element = nil
 	p.b = append(p.b, "1 j\n"...)
 	for _, o := range pg.Ops {
 		switch o := o.(type) {
+		case page.Begin:
+			p.element, p.touched = o.Element, false
+		case page.End:
+			if !p.touched && !artifact(p.element) {
+				p.tree.of(p.element)
+			}
+			p.element = nil
+		case page.Link:
+			p.tree.link(o, p.at)
 		case page.Text:
 			p.text(o)
 		case page.Box:
@@ -122,7 +153,59 @@ func (p *pen) page(pg *page.Page) {
 			p.picture(o)
 		}
 	}
+	p.unmark()
 	p.flush()
+}
+
+// mark sees to it that what is drawn next is marked as content of the element, or as
+// an artifact (ISO 32000-1, clauses 14.6 and 14.8.2.2). It gives the node of the element.
+func (p *pen) mark() *node {
+	p.touched = true
+	none := artifact(p.element)
+	if p.marked && (p.of == p.element || none && artifact(p.of) && role(p.of) == role(p.element)) {
+		if none {
+			return nil
+		}
+		return p.tree.of(p.element)
+	}
+	p.unmark()
+	p.marked, p.of = true, p.element
+	if none {
+		switch role(p.element) {
+		case page.RunningHead:
+			p.op("/Artifact <</Type /Pagination /Subtype /Header>> BDC")
+		case page.RunningFoot:
+			p.op("/Artifact <</Type /Pagination /Subtype /Footer>> BDC")
+		default:
+			p.op("/Artifact BMC")
+		}
+		return nil
+	}
+	n, mcid := p.tree.content(p.element, p.at)
+	kind := n.kind
+	if p.element.Role == page.Linked {
+		kind = "Link"
+	}
+	p.b = append(p.b, '/')
+	p.b = append(p.b, kind...)
+	p.b = append(p.b, " <</MCID "...)
+	p.b = strconv.AppendInt(p.b, int64(mcid), 10)
+	p.op(">> BDC")
+	return n
+}
+
+func (p *pen) unmark() {
+	if p.marked {
+		p.op("EMC")
+		p.marked = false
+	}
+}
+
+func role(el *page.Element) page.Role {
+	if el == nil {
+		return page.Artifact
+	}
+	return el.Role
 }
 
 // flush hands what has been written to the library.
@@ -232,6 +315,7 @@ func (p *pen) setFace(f *face.Face, size float64) {
 }
 
 func (p *pen) box(o page.Box) {
+	p.mark()
 	p.setFill(o.Colour)
 	p.num(o.X)
 	p.num(p.height - o.Y - o.Height)
@@ -244,6 +328,7 @@ func (p *pen) text(o page.Text) {
 	if o.Text == "" || !(o.Size > 0) {
 		return
 	}
+	p.mark()
 	if o.Actual != "" {
 		p.b = append(p.b, "/Span <</ActualText "...)
 		p.b = append(p.b, textString(o.Actual)...)
@@ -291,6 +376,9 @@ func (p *pen) show(f *face.Face, text string, space float64) {
 
 // picture replays a drawing.
 func (p *pen) picture(o page.Picture) {
+	if n := p.mark(); n != nil {
+		n.box = [4]float64{o.X, p.height - o.Y - o.Picture.Height*o.Scale, o.X + o.Picture.Width*o.Scale, p.height - o.Y}
+	}
 	at := func(x, y float64) {
 		p.num(o.X + x*o.Scale)
 		p.num(p.height - o.Y - y*o.Scale)

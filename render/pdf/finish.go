@@ -32,12 +32,12 @@ func finish(d *drawn, book *page.Book, m meta, files []Attachment) ([]byte, erro
 	if err := f.fonts(d.runes); err != nil {
 		return nil, err
 	}
-	return f.finish(book, m, files)
+	return f.finish(book, d.trees[0], m, files)
 }
 
 // finish does what remains once the fonts are done.
-func (f *finisher) finish(book *page.Book, m meta, files []Attachment) ([]byte, error) {
-	f.book, f.meta = book, m
+func (f *finisher) finish(book *page.Book, t *tree, m meta, files []Attachment) ([]byte, error) {
+	f.book, f.tree, f.meta, f.links, f.files, f.names = book, t, m, make([][]int, len(book.Pages)), nil, nil
 	// The library ends with the information and the catalog.
 	f.catalog, f.info = len(f.objects)-1, len(f.objects)-2
 	for _, step := range []func() error{
@@ -55,6 +55,8 @@ func (f *finisher) finish(book *page.Book, m meta, files []Attachment) ([]byte, 
 type finisher struct {
 	objects       [][]byte // by number, each from its dictionary to before endobj; [0] is unused
 	book          *page.Book
+	tree          *tree
+	links         [][]int // by page, the objects of its links
 	meta          meta
 	catalog, info int
 	packer        *zlib.Writer // kept, since making one costs more than most streams
@@ -233,6 +235,7 @@ func pageObject(i int) int { return 3 + 2*i }
 
 // pages gives each page its links, and packs its contents.
 func (f *finisher) pages() error {
+	key := len(f.book.Pages) // of the page or link, by which its elements are found
 	for i := range f.book.Pages {
 		pg := &f.book.Pages[i]
 		var refs []string
@@ -241,11 +244,17 @@ func (f *finisher) pages() error {
 			if !ok {
 				continue
 			}
-			refs = append(refs, fmt.Sprintf("%d 0 R", f.add(f.link(pg, l))))
+			n := f.add(f.link(pg, l, key))
+			key++
+			f.links[i] = append(f.links[i], n)
+			refs = append(refs, fmt.Sprintf("%d 0 R", n))
 		}
 		extra := ""
+		if len(f.tree.parents[i]) > 0 {
+			extra = fmt.Sprintf("/StructParents %d\n", i)
+		}
 		if len(refs) > 0 {
-			extra = "/Annots [" + strings.Join(refs, " ") + "]\n/Tabs /S\n"
+			extra += "/Annots [" + strings.Join(refs, " ") + "]\n/Tabs /S\n"
 		}
 		if err := f.replace(pageObject(i), "<</Type /Page\n", "<</Type /Page\n"+extra); err != nil {
 			return err
@@ -270,7 +279,7 @@ func (f *finisher) pack(number int) error {
 	return nil
 }
 
-func (f *finisher) link(pg *page.Page, l page.Link) string {
+func (f *finisher) link(pg *page.Page, l page.Link, key int) string {
 	rect := fmt.Sprintf("[%s]", numbers(l.X, pg.Height-l.Y-l.Height, l.X+l.Width, pg.Height-l.Y))
 	action := ""
 	if id, inside := strings.CutPrefix(l.Dest, "#"); inside {
@@ -278,7 +287,12 @@ func (f *finisher) link(pg *page.Page, l page.Link) string {
 	} else {
 		action = "/A <</S /URI /URI " + literal(uri(l.Dest)) + ">>"
 	}
-	return "<</Type /Annot /Subtype /Link /F 4 /Border [0 0 0] /Rect " + rect + " " + action + ">>"
+	what := l.Dest
+	if l.Element != nil && l.Element.Alt != "" {
+		what = l.Element.Alt
+	}
+	return fmt.Sprintf("<</Type /Annot /Subtype /Link /F 4 /Border [0 0 0] /StructParent %d /Rect %s /Contents %s %s>>",
+		key, rect, textString(printable(what)), action)
 }
 
 func (f *finisher) dest(at page.Place) string {
@@ -503,6 +517,7 @@ func (f *finisher) root() error {
 	intent := f.add(fmt.Sprintf("<</Type /OutputIntent /S /GTS_PDFA1 /OutputConditionIdentifier (sRGB IEC61966-2.1)"+
 		" /Info (sRGB IEC61966-2.1) /DestOutputProfile %d 0 R>>", icc))
 	outline := f.outline()
+	structure := f.structure()
 
 	var c strings.Builder
 	c.WriteString("<</Type /Catalog /Pages 1 0 R /ViewerPreferences <</DisplayDocTitle true>>\n")
@@ -513,6 +528,7 @@ func (f *finisher) root() error {
 	if outline > 0 {
 		fmt.Fprintf(&c, "/Outlines %d 0 R /PageMode /UseOutlines\n", outline)
 	}
+	fmt.Fprintf(&c, "/MarkInfo <</Marked true>> /StructTreeRoot %d 0 R /PageLabels <</Nums [0 <</S /D>>]>>\n", structure)
 	if len(f.files) > 0 {
 		c.WriteString("/Names <</EmbeddedFiles <</Names [")
 		for i, n := range f.files {

@@ -1,8 +1,9 @@
 // Package pdf writes documents as PDF and reads back the files that ride in them.
 //
 // A file is built to PDF/A-3b: faces embedded, sRGB output intent, XMP metadata that
-// agrees with the document information, attachments with their relationship. The same
-// document, files and options give the same bytes.
+// agrees with the document information, attachments with their relationship. It is
+// tagged: every mark on a page belongs to an element of the structure, in reading
+// order, or is an artifact. The same document, files and options give the same bytes.
 package pdf
 
 import (
@@ -72,7 +73,7 @@ type meta struct {
 }
 
 func write(w io.Writer, book *page.Book, m meta, files []Attachment) error {
-	drawn, err := draw(book)
+	drawn, err := draw(book, false)
 	if err != nil {
 		return err
 	}
