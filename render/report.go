@@ -37,12 +37,9 @@ type Options struct {
 	Date     string   // ISO 8601 date that the report bears; empty: none
 	Go       string   // version of the toolchain
 	Arch     string   // operating system and processor
-	Only     []string // outputs wanted: pdf, html, md, json, tables, figures; nil: all
+	Only     []string // outputs wanted, of Outputs; nil: those the template is for
 	Workers  int      // jobs done side by side; it changes no byte
 }
-
-// Outputs are the kinds of output, in the order in which they are written.
-var Outputs = []string{"pdf", "html", "md", "json", "tables", "figures"}
 
 // What rides in a report beside the files of the trial.
 const (
@@ -75,6 +72,7 @@ type builder struct {
 	options     Options
 	fingerprint string
 	list        diag.List
+	author      // what the author's words need and leave behind
 }
 
 // Report makes the report of a trial. The list tells of faults of templates, texts and
@@ -84,6 +82,9 @@ func Report(t *trial.Trial, rs *result.Results, opt Options) ([]File, diag.List,
 	if list.HasErrors() {
 		return nil, list, nil
 	}
+	only, more := wanted(t, d, opt)
+	opt.Only = only
+	list = append(list, more...)
 	for _, f := range t.Files {
 		if f.Path == aboutFile || f.Path == resultsFile {
 			list.Add(diag.Diagnostic{Pos: diag.Pos{File: f.Path}, Severity: diag.Error, Code: "reserved-file",
@@ -152,7 +153,7 @@ func carryOut(jobs []job, workers int) []outcome {
 
 // jobs lists what is wanted, the longest first.
 func jobs(d *doc.Document, rs *result.Results, opt Options, attached []attached) []job {
-	want := func(kind string) bool { return opt.Only == nil || slices.Contains(opt.Only, kind) }
+	want := func(kind string) bool { return slices.Contains(opt.Only, kind) }
 	about := pdf.Options{Date: moment(opt.Date), Producer: rs.Program.Name + " " + rs.Program.Version, Subject: "Report of trial " + rs.Trial.Code}
 	one := func(path string, b *bytes.Buffer, list diag.List, err error) ([]File, diag.List, error) {
 		return []File{{Path: path, Data: b.Bytes()}}, list, err
@@ -198,35 +199,14 @@ func jobs(d *doc.Document, rs *result.Results, opt Options, attached []attached)
 	if want("tables") {
 		out = append(out, func() ([]File, diag.List, error) { return csvFiles(rs), nil, nil })
 	}
-	if want("figures") {
-		out = append(out, func() ([]File, diag.List, error) { return figures(d, about) })
+	// Markdown and LaTeX refer to the files of figures.
+	if screen, print := want("figures") || want("md"), want("figures") || want("tex"); screen || print {
+		out = append(out, func() ([]File, diag.List, error) { return figures(d, about, screen, print) })
+	}
+	if want("tex") {
+		out = append(out, func() ([]File, diag.List, error) { return texFiles(d) })
 	}
 	return out
-}
-
-// figures writes each figure of a report as files of its own.
-func figures(d *doc.Document, about pdf.Options) ([]File, diag.List, error) {
-	var shown []doc.Figure
-	var pics []pdf.Picture
-	for _, b := range d.Blocks {
-		if f, ok := b.(doc.Figure); ok && f.File != "" && f.Picture != nil {
-			shown = append(shown, f)
-			pics = append(pics, pdf.Picture{Title: doc.Plain(f.Caption), Picture: f.Picture})
-		}
-	}
-	pages, err := pdf.Pictures(pics, about)
-	if err != nil {
-		return nil, nil, err
-	}
-	var out []File
-	for i, f := range shown {
-		var svg bytes.Buffer
-		if err := html.SVG(&svg, f.Picture, f.Alt); err != nil {
-			return nil, nil, err
-		}
-		out = append(out, File{Path: "figures/" + f.File + ".svg", Data: svg.Bytes()}, File{Path: "figures/" + f.File + ".pdf", Data: pages[i]})
-	}
-	return out, nil, nil
 }
 
 // Document composes the report as a numbered document.
@@ -236,7 +216,7 @@ func Document(t *trial.Trial, rs *result.Results, opt Options) (*doc.Document, d
 	if list.HasErrors() {
 		return nil, list
 	}
-	text, more := compose.Compose(sources, main, b.view(), b.functions(), compose.Limits{})
+	text, more := b.compose(sources, main)
 	list = append(append(list, b.list...), more...)
 	p := t.Protocol
 	var authors []string
@@ -246,7 +226,7 @@ func Document(t *trial.Trial, rs *result.Results, opt Options) (*doc.Document, d
 	d := &doc.Document{
 		Lang: "en", Title: p.Trial.Title, ShortTitle: p.Trial.Title, Code: p.Trial.Code, Status: rs.Trial.Status,
 		Author: strings.Join(authors, ", "), Date: opt.Date, Fingerprint: b.fingerprint, Paper: p.Report.Paper,
-		Blocks: tidy(text.Blocks), Notes: text.Notes,
+		Blocks: once(tidy(text.Blocks)), Notes: text.Notes,
 	}
 	return d, append(list, doc.Number(d)...)
 }
@@ -276,13 +256,12 @@ func (b *builder) sources() ([]compose.Source, string, diag.List) {
 		}
 		out = append(out, compose.Source{Name: strings.TrimSuffix(path.Base(file), ".md"), File: file, Text: string(data)})
 	}
-	if data, err := fs.ReadFile(templates.FS, name+".md"); err == nil && !strings.Contains(name, "/") {
+	if data, err := fs.ReadFile(templates.FS, name+".md"); err == nil && !strings.Contains(name, "/") && name != functionsPage {
 		return append(out, compose.Source{Name: name + ".md", Text: string(data)}), name + ".md", nil
 	}
-	for _, f := range b.trial.Files {
-		if f.Path == name {
-			return append(out, compose.Source{Name: f.Path, Text: string(f.Data)}), f.Path, nil
-		}
+	if source, ok := b.source(name); ok {
+		b.own = name
+		return append(out, source), name, nil
 	}
 	fault := diag.Diagnostic{Severity: diag.Error, Code: "unknown-template",
 		Message: fmt.Sprintf("there is no template %q in this version, and no such file in the folder", name), Hint: "built in are " + strings.Join(Templates(), " and ")}
@@ -358,11 +337,7 @@ func attachments(t *trial.Trial, rs *result.Results, opt Options) ([]attached, e
 	if name == "" {
 		name = t.Protocol.Report.Template
 	}
-	outputs := opt.Only
-	if outputs == nil {
-		outputs = Outputs
-	}
-	info, err := json.MarshalIndent(about{Format: 1, Program: rs.Program, Go: opt.Go, Arch: opt.Arch, Date: opt.Date, Template: name, Paper: t.Protocol.Report.Paper, Outputs: outputs, Files: rs.Inputs}, "", " ")
+	info, err := json.MarshalIndent(about{Format: 1, Program: rs.Program, Go: opt.Go, Arch: opt.Arch, Date: opt.Date, Template: name, Paper: t.Protocol.Report.Paper, Outputs: opt.Only, Files: rs.Inputs}, "", " ")
 	if err != nil {
 		return nil, fmt.Errorf("report.json: %w", err)
 	}

@@ -56,7 +56,11 @@ var lattice = map[string]string{
 	"render/html":          "render/doc render/face",
 	"render/md":            "render/doc render/face",
 	"render/term":          "render/doc render/face",
-	"render": "render/doc render/compose render/table render/figure render/page render/pdf render/html render/md render/term render/face " +
+	"render/grid":          "render/doc render/face", // what writers without pages of their own must measure
+	"render/tex":           "render/grid render/doc render/face protocol/diag",
+	"render/raster":        "render/doc render/face",
+	"render/docx":          "render/grid render/raster render/doc render/face",
+	"render": "render/doc render/compose render/table render/figure render/page render/pdf render/html render/md render/tex render/docx render/term render/face " +
 		"analysis/trial analysis/trial+ analysis/result analysis/prose analysis/num templates",
 
 	"cmd/penwright": "*",
