@@ -232,7 +232,7 @@ func Document(t *trial.Trial, rs *result.Results, opt Options) (*doc.Document, d
 }
 
 // Templates names the built-in templates of reports.
-func Templates() []string { return []string{"audit", "plan"} }
+func Templates() []string { return []string{"audit", "chapter", "plan"} }
 
 // sources lists the built-in parts and the template wanted, and names it.
 func (b *builder) sources() ([]compose.Source, string, diag.List) {
@@ -264,7 +264,7 @@ func (b *builder) sources() ([]compose.Source, string, diag.List) {
 		return append(out, source), name, nil
 	}
 	fault := diag.Diagnostic{Severity: diag.Error, Code: "unknown-template",
-		Message: fmt.Sprintf("there is no template %q in this version, and no such file in the folder", name), Hint: "built in are " + strings.Join(Templates(), " and ")}
+		Message: fmt.Sprintf("there is no template %q in this version, and no such file in the folder", name), Hint: "built in are " + strings.Join(Templates(), ", ")}
 	if b.options.Template == "" {
 		fault.Key = "report.template"
 		fault.Pos = b.trial.Protocol.Pos(fault.Key)

@@ -30,6 +30,7 @@ type view struct {
 	Assumptions         string
 	Complete            bool // there are data
 	Animals             bool // there are findings on the welfare of animals
+	OfAnimals           bool // the trial is one of animals
 	Unplanned           bool // something was not planned before the data
 	Responses           []responseView
 }
@@ -51,7 +52,7 @@ func (b *builder) view() view {
 	v := view{
 		Code: p.Trial.Code, Title: p.Trial.Title, Status: b.rs.Trial.Status,
 		Objective: p.Trial.Objective.Body, SpeciesRationale: p.Trial.SpeciesRationale.Body, Hypotheses: p.Trial.Hypotheses,
-		Assumptions: p.Analysis.Assumptions, Complete: b.trial.Table != nil, Animals: len(b.trial.Welfare) > 0, MaterialHeading: "Material",
+		Assumptions: p.Analysis.Assumptions, Complete: b.trial.Table != nil, Animals: len(b.trial.Welfare) > 0, OfAnimals: p.Animals != nil, MaterialHeading: "Material",
 	}
 	if p.Animals != nil {
 		v.MaterialHeading = "Animals, housing and treatments"
@@ -240,6 +241,7 @@ func (b *builder) functions() template.FuncMap {
 		"seal":             func() []string { return prose.Seal(t) },
 		"limits":           prose.Limits,
 	}
+	chapter, ofChapter := b.chapterParagraphs(), b.chapterTables()
 	return template.FuncMap{
 		"contents": func() []doc.Block { return []doc.Block{doc.Contents{}} },
 		"answers":  func() []doc.Block { return b.answers() },
@@ -249,6 +251,8 @@ func (b *builder) functions() template.FuncMap {
 		"table": func(name string, args ...string) ([]doc.Block, error) {
 			var made doc.Table
 			switch {
+			case ofChapter[name] != nil:
+				return ofChapter[name](), nil
 			case ofTrial[name] != nil:
 				made = ofTrial[name]()
 			case ofResponse[name] != nil:
@@ -268,7 +272,7 @@ func (b *builder) functions() template.FuncMap {
 				}
 				made = ofTerm[name](r, x)
 			default:
-				return nil, fault("table", name, keys(ofTrial, keys(ofResponse, keys(ofTerm, nil))))
+				return nil, fault("table", name, keys(ofTrial, keys(ofResponse, keys(ofTerm, keys(ofChapter, nil)))))
 			}
 			if len(made.Rows) == 0 {
 				return nil, nil
@@ -283,6 +287,12 @@ func (b *builder) functions() template.FuncMap {
 				return p.flow(), nil
 			case name == "power":
 				return p.power(), nil
+			case name == "effects":
+				r, err := response(args)
+				if err != nil {
+					return nil, err
+				}
+				return b.chapterFigures(r.Name), nil
 			case name == "means":
 				r, err := response(args)
 				if err != nil {
@@ -300,12 +310,15 @@ func (b *builder) functions() template.FuncMap {
 				}
 				return figures[name](r.Name), nil
 			}
-			return nil, fault("figure", name, keys(figures, []string{"map", "flow", "means", "power"}))
+			return nil, fault("figure", name, keys(figures, []string{"map", "flow", "means", "effects", "power"}))
 		},
 		"paragraph": func(name string) ([]doc.Block, error) {
+			if f := chapter[name]; f != nil {
+				return f(), nil
+			}
 			f := paragraphsOf[name]
 			if f == nil {
-				return nil, fault("paragraph", name, keys(paragraphsOf, nil))
+				return nil, fault("paragraph", name, keys(paragraphsOf, keys(chapter, nil)))
 			}
 			return paragraphs(f()), nil
 		},
@@ -329,6 +342,13 @@ func (b *builder) functions() template.FuncMap {
 				return nil, err
 			}
 			return inlines(prose.Methods(t, r)), nil
+		},
+		"result": func(name string) ([]doc.Block, error) {
+			r, err := response([]string{name})
+			if err != nil {
+				return nil, err
+			}
+			return passages(prose.ChapterResult(t, r)), nil
 		},
 		"results": func(name string) ([]doc.Inline, error) {
 			r, err := response([]string{name})
@@ -355,6 +375,7 @@ func (b *builder) functions() template.FuncMap {
 			}
 			return append([]doc.Block{doc.Heading{Level: 2, Text: []doc.Inline{doc.Text{Text: "References of the methods used"}}}}, bullets(refs)...)
 		},
+		"sources": func() []doc.Block { return bullets(prose.ChapterReferences(t, rs)) },
 		"ref": func(at diag.Pos, id string) doc.Inline { return doc.Ref{ID: id, Pos: at} },
 	}
 }

@@ -321,21 +321,21 @@ func References(rs *result.Results) []string {
 }
 
 // sources of the methods; citations from memory.
-var sources = []struct{ keys, text string }{
-	{keys: "bartlett", text: "Bartlett, M. S. (1937). Properties of sufficiency and statistical tests. Proceedings of the Royal Society A 160, 268–282."},
-	{keys: "bonferroni", text: "Dunn, O. J. (1961). Multiple comparisons among means. Journal of the American Statistical Association 56, 52–64."},
-	{keys: "brown-forsythe", text: "Brown, M. B. and Forsythe, A. B. (1974). Robust tests for the equality of variances. Journal of the American Statistical Association 69, 364–367."},
-	{keys: "dunnett", text: "Dunnett, C. W. (1955). A multiple comparison procedure for comparing several treatments with a control. Journal of the American Statistical Association 50, 1096–1121."},
-	{keys: "efficiency lsd protected_lsd", text: "Fisher, R. A. (1935). The Design of Experiments. Oliver and Boyd, Edinburgh."},
-	{keys: "holm", text: "Holm, S. (1979). A simple sequentially rejective multiple test procedure. Scandinavian Journal of Statistics 6, 65–70."},
-	{keys: "strata", text: "Nelder, J. A. (1965). The analysis of randomized experiments with orthogonal block structure. Proceedings of the Royal Society A 283, 147–178."},
-	{keys: "letters", text: "Piepho, H.-P. (2004). An algorithm for a letter-based representation of all-pairwise comparisons. Journal of Computational and Graphical Statistics 13, 456–466."},
-	{keys: "shapiro-wilk", text: "Royston, P. (1995). Remark AS R94: a remark on algorithm AS 181, the W-test for normality. Applied Statistics 44, 547–551."},
-	{keys: "satterthwaite", text: "Satterthwaite, F. E. (1946). An approximate distribution of estimates of variance components. Biometrics Bulletin 2, 110–114."},
-	{keys: "scheffe", text: "Scheffé, H. (1953). A method for judging all contrasts in the analysis of variance. Biometrika 40, 87–104."},
-	{keys: "adjusted", text: "Searle, S. R., Speed, F. M. and Milliken, G. A. (1980). Population marginal means in the linear model. The American Statistician 34, 216–221."},
-	{keys: "sidak", text: "Šidák, Z. (1967). Rectangular confidence regions for the means of multivariate normal distributions. Journal of the American Statistical Association 62, 626–633."},
-	{keys: "tukey", text: "Kramer, C. Y. (1956). Extension of multiple range tests to group means with unequal numbers of replications. Biometrics 12, 307–310."},
-	{keys: "non-additivity", text: "Tukey, J. W. (1949). One degree of freedom for non-additivity. Biometrics 5, 232–242."},
-	{keys: "least_squares", text: "Yates, F. (1934). The analysis of multiple classifications with unequal numbers in the different classes. Journal of the American Statistical Association 29, 51–66."},
+var sources = []struct{ keys, short, text string }{
+	{keys: "bartlett", short: "Bartlett, 1937", text: "Bartlett, M. S. (1937). Properties of sufficiency and statistical tests. Proceedings of the Royal Society A 160, 268–282."},
+	{keys: "bonferroni", short: "Dunn, 1961", text: "Dunn, O. J. (1961). Multiple comparisons among means. Journal of the American Statistical Association 56, 52–64."},
+	{keys: "brown-forsythe", short: "Brown and Forsythe, 1974", text: "Brown, M. B. and Forsythe, A. B. (1974). Robust tests for the equality of variances. Journal of the American Statistical Association 69, 364–367."},
+	{keys: "dunnett", short: "Dunnett, 1955", text: "Dunnett, C. W. (1955). A multiple comparison procedure for comparing several treatments with a control. Journal of the American Statistical Association 50, 1096–1121."},
+	{keys: "efficiency lsd protected_lsd", short: "Fisher, 1935", text: "Fisher, R. A. (1935). The Design of Experiments. Oliver and Boyd, Edinburgh."},
+	{keys: "holm", short: "Holm, 1979", text: "Holm, S. (1979). A simple sequentially rejective multiple test procedure. Scandinavian Journal of Statistics 6, 65–70."},
+	{keys: "strata", short: "Nelder, 1965", text: "Nelder, J. A. (1965). The analysis of randomized experiments with orthogonal block structure. Proceedings of the Royal Society A 283, 147–178."},
+	{keys: "letters", short: "Piepho, 2004", text: "Piepho, H.-P. (2004). An algorithm for a letter-based representation of all-pairwise comparisons. Journal of Computational and Graphical Statistics 13, 456–466."},
+	{keys: "shapiro-wilk", short: "Royston, 1995", text: "Royston, P. (1995). Remark AS R94: a remark on algorithm AS 181, the W-test for normality. Applied Statistics 44, 547–551."},
+	{keys: "satterthwaite", short: "Satterthwaite, 1946", text: "Satterthwaite, F. E. (1946). An approximate distribution of estimates of variance components. Biometrics Bulletin 2, 110–114."},
+	{keys: "scheffe", short: "Scheffé, 1953", text: "Scheffé, H. (1953). A method for judging all contrasts in the analysis of variance. Biometrika 40, 87–104."},
+	{keys: "adjusted", short: "Searle and others, 1980", text: "Searle, S. R., Speed, F. M. and Milliken, G. A. (1980). Population marginal means in the linear model. The American Statistician 34, 216–221."},
+	{keys: "sidak", short: "Šidák, 1967", text: "Šidák, Z. (1967). Rectangular confidence regions for the means of multivariate normal distributions. Journal of the American Statistical Association 62, 626–633."},
+	{keys: "tukey", short: "Kramer, 1956", text: "Kramer, C. Y. (1956). Extension of multiple range tests to group means with unequal numbers of replications. Biometrics 12, 307–310."},
+	{keys: "non-additivity", short: "Tukey, 1949", text: "Tukey, J. W. (1949). One degree of freedom for non-additivity. Biometrics 5, 232–242."},
+	{keys: "least_squares", short: "Yates, 1934", text: "Yates, F. (1934). The analysis of multiple classifications with unequal numbers in the different classes. Journal of the American Statistical Association 29, 51–66."},
 }

@@ -1,0 +1,1430 @@
+package prose
+
+import (
+	"fmt"
+	"math"
+	"slices"
+	"strings"
+
+	"penwright/analysis/dataset"
+	"penwright/analysis/num"
+	"penwright/analysis/result"
+	"penwright/analysis/trial"
+	"penwright/protocol"
+	"penwright/protocol/allot"
+	"penwright/protocol/layout"
+)
+
+// Passage is a sentence of a chapter and, where it leans on a table or a figure, the
+// identifier of that.
+type Passage struct{ Text, See string }
+
+// tense says whether a trial is over, so that it is told in the past, or still a plan.
+type tense bool
+
+func told(t *trial.Trial) tense { return t.Table != nil }
+
+func (d tense) of(past, future string) string {
+	if d {
+		return past
+	}
+	return future
+}
+
+func (d tense) was() string  { return d.of("was", "will be") }
+func (d tense) were() string { return d.of("were", "will be") }
+
+// be is the verb of so many things.
+func (d tense) be(n int) string {
+	if n == 1 {
+		return d.was()
+	}
+	return d.were()
+}
+
+// paragraphOf gathers sentences, each only when it says something.
+type paragraphOf []Passage
+
+func (s *paragraphOf) add(format string, args ...any) { s.see("", format, args...) }
+
+func (s *paragraphOf) see(id, format string, args ...any) {
+	text := format
+	if len(args) > 0 {
+		text = fmt.Sprintf(format, args...)
+	}
+	*s = append(*s, Passage{Text: finished(text), See: id})
+}
+
+// finished is a sentence with a capital and a full stop.
+func finished(s string) string {
+	s = phrase(s)
+	if s == "" {
+		return ""
+	}
+	if !strings.HasSuffix(s, "?") && !strings.HasSuffix(s, "!") && !strings.HasSuffix(s, ".”") {
+		s += "."
+	}
+	return upperFirst(s)
+}
+
+// phrase is a text of the protocol as part of a sentence: on one line, without the stop
+// at its end.
+func phrase(s string) string {
+	s = strings.Join(strings.Fields(s), " ")
+	for _, mark := range []string{".", ";", ","} {
+		s = strings.TrimSuffix(s, mark)
+	}
+	return powers.Replace(s)
+}
+
+// powers writes the units that protocols spell on a keyboard as the trade prints them.
+var powers = strings.NewReplacer("/m2", "/m²", "/m3", "/m³", " m2", " m²", " m3", " m³", " cm2", " cm²", "/cm2", "/cm²")
+
+// said tells whether a text of the protocol says something.
+func said(s string) bool {
+	s = phrase(s)
+	return s != "" && s != "…" && !strings.EqualFold(s, "none") && !strings.EqualFold(s, "not stated")
+}
+
+// inner is a phrase within a sentence, with a small letter at its beginning.
+func inner(s string) string { return lowerFirst(phrase(s)) }
+
+// series joins phrases that may hold commas of their own.
+func series(items []string) string {
+	for _, s := range items {
+		if strings.ContainsAny(s, ",;") && len(items) > 1 {
+			return strings.Join(items[:len(items)-1], "; ") + "; and " + items[len(items)-1]
+		}
+	}
+	return And(items)
+}
+
+// phrases makes phrases of texts.
+func phrases(items []string) []string {
+	var out []string
+	for _, s := range items {
+		if s = phrase(s); s != "" {
+			out = append(out, s)
+		}
+	}
+	return out
+}
+
+// definite puts an article before a noun that has none and is no name.
+func definite(s string) string {
+	s = phrase(s)
+	first, _, _ := strings.Cut(strings.ToLower(s), " ")
+	if s == "" || upperFirst(s) == s || slices.Contains([]string{"the", "a", "an", "one", "two", "all", "each", "our", "any", "some", "no"}, first) {
+		return s
+	}
+	return "the " + s
+}
+
+// article is a or an.
+func article(s string) string {
+	if s != "" && strings.ContainsRune("aeiouAEIOU", rune(s[0])) {
+		return "an " + s
+	}
+	return "a " + s
+}
+
+var months = [...]string{"January", "February", "March", "April", "May", "June", "July", "August", "September", "October", "November", "December"}
+
+// dayText prints a date in running text: 2 March 2026.
+func dayText(d protocol.Date) string {
+	if d.Month < 1 || d.Month > 12 {
+		return DateText(d)
+	}
+	return fmt.Sprintf("%d\u00a0%s\u00a0%d", d.Day, months[d.Month-1], d.Year)
+}
+
+// fromTo prints two dates, the year once where it is one.
+func fromTo(from, to protocol.Date) string {
+	none := protocol.Date{}
+	switch {
+	case from == none && to == none:
+		return ""
+	case to == none:
+		return "from " + dayText(from)
+	case from == none:
+		return "until " + dayText(to)
+	case from.Year == to.Year && from.Month >= 1 && from.Month <= 12:
+		return fmt.Sprintf("from %d\u00a0%s to %s", from.Day, months[from.Month-1], dayText(to))
+	}
+	return "from " + dayText(from) + " to " + dayText(to)
+}
+
+// kept are words for animals that units are named by (common practice, no source).
+var kept = []string{"animal", "pig", "piglet", "sow", "boar", "gilt", "barrow", "cow", "calf", "heifer", "steer", "bull", "ox", "sheep", "ewe", "ram", "lamb", "goat", "kid",
+	"horse", "bird", "hen", "cock", "chick", "chicken", "broiler", "turkey", "duck", "goose", "quail", "fish", "trout", "salmon", "carp", "mouse", "rat", "hamster", "rabbit", "dog", "cat", "ferret"}
+
+// animalUnit is the unit that is an animal itself, -1 where there is none.
+func animalUnit(t *trial.Trial) int {
+	if t.Protocol.Animals == nil {
+		return -1
+	}
+	for i := range t.Plan.Units {
+		u := &t.Plan.Units[i]
+		words := strings.Fields(strings.ToLower(UnitName(u)))
+		if len(words) > 0 && u.Crosses == nil && slices.Contains(kept, words[len(words)-1]) {
+			return i
+		}
+	}
+	return -1
+}
+
+// animalCount is the number of animals as far as the plan tells, 0 where it does not.
+func animalCount(t *trial.Trial) int {
+	if n := animals(t); n > 0 {
+		return n
+	}
+	if u := animalUnit(t); u >= 0 {
+		return t.Plan.Units[u].N
+	}
+	return 0
+}
+
+// speciesPlural is the animals of a species in the plural.
+func speciesPlural(species string) string {
+	words := strings.Fields(species)
+	if len(words) == 0 || upperFirst(species) == species && len(words) > 1 {
+		return "animals"
+	}
+	last := words[len(words)-1]
+	if !slices.Contains([]string{"trout", "salmon", "carp", "deer", "cod", "tilapia"}, last) && !strings.HasSuffix(last, "s") {
+		words[len(words)-1] = Plural(last)
+	}
+	return lowerFirst(strings.Join(words, " "))
+}
+
+// animalWord is one animal of the trial, such as pig.
+func animalWord(t *trial.Trial) string {
+	if a := t.Protocol.Animals; a != nil {
+		if words := strings.Fields(a.Species); len(words) > 0 && slices.Contains(kept, strings.ToLower(words[len(words)-1])) {
+			return strings.ToLower(words[len(words)-1])
+		}
+	}
+	return "animal"
+}
+
+// ChapterAnimals tells of the animals: kind, number, source, health, and how they were
+// chosen.
+func ChapterAnimals(t *trial.Trial) []Passage {
+	a := t.Protocol.Animals
+	if a == nil {
+		return nil
+	}
+	var s paragraphOf
+	d := told(t)
+	name := speciesPlural(a.Species)
+	var of []string
+	if name == "animals" && said(a.Species) {
+		of = append(of, phrase(a.Species))
+	}
+	for _, x := range []string{a.Breed, a.Sex, a.Genotype} {
+		if said(x) {
+			of = append(of, phrase(x))
+		}
+	}
+	if len(of) > 0 {
+		name += " (" + strings.Join(of, ", ") + ")"
+	}
+	if n := animalCount(t); n > 0 {
+		name = small(n) + " " + name
+	}
+	var at []string
+	if a.Age != nil {
+		at = append(at, QuantityText(a.Age)+" of age")
+	}
+	if a.Mass != nil {
+		at = append(at, QuantityText(a.Mass)+" of body mass")
+	}
+	if len(at) > 0 {
+		name += ", of " + And(at) + " at the start"
+	}
+	s.add("The trial %s %s", d.of("used", "will use"), name)
+	if said(a.Source) {
+		source := phrase(a.Source)
+		first, _, _ := strings.Cut(strings.ToLower(source), " ")
+		switch {
+		case strings.HasPrefix(first, "from"):
+			s.add("They %s %s", d.of("came", "will come"), inner(source))
+		case strings.HasSuffix(first, "ed") || first == "bought" || first == "born":
+			s.add("They %s %s", d.were(), inner(source))
+		default:
+			s.add("They %s from %s", d.of("came", "will come"), inner(source))
+		}
+	}
+	if said(a.Health) {
+		health := phrase(a.Health)
+		first, _, _ := strings.Cut(strings.ToLower(health), " ")
+		if slices.Contains([]string{"clinically", "healthy", "free", "vaccinated", "specific-pathogen-free"}, strings.TrimRight(first, ",")) {
+			s.add("They %s %s", d.were(), inner(health))
+		} else {
+			s.add("Health at the start: %s", health)
+		}
+	}
+	switch use := phrase(a.PreviousUse); {
+	case strings.EqualFold(use, "none"):
+		s.add("None %s been used in a trial before", d.of("had", "will have"))
+	case said(use):
+		s.add("Previous use: %s", use)
+	}
+	if a.Acclimatization != nil {
+		s.add("A period of %s to become used to the place %s the start", QuantityText(a.Acclimatization), d.of("preceded", "will precede"))
+	}
+	s = append(s, eligible(t)...)
+	return s
+}
+
+// eligible tells which units were taken, by criteria set beforehand.
+func eligible(t *trial.Trial) []Passage {
+	var s paragraphOf
+	e := t.Protocol.Eligibility
+	in, out := phrases(e.Include), phrases(e.Exclude)
+	switch {
+	case len(in) > 0 && len(out) > 0:
+		s.add("The criteria for taking them in, set before the trial, were: %s; and for leaving them out: %s", strings.Join(in, "; "), strings.Join(out, "; "))
+	case len(in) > 0:
+		s.add("The criteria for taking them in, set before the trial, were: %s", strings.Join(in, "; "))
+	case len(out) > 0:
+		s.add("The criteria for leaving them out, set before the trial, were: %s", strings.Join(out, "; "))
+	}
+	return s
+}
+
+// offered tells how feed or water was given: "offered ad libitum (two nipple drinkers)".
+func offered(what, how string, d tense) string {
+	lead, rest, _ := strings.Cut(phrase(how), ",")
+	lower := strings.ToLower(lead)
+	for _, start := range []string{"ad libitum", "by ", "restricted", "to ", "twice", "once", "three times", "at ", "freely"} {
+		if strings.HasPrefix(lower, start) {
+			s := fmt.Sprintf("%s %s offered %s", what, d.was(), inner(lead))
+			if rest = strings.TrimSpace(rest); rest != "" {
+				s += " (" + rest + ")"
+			}
+			return s
+		}
+	}
+	return fmt.Sprintf("the %s %s %s", what, d.was(), inner(how))
+}
+
+// ChapterHousing tells how animals were kept.
+func ChapterHousing(t *trial.Trial) []Passage {
+	h := t.Protocol.Housing
+	if h == nil {
+		return nil
+	}
+	var s paragraphOf
+	d := told(t)
+	var where []string
+	switch {
+	case h.GroupSize == 1:
+		where = append(where, "singly")
+	case h.GroupSize > 1:
+		where = append(where, "in groups of "+small(h.GroupSize))
+	}
+	if h.FloorArea != nil {
+		where = append(where, "with "+QuantityText(h.FloorArea)+" of floor for each animal")
+	}
+	if h.Temperature != nil {
+		where = append(where, "at "+QuantityText(h.Temperature))
+	}
+	if len(where) > 0 {
+		who := "The animals"
+		if t.Protocol.Animals == nil {
+			who = "They"
+		}
+		s.add("%s %s kept %s", who, d.were(), strings.Join(where, ", "))
+	}
+	if said(h.Lighting) {
+		light := phrase(h.Lighting)
+		if light[0] >= '0' && light[0] <= '9' {
+			s.add("Lights %s on from %s", d.were(), light)
+		} else {
+			s.add("Light %s %s", d.was(), inner(light))
+		}
+	}
+	if said(h.Bedding) {
+		s.add("Bedding %s %s", d.was(), inner(h.Bedding))
+	}
+	if said(h.Enrichment) {
+		s.add("The surroundings %s enriched by %s", d.were(), inner(h.Enrichment))
+	}
+	var given []string
+	if said(h.Feed) {
+		given = append(given, offered("feed", h.Feed, d))
+	}
+	if said(h.Water) {
+		given = append(given, offered("water", h.Water, d))
+	}
+	if len(given) > 0 {
+		s.add("%s", strings.Join(given, ", and "))
+	}
+	return s
+}
+
+// ChapterPlace tells where and when a trial ran, and on what site and material.
+func ChapterPlace(t *trial.Trial) []Passage {
+	var s paragraphOf
+	p, d := t.Protocol, told(t)
+	when := fromTo(p.Trial.Start, p.Trial.End)
+	where := phrase(p.Trial.Site)
+	if where == "" && p.Site != nil {
+		where = phrase(p.Site.Name)
+	}
+	if where != "" || when != "" {
+		line := "The trial " + d.of("was carried out", "will be carried out")
+		if where != "" {
+			line += " at " + definitePlace(where)
+		}
+		if when != "" {
+			line += " " + when
+		}
+		s.add("%s", line)
+	}
+	if x := p.Site; x != nil {
+		name := phrase(x.Name)
+		if x.Latitude != nil && x.Longitude != nil {
+			at := coordinate(*x.Latitude, "N", "S") + ", " + coordinate(*x.Longitude, "E", "W")
+			if name == "" {
+				s.add("The site lies at %s", at)
+			} else {
+				s.add("%s lies at %s", name, at)
+			}
+		}
+		var of []string
+		if said(x.Soil) {
+			of = append(of, "the soil is "+inner(x.Soil))
+		}
+		if said(x.PreviousCrop) {
+			of = append(of, "the previous crop was "+inner(x.PreviousCrop))
+		}
+		if len(of) > 0 {
+			s.add("%s", And(of))
+		}
+		if said(x.Weather) {
+			season := ""
+			if said(x.Season) {
+				season = " of the season " + phrase(x.Season)
+			}
+			s.add("Weather%s: %s", season, phrase(x.Weather))
+		}
+	}
+	if m := p.Material; m != nil {
+		var of []string
+		for _, x := range []string{m.Variety, m.Source} {
+			if said(x) {
+				of = append(of, phrase(x))
+			}
+		}
+		switch {
+		case said(m.Crop):
+			line := "The crop " + d.was() + " " + inner(m.Crop)
+			if len(of) > 0 {
+				line += " (" + strings.Join(of, "; ") + ")"
+			}
+			if said(m.SeedRate) {
+				line += ", at a seed rate of " + phrase(m.SeedRate)
+			}
+			s.add("%s", line)
+		case len(of) > 0:
+			s.add("Material: %s", strings.Join(of, "; "))
+		}
+	}
+	if x := p.Plot; x != nil {
+		var of []string
+		switch {
+		case x.Length != nil && x.Width != nil:
+			of = append(of, d.of("measured ", "will measure ")+QuantityText(x.Length)+" × "+QuantityText(x.Width))
+		case x.Length != nil:
+			of = append(of, d.were()+" "+QuantityText(x.Length)+" long")
+		case x.Width != nil:
+			of = append(of, d.were()+" "+QuantityText(x.Width)+" wide")
+		}
+		if x.Border != nil {
+			of = append(of, d.of("had", "will have")+" a border of "+QuantityText(x.Border))
+		}
+		if len(of) > 0 {
+			s.add("%s %s", Plural(rowName(t)), And(of))
+		}
+		if x.NetArea != nil {
+			s.add("The net area of a %s, on which it %s assessed, %s %s", rowName(t), d.was(), d.was(), QuantityText(x.NetArea))
+		}
+	}
+	var inputs []string
+	for _, x := range p.Inputs {
+		line := phrase(x.What)
+		if said(x.Rate) {
+			line += ", " + phrase(x.Rate)
+		}
+		if day := dayText(x.On); x.On != (protocol.Date{}) {
+			line += " (" + day + ")"
+		}
+		inputs = append(inputs, line)
+	}
+	if len(inputs) > 0 {
+		s.add("The whole trial %s: %s", d.of("received", "will receive"), strings.Join(inputs, "; "))
+	}
+	if p.Animals == nil {
+		s = append(s, eligible(t)...)
+	}
+	return s
+}
+
+// definitePlace leaves names alone and gives an article to what is none.
+func definitePlace(s string) string {
+	if upperFirst(s) == s && strings.Contains(strings.ToLower(s), "farm") {
+		return s
+	}
+	return definite(s)
+}
+
+func coordinate(x float64, plus, minus string) string {
+	side := plus
+	if x < 0 {
+		side = minus
+	}
+	return num.Fixed(math.Abs(x), min(places(x), 6)) + "°\u202f" + side
+}
+
+// rowName is what the smallest treated unit is called.
+func rowName(t *trial.Trial) string { return UnitName(&t.Plan.Units[allot.RowUnit(t.Plan)]) }
+
+// ChapterEthics is the statement on approval, severity and what was done for the animals.
+func ChapterEthics(t *trial.Trial) []Passage {
+	p, d := t.Protocol, told(t)
+	if p.Animals == nil {
+		return nil
+	}
+	var s paragraphOf
+	if a := p.Approval; a != nil && said(a.Body) {
+		line := "The trial was approved by " + definiteBody(a.Body)
+		var of []string
+		if said(a.Number) {
+			of = append(of, "number "+phrase(a.Number))
+		}
+		if a.Date != (protocol.Date{}) {
+			of = append(of, dayText(a.Date))
+		}
+		if len(of) > 0 {
+			line += " (" + strings.Join(of, ", ") + ")"
+		}
+		if said(a.Legislation) {
+			line += ", under " + inner(a.Legislation)
+		}
+		s.add("%s", line)
+		switch {
+		case said(a.Severity) && said(a.SeverityObserved) && d == true:
+			if strings.EqualFold(a.Severity, a.SeverityObserved) {
+				s.add("Severity was classed beforehand as %s, and found to be so at the end", inner(a.Severity))
+			} else {
+				s.add("Severity was classed beforehand as %s, and found at the end to be %s", inner(a.Severity), inner(a.SeverityObserved))
+			}
+		case said(a.Severity):
+			s.add("Severity was classed beforehand as %s", inner(a.Severity))
+		}
+	}
+	w := p.Welfare
+	if w == nil {
+		return s
+	}
+	if ends := phrases(w.HumaneEndpoints); len(ends) > 0 {
+		s.add("Humane endpoints %s: %s", d.were(), strings.Join(ends, "; "))
+	}
+	if n := w.Monitoring.TimesPerDay; n > 0 {
+		often := num.Fixed(n, places(n)) + " times a day"
+		if n == math.Trunc(n) && n < 11 {
+			often = times(int(n)) + " a day"
+		}
+		by := ""
+		if said(w.Monitoring.By) {
+			by = " by " + definite(w.Monitoring.By)
+		}
+		s.add("The animals %s looked at %s%s", d.were(), often, by)
+	}
+	for _, x := range []protocol.Text{w.Rescue, w.Refinement, w.Euthanasia} {
+		if said(x.Body) && x.File == "" {
+			s.add("%s", phrase(x.Body))
+		}
+	}
+	if said(w.Fate) {
+		fate := phrase(w.Fate)
+		first, _, _ := strings.Cut(strings.ToLower(fate), " ")
+		if strings.HasSuffix(first, "ed") || slices.Contains([]string{"kept", "sold", "put", "sent"}, first) {
+			s.add("The animals %s %s", d.were(), inner(fate))
+		} else {
+			s.add("%s", fate)
+		}
+	}
+	return s
+}
+
+// definiteBody is the name of a committee in running text.
+func definiteBody(s string) string {
+	s = phrase(s)
+	if strings.HasPrefix(strings.ToLower(s), "the ") {
+		return "the " + s[4:]
+	}
+	return "the " + s
+}
+
+// ChapterDesign tells the layout: the units, which of them received what, the blocks,
+// the draw, the masking, and how the number of units was chosen.
+func ChapterDesign(t *trial.Trial) []Passage {
+	var s paragraphOf
+	p, d := t.Plan, told(t)
+	s.add("The design %s %s: %s", d.was(), designPhrase(p), unitChain(t))
+	for i := range p.Units {
+		u := &p.Units[i]
+		if u.Crosses != nil {
+			var of []string
+			for _, c := range u.Crosses {
+				of = append(of, UnitName(&p.Units[c]))
+			}
+			s.add("Each combination of %s %s one %s, %s in all", And(of), d.was(), UnitName(u), num.Count(u.N))
+		}
+	}
+	if b := blockingText(p, d); b != "" {
+		s.add("%s", b)
+	}
+	s.add("%s", experimentalUnits(p, d))
+	if r := replicationText(p, d); r != "" {
+		s.add("%s", r)
+	}
+	for _, f := range p.Factors {
+		if f.Carried && f.Unit >= 0 {
+			s.add("%s %s not allotted: it is a class that the %s brought along, known before the draw", FactorLabel(&f), d.was(), Plural(UnitName(&p.Units[f.Unit])))
+		}
+	}
+	for i := range p.Units {
+		if u := &p.Units[i]; u.Role == layout.Sampling {
+			name := Plural(UnitName(u))
+			within := ""
+			if u.Within >= 0 {
+				within = " within the same " + UnitName(&p.Units[u.Within])
+			}
+			s.add("The %s%s %s sampling units, and no treatment %s tested over the differences between them", name, within, d.were(), d.was())
+		}
+	}
+	return s
+}
+
+// designPhrase names the design with its article.
+func designPhrase(p *layout.Plan) string {
+	name := p.Design.Name
+	switch {
+	case name == layout.CompletelyRandomized:
+	case strings.HasSuffix(name, "block") || strings.HasSuffix(name, "column"):
+		name = article(name) + " design"
+	case strings.HasSuffix(name, "squares"):
+		name = "one of " + name
+	default:
+		name = article(name)
+	}
+	return strings.Join(append([]string{name}, p.Design.Parts...), ", ")
+}
+
+// unitChain counts the units from the largest to the smallest: "five blocks of four pens
+// (20 pens in all), with six pigs in each pen".
+func unitChain(t *trial.Trial) string {
+	p := t.Plan
+	var children func(u int) []int
+	children = func(u int) []int {
+		var out []int
+		for i := range p.Units {
+			if p.Units[i].Within == u && p.Units[i].Crosses == nil {
+				out = append(out, i)
+			}
+		}
+		return out
+	}
+	deepest, depth := -1, 0
+	var describe func(u, level int, head string) string
+	describe = func(u, level int, head string) string {
+		if level > depth {
+			deepest, depth = u, level
+		}
+		s := head
+		inside := children(u)
+		if len(inside) == 0 {
+			return s
+		}
+		var parts []string
+		for _, c := range inside {
+			lo, hi := perParent(p, c)
+			name := UnitName(&p.Units[c])
+			each := some(lo, name)
+			if lo != hi {
+				each = small(lo) + " to " + some(hi, name)
+			}
+			parts = append(parts, describe(c, level+1, each))
+		}
+		join := " of "
+		if level > 0 || len(inside) > 1 {
+			join = ", each of "
+		}
+		return s + join + And(parts)
+	}
+	var roots []string
+	for _, r := range children(-1) {
+		roots = append(roots, describe(r, 0, some(p.Units[r].N, UnitName(&p.Units[r]))))
+	}
+	s := And(roots)
+	if depth > 0 && deepest >= 0 {
+		s += fmt.Sprintf(" (%s %s in all)", num.Count(p.Units[deepest].N), Plural(UnitName(&p.Units[deepest])))
+	}
+	for i := range p.Units {
+		lo, hi := span(p.Units[i].Animals)
+		if hi == 0 {
+			continue
+		}
+		n := some(lo, animalWord(t))
+		if lo != hi {
+			n = small(lo) + " to " + some(hi, animalWord(t))
+		}
+		s += fmt.Sprintf(", with %s in each %s", n, UnitName(&p.Units[i]))
+	}
+	return s
+}
+
+// blockingText says what blocks were made for.
+func blockingText(p *layout.Plan, d tense) string {
+	var parts []string
+	for i := range p.Units {
+		if b := basis(p, i); said(b) {
+			parts = append(parts, fmt.Sprintf("%s %s formed by %s", Plural(UnitName(&p.Units[i])), d.were(), inner(b)))
+		}
+	}
+	return And(parts)
+}
+
+// experimentalUnits says which unit received what.
+func experimentalUnits(p *layout.Plan, d tense) string {
+	var parts []string
+	for i := range p.Units {
+		if got := factorNames(p, p.Units[i].Receives); got != "" {
+			parts = append(parts, fmt.Sprintf("the %s for %s", UnitName(&p.Units[i]), got))
+		}
+	}
+	if len(parts) == 1 {
+		name, _, _ := strings.Cut(parts[0], " for ")
+		return fmt.Sprintf("%s %s the experimental unit", name, d.was())
+	}
+	return fmt.Sprintf("The experimental unit %s %s", d.was(), And(parts))
+}
+
+// replicationText says how many units each treatment had.
+func replicationText(p *layout.Plan, d tense) string {
+	receiving := -1
+	for i := range p.Units {
+		if len(p.Units[i].Receives) > 0 {
+			if receiving >= 0 {
+				return "" // the chain of units says it
+			}
+			receiving = i
+		}
+	}
+	if receiving < 0 {
+		return ""
+	}
+	a := p.Allocation(receiving)
+	name := UnitName(&p.Units[receiving])
+	if a == nil || len(a.Total) < 2 {
+		return ""
+	}
+	if a.Checks != nil {
+		checks, entries := 0, 0
+		for c, n := range a.Total {
+			if a.Checks[c] {
+				checks = max(checks, n)
+			} else {
+				entries = max(entries, n)
+			}
+		}
+		return fmt.Sprintf("Each check %s %s and each entry %s", d.of("had", "will have"), some(checks, name), some(entries, name))
+	}
+	each := "Each treatment"
+	if len(a.Factors) > 1 {
+		each = "Each combination of treatments"
+	}
+	lo, hi := span(a.Total)
+	if lo == hi {
+		return fmt.Sprintf("%s %s %s", each, d.of("had", "will have"), some(lo, name))
+	}
+	return fmt.Sprintf("Treatments %s %s to %s", d.of("had", "will have"), small(lo), some(hi, name))
+}
+
+// ChapterRandomization tells how treatments were allotted and who knew.
+func ChapterRandomization(t *trial.Trial) []Passage {
+	var s paragraphOf
+	d := told(t)
+	a, method := t.Allotment, phrase(t.Protocol.Randomization.Method)
+	switch {
+	case a != nil && a.Origin != allot.Drawn:
+		if said(method) {
+			s.add("Treatments were allotted as follows: %s", method)
+		}
+		if a.Origin == allot.FromData {
+			s.add("No record of the allotment exists beside the data")
+		}
+	default:
+		s.add("%s", drawText(t, d))
+		if a == nil || len(a.Draws) == 0 {
+			break
+		}
+		x := a.Draws[len(a.Draws)-1]
+		if x.Candidates > 1 {
+			of := ""
+			if len(t.Protocol.Randomization.BalanceOn) > 0 {
+				var on []string
+				for _, c := range t.Protocol.Randomization.BalanceOn {
+					on = append(on, strings.ReplaceAll(c, "_", " "))
+				}
+				of = " for " + And(on)
+			}
+			s.add("Of %s candidate draws the one that was best balanced%s was kept", num.Count(x.Candidates), of)
+		}
+		if len(a.Draws) > 1 {
+			s.add("Treatments were drawn %s; the reasons for drawing again are kept with the record", times(len(a.Draws)))
+		}
+	}
+	if b := t.Protocol.Blinding; b != nil {
+		var masked, open, other []string
+		for _, x := range []struct{ stage, word string }{
+			{stage: "at allotment", word: b.Allocation}, {stage: "during the trial", word: b.Conduct},
+			{stage: "when outcomes were assessed", word: b.Assessment}, {stage: "in the analysis", word: b.Analysis},
+		} {
+			if d == false {
+				x.stage = strings.Replace(x.stage, "were", "are", 1)
+			}
+			switch word := phrase(x.word); {
+			case word == "":
+			case word == "masked":
+				masked = append(masked, x.stage)
+			case word == "open":
+				open = append(open, x.stage)
+			default:
+				other = append(other, x.stage+" ("+word+")")
+			}
+		}
+		line := ""
+		if len(masked) > 0 {
+			line = fmt.Sprintf("Treatments %s masked %s", d.were(), And(masked))
+		}
+		switch {
+		case line != "" && len(open) > 0:
+			line += " and known " + And(open)
+		case len(open) > 0:
+			line = fmt.Sprintf("Treatments %s known %s", d.were(), And(open))
+		}
+		if line != "" {
+			s.add("%s", line)
+		}
+		for _, x := range other {
+			stage, word, _ := strings.Cut(strings.TrimSuffix(x, ")"), " (")
+			s.add("%s: %s", stage, word)
+		}
+		switch holder, opened := definite(b.KeyHolder), dayText(b.Unblinded); {
+		case said(b.KeyHolder) && b.Unblinded != (protocol.Date{}) && d == true:
+			s.add("The key was held by %s and opened on %s", holder, opened)
+		case said(b.KeyHolder):
+			s.add("The key %s held by %s", d.was(), holder)
+		case b.Unblinded != (protocol.Date{}) && d == true:
+			s.add("The key was opened on %s", opened)
+		}
+	}
+	return s
+}
+
+// drawText says at random within what the treatments were allotted, and that the draw
+// can be repeated.
+func drawText(t *trial.Trial, d tense) string {
+	p := t.Plan
+	var parts []string
+	for i := range p.Units {
+		u := &p.Units[i]
+		if len(u.Receives) == 0 {
+			continue
+		}
+		part := fmt.Sprintf("%s to %s", factorNames(p, u.Receives), Plural(UnitName(u)))
+		switch {
+		case u.Crosses != nil:
+			part += " under the restriction of " + Plural(UnitName(&p.Units[u.Crosses[0]]))
+			for _, c := range u.Crosses[1:] {
+				part += " and " + Plural(UnitName(&p.Units[c]))
+			}
+		case u.Within >= 0 && p.Units[u.Within].N > 1:
+			part += " within each " + UnitName(&p.Units[u.Within])
+		}
+		parts = append(parts, part)
+	}
+	s := fmt.Sprintf("%s %s allotted at random", And(parts), d.were())
+	if len(parts) == 1 {
+		name, rest, _ := strings.Cut(parts[0], " to ")
+		s = fmt.Sprintf("%s %s allotted at random to %s", name, d.be(1), rest)
+	}
+	if t.Allotment == nil || len(t.Allotment.Draws) == 0 {
+		return s + "; seed and draw will be recorded"
+	}
+	x := t.Allotment.Draws[len(t.Allotment.Draws)-1]
+	s += fmt.Sprintf(" by a recorded draw (seed text “%s”", x.Seed)
+	if x.On != (protocol.Date{}) {
+		s += ", " + dayText(x.On)
+	}
+	generator, _, _ := strings.Cut(x.Generator, " ")
+	if generator != "" {
+		s += ", generator " + generator
+	}
+	return s + ")"
+}
+
+// ChapterSize tells how the number of units was chosen.
+func ChapterSize(t *trial.Trial, rs *result.Results) []Passage {
+	var s paragraphOf
+	x := t.Protocol.SampleSize
+	if x == nil {
+		return nil
+	}
+	unit := Plural(rowName(t))
+	if rs.SampleSize != nil && rs.SampleSize.Unit != "" {
+		unit = Plural(unitText(t, rs.SampleSize.Unit))
+	}
+	source := ""
+	if said(x.Source) {
+		source = " (" + phrase(x.Source) + ")"
+	}
+	r := t.Protocol.Response(x.Response)
+	of, amountUnit := "", ""
+	if r != nil {
+		of, amountUnit = " in "+ResponseLabelText(r), r.Unit
+		if r.Transform != "" && r.Transform != "none" {
+			amountUnit = ""
+		}
+	}
+	show := func(v float64) string { return num.Unit(num.Fixed(v, places(v)), amountUnit) }
+	var given []string
+	if x.CV != nil {
+		given = append(given, fmt.Sprintf("a coefficient of variation of %s\u202f%%", num.Fixed(*x.CV, places(*x.CV))))
+	}
+	for _, v := range x.SD {
+		where := ""
+		if v.Stratum != "" {
+			where = " between " + Plural(unitText(t, v.Stratum))
+		}
+		sd := show(v.Value)
+		if x.CV == nil && x.DifferencePercent != nil {
+			sd = num.Fixed(v.Value, places(v.Value)) + amountSuffix(amountUnit)
+		}
+		given = append(given, "a standard deviation"+where+" of "+sd)
+	}
+	if x.Attrition != nil && *x.Attrition > 0 {
+		given = append(given, fmt.Sprintf("a loss of %s\u202f%% of units", num.Percent(100**x.Attrition)))
+	}
+	if len(given) > 0 {
+		given[0] = ", given " + given[0]
+	}
+	alpha := t.Protocol.Analysis.Alpha
+	if r != nil && r.Alpha != nil {
+		alpha = *r.Alpha
+	}
+	effect := ""
+	switch {
+	case x.Difference != nil:
+		effect = "a difference of " + show(*x.Difference)
+	case x.DifferencePercent != nil:
+		effect = fmt.Sprintf("a difference of %s\u202f%% of the mean", num.Fixed(*x.DifferencePercent, places(*x.DifferencePercent)))
+	}
+	if effect != "" && x.Contrast == "" {
+		effect += of + " between two means"
+	} else if effect != "" {
+		effect += of + fmt.Sprintf(" in the contrast “%s”", phrase(x.Contrast))
+	}
+	switch {
+	case x.Basis == "power" && x.Margin != nil:
+		s.add("The number of %s was chosen to show equivalence%s within a margin of %s%s%s%s", unit, of, show(*x.Margin), powerText(x), And(given), source)
+	case x.Basis == "power" && effect != "":
+		sides := ""
+		if x.Sides == 1 {
+			sides = ", one-sided"
+		}
+		s.add("The number of %s was chosen to detect %s%s at the %s level%s%s%s", unit, effect, powerText(x), levelText(alpha), sides, And(given), source)
+	case x.Basis == "precision" && x.HalfWidth != nil:
+		s.add("The number of %s was chosen so that the %s confidence interval of a difference%s would reach %s to either side%s%s", unit, confidence(alpha), of, show(*x.HalfWidth), And(given), source)
+	case x.Basis == "error df":
+		s.add("The number of %s was chosen by the degrees of freedom that it leaves for error%s", unit, source)
+	case source != "":
+		s.add("The number of %s was chosen thus: %s", unit, phrase(x.Source))
+	}
+	return s
+}
+
+func amountSuffix(unit string) string {
+	if unit == "" {
+		return ""
+	}
+	return "\u202f" + num.UnitText(unit)
+}
+
+func powerText(x *protocol.SampleSize) string {
+	if x.Power == nil {
+		return ""
+	}
+	return " with a power of " + num.Fixed(*x.Power, 2)
+}
+
+// ChapterTreatments tells what was compared and what it was made of.
+func ChapterTreatments(t *trial.Trial) []Passage {
+	var s paragraphOf
+	p, d := t.Plan, told(t)
+	if len(t.Protocol.Treatments) > 0 {
+		s.add("%s", listedTreatments(t, d))
+	} else {
+		var parts []string
+		for i := range p.Factors {
+			if f := &p.Factors[i]; f.Unit >= 0 && !f.Carried {
+				parts = append(parts, levelsOf(f))
+			}
+		}
+		switch {
+		case len(parts) == 1:
+			s.add("The treatments %s %s", d.were(), parts[0])
+		case len(parts) > 1 && !separate(p):
+			s.add("The treatments %s all combinations of %s", d.were(), series(parts))
+		case len(parts) > 1:
+			s.add("The treatments %s %s, each allotted by itself", d.were(), series(parts))
+		}
+	}
+	var items []string
+	for _, x := range t.Protocol.Items {
+		var of []string
+		if said(x.Batch) {
+			of = append(of, "batch "+phrase(x.Batch))
+		}
+		if said(x.Purity) {
+			of = append(of, "purity "+phrase(x.Purity))
+		}
+		if said(x.Supplier) {
+			of = append(of, "supplied by "+phrase(x.Supplier))
+		}
+		if said(x.Analysed) {
+			of = append(of, "by analysis "+phrase(x.Analysed))
+		}
+		if said(x.Storage) {
+			of = append(of, "stored "+phrase(x.Storage))
+		}
+		line := phrase(x.Name)
+		if len(of) > 0 {
+			line += " (" + strings.Join(of, "; ") + ")"
+		}
+		items = append(items, line)
+	}
+	switch {
+	case len(items) == 1:
+		s.add("The test item %s %s", d.was(), items[0])
+	case len(items) > 1:
+		s.add("The test items %s %s", d.were(), series(items))
+	}
+	for i, x := range t.Protocol.Tables {
+		s.see(fmt.Sprintf("extra-%d", i+1), "%s %s tabulated", captionText(x.Caption), "is")
+	}
+	return s
+}
+
+// captionText is a caption within a sentence, without its unit.
+func captionText(s string) string {
+	s, _, _ = strings.Cut(phrase(s), " (")
+	return s
+}
+
+func separate(p *layout.Plan) bool {
+	for u := range p.Units {
+		if a := p.Allocation(u); a != nil && a.Separate {
+			return true
+		}
+	}
+	return false
+}
+
+// levelsOf is a factor with its levels: "four levels of dried yeast: 0 (basal diet), 20 …".
+func levelsOf(f *layout.Factor) string {
+	describe := map[string]string{}
+	unit := ""
+	if f.Protocol != nil {
+		unit = f.Protocol.Unit
+		for _, x := range f.Protocol.Describe {
+			describe[x.Level] = phrase(x.Text)
+		}
+	}
+	control := map[int]bool{}
+	for _, c := range f.Control {
+		control[c] = true
+	}
+	name := lowerFirst(FactorLabel(f))
+	if len(f.Levels) > 20 {
+		return fmt.Sprintf("%s levels of %s (%s to %s)", num.Count(len(f.Levels)), name, f.Levels[0], f.Levels[len(f.Levels)-1])
+	}
+	var levels []string
+	bare := true
+	for i, l := range f.Levels {
+		if f.Values != nil {
+			l = strings.ReplaceAll(l, "-", "−")
+			if i == len(f.Levels)-1 || describe[f.Levels[i]] != "" {
+				l = num.Unit(l, unit)
+			}
+		}
+		var of []string
+		if x := describe[f.Levels[i]]; x != "" {
+			of = append(of, x)
+		}
+		if control[i] && len(f.Control) < len(f.Levels) {
+			of = append(of, "the control")
+		}
+		if len(of) > 0 {
+			bare = false
+			l += " (" + strings.Join(of, "; ") + ")"
+		}
+		levels = append(levels, l)
+	}
+	count := small(len(f.Levels))
+	list := And(levels)
+	if bare {
+		return fmt.Sprintf("%s levels of %s (%s)", count, name, list)
+	}
+	return fmt.Sprintf("%s levels of %s: %s", count, name, list)
+}
+
+// listedTreatments tells of treatments that are listed rather than crossed.
+func listedTreatments(t *trial.Trial, d tense) string {
+	var checks []string
+	for _, u := range t.Protocol.Units {
+		checks = append(checks, u.Checks...)
+	}
+	var items, others []string
+	for _, x := range t.Protocol.Treatments {
+		var of []string
+		for _, f := range t.Plan.Factors {
+			if l, ok := x.Levels[f.Name]; ok {
+				of = append(of, lowerFirst(FactorLabel(&f))+" "+levelWithUnit(&f, l))
+			}
+		}
+		if x.Control {
+			of = append(of, "the control")
+		}
+		line := phrase(x.Code)
+		if len(of) > 0 {
+			line += " (" + strings.Join(of, ", ") + ")"
+		}
+		if len(checks) > 0 && !slices.Contains(checks, x.Code) {
+			others = append(others, phrase(x.Code))
+			continue
+		}
+		items = append(items, line)
+	}
+	switch {
+	case len(checks) > 0:
+		return fmt.Sprintf("The treatments %s %s, which stood in every block, and %s (%s to %s), each in one %s", d.were(), series(append([]string{}, prefixed("the checks ", items)...)),
+			some(len(others), "entry"), others[0], others[len(others)-1], rowName(t))
+	case len(items) > 20:
+		return fmt.Sprintf("The treatments %s %s, listed in the protocol (%s to %s)", d.were(), num.Count(len(items)), phrase(t.Protocol.Treatments[0].Code), phrase(t.Protocol.Treatments[len(items)-1].Code))
+	}
+	return fmt.Sprintf("The treatments %s %s: %s", d.were(), small(len(items)), series(items))
+}
+
+func prefixed(lead string, items []string) []string {
+	if len(items) == 0 {
+		return items
+	}
+	out := slices.Clone(items)
+	out[0] = lead + out[0]
+	return out
+}
+
+func levelWithUnit(f *layout.Factor, level string) string {
+	if f.Values != nil && f.Protocol != nil {
+		return num.Unit(level, f.Protocol.Unit)
+	}
+	return level
+}
+
+// maxDefined is the number of responses that are defined in sentences; more stand in a
+// table.
+const maxDefined = 8
+
+// ManyResponses tells whether a trial has too many responses to define each in a
+// sentence.
+func ManyResponses(t *trial.Trial) bool { return len(t.Protocol.Responses) > maxDefined }
+
+// ChapterMeasurements tells what was measured and how.
+func ChapterMeasurements(t *trial.Trial) []Passage {
+	var s paragraphOf
+	p, d := t.Protocol, told(t)
+	var primary, secondary []string
+	for i := range p.Responses {
+		r := &p.Responses[i]
+		line := ResponseLabelText(r)
+		if r.Unit != "" {
+			line += ", " + num.UnitText(r.Unit)
+		}
+		var of []string
+		for _, x := range []string{r.How, r.Instrument} {
+			if said(x) {
+				of = append(of, phrase(x))
+			}
+		}
+		if len(strings.Fields(r.Assessed)) >= 3 {
+			of = append(of, "assessed "+assessedText(r.Assessed))
+		}
+		if len(of) > 0 {
+			line += " (" + strings.Join(of, "; ") + ")"
+		}
+		if r.Role == "primary" {
+			primary = append(primary, line)
+		} else {
+			secondary = append(secondary, line)
+		}
+	}
+	if ManyResponses(t) {
+		names := 0
+		for i := range p.Responses {
+			if p.Responses[i].Role == "primary" {
+				primary[names] = ResponseLabelText(&p.Responses[i])
+				names++
+			}
+		}
+		if len(primary) > 0 {
+			s.add("%s %s %s", plural(len(primary), "The primary response", "The primary responses"), d.be(len(primary)), And(primary))
+		}
+		s.see("responses", "All %s responses are defined in a table", num.Count(len(p.Responses)))
+	} else {
+		if len(primary) > 0 {
+			s.add("%s %s %s", plural(len(primary), "The primary response", "The primary responses"), d.be(len(primary)), series(primary))
+		}
+		if len(secondary) > 0 {
+			lead := plural(len(secondary), "The secondary response", "Secondary responses")
+			if len(primary) == 0 {
+				lead = plural(len(secondary), "The response", "The responses")
+			}
+			s.add("%s %s %s", lead, d.be(len(secondary)), series(secondary))
+		}
+	}
+	var computed []string
+	for i := range p.Responses {
+		if r := &p.Responses[i]; r.Compute != "" {
+			computed = append(computed, fmt.Sprintf("%s as %s", ResponseLabelText(r), formula(r.Compute)))
+		}
+	}
+	if len(computed) > 0 && len(computed) <= maxDefined {
+		s.add("%s %s computed: %s", "Values", d.were(), strings.Join(computed, "; "))
+	}
+	for i := range p.Covariates {
+		c := &p.Covariates[i]
+		used := false
+		for _, r := range p.Responses {
+			used = used || slices.Contains(r.Covariates, c.Name)
+		}
+		if !used {
+			continue
+		}
+		name := lowerFirst(CovariateLabel(c))
+		line := fmt.Sprintf("%s %s measured as a covariate", name, d.was())
+		if c.Measured != (protocol.Date{}) {
+			line = fmt.Sprintf("%s %s measured on %s, as a covariate", name, d.was(), dayText(c.Measured))
+		}
+		if mean, sd, n := covariateSpread(t, c.Name); n > 1 {
+			k := num.SEDecimals(sd)
+			line += fmt.Sprintf("; its mean was %s (SD %s, %s values)", num.Unit(num.Fixed(mean, k), c.Unit), num.Unit(num.Fixed(sd, k), c.Unit), num.Count(n))
+		}
+		s.add("%s", line)
+	}
+	if w := p.Welfare; w != nil {
+		var done []string
+		for _, x := range w.Procedures {
+			done = append(done, procedureText(x))
+		}
+		if len(done) > 0 {
+			s.add("Beside the treatments, these procedures %s carried out: %s", d.were(), strings.Join(done, "; "))
+		}
+	}
+	return s
+}
+
+func assessedText(s string) string {
+	s = phrase(s)
+	if strings.HasPrefix(strings.ToLower(s), "by ") {
+		return inner(s)
+	}
+	return "by " + inner(s)
+}
+
+func plural(n int, one, many string) string {
+	if n == 1 {
+		return one
+	}
+	return many
+}
+
+// formula writes an expression of the protocol as a reader would.
+func formula(s string) string {
+	return strings.NewReplacer("_", " ", "*", "×", "-", "−").Replace(phrase(s))
+}
+
+// procedureText is a procedure with how often, where and how it was done.
+func procedureText(x protocol.Procedure) string {
+	name := phrase(x.Name)
+	if name == "" {
+		name = phrase(x.Kind)
+	}
+	var of []string
+	if x.Volume != nil {
+		of = append(of, QuantityText(x.Volume))
+	}
+	if x.Times > 0 {
+		often := times(x.Times)
+		if x.Every != nil {
+			often += ", every " + QuantityText(x.Every)
+		}
+		of = append(of, often)
+	}
+	if x.Duration != nil {
+		of = append(of, "for "+QuantityText(x.Duration))
+	}
+	for _, y := range []string{x.Route, x.How, x.Where} {
+		if said(y) {
+			of = append(of, phrase(y))
+		}
+	}
+	if said(x.Anaesthesia) {
+		of = append(of, "anaesthesia: "+phrase(x.Anaesthesia))
+	}
+	if said(x.Analgesia) {
+		of = append(of, "analgesia: "+phrase(x.Analgesia))
+	}
+	if len(of) > 0 {
+		name += " (" + strings.Join(of, "; ") + ")"
+	}
+	return name
+}
+
+// covariateSpread is the mean and standard deviation of a covariate over the analysed
+// rows of the first response that has it.
+func covariateSpread(t *trial.Trial, name string) (mean, sd float64, n int) {
+	if t.Table == nil {
+		return 0, 0, 0
+	}
+	for i := range t.Table.Responses {
+		r := &t.Table.Responses[i]
+		k := slices.Index(r.Protocol.Covariates, name)
+		if k < 0 || k >= len(r.Covariates) {
+			continue
+		}
+		var v []float64
+		for row, x := range r.Covariates[k] {
+			if r.Status[row] == dataset.Used && !math.IsNaN(x) {
+				v = append(v, x)
+				mean += x
+			}
+		}
+		if len(v) < 2 {
+			return 0, 0, 0
+		}
+		mean /= float64(len(v))
+		for _, x := range v {
+			sd += (x - mean) * (x - mean)
+		}
+		return mean, math.Sqrt(sd / float64(len(v)-1)), len(v)
+	}
+	return 0, 0, 0
+}
+
+// ChapterDepartures tells the rules of exclusion set beforehand, what was left out by
+// them or otherwise, and in what the trial departed from its plan.
+func ChapterDepartures(t *trial.Trial) []Passage {
+	var s paragraphOf
+	p, d := t.Protocol, told(t)
+	if rules := phrases(p.Eligibility.ExclusionRules); len(rules) > 0 {
+		s.add("By rules set before the trial, values %s to be left out for: %s", d.of("were", "are"), strings.Join(rules, "; "))
+	}
+	for _, x := range p.Exclusions {
+		who := UnitNameText(x.Unit)
+		if who == "" {
+			continue
+		}
+		if x.At != "" {
+			who += ", at " + x.At
+		}
+		var names []string
+		for _, n := range x.Responses {
+			if r := p.Response(n); r != nil {
+				names = append(names, ResponseLabelText(r))
+			}
+		}
+		line := fmt.Sprintf("%s was left out of the analysis", who)
+		if len(names) > 0 && len(names) < len(p.Responses) {
+			line += " of " + And(names)
+		}
+		if said(x.Reason) {
+			line += ": " + phrase(x.Reason)
+		}
+		var of []string
+		if said(x.Rule) {
+			of = append(of, "rule: "+phrase(x.Rule))
+		} else {
+			of = append(of, "no rule set beforehand covers it")
+		}
+		if x.BeforeUnblinding != nil {
+			if *x.BeforeUnblinding {
+				of = append(of, "decided before the treatments were known")
+			} else {
+				of = append(of, "decided when the treatments were known")
+			}
+		}
+		s.add("%s (%s)", line, strings.Join(of, "; "))
+	}
+	if n := len(p.Corrections); n > 0 && d == true {
+		s.add("%s %s corrected against the records before the analysis", some(n, "written value"), d.be(n))
+	}
+	for _, x := range p.Deviations {
+		line := phrase(x.What)
+		if x.On != (protocol.Date{}) {
+			line = "On " + dayText(x.On) + " the trial departed from its plan: " + inner(x.What)
+		} else {
+			line = "The trial departed from its plan: " + inner(line)
+		}
+		if said(x.Effect) {
+			line += " (effect: " + inner(x.Effect) + ")"
+		}
+		s.add("%s", line)
+	}
+	for _, x := range p.Amendments {
+		line := "The plan was changed"
+		if x.On != (protocol.Date{}) {
+			line += " on " + dayText(x.On)
+		}
+		line += ": " + inner(x.What)
+		if said(x.Why) {
+			line += " (" + phrase(x.Why) + ")"
+		}
+		s.add("%s", line)
+	}
+	return s
+}
+
+// ChapterStatements are those on registration, data, funding and interests.
+func ChapterStatements(t *trial.Trial) []Passage {
+	var s paragraphOf
+	x := t.Protocol.Trial
+	if r := phrase(x.Registration); r != "" && r != "…" {
+		s.add("Registration: %s", r)
+	}
+	if said(x.DataAccess) {
+		s.add("Access to the data: %s", inner(x.DataAccess))
+	}
+	if said(x.Funding) {
+		s.add("Funding: %s", phrase(x.Funding))
+	}
+	if i := phrase(x.Interests); i != "" && i != "…" {
+		s.add("Interests: %s", i)
+	}
+	return s
+}
