@@ -507,7 +507,7 @@ func (s *setter) code(c doc.Code, w where) []box {
 		for first := true; first || clean != ""; first = false {
 			part := head(clean, most)
 			clean = clean[len(part):]
-			a := atom{}
+			a := atom{forced: clean == ""} // the row, not only the line, ends here
 			for _, run := range face.Get(face.Mono, false, false).Runs(part) {
 				f := frag{face: run.Face, text: run.Text, size: st.size, colour: st.colour, width: run.Face.Width(run.Text, st.size)}
 				a.frags = append(a.frags, f)

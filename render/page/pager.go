@@ -392,6 +392,9 @@ func (p *pager) finish() *Book {
 		if e.number != "" {
 			title = strings.TrimSpace(e.number + " " + title)
 		}
+		if strings.TrimSpace(title) == "" {
+			continue
+		}
 		book.Outline = append(book.Outline, Entry{Level: e.level, Title: title, Place: place})
 	}
 	p.checkLinks(book)

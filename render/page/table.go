@@ -581,6 +581,7 @@ func (g *grid) rowBoxes(r row, f form, lead float64, w where, table *Element, ta
 		if r.head && n == 1 {
 			down = most - len(c.lines) // heads stand on the rule below them
 		}
+		inked := false
 		for i, l := range c.lines {
 			b, y := &boxes[0], rowPad+base+float64(i+down)*lead
 			if n > 1 {
@@ -590,10 +591,12 @@ func (g *grid) rowBoxes(r row, f form, lead float64, w where, table *Element, ta
 				}
 			}
 			x := w.x + f.x[c.cell.col] + g.offset(c.cell, l, len(c.lines), c.width, r, k)
-			b.ops = append(b.ops, enclose(ce, l.draw(x, y))...)
+			ops := enclose(ce, l.draw(x, y))
+			inked = inked || len(ops) > 0
+			b.ops = append(b.ops, ops...)
 			b.notes = append(b.notes, l.notes()...)
 		}
-		if len(c.lines) == 0 {
+		if !inked {
 			boxes[0].ops = append(boxes[0].ops, Begin{ce}, End{})
 		}
 	}
