@@ -9,6 +9,7 @@ import (
 	"encoding/xml"
 	"errors"
 	"fmt"
+	"regexp"
 	"slices"
 	"sort"
 	"strconv"
@@ -37,7 +38,7 @@ func finish(d *drawn, book *page.Book, m meta, files []Attachment) ([]byte, erro
 
 // finish does what remains once the fonts are done.
 func (f *finisher) finish(book *page.Book, t *tree, m meta, files []Attachment) ([]byte, error) {
-	f.book, f.tree, f.meta, f.links, f.files, f.names = book, t, m, make([][]int, len(book.Pages)), nil, nil
+	f.book, f.tree, f.meta, f.links, f.files, f.names = book, t, m.printable(), make([][]int, len(book.Pages)), nil, nil
 	// The library ends with the information and the catalog.
 	f.catalog, f.info = len(f.objects)-1, len(f.objects)-2
 	for _, step := range []func() error{
@@ -206,12 +207,19 @@ func subsetName(name string, set *runeSet) string {
 	return string(tag) + "+" + name
 }
 
+// toUnicode maps the codes that are used to the runes that they are, in ranges within
+// which only the last byte changes.
 func toUnicode(set *runeSet) []byte {
-	var blocks []int
-	for b := 0; b < 256; b++ {
-		// The library keeps the first codes in every subset.
-		if b == 0 || set[4*b]|set[4*b+1]|set[4*b+2]|set[4*b+3] != 0 {
-			blocks = append(blocks, b)
+	var ranges [][2]rune
+	for r := rune(0); r <= 0xFFFF; r++ {
+		switch n := len(ranges); {
+		case r&63 == 0 && set[r>>6] == 0:
+			r += 63
+		case !set.has(r):
+		case n > 0 && ranges[n-1][1] == r-1 && r&255 != 0:
+			ranges[n-1][1] = r
+		default:
+			ranges = append(ranges, [2]rune{r, r})
 		}
 	}
 	var b bytes.Buffer
@@ -219,10 +227,10 @@ func toUnicode(set *runeSet) []byte {
 		"/CIDSystemInfo <</Registry (Adobe) /Ordering (UCS) /Supplement 0>> def\n" +
 		"/CMapName /Adobe-Identity-UCS def\n/CMapType 2 def\n" +
 		"1 begincodespacerange\n<0000> <FFFF>\nendcodespacerange\n")
-	for part := range slices.Chunk(blocks, 100) {
+	for part := range slices.Chunk(ranges, 100) {
 		fmt.Fprintf(&b, "%d beginbfrange\n", len(part))
 		for _, v := range part {
-			fmt.Fprintf(&b, "<%02X00> <%02XFF> <%02X00>\n", v, v, v)
+			fmt.Fprintf(&b, "<%04X> <%04X> <%04X>\n", v[0], v[1], v[0])
 		}
 		b.WriteString("endbfrange\n")
 	}
@@ -287,12 +295,15 @@ func (f *finisher) link(pg *page.Page, l page.Link, key int) string {
 	} else {
 		action = "/A <</S /URI /URI " + literal(uri(l.Dest)) + ">>"
 	}
-	what := l.Dest
-	if l.Element != nil && l.Element.Alt != "" {
-		what = l.Element.Alt
+	what := ""
+	if l.Element != nil {
+		what = printable(l.Element.Alt)
+	}
+	if strings.TrimSpace(what) == "" {
+		what = uri(l.Dest)
 	}
 	return fmt.Sprintf("<</Type /Annot /Subtype /Link /F 4 /Border [0 0 0] /StructParent %d /Rect %s /Contents %s %s>>",
-		key, rect, textString(printable(what)), action)
+		key, rect, textString(what), action)
 }
 
 func (f *finisher) dest(at page.Place) string {
@@ -481,6 +492,20 @@ func (f *finisher) attach(files []Attachment) error {
 	return nil
 }
 
+// language is the shape of a tag of a language, RFC 5646, section 2.1.
+var language = regexp.MustCompile(`^[A-Za-z]{2,8}(-[A-Za-z0-9]{1,8})*$`)
+
+// printable drops what metadata cannot hold.
+func (m meta) printable() meta {
+	for _, s := range []*string{&m.title, &m.author, &m.options.Subject, &m.options.Keywords, &m.options.Producer} {
+		*s = printable(*s)
+	}
+	if !language.MatchString(m.lang) {
+		m.lang = ""
+	}
+	return m
+}
+
 // date is the date of making as PDF writes it, empty where there is none.
 func (m meta) date() string {
 	if m.options.Date.IsZero() {
@@ -503,7 +528,7 @@ func (f *finisher) root() error {
 		{"Keywords", m.options.Keywords}, {"Producer", m.options.Producer},
 	} {
 		if kv[1] != "" {
-			fmt.Fprintf(&info, "/%s %s\n", kv[0], textString(printable(kv[1])))
+			fmt.Fprintf(&info, "/%s %s\n", kv[0], textString(kv[1]))
 		}
 	}
 	if date := m.date(); date != "" {
@@ -559,7 +584,7 @@ func printable(s string) string {
 func (m meta) xmp() []byte {
 	text := func(s string) string {
 		var b bytes.Buffer
-		xml.EscapeText(&b, []byte(printable(s))) // a bytes.Buffer takes everything
+		xml.EscapeText(&b, []byte(s)) // a bytes.Buffer takes everything
 		return b.String()
 	}
 	var b bytes.Buffer
@@ -594,7 +619,12 @@ func (m meta) xmp() []byte {
 	return b.Bytes()
 }
 
-// bytes writes the objects in the order of their numbers, the table and the trailer.
+// most is how many objects are packed together: a reader unpacks all for one.
+const most = 1000
+
+// bytes writes the file: objects with a stream one by one, all others packed together
+// in streams of objects, since those of the structure are many and alike (ISO 32000-1,
+// clauses 7.5.7 and 7.5.8), and the table that tells where each is.
 func (f *finisher) bytes() []byte {
 	size := 0
 	for _, o := range f.objects {
@@ -603,20 +633,49 @@ func (f *finisher) bytes() []byte {
 	b := make([]byte, 0, size+1024)
 	// Four bytes above 127 tell programs that move files that this one is binary.
 	b = append(b, "%PDF-1.7\n%\xE2\xE3\xCF\xD3\n"...)
-	offsets := make([]int, len(f.objects))
-	for i := 1; i < len(f.objects); i++ {
-		offsets[i] = len(b)
-		b = strconv.AppendInt(b, int64(i), 10)
+	put := func(number int, body []byte) {
+		b = strconv.AppendInt(b, int64(number), 10)
 		b = append(b, " 0 obj\n"...)
-		b = append(b, f.objects[i]...)
+		b = append(b, body...)
 		b = append(b, "\nendobj\n"...)
 	}
-	id := md5.Sum(b)
-	table := len(b)
-	b = fmt.Appendf(b, "xref\n0 %d\n0000000000 65535 f \n", len(f.objects))
-	for _, o := range offsets[1:] {
-		b = fmt.Appendf(b, "%010d 00000 n \n", o)
+	// An entry of the table: kind, offset or stream of objects, index in that.
+	type entry struct {
+		kind, index int
+		at          int
 	}
-	return fmt.Appendf(b, "trailer\n<</Size %d /Root %d 0 R /Info %d 0 R /ID [<%x> <%x>]>>\nstartxref\n%d\n%%%%EOF\n",
-		len(f.objects), f.catalog, f.info, id, id, table)
+	table := make([]entry, len(f.objects), len(f.objects)+len(f.objects)/most+2)
+	var small []int
+	for i := 1; i < len(f.objects); i++ {
+		if !bytes.HasSuffix(f.objects[i], []byte("\nendstream")) {
+			small = append(small, i)
+			continue
+		}
+		table[i] = entry{kind: 1, at: len(b)}
+		put(i, f.objects[i])
+	}
+	for group := range slices.Chunk(small, most) {
+		var head, body []byte
+		for k, i := range group {
+			table[i] = entry{kind: 2, at: len(table), index: k}
+			head = fmt.Appendf(head, "%d %d ", i, len(body))
+			body = append(append(body, f.objects[i]...), '\n')
+		}
+		number := len(table)
+		table = append(table, entry{kind: 1, at: len(b)})
+		put(number, f.streamObject(fmt.Sprintf("/Type /ObjStm /N %d /First %d", len(group), len(head)), append(head, body...), true))
+	}
+	id := md5.Sum(b)
+	start := len(b)
+	table = append(table, entry{kind: 1, at: start})
+	var rows []byte
+	for _, e := range table {
+		rows = append(rows, byte(e.kind))
+		rows = binary.BigEndian.AppendUint32(rows, uint32(e.at))
+		rows = binary.BigEndian.AppendUint16(rows, uint16(e.index))
+	}
+	binary.BigEndian.PutUint16(rows[5:], 65535) // as the first entry has it
+	put(len(table)-1, f.streamObject(fmt.Sprintf("/Type /XRef /Size %d /W [1 4 2] /Root %d 0 R /Info %d 0 R /ID [<%x> <%x>]",
+		len(table), f.catalog, f.info, id, id), rows, true))
+	return fmt.Appendf(b, "startxref\n%d\n%%%%EOF\n", start)
 }

@@ -32,6 +32,7 @@ type Attachment struct {
 type Options struct {
 	// Date stands in the metadata as the time of making, in UTC; zero: none.
 	Date     time.Time
+	Lang     string // BCP 47, of pages that do not come from a document
 	Producer string // name and version of the program
 	Subject  string
 	Keywords string

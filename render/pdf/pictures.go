@@ -66,7 +66,7 @@ func Pictures(pics []Picture, opt Options) ([][]byte, error) {
 				return nil, err
 			}
 		}
-		file, err := f.finish(&page.Book{Pages: book.Pages[i : i+1]}, drawn.trees[i], meta{title: p.Title, options: opt}, nil)
+		file, err := f.finish(&page.Book{Pages: book.Pages[i : i+1]}, drawn.trees[i], meta{lang: opt.Lang, title: p.Title, options: opt}, nil)
 		if err != nil {
 			return nil, err
 		}

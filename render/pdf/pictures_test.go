@@ -35,6 +35,7 @@ func TestPictures(t *testing.T) {
 		if !bytes.Equal(file, again[i]) {
 			t.Errorf("picture %d is not the same twice", i)
 		}
+		file = pdf.Expand(file)
 		if n := bytes.Count(file, []byte("<</Type /Page\n")); n != 1 {
 			t.Errorf("picture %d has %d pages", i, n)
 		}

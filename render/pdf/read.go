@@ -17,9 +17,9 @@ import (
 const mostAttached = 512 << 20
 
 // Attachments reads the files that ride in a PDF that Write wrote, in the order of
-// their names. It refuses a file of another shape (compressed object tables, updates
-// after the end), a file whose bytes do not agree with their checksum, and more than
-// 512 MiB of contents.
+// their names; earlier releases wrote the table of objects in plain text. It refuses a
+// file of another shape (updates after the end, predictors), a file whose bytes do not
+// agree with their checksum, and more than 512 MiB of contents.
 func Attachments(data []byte) ([]Attachment, error) {
 	r, err := open(data)
 	if err != nil {
@@ -44,8 +44,20 @@ type (
 type reader struct {
 	data    []byte
 	offsets map[int]int
+	packed  map[int]place
+	streams map[int]*bundle
 	trailer dict
 	left    int64 // bytes that may still be unpacked
+}
+
+// place is where in a stream of objects an object is.
+type place struct{ stream, index int }
+
+// bundle is a stream of objects, unpacked.
+type bundle struct {
+	data    []byte
+	numbers []int
+	offsets []int
 }
 
 var (
@@ -57,7 +69,7 @@ func open(data []byte) (*reader, error) {
 	if !bytes.HasPrefix(data, []byte("%PDF-")) {
 		return nil, errors.New("not a PDF")
 	}
-	r := &reader{data: data, offsets: map[int]int{}, left: mostAttached}
+	r := &reader{data: data, offsets: map[int]int{}, packed: map[int]place{}, streams: map[int]*bundle{}, left: mostAttached}
 	tail := max(len(data)-1024, 0)
 	i := bytes.LastIndex(data[tail:], []byte("startxref"))
 	if i < 0 {
@@ -69,7 +81,14 @@ func open(data []byte) (*reader, error) {
 		return nil, errOther
 	}
 	p.at = table
-	if w, err := p.value(0); err != nil || w != word("xref") {
+	first, err := p.token()
+	if err != nil {
+		return nil, errOther
+	}
+	if number, ok := first.(float64); ok {
+		return r, r.table(int(number), table)
+	}
+	if first != word("xref") {
 		return nil, errOther
 	}
 	for {
@@ -114,8 +133,138 @@ func open(data []byte) (*reader, error) {
 	return r, nil
 }
 
+// table reads a table of objects that is a stream, object n at an offset.
+func (r *reader) table(n, offset int) error {
+	r.offsets[n] = offset
+	v, raw, err := r.object(n)
+	if err != nil {
+		return err
+	}
+	d, ok := v.(dict)
+	if !ok || raw == nil || d["Type"] != nameValue("XRef") || d["Index"] != nil || d["Prev"] != nil {
+		return errOther
+	}
+	rows, err := r.unpack(d, raw)
+	if err != nil {
+		return err
+	}
+	widths, ok := d["W"].(array)
+	if !ok || len(widths) != 3 {
+		return errOther
+	}
+	var w [3]int
+	for i, v := range widths {
+		f, ok := v.(float64)
+		if !ok || f < 1 || f > 4 || f != float64(int(f)) {
+			return errOther
+		}
+		w[i] = int(f)
+	}
+	size := w[0] + w[1] + w[2]
+	if len(rows) > 16<<20 || len(rows)%size != 0 || d["Size"] != float64(len(rows)/size) {
+		return errOther
+	}
+	delete(r.offsets, n)
+	for i := 0; i*size < len(rows); i++ {
+		row := rows[i*size : (i+1)*size]
+		var field [3]int
+		for k := range field {
+			for _, c := range row[:w[k]] {
+				field[k] = field[k]<<8 | int(c)
+			}
+			row = row[w[k]:]
+		}
+		switch field[0] {
+		case 1:
+			r.offsets[i] = field[1]
+		case 2:
+			r.packed[i] = place{stream: field[1], index: field[2]}
+		}
+	}
+	r.trailer = d
+	return nil
+}
+
+// unpack gives the contents of a stream.
+func (r *reader) unpack(d dict, raw []byte) ([]byte, error) {
+	switch {
+	case d["Filter"] == nil:
+		return raw, nil
+	case d["Filter"] != nameValue("FlateDecode") || d["DecodeParms"] != nil:
+		return nil, errOther
+	}
+	z, err := zlib.NewReader(bytes.NewReader(raw))
+	if err != nil {
+		return nil, err
+	}
+	defer z.Close()
+	data, err := io.ReadAll(io.LimitReader(z, r.left+1))
+	if err != nil {
+		return nil, err
+	}
+	if r.left -= int64(len(data)); r.left < 0 {
+		return nil, fmt.Errorf("it holds more than %d MiB", mostAttached>>20)
+	}
+	return data, nil
+}
+
+// bundle reads a stream of objects.
+func (r *reader) bundle(n int) (*bundle, error) {
+	if b := r.streams[n]; b != nil {
+		return b, nil
+	}
+	if _, ok := r.packed[n]; ok {
+		return nil, errOther // none stands in another
+	}
+	v, raw, err := r.object(n)
+	if err != nil {
+		return nil, err
+	}
+	d, ok := v.(dict)
+	if !ok || raw == nil || d["Type"] != nameValue("ObjStm") {
+		return nil, errOther
+	}
+	count, ok1 := d["N"].(float64)
+	first, ok2 := d["First"].(float64)
+	data, err := r.unpack(d, raw)
+	if err != nil {
+		return nil, err
+	}
+	if !ok1 || !ok2 || count < 0 || count > min(float64(len(data))/2, 1e6) || first < 0 || first > float64(len(data)) {
+		return nil, errOther
+	}
+	b := &bundle{data: data}
+	p := &parser{data: data[:int(first)]}
+	for range int(count) {
+		number, err := p.whole()
+		if err != nil {
+			return nil, errOther
+		}
+		offset, err := p.whole()
+		if err != nil || offset < 0 || offset >= len(data)-int(first) {
+			return nil, errOther
+		}
+		b.numbers = append(b.numbers, number)
+		b.offsets = append(b.offsets, int(first)+offset)
+	}
+	r.streams[n] = b
+	return b, nil
+}
+
 // object gives an object and, where it is one, the raw bytes of its stream.
 func (r *reader) object(n int) (any, []byte, error) {
+	if at, ok := r.packed[n]; ok {
+		b, err := r.bundle(at.stream)
+		if err != nil {
+			return nil, nil, err
+		}
+		if at.index >= len(b.numbers) || b.numbers[at.index] != n {
+			return nil, nil, errOther
+		}
+		p := &parser{data: b.data, at: b.offsets[at.index]}
+		v, err := p.value(0)
+		return v, nil, err
+	}
 	offset, ok := r.offsets[n]
 	if !ok || offset < 0 || offset >= len(r.data) {
 		return nil, nil, errOther
@@ -239,20 +388,8 @@ func (r *reader) attachment(spec dict) (Attachment, error) {
 	if s, ok := d["Subtype"].(nameValue); ok {
 		a.MIME = string(s)
 	}
-	if d["Filter"] != nameValue("FlateDecode") {
-		return a, errOther
-	}
-	z, err := zlib.NewReader(bytes.NewReader(raw))
-	if err != nil {
+	if a.Data, err = r.unpack(d, raw); err != nil {
 		return a, fmt.Errorf("unpacking %q: %w", a.Name, err)
-	}
-	defer z.Close()
-	a.Data, err = io.ReadAll(io.LimitReader(z, r.left+1))
-	if err != nil {
-		return a, fmt.Errorf("unpacking %q: %w", a.Name, err)
-	}
-	if r.left -= int64(len(a.Data)); r.left < 0 {
-		return a, fmt.Errorf("unpacking %q: the attachments hold more than %d MiB", a.Name, mostAttached>>20)
 	}
 	params, err := r.dict(d["Params"])
 	if err != nil {

@@ -362,7 +362,11 @@ func (n *node) attributes(b []byte) []byte {
 		}
 		b = append(b, "/A <</O /List /ListNumbering /"+how+">> "...)
 	case "Figure":
-		b = append(b, "/Alt "+textString(printable(el.Alt))+" /A <</O /Layout /Placement /Block /BBox ["+numbers(n.box[:]...)+"]>> "...)
+		alt := printable(el.Alt)
+		if strings.TrimSpace(alt) == "" {
+			alt = "Figure"
+		}
+		b = append(b, "/Alt "+textString(alt)+" /A <</O /Layout /Placement /Block /BBox ["+numbers(n.box[:]...)+"]>> "...)
 	case "Note":
 		b = append(b, "/ID "+literal(n.id())+" "...)
 	}
