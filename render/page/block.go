@@ -451,8 +451,10 @@ func (s *setter) list(l doc.List, w where) []box {
 	el := s.element(Element{Role: List, Ordered: l.Ordered, Parent: w.parent})
 	step := min(listStep, w.width/5)
 	if l.Ordered {
-		last := textWidth(fmt.Sprintf("%d.", l.Start+len(l.Items)), serif(w.size))
-		step = min(max(step, last+6), w.width/2)
+		for i := range l.Items {
+			step = max(step, textWidth(fmt.Sprintf("%d.", l.Start+i), serif(w.size))+6)
+		}
+		step = min(step, w.width/2)
 	}
 	for i, content := range l.Items {
 		it := s.element(Element{Role: Item, Parent: el})

@@ -163,26 +163,35 @@ func (w *words) flush(glue float64, breakable, forced bool) {
 
 // text splits s at spaces and at the places where a word may be broken.
 func (w *words) text(s string, st style) {
-	start := 0
+	start, word := 0, 0 // where what is not yet added begins, and the word it is of
+	long := longWord(s)
 	var before rune
 	for i, r := range s {
-		if i < start {
-			continue
+		end := i + utf8.RuneLen(r)
+		if r == utf8.RuneError {
+			_, size := utf8.DecodeRuneInString(s[i:])
+			end = i + size
 		}
 		switch {
-		case r == ' ' || r == '\t' || r == '\n' || r == '\r':
+		case blank(r):
 			w.add(s[start:i], st)
 			f := face.Get(st.family, st.bold, st.italic)
 			w.flush(float64(f.Advance(' '))*st.size/1000, true, false)
-			start = i + 1
+			start, word = end, end
+			long = longWord(s[word:])
 		case r == '\u200B':
 			w.add(s[start:i], st)
 			w.flush(0, true, false)
-			start = i + len("\u200B")
-		case lastOfWord(r, st.code):
-			end := i + utf8.RuneLen(r)
+			start = end
+		case ideograph(r):
+			w.add(s[start:i], st)
+			w.flush(0, true, false)
+			w.add(s[i:end], st)
+			w.flush(0, true, false)
+			start = end
+		case lastOfWord(r, st.code || long):
 			next, _ := utf8.DecodeRuneInString(s[end:])
-			if mayBreak(before, r, next, st.code) {
+			if mayBreak(before, r, next, st.code || long) {
 				w.add(s[start:end], st)
 				w.flush(0, true, false)
 				start = end
@@ -190,14 +199,46 @@ func (w *words) text(s string, st style) {
 		}
 		before = r
 	}
-	w.add(s[min(start, len(s)):], st)
+	w.add(s[start:], st)
 }
 
+// blank tells whether r is set as a space.
+func blank(r rune) bool {
+	switch r {
+	case ' ', '\t', '\n', '\r', '\u0085', '\u2028', '\u2029':
+		return true
+	}
+	return false
+}
+
+// ideograph tells whether r is of a script that is written without spaces, where a line
+// may end after each sign.
+func ideograph(r rune) bool {
+	return r >= 0x2E80 && unicode.In(r, unicode.Han, unicode.Hiragana, unicode.Katakana, unicode.Hangul)
+}
+
+const longest = 30 // runes of a word; a longer one is an address or a path
+
+// longWord tells whether s begins with a word too long to be one.
+func longWord(s string) bool {
+	n := 0
+	for _, r := range s {
+		if blank(r) {
+			return false
+		}
+		if n++; n > longest {
+			return true
+		}
+	}
+	return false
+}
+
+// lastOfWord tells whether a line may end after r, within a word or a code.
 func lastOfWord(r rune, code bool) bool {
 	switch r {
 	case '-', '/', '–', '—', '\u2010':
 		return true
-	case '_', '.', '=', ',', ':':
+	case '_', '.', '=', ',', ':', '&', '?', '#':
 		return code
 	}
 	return false
@@ -209,8 +250,10 @@ func mayBreak(before, r, next rune, code bool) bool {
 	switch {
 	case next == utf8.RuneError || next == 0 || unicode.IsSpace(next) || before == 0 || unicode.IsSpace(before):
 		return false
-	case code:
+	case code && (r != '.' && r != ',' || !unicode.IsDigit(next)):
 		return unicode.IsLetter(next) || unicode.IsDigit(next)
+	case code:
+		return false
 	case r == '—':
 		return true
 	case r == '/':

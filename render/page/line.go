@@ -2,15 +2,17 @@ package page
 
 import (
 	"math"
+	"unicode/utf8"
 
 	"penwright/render/face"
 )
 
-// line is a run of atoms set on one line; space is added to each word space.
+// line is a run of atoms set on one line. Each word space grows by stretch of its
+// natural width.
 type line struct {
-	atoms []atom
-	space float64
-	width float64 // natural, without the glue at its end
+	atoms   []atom
+	stretch float64
+	width   float64 // natural, without the glue at its end
 }
 
 // splitLong breaks up atoms wider than the measure, between runes.
@@ -93,16 +95,31 @@ func paragraph(atoms []atom, measure float64, justify bool) []line {
 				ends = fit(part, measure, false)
 			}
 			if ends == nil {
-				// What is held together is wider than the measure.
-				for k := range part {
-					part[k].breakable = true
-				}
+				loosen(part, measure)
 				ends = fit(part, measure, false)
 			}
 			out = append(out, makeLines(part, ends, measure, even)...)
 		}
 	}
 	return out
+}
+
+// loosen lets lines break within what is held together but wider than the measure.
+func loosen(atoms []atom, measure float64) {
+	start, width := 0, 0.0
+	for i := range atoms {
+		if i > start {
+			width += atoms[i-1].glue
+		}
+		width += atoms[i].width
+		if i > start && width > measure {
+			atoms[i-1].breakable = true
+			start, width = i, atoms[i].width
+		}
+		if atoms[i].breakable {
+			start, width = i+1, 0
+		}
+	}
 }
 
 // fit gives the ends of the lines; nil where there is no way.
@@ -130,6 +147,9 @@ func fit(atoms []atom, measure float64, justify bool) []int {
 				continue
 			}
 			d, ok := demerits(width, glue, measure, justify, j == n)
+			if !ok && !justify && i == j-1 {
+				ok = true // a rune wider than the measure
+			}
 			if !ok {
 				continue
 			}
@@ -163,10 +183,10 @@ func demerits(width, glue, measure float64, justify, last bool) (d float64, ok b
 	spare := measure - width
 	if !justify {
 		if last {
-			return 0, spare > -tolerance || glue == 0
+			return 0, spare > -tolerance
 		}
 		r := 10 * spare / measure
-		return 1 + math.Abs(r*r*r), spare > -tolerance || glue == 0
+		return 1 + math.Abs(r*r*r), spare > -tolerance
 	}
 	switch {
 	case spare < 0:
@@ -194,18 +214,16 @@ func makeLines(atoms []atom, ends []int, measure float64, even bool) []line {
 	start := 0
 	for k, end := range ends {
 		l := line{atoms: atoms[start:end]}
-		glues := 0
+		glue := 0.0
 		for i, a := range l.atoms {
 			l.width += a.width
 			if i < len(l.atoms)-1 {
 				l.width += a.glue
-				if a.glue > 0 {
-					glues++
-				}
+				glue += a.glue
 			}
 		}
-		if spare := measure - l.width; glues > 0 && (even && k < len(ends)-1 || spare < 0) {
-			l.space = spare / float64(glues)
+		if spare := measure - l.width; glue > 0 && (even && k < len(ends)-1 || even && spare < 0) {
+			l.stretch = spare / glue
 		}
 		lines = append(lines, l)
 		start = end
@@ -241,11 +259,11 @@ func (l line) draw(x, y float64) []Op {
 	p := pen{x: x}
 	for i, a := range l.atoms {
 		for _, f := range a.frags {
-			p.put(f, y, l.space)
+			p.put(f, y, l.stretch)
 		}
 		switch {
 		case i < len(l.atoms)-1 && a.glue > 0:
-			p.space(a.glue, l.space)
+			p.space(a.glue, l.stretch)
 		case i == len(l.atoms)-1 && (a.glue > 0 || a.forced) && len(p.text) > 0:
 			p.text = append(p.text, ' ') // who copies the text has a word end here
 			if p.cur.actual != "" {
@@ -253,18 +271,23 @@ func (l line) draw(x, y float64) []Op {
 			}
 		}
 	}
-	p.flush(y, l.space)
+	p.flush(y, l.stretch)
 	for _, k := range p.links {
 		p.ops = append(p.ops, k)
 	}
 	return p.ops
 }
 
-func (p *pen) put(f frag, y, space float64) {
+func (p *pen) put(f frag, y, stretch float64) {
 	joins := !p.closed && p.cur.face == f.face && p.cur.size == f.size && p.cur.rise == f.rise &&
 		p.cur.colour == f.colour && p.cur.target == f.target && p.cur.actual == "" && f.actual == ""
+	if joins && len(p.text) > 0 {
+		// They were measured apart, and the writer kerns what it is given as one.
+		last, _ := utf8.DecodeLastRune(p.text)
+		joins = f.face.Kern(last, first(f.text)) == 0
+	}
 	if !joins {
-		p.flush(y, space)
+		p.flush(y, stretch)
 		p.start, p.cur = p.x, f
 	}
 	p.text = append(p.text, f.text...)
@@ -288,12 +311,12 @@ func (p *pen) link(f frag, y float64) {
 
 // space writes a real space, for those who copy the text. One of another width than
 // the piece has ends the piece, so that what follows starts where it was measured to.
-func (p *pen) space(glue, extra float64) {
-	p.x += glue + extra
+func (p *pen) space(glue, stretch float64) {
+	p.x += glue * (1 + stretch)
 	if len(p.text) == 0 {
 		return
 	}
-	own := float64(p.cur.face.Advance(' ')) * p.cur.size / 1000
+	own := p.cur.blank()
 	p.closed = p.cur.actual != "" || math.Abs(own-glue) > 1e-6
 	p.text = append(p.text, ' ')
 	if p.cur.actual != "" {
@@ -301,11 +324,11 @@ func (p *pen) space(glue, extra float64) {
 	}
 }
 
-func (p *pen) flush(y, space float64) {
+func (p *pen) flush(y, stretch float64) {
 	if len(p.text) > 0 {
 		set := Text{
 			X: p.start, Y: y - p.cur.rise, Face: p.cur.face, Size: p.cur.size, Colour: p.cur.colour,
-			Text: string(p.text), Space: space, Actual: p.cur.actual,
+			Text: string(p.text), Space: stretch * p.cur.blank(), Actual: p.cur.actual,
 		}
 		if p.cur.target != nil {
 			p.ops = append(p.ops, Begin{p.cur.target}, set, End{})
@@ -315,6 +338,9 @@ func (p *pen) flush(y, space float64) {
 	}
 	p.text, p.cur, p.closed = p.text[:0], frag{}, false
 }
+
+// blank is the natural width of a word space as f has it.
+func (f frag) blank() float64 { return float64(f.face.Advance(' ')) * f.size / 1000 }
 
 // textWidth measures a plain text in one style.
 func textWidth(s string, st style) float64 {

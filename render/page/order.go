@@ -45,7 +45,7 @@ func (l line) ordered() line {
 			signs = append(signs, sign{r: ' ', glue: a.glue})
 		}
 	}
-	out := line{space: l.space, width: l.width}
+	out := line{stretch: l.stretch, width: l.width}
 	var cur atom
 	var of *frag
 	for _, s := range visual(signs) {
@@ -66,9 +66,14 @@ func (l line) ordered() line {
 		}
 		f := &cur.frags[len(cur.frags)-1]
 		f.text += string(s.r)
-		f.width += float64(f.face.Advance(s.r)) * f.size / 1000
 	}
 	out.atoms = append(out.atoms, cur)
+	for i := range out.atoms {
+		for j := range out.atoms[i].frags {
+			f := &out.atoms[i].frags[j]
+			f.width = f.face.Width(f.text, f.size)
+		}
+	}
 	return out
 }
 

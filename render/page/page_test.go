@@ -96,48 +96,6 @@ func width(o page.Text) float64 {
 	return o.Face.Width(s, o.Size) + o.Space*float64(strings.Count(s, " "))
 }
 
-// check looks for what no page may show.
-func check(t *testing.T, book *page.Book) {
-	t.Helper()
-	for i, pg := range book.Pages {
-		var open *page.Element
-		for _, o := range pg.Ops {
-			switch o := o.(type) {
-			case page.Begin:
-				if open != nil || o.Element == nil {
-					t.Fatalf("page %d: elements nest", i+1)
-				}
-				open = o.Element
-			case page.End:
-				open = nil
-			case page.Text:
-				if open == nil {
-					t.Fatalf("page %d: %q belongs to no element", i+1, o.Text)
-				}
-				right := o.X + width(o)
-				if !(o.X >= 70 && right <= pg.Width-70) {
-					t.Errorf("page %d: %q stands from %.1f to %.1f", i+1, o.Text, o.X, right)
-				}
-				if !(o.Y >= 40 && o.Y <= pg.Height-39) {
-					t.Errorf("page %d: %q stands at height %.1f", i+1, o.Text, o.Y)
-				}
-				for _, r := range o.Text {
-					if !o.Face.Has(r) {
-						t.Errorf("page %d: %s lacks %U", i+1, o.Face.Name, r)
-					}
-				}
-			case page.Box:
-				if math.IsNaN(o.X+o.Y+o.Width+o.Height) || o.Height < 0 || o.Width < -0.01 {
-					t.Errorf("page %d: box %+v", i+1, o)
-				}
-			}
-		}
-		if open != nil {
-			t.Fatalf("page %d: an element is not closed", i+1)
-		}
-	}
-}
-
 func TestSampleIsSound(t *testing.T) {
 	for _, paper := range []string{"A4", "Letter"} {
 		d := pagetest.Sample()

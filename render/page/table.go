@@ -4,6 +4,7 @@ import (
 	"math"
 	"slices"
 	"strings"
+	"unicode/utf8"
 
 	"penwright/protocol/diag"
 	"penwright/render/doc"
@@ -51,7 +52,8 @@ type form struct {
 
 const (
 	mostColumns = 4096
-	tallRow     = 12 // lines: a higher row is broken over pages
+	tallRow     = 12  // lines: a higher row is broken over pages
+	longWordAt  = 180 // wider words are broken rather than that the others have no room
 )
 
 func (s *setter) tableItem(t doc.Table, w where) item {
@@ -171,14 +173,15 @@ func (c *cell) measure() {
 	c.left = c.decimalAt()
 }
 
-// decimalAt is the width of what stands before the decimal mark, or before raised text
-// at the end, or the whole.
+// decimalAt is the width of what stands before the decimal mark of the first number, or
+// before the end of a whole number, so that units, brackets and letters after it do not
+// move it. A text without a number stands before the mark.
 func (c *cell) decimalAt() float64 {
 	x, end := 0.0, 0.0
 	for _, a := range c.atoms {
 		for _, f := range a.frags {
 			if f.rise == 0 {
-				if i := strings.IndexAny(f.text, ".·"); i >= 0 && digitAt(f.text, i+1, i-1) {
+				if i := numberEnd(f.text); i >= 0 {
 					return x + f.face.Width(f.text[:i], f.size)
 				}
 				end = x + f.width
@@ -190,14 +193,32 @@ func (c *cell) decimalAt() float64 {
 	return end
 }
 
-func digitAt(s string, places ...int) bool {
-	for _, i := range places {
-		if 0 <= i && i < len(s) && '0' <= s[i] && s[i] <= '9' {
-			return true
-		}
+// numberEnd is where the whole part of the first number in s ends, in bytes; -1 if there
+// is none. Thousands may be set apart by narrow spaces.
+func numberEnd(s string) int {
+	start := strings.IndexAny(s, "0123456789")
+	if start < 0 {
+		return -1
 	}
-	return false
+	if start > 0 && s[start-1] == '.' {
+		return start - 1
+	}
+	end := start
+	for end < len(s) {
+		r, size := utf8.DecodeRuneInString(s[end:])
+		next := end + size
+		switch {
+		case digitAt(s, end):
+		case (r == '\u2009' || r == '\u202F') && digitAt(s, next) && digitAt(s, next+1) && digitAt(s, next+2):
+		default:
+			return end
+		}
+		end = next
+	}
+	return end
 }
+
+func digitAt(s string, i int) bool { return i < len(s) && '0' <= s[i] && s[i] <= '9' }
 
 func (g *grid) measure() {
 	n := len(g.columns)
@@ -211,8 +232,8 @@ func (g *grid) measure() {
 					continue
 				}
 				i := c.col
-				g.narrow[i] = max(g.narrow[i], c.narrow)
-				if c.align == doc.Decimal && !r.head {
+				g.narrow[i] = max(g.narrow[i], min(c.narrow, longWordAt))
+				if c.align == doc.Decimal && !r.head && c.natural <= longWordAt {
 					g.left[i] = max(g.left[i], c.left)
 					g.right[i] = max(g.right[i], c.natural-c.left)
 				} else {
@@ -240,7 +261,7 @@ func (g *grid) measure() {
 				for _, v := range g.comfort[c.col : c.col+c.span] {
 					have += v
 				}
-				if need := max(c.narrow, min(c.natural, 120)); need > have {
+				if need := max(min(c.narrow, longWordAt), min(c.natural, 120)); need > have {
 					for i := c.col; i < c.col+c.span; i++ {
 						g.comfort[i] += (need - have) / float64(c.span)
 						g.natural[i] = max(g.natural[i], g.comfort[i])
@@ -461,6 +482,9 @@ func (s *setter) tableBody(t doc.Table, g *grid, f form, w where, el *Element) [
 		head.height += thin + 1
 	}
 	boxes := []box{head}
+	if head.height > s.pageHeight(false)/2 {
+		boxes = g.tallHead(f, lead, in, el)
+	}
 	for i, r := range g.rows {
 		rows := g.rowBoxes(r, f, lead, in, el, tallRow)
 		if r.rule {
@@ -485,6 +509,15 @@ func (s *setter) tableBody(t doc.Table, g *grid, f form, w where, el *Element) [
 		frame.head = s.repeated(t, head, f, w)
 	}
 	return boxes
+}
+
+// tallHead sets a head that may be higher than a page.
+func (g *grid) tallHead(f form, lead float64, w where, el *Element) []box {
+	boxes := []box{{height: thick + 1.5, within: w.within}}
+	for _, r := range g.head {
+		boxes = append(boxes, g.rowBoxes(r, f, lead, w, el, tallRow)...)
+	}
+	return append(boxes, box{height: thin + 1, within: w.within, ops: artifact(Box{X: w.x, Width: f.width, Height: thin, Colour: ink})})
 }
 
 // repeated is the head of a table on its further pages.
@@ -624,7 +657,7 @@ func (g *grid) offset(c cell, l line, lines int, width float64, r row, k float64
 		return max(width-l.width, 0)
 	case doc.Decimal:
 		spare := width - (g.left[c.col]+g.right[c.col])*k
-		if !r.head && c.span == 1 && lines == 1 && spare >= -0.01 {
+		if !r.head && c.span == 1 && lines == 1 && spare >= -0.01 && c.natural <= longWordAt {
 			return spare/2 + (g.left[c.col]-c.left)*k
 		}
 		return max(width-l.width, 0)
