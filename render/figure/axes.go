@@ -15,9 +15,9 @@ import (
 	"penwright/render/doc"
 )
 
-// axis is one axis of a frame.
+// axis is one axis of a frame. Its title is broken into lines already.
 type axis struct {
-	title string
+	title []string
 	span
 	ticks []plot.Tick
 	grid  bool
@@ -31,11 +31,26 @@ type frame struct {
 	h, v           axis
 }
 
-// insets are kept free beside the axes.
-type insets struct{ top, right float64 }
+// insets are kept free around the axes.
+type insets struct{ top, right, bottom float64 }
+
+// foot is what the ticks and a title of one line take below the ground.
+const foot = 45
+
+// titled breaks the title of an axis into lines of at most a width.
+func titled(title string, most float64) []string {
+	const lines = 3 // beyond them it is shortened
+	out, _ := wrap(title, most, titleSize, lines)
+	return out
+}
 
 // strip is what the title of an axis takes.
-const strip = titleSize*leading + 3
+func strip(title []string) float64 {
+	if len(title) == 0 {
+		return 0
+	}
+	return titleSize*leading*float64(len(title)) + 3
+}
 
 // across is the length of the horizontal axis in a picture of width w beside the axis
 // v, with end kept free at the right.
@@ -46,11 +61,8 @@ func across(w, end float64, v axis) float64 {
 			names = max(names, width(l, textSize, false))
 		}
 	}
-	if v.title != "" {
-		names += strip
-	}
 	const gap = 16 // ticks, padding, and the half of the last label that reaches beyond
-	return max(w-names-gap-end, 10)
+	return max(w-names-strip(v.title)-gap-end, 10)
 }
 
 // newFrame draws two axes into the picture, with their grid and titles.
@@ -73,13 +85,8 @@ func newFrame(c *canvas, h, v axis, in insets) *frame {
 	}
 	set(&p.X, h, text.XCenter, text.YTop)
 	set(&p.Y, v, text.XRight, text.YCenter)
-	bottom, side := 1.0, 1.0
-	if h.title != "" {
-		bottom += strip
-	}
-	if v.title != "" {
-		side += strip
-	}
+	end := c.pic.Height - in.bottom
+	bottom, side := 1+in.bottom+strip(h.title), 1+strip(v.title)
 	area := draw.Crop(draw.New(c), vg.Length(side), vg.Length(-max(in.right, 1)), vg.Length(bottom), vg.Length(-max(in.top, 5)))
 	ground := p.DataCanvas(area)
 	f.x0, f.x1 = ground.Min.X.Points(), ground.Max.X.Points()
@@ -101,15 +108,19 @@ func newFrame(c *canvas, h, v axis, in insets) *frame {
 	// The titles stand at the middle of the ground, or as near as the picture's edges
 	// let them.
 	st := style{size: titleSize, colour: ink}
-	if s := fit(h.title, c.pic.Width-2, titleSize, false); s != "" {
-		half := width(s, titleSize, false) / 2
+	for i, l := range h.title {
+		half := width(l, titleSize, false) / 2
 		x := min(max((f.x0+f.x1)/2, 1+half), c.pic.Width-1-half)
-		c.text(x, c.pic.Height-1-descent*titleSize, center, st, s)
+		c.text(x, end-1-titleSize*(descent+leading*float64(len(h.title)-1-i)), center, st, l)
 	}
-	if s := fit(v.title, c.pic.Height-bottom-2, titleSize, false); s != "" {
-		half := width(s, titleSize, false) / 2
+	for i, l := range v.title {
+		half := width(l, titleSize, false) / 2
 		y := min(max((f.y0+f.y1)/2, 1+half), c.pic.Height-bottom-half)
-		c.upward(1+ascent*titleSize, y, st, s)
+		if y-half < 0 { // longer than the axis and its foot
+			l = fit(l, c.pic.Height-bottom-2, titleSize, false)
+			y = (c.pic.Height - bottom) / 2
+		}
+		c.upward(1+titleSize*(ascent+leading*float64(i)), y, st, l)
 	}
 	return f
 }
@@ -119,14 +130,26 @@ func (f *frame) y(v float64) float64 { return f.y1 - (v-f.v.lo)/(f.v.hi-f.v.lo)*
 
 // numbers makes an axis of numbers over a range that takes a length across the picture
 // or up it. Very large and very small numbers have a power of ten taken out into the
-// title.
+// title, before the unit; where numbers that are alike in their first digits would be
+// long, what they have in common is taken off.
 func numbers(title string, s span, length float64, across bool) axis {
-	a := axis{title: clean(title), span: s, grid: !across}
+	a := axis{span: s, grid: !across}
+	title = clean(title)
+	base := common(s)
+	size := max(math.Abs(s.lo-base), math.Abs(s.hi-base))
 	power := 0
-	if m := max(math.Abs(s.lo), math.Abs(s.hi)); m >= 1e6 || m < 1e-3 {
-		power = int(math.Floor(math.Log10(m) + 1e-12))
-		a.title = strings.TrimSpace(a.title + " (×10" + raised(power) + ")")
+	if size >= 1e6 || size < 1e-3 {
+		power = int(math.Floor(math.Log10(size) + 1e-12))
+		title = inUnit(title, "10"+raised(power))
 	}
+	if base != 0 {
+		sign := " less "
+		if base < 0 {
+			sign = " plus "
+		}
+		title = strings.TrimSpace(title + "," + sign + magnitude(math.Abs(base)))
+	}
+	a.title = titled(title, max(length, 60)+20)
 	apart := 30.0
 	if across {
 		apart = 50
@@ -135,10 +158,10 @@ func numbers(title string, s span, length float64, across bool) axis {
 	for {
 		a.ticks = a.ticks[:0]
 		widest := 0.0
-		for _, v := range steps(s, step) {
+		for _, v := range steps(span{lo: s.lo - base, hi: s.hi - base}, step) {
 			label := num.Fixed(scaled(v, -power), decimals(scaled(step, -power)))
 			widest = max(widest, width(label, textSize, false))
-			a.ticks = append(a.ticks, plot.Tick{Value: v, Label: label})
+			a.ticks = append(a.ticks, plot.Tick{Value: min(max(v+base, s.lo), s.hi), Label: label})
 		}
 		room := step / (s.hi - s.lo) * length
 		if len(a.ticks) < 2 || across && widest+5 < room || !across && textSize*leading < room {
@@ -146,6 +169,38 @@ func numbers(title string, s span, length float64, across bool) axis {
 		}
 		step = niceStep(step * 1.7)
 	}
+}
+
+// common is the round number that all of a narrow range far from nought have in common,
+// nought where the range is not narrow.
+func common(s span) float64 {
+	d := s.hi - s.lo
+	if !(d > 0) || s.lo < 0 && s.hi > 0 || min(math.Abs(s.lo), math.Abs(s.hi)) < 1e5*d || math.Abs(s.hi) > 1e15*d {
+		return 0
+	}
+	ten := math.Pow(10, math.Ceil(math.Log10(d)))
+	if s.lo < 0 {
+		return math.Ceil(s.hi/ten) * ten
+	}
+	return math.Floor(s.lo/ten) * ten
+}
+
+// inUnit puts a factor before the unit of a title such as "Mass (g)".
+func inUnit(title, factor string) string {
+	if open := strings.LastIndexByte(title, '('); open >= 0 && strings.HasSuffix(title, ")") {
+		return title[:open+1] + factor + " " + title[open+1:]
+	}
+	return strings.TrimSpace(title + " (" + factor + ")")
+}
+
+// magnitude writes a positive round number without needless zeros.
+func magnitude(v float64) string {
+	if v < 1e15 && v >= 1e-4 {
+		return strconv.FormatFloat(v, 'f', -1, 64)
+	}
+	m, e, _ := strings.Cut(strconv.FormatFloat(v, 'e', -1, 64), "e")
+	n, _ := strconv.Atoi(e)
+	return m + " × 10" + raised(n)
 }
 
 func scaled(v float64, power int) float64 {

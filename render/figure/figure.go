@@ -1,11 +1,46 @@
 // Package figure draws the pictures of a report: the layout map, points by treatment,
-// means, interactions, residuals, the flow of units. It knows no statistics: values
-// come computed, names and letters come as finished text, and each figure gives back
-// the recorded picture with the same in words.
+// means, differences, interactions, residuals, power, the flow of units. It knows no
+// statistics: values come computed, names and letters come as finished text, and each
+// figure gives back the recorded picture with the same in words.
 //
-// All figures share one look. Lengths are points. Marks are told apart by shape and
-// dash as well as by colour, and every colour keeps a contrast of 3:1 to white and to
-// a dark page, so that a figure survives grey printing and a dark screen.
+// # The style
+//
+// All figures share one look, and its parts, so that a new picture is one file.
+//
+//   - Lengths are points at print size. A figure is columnWidth wide, which fits the text
+//     of A4 and of Letter, and as high as what it shows asks for, never above pageHeight.
+//   - Letters are those of the sans family: titles of axes titleSize, names and numbers
+//     textSize, what is written beside or below noteSize, and nothing below leastSize.
+//   - Lines are thin, medium or heavy, grid lines and edges of cells fine; none is below a
+//     quarter of a point.
+//   - The axes stand apart from the ground and carry round numbers with a true minus sign.
+//     A title is what is measured with its unit, "Daily gain (g/d)"; a power of ten goes
+//     before the unit, what all numbers have in common behind it. Grid lines run across
+//     the axis of values only. A figure does not force nought into an axis: marks show
+//     places, not lengths.
+//   - Series are told apart by mark, by dash and by colour, in this order of trust; the
+//     i-th has symbol(i) and dash(i). Six colours of middling lightness hold 3:1 to white
+//     and to a dark page; text is ink and holds 4.5:1 on every ground used. The tests
+//     compute both, and what readers with a colour-vision deficiency see.
+//   - One series is palette[0]. What was measured is a disc, what is estimated a disc on a
+//     whisker, a mean among its data a bar in ink. A fitted curve is a line in palette[0]
+//     with its limits as a tint, reference lines are ink, wished values dashed ink, what
+//     was left out a cross.
+//   - Names stand whole: upright below their group on up to three lines, else lying at the
+//     left, else as numbers (of lines: letters) with a key below that names them all.
+//   - Captions are sentences and belong to the caller; they say what an interval is.
+//     Pictures in words are sentences from the data and name the extremes.
+//   - Up to maxPoints are drawn one by one; beyond, a density stands for them.
+//
+// # To add a picture
+//
+// Give it a type whose Draw returns the picture and its words, and build it of these:
+// numbers, logarithmic, doseAxis and newFrame for a pair of axes, newGroups where one of
+// them has names; curve and band for a fitted line or a curve over time with its limits (a
+// curve in steps is one with both ends of each step); whisker and marker for an estimate
+// with its interval; ends for names beside lines; beside for names in a crowd; newKey for
+// what finds no place. Mark what a reader may point at with its name. Then add it to the
+// gallery of the tests, which hold it to all of the above.
 package figure
 
 import (
@@ -16,13 +51,13 @@ import (
 	"penwright/render/face"
 )
 
-// Size is the size of a picture in points. A zero Width is that of a text column; a
-// zero Height is chosen by the figure from what it has to show.
+// Size is the size of a picture in points, its key below not counted. A zero Width is
+// that of a text column; a zero Height is chosen by the figure from what it has to show.
 type Size struct{ Width, Height float64 }
 
 const (
-	columnWidth = 454 // 160 mm
-	pageHeight  = 640 // the most a figure takes by itself, leaving room for its caption
+	columnWidth = 446 // 157 mm
+	pageHeight  = 600 // the most a figure takes by itself, leaving room for its caption
 	leastWidth  = 160 // axes have no room below this
 	leastHeight = 110
 	huge        = 1e4 // nor is anything drawn above this
@@ -30,10 +65,12 @@ const (
 	textSize  = 8.0
 	titleSize = 8.5
 	noteSize  = 7.0
-	tinySize  = 5.5 // in the cells of a map
+	leastSize = 6.5 // below this, print is not read
 
+	fine   = 0.4
 	thin   = 0.5
 	medium = 1.0
+	heavy  = 1.6
 
 	// maxPoints is how many points are drawn one by one; above it a density stands
 	// for them.

@@ -2,6 +2,7 @@ package figure
 
 import (
 	"fmt"
+	"math"
 	"strings"
 
 	"gonum.org/v1/plot"
@@ -35,7 +36,6 @@ type Line struct {
 func (n Interaction) Draw() (*doc.Picture, string) {
 	alt := n.words()
 	values, xs := empty(), empty()
-	labels := 0.0
 	scale := len(n.X) == len(n.Levels) && len(n.X) > 0
 	place := func(i int) float64 {
 		if scale {
@@ -44,7 +44,6 @@ func (n Interaction) Draw() (*doc.Picture, string) {
 		return float64(i)
 	}
 	for _, l := range n.Lines {
-		labels = max(labels, width(clean(l.Label), textSize, false))
 		for i, v := range l.Values {
 			if i < len(n.Levels) && drawable(v) && drawable(place(i)) {
 				values.add(v)
@@ -56,15 +55,21 @@ func (n Interaction) Draw() (*doc.Picture, string) {
 		return note(n.Size, "No means to draw."), alt
 	}
 	w, h := n.resolve(min(max(250, float64(len(n.Lines))*textSize*leading+60), pageHeight))
-	end := min(labels, w*0.28) + 24
+	t := newTags(n.Lines, func(l Line) string { return l.Label }, w*0.3, h-foot-10)
+	if t.key != nil {
+		// The key may leave less height than the names at the ends would take.
+		_, h = n.above(t.key, h)
+		t = newTags(n.Lines, func(l Line) string { return l.Label }, w*0.3, h-foot-10)
+	}
+	end := t.wide + 24
+	entries := t.key
 	bar := drawable(n.Bar) && n.Bar > 0
 	if bar {
 		// A bar that is longer than all the data are wide needs room of its own.
 		mid := values.lo/2 + values.hi/2
 		values.add(mid-n.Bar/2, mid+n.Bar/2)
 	}
-	c := newCanvas(w, h)
-	y := numbers(n.Response, values.padded(0.07), h-45, false)
+	y := numbers(n.Response, values.padded(0.07), h-foot, false)
 	room := across(w, end, y)
 	var x axis
 	if scale {
@@ -74,33 +79,31 @@ func (n Interaction) Draw() (*doc.Picture, string) {
 		}
 		x = doseAxis(n.By, ms, xs.padded(0.04), room)
 	} else {
-		x = axis{title: clean(n.By), span: span{lo: -0.4, hi: float64(len(n.Levels)) - 0.6}, bare: true}
+		x = axis{title: titled(n.By, room+40), span: span{lo: -0.4, hi: float64(len(n.Levels)) - 0.6}, bare: true}
 		pitch := room / float64(len(n.Levels))
-		wrapped := make([]string, len(n.Levels))
+		labels, whole := allFit(n.Levels, pitch-4, 3)
 		every := 1
-		for i, l := range n.Levels {
-			lines, whole := wrap(l, pitch-4, textSize, 3)
-			if !whole && pitch < 45 {
-				// Names that have no room in their own place are set less densely.
-				most := min(width(clean(l), textSize, false), 90)
-				every = max(every, int((most+4)/pitch)+1)
+		if !whole {
+			wide := 0.0
+			for i := range labels {
+				labels[i] = []string{number(i)}
+				wide = max(wide, width(number(i), textSize, false)+3)
 			}
-			wrapped[i] = strings.Join(lines, "\n")
+			entries = append(numbered(n.Levels, number), entries...)
+			every = max(int(math.Ceil(wide/pitch)), 1)
 		}
 		for i := 0; i < len(n.Levels); i += every {
-			label := wrapped[i]
-			if every > 1 {
-				// The first and the last have half a place and the margin beside them.
-				label = fit(n.Levels[i], min(pitch*float64(every)-4, pitch+14), textSize, false)
-			}
-			x.ticks = append(x.ticks, plot.Tick{Value: float64(i), Label: label})
+			x.ticks = append(x.ticks, plot.Tick{Value: float64(i), Label: strings.Join(labels[i], "\n")})
 		}
 	}
 	top := 5.0
 	if bar {
 		top = 8
 	}
-	f := newFrame(c, x, y, insets{right: end, top: top})
+	k, _ := n.above(entries, h)
+	c := newCanvas(w, h+k.tall)
+	f := newFrame(c, x, y, insets{right: end, top: top, bottom: k.tall})
+	k.draw(c, 1, h)
 
 	var which []int
 	var from [][2]float64 // where the lines end
@@ -130,7 +133,7 @@ func (n Interaction) Draw() (*doc.Picture, string) {
 		last := len(px) - 1
 		from, which = append(from, [2]float64{f.x(px[last]), f.y(py[last])}), append(which, k)
 	}
-	f.ends(which, from, func(k int) string { return n.Lines[k].Label })
+	f.ends(which, from, t)
 	f.mark("")
 	if bar {
 		f.bar(n.Bar, fit(n.BarLabel, room*0.6, noteSize, false), n.crowd(f, place))
@@ -138,21 +141,82 @@ func (n Interaction) Draw() (*doc.Picture, string) {
 	return c.pic, alt
 }
 
-// ends writes the names of lines, with their marks, beside where they end. Where there
-// are more than the height has room for, none are written: a part would mislead.
-func (f *frame) ends(which []int, from [][2]float64, name func(int) string) {
+// tags are what stands at the ends of lines: the names, or letters with a key.
+type tags struct {
+	names  []string
+	labels [][]string
+	wide   float64
+	apart  float64
+	size   float64
+	key    []entry
+}
+
+// newTags chooses what stands at the ends of lines that have a width and a height for it.
+func newTags[T any](lines []T, name func(T) string, most, tall float64) tags {
+	t := tags{size: textSize}
+	for _, l := range lines {
+		t.names = append(t.names, clean(name(l)))
+	}
+	n := float64(len(lines))
+	for k := 1; k <= 3; k++ {
+		labels, whole := allFit(t.names, most, k)
+		if t.apart = textSize * leading * float64(deepest(labels)); whole && t.apart*n <= tall {
+			t.labels = labels
+			break
+		}
+	}
+	if t.labels == nil {
+		t.labels = make([][]string, len(lines))
+		for i := range lines {
+			t.labels[i] = []string{letter(i)}
+		}
+		t.key = numbered(t.names, letter)
+		if t.apart = textSize * leading; t.apart*n > tall {
+			t.size, t.apart = leastSize, leastSize*leading
+		}
+		if t.apart*n > tall {
+			// No room beside the ends: the marks alone stand in the key.
+			for i := range t.key {
+				shape, colour := symbol(i)
+				t.key[i].draw = func(c *canvas, x, y float64) { c.marker(shape, x, y, 2.3, colour) }
+			}
+			t.labels = nil
+		}
+	}
+	for _, l := range t.labels {
+		for _, s := range l {
+			t.wide = max(t.wide, width(s, t.size, false))
+		}
+	}
+	return t
+}
+
+// ends writes the names of lines, with their marks, beside where they end.
+func (f *frame) ends(which []int, from [][2]float64, t tags) {
+	if t.labels == nil {
+		return
+	}
 	at := make([]float64, len(from))
 	for i, p := range from {
 		at[i] = p[1]
 	}
-	ys := spread(at, textSize*leading, f.y0+textSize/2, f.y1-textSize/2)
+	half := t.apart / 2
+	ys := spread(at, t.apart, f.y0+half, f.y1-half)
+	if ys == nil {
+		ys = spread(at, t.apart, f.y0-4+half, f.y1+foot/2-half)
+	}
 	for i, y := range ys {
 		k := which[i]
 		shape, colour := symbol(k)
-		f.mark(name(k))
+		f.mark(t.names[k])
 		f.leader(from[i][0]+5, from[i][1], f.x1+4, y)
 		f.marker(shape, f.x1+9, y, 2.3, colour)
-		f.text(f.x1+15, y+capHeight(textSize)/2, left, style{size: textSize, colour: ink}, fit(name(k), f.pic.Width-f.x1-16, textSize, false))
+		lines := t.labels[k]
+		base := y + capHeight(t.size)/2 - t.size*leading*float64(len(lines)-1)/2
+		for _, l := range lines {
+			f.text(f.x1+15, base, left, style{size: t.size, colour: ink}, l)
+			base += t.size * leading
+		}
 	}
 }
 
@@ -197,10 +261,7 @@ func (f *frame) bar(length float64, label string, crowd [][2]float64) {
 		}
 	}
 	x, mid := best.x0+4, (best.y0+best.y1)/2
-	path := segment(x, mid-tall/2, x, mid+tall/2)
-	path = append(path, segment(x-3, mid-tall/2, x+3, mid-tall/2)...)
-	path = append(path, segment(x-3, mid+tall/2, x+3, mid+tall/2)...)
-	f.stroke(line{width: medium, colour: ink}, path...)
+	f.whisker(x, mid-tall/2, x, mid+tall/2, 3)
 	f.text(x+7, mid+capHeight(noteSize)/2, left, style{size: noteSize, colour: ink}, label)
 }
 

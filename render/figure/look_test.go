@@ -52,10 +52,16 @@ func inspect(t *testing.T, pic *doc.Picture) {
 	for _, op := range pic.Ops {
 		switch op := op.(type) {
 		case doc.Stroke:
+			if op.Width < 0.25 {
+				t.Errorf("a line is %v wide", op.Width)
+			}
 			paths("a stroke", op.Path)
 		case doc.Fill:
 			paths("a fill", op.Path)
 		case doc.Label:
+			if op.Size < leastSize-1e-9 {
+				t.Errorf("%q is %v high", op.Text, op.Size)
+			}
 			if op.Angle != 0 && op.Angle != 90 {
 				t.Errorf("%q is turned by %v", op.Text, op.Angle)
 			}
@@ -299,7 +305,7 @@ func TestManyPoints(t *testing.T) {
 		pic, alt := d.Draw()
 		inspect(t, pic)
 		sentences(t, alt)
-		if len(pic.Ops) > 5*maxPoints {
+		if len(pic.Ops) > 5*maxPoints+100 {
 			t.Errorf("%T: %d operations for %d points", d, len(pic.Ops), n)
 		}
 	}

@@ -38,11 +38,12 @@ type Box struct {
 
 // Cell is a unit.
 type Cell struct {
-	Unit      string // its full name
-	Number    string // its name within the box
-	Label     string // the treatment, in short
-	Treatment int    // index into Map.Treatments; -1: none
-	Excluded  bool
+	Unit      string  // its full name
+	Number    string  // its name within the box
+	Label     string  // the treatment, in short
+	Treatment int     // index into Map.Treatments; -1: none
+	Excluded  bool    // by a decision
+	Lost      bool    // it has no value
 	Value     float64 // NaN: none
 	Empty     bool    // a place of a grid without a unit
 }
@@ -71,6 +72,7 @@ func (m Map) Draw() (*doc.Picture, string) {
 	boxes, p.left = cut(m.Boxes, mostCells)
 	for _, c := range all {
 		p.crossed = p.crossed || c.Excluded
+		p.struck = p.struck || c.Lost && !c.Excluded
 		if m.Shade != "" && drawable(c.Value) && !c.Excluded {
 			p.top = max(p.top, math.Abs(c.Value))
 		}
@@ -79,6 +81,7 @@ func (m Map) Draw() (*doc.Picture, string) {
 	if m.Height > 0 {
 		_, most = m.resolve(0)
 	}
+	p.most = most
 	p.keys = m.needKeys(all)
 	for p.bear = labels; ; p.bear++ {
 		p.choose(boxes, most-p.foot(nil, 0)-2)
@@ -163,6 +166,10 @@ type mapper struct {
 	label   float64 // size of the labels of boxes; 0: not drawn
 	top     float64 // the end of the scale
 	crossed bool    // some are excluded
+	struck  bool    // some have no value
+	most    float64 // height of the whole map
+	list    *key    // the legend
+	listed  bears   // what it was made for
 	keys    bool    // a legend is drawn
 	bear    bears
 	set     lettering
@@ -181,9 +188,8 @@ type arranged struct {
 }
 
 const (
-	widestCell = 78
+	widestCell = 108
 	pad        = 3
-	keySize    = 4   // least size of a key
 	headGap    = 1.5 // between the label of a box and the box
 )
 
@@ -204,7 +210,7 @@ func (p *mapper) choose(boxes []Box, most float64) {
 		p.gap = min(max(p.cw*0.28, min(p.cw, 1.5)), 9)
 		p.label = noteSize
 		if p.ch < 9 {
-			p.label = tinySize
+			p.label = leastSize
 		}
 		if p.ch < 5 {
 			p.label = 0
@@ -415,8 +421,8 @@ func (p *mapper) draw(c *canvas, a *arranged, x, y float64) {
 	}
 }
 
-// key stands for a treatment where its label has no room.
-func key(i, n int) string {
+// sign stands for a treatment where its label has no room.
+func sign(i, n int) string {
 	if n <= 26 {
 		return string(rune('A' + i))
 	}
@@ -450,16 +456,16 @@ func (p *mapper) room() bool {
 		return n <= symbols && p.cw >= 3 && p.ch >= 3
 	case nothing:
 		return true
-	case keys:
-		p.letter([]string{widestKey(n)}, keySize, 0)
-		return p.set.size > 0
 	}
-	var labels, numbers, values []string
+	var texts, numbers, values []string
+	if p.bear == keys {
+		texts = []string{widestKey(n)}
+	}
 	seen := map[string]bool{}
 	for _, c := range p.all {
-		if l := clean(c.Label); !seen[l] && l != "" {
+		if l := clean(c.Label); p.bear == labels && !seen[l] && l != "" {
 			seen[l] = true
-			labels = append(labels, l)
+			texts = append(texts, l)
 		}
 		numbers = append(numbers, c.Number)
 		if p.Shade != "" && drawable(c.Value) && !c.Excluded {
@@ -468,13 +474,13 @@ func (p *mapper) room() bool {
 	}
 	// Values are worth a smaller label.
 	if len(values) > 0 {
-		p.letter(labels, tinySize, tinySize*leading)
+		p.letter(texts, leastSize, leastSize*leading)
 	}
 	if p.set.size == 0 {
-		p.letter(labels, tinySize, 0)
+		p.letter(texts, leastSize, 0)
 	}
 	if p.set.size == 0 {
-		return n == 0
+		return n == 0 && p.bear == labels
 	}
 	widest := func(texts []string, size float64, bold bool) float64 {
 		w := 0.0
@@ -484,23 +490,23 @@ func (p *mapper) room() bool {
 		return w
 	}
 	tall := p.set.size * leading * float64(p.set.lines)
-	for _, size := range []float64{noteSize, tinySize} {
+	for _, size := range []float64{noteSize, leastSize} {
 		if len(values) > 0 && widest(values, size, true) <= p.cw-2 && tall+size*leading <= p.ch {
 			p.set.value = size
 			tall += size * leading
 			break
 		}
 	}
-	corner := widest(numbers, tinySize, false)
-	if corner == 0 || corner > p.cw-4 || len(labels) == 0 {
+	corner := widest(numbers, leastSize, false)
+	if corner == 0 || corner > p.cw-4 || len(texts) == 0 {
 		return true
 	}
-	across := widest(labels, p.set.size, false)
+	across := widest(texts, p.set.size, false)
 	if p.set.lines > 1 {
 		across = p.cw
 	}
 	p.set.clear = (p.cw-across)/2 < corner+3
-	p.set.number = !p.set.clear && p.ch >= tinySize*leading || tall+tinySize <= p.ch
+	p.set.number = !p.set.clear && p.ch >= leastSize*leading || tall+leastSize <= p.ch
 	return true
 }
 
@@ -526,7 +532,7 @@ func (p *mapper) letter(texts []string, least, over float64) {
 
 func (p *mapper) tint(c Cell) doc.Colour {
 	switch {
-	case c.Excluded:
+	case c.Excluded || c.Lost:
 		return doc.Colour{}
 	case p.Shade != "":
 		if !drawable(c.Value) || p.top == 0 {
@@ -561,11 +567,11 @@ func (p *mapper) cell(c *canvas, cell Cell, x, y float64) {
 	if p.cw > 4 {
 		c.stroke(line{width: 0.4, colour: grey}, rect...)
 	}
-	if cell.Excluded {
-		d := min(1.0, p.cw/8)
-		c.stroke(line{width: 0.6, colour: grey}, append(segment(x+d, y+d, x+p.cw-d, y+p.ch-d), segment(x+d, y+p.ch-d, x+p.cw-d, y+d)...)...)
+	out := cell.Excluded || cell.Lost
+	if out {
+		c.strike(x, y, p.cw, p.ch, cell.Excluded)
 	}
-	if p.Shade != "" && p.set.value == 0 && !cell.Excluded && cell.Value < -p.top/20 && p.cw >= 4 {
+	if p.Shade != "" && p.set.value == 0 && !cell.Excluded && cell.Value < -p.top/20 && p.cw >= 4 && p.ch >= 3 {
 		// Without a printed value a bar says, also in grey, that it is below nought.
 		c.stroke(line{width: 0.8, colour: ink}, segment(x+p.cw*0.3, y+p.ch-1.3, x+p.cw*0.7, y+p.ch-1.3)...)
 	}
@@ -578,7 +584,7 @@ func (p *mapper) cell(c *canvas, cell Cell, x, y float64) {
 	case p.bear == marks, p.bear == nothing, p.set.size == 0:
 		return
 	case p.bear == keys && cell.Treatment >= 0:
-		label = key(cell.Treatment, len(p.Treatments))
+		label = sign(cell.Treatment, len(p.Treatments))
 	}
 	st := style{size: p.set.size, colour: ink}
 	number := clean(cell.Number)
@@ -594,15 +600,15 @@ func (p *mapper) cell(c *canvas, cell Cell, x, y float64) {
 	}
 	top, room := y, p.ch
 	if p.set.number && number != "" {
-		c.text(x+2, y+1+tinySize*0.8, left, style{size: tinySize, colour: ink}, number)
+		c.text(x+2, y+1+leastSize*0.8, left, style{size: leastSize, colour: ink}, number)
 		if p.set.clear {
 			// A line's own white space lies below the number's feet.
-			top, room = y+tinySize, p.ch-tinySize
+			top, room = y+leastSize, p.ch-leastSize
 		}
 	}
 	base := top + (room-tall)/2 + st.size*(leading+capHeight(1))/2
 	for _, l := range lines {
-		if cell.Excluded {
+		if out {
 			half := width(l, st.size, false)/2 + 1.5
 			c.fill(paper, rectangle(x+p.cw/2-half, base-capHeight(st.size)-1, 2*half, capHeight(st.size)+2)...)
 		}
@@ -613,6 +619,16 @@ func (p *mapper) cell(c *canvas, cell Cell, x, y float64) {
 		base += (p.set.value - st.size) * (leading + capHeight(1)) / 2
 		c.text(x+p.cw/2, base, center, style{size: p.set.value, bold: true, colour: ink}, value)
 	}
+}
+
+// strike crosses a cell out that was excluded, and strikes one through that has no value.
+func (c *canvas) strike(x, y, w, h float64, excluded bool) {
+	d := min(1.0, w/8, h/8)
+	path := segment(x+d, y+h-d, x+w-d, y+d)
+	if excluded {
+		path = append(path, segment(x+d, y+d, x+w-d, y+h-d)...)
+	}
+	c.stroke(line{width: 0.6, colour: grey}, path...)
 }
 
 // value prints what a cell is shaded by, with its sign, to about two digits of the
@@ -643,12 +659,22 @@ func (p *mapper) foot(c *canvas, y float64) float64 {
 	if p.keys {
 		y += p.legend(c, y)
 	}
-	if p.crossed {
-		if c != nil {
-			c.stroke(line{width: thin, colour: grey}, rectangle(1, y+2, 12, 9)...)
-			c.stroke(line{width: 0.6, colour: grey}, append(segment(2, y+3, 12, y+10), segment(2, y+10, 12, y+3)...)...)
-			c.text(17, y+9, left, st, fit("excluded from the analysis", p.width-17, noteSize, false))
+	x := 1.0
+	for _, e := range []struct {
+		drawn, excluded bool
+		text            string
+	}{{p.crossed, true, "excluded from the analysis"}, {p.struck, false, "no value"}} {
+		if !e.drawn {
+			continue
 		}
+		if c != nil {
+			c.stroke(line{width: fine, colour: grey}, rectangle(x, y+2, 13, 9)...)
+			c.strike(x, y+2, 13, 9, e.excluded)
+			c.text(x+17, y+9, left, st, fit(e.text, p.width-x-17, noteSize, false))
+		}
+		x += 17 + width(e.text, noteSize, false) + 14
+	}
+	if x > 1 {
 		y += 13
 	}
 	if p.left > 0 {
@@ -703,15 +729,27 @@ func (p *mapper) scale(c *canvas, y float64) {
 
 // legend lists what stands for which treatment.
 func (p *mapper) legend(c *canvas, y float64) float64 {
-	const pitch = 11.5
-	st := style{size: noteSize, colour: ink}
 	if p.bear == nothing || len(p.Treatments) > mostListed {
 		if c != nil {
-			c.text(1, y+8, left, st, fit(fmt.Sprintf("The %d treatments are too many to be named on a map of this size.", len(p.Treatments)), p.width, noteSize, false))
+			c.text(1, y+8, left, style{size: noteSize, colour: ink}, fit(fmt.Sprintf("The %d treatments are too many to be named on a map of this size.", len(p.Treatments)), p.width, noteSize, false))
 		}
-		return pitch + 2
+		return 13
 	}
-	type entry struct{ key, name string }
+	if p.list == nil || p.listed != p.bear {
+		k := newKey(p.entries(), p.width, p.most*0.5)
+		if !k.complete() && p.n <= 300 {
+			k = newKey(p.entries(), p.width, p.most*0.8)
+		}
+		p.list, p.listed = &k, p.bear
+	}
+	if c != nil {
+		p.list.draw(c, 1, y)
+	}
+	return p.list.tall
+}
+
+// entries are the signs of the treatments with their names.
+func (p *mapper) entries() []entry {
 	shown := map[int]string{}
 	if p.bear == labels {
 		for _, cell := range p.all {
@@ -720,39 +758,24 @@ func (p *mapper) legend(c *canvas, y float64) float64 {
 			}
 		}
 	}
-	entries := make([]entry, len(p.Treatments))
-	wideKey, wideName := 9.0, 0.0
+	out := make([]entry, len(p.Treatments))
 	for i, name := range p.Treatments {
-		k := shown[i]
-		if p.bear == keys {
-			k = key(i, len(p.Treatments))
-		}
-		entries[i] = entry{key: fit(k, 80, noteSize, false), name: clean(name)}
-		wideKey = max(wideKey, width(entries[i].key, noteSize, false)+5)
-		wideName = max(wideName, width(entries[i].name, noteSize, false))
-	}
-	cell := min(wideKey+5+wideName+12, p.width)
-	columns := min(max(int(p.width/cell), 1), max(len(entries), 1))
-	rows := (len(entries) + columns - 1) / columns
-	if c == nil {
-		return float64(rows)*pitch + 4
-	}
-	for i, e := range entries {
-		// Down the columns, so that the order is that of reading a list.
-		x, y := 1+cell*float64(i/rows), y+pitch*float64(i%rows)+1
-		if p.bear == marks {
+		e := entry{name: name, framed: true}
+		switch p.bear {
+		case keys:
+			e.sign = sign(i, len(p.Treatments))
+		case marks:
 			shape, colour := symbol(i)
-			c.marker(shape, x+4.5, y+4.5, 2.6, colour)
-		} else {
-			if p.Shade == "" {
-				c.fill(p.light(i), rectangle(x, y, wideKey, 9.5)...)
-			}
-			c.stroke(line{width: 0.4, colour: grey}, rectangle(x, y, wideKey, 9.5)...)
-			c.text(x+wideKey/2, y+7.2, center, st, e.key)
+			e.draw = func(c *canvas, x, y float64) { c.marker(shape, x, y, 2.6, colour) }
+		default:
+			e.sign = fit(shown[i], 80, noteSize, false)
 		}
-		c.text(x+wideKey+5, y+7.2, left, st, fit(e.name, cell-wideKey-8, noteSize, false))
+		if p.Shade == "" && p.bear != marks {
+			e.ground = p.light(i)
+		}
+		out[i] = e
 	}
-	return float64(rows)*pitch + 4
+	return out
 }
 
 func (m Map) words(all []Cell, n int) string {
@@ -766,7 +789,7 @@ func (m Map) words(all []Cell, n int) string {
 	b.WriteString(".")
 	per := make([]int, len(m.Treatments))
 	given := 0
-	var excluded []string
+	var excluded, lost []string
 	values := empty()
 	var far Cell
 	far.Value = 0
@@ -776,6 +799,8 @@ func (m Map) words(all []Cell, n int) string {
 		}
 		if c.Excluded {
 			excluded = append(excluded, title(c.Unit, c.Number))
+		} else if c.Lost {
+			lost = append(lost, title(c.Unit, c.Number))
 		} else if m.Shade != "" && drawable(c.Value) {
 			values.add(c.Value)
 			if math.Abs(c.Value) > math.Abs(far.Value) {
@@ -807,13 +832,20 @@ func (m Map) words(all []Cell, n int) string {
 		}
 		b.WriteString(".")
 	}
-	if k := len(excluded); k > 0 {
-		fmt.Fprintf(&b, " %s excluded and crossed out", count(k, unit))
+	for _, out := range []struct {
+		units []string
+		how   string
+	}{{excluded, "excluded and crossed out"}, {lost, "without a value and struck through"}} {
+		k := len(out.units)
+		if k == 0 {
+			continue
+		}
+		fmt.Fprintf(&b, " %s %s", count(k, unit), out.how)
 		if k <= listMost {
-			for i := range excluded {
-				excluded[i] = clean(excluded[i])
+			for i, u := range out.units {
+				out.units[i] = clean(u)
 			}
-			fmt.Fprintf(&b, ": %s", strings.Join(excluded, ", "))
+			fmt.Fprintf(&b, ": %s", strings.Join(out.units, ", "))
 		}
 		b.WriteString(".")
 	}

@@ -44,11 +44,11 @@ type TrendPoint struct{ X, Y, Low, High float64 }
 func (m Means) Draw() (*doc.Picture, string) {
 	alt := m.words()
 	values, doses := empty(), empty()
-	var names []string
+	var names, tails []string
 	letters := 0.0
 	for _, q := range m.Means {
 		values.add(q.Value, q.Low, q.High)
-		names = append(names, q.Label)
+		names, tails = append(names, q.Label), append(tails, q.Letters)
 		letters = max(letters, width(clean(q.Letters), textSize, false))
 		if drawable(q.Value) {
 			doses.add(q.X)
@@ -62,7 +62,7 @@ func (m Means) Draw() (*doc.Picture, string) {
 	}
 	w, _ := m.resolve(0)
 	letters = min(letters, 90, w*0.2)
-	g := newGroups(m.Size, names, m.By, m.Response, values.padded(0.08), room{lying: letters + 8, pitch: letters + 2})
+	g := newGroups(m.Size, names, m.By, m.Response, values.padded(0.08), room{lying: letters + 8, pitch: letters + 2, tails: tails})
 	for i, q := range m.Means {
 		if !drawable(q.Value) {
 			continue
@@ -72,24 +72,24 @@ func (m Means) Draw() (*doc.Picture, string) {
 		x, y := g.at(i, q.Value, 0)
 		g.marker(disc, x, y, 2.8, palette[0])
 	}
-	// Letters stand in a column at the right when the groups lie, else above the bars.
+	// Letters stand in a column at the right when the groups lie, else above the bars,
+	// else in the key.
 	g.mark("")
+	if g.keyed && !g.lying {
+		return g.pic, alt
+	}
 	var taken []box
 	for i, q := range m.Means {
 		s := fit(q.Letters, letters, textSize, false)
 		if s == "" || !drawable(q.Value) {
 			continue
 		}
-		st := style{size: min(textSize, g.pitch*0.85), colour: ink}
+		st := style{size: textSize, colour: ink}
 		if g.lying {
-			if st.size < tinySize {
-				continue
-			}
 			_, y := g.at(i, q.Value, 0)
 			g.text(g.x1+6, y+capHeight(st.size)/2, left, st, s)
 			continue
 		}
-		st.size = textSize
 		top := q.Value
 		if drawable(q.High) {
 			top = max(top, q.High)
@@ -130,24 +130,26 @@ func (f *frame) above(taken []box, x, y float64, st style, s string) []box {
 	return append(taken, b)
 }
 
-// interval draws the bar of an interval with its caps.
+// interval draws the whisker of a mean.
 func (g *groups) interval(i int, q Mean, off float64) {
 	if !drawable(q.Low) || !drawable(q.High) {
 		return
 	}
-	l := line{width: medium, colour: ink}
 	x0, y0 := g.at(i, q.Low, off)
 	x1, y1 := g.at(i, q.High, off)
-	cap := min(3, g.pitch*0.2)
+	g.whisker(x0, y0, x1, y1, min(3, g.pitch*0.2))
+}
+
+// whisker is an interval between two places on one level or upright line, with caps.
+func (c *canvas) whisker(x0, y0, x1, y1, cap float64) {
 	path := segment(x0, y0, x1, y1)
-	if g.lying {
-		path = append(path, segment(x0, y0-cap, x0, y0+cap)...)
-		path = append(path, segment(x1, y1-cap, x1, y1+cap)...)
-	} else {
-		path = append(path, segment(x0-cap, y0, x0+cap, y0)...)
-		path = append(path, segment(x1-cap, y1, x1+cap, y1)...)
+	dx, dy := cap, 0.0
+	if y0 == y1 && x0 != x1 {
+		dx, dy = 0, cap
 	}
-	g.stroke(l, path...)
+	path = append(path, segment(x0-dx, y0-dy, x0+dx, y0+dy)...)
+	path = append(path, segment(x1-dx, y1-dy, x1+dx, y1+dy)...)
+	c.stroke(line{width: medium, colour: ink}, path...)
 }
 
 // doses draws the means over a scale.
@@ -160,7 +162,7 @@ func (m Means) doses(values, doses span) *doc.Picture {
 	}
 	w, h := m.resolve(250)
 	c := newCanvas(w, h)
-	y := numbers(m.Response, values.padded(0.08), h-45, false)
+	y := numbers(m.Response, values.padded(0.08), h-foot, false)
 	x := doseAxis(m.By, m.Means, doses.padded(0.05), across(w, 6, y))
 	f := newFrame(c, x, y, insets{right: 6})
 	var xs, ys, lo, hi []float64
@@ -172,7 +174,6 @@ func (m Means) doses(values, doses span) *doc.Picture {
 		f.band(xs, lo, hi, tint(palette[0], 0.2))
 		f.curve(xs, ys, line{width: 1.4, colour: palette[0]})
 	}
-	l := line{width: medium, colour: ink}
 	for _, q := range m.Means {
 		if !drawable(q.Value) || !drawable(q.X) {
 			continue
@@ -180,12 +181,9 @@ func (m Means) doses(values, doses span) *doc.Picture {
 		f.mark(q.Label)
 		px := f.x(q.X)
 		if drawable(q.Low) && drawable(q.High) {
-			path := segment(px, f.y(q.Low), px, f.y(q.High))
-			path = append(path, segment(px-3, f.y(q.Low), px+3, f.y(q.Low))...)
-			path = append(path, segment(px-3, f.y(q.High), px+3, f.y(q.High))...)
-			f.stroke(l, path...)
+			f.whisker(px, f.y(q.Low), px, f.y(q.High), 3)
 		}
-		f.marker(disc, px, f.y(q.Value), 2.8, ink)
+		f.marker(disc, px, f.y(q.Value), 2.8, palette[0])
 	}
 	f.mark("")
 	var taken []box
@@ -240,7 +238,7 @@ func doseAxis(by string, means []Mean, s span, length float64) axis {
 	for i, d := range ds {
 		xs[i] = d.x
 	}
-	a := axis{title: clean(by), span: s}
+	a := axis{title: titled(by, length+40), span: s}
 	last := math.Inf(-1)
 	for n, i := range byValue(xs) {
 		if n > 0 && len(a.ticks) > 0 && a.ticks[len(a.ticks)-1].Value == xs[i] {

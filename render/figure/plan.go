@@ -14,6 +14,7 @@ type Look struct {
 	Label     string // the treatment, in short; empty: none yet
 	Treatment int    // index into Map.Treatments; -1: none
 	Excluded  bool
+	Lost      bool    // it has no value
 	Value     float64 // NaN: none
 }
 
@@ -229,7 +230,7 @@ func (l *laid) cell(i int32) Cell {
 	look := l.look(l.leaf, int(i))
 	c := Cell{
 		Unit: l.name(l.leaf, int(i)), Label: clean(look.Label), Treatment: look.Treatment,
-		Excluded: look.Excluded, Value: look.Value,
+		Excluded: look.Excluded, Lost: look.Lost, Value: look.Value,
 	}
 	if own := l.plan.Units[l.leaf].Own; int(i) < len(own) {
 		c.Number = own[i]

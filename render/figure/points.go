@@ -60,50 +60,134 @@ func byValue(values []float64) []int {
 }
 
 // groups is a frame of which one axis has named groups: upright with the names below
-// while they have room, else lying down with the names at the left.
+// while they have room, else lying down with the names at the left, else with numbers
+// and a key below.
 type groups struct {
 	*frame
 	n     int
 	lying bool
 	pitch float64 // between neighbouring groups
+	keyed bool    // the groups are numbered
+	key   key
 }
 
 // room is what is kept free at the right while the groups stand upright and while they
 // lie, and the least pitch with which they may stand.
-type room struct{ upright, lying, pitch float64 }
+type room struct {
+	upright, lying, pitch float64
+	tails                 []string // what is told of each group in a key, such as its letters
+	more                  []entry  // of the key while the groups stand upright
+}
+
+const (
+	mostEnds   = 20   // lines of blocks that bear their names
+	leastPitch = 9.0  // of lying groups: a line of names
+	mostPitch  = 16.0 // of lying groups with names of one line
+)
 
 // newGroups draws the frame. The range of values must be padded already.
 func newGroups(s Size, names []string, by, response string, values span, r room) *groups {
 	n := max(len(names), 1)
 	w, h := s.resolve(240)
-	along := axis{title: clean(by), span: span{lo: -0.5, hi: float64(n) - 0.5}, bare: true}
-	v := numbers(response, values, h-45, false)
+	along := axis{title: titled(by, w-2), span: span{lo: -0.5, hi: float64(n) - 0.5}, bare: true}
+	v := numbers(response, values, h-foot, false)
 	pitch := across(w, r.upright, v) / float64(n)
-	upright := pitch >= r.pitch
-	for i, name := range names {
-		lines, whole := wrap(name, pitch-4, textSize, 3)
-		upright = upright && whole
-		along.ticks = append(along.ticks, plot.Tick{Value: float64(i), Label: strings.Join(lines, "\n")})
+	labels, whole := allFit(names, pitch-4, 3)
+	if whole && pitch >= r.pitch {
+		return upright(s, h, labels, along, v, r, nil)
 	}
-	if upright {
-		f := newFrame(newCanvas(w, h), along, v, insets{right: r.upright})
-		return &groups{frame: f, n: n, pitch: (f.x1 - f.x0) / float64(n)}
+	_, most := s.resolve(pageHeight)
+	for lines := 1; lines <= 4; lines++ {
+		labels, whole = allFit(names, w*0.42, lines)
+		if !whole {
+			continue
+		}
+		if lines == 1 {
+			pitch = min(max((pageHeight-foot)/float64(n), leastPitch), mostPitch)
+		} else {
+			pitch = float64(deepest(labels))*textSize*leading + 3
+		}
+		if s.Height > 0 {
+			pitch = min(pitch, (most-foot)/float64(n))
+		}
+		if least := max(leastPitch, float64(deepest(labels))*textSize*leading); pitch >= least && pitch*float64(n)+foot <= most+1e-9 {
+			return lying(s, pitch, labels, along, response, values, r, nil)
+		}
 	}
-	// Lying, the first group stands at the top. Where the pitch is below a line, only
-	// every so many is named.
-	g := &groups{n: n, lying: true}
-	const foot = 45
-	_, h = s.resolve(min(min(max((pageHeight-foot)/float64(n), 9.6), 16)*float64(n)+foot, pageHeight))
-	pitch = (h - foot) / float64(n)
-	every := int(math.Ceil(textSize * leading / pitch))
+	signs := make([]string, len(names))
+	labels = make([][]string, len(names))
+	wide := 0.0
+	for i := range names {
+		signs[i] = number(i)
+		labels[i] = signs[i : i+1]
+		wide = max(wide, width(signs[i], textSize, false))
+	}
+	// Lying, if there is room for the key as well and upright the groups would stand too
+	// close.
+	entries := numbered(names, number)
+	pitch = min(mostPitch, (most-foot)/float64(n))
+	if least := across(w, r.upright, v) / float64(n); least < max(r.pitch, 12) && pitch >= leastPitch {
+		pitch = max(leastPitch, min(pitch, (most-foot)*0.6/float64(n)))
+		tall := pitch*float64(n) + foot
+		if newKey(entries, w, most-tall).tall+tall <= most {
+			return lying(s, pitch, labels, along, response, values, r, entries)
+		}
+	}
+	for i, t := range r.tails {
+		if t = clean(t); t != "" && i < len(entries) {
+			entries[i].name += " (" + t + ")"
+		}
+	}
+	if s.Height <= 0 {
+		h = 200
+	}
+	_, h = s.above(append(entries[:len(entries):len(entries)], r.more...), h)
+	every := 1
+	for _, k := range []int{2, 5, 10, 20, 50, 100} {
+		if (wide+2)/float64(every) > across(w, r.upright, v)/float64(n) {
+			every = k
+		}
+	}
+	for i := range labels {
+		// The numbers that are left are round ones, and the first.
+		if every > 1 && (i+1)%every != 0 && i > 0 || every > 1 && i == 0 && every < 5 {
+			labels[i] = nil
+		}
+	}
+	return upright(s, h, labels, along, numbers(response, values, h-foot, false), r, entries)
+}
+
+// upright draws groups side by side.
+func upright(s Size, h float64, labels [][]string, along, v axis, r room, entries []entry) *groups {
+	w, _ := s.resolve(h)
+	entries = append(entries[:len(entries):len(entries)], r.more...)
+	g := &groups{n: max(len(labels), 1), keyed: len(entries) > len(r.more)}
+	g.key, _ = s.above(entries, h)
+	for i, l := range labels {
+		if len(l) > 0 {
+			along.ticks = append(along.ticks, plot.Tick{Value: float64(i), Label: strings.Join(l, "\n")})
+		}
+	}
+	g.frame = newFrame(newCanvas(w, h+g.key.tall), along, v, insets{right: r.upright, bottom: g.key.tall})
+	g.key.draw(g.canvas, 1, h)
+	g.pitch = (g.x1 - g.x0) / float64(g.n)
+	return g
+}
+
+// lying draws groups below one another, the first at the top.
+func lying(s Size, pitch float64, labels [][]string, along axis, response string, values span, r room, entries []entry) *groups {
+	n := max(len(labels), 1)
+	w, h := s.resolve(pitch*float64(n) + foot)
+	g := &groups{n: n, lying: true, keyed: len(entries) > 0, key: newKey(entries, w-2, pageHeight-h)}
 	along.span = span{lo: -float64(n) + 0.5, hi: 0.5}
-	along.ticks = along.ticks[:0]
-	for i := 0; i < len(names); i += every {
-		along.ticks = append(along.ticks, plot.Tick{Value: -float64(i), Label: fit(names[i], w*0.34, textSize, false)})
+	along.title = titled(strings.Join(along.title, " "), h-foot+20)
+	for i, l := range labels {
+		along.ticks = append(along.ticks, plot.Tick{Value: -float64(i), Label: strings.Join(l, "\n")})
 	}
-	v = numbers(response, values, across(w, r.lying, along), true)
+	v := numbers(response, values, across(w, r.lying, along), true)
 	v.grid = true
-	g.frame = newFrame(newCanvas(w, h), v, along, insets{right: r.lying})
+	g.frame = newFrame(newCanvas(w, h+g.key.tall), v, along, insets{right: r.lying, bottom: g.key.tall})
+	g.key.draw(g.canvas, 1, h)
 	g.pitch = (g.y1 - g.y0) / float64(n)
 	return g
 }
@@ -135,7 +219,7 @@ func (p Points) Draw() (*doc.Picture, string) {
 	data := empty()
 	var names []string
 	var blocks []string // in order of first appearance
-	number := map[string]int{}
+	rank := map[string]int{}
 	for _, g := range p.Groups {
 		names = append(names, g.Label)
 		values.add(g.Mean)
@@ -152,8 +236,8 @@ func (p Points) Draw() (*doc.Picture, string) {
 				data.add(q.Value)
 			}
 			values.add(q.Value)
-			if _, ok := number[q.Block]; !ok && q.Block != "" && !q.Excluded {
-				number[q.Block] = len(blocks)
+			if _, ok := rank[q.Block]; !ok && q.Block != "" && !q.Excluded {
+				rank[q.Block] = len(blocks)
 				blocks = append(blocks, q.Block)
 			}
 		}
@@ -164,21 +248,26 @@ func (p Points) Draw() (*doc.Picture, string) {
 	}
 	dense := total-lost > maxPoints
 	joined := !dense && len(blocks) > 0 && len(blocks) <= 200 && len(p.Groups) > 1
-	named := joined && len(blocks) <= 14
-	end := 0.0
-	if named {
-		for _, b := range blocks {
-			end = max(end, width(p.block(b), noteSize, false)+10)
+	r := room{lying: 1}
+	var signs []string // what stands at the end of the line of each block
+	if joined && len(blocks) <= mostEnds {
+		signs = make([]string, len(blocks))
+		for i, b := range blocks {
+			signs[i] = p.block(b)
+			r.upright = max(r.upright, width(signs[i], noteSize, false)+10)
+		}
+		if r.upright > 90 {
+			r.more, r.upright = numbered(signs, letter), 0
+			signs = make([]string, len(blocks))
+			for i := range signs {
+				signs[i] = letter(i)
+				r.upright = max(r.upright, width(signs[i], noteSize, false)+10)
+			}
 		}
 	}
-	g := newGroups(p.Size, names, p.By, p.Response, values.padded(0.05), room{upright: end, lying: 1})
+	g := newGroups(p.Size, names, p.By, p.Response, values.padded(0.05), r)
 	if p.Residual {
 		g.level(0, line{width: 0.6, colour: ink})
-	}
-	if dense {
-		p.density(g)
-	} else {
-		p.points(g, blocks, number, joined, named)
 	}
 	for i, group := range p.Groups {
 		if !drawable(group.Mean) {
@@ -192,12 +281,18 @@ func (p Points) Draw() (*doc.Picture, string) {
 		g.stroke(line{width: 1.6, colour: ink}, segment(x0, y0, x1, y1)...)
 	}
 	g.mark("")
+	if dense {
+		p.density(g)
+	} else {
+		p.points(g, blocks, rank, joined, signs)
+	}
+	g.mark("")
 	return g.pic, alt
 }
 
 // points draws them one by one. Those that would overlap step aside, the first along
 // the values keeping the middle, so that the same values give the same picture.
-func (p Points) points(g *groups, blocks []string, number map[string]int, joined, named bool) {
+func (p Points) points(g *groups, blocks []string, rank map[string]int, joined bool, signs []string) {
 	r := 2.3
 	if g.pitch < 12 {
 		r = max(g.pitch*0.18, 1.3)
@@ -255,7 +350,7 @@ func (p Points) points(g *groups, blocks []string, number map[string]int, joined
 			sum := make([]place, len(blocks))
 			n := make([]float64, len(blocks))
 			for k, q := range group.Points {
-				if b, ok := number[q.Block]; ok && !q.Excluded && drawable(q.Value) {
+				if b, ok := rank[q.Block]; ok && !q.Excluded && drawable(q.Value) {
 					sum[b].x += places[i][k].x
 					sum[b].y += places[i][k].y
 					n[b]++
@@ -273,8 +368,8 @@ func (p Points) points(g *groups, blocks []string, number map[string]int, joined
 				g.stroke(line{width: 0.6, colour: tint(grey, 0.75)}, polyline(false, path...)...)
 			}
 		}
-		if named {
-			p.name(g, blocks, paths)
+		if signs != nil {
+			name(g, signs, paths)
 		}
 	}
 	for i, group := range p.Groups {
@@ -299,11 +394,11 @@ func (p Points) block(name string) string {
 	if what := clean(p.Blocks); what != "" && !strings.ContainsFunc(name, unicode.IsLetter) {
 		name = capital(what) + " " + name
 	}
-	return fit(name, 70, noteSize, false)
+	return name
 }
 
 // name writes the names of blocks at the far ends of their lines.
-func (p Points) name(g *groups, blocks []string, paths [][][2]float64) {
+func name(g *groups, names []string, paths [][][2]float64) {
 	if g.lying {
 		return // the far end is at the bottom, where names would run into one another
 	}
@@ -321,7 +416,7 @@ func (p Points) name(g *groups, blocks []string, paths [][][2]float64) {
 		path := paths[which[i]]
 		x := path[len(path)-1][0]
 		g.leader(x+4, at[i], g.x1+1, y)
-		g.text(g.x1+3, y+capHeight(noteSize)/2, left, style{size: noteSize, colour: ink}, p.block(blocks[which[i]]))
+		g.text(g.x1+3, y+capHeight(noteSize)/2, left, style{size: noteSize, colour: ink}, names[which[i]])
 	}
 }
 

@@ -36,12 +36,13 @@ func (p Fitted) Draw() (*doc.Picture, string) {
 	if p.Zero {
 		ys.add(0)
 	}
-	f := newScatter(p.Size, p.X, p.Y, xs, ys)
-	if p.Zero {
-		f.stroke(line{width: 0.6, colour: ink}, segment(f.x0, f.y(0), f.x1, f.y(0))...)
-	}
-	f.scatter(p.Points, n, nil)
-	return f.pic, alt
+	return cloud(p.Points, n, p.Size, func(k key, h float64) (*frame, []box) {
+		f := newScatter(p.Size, p.X, p.Y, xs, ys, k, h)
+		if !p.Zero {
+			return f, nil
+		}
+		return f, f.straight(0, 0)
+	}), alt
 }
 
 func (p Fitted) words(xs, ys span, n int) string {
@@ -91,87 +92,170 @@ func extent(points []XY) (xs, ys span, n int) {
 	return xs, ys, n
 }
 
-func newScatter(s Size, x, y string, xs, ys span) *frame {
-	w, h := s.resolve(250)
-	c := newCanvas(w, h)
-	up := numbers(y, ys.padded(0.06), h-45, false)
-	return newFrame(c, numbers(x, xs.padded(0.05), across(w, 1, up), true), up, insets{})
+func newScatter(s Size, x, y string, xs, ys span, k key, h float64) *frame {
+	w, _ := s.resolve(h)
+	c := newCanvas(w, h+k.tall)
+	up := numbers(y, ys.padded(0.06), h-foot, false)
+	f := newFrame(c, numbers(x, xs.padded(0.05), across(w, 1, up), true), up, insets{bottom: k.tall})
+	k.draw(c, 1, h)
+	return f
 }
 
-// scatter draws the points, or a density where they are too many, and the names,
-// avoiding the crowd where they can.
-func (f *frame) scatter(points []XY, n int, crowd []box) {
+const (
+	mostNamed = 60  // points of a cloud that are named
+	longName  = 150 // beside a point
+)
+
+// cloud draws points on a frame, or a density where they are too many, and names those
+// that are to be named: beside the points where all the names find a place that covers
+// nothing, else with numbers and a key. build draws the frame above a key, with what
+// belongs to it, and gives the boxes that names should not cover.
+func cloud(points []XY, n int, s Size, build func(k key, h float64) (*frame, []box)) *doc.Picture {
+	_, h := s.resolve(250)
+	dense := n > maxPoints
+	var named []int
+	for i, q := range points {
+		if q.Named && drawable(q.X) && drawable(q.Y) && len(named) < mostNamed {
+			named = append(named, i)
+		}
+	}
+	signs := make([]string, len(named))
+	for k, i := range named {
+		signs[k] = clean(points[i].Unit)
+	}
 	r := 2.3
 	if n > 400 {
 		r = 1.6
 	}
-	dense := n > maxPoints
+	f, crowd := build(key{}, h)
+	places, free := f.places(points, named, signs, crowd, r, dense)
+	if !free {
+		entries := numbered(signs, number)
+		signs = make([]string, len(named))
+		for k := range signs {
+			signs[k] = number(k)
+		}
+		f, crowd = build(s.above(entries, h))
+		places, _ = f.places(points, named, signs, crowd, r, dense)
+	}
 	if dense {
 		f.fields(points)
 	}
-	for _, q := range points {
-		if !drawable(q.X) || !drawable(q.Y) || dense && !q.Named {
+	next := 0
+	for i, q := range points {
+		isNamed := next < len(named) && named[next] == i
+		if isNamed {
+			next++
+		}
+		if !drawable(q.X) || !drawable(q.Y) || dense && !isNamed {
 			continue
 		}
-		x, y := f.x(q.X), f.y(q.Y)
 		f.mark(q.Unit)
-		f.marker(disc, x, y, r, palette[0])
-		crowd = append(crowd, box{x0: x - r, y0: y - r, x1: x + r, y1: y + r})
+		f.marker(disc, f.x(q.X), f.y(q.Y), r, palette[0])
 	}
 	f.mark("")
-	var taken []box
-	written := 0
-	for _, q := range points {
-		if q.Named && drawable(q.X) && drawable(q.Y) && written < 60 {
-			taken = f.beside(taken, crowd, f.x(q.X), f.y(q.Y), r, q.Unit)
-			written++
+	for k, p := range places {
+		if p.led {
+			q := points[named[k]]
+			x, y := f.x(q.X), f.y(q.Y)
+			tx, ty := min(max(x, p.box.x0), p.box.x1), min(max(y, p.box.y0+1.5), p.box.y1-1.5)
+			if d := math.Hypot(tx-x, ty-y); d > r+1 {
+				f.leader(x+(tx-x)*(r+0.5)/d, y+(ty-y)*(r+0.5)/d, tx, ty)
+			}
 		}
+		f.text(p.x, p.y, left, style{size: noteSize, colour: ink}, signs[k])
 	}
+	return f.pic
 }
 
-// beside writes a name next to a mark where it covers no other name and as few marks as
-// can be; without a place free of names it is left out.
-func (f *frame) beside(taken, crowd []box, x, y, r float64, name string) []box {
-	s := fit(name, 110, noteSize, false)
-	if s == "" {
-		return taken
+// placed is where a name stands.
+type placed struct {
+	x, y float64 // of its baseline's start
+	box  box
+	led  bool // a line leads to it from its mark
+}
+
+// places finds a place for the name of each named point: beside it, else farther off with
+// a line that leads there. free says that no name covers another, a mark or the crowd.
+func (f *frame) places(points []XY, named []int, names []string, crowd []box, r float64, dense bool) (out []placed, free bool) {
+	if len(named) == 0 {
+		return nil, true
 	}
-	w, up := width(s, noteSize, false), capHeight(noteSize)
-	d := r + 2
-	best, least := box{}, -1
-	var bx, by float64
-	for _, try := range [][2]float64{
-		{x + d, y + up/2}, {x - d - w, y + up/2}, {x - w/2, y - d}, {x - w/2, y + d + up},
-		{x + d, y - d}, {x - d - w, y - d}, {x + d, y + d + up}, {x - d - w, y + d + up},
-	} {
-		b := lineBox(try[0], try[1], left, s, noteSize)
-		if b.x0 < f.x0-2 || b.x1 > f.pic.Width-1 || b.y0 < 0 || b.y1 > f.y1+2 {
-			continue
+	own := make([]int, len(named)) // index of its own mark in the crowd
+	next := 0
+	for i, q := range points {
+		isNamed := next < len(named) && named[next] == i
+		if isNamed {
+			own[next] = len(crowd)
+			next++
 		}
-		meets := 0
-		for _, t := range taken {
-			if b.meets(t) {
-				meets = -1
+		if drawable(q.X) && drawable(q.Y) && (!dense || isNamed) {
+			x, y := f.x(q.X), f.y(q.Y)
+			crowd = append(crowd, box{x0: x - r, y0: y - r, x1: x + r, y1: y + r})
+		}
+	}
+	free = true
+	for k, i := range named {
+		s := names[k]
+		x, y := f.x(points[i].X), f.y(points[i].Y)
+		w, up := width(s, noteSize, false), capHeight(noteSize)
+		free = free && w <= longName
+		d := r + 2
+		tries := [][2]float64{
+			{x + d, y + up/2}, {x - d - w, y + up/2}, {x - w/2, y - d}, {x - w/2, y + d + up},
+			{x + d, y - d}, {x - d - w, y - d}, {x + d, y + d + up}, {x - d - w, y + d + up},
+		}
+		near := len(tries)
+		for _, far := range []float64{10, 16, 24, 34, 46} {
+			for a := range 12 {
+				sin, cos := math.Sincos(float64(a) * math.Pi / 6)
+				tx, ty := x+far*cos, y+far*sin
+				switch {
+				case cos > 0.3:
+				case cos < -0.3:
+					tx -= w
+				default:
+					tx -= w / 2
+				}
+				tries = append(tries, [2]float64{tx, ty + up/2})
+			}
+		}
+		best, least := placed{}, -1
+		for t, try := range tries {
+			b := lineBox(try[0], try[1], left, s, noteSize)
+			if b.x0 < f.x0-2 || b.x1 > f.pic.Width-1 || b.y0 < 0 || b.y1 > f.y1+2 {
+				continue
+			}
+			meets, taken := 0, false
+			for _, p := range out {
+				taken = taken || b.meets(p.box)
+			}
+			if taken {
+				continue
+			}
+			for _, m := range crowd {
+				if b.meets(m) {
+					meets++
+				}
+			}
+			if least < 0 || meets < least {
+				best, least = placed{x: try[0], y: try[1], box: b, led: t >= near}, meets
+			}
+			if meets == 0 {
 				break
 			}
 		}
-		if meets < 0 {
-			continue
+		if least != 0 {
+			free = false
 		}
-		for _, m := range crowd {
-			if b.meets(m) {
-				meets++
-			}
+		if least < 0 {
+			// Nowhere free: on its own mark, over whatever is there.
+			m := crowd[own[k]]
+			best = placed{x: min(m.x1, f.pic.Width-1-w), y: min(max(m.y0, ascent*noteSize), f.y1), box: lineBox(m.x1, m.y0, left, s, noteSize)}
 		}
-		if least < 0 || meets < least {
-			best, least, bx, by = b, meets, try[0], try[1]
-		}
+		out = append(out, best)
 	}
-	if least < 0 {
-		return taken
-	}
-	f.text(bx, by, left, style{size: noteSize, colour: ink}, s)
-	return append(taken, best)
+	return out, free
 }
 
 // fields shades the ground by how many points lie in each of its fields.
@@ -273,7 +357,6 @@ func (p Quantiles) Draw() (*doc.Picture, string) {
 	for _, q := range held {
 		ys.add(q.Low, q.High)
 	}
-	f := newScatter(p.Size, title(p.X, "Expected normal quantile"), title(p.Y, "Residual"), xs, ys)
 	order := byValue(expected)
 	var ex, lo, hi []float64
 	for _, k := range order {
@@ -281,32 +364,39 @@ func (p Quantiles) Draw() (*doc.Picture, string) {
 			ex, lo, hi = append(ex, q.Expected), append(lo, q.Low), append(hi, q.High)
 		}
 	}
-	if len(ex) > 1 {
-		f.mark(title(p.Envelope, "envelope"))
-		f.band(ex, lo, hi, tint(grey, 0.22))
-		f.mark("")
+	build := func(k key, h float64) (*frame, []box) {
+		f := newScatter(p.Size, title(p.X, "Expected normal quantile"), title(p.Y, "Residual"), xs, ys, k, h)
+		if len(ex) > 1 {
+			f.mark(title(p.Envelope, "envelope"))
+			f.band(ex, lo, hi, tint(grey, 0.22))
+			f.mark("")
+		}
+		if p.Slope == 0 {
+			return f, nil
+		}
+		return f, f.straight(p.Intercept, p.Slope)
 	}
-	var shown []XY
-	far := math.Inf(-1)
-	for _, k := range order {
+	shown := points
+	if n > 1000 {
 		// The points lie on a curve that never falls: of many, those that would all but
 		// cover the one before tell nothing more.
-		at := f.x(held[k].Expected) - f.y(held[k].Value)
-		if n > 1000 && at-far < 2 && !held[k].Named {
-			continue
+		_, h := p.resolve(250)
+		f, _ := build(key{}, h)
+		far := math.Inf(-1)
+		shown = nil
+		for _, k := range order {
+			at := f.x(held[k].Expected) - f.y(held[k].Value)
+			if at-far < 2 && !held[k].Named {
+				continue
+			}
+			far = at
+			shown = append(shown, points[k])
 		}
-		far = at
-		shown = append(shown, points[k])
 	}
 	if left := n - len(shown); left > 0 {
 		fmt.Fprintf(&b, " %s that would cover others %s left out.", count(left, "point"), plural(left, "is", "are"))
 	}
-	var crowd []box
-	if p.Slope != 0 {
-		crowd = f.straight(p.Intercept, p.Slope)
-	}
-	f.scatter(shown, min(len(shown), maxPoints), crowd)
-	return f.pic, b.String()
+	return cloud(shown, min(len(shown), maxPoints), p.Size, build), b.String()
 }
 
 // straight draws the line y = a + b·x across the ground, cut at its edges, and gives
@@ -332,12 +422,17 @@ func (f *frame) straight(a, b float64) []box {
 	}
 	px, py, qx, qy := f.x(x0), f.clampY(a+b*x0), f.x(x1), f.clampY(a+b*x1)
 	f.stroke(line{width: 0.9, colour: ink}, segment(px, py, qx, qy)...)
-	const pieces = 120
+	return along(px, py, qx, qy)
+}
+
+// along gives the boxes that a straight line runs through.
+func along(px, py, qx, qy float64) []box {
+	pieces := min(max(int(math.Hypot(qx-px, qy-py)/4), 1), 200)
 	boxes := make([]box, pieces)
-	dx, dy := (qx-px)/pieces, (qy-py)/pieces
+	dx, dy := (qx-px)/float64(pieces), (qy-py)/float64(pieces)
 	for i := range boxes {
 		x, y := px+dx*float64(i), py+dy*float64(i)
-		boxes[i] = box{x0: x, y0: min(y, y+dy) - 0.5, x1: x + dx, y1: max(y, y+dy) + 0.5}
+		boxes[i] = box{x0: min(x, x+dx) - 0.5, y0: min(y, y+dy) - 0.5, x1: max(x, x+dx) + 0.5, y1: max(y, y+dy) + 0.5}
 	}
 	return boxes
 }
@@ -383,13 +478,15 @@ func (p Spread) Draw() (*doc.Picture, string) {
 	if n == 0 {
 		return note(p.Size, "No means and standard deviations above nought to draw."), b.String()
 	}
-	w, h := p.resolve(250)
-	c := newCanvas(w, h)
-	y := logarithmic("Standard deviation (log scale)", wide(ys), h-45, false)
-	x := logarithmic(title(p.Response, "Response")+", mean (log scale)", wide(xs), across(w, 1, y), true)
-	f := newFrame(c, x, y, insets{})
-	f.scatter(points, n, f.straight(p.Intercept, p.Slope))
-	return f.pic, b.String()
+	return cloud(points, n, p.Size, func(k key, h float64) (*frame, []box) {
+		w, _ := p.resolve(h)
+		c := newCanvas(w, h+k.tall)
+		y := logarithmic("Standard deviation (log scale)", wide(ys), h-foot, false)
+		x := logarithmic(title(p.Response, "Response")+", mean (log scale)", wide(xs), across(w, 1, y), true)
+		f := newFrame(c, x, y, insets{bottom: k.tall})
+		k.draw(c, 1, h)
+		return f, f.straight(p.Intercept, p.Slope)
+	}), b.String()
 }
 
 // wide gives a range of logarithms some width, so that small differences do not look
@@ -407,9 +504,9 @@ func wide(s span) span {
 func logarithmic(title string, s span, length float64, across bool) axis {
 	apart := 22.0
 	if across {
-		apart = 34
+		apart = 46
 	}
-	a := axis{title: clean(title), span: s, grid: !across}
+	a := axis{title: titled(title, max(length, 60)+20), span: s, grid: !across}
 	room := max(length/apart, 2)
 	add := func(v float64, label string) {
 		if v < s.lo || v > s.hi {
