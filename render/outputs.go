@@ -8,17 +8,18 @@ import (
 	"penwright/analysis/trial"
 	"penwright/protocol/diag"
 	"penwright/render/doc"
+	"penwright/render/docx"
 	"penwright/render/html"
 	"penwright/render/pdf"
 	"penwright/render/tex"
 )
 
 // Outputs are the kinds of output, in the order in which they are written.
-var Outputs = []string{"pdf", "html", "md", "json", "tables", "figures", "tex"}
+var Outputs = []string{"pdf", "html", "md", "json", "tables", "figures", "tex", "docx"}
 
 // thesis are those for an author who goes on writing: made where they are asked for, and
 // of the chapter.
-var thesis = []string{"tex"}
+var thesis = []string{"tex", "docx"}
 
 // wanted gives the outputs to be made: those asked for, or what the template is for. A
 // chapter with a sign that LaTeX lacks comes without it, if nobody asked for LaTeX by
@@ -68,6 +69,13 @@ func texFiles(d *doc.Document) ([]File, diag.List, error) {
 		return nil, nil, err
 	}
 	return []File{{Path: "report.tex", Data: whole.Bytes()}, {Path: body, Data: chapter.Bytes()}}, append(list, more...), nil
+}
+
+// docxFile writes a document for a word processor.
+func docxFile(d *doc.Document, about pdf.Options) ([]File, diag.List, error) {
+	var b bytes.Buffer
+	err := docx.Write(&b, d, docx.Options{Date: about.Date, Producer: about.Producer, Subject: about.Subject})
+	return []File{{Path: "report.docx", Data: b.Bytes()}}, nil, err
 }
 
 // figures writes each figure of a report as files of its own: pictures for the screen,

@@ -72,7 +72,7 @@ type builder struct {
 	options     Options
 	fingerprint string
 	list        diag.List
-	author      // what the author's words need and leave behind
+	checklists  []checklist // whose places are found when all is numbered
 }
 
 // Report makes the report of a trial. The list tells of faults of templates, texts and
@@ -206,6 +206,9 @@ func jobs(d *doc.Document, rs *result.Results, opt Options, attached []attached)
 	if want("tex") {
 		out = append(out, func() ([]File, diag.List, error) { return texFiles(d) })
 	}
+	if want("docx") {
+		out = append(out, func() ([]File, diag.List, error) { return docxFile(d, about) })
+	}
 	return out
 }
 
@@ -216,7 +219,7 @@ func Document(t *trial.Trial, rs *result.Results, opt Options) (*doc.Document, d
 	if list.HasErrors() {
 		return nil, list
 	}
-	text, more := b.compose(sources, main)
+	text, more := compose.Compose(sources, main, b.view(), b.functions(), compose.Limits{})
 	list = append(append(list, b.list...), more...)
 	p := t.Protocol
 	var authors []string
@@ -226,9 +229,11 @@ func Document(t *trial.Trial, rs *result.Results, opt Options) (*doc.Document, d
 	d := &doc.Document{
 		Lang: "en", Title: p.Trial.Title, ShortTitle: p.Trial.Title, Code: p.Trial.Code, Status: rs.Trial.Status,
 		Author: strings.Join(authors, ", "), Date: opt.Date, Fingerprint: b.fingerprint, Paper: p.Report.Paper,
-		Blocks: once(tidy(text.Blocks)), Notes: text.Notes,
+		Blocks: tidy(text.Blocks), Notes: text.Notes,
 	}
-	return d, append(list, doc.Number(d)...)
+	list = append(list, doc.Number(d)...)
+	b.cover(d)
+	return d, list
 }
 
 // Templates names the built-in templates of reports.
@@ -256,12 +261,13 @@ func (b *builder) sources() ([]compose.Source, string, diag.List) {
 		}
 		out = append(out, compose.Source{Name: strings.TrimSuffix(path.Base(file), ".md"), File: file, Text: string(data)})
 	}
-	if data, err := fs.ReadFile(templates.FS, name+".md"); err == nil && !strings.Contains(name, "/") && name != functionsPage {
+	if data, err := fs.ReadFile(templates.FS, name+".md"); err == nil && !strings.Contains(name, "/") {
 		return append(out, compose.Source{Name: name + ".md", Text: string(data)}), name + ".md", nil
 	}
-	if source, ok := b.source(name); ok {
-		b.own = name
-		return append(out, source), name, nil
+	for _, f := range b.trial.Files {
+		if f.Path == name {
+			return append(out, compose.Source{Name: f.Path, Text: string(f.Data)}), f.Path, nil
+		}
 	}
 	fault := diag.Diagnostic{Severity: diag.Error, Code: "unknown-template",
 		Message: fmt.Sprintf("there is no template %q in this version, and no such file in the folder", name), Hint: "built in are " + strings.Join(Templates(), ", ")}
