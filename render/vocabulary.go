@@ -196,8 +196,6 @@ func (b *builder) functions() template.FuncMap {
 		"rules":         func() doc.Table { return table.Rules(t.Welfare) },
 		"look-ups":      func() doc.Table { return table.LookUps(t.Protocol) },
 		"documents":     func() doc.Table { return table.Documents(t.Welfare) },
-		"coverage":      func() doc.Table { return table.Coverage(prose.Guideline(t, rs)) },
-		"plan coverage": func() doc.Table { return table.Coverage(prose.PlanGuideline(t, rs)) },
 		"files":         func() doc.Table { return table.Files(rs) },
 		"signatures":    func() doc.Table { return table.Signatures(t.Protocol) },
 	}
@@ -235,8 +233,6 @@ func (b *builder) functions() template.FuncMap {
 		"welfare":          func() []string { return prose.Welfare(t.Protocol) },
 		"compared":         func() []string { return prose.Compared(t.Welfare) },
 		"look-ups":         func() []string { return prose.LookUps(t.Protocol) },
-		"coverage":         func() []string { return prose.Coverage(prose.Guideline(t, rs)) },
-		"plan coverage":    func() []string { return prose.PlanCoverage(prose.PlanGuideline(t, rs)) },
 		"provenance":       func() []string { return prose.Provenance(rs, b.options.Go, b.options.Arch) },
 		"seal":             func() []string { return prose.Seal(t) },
 		"limits":           prose.Limits,
@@ -244,7 +240,13 @@ func (b *builder) functions() template.FuncMap {
 	chapter, ofChapter := b.chapterParagraphs(), b.chapterTables()
 	return template.FuncMap{
 		"contents": func() []doc.Block { return []doc.Block{doc.Contents{}} },
-		"answers":  func() []doc.Block { return b.answers() },
+		"coverage": func(of string) ([]doc.Block, error) {
+			if of != "report" && of != "plan" {
+				return nil, fault("coverage", of, []string{"plan", "report"})
+			}
+			return b.coverage(of == "plan"), nil
+		},
+		"answers": func() []doc.Block { return b.answers() },
 		"short": func() []doc.Block {
 			return []doc.Block{doc.Aside{Kind: "answer", Title: inlines("The plan in short"), Blocks: bullets(prose.Short(t))}}
 		},
@@ -376,7 +378,7 @@ func (b *builder) functions() template.FuncMap {
 			return append([]doc.Block{doc.Heading{Level: 2, Text: []doc.Inline{doc.Text{Text: "References of the methods used"}}}}, bullets(refs)...)
 		},
 		"sources": func() []doc.Block { return bullets(prose.ChapterReferences(t, rs)) },
-		"ref": func(at diag.Pos, id string) doc.Inline { return doc.Ref{ID: id, Pos: at} },
+		"ref":     func(at diag.Pos, id string) doc.Inline { return doc.Ref{ID: id, Pos: at} },
 	}
 }
 

@@ -2,150 +2,319 @@ package prose
 
 import (
 	"fmt"
+	"slices"
 	"strings"
 
+	"penwright/analysis/num"
 	"penwright/analysis/result"
 	"penwright/analysis/trial"
+	"penwright/protocol/welfare"
 )
 
-// Item is one item of the reporting guideline: what it asks for, in our words, and how
-// the report answers it. Section is the heading or table that does, empty when none.
-type Item struct {
-	Number  string
-	Asks    string
-	Answer  string
-	Section string
-	Given   bool
+// State is how far an item of a guideline, or a part of one, is answered.
+type State int
+
+// The states. Unprinted is stated in the protocol, but nowhere in the report at hand;
+// Waiting needs data or a draw that are not there yet; Inapplicable does not concern the
+// trial.
+const (
+	Missing State = iota
+	Waiting
+	Unprinted
+	Partly
+	Answered
+	Inapplicable
+)
+
+// String gives the word for s.
+func (s State) String() string {
+	return []string{"missing", "waits", "not in this report", "in part", "answered", "not applicable"}[s]
 }
 
-// Guideline goes through the items of ARRIVE 2.0 (Percie du Sert and others, PLoS
-// Biology 18(7): e3000410, 2020; CC BY 4.0; numbers official, words ours) and tells for
-// each whether the protocol or the results answer it: a text of three words at least,
-// or a part that is computed.
-func Guideline(t *trial.Trial, rs *result.Results) []Item {
-	p := t.Protocol
-	said := func(texts ...string) bool {
-		for _, s := range texts {
-			if len(strings.Fields(s)) >= 3 {
-				return true
+// Checklist is a guideline held to one report.
+type Checklist struct {
+	Name  string
+	Plan  bool // only what a plan can answer
+	Items []Item
+}
+
+// Item is one item of a guideline and how the report answers it.
+type Item struct {
+	welfare.Item
+	Parts []Part
+}
+
+// Part is one of the things that an item asks for. Its State is Missing, Waiting, Answered
+// or Inapplicable, and, once its place was looked for, perhaps Unprinted.
+type Part struct {
+	What     string
+	Optional bool
+	State    State
+	Says     string        // the answer where it is worked out, or why there is none; lower case, without a period
+	Lacks    []string      // of which of several things it is missing
+	Keys     []welfare.Key // what would answer it
+
+	// What a report must hold for the answer to stand in it: each of Texts somewhere, the
+	// places of Items first; each of Tables, where a name that ends in a hyphen stands for
+	// all that begin so; a section under one of Sections with one of each set of Stems.
+	Texts    []string
+	Tables   []Sought
+	Sections []string
+	Stems    [][]string
+	Where    []string // identifiers of where it stands
+}
+
+// Sought is a table that must be there for one response: any of Names.
+type Sought struct {
+	Response string
+	Names    []string
+}
+
+// Checklists holds the guidelines that concern a trial to what is known of it. Where the
+// answers stand in a report is not known yet: the parts say what to look for. Texts of
+// fewer than three words, and words that only hold a place, answer nothing.
+func Checklists(t *trial.Trial, rs *result.Results, plan bool) []Checklist {
+	v := &evidence{t: t, p: t.Protocol, rs: rs, plan: plan}
+	var out []Checklist
+	for _, g := range welfare.Guidelines(t.Protocol) {
+		c := Checklist{Name: g.Name, Plan: plan}
+		for _, asked := range g.Items {
+			if plan && !asked.Plan {
+				continue
 			}
-		}
-		return false
-	}
-	some := func(texts ...string) bool {
-		for _, s := range texts {
-			if strings.TrimSpace(s) != "" && strings.TrimSpace(s) != "…" {
-				return true
+			x := Item{Item: asked}
+			for i := range asked.Parts {
+				x.Parts = append(x.Parts, v.part(&asked.Parts[i]))
 			}
+			c.Items = append(c.Items, x)
 		}
-		return false
+		out = append(out, c)
 	}
-	control := false
-	for _, f := range p.Factors {
-		control = control || len(f.Control) > 0
-	}
-	for _, x := range p.Treatments {
-		control = control || x.Control
-	}
-	primary := false
-	defined := len(p.Responses) > 0
-	for _, r := range p.Responses {
-		primary = primary || r.Role == "primary"
-		defined = defined && (said(r.How) || some(r.Instrument) || some(r.Unit))
-	}
-	data := t.Table != nil
-	intervals, diagnostics := false, false
-	for i := range rs.Responses {
-		for _, c := range rs.Responses[i].Comparisons {
-			intervals = intervals || c.Lower.Known()
-		}
-		for _, c := range rs.Responses[i].Contrasts {
-			intervals = intervals || c.Lower.Known()
-		}
-		for _, m := range rs.Responses[i].Means {
-			intervals = intervals || m.Lower.Known()
-		}
-		diagnostics = diagnostics || len(rs.Responses[i].Diagnostics) > 0
-	}
-	a := p.Animals
-	w := p.Welfare
-	h := p.Housing
-	basis := false
-	for _, u := range p.Units {
-		basis = basis || u.Basis != ""
-	}
-	procedures := w != nil && len(w.Procedures) > 0
-	narrative := func(place string) bool {
-		for _, n := range p.Report.Narrative {
-			if n.Place == place {
-				return true
-			}
-		}
-		return false
-	}
-	var out []Item
-	item := func(number, asks string, given bool, section, key string) {
-		x := Item{Number: number, Asks: asks, Given: given}
-		if given {
-			x.Answer, x.Section = "Answered", section
-		} else {
-			x.Answer = "Not stated; would be answered by " + key
-		}
-		out = append(out, x)
-	}
-	item("1a", "groups compared, with a control or why none", control, "units-and-treatments", "factor.control")
-	item("1b", "the experimental unit", true, "units-and-treatments", "unit.receives")
-	item("2a", "number of experimental units in each group and in all, and of animals", true, "skeleton-analysis", "unit.count")
-	item("2b", "how the number was chosen", p.SampleSize != nil && (some(p.SampleSize.Source) || p.SampleSize.Basis != ""), "number-of-units", "sample_size")
-	item("3a", "criteria for including and excluding, set beforehand", len(p.Eligibility.Include)+len(p.Eligibility.Exclude)+len(p.Eligibility.ExclusionRules) > 0, "", "eligibility")
-	item("3b", "exclusions of each group with reasons, or none", data, "conduct", "exclusion")
-	item("3c", "exact numbers in each analysis", data, "results", "data")
-	item("4a", "whether and how treatments were randomized", t.Allotment != nil && (len(t.Allotment.Draws) > 0 || said(p.Randomization.Method)), "randomization-record", "the command draw, or randomization.method")
-	item("4b", "how confounders were handled", basis || len(p.Randomization.BalanceOn) > 0, "units-and-treatments", "unit.basis")
-	item("5", "who knew the allotment at each stage", p.Blinding != nil, "randomization-record", "blinding")
-	item("6a", "every outcome defined", defined, "", "response.how, response.unit")
-	item("6b", "the primary outcome", primary, "", "response.role = \"primary\"")
-	item("7a", "statistical method and software of each analysis", data, "statistical-methods", "data")
-	item("7b", "how assumptions were checked and what was done", diagnostics || said(p.Analysis.Assumptions), "", "analysis.assumptions")
-	if a != nil {
-		item("8a", "species, strain or breed, sex, age, body mass", some(a.Species) && some(a.Breed) && some(a.Sex) && (a.Age != nil || a.Mass != nil), "", "animals.breed, animals.sex, animals.age, animals.mass")
-		item("8b", "source, health, genotype, earlier procedures", some(a.Source) && (some(a.Health) || some(a.Genotype)), "", "animals.source, animals.health")
-	} else {
-		item("8a", "species, strain or breed, sex, age, body mass", p.Material != nil, "", "animals, or material where there are none")
-		item("8b", "source, health, genotype, earlier procedures", p.Material != nil && some(p.Material.Source), "", "animals.source")
-	}
-	item("9a", "what was done, how and with what", procedures || len(p.Items) > 0 || len(p.Inputs) > 0, "", "welfare.procedure, item")
-	item("9b", "when and how often", p.Trial.Start.Year > 0, "", "trial.start")
-	item("9c", "where, with acclimatization", some(p.Trial.Site) || p.Site != nil, "", "trial.site")
-	item("9d", "why", said(p.Trial.Background.Body) || procedures, "", "trial.background, welfare.procedure.why")
-	item("10a", "summary of each group with spread", data, "results", "data")
-	item("10b", "effect sizes with intervals", intervals, "results", "data")
-	item("11", "abstract", narrative("abstract") || narrative("summary"), "", "report.narrative")
-	item("12a", "background", said(p.Trial.Background.Body), "design-rationale", "trial.background")
-	item("12b", "why this species and model", said(p.Trial.SpeciesRationale.Body), "design-rationale", "trial.species_rationale")
-	item("13", "objectives and hypotheses", said(p.Trial.Objective.Body), "design-rationale", "trial.objective")
-	item("14", "ethics committee and numbers, or why none", p.Approval != nil && some(p.Approval.Body), "", "approval")
-	item("15", "housing and husbandry", h != nil, "", "housing")
-	item("16a", "steps against pain and distress", w != nil && (said(w.Refinement.Body) || said(w.Rescue.Body)), "welfare-and-caution-notes", "welfare.refinement")
-	item("16b", "adverse events", data, "conduct", "event")
-	item("16c", "humane endpoints, signs and frequency of monitoring", w != nil && len(w.HumaneEndpoints) > 0 && w.Monitoring.TimesPerDay > 0, "welfare-and-caution-notes", "welfare.humane_endpoints, welfare.monitoring")
-	item("17a", "interpretation", narrative("discussion"), "", "report.narrative")
-	item("17b", "limits and bias", narrative("discussion"), "", "report.narrative")
-	item("18", "generality", narrative("discussion"), "", "report.narrative")
-	item("19", "protocol prepared beforehand and where registered", some(p.Trial.Registration), "", "trial.registration")
-	item("20", "access to data", some(p.Trial.DataAccess), "", "trial.data_access")
-	item("21a", "interests", some(p.Trial.Interests), "", "trial.interests")
-	item("21b", "funders and their part", some(p.Trial.Funding), "", "trial.funding")
 	return out
 }
 
-// Coverage sums up how many items are answered.
-func Coverage(items []Item) []string {
-	n := 0
-	for _, x := range items {
-		if x.Given {
-			n++
+// State is that of the whole item: optional parts do not count, nor does what does not
+// concern the trial.
+func (x *Item) State() State {
+	var n [Inapplicable + 1]int
+	asked := 0
+	for i := range x.Parts {
+		p := &x.Parts[i]
+		if p.Optional && len(x.Parts) > 1 {
+			continue
+		}
+		if p.State == Answered && len(p.Lacks) > 0 {
+			n[Partly]++
+		} else {
+			n[p.State]++
+		}
+		if p.State != Inapplicable {
+			asked++
 		}
 	}
-	return []string{fmt.Sprintf("Of %d items of the ARRIVE 2.0 guideline %d are answered. An item that is not stated is a gap in the report, no error of the trial; interpretation and generality are the author’s to write.", len(items), n)}
+	switch {
+	case asked == 0:
+		return Inapplicable
+	case n[Answered] == asked:
+		return Answered
+	case n[Answered]+n[Partly] > 0:
+		return Partly
+	case n[Missing] > 0 && n[Unprinted] > 0:
+		return Partly
+	case n[Missing] > 0:
+		return Missing
+	case n[Waiting] > 0:
+		return Waiting
+	}
+	return Unprinted
+}
+
+// part looks for the answer to one part.
+func (v *evidence) part(asked *welfare.Part) Part {
+	out := Part{What: asked.What, Optional: asked.Optional, Keys: asked.Keys}
+	if asked.Computed != "" {
+		f := computed[asked.Computed]
+		if f == nil {
+			panic("prose: a guideline asks for what is not worked out")
+		}
+		f(v, &out)
+		return out
+	}
+	if asked.Sections != nil {
+		out.Sections = asked.Sections
+		if asked.Stems != nil {
+			out.Stems = [][]string{asked.Stems}
+		}
+		if asked.Animals {
+			out.Stems = v.animalWords()
+		}
+		if v.t.Table == nil {
+			out.State, out.Says = Waiting, noData
+		}
+		return out
+	}
+	for _, k := range asked.Keys {
+		v.key(k, &out)
+		if out.State == Answered {
+			return out
+		}
+	}
+	return out
+}
+
+// key takes the answer of one key into a part. Of the elements of a list all must answer.
+func (v *evidence) key(k welfare.Key, out *Part) {
+	values, known := v.stated(k.Name)
+	if !known {
+		return
+	}
+	var lacks, texts []string
+	for _, x := range values {
+		if x.number || adequate(x.text, k) {
+			if !x.unseen {
+				texts = append(texts, x.text)
+			}
+			continue
+		}
+		if x.of == "" && strings.TrimSpace(x.text) != "" {
+			out.Says = fmt.Sprintf("“%s” says too little", clip(x.text))
+		}
+		if x.of != "" {
+			lacks = append(lacks, x.of)
+		}
+	}
+	if good := len(values) - len(lacks); len(values) > 0 && (len(lacks) == 0 && len(texts) > 0 || len(lacks) > 0 && good > 0 || values[0].unseen && values[0].number) {
+		out.State, out.Says, out.Lacks, out.Texts = Answered, "", lacks, texts
+		return
+	}
+	if len(lacks) > 0 {
+		out.Lacks = lacks
+	}
+}
+
+// clip shortens a text of the protocol that is quoted in a verdict.
+func clip(s string) string {
+	r := []rune(strings.Join(strings.Fields(s), " "))
+	if len(r) > 40 {
+		return string(r[:39]) + "…"
+	}
+	return string(r)
+}
+
+// fillers are words that do not make a held place a statement.
+var fillers = []string{"the", "a", "an", "here", "yet", "later", "still", "please", "as", "be", "to", "is", "are", "it", "see", "in", "on", "of", "and", "or", "this", "that", "will", "we", "not", "no", "for", "at", "by", "any", "so", "same", "was", "were"}
+
+// held are words that only hold a place; a text of such and of fillers says nothing.
+var held = []string{"none", "n", "na", "nil", "null", "tbd", "tba", "tbc", "todo", "fixme", "xxx", "xx", "applicable", "available", "known", "unknown", "stated", "given",
+	"decided", "determined", "done", "announced", "added", "completed", "confirmed", "written", "filled", "fill", "write", "insert", "text", "usual", "before", "above", "below",
+	"standard", "normal", "normally", "etc", "ditto", "idem", "placeholder", "lorem", "ipsum", "dolor", "sit", "amet", "something", "anything", "whatever", "blah", "foo", "bar", "test", "yes", "ok"}
+
+// adequate tells whether a text says something: a fact is more than a held place, other
+// texts have three different words or more that are not all held places or fillers, and a
+// sentence six words.
+func adequate(s string, k welfare.Key) bool {
+	words, signs := wordsOf(s)
+	seen := map[string]bool{}
+	meaning := 0
+	for _, w := range words {
+		if seen[w] {
+			continue
+		}
+		seen[w] = true
+		if !slices.Contains(held, w) && !slices.Contains(fillers, w) && !oneSign(w) {
+			meaning++
+		}
+	}
+	n := max(len(seen), signs/2) // of writing without spaces two signs make a word
+	switch {
+	case meaning == 0 && signs == 0:
+		return false
+	case k.Fact:
+		return n >= 1
+	case k.Sentence:
+		return n >= 6
+	}
+	return n >= 3
+}
+
+// wordsOf splits a text into lower-case words that hold a letter or digit, and counts the
+// signs of scripts that are written without spaces.
+func wordsOf(s string) (words []string, signs int) {
+	return strings.FieldsFunc(strings.ToLower(s), func(r rune) bool { return !letter(r) && !digit(r) }), different(s)
+}
+
+// Coverage sums up a checklist whose places were looked for.
+func Coverage(c *Checklist) []string {
+	var by [Inapplicable + 1][]string
+	total := 0
+	for i := range c.Items {
+		x := &c.Items[i]
+		s := x.State()
+		by[s] = append(by[s], x.Number)
+		if s != Inapplicable {
+			total++
+		}
+	}
+	what := "the items of " + c.Name
+	if c.Name == "Field trials" {
+		what = "what readers of field trials ask for"
+	}
+	if c.Plan {
+		what += " that a plan can answer"
+	}
+	s := []string{fmt.Sprintf("Of %s %s concern this trial: %s answered and %s in part.", what, num.Count(total), are(len(by[Answered])), are(len(by[Partly])))}
+	list := func(lead string, of State) {
+		if len(by[of]) > 0 {
+			s = append(s, lead+": "+strings.Join(by[of], ", ")+".")
+		}
+	}
+	list("Missing", Missing)
+	list("In part", Partly)
+	list("Stated in the protocol, but not in this report", Unprinted)
+	if v := by[Waiting]; len(v) > 0 {
+		s = append(s, "Waiting for the draw or the data: "+strings.Join(v, ", ")+".")
+	}
+	return append(s, "A gap is no error of the trial: the key of the protocol that would close it stands beside it.")
+}
+
+func are(n int) string {
+	if n == 1 {
+		return "1 is"
+	}
+	return num.Count(n) + " are"
+}
+
+// GuidelineNotes say where the items of a checklist were read.
+func GuidelineNotes(c *Checklist) []string {
+	if len(c.Items) == 0 {
+		return nil
+	}
+	first := &c.Items[0]
+	if first.Mark == "M" {
+		return []string{"Common practice, no source: what readers of field trials usually ask for, from memory (M)."}
+	}
+	var sources, memory []string
+	marks := map[string]bool{}
+	for i := range c.Items {
+		x := &c.Items[i]
+		title := welfare.SourceOf(welfare.Citation{Source: x.Source}).Title
+		if !slices.Contains(sources, title) {
+			sources = append(sources, title)
+		}
+		if x.Memory != "" {
+			memory = append(memory, x.Number)
+		}
+		marks[x.Mark] = true
+	}
+	s := "Numbers as in the guideline, words ours"
+	if marks["C2"] {
+		s += "; read at second hand (C2)"
+	} else {
+		s += "; read in its tables (C)"
+	}
+	out := []string{s + ". " + strings.Join(sources, ". ") + "."}
+	if len(memory) > 0 {
+		out = append(out, "That items "+And(memory)+" ask for each level is from memory (M): look it up in the guideline.")
+	}
+	return out
 }

@@ -2,11 +2,9 @@ package prose
 
 import (
 	"fmt"
-	"slices"
 	"strings"
 
 	"penwright/analysis/num"
-	"penwright/analysis/result"
 	"penwright/analysis/trial"
 	"penwright/protocol"
 	"penwright/protocol/allot"
@@ -214,54 +212,4 @@ func Scheme(t *trial.Trial) []string {
 		s = append(s, "The seed is made by the system at the draw and recorded with it, so that anybody can repeat it.")
 	}
 	return append(s, "It is made once and its record is kept; a second draw is counted and needs a reason.")
-}
-
-// PlanGuideline keeps the items of the guideline that can be answered before there are
-// data, and answers those on the draw and the analysis from the plan.
-func PlanGuideline(t *trial.Trial, rs *result.Results) []Item {
-	var out []Item
-	for _, x := range Guideline(t, rs) {
-		switch {
-		case slices.Contains([]string{"3b", "3c", "10a", "10b", "11", "16b", "17a", "17b", "18"}, x.Number):
-			continue
-		case x.Number == "4a":
-			_, list := allot.Scheme(t.Plan, t.Roster)
-			if x.Given = x.Given || !list.HasErrors(); x.Given {
-				x.Answer, x.Section = "Answered", "randomization-and-blinding"
-			}
-		case x.Number == "5" && x.Given:
-			x.Section = "randomization-and-blinding"
-		case x.Number == "7a":
-			x.Asks = "statistical method of each analysis"
-			if x.Given = len(t.Protocol.Responses) > 0; x.Given {
-				x.Answer, x.Section = "Answered", "planned-analysis"
-			} else {
-				x.Answer = "Not stated; would be answered by response"
-			}
-		}
-		if x.Given && x.Section == "" {
-			switch x.Number {
-			case "6a", "6b", "7b":
-				x.Section = "planned-analysis"
-			case "8a", "8b":
-				x.Section = "material-site-and-treatments"
-				if t.Protocol.Animals != nil {
-					x.Section = "animals-housing-and-treatments"
-				}
-			}
-		}
-		out = append(out, x)
-	}
-	return out
-}
-
-// PlanCoverage sums up how many items a plan answers.
-func PlanCoverage(items []Item) []string {
-	n := 0
-	for _, x := range items {
-		if x.Given {
-			n++
-		}
-	}
-	return []string{fmt.Sprintf("Of the items of the ARRIVE 2.0 guideline %d can be answered before there are data; %d are. What is not stated is a gap, no error.", len(items), n)}
 }

@@ -150,6 +150,7 @@ type tables struct {
 	recalled []Recalled
 	sources  []Source
 	species  []animal
+	asked    []asked
 }
 
 // loaded reads the embedded data once.
@@ -185,6 +186,7 @@ var loaded = sync.OnceValue(func() *tables {
 	for _, r := range rows("species", "species", "words", "groups") {
 		t.species = append(t.species, animal{name: r[0], words: strings.Split(r[1], "|"), groups: strings.Split(r[2], "|")})
 	}
+	t.asked = readGuidelines()
 	return t
 })
 

@@ -208,7 +208,8 @@ func TestRows(t *testing.T) {
 		}
 	}
 	for _, s := range loaded().sources {
-		used := slices.ContainsFunc(limits, func(l Limit) bool { return l.Source == s.Key }) || slices.ContainsFunc(loaded().rules, func(r Rule) bool { return r.Source == s.Key })
+		used := slices.ContainsFunc(limits, func(l Limit) bool { return l.Source == s.Key }) || slices.ContainsFunc(loaded().rules, func(r Rule) bool { return r.Source == s.Key }) ||
+			slices.ContainsFunc(loaded().asked, func(x asked) bool { return x.Source == s.Key })
 		if !used {
 			t.Errorf("source %s is not used", s.Key)
 		}
@@ -686,7 +687,7 @@ func TestNoAnimals(t *testing.T) {
 // words are those by which methods are known in the trade (common practice, no source).
 func TestNoMethodOfKilling(t *testing.T) {
 	var all []string
-	for _, name := range []string{"space", "care", "blood", "dose", "rules", "recalled", "sources", "species"} {
+	for _, name := range []string{"space", "care", "blood", "dose", "rules", "recalled", "sources", "species", "guideline"} {
 		b, err := files.ReadFile("data/" + name + ".csv")
 		if err != nil {
 			t.Fatal(err)

@@ -577,20 +577,6 @@ func Signatures(p *protocol.Protocol) doc.Table {
 	return listing("signatures", "Signatures", []string{"Who", "Meaning", "On", "Signature"}, rows)
 }
 
-// Coverage is the reporting guideline item by item.
-func Coverage(items []prose.Item) doc.Table {
-	t := doc.Table{ID: "coverage", Caption: text("Items of the ARRIVE 2.0 guideline"), Columns: []doc.Column{left(true), left(false), left(false)},
-		Head: head(cell("Item"), cell("Asks for"), cell("Answered"))}
-	for _, x := range items {
-		answer := text(x.Answer)
-		if x.Section != "" {
-			answer = append(answer, doc.Text{Text: " ("}, doc.Ref{ID: x.Section, Optional: true, Text: "in this report"}, doc.Text{Text: ")"})
-		}
-		t.Rows = append(t.Rows, doc.Row{Cells: []doc.Cell{cell(x.Number), cell(x.Asks), {Text: answer}}})
-	}
-	return t
-}
-
 // sortTreatments puts treatments in the order of their levels rather than of the draw.
 func sortTreatments(t *trial.Trial, unit int, names []string) {
 	rank := map[string]int{}
