@@ -72,6 +72,7 @@ type builder struct {
 	options     Options
 	fingerprint string
 	list        diag.List
+	author                  // what the author's words need and leave behind
 	checklists  []checklist // whose places are found when all is numbered
 }
 
@@ -219,7 +220,7 @@ func Document(t *trial.Trial, rs *result.Results, opt Options) (*doc.Document, d
 	if list.HasErrors() {
 		return nil, list
 	}
-	text, more := compose.Compose(sources, main, b.view(), b.functions(), compose.Limits{})
+	text, more := b.compose(sources, main)
 	list = append(append(list, b.list...), more...)
 	p := t.Protocol
 	var authors []string
@@ -229,7 +230,7 @@ func Document(t *trial.Trial, rs *result.Results, opt Options) (*doc.Document, d
 	d := &doc.Document{
 		Lang: "en", Title: p.Trial.Title, ShortTitle: p.Trial.Title, Code: p.Trial.Code, Status: rs.Trial.Status,
 		Author: strings.Join(authors, ", "), Date: opt.Date, Fingerprint: b.fingerprint, Paper: p.Report.Paper,
-		Blocks: tidy(text.Blocks), Notes: text.Notes,
+		Blocks: once(tidy(text.Blocks)), Notes: text.Notes,
 	}
 	list = append(list, doc.Number(d)...)
 	b.cover(d)
@@ -261,13 +262,12 @@ func (b *builder) sources() ([]compose.Source, string, diag.List) {
 		}
 		out = append(out, compose.Source{Name: strings.TrimSuffix(path.Base(file), ".md"), File: file, Text: string(data)})
 	}
-	if data, err := fs.ReadFile(templates.FS, name+".md"); err == nil && !strings.Contains(name, "/") {
+	if data, err := fs.ReadFile(templates.FS, name+".md"); err == nil && !strings.Contains(name, "/") && name != functionsPage {
 		return append(out, compose.Source{Name: name + ".md", Text: string(data)}), name + ".md", nil
 	}
-	for _, f := range b.trial.Files {
-		if f.Path == name {
-			return append(out, compose.Source{Name: f.Path, Text: string(f.Data)}), f.Path, nil
-		}
+	if source, ok := b.source(name); ok {
+		b.own = name
+		return append(out, source), name, nil
 	}
 	fault := diag.Diagnostic{Severity: diag.Error, Code: "unknown-template",
 		Message: fmt.Sprintf("there is no template %q in this version, and no such file in the folder", name), Hint: "built in are " + strings.Join(Templates(), ", ")}

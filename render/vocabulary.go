@@ -2,6 +2,7 @@ package render
 
 import (
 	"fmt"
+	"maps"
 	"sort"
 	"strings"
 	"text/template"
@@ -9,7 +10,6 @@ import (
 	"penwright/analysis/prose"
 	"penwright/analysis/result"
 	"penwright/protocol"
-	"penwright/protocol/diag"
 	"penwright/render/compose"
 	"penwright/render/doc"
 	"penwright/render/table"
@@ -118,29 +118,15 @@ func paragraphs(sentences []string) []doc.Block {
 func (b *builder) functions() template.FuncMap {
 	p := &b.pictures
 	t, rs := b.trial, b.rs
-	fault := func(kind, name string, known []string) error {
-		near := diag.Nearest(name, known)
-		f := &compose.Fault{Code: "unknown-" + kind, Message: fmt.Sprintf("there is no %s %q", kind, name)}
-		if near != "" {
-			f.Hint = fmt.Sprintf("did you mean %q?", near)
-		} else {
-			f.Hint = "known are " + strings.Join(known, ", ")
-		}
-		return f
-	}
 	response := func(args []string) (*result.Response, error) {
-		var names []string
-		for i := range rs.Responses {
-			names = append(names, rs.Responses[i].Name)
+		s, err := b.subject("table", args[:min(len(args), 1)])
+		if err != nil {
+			return nil, err
 		}
-		if len(args) == 0 {
-			return nil, &compose.Fault{Code: "no-response", Message: "the name of a response is missing", Hint: "known are " + strings.Join(names, ", ")}
+		if t.Table == nil {
+			b.waits++
 		}
-		r := p.response(args[0])
-		if r == nil {
-			return nil, fault("response", args[0], names)
-		}
-		return r, nil
+		return s.response, nil
 	}
 	term := func(r *result.Response, args []string) (string, error) {
 		var names []string
@@ -149,11 +135,14 @@ func (b *builder) functions() template.FuncMap {
 				names = append(names, m.Term)
 			}
 		}
+		if t.Table == nil {
+			names, _, _ = b.names(r)
+		}
 		if len(args) < 2 {
 			return "", &compose.Fault{Code: "no-term", Message: "the name of a term is missing", Hint: "known are " + strings.Join(names, ", ")}
 		}
 		if !contains(names, args[1]) {
-			return "", fault("term", args[1], names)
+			return "", unknown("term", args[1], names)
 		}
 		return args[1], nil
 	}
@@ -196,6 +185,7 @@ func (b *builder) functions() template.FuncMap {
 		"rules":         func() doc.Table { return table.Rules(t.Welfare) },
 		"look-ups":      func() doc.Table { return table.LookUps(t.Protocol) },
 		"documents":     func() doc.Table { return table.Documents(t.Welfare) },
+		"claims":        b.claimsTable,
 		"files":         func() doc.Table { return table.Files(rs) },
 		"signatures":    func() doc.Table { return table.Signatures(t.Protocol) },
 	}
@@ -233,16 +223,17 @@ func (b *builder) functions() template.FuncMap {
 		"welfare":          func() []string { return prose.Welfare(t.Protocol) },
 		"compared":         func() []string { return prose.Compared(t.Welfare) },
 		"look-ups":         func() []string { return prose.LookUps(t.Protocol) },
+		"claims":           func() []string { return prose.Claims(b.claims) },
 		"provenance":       func() []string { return prose.Provenance(rs, b.options.Go, b.options.Arch) },
 		"seal":             func() []string { return prose.Seal(t) },
 		"limits":           prose.Limits,
 	}
 	chapter, ofChapter := b.chapterParagraphs(), b.chapterTables()
-	return template.FuncMap{
+	out := template.FuncMap{
 		"contents": func() []doc.Block { return []doc.Block{doc.Contents{}} },
 		"coverage": func(of string) ([]doc.Block, error) {
 			if of != "report" && of != "plan" {
-				return nil, fault("coverage", of, []string{"plan", "report"})
+				return nil, unknown("coverage", of, []string{"plan", "report"})
 			}
 			return b.coverage(of == "plan"), nil
 		},
@@ -274,7 +265,7 @@ func (b *builder) functions() template.FuncMap {
 				}
 				made = ofTerm[name](r, x)
 			default:
-				return nil, fault("table", name, keys(ofTrial, keys(ofResponse, keys(ofTerm, keys(ofChapter, nil)))))
+				return nil, unknown("table", name, keys(ofTrial, keys(ofResponse, keys(ofTerm, keys(ofChapter, nil)))))
 			}
 			if len(made.Rows) == 0 {
 				return nil, nil
@@ -312,7 +303,7 @@ func (b *builder) functions() template.FuncMap {
 				}
 				return figures[name](r.Name), nil
 			}
-			return nil, fault("figure", name, keys(figures, []string{"map", "flow", "means", "effects", "power"}))
+			return nil, unknown("figure", name, keys(figures, []string{"map", "flow", "means", "effects", "power"}))
 		},
 		"paragraph": func(name string) ([]doc.Block, error) {
 			if f := chapter[name]; f != nil {
@@ -320,7 +311,7 @@ func (b *builder) functions() template.FuncMap {
 			}
 			f := paragraphsOf[name]
 			if f == nil {
-				return nil, fault("paragraph", name, keys(paragraphsOf, keys(chapter, nil)))
+				return nil, unknown("paragraph", name, keys(paragraphsOf, keys(chapter, nil)))
 			}
 			return paragraphs(f()), nil
 		},
@@ -336,7 +327,7 @@ func (b *builder) functions() template.FuncMap {
 				}
 				return nil, nil
 			}
-			return nil, fault("list", name, []string{"hypotheses", "endpoints", "size notes"})
+			return nil, unknown("list", name, []string{"hypotheses", "endpoints", "size notes"})
 		},
 		"methods": func(name string) ([]doc.Inline, error) {
 			r, err := response([]string{name})
@@ -378,8 +369,9 @@ func (b *builder) functions() template.FuncMap {
 			return append([]doc.Block{doc.Heading{Level: 2, Text: []doc.Inline{doc.Text{Text: "References of the methods used"}}}}, bullets(refs)...)
 		},
 		"sources": func() []doc.Block { return bullets(prose.ChapterReferences(t, rs)) },
-		"ref":     func(at diag.Pos, id string) doc.Inline { return doc.Ref{ID: id, Pos: at} },
 	}
+	maps.Copy(out, b.values())
+	return out
 }
 
 // keys lists the names of a map in order, for messages, after those given.

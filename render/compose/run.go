@@ -218,6 +218,10 @@ func (r *runner) token(n int, x any) (any, error) {
 		v.blocks, v.block = []doc.Block{x}, true
 	case []doc.Block:
 		v.blocks, v.block = x, true
+	case Number:
+		v.inline = x.Text
+	case Truth:
+		return r.refuse(n, CodeWrongValue, "a truth cannot be printed", "use it in {{if}} or in a claim")
 	case Text:
 		v.blocks, v.notes, v.block = x.Blocks, x.Notes, true
 	default:

@@ -12,7 +12,56 @@ import (
 	"unicode/utf8"
 
 	"penwright/protocol/diag"
+	"penwright/render/doc"
 )
+
+// Number is a value that is printed as Text and compared as X, which keeps its full
+// precision. Where X is NaN the value is not there yet: it is printed all the same, and
+// what is asked of it stays open.
+type Number struct {
+	X    float64
+	Text []doc.Inline
+	Bare string // the digits alone, as print and the function number give them
+	Unit string // of X; what has another unit is not compared with it
+	What string // for messages: "the mean at 20 g/kg"; empty: Text says it, as "P = 0.21" does
+}
+
+// Truth is what comparing gave, with the numbers compared. It is a slice because
+// text/template takes an empty slice for false, whatever lies behind its end: one that
+// holds has its outcome inside, one that does not has it behind.
+type Truth []outcome
+
+type outcome struct {
+	why  string
+	open bool
+}
+
+// NewTruth returns a truth with its reason, such as "P = 0.21, not < 0.05".
+func NewTruth(holds bool, why string) Truth {
+	t := Truth{{why: why}}
+	if !holds {
+		t = t[:0]
+	}
+	return t
+}
+
+func openTruth(why string) Truth { return Truth{{why: why, open: true}}[:0] }
+
+func (t Truth) outcome() outcome {
+	if cap(t) == 0 {
+		return outcome{}
+	}
+	return t[:1][0]
+}
+
+// Holds tells whether what was asked holds.
+func (t Truth) Holds() bool { return len(t) > 0 }
+
+// Why tells the numbers that were compared.
+func (t Truth) Why() string { return t.outcome().why }
+
+// Open tells that a number compared is not there yet.
+func (t Truth) Open() bool { return t.outcome().open }
 
 // field reads names one inside the other. Text, numbers and truths come out with their
 // plain types, whatever the data call them.
@@ -159,6 +208,12 @@ func fit(a any, t reflect.Type) (reflect.Value, bool) {
 		return v.Elem(), true
 	}
 	target := reflect.New(t).Elem()
+	if n, ok := a.(Number); ok && target.CanFloat() && !math.IsNaN(n.X) {
+		return reflect.ValueOf(n.X).Convert(t), true
+	}
+	if truth, ok := a.(Truth); ok && t.Kind() == reflect.Bool {
+		return reflect.ValueOf(truth.Holds()).Convert(t), true
+	}
 	switch {
 	case v.Kind() == reflect.String && t.Kind() == reflect.String, v.Kind() == reflect.Bool && t.Kind() == reflect.Bool:
 		return v.Convert(t), true
@@ -183,6 +238,16 @@ func describe(a any) string {
 
 // describeType names a kind of value as an author of templates knows it.
 func describeType(t reflect.Type) string {
+	switch t {
+	case reflect.TypeFor[Number]():
+		return "a number"
+	case reflect.TypeFor[Truth]():
+		return "a truth"
+	case reflect.TypeFor[Text](), reflect.TypeFor[[]doc.Block]():
+		return "a block"
+	case reflect.TypeFor[doc.Inline](), reflect.TypeFor[[]doc.Inline]():
+		return "a text"
+	}
 	switch t.Kind() {
 	case reflect.String:
 		return "a text"
@@ -210,16 +275,18 @@ func describeType(t reflect.Type) string {
 // ownFuncs are the functions that every template has. They stand in for those of
 // text/template, whose cost is not bounded (print) or which compare only equal types.
 var ownFuncs = map[string]any{
-	"not":   func(a any) bool { return !truth(a) },
-	"eq":    equalsAny,
-	"ne":    func(a, b any) (bool, error) { c, err := equal(a, b); return !c, err },
-	"lt":    func(a, b any) (bool, error) { c, err := compare(a, b); return c < 0, err },
-	"le":    func(a, b any) (bool, error) { c, err := compare(a, b); return c <= 0, err },
-	"gt":    func(a, b any) (bool, error) { c, err := compare(a, b); return c > 0, err },
-	"ge":    func(a, b any) (bool, error) { c, err := compare(a, b); return c >= 0, err },
-	"len":   length,
-	"index": index,
-	"print": printText,
+	"not":     not,
+	"eq":      equalsAny,
+	"ne":      func(a, b any) (Truth, error) { return ordered(a, b, "≠", func(c int) bool { return c != 0 }) },
+	"lt":      func(a, b any) (Truth, error) { return ordered(a, b, "<", func(c int) bool { return c < 0 }) },
+	"le":      func(a, b any) (Truth, error) { return ordered(a, b, "≤", func(c int) bool { return c <= 0 }) },
+	"gt":      func(a, b any) (Truth, error) { return ordered(a, b, ">", func(c int) bool { return c > 0 }) },
+	"ge":      func(a, b any) (Truth, error) { return ordered(a, b, "≥", func(c int) bool { return c >= 0 }) },
+	"between": between,
+	"number":  func(n Number) string { return n.Bare },
+	"len":     length,
+	"index":   index,
+	"print":   printText,
 }
 
 func truth(a any) bool {
@@ -227,33 +294,139 @@ func truth(a any) bool {
 	return t
 }
 
-func equalsAny(a any, others ...any) (bool, error) {
-	if len(others) == 0 {
-		return false, errors.New("eq takes at least two values")
+func not(a any) Truth {
+	t, ok := a.(Truth)
+	switch {
+	case !ok:
+		return NewTruth(!truth(a), "")
+	case t.Open():
+		return t
 	}
+	return NewTruth(!t.Holds(), t.Why())
+}
+
+func equalsAny(a any, others ...any) (Truth, error) {
+	if len(others) == 0 {
+		return nil, errors.New("eq takes at least two values")
+	}
+	var said Truth
 	for _, b := range others {
-		if same, err := equal(a, b); same || err != nil {
-			return same, err
+		t, err := ordered(a, b, "=", func(c int) bool { return c == 0 })
+		if err != nil || t.Holds() {
+			return t, err
+		}
+		said = t
+	}
+	return said, nil
+}
+
+// between tells whether a lies from low to high, both included.
+func between(a, low, high any) (Truth, error) {
+	t, err := ordered(a, low, "≥", func(c int) bool { return c >= 0 })
+	if err != nil || !t.Holds() {
+		return t, err
+	}
+	return ordered(a, high, "≤", func(c int) bool { return c <= 0 })
+}
+
+// ordered compares two values and says how it came out.
+func ordered(a, b any, sign string, holds func(order int) bool) (Truth, error) {
+	x, isX := a.(Number)
+	y, isY := b.(Number)
+	switch {
+	case isX && math.IsNaN(x.X):
+		return openTruth(saidOf(a) + " is not there yet"), nil
+	case isY && math.IsNaN(y.X):
+		return openTruth(saidOf(b) + " is not there yet"), nil
+	case isX && isY && x.Unit != y.Unit:
+		return nil, fmt.Errorf("%s and %s have different units", saidOf(a), saidOf(b))
+	}
+	va, vb := indirect(reflect.ValueOf(a)), indirect(reflect.ValueOf(b))
+	ta, boolA := verdict(a, va)
+	tb, boolB := verdict(b, vb)
+	if sign == "=" || sign == "≠" {
+		unequal := -1
+		switch {
+		case !va.IsValid() || !vb.IsValid():
+			if va.IsValid() == vb.IsValid() {
+				unequal = 0
+			}
+			return NewTruth(holds(unequal), ""), nil
+		case boolA && boolB:
+			if ta == tb {
+				unequal = 0
+			}
+			return NewTruth(holds(unequal), ""), nil
 		}
 	}
-	return false, nil
-}
-
-func equal(a, b any) (bool, error) {
-	va, vb := indirect(reflect.ValueOf(a)), indirect(reflect.ValueOf(b))
-	switch {
-	case !va.IsValid() || !vb.IsValid():
-		return va.IsValid() == vb.IsValid(), nil
-	case va.Kind() == reflect.Bool && vb.Kind() == reflect.Bool:
-		return va.Bool() == vb.Bool(), nil
+	c, err := compare(va, vb)
+	if err != nil {
+		return nil, err
 	}
-	c, err := compare(a, b)
-	return c == 0, err
+	right := saidOf(b)
+	if isY && y.What != "" {
+		right = y.What + ", " + doc.Plain(y.Text)
+	}
+	left := saidOf(a)
+	if isX && x.What != "" {
+		left = x.What + " is " + doc.Plain(x.Text)
+	}
+	why := left + ", not " + sign + " " + right
+	if holds(c) {
+		why = left + " (" + sign + " " + right + ")"
+	}
+	if fy, ok := number(vb); ok && isX && x.X != fy && rounded(fy, x.Bare) == x.Bare {
+		why += fmt.Sprintf(" (%.6g against %.6g)", x.X, fy)
+	}
+	return NewTruth(holds(c), why), nil
 }
 
-// compare orders two texts or two numbers. What is not a number is unequal to all.
-func compare(a, b any) (int, error) {
-	va, vb := indirect(reflect.ValueOf(a)), indirect(reflect.ValueOf(b))
+// rounded is a number with as many decimals as digits that are already rounded.
+func rounded(x float64, like string) string {
+	_, decimals, _ := strings.Cut(like, ".")
+	return strings.Replace(strconv.FormatFloat(x, 'f', len(decimals), 64), "-", "\u2212", 1)
+}
+
+// verdict reads a value that is true or false.
+func verdict(a any, v reflect.Value) (holds, ok bool) {
+	if t, ok := a.(Truth); ok {
+		return t.Holds(), true
+	}
+	if v.IsValid() && v.Kind() == reflect.Bool {
+		return v.Bool(), true
+	}
+	return false, false
+}
+
+// saidOf puts a value that is compared into words.
+func saidOf(a any) string {
+	const longest = 80
+	if n, ok := a.(Number); ok {
+		if n.What != "" && math.IsNaN(n.X) {
+			return n.What
+		}
+		return doc.Plain(n.Text)
+	}
+	v := indirect(reflect.ValueOf(a))
+	switch {
+	case !v.IsValid():
+		return "nothing"
+	case v.Kind() == reflect.String && v.Len() <= longest:
+		return strconv.Quote(v.String())
+	case v.Kind() == reflect.String:
+		return "a text"
+	case v.CanInt():
+		return wholeNumber(v.Int())
+	case v.CanUint():
+		return strconv.FormatUint(v.Uint(), 10)
+	case v.CanFloat():
+		return strings.Replace(strconv.FormatFloat(v.Float(), 'g', -1, 64), "-", "\u2212", 1)
+	}
+	return describe(a)
+}
+
+// compare orders two texts or two numbers.
+func compare(va, vb reflect.Value) (int, error) {
 	if va.Kind() == reflect.String && vb.Kind() == reflect.String {
 		return strings.Compare(va.String(), vb.String()), nil
 	}
@@ -270,7 +443,7 @@ func compare(a, b any) (int, error) {
 	x, okx := number(va)
 	y, oky := number(vb)
 	if !okx || !oky {
-		return 0, fmt.Errorf("%s cannot be compared with %s", describe(a), describe(b))
+		return 0, fmt.Errorf("%s cannot be compared with %s", kindOf(va), kindOf(vb))
 	}
 	switch {
 	case math.IsNaN(x) || math.IsNaN(y):
@@ -283,10 +456,19 @@ func compare(a, b any) (int, error) {
 	return 0, nil
 }
 
+func kindOf(v reflect.Value) string {
+	if !v.IsValid() {
+		return "nothing"
+	}
+	return describeType(v.Type())
+}
+
 func number(v reflect.Value) (float64, bool) {
 	switch {
 	case !v.IsValid():
 		return 0, false
+	case v.Type() == reflect.TypeFor[Number]():
+		return v.FieldByName("X").Float(), true
 	case v.CanInt():
 		return float64(v.Int()), true
 	case v.CanUint():
@@ -298,6 +480,9 @@ func number(v reflect.Value) (float64, bool) {
 }
 
 func length(a any) (int, error) {
+	if describe(a) == "a truth" {
+		return 0, errors.New("a truth has no length")
+	}
 	v := indirect(reflect.ValueOf(a))
 	switch v.Kind() {
 	case reflect.String:
@@ -343,6 +528,9 @@ func index(a any, keys ...any) (any, error) {
 func printText(parts ...any) (string, error) {
 	var b strings.Builder
 	for _, p := range parts {
+		if n, ok := p.(Number); ok {
+			p = n.Bare
+		}
 		switch v := indirect(reflect.ValueOf(p)); {
 		case v.Kind() == reflect.String:
 			if b.Len()+v.Len() > maxPrint {
