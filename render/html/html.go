@@ -86,11 +86,7 @@ func hash(s string) string {
 func (p *page) head(opt Options) {
 	d := p.doc
 	style := strings.ReplaceAll(opt.Style, "</", `<\/`)
-	paper := "A4"
-	if d.Paper == "Letter" {
-		paper = "letter"
-	}
-	style = "\n" + strings.TrimSpace(style) + "\n@page { size: " + paper + "; margin: 20mm 18mm 22mm; }\n"
+	style = "\n" + strings.TrimSpace(style) + "\n" + paper(d) + "\n"
 	code := "\n" + strings.TrimSpace(script) + "\n"
 
 	title := d.Title
@@ -108,6 +104,34 @@ func (p *page) head(opt Options) {
 	p.raw("<title>", esc(title), "</title>\n<style>", style, "</style>\n</head>\n")
 	p.raw("<body>\n<a class=\"skip\" href=\"#x_main\">Skip to the text</a>\n")
 	p.tail = "<script>" + code + "</script>\n</body>\n</html>\n"
+}
+
+// paper is the rule for printed pages, with what stands at their feet.
+func paper(d *doc.Document) string {
+	size := "A4"
+	if d.Paper == "Letter" {
+		size = "letter"
+	}
+	foot := join(" · ", d.Code, d.ShortTitle)
+	if d.Fingerprint != "" {
+		foot = join(" · ", d.Code, "fingerprint "+d.Fingerprint)
+	}
+	return "@page { size: " + size + `; margin: 20mm 18mm 22mm; @bottom-left { content: "` + cssString(foot) + `"; font: 8pt sans-serif; color: #444; }` +
+		` @bottom-right { content: "page " counter(page) " of " counter(pages); font: 8pt sans-serif; color: #444; } }`
+}
+
+// cssString makes text fit for a quoted string of a style sheet: what is not a letter, a
+// digit or a space of ASCII is written by its number.
+func cssString(s string) string {
+	var b strings.Builder
+	for _, r := range doc.Clean(s) {
+		if r == ' ' || r >= '0' && r <= '9' || r >= 'A' && r <= 'Z' || r >= 'a' && r <= 'z' {
+			b.WriteRune(r)
+		} else {
+			fmt.Fprintf(&b, "\\%06x", r)
+		}
+	}
+	return b.String()
 }
 
 // language returns a language tag, or English for what is none.
@@ -143,7 +167,7 @@ func (p *page) body(files []Attachment) {
 	p.raw("</header>\n")
 	p.contents(files)
 	p.raw("<main id=\"x_main\">\n")
-	p.blocks(d.Blocks)
+	p.sections(d.Blocks)
 	p.notes()
 	p.attachments(files)
 	p.raw("</main>\n<footer>\n<p>", esc(join(" · ", d.Code, d.ShortTitle, d.Status)))
@@ -163,9 +187,12 @@ func join(sep string, parts ...string) string {
 	return strings.Join(kept, sep)
 }
 
+// deepest is the level of the headings down to which there are sections, which the
+// contents name.
+const deepest = 2
+
 // contents writes the way through the page: headings down to the second level.
 func (p *page) contents(files []Attachment) {
-	const deepest = 2
 	var list []doc.Heading
 	doc.Walk(p.doc.Blocks, func(node any) {
 		if h, ok := node.(doc.Heading); ok && h.Level <= deepest && h.ID != "" {
@@ -175,7 +202,7 @@ func (p *page) contents(files []Attachment) {
 	if len(list) == 0 {
 		return
 	}
-	p.raw("<nav aria-labelledby=\"x_contents\">\n<h2 id=\"x_contents\">Contents</h2>\n")
+	p.raw("<nav aria-label=\"Contents\">\n<details open>\n<summary>Contents</summary>\n")
 	level := 0
 	for _, h := range list {
 		for level > h.Level {
@@ -206,7 +233,7 @@ func (p *page) contents(files []Attachment) {
 	for ; level > 0; level-- {
 		p.raw("</li>\n</ol>\n")
 	}
-	p.raw("</nav>\n")
+	p.raw("</details>\n</nav>\n")
 }
 
 func (p *page) close(level *int, to int) {
@@ -220,6 +247,26 @@ func (p *page) number(number string) {
 	if number != "" {
 		p.raw("<span class=\"number\">", esc(number), "</span> ")
 	}
+}
+
+// sections writes the blocks of the text, each heading with what stands under it.
+func (p *page) sections(blocks []doc.Block) {
+	var open []int // levels of the headings whose sections are open
+	closeTo := func(level int) {
+		for len(open) > 0 && open[len(open)-1] >= level {
+			p.raw("</section>\n")
+			open = open[:len(open)-1]
+		}
+	}
+	for i, b := range blocks {
+		if h, ok := b.(doc.Heading); ok && h.Level <= deepest {
+			closeTo(h.Level)
+			p.raw("<section>\n")
+			open = append(open, h.Level)
+		}
+		p.blocks(blocks[i : i+1])
+	}
+	closeTo(0)
 }
 
 func (p *page) blocks(blocks []doc.Block) {
@@ -314,11 +361,20 @@ func (p *page) figure(f doc.Figure) {
 	id := "x_figure_" + strconv.Itoa(p.figures)
 	p.raw("<figure", attribute("id", f.ID), ">\n")
 	if f.Picture != nil {
-		name := join(": ", label("Figure", f.Number), doc.Plain(f.Caption))
-		if err := drawing(p.w, f.Picture, id, name, f.Alt); err != nil && p.err == nil {
+		// The region scrolls sideways where the window is narrow, so it takes the focus.
+		name := label("Figure", f.Number)
+		if name == "" {
+			name = "Figure"
+		}
+		p.raw("<div class=\"plot\" role=\"group\" tabindex=\"0\"", attribute("aria-label", name), ">\n")
+		alt := f.Alt
+		if alt == "" {
+			alt = doc.Plain(f.Caption)
+		}
+		if err := drawing(p.w, f.Picture, id, "", alt); err != nil && p.err == nil {
 			p.err = err
 		}
-		p.raw("\n")
+		p.raw("\n</div>\n")
 	}
 	p.raw("<figcaption>")
 	p.caption(label("Figure", f.Number), f.Caption)

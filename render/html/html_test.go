@@ -174,9 +174,11 @@ func checkEscaped(t *testing.T, text string) {
 		return shape
 	}
 	got, want := skeleton(text+"#x"), skeleton("text#x")
-	// Whether a column needs padding is all that may depend on the text.
+	// Whether a column needs padding, and whether a cell breaks its words, is all that may
+	// depend on the text.
+	cells := regexp.MustCompile(`(<t[hd][^>]*) class=""`)
 	drop := func(shape []string) string {
-		all := strings.Join(shape, "\n")
+		all := cells.ReplaceAllString(strings.Join(shape, "\n"), "$1")
 		return strings.ReplaceAll(strings.ReplaceAll(all, "<span class=\"\" aria-hidden=\"\">\n</span>\n", ""), "<a href=\"\">", "<a>")
 	}
 	if g, w := drop(got), drop(want); g != w {

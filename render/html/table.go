@@ -1,7 +1,9 @@
 package html
 
 import (
+	"slices"
 	"strconv"
+	"strings"
 	"unicode/utf8"
 
 	"penwright/render/doc"
@@ -21,14 +23,14 @@ func (p *page) table(t doc.Table) {
 		name = " aria-labelledby=\"x_caption_" + number + "\""
 	}
 	p.raw("<div class=\"scroll\" role=\"group\" tabindex=\"0\"", name, ">\n<table")
-	if t.Sortable {
+	if sortable(t) {
 		p.raw(" class=\"sortable\"")
 	}
 	p.raw(">\n")
 	if t.Number != "" || len(t.Caption) > 0 {
-		p.raw("<caption id=\"x_caption_", number, "\">")
+		p.raw("<caption id=\"x_caption_", number, "\"><span>")
 		p.caption(label("Table", t.Number), t.Caption)
-		p.raw("</caption>\n")
+		p.raw("</span></caption>\n")
 	}
 	if len(t.Head) > 0 {
 		p.raw("<thead>\n")
@@ -64,6 +66,18 @@ func (p *page) table(t doc.Table) {
 	p.raw("</div>\n")
 }
 
+// sortable tells whether the rows of a table can stand in any order, and every column
+// has one head of its own to ask for it.
+func sortable(t doc.Table) bool {
+	if !t.Sortable || len(t.Head) == 0 || len(t.Rows) < 2 {
+		return false
+	}
+	whole := func(cells []doc.Cell) bool {
+		return len(cells) == len(t.Columns) && !slices.ContainsFunc(cells, func(c doc.Cell) bool { return c.Span > 1 })
+	}
+	return whole(t.Head[len(t.Head)-1]) && !slices.ContainsFunc(t.Rows, func(r doc.Row) bool { return r.Group || r.Rule || !whole(r.Cells) })
+}
+
 func (p *page) headCells(t doc.Table, row []doc.Cell) {
 	col := 0
 	for _, c := range row {
@@ -77,7 +91,7 @@ func (p *page) headCells(t doc.Table, row []doc.Cell) {
 		if span > 1 {
 			scope = "colgroup"
 		}
-		p.raw("<th scope=\"", scope, "\"", spanned(span), aligned(headAlign(alignment(t, col, c))), ">")
+		p.raw("<th scope=\"", scope, "\"", spanned(span), classes(headAlign(alignment(t, col, c)), longWord(c.Text)), ">")
 		p.inlines(c.Text)
 		p.raw("</th>")
 		col += span
@@ -104,7 +118,7 @@ func (p *page) row(t doc.Table, row doc.Row, tails []string) {
 	}
 	p.raw(">")
 	if row.Group && len(row.Cells) > 0 {
-		p.raw("<th scope=\"rowgroup\"", spanned(max(len(t.Columns), 1)), ">")
+		p.raw("<th scope=\"rowgroup\"", spanned(max(len(t.Columns), 1)), classes(doc.Left, longWord(row.Cells[0].Text)), ">")
 		p.inlines(row.Cells[0].Text)
 		p.raw("</th></tr>\n")
 		return
@@ -117,7 +131,7 @@ func (p *page) row(t doc.Table, row doc.Row, tails []string) {
 		if col < len(t.Columns) && t.Columns[col].Key && doc.Plain(c.Text) != "" {
 			tag, scope = "th", " scope=\"row\""
 		}
-		p.raw("<", tag, scope, spanned(span), aligned(align), ">")
+		p.raw("<", tag, scope, spanned(span), classes(align, longWord(c.Text)), ">")
 		p.inlines(c.Text)
 		if align == doc.Decimal && col < len(tails) {
 			// Invisible digits fill what the longest tail of the column has more.
@@ -181,14 +195,38 @@ func spanned(span int) string {
 	return " colspan=\"" + strconv.Itoa(span) + "\""
 }
 
-func aligned(a doc.Align) string {
+// classes are those of a cell.
+func classes(a doc.Align, long bool) string {
+	var names []string
 	switch a {
 	case doc.Center:
-		return " class=\"center\""
+		names = append(names, "center")
 	case doc.Right:
-		return " class=\"right\""
+		names = append(names, "right")
 	case doc.Decimal:
-		return " class=\"decimal\""
+		names = append(names, "decimal")
 	}
-	return ""
+	if long {
+		names = append(names, "long")
+	}
+	if len(names) == 0 {
+		return ""
+	}
+	return " class=\"" + strings.Join(names, " ") + "\""
+}
+
+// longWord tells whether a text holds a word that would make its column wide, so that it
+// must be broken.
+func longWord(text []doc.Inline) bool {
+	const longest = 32
+	n := 0
+	for _, r := range doc.Plain(text) {
+		if n++; r == ' ' || r == '\n' || r == '\t' {
+			n = 0
+		}
+		if n > longest {
+			return true
+		}
+	}
+	return false
 }
