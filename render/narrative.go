@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"slices"
 	"strings"
+	"text/template"
 
 	"penwright/analysis/prose"
 	"penwright/protocol"
@@ -30,16 +31,109 @@ type author struct {
 	told    diag.List // of narratives
 	waits   int       // values asked for that wait for data
 	claims  []prose.Claim
+
+	dot      *view
+	words    template.FuncMap
+	made     map[string]*made
+	subjects map[string]*subject
+	known    map[string]*knownNames
+}
+
+// made is what a function gave for its words.
+type made struct {
+	blocks  []doc.Block
+	inlines []doc.Inline
+	err     error
+	waits   int // values among it that wait for data
+	printed int
+}
+
+// maxRepeats is how often the same table, figure or text may be asked for.
+const maxRepeats = 16
+
+// remember makes the functions of tables, figures and texts give what they gave before
+// for the same words, and refuse to go on doing so: a template that asks for all that
+// there is costs no more than a report, however often it asks.
+func (b *builder) remember(funcs template.FuncMap) {
+	b.made = map[string]*made{}
+	ask := func(name string, words []string, make func(m *made)) (*made, error) {
+		key := strings.Join(append([]string{name}, words...), "\x00")
+		m := b.made[key]
+		if m == nil || len(words) > 0 && words[0] == "claims" {
+			m = &made{}
+			before := b.waits
+			make(m)
+			m.waits = b.waits - before
+			if m.err == nil {
+				b.made[key] = m
+			}
+		} else {
+			b.waits += m.waits
+		}
+		if m.printed++; m.printed > maxRepeats && (len(m.blocks) > 0 || len(m.inlines) > 0) {
+			return nil, &compose.Fault{Code: compose.CodeTooMuch, Message: fmt.Sprintf("%s is asked for more than %d times", strings.Join(append([]string{name}, words...), " "), maxRepeats)}
+		}
+		return m, m.err
+	}
+	for name, f := range funcs {
+		switch f := f.(type) {
+		case func(string, ...string) ([]doc.Block, error):
+			funcs[name] = func(first string, more ...string) ([]doc.Block, error) {
+				m, err := ask(name, append([]string{first}, more...), func(m *made) { m.blocks, m.err = f(first, more...) })
+				if err != nil {
+					return nil, err
+				}
+				return m.blocks, nil
+			}
+		case func(string) ([]doc.Block, error):
+			funcs[name] = func(word string) ([]doc.Block, error) {
+				m, err := ask(name, []string{word}, func(m *made) { m.blocks, m.err = f(word) })
+				if err != nil {
+					return nil, err
+				}
+				return m.blocks, nil
+			}
+		case func(string) ([]doc.Inline, error):
+			funcs[name] = func(word string) ([]doc.Inline, error) {
+				m, err := ask(name, []string{word}, func(m *made) { m.inlines, m.err = f(word) })
+				if err != nil {
+					return nil, err
+				}
+				return m.inlines, nil
+			}
+		case func() []doc.Block:
+			funcs[name] = func() ([]doc.Block, error) {
+				m, err := ask(name, nil, func(m *made) { m.blocks = f() })
+				if err != nil {
+					return nil, err
+				}
+				return m.blocks, nil
+			}
+		}
+	}
+}
+
+// data is the dot of the template and of narratives.
+func (b *builder) data() *view {
+	if b.dot == nil {
+		v := b.view()
+		b.dot = &v
+	}
+	return b.dot
 }
 
 // compose composes the template of a report with the narratives that it places. A
 // report with claims is composed again, so that it can tell of those that come after.
 func (b *builder) compose(sources []compose.Source, main string) (compose.Text, diag.List) {
 	b.written = map[string]compose.Text{}
-	text, list := compose.Compose(sources, main, b.view(), b.functions(), b.limits)
+	b.limits.Spent = &compose.Spent{}
+	text, list := compose.Compose(sources, main, b.data(), b.functions(), b.limits)
 	if len(b.claims) > 0 && !list.HasErrors() {
-		b.list = nil
-		text, list = compose.Compose(sources, main, b.view(), b.functions(), b.limits)
+		b.limits.Spent = &compose.Spent{}
+		for _, m := range b.made {
+			m.printed = 0
+		}
+		text, list = compose.Compose(sources, main, b.data(), b.functions(), b.limits)
 	}
 	return text, append(b.told, list...)
 }
@@ -84,6 +178,7 @@ func (b *builder) ref(at diag.Pos, name string, of ...string) (doc.Inline, error
 	if err != nil {
 		return nil, err
 	}
+	b.made[strings.Join(append([]string{name}, of...), "\x00")].printed-- // it is not shown here
 	for _, x := range blocks {
 		switch x := x.(type) {
 		case doc.Table:
@@ -147,7 +242,7 @@ func (b *builder) write(part protocol.NarrativePart) compose.Text {
 	}
 	before := b.waits
 	b.writing = true
-	text, list := compose.Compose([]compose.Source{source}, part.File, b.view(), b.functions(), b.limits)
+	text, list := compose.Compose([]compose.Source{source}, part.File, b.data(), b.functions(), b.limits)
 	b.writing = false
 	b.told = append(b.told, list...)
 	if b.waits > before {

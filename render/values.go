@@ -70,9 +70,21 @@ func (b *builder) responseNames() []string {
 	return names
 }
 
+// knownNames are what a response can be asked about.
+type knownNames struct{ terms, contrasts, covariates []string }
+
 // names lists what a response can be asked about: terms, contrasts with trends, and
 // covariates. Before the data they are those of the plan.
 func (b *builder) names(r *result.Response) (terms, contrasts, covariates []string) {
+	if k := b.known[r.Name]; k != nil {
+		return k.terms, k.contrasts, k.covariates
+	}
+	defer func() {
+		if b.known == nil {
+			b.known = map[string]*knownNames{}
+		}
+		b.known[r.Name] = &knownNames{terms: terms, contrasts: contrasts, covariates: covariates}
+	}()
 	add := func(list *[]string, name string) {
 		if !slices.Contains(*list, name) {
 			*list = append(*list, name)
@@ -125,6 +137,21 @@ func (b *builder) names(r *result.Response) (terms, contrasts, covariates []stri
 
 // subject finds what the words of a call name.
 func (b *builder) subject(function string, words []string) (*subject, error) {
+	key := strings.Join(words, "\x00")
+	if s := b.subjects[key]; s != nil {
+		return s, nil
+	}
+	s, err := b.find(function, words)
+	if err == nil {
+		if b.subjects == nil {
+			b.subjects = map[string]*subject{}
+		}
+		b.subjects[key] = s
+	}
+	return s, err
+}
+
+func (b *builder) find(function string, words []string) (*subject, error) {
 	if len(words) == 0 {
 		return nil, &compose.Fault{Code: "no-response", Message: "the name of a response is missing", Hint: "known are " + strings.Join(b.responseNames(), ", ")}
 	}

@@ -89,7 +89,7 @@ func (b *builder) view() view {
 // plain paragraphs where it is a string.
 func (b *builder) text(t protocol.Text) any {
 	if t.File != "" {
-		out, list := compose.Markdown(t.File, t.Body)
+		out, list := compose.Markdown(t.File, t.Body, b.limits)
 		b.list = append(b.list, list...)
 		return out
 	}
@@ -116,6 +116,9 @@ func paragraphs(sentences []string) []doc.Block {
 
 // functions is the vocabulary of templates.
 func (b *builder) functions() template.FuncMap {
+	if b.words != nil {
+		return b.words
+	}
 	p := &b.pictures
 	t, rs := b.trial, b.rs
 	response := func(args []string) (*result.Response, error) {
@@ -371,6 +374,8 @@ func (b *builder) functions() template.FuncMap {
 		"sources": func() []doc.Block { return bullets(prose.ChapterReferences(t, rs)) },
 	}
 	maps.Copy(out, b.values())
+	b.remember(out)
+	b.words = out
 	return out
 }
 

@@ -39,11 +39,18 @@ type Text struct {
 
 // Limits bound what a template may cost. A field that is zero stands for its default.
 type Limits struct {
-	Steps  int // 5 for a node that is run, 20 for a function called; default 2 000 000
+	// Steps are 5 for a node that is run, 20 for a function of compose and 100 for one
+	// handed in, and one for each 64 bytes that it is given or gives; default 2 000 000.
+	Steps  int
 	Depth  int // templates within templates; default 64
 	Output int // bytes of Markdown; default 2 MiB
 	Values int // bytes of all values, as doc.Size counts them; default 64 MiB
+	// Spent is the account of texts that share these limits; nil: the text has its own.
+	Spent *Spent
 }
+
+// Spent is what texts have cost so far. Its zero value is ready for use.
+type Spent struct{ steps, output, values, calls, marks, work int }
 
 func (l Limits) orDefaults() Limits {
 	for _, f := range []struct {
@@ -54,6 +61,9 @@ func (l Limits) orDefaults() Limits {
 			*f.field = f.def
 		}
 	}
+	if l.Spent == nil {
+		l.Spent = &Spent{}
+	}
 	return l
 }
 
@@ -62,6 +72,7 @@ const (
 	maxSources = 1000
 	maxSource  = 1 << 20 // bytes
 	maxActions = 10_000
+	maxWords   = 100_000 // within actions
 )
 
 // The codes of what compose finds.
@@ -142,18 +153,18 @@ func Compose(sources []Source, main string, data any, funcs template.FuncMap, li
 	if run.stopped {
 		return Text{}, list
 	}
-	text, more := markdown([]byte(run.out.String()), run.place, run.values)
+	text, more := markdown([]byte(run.out.String()), run.place, run.values, run.limits.Spent)
 	return text, append(list, more...)
 }
 
 // Markdown returns the blocks of a Markdown text without actions: CommonMark with
-// tables and footnotes.
-func Markdown(name, text string) (Text, diag.List) {
+// tables and footnotes. Of the limits only what was spent counts.
+func Markdown(name, text string, limits Limits) (Text, diag.List) {
 	file, list := newFile(Source{Name: name, Text: text})
 	if list.HasErrors() {
 		return Text{}, list
 	}
-	return markdown([]byte(file.text), file.pos, nil)
+	return markdown([]byte(file.text), file.pos, nil, limits.orDefaults().Spent)
 }
 
 // file is a source made fit for parsing, with the places of its lines.

@@ -61,7 +61,7 @@ func testFuncs() template.FuncMap {
 			return []doc.Block{doc.Paragraph{Text: words("Not sealed: " + code)}}, nil
 		},
 		"narrative": func() (Text, error) {
-			text, list := Markdown("narrative.md", "# Own words[^feed]\n\nText.\n\n[^feed]: A note of the narrative.\n")
+			text, list := Markdown("narrative.md", "# Own words[^feed]\n\nText.\n\n[^feed]: A note of the narrative.\n", Limits{})
 			if len(list) > 0 {
 				return Text{}, errors.New(list[0].Message)
 			}
@@ -310,6 +310,15 @@ func TestPanicsOfFunctionsAreNotHidden(t *testing.T) {
 	Compose([]Source{{Name: "t", Text: "{{f}}"}}, "t", nil, template.FuncMap{"f": func() string { panic("boom") }}, Limits{})
 }
 
+// growing repeats a mark once, twice, … n times, with letters between.
+func growing(mark string, n int) string {
+	var b strings.Builder
+	for i := range n {
+		b.WriteString(strings.Repeat(mark, i+1) + "a")
+	}
+	return b.String()
+}
+
 // hostileTemplates each want more time or memory than a template may have.
 func hostileTemplates() map[string]string {
 	many := func(s string, n int) string { return strings.Repeat(s, n) }
@@ -325,6 +334,12 @@ func hostileTemplates() map[string]string {
 		"doubling recursion":   `{{define "r"}}{{template "r"}}{{template "r"}}{{end}}{{template "r"}}`,
 		"mutual recursion":     `{{define "a"}}x{{template "b"}}{{end}}{{define "b"}}{{template "a"}}{{end}}{{template "a"}}`,
 		"deep blocks":          many(`{{if true}}`, 100_000) + many(`{{end}}`, 100_000),
+		"long action":          `{{print` + many(` 1`, 500_000) + `}}`,
+		"many short actions":   many(`{{print 1 1 1 1 1 1 1 1 1 1 1 1 1}}`, 9_900),
+		"long pipeline":        `{{1` + many(`|print`, 170_000) + `}}`,
+		"unprinted values":     `{{range 2000000000}}{{$x := big}}{{end}}`,
+		"unprinted values 2":   `{{range 2000000000}}{{with big}}{{end}}{{end}}`,
+		"growing ticks":        growing("`", 1400),
 		"deep parentheses":     `{{` + many(`(`, 200_000) + `1` + many(`)`, 200_000) + `}}`,
 		"big values": `{{range 100000}}{{big}}
 

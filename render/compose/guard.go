@@ -20,8 +20,9 @@ const (
 	maxDepth   = 64          // nodes within nodes, of those that hold text
 )
 
-// guard refuses a text that would take the Markdown parser too long.
-func guard(src []byte, place func(int) diag.Pos) diag.List {
+// guard refuses a text that would take the Markdown parser too long, together with those
+// that were read on the same account.
+func guard(src []byte, place func(int) diag.Pos, spent *Spent) diag.List {
 	var list diag.List
 	refuse := func(offset int, format string, args ...any) diag.List {
 		list.Add(diag.Diagnostic{
@@ -30,10 +31,10 @@ func guard(src []byte, place func(int) diag.Pos) diag.List {
 		})
 		return list
 	}
-	if calls := bytes.Count(src, []byte("[^")); calls > maxCalls {
-		return refuse(bytes.Index(src, []byte("[^")), "%d footnote marks, more than %d", calls, maxCalls)
+	if spent.calls += bytes.Count(src, []byte("[^")); spent.calls > maxCalls {
+		return refuse(bytes.Index(src, []byte("[^")), "%d footnote marks, more than %d", spent.calls, maxCalls)
 	}
-	var marks, work int              // of the whole text
+	marks, work := &spent.marks, &spent.work
 	var start, runMarks, bars, n int // of the run of lines without a blank one
 	for at := 0; at < len(src); {
 		line := src[at:]
@@ -57,21 +58,21 @@ func guard(src []byte, place func(int) diag.Pos) diag.List {
 			switch c {
 			case '*', '_', '[', ']', '(', ')', '<', '!', '`', '&', '\\', '"', '\'':
 				runMarks++
-				marks++
+				*marks++
 			case '|':
 				lineBars++
-				marks++
+				*marks++
 			}
 		}
 		n++
-		marks++
+		*marks++
 		at += len(line)
-		work += runMarks*(at-start) - before
+		*work += runMarks*(at-start) - before
 		bars = max(bars, lineBars)
 		switch {
-		case marks > maxMarks:
+		case *marks > maxMarks:
 			return refuse(at-len(line), "more than %d lines and marks", maxMarks)
-		case work > maxWork:
+		case *work > maxWork:
 			return refuse(start, "a text with so many marks must be broken by empty lines")
 		case bars*n > maxCells:
 			return refuse(start, "a table of more than %d cells", maxCells)

@@ -76,8 +76,8 @@ type builder struct {
 	defined map[int]*extast.Footnote
 }
 
-func markdown(src []byte, place func(int) diag.Pos, values []value) (Text, diag.List) {
-	if list := guard(src, place); list.HasErrors() {
+func markdown(src []byte, place func(int) diag.Pos, values []value, spent *Spent) (Text, diag.List) {
+	if list := guard(src, place, spent); list.HasErrors() {
 		return Text{}, list
 	}
 	var uncalled []*extast.Footnote

@@ -109,6 +109,10 @@ func (p *program) parse(s Source) {
 		p.fault(f, 0, CodeTooMuch, fmt.Sprintf("%d actions, more than %d", n, maxActions), "")
 		return
 	}
+	if at, n := countWords(f.text); n > maxWords {
+		p.fault(f, at, CodeTooMuch, fmt.Sprintf("more than %d words within actions", maxWords), "")
+		return
+	}
 	tree := parse.New(s.Name)
 	tree.Mode = parse.SkipFuncCheck
 	set := map[string]*parse.Tree{}
@@ -130,6 +134,33 @@ func (p *program) parse(s Source) {
 		if !ok || !parse.IsEmptyTree(t.Root) || parse.IsEmptyTree(old.Root) {
 			p.trees[name] = t
 		}
+	}
+}
+
+// countWords counts what stands within actions, one more at most than there may be, and says
+// where the last of them is. Each becomes a node of the tree, many times its size.
+func countWords(text string) (at, n int) {
+	for {
+		open := strings.Index(text[at:], "{{")
+		if open < 0 {
+			return at, n
+		}
+		at += open + 2
+		end := strings.Index(text[at:], "}}")
+		if end < 0 {
+			end = len(text) - at
+		}
+		inside := false
+		for i, c := range []byte(text[at : at+end]) {
+			letter := c == '_' || c >= '0' && c <= '9' || c >= 'A' && c <= 'Z' || c >= 'a' && c <= 'z' || c >= 0x80
+			if !letter && c != ' ' && c != '\n' && c != '\t' || letter && !inside {
+				if n++; n > maxWords {
+					return at + i, n
+				}
+			}
+			inside = letter
+		}
+		at += end
 	}
 }
 

@@ -23,6 +23,7 @@ const (
 const (
 	nodeSteps   = 5  // of a node run
 	callSteps   = 20 // of a function called
+	givenSteps  = 80 // more, of one that was handed in
 	maxMessages = 100
 	maxPrint    = 64 << 10 // bytes that one print makes
 )
@@ -61,9 +62,7 @@ type runner struct {
 	out     strings.Builder
 	marks   []mark
 	values  []value
-	steps   int
 	depth   int
-	size    int // of all values
 	fault   any // what a function of ours panicked with
 }
 
@@ -156,7 +155,7 @@ func (r *runner) exceed(n int, format string, args ...any) error {
 }
 
 func (r *runner) spend(n, steps int) error {
-	if r.steps += steps; r.steps > r.limits.Steps {
+	if r.limits.Spent.steps += steps; r.limits.Spent.steps > r.limits.Steps {
 		return r.exceed(n, "the template takes more than %d steps", r.limits.Steps)
 	}
 	return nil
@@ -179,7 +178,7 @@ func (r *runner) leave(int) string {
 func (r *runner) text(n int) (string, error) { return "", r.write(n, r.sites[n].text) }
 
 func (r *runner) write(n int, s string) error {
-	if r.out.Len()+len(s) > r.limits.Output {
+	if r.limits.Spent.output += len(s); r.limits.Spent.output > r.limits.Output {
 		return r.exceed(n, "the template makes more than %d bytes of text", r.limits.Output)
 	}
 	r.marks = append(r.marks, mark{out: r.out.Len(), site: &r.sites[n]})
@@ -250,7 +249,7 @@ func (r *runner) token(n int, x any) (any, error) {
 	} else if bytes == 0 {
 		bytes = doc.Size([]doc.Block{doc.Paragraph{Text: v.inline}})
 	}
-	if r.size += bytes; r.size > r.limits.Values {
+	if r.limits.Spent.values += bytes; r.limits.Spent.values > r.limits.Values {
 		return nil, r.exceed(n, "the values that the template prints take more than %d bytes", r.limits.Values)
 	}
 	if message := v.settle(); message != "" {
@@ -334,6 +333,11 @@ func (r *runner) call(n int, args ...any) (any, error) {
 			}
 		}
 	}
+	if _, own := ownFuncs[s.name]; !own {
+		if err := r.spend(n, givenSteps); err != nil {
+			return nil, err
+		}
+	}
 	f := r.funcs[s.name]
 	in, message := arguments(f.Type(), s, args)
 	if message != "" {
@@ -353,7 +357,29 @@ func (r *runner) call(n int, args ...any) (any, error) {
 		}
 		return failed, nil
 	}
-	return out, nil
+	// Also what is never printed takes time to make.
+	return out, r.spend(n, sizeOf(out)/64)
+}
+
+// sizeOf counts what a function gave as doc.Size does.
+func sizeOf(x any) int {
+	switch x := x.(type) {
+	case string:
+		return len(x)
+	case []doc.Inline:
+		return doc.Size([]doc.Block{doc.Paragraph{Text: x}})
+	case doc.Block:
+		return doc.Size([]doc.Block{x})
+	case []doc.Block:
+		return doc.Size(x)
+	case Text:
+		size := doc.Size(x.Blocks)
+		for _, note := range x.Notes {
+			size += doc.Size(note)
+		}
+		return size
+	}
+	return 0
 }
 
 // invoke calls f. A panic in it is a fault of the program: text/template would make it

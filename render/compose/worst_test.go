@@ -30,7 +30,7 @@ func TestGuardHolds(t *testing.T) {
 		// One run as long as it may be, and as many short runs as there may be.
 		accepted := func(text string) bool {
 			f, list := newFile(Source{Name: "t.md", Text: text})
-			return f != nil && !list.HasErrors() && len(guard([]byte(f.text), f.pos)) == 0
+			return f != nil && !list.HasErrors() && len(guard([]byte(f.text), f.pos, &Spent{})) == 0
 		}
 		n := 1
 		for accepted(build(2 * n)) {
@@ -55,7 +55,7 @@ func TestGuardHolds(t *testing.T) {
 				var before, after runtime.MemStats
 				runtime.ReadMemStats(&before)
 				start := cpu(t)
-				_, list := Markdown("t.md", text)
+				_, list := Markdown("t.md", text, Limits{})
 				took := cpu(t) - start
 				runtime.ReadMemStats(&after)
 				for _, d := range list {

@@ -56,7 +56,7 @@ func TestWriteGolden(t *testing.T) {
 // idea of Markdown but that of CommonMark.
 func read(t *testing.T, text string) []doc.Block {
 	t.Helper()
-	got, list := compose.Markdown("report.md", text)
+	got, list := compose.Markdown("report.md", text, compose.Limits{})
 	for _, d := range list {
 		if d.Code != compose.CodeLink && d.Code != compose.CodeImage { // files beside the report
 			t.Errorf("%+v\n%s", d, text)
