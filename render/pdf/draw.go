@@ -482,7 +482,11 @@ func (p *pen) label(o page.Picture, l doc.Label) {
 		sin, cos = 0, 1
 	}
 	x, y := o.X+l.X*o.Scale, p.height-o.Y-l.Y*o.Scale
-	for _, run := range face.Get(face.Sans, l.Bold, l.Italic).Runs(text) {
+	runs := face.Get(face.Sans, l.Bold, l.Italic).Runs(text)
+	for i, run := range runs {
+		if i == len(runs)-1 {
+			run.Text += " " // who copies the text has a word end here
+		}
 		p.setFace(run.Face, size)
 		p.b = append(p.b, "BT "...)
 		for _, v := range []float64{cos, sin, -sin, cos, x, y} {
