@@ -180,7 +180,7 @@ func (v *evidence) key(k welfare.Key, out *Part) {
 			out.Says = fmt.Sprintf("“%s” says too little", clip(x.text))
 		}
 		if x.of != "" {
-			lacks = append(lacks, x.of)
+			lacks = append(lacks, "for "+x.of)
 		}
 	}
 	if good := len(values) - len(lacks); len(values) > 0 && (len(lacks) == 0 && len(texts) > 0 || len(lacks) > 0 && good > 0 || values[0].unseen && values[0].number) {
@@ -255,26 +255,30 @@ func Coverage(c *Checklist) []string {
 			total++
 		}
 	}
-	what := "the items of " + c.Name
+	what := "items of " + c.Name
 	if c.Name == "Field trials" {
-		what = "what readers of field trials ask for"
+		what = "points that readers of field trials ask for"
 	}
 	if c.Plan {
-		what += " that a plan can answer"
+		what += " that a plan can answer and"
 	}
-	s := []string{fmt.Sprintf("Of %s %s concern this trial: %s answered and %s in part.", what, num.Count(total), are(len(by[Answered])), are(len(by[Partly])))}
-	list := func(lead string, of State) {
-		if len(by[of]) > 0 {
-			s = append(s, lead+": "+strings.Join(by[of], ", ")+".")
+	parts := []string{are(len(by[Answered])) + " answered"}
+	list := func(of State, one, more string) {
+		if n := len(by[of]); n == 1 {
+			parts = append(parts, fmt.Sprintf("1 %s (%s)", one, by[of][0]))
+		} else if n > 1 {
+			parts = append(parts, fmt.Sprintf("%s %s (%s)", num.Count(n), more, strings.Join(by[of], ", ")))
 		}
 	}
-	list("Missing", Missing)
-	list("In part", Partly)
-	list("Stated in the protocol, but not in this report", Unprinted)
-	if v := by[Waiting]; len(v) > 0 {
-		s = append(s, "Waiting for the draw or the data: "+strings.Join(v, ", ")+".")
+	list(Partly, "is answered in part", "are answered in part")
+	list(Missing, "is missing", "are missing")
+	list(Unprinted, "is stated in the protocol, but not in this report", "are stated in the protocol, but not in this report")
+	list(Waiting, "waits for the draw or the data", "wait for the draw or the data")
+	s := []string{fmt.Sprintf("Of the %s %s that concern this trial %s.", num.Count(total), what, And(parts))}
+	if len(by[Partly])+len(by[Missing]) > 0 {
+		s = append(s, "A gap is no error of the trial: the key of the protocol that would close it stands beside it.")
 	}
-	return append(s, "A gap is no error of the trial: the key of the protocol that would close it stands beside it.")
+	return s
 }
 
 func are(n int) string {

@@ -30,7 +30,7 @@ var computed = map[string]fact{
 	"primary": (*evidence).primary, "methods": (*evidence).methods, "program": (*evidence).program, "assumptions": (*evidence).assumptions,
 	"treatments described": (*evidence).treatmentsDescribed, "procedures": (*evidence).procedures, "times of procedures": (*evidence).procedureTimes,
 	"dates": (*evidence).dates, "spread": (*evidence).spread, "effects": (*evidence).effects, "means": (*evidence).means,
-	"approval number": (*evidence).approvalNumber, "pain relief": (*evidence).painRelief, "adverse events": (*evidence).adverseEvents,
+	"approval number": (*evidence).approvalNumber, "pain relief": (*evidence).painRelief, "adverse events": (*evidence).adverseEvents, "adverse events by group": (*evidence).adverseEventsByGroup,
 	"prepared": (*evidence).prepared, "part of funders": (*evidence).funderPart, "exposure": (*evidence).exposure, "challenge": (*evidence).challenge,
 	"levels of criteria": (*evidence).criteriaLevels, "levels of treatments": (*evidence).treatmentLevels, "levels of outcomes": (*evidence).outcomeLevels,
 	"quality of measurement": (*evidence).quality, "levels of size": (*evidence).sizeLevels, "clustering": (*evidence).clustering,
@@ -63,6 +63,14 @@ func (v *evidence) waiting(out *Part) bool {
 		out.wait(noData)
 	}
 	return v.t.Table == nil
+}
+
+// numbered is a number in figures with what it counts.
+func numbered(n int, name string) string {
+	if n == 1 {
+		return "1 " + name
+	}
+	return num.Count(n) + " " + Plural(name)
 }
 
 // few lists up to eight things, and tells how many there are of more.
@@ -154,17 +162,17 @@ func (v *evidence) replication(out *Part) {
 			}
 		}
 		lo, hi := span(counts)
-		groups := some(len(counts), "group") + " of " + factorNames(p, x.Receives)
+		groups := numbered(len(counts), "group") + " of " + factorNames(p, x.Receives)
 		switch {
 		case lo == hi:
-			parts = append(parts, fmt.Sprintf("%s, %s in each of %s", some(x.N, UnitName(x)), small(lo), groups))
+			parts = append(parts, fmt.Sprintf("%s, %s in each of %s", numbered(x.N, UnitName(x)), num.Count(lo), groups))
 		case len(counts) <= 8:
 			for k := range names {
 				names[k] += " " + num.Count(counts[k])
 			}
-			parts = append(parts, fmt.Sprintf("%s: %s", some(x.N, UnitName(x)), strings.Join(names, ", ")))
+			parts = append(parts, fmt.Sprintf("%s: %s", numbered(x.N, UnitName(x)), strings.Join(names, ", ")))
 		default:
-			parts = append(parts, fmt.Sprintf("%s, %s to %s in each of %s", some(x.N, UnitName(x)), small(lo), small(hi), groups))
+			parts = append(parts, fmt.Sprintf("%s, %s to %s in each of %s", numbered(x.N, UnitName(x)), num.Count(lo), num.Count(hi), groups))
 		}
 	}
 	out.say("%s", strings.Join(parts, "; "))
@@ -218,13 +226,13 @@ func (v *evidence) byLevel(f, instances int) []int {
 
 func (v *evidence) animalsInAll(out *Part) {
 	if n := animals(v.t); n > 0 {
-		out.say("%s", some(n, "animal"))
+		out.say("%s", numbered(n, "animal"))
 		return
 	}
 	// The largest unit that is an animal: units within one are parts of it, or its times.
 	for u := range v.t.Plan.Units {
 		if x := &v.t.Plan.Units[u]; x.Crosses == nil && welfare.IsAnimal(x.Name) {
-			out.say("%s", some(x.N, UnitName(x)))
+			out.say("%s", numbered(x.N, UnitName(x)))
 			return
 		}
 	}
@@ -314,7 +322,7 @@ func (v *evidence) leftOut(out *Part) {
 			}
 		}
 		for k, g := range groups {
-			groups[k] = num.Count(n[g]) + " of " + clip(g)
+			groups[k] = numbered(n[g], "value") + " of " + clip(g)
 		}
 		if len(groups) > 0 {
 			says = append(says, fmt.Sprintf("%s: %s", ResponseLabelText(r.Protocol), few(groups, "groups have losses")))
@@ -371,7 +379,7 @@ func (v *evidence) explained(unit protocol.UnitName) bool {
 
 // losses counts the animals of events of some kinds by group, and names the events
 // without a cause.
-func (v *evidence) losses(kinds ...string) (says, lacks []string, events int) {
+func (v *evidence) losses(kinds ...string) (says, lacks, groupless []string, events int) {
 	finder := allot.NewFinder(v.t.Plan)
 	var order []string
 	n := map[string]int{}
@@ -389,6 +397,9 @@ func (v *evidence) losses(kinds ...string) (says, lacks []string, events int) {
 				group = " on " + clip(g)
 			}
 		}
+		if group == "" {
+			groupless = append(groupless, fmt.Sprintf("the group of the %s of %s", e.Kind, UnitNameText(e.Unit)))
+		}
 		key := e.Kind + group
 		if n[key] == 0 {
 			order = append(order, key)
@@ -398,14 +409,14 @@ func (v *evidence) losses(kinds ...string) (says, lacks []string, events int) {
 	for _, k := range order {
 		says = append(says, num.Count(n[k])+" "+k)
 	}
-	return says, lacks, events
+	return says, lacks, groupless, events
 }
 
 func (v *evidence) animalsLost(out *Part) {
 	if v.waiting(out) {
 		return
 	}
-	says, lacks, n := v.losses("death", "removal")
+	says, lacks, _, n := v.losses("death", "removal")
 	switch {
 	case n > 0:
 		out.say("%s", few(says, "kinds of loss"))
@@ -418,11 +429,18 @@ func (v *evidence) animalsLost(out *Part) {
 	}
 }
 
-func (v *evidence) adverseEvents(out *Part) {
+func (v *evidence) adverseEvents(out *Part) { v.adverse(out, false) }
+
+func (v *evidence) adverseEventsByGroup(out *Part) { v.adverse(out, true) }
+
+func (v *evidence) adverse(out *Part, group bool) {
 	if v.waiting(out) {
 		return
 	}
-	says, lacks, n := v.losses("death", "removal", "illness", "other")
+	says, lacks, groupless, n := v.losses("death", "removal", "illness", "other")
+	if group {
+		lacks = append(lacks, groupless...)
+	}
 	switch {
 	case n > 0:
 		out.say("%s", few(says, "kinds of event"))
@@ -444,7 +462,7 @@ func (v *evidence) tables(out *Part, has func(r *result.Response) bool, names fu
 	for i := range v.rs.Responses {
 		r := &v.rs.Responses[i]
 		if !has(r) {
-			lacks = append(lacks, ResponseText(r))
+			lacks = append(lacks, "for "+ResponseText(r))
 			continue
 		}
 		out.Tables = append(out.Tables, Sought{Response: ResponseText(r), Names: names(r.Name)})
@@ -518,6 +536,7 @@ func (v *evidence) confounders(out *Part) {
 		switch {
 		case adequate(b, welfare.Key{Fact: true}):
 			says = append(says, fmt.Sprintf("%s by %s", Plural(UnitName(x)), clip(lowerFirst(b))))
+			out.Texts = append(out.Texts, b)
 		case slices.Contains(opaque, x.Name):
 			says = append(says, Plural(UnitName(x)))
 			lacks = append(lacks, fmt.Sprintf("what units of one %s have in common", UnitName(x)))
@@ -550,7 +569,7 @@ func (v *evidence) outcomeUnits(out *Part) {
 			continue // counted, or of classes
 		}
 		if n++; strings.TrimSpace(r.Unit) == "" {
-			lacks = append(lacks, ResponseLabelText(r))
+			lacks = append(lacks, "for "+ResponseLabelText(r))
 		}
 	}
 	switch {
@@ -696,7 +715,7 @@ func (v *evidence) procedureTimes(out *Part) {
 	var lacks []string
 	for i := range v.p.Welfare.Procedures {
 		if x := &v.p.Welfare.Procedures[i]; x.Times < 1 && x.Every == nil {
-			lacks = append(lacks, procedureName(x))
+			lacks = append(lacks, "for "+procedureName(x))
 		}
 	}
 	if out.lack(len(v.p.Welfare.Procedures), lacks); out.State == Answered {
@@ -747,7 +766,7 @@ func (v *evidence) painRelief(out *Part) {
 				continue
 			}
 			if n++; !adequate(x.Analgesia, welfare.Key{Fact: true}) && !adequate(x.Anaesthesia, welfare.Key{Fact: true}) {
-				lacks = append(lacks, procedureName(x))
+				lacks = append(lacks, "for "+procedureName(x))
 			}
 		}
 	}
@@ -821,7 +840,7 @@ func (v *evidence) challenge(out *Part) {
 		if adequate(x.How, welfare.Key{}) {
 			texts = append(texts, x.How)
 		} else {
-			lacks = append(lacks, procedureName(x))
+			lacks = append(lacks, "for "+procedureName(x))
 		}
 	}
 	out.Texts = texts
@@ -833,7 +852,7 @@ func (v *evidence) quality(out *Part) {
 	for i := range v.p.Responses {
 		r := &v.p.Responses[i]
 		if !adequate(r.Instrument, welfare.Key{Fact: true}) && !adequate(r.Assessed, welfare.Key{Fact: true}) {
-			lacks = append(lacks, ResponseLabelText(r))
+			lacks = append(lacks, "for "+ResponseLabelText(r))
 		}
 	}
 	if out.lack(len(v.p.Responses), lacks); out.State == Answered {
@@ -959,7 +978,7 @@ func (v *evidence) moisture(out *Part) {
 				texts = append(texts, r.How)
 			}
 		default:
-			lacks = append(lacks, ResponseLabelText(r))
+			lacks = append(lacks, "for "+ResponseLabelText(r))
 		}
 	}
 	if n == 0 {

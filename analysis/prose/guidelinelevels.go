@@ -138,7 +138,7 @@ func (v *evidence) sizeLevels(out *Part) {
 	var says []string
 	known := false
 	for _, l := range v.levels() {
-		says = append(says, some(l.n, l.name))
+		says = append(says, numbered(l.n, l.name))
 		known = known || l.animals
 	}
 	out.say("%s", strings.Join(says, ", "))
@@ -242,11 +242,11 @@ func (v *evidence) flowLevels(out *Part) {
 	}
 	for _, l := range v.levels() {
 		if l.unit < 0 {
-			says = append(says, fmt.Sprintf("%s at the start, %s recorded as lost", some(l.n, l.name), small(lost)))
+			says = append(says, fmt.Sprintf("%s at the start, %s recorded as lost", numbered(l.n, l.name), num.Count(lost)))
 			continue
 		}
 		if lo, hi, ok := v.analysedRange(l.unit); ok {
-			says = append(says, fmt.Sprintf("%s planned, %s analysed", some(l.n, l.name), between(lo, hi)))
+			says = append(says, fmt.Sprintf("%s planned, %s analysed", numbered(l.n, l.name), between(lo, hi)))
 		}
 	}
 	out.say("%s", strings.Join(says, "; "))
@@ -263,7 +263,7 @@ func (v *evidence) analysisLevels(out *Part) {
 			continue
 		}
 		if lo, hi, ok := v.analysedRange(l.unit); ok {
-			says = append(says, fmt.Sprintf("%s of %s", between(lo, hi), some(l.n, l.name)))
+			says = append(says, fmt.Sprintf("%s of %s", between(lo, hi), numbered(l.n, l.name)))
 		}
 	}
 	if len(says) > 0 {

@@ -12,7 +12,7 @@ import (
 
 // Locate finds where in a numbered report the answers to a checklist stand, and marks what
 // the protocol states and the report does not print. A text is looked for in the places
-// that its item names and then in the whole report, letter by letter, so that a section of
+// that its item names and then in the whole report, word by word, so that a section of
 // that name without the text answers nothing.
 func Locate(c *prose.Checklist, blocks []doc.Block) {
 	r := read(blocks)
@@ -28,7 +28,7 @@ func Locate(c *prose.Checklist, blocks []doc.Block) {
 type spot struct {
 	id, label string // label as a reference says it: “Table 3”
 	title     string // words of a heading
-	text      string // letters and digits in lower case; of a section all that stands in it
+	text      string // words in lower case, a space between; of a section all that stands in it
 	words     int    // of paragraphs
 	section   bool
 	level     int
@@ -68,7 +68,7 @@ func read(blocks []doc.Block) *reading {
 				r.spots = append(r.spots, spot{id: b.ID, label: "section " + b.Number, title: strings.ToLower(doc.Plain(b.Text)), section: true, level: b.Level})
 			case doc.Paragraph:
 				s := doc.Plain(b.Text)
-				add(letters(s), len(strings.Fields(s)))
+				add(tokens(s), len(strings.Fields(s)))
 			case doc.List:
 				for _, item := range b.Items {
 					walk(item)
@@ -84,9 +84,9 @@ func read(blocks []doc.Block) *reading {
 					doc.Walk([]doc.Block{b}, func(node any) {
 						switch n := node.(type) {
 						case doc.Text:
-							t.WriteString(letters(n.Text))
+							t.WriteString(tokens(n.Text))
 						case doc.CodeSpan:
-							t.WriteString(letters(n.Text))
+							t.WriteString(tokens(n.Text))
 						}
 					})
 					x.text = t.String()
@@ -96,7 +96,7 @@ func read(blocks []doc.Block) *reading {
 					r.spots = append(r.spots, x)
 				}
 			case doc.Figure:
-				add(letters(doc.Plain(b.Caption)), 0)
+				add(tokens(doc.Plain(b.Caption)), 0)
 				if b.ID != "" {
 					r.spots = append(r.spots, spot{id: b.ID, label: "Figure " + b.Number})
 				}
@@ -108,19 +108,41 @@ func read(blocks []doc.Block) *reading {
 	return r
 }
 
-// letters are the letters and digits of a text in lower case: what is left of it whatever
-// the marks, spaces and breaks.
-func letters(s string) string {
-	return strings.Map(func(r rune) rune {
-		if unicode.IsLetter(r) || unicode.IsDigit(r) {
-			return unicode.ToLower(r)
-		}
-		return -1
-	}, s)
+// tokens are the words of a text in lower case, each between spaces: what is left of it
+// whatever the marks and breaks.
+func tokens(s string) string {
+	w := words(s)
+	if len(w) == 0 {
+		return " "
+	}
+	return " " + strings.Join(w, " ") + " "
 }
 
-// compared is how many letters of a text are looked for.
-const compared = 200
+func words(s string) []string {
+	return strings.FieldsFunc(strings.ToLower(s), func(r rune) bool { return !unicode.IsLetter(r) && !unicode.IsDigit(r) })
+}
+
+// A text is taken for found where a run of so many of its words stands; of its runs so
+// many are tried, since marks of its own may break one.
+const (
+	runOfWords = 10
+	runsTried  = 6
+)
+
+// runs are the runs of words by which a text is looked for.
+func runs(text string) []string {
+	w := words(text)
+	var out []string
+	for len(w) > 0 && len(out) < runsTried {
+		n := min(runOfWords, len(w))
+		if len(out) > 0 && n < runOfWords {
+			break
+		}
+		out = append(out, " "+strings.Join(w[:n], " ")+" ")
+		w = w[n:]
+	}
+	return out
+}
 
 // place finds where a part that is answered stands.
 func (r *reading) place(p *prose.Part, places []string) {
@@ -146,13 +168,13 @@ func (r *reading) place(p *prose.Part, places []string) {
 			found = true
 			p.Where = unique(p.Where, id)
 		} else {
-			lacks = append(lacks, t.Response)
+			lacks = append(lacks, "for "+t.Response)
 		}
 	}
 	switch {
 	case !found:
 		p.State = prose.Unprinted
-	case len(lacks) > 0 && lacks[0] != "":
+	case len(lacks) > 0 && lacks[0] != "for ":
 		p.Lacks = append(p.Lacks, lacks...)
 	}
 	if len(p.Where) == 0 && p.State == prose.Answered {
@@ -190,30 +212,25 @@ func (r *reading) named(names []string) (string, bool) {
 // holds finds the place that a text stands in: one of those named, or else the smallest
 // one anywhere.
 func (r *reading) holds(text string, places []string) (string, bool) {
-	want := letters(text)
-	if cut := []rune(want); len(cut) > compared {
-		want = string(cut[:compared])
-	}
-	if want == "" {
-		return "", false
-	}
-	for _, n := range places {
-		for i := range r.spots {
-			if s := &r.spots[i]; s.id == n && strings.Contains(s.text, want) {
-				return s.id, true
+	for _, run := range runs(text) {
+		for _, n := range places {
+			for i := range r.spots {
+				if s := &r.spots[i]; s.id == n && strings.Contains(s.text, run) {
+					return s.id, true
+				}
 			}
 		}
-	}
-	best := -1
-	for i := range r.spots {
-		if s := &r.spots[i]; strings.Contains(s.text, want) && (best < 0 || len(s.text) <= len(r.spots[best].text)) {
-			best = i
+		best := -1
+		for i := range r.spots {
+			if s := &r.spots[i]; strings.Contains(s.text, run) && (best < 0 || len(s.text) <= len(r.spots[best].text)) {
+				best = i
+			}
+		}
+		if best >= 0 {
+			return r.spots[best].id, true
 		}
 	}
-	if best < 0 {
-		return "", false
-	}
-	return r.spots[best].id, true
+	return "", false
 }
 
 // sentence is the number of words that a section of the author’s must have.
@@ -230,7 +247,7 @@ func (r *reading) author(p *prose.Part) {
 			}
 			holds := true
 			for _, set := range p.Stems {
-				holds = holds && slices.ContainsFunc(set, func(stem string) bool { return strings.Contains(s.text, letters(stem)) })
+				holds = holds && slices.ContainsFunc(set, func(stem string) bool { return strings.Contains(s.text, stemmed(stem)) })
 			}
 			if holds {
 				p.State, p.Says, p.Where = prose.Answered, "", []string{s.id}
@@ -243,6 +260,9 @@ func (r *reading) author(p *prose.Part) {
 		p.State = prose.Missing
 	}
 }
+
+// stemmed is a stem as it begins words.
+func stemmed(stem string) string { return strings.TrimSuffix(tokens(stem), " ") }
 
 // Coverage is a checklist whose places were found, item by item.
 func Coverage(c *prose.Checklist, blocks []doc.Block) doc.Table {
@@ -276,14 +296,12 @@ func Coverage(c *prose.Checklist, blocks []doc.Block) doc.Table {
 // CoverageHead is the table of a checklist before its places are known.
 func CoverageHead(c *prose.Checklist) doc.Table {
 	id := "coverage"
-	caption := "Items of " + c.Name
+	caption := "Items of the " + c.Name + " guideline"
 	switch c.Name {
-	case "ARRIVE 2.0":
-		caption = "Items of the ARRIVE 2.0 guideline"
 	case "Field trials":
 		caption = "What readers of field trials ask for"
-	default:
-		id += "-" + strings.ToLower(c.Name)
+	case "REFLECT":
+		id, caption = "coverage-reflect", "Items of the REFLECT statement"
 	}
 	return doc.Table{ID: id, Caption: text(caption), Columns: []doc.Column{left(true), left(false), left(false), left(false)},
 		Head: head(cell("Item"), cell("Asks for"), cell("Verdict"), cell("Where it is answered, or what would answer it")),
@@ -292,111 +310,183 @@ func CoverageHead(c *prose.Checklist) doc.Table {
 
 // answer lists what is there and where, and what is not with the keys that would answer it.
 func answer(x *prose.Item, label map[string]string) []doc.Inline {
-	var out []doc.Inline
-	say := func(s string) { out = append(out, doc.Text{Text: s}) }
-	several := len(x.Parts) > 1
-	for i := range x.Parts {
+	c := &cellWriter{label: label, several: len(x.Parts) > 1}
+	for i := 0; i < len(x.Parts); i++ {
 		p := &x.Parts[i]
-		if p.Optional && p.State != prose.Answered {
+		if p.State != prose.Answered {
 			continue
 		}
-		if len(out) > 0 {
-			out = append(out, doc.Break{})
+		// Parts that stand at the same place and say no more share a line.
+		what := p.What
+		for bare(p) && i+1 < len(x.Parts) && bare(&x.Parts[i+1]) && slices.Equal(p.Where, x.Parts[i+1].Where) {
+			i++
+			what += ", " + x.Parts[i].What
 		}
-		if several {
-			say(upper(p.What) + ": ")
-		}
-		switch first := !several; p.State {
-		case prose.Answered:
-			say(start(p.Says, first))
-			where(p, label, &out, first)
-			if len(p.Lacks) > 0 {
-				say("; missing: " + few(p.Lacks))
-				keys(p.Keys, &out)
+		c.begin(what)
+		c.say(p.Says)
+		c.where(p)
+		c.stop()
+	}
+	told := func(s prose.State, lead string) {
+		var what []string
+		says := ""
+		for i := range x.Parts {
+			if p := &x.Parts[i]; p.State == s && !p.Optional {
+				what, says = append(what, p.What), p.Says
 			}
-		case prose.Unprinted:
-			say(start("stated in the protocol, but not in this report", first))
-		case prose.Waiting, prose.Inapplicable:
-			say(start(p.Says, first))
+		}
+		if len(what) > 0 {
+			c.begin("")
+			switch {
+			case !c.several && says != "":
+				c.say(says)
+			case says != "":
+				c.say(lead + ": " + strings.Join(what, ", ") + " (" + says + ")")
+			case c.several:
+				c.say(lead + ": " + strings.Join(what, ", "))
+			default:
+				c.say(lead)
+			}
+			c.stop()
+		}
+	}
+	told(prose.Inapplicable, "Not applicable")
+	told(prose.Waiting, "Waits")
+	told(prose.Unprinted, "Stated in the protocol, but not in this report")
+	first := true
+	for i := range x.Parts {
+		p := &x.Parts[i]
+		lacks := p.State == prose.Missing || p.State == prose.Answered && len(p.Lacks) > 0
+		if !lacks || p.Optional && p.State != prose.Answered {
+			continue
+		}
+		switch {
+		case first && p.Optional:
+			c.begin("")
+			c.say("Not stated: ")
+		case first:
+			c.begin("")
+			c.say("Missing: ")
 		default:
-			s := "missing"
-			if len(p.Lacks) > 0 {
-				s += " of " + few(p.Lacks)
-			}
-			if p.Says != "" {
-				s += ": " + p.Says
-			}
-			say(start(s, first))
-			keys(p.Keys, &out)
+			c.say("; ")
 		}
-		say(".")
+		first = false
+		if c.several {
+			c.say(p.What)
+		}
+		if len(p.Lacks) > 0 {
+			switch {
+			case c.several && !strings.HasPrefix(p.Lacks[0], "for "):
+				c.say(", namely ")
+			case c.several:
+				c.say(" ")
+			}
+			c.say(few(p.Lacks))
+		}
+		c.keys(p.Keys, len(p.Lacks) > 0 || c.several)
+		if p.State == prose.Missing && p.Says != "" {
+			c.say(" – " + p.Says)
+		}
 	}
-	return out
+	if !first {
+		c.stop()
+	}
+	return c.out
 }
 
-// start raises the first letter of what begins a cell.
-func start(s string, first bool) string {
-	if first {
-		return upper(s)
-	}
-	return s
+// bare tells whether a part is answered by its place alone.
+func bare(p *prose.Part) bool {
+	return p.State == prose.Answered && p.Says == "" && len(p.Lacks) == 0 && len(p.Where) > 0
 }
 
-func few(list []string) string {
-	if len(list) > 6 {
-		return strings.Join(list[:5], ", ") + " and others"
-	}
-	return strings.Join(list, ", ")
+// cellWriter writes the sentences of a cell.
+type cellWriter struct {
+	out     []doc.Inline
+	label   map[string]string
+	several bool // sentences name their part
+	fresh   bool // a sentence begins
 }
 
-// where refers to the places of a part.
-func where(p *prose.Part, label map[string]string, out *[]doc.Inline, first bool) {
-	if len(p.Where) == 0 {
+// begin opens a line on a part.
+func (c *cellWriter) begin(what string) {
+	if len(c.out) > 0 {
+		c.out = append(c.out, doc.Break{})
+	}
+	if c.fresh = true; c.several && what != "" {
+		c.say(what + ": ")
+	}
+}
+
+func (c *cellWriter) say(s string) {
+	if s == "" {
 		return
 	}
+	if c.fresh {
+		s, c.fresh = upper(s), false
+	}
+	c.out = append(c.out, doc.Text{Text: s})
+}
+
+func (c *cellWriter) stop() { c.say(".") }
+
+// where refers to the places of a part.
+func (c *cellWriter) where(p *prose.Part) {
 	shown := p.Where
 	if len(shown) > 6 {
 		shown = shown[:6]
 	}
-	if p.Says != "" {
-		*out = append(*out, doc.Text{Text: " ("})
-	}
 	for k, id := range shown {
-		if k > 0 {
-			*out = append(*out, doc.Text{Text: ", "})
+		switch {
+		case k > 0:
+			c.say(", ")
+		case p.Says != "":
+			c.say(" (")
 		}
-		name := label[id]
-		if p.Says == "" && first && k == 0 {
-			name = upper(name)
+		name := c.label[id]
+		if c.fresh {
+			name, c.fresh = upper(name), false
 		}
-		*out = append(*out, doc.Ref{ID: id, Text: name})
+		c.out = append(c.out, doc.Ref{ID: id, Text: name})
 	}
 	if len(p.Where) > len(shown) {
-		*out = append(*out, doc.Text{Text: " and others"})
+		c.say(" and others")
 	}
-	if p.Says != "" {
-		*out = append(*out, doc.Text{Text: ")"})
+	if p.Says != "" && len(shown) > 0 {
+		c.say(")")
 	}
 }
 
+// few lists what lacks, the word for once.
+func few(list []string) string {
+	if len(list) > 6 {
+		list = append(slices.Clone(list[:5]), "others")
+	}
+	list = slices.Clone(list)
+	for i := 1; i < len(list); i++ {
+		list[i] = strings.TrimPrefix(list[i], "for ")
+	}
+	return prose.And(list)
+}
+
 // keys names what would answer: keys of the protocol, or a command.
-func keys(list []welfare.Key, out *[]doc.Inline) {
+func (c *cellWriter) keys(list []welfare.Key, bracket bool) {
 	for k, x := range list {
 		switch {
+		case k == 0 && bracket:
+			c.say(" (")
 		case k == 0:
-			*out = append(*out, doc.Text{Text: " ("})
 		case k == len(list)-1:
-			*out = append(*out, doc.Text{Text: " or "})
+			c.say(" or ")
 		default:
-			*out = append(*out, doc.Text{Text: ", "})
+			c.say(", ")
 		}
 		name := x.Name
 		if x.Command {
 			name = "penwright " + name
 		}
-		*out = append(*out, doc.CodeSpan{Text: name})
+		c.out = append(c.out, doc.CodeSpan{Text: name})
 	}
-	if len(list) > 0 {
-		*out = append(*out, doc.Text{Text: ")"})
+	if len(list) > 0 && bracket {
+		c.say(")")
 	}
 }
