@@ -176,6 +176,13 @@ func gallery() []struct {
 		half := 9 + math.Abs(x-30)*0.3
 		dose.Trend.Points = append(dose.Trend.Points, TrendPoint{X: x, Y: y, Low: y - half, High: y + half})
 	}
+	differences := Differences{Response: "Difference in daily gain (g/d)", Interval: "simultaneous 95 % limits"}
+	for i := range 4 {
+		for k := range i {
+			d := 14*float64(i-k) + 9*noise(10*i+k)
+			differences.Rows = append(differences.Rows, Difference{A: fmt.Sprint(20*i, " g/kg"), B: fmt.Sprint(20*k, " g/kg"), Value: d, Low: d - 22, High: d + 22})
+		}
+	}
 	byName := crossed(4, 3)
 	byName.X, byName.Bar = nil, 0
 	blocks := planned("block 5, pen within block 4", 4)
@@ -249,6 +256,7 @@ func gallery() []struct {
 		{"means", meansOf(trial(5, 4, varietyName))},
 		{"means-many", meansOf(trial(30, 4, varietyName))},
 		{"means-dose", dose},
+		{"differences", differences},
 		{"interaction", crossed(4, 3)},
 		{"interaction-names", byName},
 		{"interaction-many", crossed(5, 12)},

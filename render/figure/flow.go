@@ -415,25 +415,42 @@ func (f Flow) words() string {
 		sep = ", "
 	}
 	b.WriteString(".")
-	told := 0
+	if k := len(all.Counts); k > 1 {
+		switch lost := all.Counts[0] - all.Counts[k-1]; {
+		case lost > 0:
+			fmt.Fprintf(&b, " %s lost on the way.", num.Count(lost))
+		case lost == 0 && !slices.ContainsFunc(f.Rows, FlowRow.changed):
+			b.WriteString(" None was lost.")
+		}
+	}
+	var each []string
+	left := 0
 	for _, r := range f.Rows {
-		if !r.changed() || told == listMost {
+		if !r.changed() {
 			continue
 		}
-		told++
-		fmt.Fprintf(&b, " %s:", clean(r.Label))
+		var one strings.Builder
+		fmt.Fprintf(&one, " %s:", clean(r.Label))
 		sep := " "
 		for s, n := range r.Counts {
 			if s == len(f.Stages) {
 				break
 			}
-			b.WriteString(sep + num.Count(n))
-			if s > 0 && n != r.Counts[s-1] && s-1 < len(r.Reasons) && r.Reasons[s-1] != "" {
-				fmt.Fprintf(&b, " (%s)", clean(r.Reasons[s-1]))
+			one.WriteString(sep + num.Count(n))
+			if s > 0 && r.change(s-1) != 0 && r.reason(s-1) != "" {
+				fmt.Fprintf(&one, " (%s)", r.reason(s-1))
 			}
 			sep = ", "
 		}
-		b.WriteString(".")
+		one.WriteString(".")
+		if each = append(each, one.String()); !short(each) {
+			each = each[:len(each)-1]
+			left++
+		}
+	}
+	b.WriteString(strings.Join(each, ""))
+	if left > 0 {
+		fmt.Fprintf(&b, " %s more changed.", count(left, "treatment"))
 	}
 	return b.String()
 }

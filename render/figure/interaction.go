@@ -54,13 +54,9 @@ func (n Interaction) Draw() (*doc.Picture, string) {
 	if values.empty() {
 		return note(n.Size, "No means to draw."), alt
 	}
-	w, h := n.resolve(min(max(250, float64(len(n.Lines))*textSize*leading+60), pageHeight))
-	t := newTags(n.Lines, func(l Line) string { return l.Label }, w*0.3, h-foot-10)
-	if t.key != nil {
-		// The key may leave less height than the names at the ends would take.
-		_, h = n.above(t.key, h)
-		t = newTags(n.Lines, func(l Line) string { return l.Label }, w*0.3, h-foot-10)
-	}
+	w, high := n.resolve(min(max(250, float64(len(n.Lines))*textSize*leading+60), pageHeight))
+	label := func(l Line) string { return l.Label }
+	t, h := tagged(n.Size, n.Lines, label, high)
 	end := t.wide + 24
 	entries := t.key
 	bar := drawable(n.Bar) && n.Bar > 0
@@ -100,7 +96,25 @@ func (n Interaction) Draw() (*doc.Picture, string) {
 	if bar {
 		top = 8
 	}
-	k, _ := n.above(entries, h)
+	k, low := n.above(entries, h)
+	if low < h {
+		h = low
+		y = numbers(n.Response, values.padded(0.07), h-foot, false)
+		if t = newTags(n.Lines, label, w*0.3, h-foot-10); t.labels == nil {
+			entries = append(entries[:len(entries)-len(t.key):len(entries)-len(t.key)], t.key...)
+			k = newKey(entries, w-2, pageHeight-h)
+		}
+	}
+	barLabel := fit(n.BarLabel, room*0.6, noteSize, false)
+	if bar {
+		// The bar has a corner to itself.
+		try := newFrame(newCanvas(w, h), x, y, insets{right: end, top: top})
+		if _, met := try.corner(n.Bar, barLabel, n.crowd(try, place)); met > 0 {
+			more := 1.2 * max(n.Bar, (try.v.hi-try.v.lo)*(noteSize*leading+8)/(try.y1-try.y0))
+			values.add(values.hi + more)
+			y = numbers(n.Response, values.padded(0.04), h-foot, false)
+		}
+	}
 	c := newCanvas(w, h+k.tall)
 	f := newFrame(c, x, y, insets{right: end, top: top, bottom: k.tall})
 	k.draw(c, 1, h)
@@ -136,7 +150,7 @@ func (n Interaction) Draw() (*doc.Picture, string) {
 	f.ends(which, from, t)
 	f.mark("")
 	if bar {
-		f.bar(n.Bar, fit(n.BarLabel, room*0.6, noteSize, false), n.crowd(f, place))
+		f.bar(n.Bar, barLabel, n.crowd(f, place))
 	}
 	return c.pic, alt
 }
@@ -191,6 +205,20 @@ func newTags[T any](lines []T, name func(T) string, most, tall float64) tags {
 	return t
 }
 
+// tagged chooses the tags of lines and the height of a picture that has their key below:
+// it may leave less height than the tags would take, which then are others.
+func tagged[T any](s Size, lines []T, name func(T) string, h float64) (tags, float64) {
+	w, _ := s.resolve(h)
+	t := newTags(lines, name, w*0.3, h-foot-10)
+	for range 2 {
+		if t.key != nil {
+			_, h = s.above(t.key, h)
+			t = newTags(lines, name, w*0.3, h-foot-10)
+		}
+	}
+	return t, h
+}
+
 // ends writes the names of lines, with their marks, beside where they end.
 func (f *frame) ends(which []int, from [][2]float64, t tags) {
 	if t.labels == nil {
@@ -233,14 +261,13 @@ func (n Interaction) crowd(f *frame, place func(int) float64) [][2]float64 {
 	return out
 }
 
-// bar draws a bar of a length on the axis of values in whichever upper or lower corner
-// is emptiest.
-func (f *frame) bar(length float64, label string, crowd [][2]float64) {
+// corner is the box of a bar with its label in whichever upper or lower corner is
+// emptiest, and how many of the crowd it meets there.
+func (f *frame) corner(length float64, label string, crowd [][2]float64) (best box, least int) {
 	tall := length / (f.v.hi - f.v.lo) * (f.y1 - f.y0)
 	wide := 12 + width(label, noteSize, false)
 	deep := max(tall, noteSize*leading)
-	var best box
-	least := -1
+	least = -1
 	for _, corner := range [][2]bool{{false, false}, {true, false}, {false, true}, {true, true}} {
 		b := box{x0: f.x0 + 4, y0: f.y0 + 2}
 		if corner[0] {
@@ -260,6 +287,13 @@ func (f *frame) bar(length float64, label string, crowd [][2]float64) {
 			least, best = n, b
 		}
 	}
+	return best, least
+}
+
+// bar draws a bar of a length on the axis of values in the emptiest corner.
+func (f *frame) bar(length float64, label string, crowd [][2]float64) {
+	tall := length / (f.v.hi - f.v.lo) * (f.y1 - f.y0)
+	best, _ := f.corner(length, label, crowd)
 	x, mid := best.x0+4, (best.y0+best.y1)/2
 	f.whisker(x, mid-tall/2, x, mid+tall/2, 3)
 	f.text(x+7, mid+capHeight(noteSize)/2, left, style{size: noteSize, colour: ink}, label)
@@ -283,17 +317,29 @@ func (n Interaction) words() string {
 		fmt.Fprintf(&b, ", from %s to %s", rounded(s.lo), rounded(s.hi))
 	}
 	b.WriteString(".")
-	if len(n.Lines)*len(n.Levels) <= 2*listMost {
-		for _, l := range n.Lines {
-			var vs []string
-			for i, v := range l.Values {
-				if i < len(n.Levels) {
-					vs = append(vs, rounded(v))
-				}
+	var each []string
+	for _, l := range n.Lines {
+		var vs []string
+		for i, v := range l.Values {
+			if i < len(n.Levels) {
+				vs = append(vs, rounded(v))
 			}
-			fmt.Fprintf(&b, " %s: %s.", clean(l.Label), strings.Join(vs, ", "))
+		}
+		each = append(each, clean(l.Label)+": "+strings.Join(vs, ", ")+".")
+	}
+	if short(each) && len(n.Lines)*len(n.Levels) <= 4*listMost {
+		b.WriteString(" " + strings.Join(each, " "))
+	}
+	var x extremes
+	for _, l := range n.Lines {
+		for i, v := range l.Values {
+			if i < len(n.Levels) {
+				x.add(v, clean(l.Label)+" at "+clean(n.Levels[i]))
+			}
 		}
 	}
+	b.WriteString(x.sentence("Of the means"))
+	b.WriteString(crossing(n.Lines, len(n.Levels)))
 	if drawable(n.Bar) && n.Bar > 0 {
 		fmt.Fprintf(&b, " The single bar is %s, %s.", title(n.BarLabel, "a standard error"), rounded(n.Bar))
 	}

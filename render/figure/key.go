@@ -86,7 +86,7 @@ func (k *key) arrange(names []string, wide, size float64, lines, columns int) {
 		}
 		k.signs = max(k.signs, w)
 	}
-	k.signs = math.Ceil(k.signs)
+	k.signs = min(math.Ceil(k.signs), wide*0.35)
 	beside := k.signs + keyGap + 10
 	if columns == 0 {
 		widest := 1.0
@@ -151,9 +151,9 @@ func (k *key) draw(c *canvas, x, y float64) {
 				c.fill(e.ground, edge...)
 			}
 			c.stroke(line{width: fine, colour: grey}, edge...)
-			c.text(left0+k.signs/2, base, center, style{size: k.size, colour: ink}, e.sign)
+			c.text(left0+k.signs/2, base, center, style{size: k.size, colour: ink}, fit(e.sign, k.signs, k.size, false))
 		default:
-			c.text(left0+k.signs, base, right, style{size: k.size, bold: true, colour: ink}, e.sign)
+			c.text(left0+k.signs, base, right, style{size: k.size, bold: true, colour: ink}, fit(e.sign, k.signs, k.size, true))
 		}
 		for _, l := range k.lines[i] {
 			c.text(left0+k.signs+keyGap, base, left, style{size: k.size, colour: ink}, l)

@@ -78,6 +78,28 @@ func inspect(t *testing.T, pic *doc.Picture) {
 	if len(texts) > 3000 {
 		texts = texts[:3000]
 	}
+	// Nor does a text lie on a mark, where it would spoil both.
+	for _, op := range pic.Ops {
+		f, ok := op.(doc.Fill)
+		if !ok || f.Colour.A < 255 || f.Colour.Role == doc.Paper {
+			continue
+		}
+		m := box{x0: math.Inf(1), y0: math.Inf(1), x1: math.Inf(-1), y1: math.Inf(-1)}
+		for _, s := range f.Path {
+			if s.Kind != doc.Close {
+				m = box{x0: min(m.x0, s.X), y0: min(m.y0, s.Y), x1: max(m.x1, s.X), y1: max(m.y1, s.Y)}
+			}
+		}
+		if m.x1-m.x0 > 8 || m.y1-m.y0 > 8 || pic.Width < 250 {
+			continue
+		}
+		for _, l := range texts {
+			if b := outline(l); b.x0 < m.x1-0.3 && m.x0 < b.x1-0.3 && b.y0 < m.y1-0.3 && m.y0 < b.y1-0.3 {
+				t.Errorf("%q lies on a mark: %+v %+v", l.Text, b, m)
+				return
+			}
+		}
+	}
 	for i, a := range texts {
 		for _, b := range texts[:i] {
 			x, y := outline(a), outline(b)
@@ -112,47 +134,144 @@ func sentences(t *testing.T, alt string) {
 	}
 }
 
-func TestAnyNumberOfTreatments(t *testing.T) {
-	long := func(i int) string {
+// names of treatments: short and long ones, one of 120 letters, scripts without a face
+// and from right to left.
+var nameKinds = []struct {
+	kind string
+	of   func(int) string
+}{
+	{"varieties", varietyName},
+	{"doses", doseName},
+	{"long", func(i int) string {
 		return fmt.Sprintf("basal diet with a long description of an additive and its dose no %d", i+1)
+	}},
+	{"letters", func(i int) string {
+		s := "basal diet of barley and soya bean meal with a long description of an additive, its maker, its batch and the dose, no "
+		return s + fmt.Sprint(i+1) + strings.Repeat("x", 120-len(s)-len(fmt.Sprint(i+1)))
+	}},
+	{"unbroken", func(i int) string { return strings.Repeat("Hydroxypropylmethyl", 3) + fmt.Sprint(i+1) }},
+	{"ideographs", func(i int) string { return fmt.Sprintf("小麦 %d", i+1) }},
+	{"hebrew", func(i int) string { return fmt.Sprintf("שעורה מחיטה %d", i+1) }},
+}
+
+// kinds draws a figure of each kind with n treatments of a name, in so many blocks.
+func kinds(n, blocks int, name func(int) string) []drawing {
+	points := trial(n, blocks, name)
+	means := meansOf(points)
+	doses := means
+	doses.Dose = true
+	residual := points
+	residual.Residual = true
+	crossing := crossed(min(n, 9), n)
+	inverse := crossed(n, 3)
+	flow := Flow{Unit: "pen", Stages: []string{"planned", "allotted", "observed to the end of the trial", "analysed"}}
+	sound := Flow{Unit: "pen", Stages: flow.Stages}
+	spread := Spread{Response: "yield", Slope: 1}
+	m := Map{Unit: "pen", Boxes: []Box{{}, {Label: "Block 2"}}}
+	differences := Differences{Response: "Difference of daily gain (g/d)", Interval: "simultaneous 95 % limits"}
+	power := Power{X: "Replicates", Target: 0.8, Chosen: 4}
+	cloud := Fitted{X: "Fitted", Y: "Residual", Zero: true}
+	for i := range n {
+		flow.Rows = append(flow.Rows, FlowRow{Label: name(i), Counts: []int{6, 6, 5, 5}, Reasons: []string{"", []string{"a long reason why a pen was removed from the trial", "pneumonia"}[i%2], ""}})
+		sound.Rows = append(sound.Rows, FlowRow{Label: name(i), Counts: []int{6, 6, 6, 6}})
+		spread.Points = append(spread.Points, Scale{Label: name(i), Mean: 10 + float64(i), SD: 1 + 0.3*noise(i)})
+		crossing.Lines[i].Label = name(i)
+		if i < 40 {
+			differences.Rows = append(differences.Rows, Difference{A: name(i), B: name((i + n/2) % n), Value: 10 * noise(i), Low: 10*noise(i) - 7, High: 10*noise(i) + 7})
+		}
+		power.Curves = append(power.Curves, PowerCurve{Label: name(i), Points: []PowerPoint{{N: 2, Power: 0.2 + 0.004*float64(i)}, {N: 4, Power: 0.6}, {N: 8, Power: 0.9}}})
+		cloud.Points = append(cloud.Points, XY{Unit: name(i), X: noise(i), Y: noise(i + 400), Named: i%3 == 0})
+		m.Treatments = append(m.Treatments, name(i))
+		for b := range m.Boxes {
+			m.Boxes[b].Cells = append(m.Boxes[b].Cells, Cell{Unit: fmt.Sprint("pen ", i), Number: fmt.Sprint(i + 1), Label: name(i), Treatment: i, Value: noise(i), Excluded: i == 1, Lost: i == 2})
+		}
 	}
-	unbroken := func(i int) string { return strings.Repeat("Hydroxypropylmethyl", 3) + fmt.Sprint(i+1) }
-	for k, name := range []func(int) string{varietyName, doseName, long, unbroken} {
+	for i := range inverse.Levels {
+		inverse.Levels[i] = name(i)
+	}
+	named := inverse
+	named.X = nil
+	shaded := m
+	shaded.Shade = "Residual of the daily gain of growing barrows in the second period (g/d)"
+	return []drawing{points, residual, means, doses, crossing, inverse, named, flow, sound, spread, differences, power, cloud, m, shaded}
+}
+
+func TestAnyNumberOfTreatments(t *testing.T) {
+	for k, name := range nameKinds {
 		for n := 1; n <= 60; n++ {
-			if n > 8 && n%12 != 3*k {
+			if n > 8 && n%12 != 3*(k%4) && n != 60 {
 				continue // each number of a few treatments, then some with each kind of name
 			}
-			points := trial(n, 3, name)
-			means := meansOf(points)
-			doses := means
-			doses.Dose = true
-			crossing := crossed(min(n, 9), n)
-			inverse := crossed(n, 3)
-			named := inverse
-			named.X = nil
-			flow := Flow{Unit: "pen", Stages: []string{"planned", "allotted", "observed to the end of the trial", "analysed"}}
-			spread := Spread{Response: "yield", Slope: 1}
-			m := Map{Unit: "pen", Boxes: []Box{{}, {Label: "Block 2"}}}
-			for i := range n {
-				flow.Rows = append(flow.Rows, FlowRow{Label: name(i), Counts: []int{6, 6, 5, 5}, Reasons: []string{"", "a long reason why a pen was removed from the trial", ""}})
-				spread.Points = append(spread.Points, Scale{Label: name(i), Mean: 10 + float64(i), SD: 1 + 0.3*noise(i)})
-				crossing.Lines[i].Label = name(i)
-				m.Treatments = append(m.Treatments, name(i))
-				for b := range m.Boxes {
-					m.Boxes[b].Cells = append(m.Boxes[b].Cells, Cell{Unit: fmt.Sprint("pen ", i), Number: fmt.Sprint(i + 1), Label: name(i), Treatment: i, Value: noise(i)})
-				}
+			blocks := 3
+			if n%5 == 0 {
+				blocks = 40
 			}
-			for i := range inverse.Levels {
-				inverse.Levels[i] = name(i)
-			}
-			shaded := m
-			shaded.Shade = "Residual of the daily gain of growing barrows in the second period, g"
-			for _, d := range []drawing{points, means, doses, crossing, inverse, named, flow, spread, m, shaded} {
+			for _, d := range kinds(n, blocks, name.of) {
 				pic, alt := d.Draw()
 				inspect(t, pic)
 				sentences(t, alt)
+				if limit := pageHeight + 1.0; pic.Height > limit {
+					t.Errorf("%v high", pic.Height)
+				}
 				if t.Failed() {
-					t.Fatalf("%T with %d treatments such as %q", d, n, name(0))
+					t.Fatalf("%T with %d treatments such as %q in %d blocks", d, n, name.of(0), blocks)
+				}
+			}
+		}
+	}
+}
+
+// Every name stands in the picture, whole; where a page has no room for that, with its
+// two ends, by which it is told from the others.
+func TestEveryName(t *testing.T) {
+	for _, name := range nameKinds {
+		for _, n := range []int{2, 5, 12, 24, 40, 60} {
+			for _, d := range kinds(n, 3, name.of) {
+				switch d := d.(type) {
+				case Means:
+					if d.Dose {
+						continue // a scale has numbers
+					}
+				case Interaction:
+					if d.X != nil && len(d.Lines) == 3 || len(d.Lines) == n && name.kind == "doses" {
+						continue
+					}
+				case Flow:
+					if len(d.Rows) > foldFrom {
+						continue // those that lost nothing are counted together
+					}
+				case Differences:
+					if n > 40 {
+						continue // not all have a row
+					}
+				case Fitted:
+					continue // a few are named
+				}
+				pic, _ := d.Draw()
+				var texts []string
+				for _, op := range pic.Ops {
+					if l, ok := op.(doc.Label); ok {
+						texts = append(texts, l.Text)
+					}
+				}
+				all := " " + strings.Join(texts, " ") + " "
+				shortened := map[string]bool{}
+				for _, s := range texts {
+					if strings.Contains(s, "…") {
+						shortened[s] = true
+					}
+				}
+				whole := 0
+				for i := range n {
+					if strings.Contains(all, clean(name.of(i))) {
+						whole++
+					}
+				}
+				if whole+len(shortened) < n {
+					t.Errorf("%T of %d %s: %d names in full, %d shortened", d, n, name.kind, whole, len(shortened))
+				}
+				if whole < n && n <= 24 {
+					t.Errorf("%T of %d %s: only %d names in full", d, n, name.kind, whole)
 				}
 			}
 		}
@@ -199,6 +318,7 @@ func TestExtremes(t *testing.T) {
 				fl := Flow{Size: size, Unit: text, Stages: []string{text, text, "analysed"}}
 				mp := Map{Size: size, Unit: text, Boxes: []Box{{Label: text}, {Label: text, Columns: 2, Down: []string{text}, Across: []string{text, text, text}}}, Treatments: []string{text, text}}
 				pw := Power{Size: size, X: text, Target: 0.8}
+				df := Differences{Size: size, Response: text, By: text, Interval: text}
 				for i, v := range vs {
 					p.Groups[0].Points = append(p.Groups[0].Points, Point{Unit: text, Block: text, Value: v, Excluded: i == 1})
 					p.Groups[1].Points = append(p.Groups[1].Points, Point{Unit: text, Block: text, Value: -v})
@@ -215,6 +335,7 @@ func TestExtremes(t *testing.T) {
 					for b := range mp.Boxes {
 						mp.Boxes[b].Cells = append(mp.Boxes[b].Cells, Cell{Unit: text, Number: text, Label: text, Treatment: i - 1, Value: v, Excluded: i == 2})
 					}
+					df.Rows = append(df.Rows, Difference{At: text, A: text, B: text, Value: v, Low: v - 1, High: 2 * v})
 					pw.Curves = append(pw.Curves, PowerCurve{Label: text, Points: []PowerPoint{{N: v, Power: 0.3}, {N: 2 * v, Power: v}}})
 				}
 				dosed, shaded, residual := m, mp, p
@@ -222,7 +343,7 @@ func TestExtremes(t *testing.T) {
 				dosed.Trend = Trend{Label: text, Points: []TrendPoint{{X: 0, Y: 1}, {X: none, Y: 2}, {X: 3, Y: inf, Low: 1, High: none}}}
 				nameless := n
 				nameless.X = nil
-				for _, d := range []drawing{p, residual, m, dosed, n, nameless, f, q, s, fl, mp, shaded, pw} {
+				for _, d := range []drawing{p, residual, m, dosed, n, nameless, f, q, s, fl, mp, shaded, pw, df} {
 					pic, alt := d.Draw()
 					inspect(t, pic)
 					if strings.Contains(alt, "NaN") || len(alt) > 60000 {

@@ -3,6 +3,7 @@ package figure
 import (
 	"fmt"
 	"math"
+	"slices"
 	"strings"
 
 	"gonum.org/v1/plot"
@@ -161,10 +162,24 @@ func (m Means) doses(values, doses span) *doc.Picture {
 		}
 	}
 	w, h := m.resolve(250)
-	c := newCanvas(w, h)
 	y := numbers(m.Response, values.padded(0.08), h-foot, false)
 	x := doseAxis(m.By, m.Means, doses.padded(0.05), across(w, 6, y))
-	f := newFrame(c, x, y, insets{right: 6})
+	// Letters stand above the bars, or where one would cover something, in a key.
+	f := newFrame(newCanvas(w, h), x, y, insets{right: 6})
+	places, free := m.letters(f)
+	if !free {
+		var entries []entry
+		for _, q := range m.Means {
+			if q.Letters != "" && drawable(q.Value) {
+				entries = append(entries, entry{sign: clean(q.Label), name: q.Letters})
+			}
+		}
+		k, low := m.above(entries, h)
+		y = numbers(m.Response, values.padded(0.08), low-foot, false)
+		f = newFrame(newCanvas(w, low+k.tall), x, y, insets{right: 6, bottom: k.tall})
+		k.draw(f.canvas, 1, low)
+		places = nil
+	}
 	var xs, ys, lo, hi []float64
 	for _, t := range m.Trend.Points {
 		xs, ys, lo, hi = append(xs, t.X), append(ys, t.Y), append(lo, t.Low), append(hi, t.High)
@@ -186,9 +201,37 @@ func (m Means) doses(values, doses span) *doc.Picture {
 		f.marker(disc, px, f.y(q.Value), 2.8, palette[0])
 	}
 	f.mark("")
+	for i, p := range places {
+		if p != nil {
+			f.text(p.x, p.y, center, style{size: textSize, colour: ink}, clean(m.Means[i].Letters))
+		}
+	}
+	return f.pic
+}
+
+// letters finds places above the bars of doses for the letters; free says that each has
+// one where it covers no other and no mark or bar.
+func (m Means) letters(f *frame) (places []*placed, free bool) {
+	places = make([]*placed, len(m.Means))
 	var taken []box
+	any := false
 	for _, q := range m.Means {
-		s := fit(q.Letters, 90, textSize, false)
+		if !drawable(q.Value) || !drawable(q.X) {
+			continue
+		}
+		any = any || q.Letters != ""
+		lo, hi := q.Value, q.Value
+		if drawable(q.Low) && drawable(q.High) {
+			lo, hi = min(lo, q.Low), max(hi, q.High)
+		}
+		px := f.x(q.X)
+		taken = append(taken, box{x0: px - 3, y0: f.y(hi) - 3, x1: px + 3, y1: f.y(lo) + 3})
+	}
+	if !any {
+		return nil, true
+	}
+	for i, q := range m.Means {
+		s := clean(q.Letters)
 		if s == "" || !drawable(q.Value) || !drawable(q.X) {
 			continue
 		}
@@ -196,9 +239,16 @@ func (m Means) doses(values, doses span) *doc.Picture {
 		if drawable(q.High) {
 			top = max(top, q.High)
 		}
-		taken = f.above(taken, f.x(q.X), f.y(top)-5, style{size: textSize, colour: ink}, s)
+		half := width(s, textSize, false) / 2
+		x, y := min(max(f.x(q.X), f.x0+half-4), f.pic.Width-half-1), f.y(top)-3-descent*textSize-0.5
+		b := lineBox(x, y, center, s, textSize)
+		if b.y0 < 0 || b.x0 < 0 || slices.ContainsFunc(taken, b.meets) {
+			return nil, false
+		}
+		taken = append(taken, b)
+		places[i] = &placed{x: x, y: y, box: b}
 	}
-	return c.pic
+	return places, true
 }
 
 // curve draws a line through points, left out where one is not finite and cut at the
@@ -278,7 +328,7 @@ func (m Means) words() string {
 	if m.Interval != "" {
 		fmt.Fprintf(&b, ", with %s", clean(m.Interval))
 	}
-	if n > 0 && n <= 2*listMost {
+	if short(each) {
 		fmt.Fprintf(&b, ": %s", strings.Join(each, "; "))
 	} else if n > 0 {
 		s := empty()
@@ -288,6 +338,11 @@ func (m Means) words() string {
 		fmt.Fprintf(&b, ", from %s to %s", rounded(s.lo), rounded(s.hi))
 	}
 	b.WriteString(".")
+	var x extremes
+	for _, q := range m.Means {
+		x.add(q.Value, q.Label)
+	}
+	b.WriteString(x.sentence("Of the means"))
 	if len(m.Trend.Points) > 0 && m.Dose {
 		fmt.Fprintf(&b, " The line is the %s.", title(m.Trend.Label, "fitted curve"))
 	}

@@ -364,7 +364,7 @@ func TestInWords(t *testing.T) {
 	want := map[string]string{
 		"points": "Daily gain, g: 19 values by Dried yeast, g/kg (0, 20, 40, 60), from ",
 		"means":  "Daily gain, g: 5 means by Dried yeast, g/kg, with 95 % confidence intervals: Harrow 1 ",
-		"flow": "Flow of pens over 4 treatments: 20 planned, 20 allotted, 19 observed, 18 analysed. " +
+		"flow": "Flow of pens over 4 treatments: 20 planned, 20 allotted, 19 observed, 18 analysed. 2 lost on the way. " +
 			"20 g/kg: 5, 5, 5, 4 (feeder failure). 40 g/kg: 5, 5, 4 (humane endpoint reached, whole pen removed), 4.",
 		"map-blocks": "Map of 20 pens in 5 groups (Block 1, Block 2, Block 3, Block 4, Block 5). Each of 4 treatments stands on 5 pens. 1 pen excluded and crossed out: Block 2, pen 3.",
 	}

@@ -75,6 +75,8 @@ type groups struct {
 // lie, and the least pitch with which they may stand.
 type room struct {
 	upright, lying, pitch float64
+	signs                 []string // short names of groups that lie, with their key; nil: numbers
+	key                   []entry
 	tails                 []string // what is told of each group in a key, such as its letters
 	more                  []entry  // of the key while the groups stand upright
 }
@@ -114,22 +116,27 @@ func newGroups(s Size, names []string, by, response string, values span, r room)
 			return lying(s, pitch, labels, along, response, values, r, nil)
 		}
 	}
-	signs := make([]string, len(names))
-	labels = make([][]string, len(names))
+	signs, entries := r.signs, r.key
+	if signs == nil {
+		signs = make([]string, len(names))
+		for i := range names {
+			signs[i] = number(i)
+		}
+		entries = numbered(names, number)
+	}
 	wide := 0.0
-	for i := range names {
-		signs[i] = number(i)
-		labels[i] = signs[i : i+1]
-		wide = max(wide, width(signs[i], textSize, false))
+	for i, sign := range signs {
+		sign = fit(sign, w*0.42, textSize, false)
+		labels[i] = []string{sign}
+		wide = max(wide, width(sign, textSize, false))
 	}
 	// Lying, if there is room for the key as well and upright the groups would stand too
 	// close.
-	entries := numbered(names, number)
 	pitch = min(mostPitch, (most-foot)/float64(n))
 	if least := across(w, r.upright, v) / float64(n); least < max(r.pitch, 12) && pitch >= leastPitch {
 		pitch = max(leastPitch, min(pitch, (most-foot)*0.6/float64(n)))
 		tall := pitch*float64(n) + foot
-		if newKey(entries, w, most-tall).tall+tall <= most {
+		if r.signs != nil || newKey(entries, w, most-tall).tall+tall <= most {
 			return lying(s, pitch, labels, along, response, values, r, entries)
 		}
 	}
@@ -475,34 +482,48 @@ func (p Points) words(blocks, total, drawn, excluded, lost int, data span) strin
 		fmt.Fprintf(&b, ", from %s to %s", rounded(data.lo), rounded(data.hi))
 	}
 	b.WriteString(".")
+	var units, means extremes
+	var far ranked
+	for _, g := range p.Groups {
+		means.add(g.Mean, g.Label)
+		for _, q := range g.Points {
+			if !q.Excluded && drawable(q.Value) {
+				units.add(q.Value, q.Unit)
+				far.add(math.Abs(q.Value), q.Value, q.Unit)
+			}
+		}
+	}
+	if p.Residual {
+		b.WriteString(farthest(far))
+	} else {
+		b.WriteString(units.sentence("Units"))
+	}
 	if blocks > 0 && total-lost <= maxPoints {
 		fmt.Fprintf(&b, " Lines join the units of each of %s.", count(blocks, title(p.Blocks, "block")))
 	}
 	if !p.Residual {
-		var means []string
+		var list []string
 		for _, g := range p.Groups {
-			if drawable(g.Mean) && len(means) < listMost {
-				means = append(means, clean(g.Label)+" "+rounded(g.Mean))
+			if drawable(g.Mean) && len(list) < listMost {
+				list = append(list, clean(g.Label)+" "+rounded(g.Mean))
 			}
 		}
-		if len(means) > 0 && len(p.Groups) <= listMost {
-			fmt.Fprintf(&b, " Means: %s.", strings.Join(means, ", "))
+		if short(list) && len(p.Groups) <= listMost {
+			fmt.Fprintf(&b, " Means: %s.", strings.Join(list, ", "))
 		}
+		b.WriteString(means.sentence("Of the means"))
 	}
 	if excluded > 0 {
 		fmt.Fprintf(&b, " %s excluded from the analysis, drawn as %s", count(excluded, "value"), plural(excluded, "a cross", "crosses"))
 		var units []string
 		for _, g := range p.Groups {
 			for _, q := range g.Points {
-				if q.Excluded && drawable(q.Value) {
+				if q.Excluded && q.Unit != "" && drawable(q.Value) {
 					units = append(units, clean(q.Unit))
 				}
 			}
 		}
-		if len(units) <= listMost {
-			fmt.Fprintf(&b, ": %s", strings.Join(units, ", "))
-		}
-		b.WriteString(".")
+		fmt.Fprintf(&b, ": %s.", some(units))
 	}
 	if total-lost > maxPoints {
 		b.WriteString(" The points are too many to draw: the width of each shape shows how many lie at each height.")
@@ -521,12 +542,12 @@ func listed[T any](things []T, name func(T) string) string {
 	if len(things) == 0 {
 		return ""
 	}
-	if len(things) > listMost {
-		return fmt.Sprintf(" (%d groups)", len(things))
-	}
 	names := make([]string, len(things))
 	for i, t := range things {
 		names[i] = clean(name(t))
+	}
+	if len(things) > listMost || !short(names) {
+		return fmt.Sprintf(" (%d groups)", len(things))
 	}
 	return " (" + strings.Join(names, ", ") + ")"
 }

@@ -43,12 +43,8 @@ func (p Power) Draw() (*doc.Picture, string) {
 	if p.Chosen > 0 {
 		xs.add(p.Chosen)
 	}
-	w, h := p.resolve(min(max(250, float64(len(p.Curves))*textSize*leading+60), pageHeight))
-	t := newTags(p.Curves, func(c PowerCurve) string { return c.Label }, w*0.3, h-foot-10)
-	if t.key != nil {
-		_, h = p.above(t.key, h)
-		t = newTags(p.Curves, func(c PowerCurve) string { return c.Label }, w*0.3, h-foot-10)
-	}
+	w, high := p.resolve(min(max(250, float64(len(p.Curves))*textSize*leading+60), pageHeight))
+	t, h := tagged(p.Size, p.Curves, func(c PowerCurve) string { return c.Label }, high)
 	end := t.wide + 22
 	k, _ := p.above(t.key, h)
 	c := newCanvas(w, h+k.tall)
@@ -157,7 +153,17 @@ func (p Power) words(xs span) string {
 		}
 	}
 	if p.Target > 0 && p.Target < 1 {
-		fmt.Fprintf(&b, " A line marks %s %%.", rounded(100*p.Target))
+		fmt.Fprintf(&b, " A line marks the wished power of %s %%.", rounded(100*p.Target))
+		for k, c := range p.Curves {
+			if k == listMost {
+				break
+			}
+			if n, ok := c.reaches(p.Target); ok {
+				fmt.Fprintf(&b, " %s reaches it from %s on.", title(c.Label, "The curve"), rounded(n))
+			} else {
+				fmt.Fprintf(&b, " %s does not reach it.", title(c.Label, "The curve"))
+			}
+		}
 	}
 	return b.String()
 }

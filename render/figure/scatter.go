@@ -52,6 +52,19 @@ func (p Fitted) words(xs, ys span, n int) string {
 		fmt.Fprintf(&b, ", from %s to %s across and from %s to %s up", rounded(xs.lo), rounded(xs.hi), rounded(ys.lo), rounded(ys.hi))
 	}
 	b.WriteString(".")
+	var x extremes
+	var far ranked
+	for _, q := range p.Points {
+		if drawable(q.X) && drawable(q.Y) {
+			x.add(q.Y, q.Unit)
+			far.add(math.Abs(q.Y), q.Y, q.Unit)
+		}
+	}
+	if p.Zero {
+		b.WriteString(farthest(far))
+	} else {
+		b.WriteString(x.sentence("Units"))
+	}
 	b.WriteString(shaded(n))
 	b.WriteString(namedIn(p.Points))
 	if lost := len(p.Points) - n; lost > 0 {
@@ -336,16 +349,27 @@ func (p Quantiles) Draw() (*doc.Picture, string) {
 	}
 	b.WriteString(".")
 	outside, limits := 0, false
+	var x extremes
+	var out []string
 	for _, q := range held {
+		x.add(q.Value, q.Unit)
 		if drawable(q.Low) && drawable(q.High) {
 			limits = true
 			if q.Value < q.Low || q.Value > q.High {
 				outside++
+				if q.Unit != "" {
+					out = append(out, clean(q.Unit))
+				}
 			}
 		}
 	}
+	b.WriteString(x.sentence("Units"))
 	if limits {
-		fmt.Fprintf(&b, " The band is %s; %s outside it.", title(p.Envelope, "an envelope"), plural(outside, "1 point lies", fmt.Sprint(outside)+" points lie"))
+		fmt.Fprintf(&b, " The band is %s; %s outside it", title(p.Envelope, "an envelope"), plural(outside, "1 point lies", fmt.Sprint(outside)+" points lie"))
+		if len(out) > 0 {
+			b.WriteString(": " + some(out))
+		}
+		b.WriteString(".")
 	}
 	b.WriteString(namedIn(points))
 	if lost := len(p.Points) - n; lost > 0 {
@@ -469,6 +493,11 @@ func (p Spread) Draw() (*doc.Picture, string) {
 			rounded(math.Pow(10, ys.lo)), rounded(math.Pow(10, ys.hi)))
 	}
 	b.WriteString(".")
+	var x extremes
+	for _, q := range points {
+		x.add(math.Pow(10, q.Y), q.Unit)
+	}
+	b.WriteString(x.sentence("Of the standard deviations"))
 	if drawable(p.Slope) && n > 1 {
 		fmt.Fprintf(&b, " The line has a slope of %s.", rounded(p.Slope))
 	}
