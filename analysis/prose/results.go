@@ -18,7 +18,7 @@ func ResponseText(r *result.Response) string {
 		s = strings.ReplaceAll(r.Name, "_", " ")
 	}
 	s = lowerFirst(s)
-	if r.Unit != "" {
+	if r.Unit != "" && r.Unit != "1" {
 		s += " (" + num.UnitText(r.Unit) + ")"
 	}
 	return s
@@ -195,6 +195,40 @@ func MeansCaption(p *layout.Plan, r *result.Response, term string) string {
 	return kind + " of " + ResponseText(r) + " by " + strings.ReplaceAll(TermText(p, term), " × ", " and ")
 }
 
+// Letters says what the letters beside the means of a term tell; empty where there are
+// none.
+func Letters(p *layout.Plan, r *result.Response, term string) string {
+	letters, method := false, ""
+	for _, m := range r.Means {
+		letters = letters || m.Term == term && m.Letters != nil
+	}
+	for _, c := range r.Comparisons {
+		if c.Term == term {
+			method = c.Method
+		}
+	}
+	if !letters {
+		return ""
+	}
+	return fmt.Sprintf("Means that share a letter were not found different at the %s level by %s.", levelText(Alpha(p, r)), Method(method))
+}
+
+// DifferenceLimits says what the limits of the differences of a term are; empty where
+// there are none.
+func DifferenceLimits(p *layout.Plan, r *result.Response, term string) string {
+	for _, c := range r.Comparisons {
+		if c.Term != term || !c.Lower.Known() || !c.Upper.Known() {
+			continue
+		}
+		switch c.Method {
+		case "none", "lsd", "protected lsd":
+			return Interval(p, r) + " of each difference by itself"
+		}
+		return "simultaneous " + Interval(p, r) + " by " + Method(c.Method)
+	}
+	return ""
+}
+
 // MeansNotes are the notes of a table of means: SED by kind, least significant
 // difference, what the letters say, and what qualifies the term.
 func MeansNotes(p *layout.Plan, r *result.Response, term string) []string {
@@ -211,17 +245,8 @@ func MeansNotes(p *layout.Plan, r *result.Response, term string) []string {
 			out = append(out, fmt.Sprintf("Least significant difference (%s): %s.", levelText(Alpha(p, r)), num.Fixed(float64(s.LSD), num.SEDecimals(float64(s.Max)))))
 		}
 	}
-	letters, method := false, ""
-	for _, m := range r.Means {
-		letters = letters || m.Term == term && m.Letters != nil
-	}
-	for _, c := range r.Comparisons {
-		if c.Term == term {
-			method = c.Method
-		}
-	}
-	if letters {
-		out = append(out, fmt.Sprintf("Means that share a letter were not found different at the %s level by %s.", levelText(Alpha(p, r)), Method(method)))
+	if text := Letters(p, r, term); text != "" {
+		out = append(out, text)
 	}
 	if len(r.Covariates) > 0 {
 		var names []string
