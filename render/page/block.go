@@ -2,7 +2,6 @@ package page
 
 import (
 	"fmt"
-	"slices"
 	"strings"
 
 	"penwright/protocol/diag"
@@ -657,7 +656,7 @@ func (s *setter) contents(w where) []box {
 		link.target = &Element{Role: Linked, Alt: e.title}
 		// A space before the number of the page, and after that of the heading, for those
 		// who copy the text.
-		text := append(slices.Clone(e.text), doc.Text{Text: " "})
+		text := append(uncalled(e.text), doc.Text{Text: " "})
 		lines := lineBoxes(ragged(s.atoms(text, link, w.pos), avail), st, w.lead, w, x+numberWidth, el)
 		if len(lines) == 0 {
 			continue
@@ -676,7 +675,7 @@ func (s *setter) contents(w where) []box {
 		if e.level > 1 {
 			at = serif(w.size)
 		}
-		at.link, at.target = link.link, link.target
+		at.link, at.target = link.link, &Element{Role: Linked, Alt: e.title}
 		lines[len(lines)-1].pageOf = &pageOf{anchor: e.anchor, right: w.x + w.width, y: baseline(st, w.lead), style: at, element: el}
 		boxes = append(boxes, lines...)
 	}
@@ -686,6 +685,20 @@ func (s *setter) contents(w where) []box {
 	boxes = append(head, boxes...)
 	boxes[len(boxes)-1].below = 12
 	return boxes
+}
+
+// uncalled is the text of a heading without what leads elsewhere: calls of footnotes,
+// references.
+func uncalled(text []doc.Inline) []doc.Inline {
+	return doc.Mapper{Inline: func(n doc.Inline) doc.Inline {
+		switch n := n.(type) {
+		case doc.FootnoteRef, nil:
+			return doc.Text{}
+		case doc.Ref:
+			return doc.Text{Text: n.Text}
+		}
+		return n
+	}}.Inlines(text)
 }
 
 // caption sets "Table 3. …" or "Figure 3. …".
