@@ -34,6 +34,7 @@ type author struct {
 
 	dot      *view
 	words    template.FuncMap
+	kinds    map[string][]string // names of tables, figures, paragraphs and lists
 	made     map[string]*made
 	subjects map[string]*subject
 	known    map[string]*knownNames

@@ -232,6 +232,12 @@ func (b *builder) functions() template.FuncMap {
 		"limits":           prose.Limits,
 	}
 	chapter, ofChapter := b.chapterParagraphs(), b.chapterTables()
+	b.kinds = map[string][]string{
+		"table":     keys(ofTrial, keys(ofResponse, keys(ofTerm, keys(ofChapter, nil)))),
+		"figure":    keys(figures, []string{"map", "flow", "means", "effects", "power"}),
+		"paragraph": keys(paragraphsOf, keys(chapter, nil)),
+		"list":      {"hypotheses", "endpoints", "size notes"},
+	}
 	out := template.FuncMap{
 		"contents": func() []doc.Block { return []doc.Block{doc.Contents{}} },
 		"coverage": func(of string) ([]doc.Block, error) {
@@ -268,7 +274,7 @@ func (b *builder) functions() template.FuncMap {
 				}
 				made = ofTerm[name](r, x)
 			default:
-				return nil, unknown("table", name, keys(ofTrial, keys(ofResponse, keys(ofTerm, keys(ofChapter, nil)))))
+				return nil, unknown("table", name, b.kinds["table"])
 			}
 			if len(made.Rows) == 0 {
 				return nil, nil
@@ -306,7 +312,7 @@ func (b *builder) functions() template.FuncMap {
 				}
 				return figures[name](r.Name), nil
 			}
-			return nil, unknown("figure", name, keys(figures, []string{"map", "flow", "means", "effects", "power"}))
+			return nil, unknown("figure", name, b.kinds["figure"])
 		},
 		"paragraph": func(name string) ([]doc.Block, error) {
 			if f := chapter[name]; f != nil {
@@ -314,7 +320,7 @@ func (b *builder) functions() template.FuncMap {
 			}
 			f := paragraphsOf[name]
 			if f == nil {
-				return nil, unknown("paragraph", name, keys(paragraphsOf, keys(chapter, nil)))
+				return nil, unknown("paragraph", name, b.kinds["paragraph"])
 			}
 			return paragraphs(f()), nil
 		},
@@ -330,7 +336,7 @@ func (b *builder) functions() template.FuncMap {
 				}
 				return nil, nil
 			}
-			return nil, unknown("list", name, []string{"hypotheses", "endpoints", "size notes"})
+			return nil, unknown("list", name, b.kinds["list"])
 		},
 		"methods": func(name string) ([]doc.Inline, error) {
 			r, err := response([]string{name})

@@ -6,6 +6,7 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"io/fs"
 	"os"
 	"runtime"
 	"strings"
@@ -17,10 +18,14 @@ import (
 	"penwright/analysis/result"
 	"penwright/protocol/diag"
 	"penwright/render/face"
+	"penwright/templates"
 )
 
 // version is raised with every change of output.
 const version = "0.1.0"
+
+// topicTemplates is what help tells about beside the commands.
+const topicTemplates = "templates"
 
 // Exit statuses.
 const (
@@ -123,7 +128,8 @@ flags:
 example:
 {{.Example}}
 {{end}}{{if .HasAvailableSubCommands}}
-penwright help COMMAND tells more about one of them.
+penwright help COMMAND tells more about one of them; penwright help templates tells what
+report templates and an author’s own words in a report can say.
 exit status: 0 fine or warnings only; 1 the input has errors; 2 wrong use; 3 a file
 that cannot be read or written, or a fault of the program.
 {{end}}`
@@ -171,10 +177,25 @@ func (a *app) root() *cobra.Command {
 	}
 	root.AddCommand(a.demo(), a.new(), a.check(), a.size(), a.draw(), a.sheets(), a.seal(), a.changes(), a.analyze(), a.report())
 	root.SetHelpCommand(&cobra.Command{
-		Use: "help [COMMAND]", Short: "tells more about a command", Args: cobra.ArbitraryArgs,
+		Use: "help [COMMAND]", Short: "tells more about a command, or about templates", Args: cobra.ArbitraryArgs,
 		RunE: func(cmd *cobra.Command, args []string) error {
+			if len(args) == 1 && args[0] == topicTemplates {
+				page, err := fs.ReadFile(templates.FS, "functions.md")
+				if err != nil {
+					panic("main: the page on templates cannot be read")
+				}
+				_, err = a.out.Write(page)
+				return err
+			}
 			c, rest, err := cmd.Root().Find(args)
 			if err != nil || len(rest) > 0 && c == cmd.Root() {
+				known := []string{topicTemplates}
+				for _, c := range cmd.Root().Commands() {
+					known = append(known, c.Name())
+				}
+				if near := diag.Nearest(strings.Join(args, " "), known); near != "" {
+					return fmt.Errorf("there is no command or topic %q; did you mean %q?", strings.Join(args, " "), near)
+				}
 				return fmt.Errorf("there is no command %q", strings.Join(args, " "))
 			}
 			return c.Help()

@@ -27,6 +27,8 @@ func (a *app) report() *cobra.Command {
 		Short: "writes the report: PDF, HTML, Markdown, results, tables, figures",
 		Long: "report analyses a trial and writes its report into the folder report inside it, or the\n" +
 			"one given with --out. A trial without data or without an allotment gives a report too.\n" +
+			"Prose of the author stands in it at the places that [report] narrative names; claims in\n" +
+			"it that the results do not bear out make the command fail. See: help templates.\n" +
 			"The same files give the same bytes; the date the report bears is the last one the\n" +
 			"trial mentions, or that of SOURCE_DATE_EPOCH.",
 		Example: "  penwright report hollowmere\n  penwright report hollowmere --only pdf,html --out /tmp/hollowmere",

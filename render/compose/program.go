@@ -51,6 +51,16 @@ type program struct {
 // all their values.
 var shortCircuit = []string{"and", "or"}
 
+// Functions names the functions that every template has, sorted.
+func Functions() []string {
+	names := append([]string(nil), shortCircuit...)
+	for name := range ownFuncs {
+		names = append(names, name)
+	}
+	sort.Strings(names)
+	return names
+}
+
 // removed says what to do instead of what text/template has and a template here has not.
 var removed = map[string]string{
 	"printf":   "use print, or a function that rounds by the house rules",
