@@ -23,7 +23,7 @@ const (
 // divided by columns where even these are too narrow.
 func (b *builder) table(t doc.Table) {
 	upright, turned := float64(b.paper.width-2*margin)/20, float64(b.paper.height-2*margin)/20
-	g := grid.New(t, face.Get(face.Serif, false, false), tableSize/2.0*widerType)
+	g := grid.New(t, grid.Type{Face: face.Get(face.Serif, false, false), Size: tableSize / 2.0 * widerType})
 	if len(g.Columns) == 0 {
 		b.caption("Table", t.Number, t.ID, "", t.Caption)
 		return

@@ -5,6 +5,7 @@ package grid
 import (
 	"math"
 	"strings"
+	"unicode"
 	"unicode/utf8"
 
 	"penwright/render/doc"
@@ -48,8 +49,18 @@ type Cell struct {
 	Tail    string // after the decimal mark, where the cell is aligned by it
 }
 
-// New measures a table set in a face at a size.
-func New(t doc.Table, f *face.Face, size float64) *Grid {
+// Type is what a table is set in.
+type Type struct {
+	Face *face.Face
+	Size float64
+	// Hyphens says that long words may be divided.
+	Hyphens bool
+}
+
+func (t Type) width(text string) float64 { return t.Face.Width(text, t.Size) }
+
+// New measures a table.
+func New(t doc.Table, f Type) *Grid {
 	n := count(t)
 	g := &Grid{Columns: make([]Column, n)}
 	for i := range g.Columns {
@@ -58,22 +69,22 @@ func New(t doc.Table, f *face.Face, size float64) *Grid {
 		}
 	}
 	for _, cells := range t.Head {
-		g.Head = append(g.Head, g.place(cells, f, size))
+		g.Head = append(g.Head, g.place(cells, f))
 	}
 	for i, r := range t.Rows {
 		row := Row{Rule: r.Rule && i > 0, Group: r.Group}
 		if r.Group {
-			row.Cells = g.place(r.Cells, f, size)
+			row.Cells = g.place(r.Cells, f)
 			if n > 0 {
 				row.Cells = row.Cells[:1]
 				row.Cells[0].Span, row.Cells[0].Align = n, doc.Left
 			}
 		} else {
-			row.Cells = g.place(r.Cells, f, size)
+			row.Cells = g.place(r.Cells, f)
 		}
 		g.Rows = append(g.Rows, row)
 	}
-	g.measure(f, size)
+	g.measure(f)
 	return g
 }
 
@@ -99,7 +110,7 @@ func count(t doc.Table) int {
 }
 
 // place gives each cell its columns; empty cells fill a row to its end.
-func (g *Grid) place(cells []doc.Cell, f *face.Face, size float64) []Cell {
+func (g *Grid) place(cells []doc.Cell, f Type) []Cell {
 	n := len(g.Columns)
 	var out []Cell
 	col := 0
@@ -112,9 +123,13 @@ func (g *Grid) place(cells []doc.Cell, f *face.Face, size float64) []Cell {
 			x.Align = c.Align
 		}
 		text, _ := face.Clean(doc.Plain(c.Text))
-		x.Natural = f.Width(text, size)
+		x.Natural = f.width(text)
 		for _, w := range strings.Fields(text) {
-			x.Narrow = max(x.Narrow, f.Width(w, size))
+			width := f.width(w)
+			if f.Hyphens && divisible(w) {
+				width *= 0.6
+			}
+			x.Narrow = max(x.Narrow, width)
 		}
 		if x.Align == doc.Decimal {
 			_, x.Tail = doc.SplitDecimal(doc.Plain(c.Text))
@@ -128,9 +143,23 @@ func (g *Grid) place(cells []doc.Cell, f *face.Face, size float64) []Cell {
 	return out
 }
 
+// divisible tells whether a word is long enough, and of letters, so that it can be
+// divided by a hyphen.
+func divisible(word string) bool {
+	const long = 8
+	n := 0
+	for _, r := range word {
+		if !unicode.IsLetter(r) {
+			return false
+		}
+		n++
+	}
+	return n >= long
+}
+
 // measure finds the widths of the columns from cells over one of them, then widens those
 // under cells over several.
-func (g *Grid) measure(f *face.Face, size float64) {
+func (g *Grid) measure(f Type) {
 	before := make([]float64, len(g.Columns)) // the widest before the decimal mark
 	each := func(do func(c Cell, body bool)) {
 		for _, row := range g.Head {
@@ -156,12 +185,12 @@ func (g *Grid) measure(f *face.Face, size float64) {
 			if utf8.RuneCountInString(c.Tail) > utf8.RuneCountInString(col.Tail) {
 				col.Tail = c.Tail
 			}
-			before[c.Col] = max(before[c.Col], c.Natural-f.Width(c.Tail, size))
+			before[c.Col] = max(before[c.Col], c.Natural-f.width(c.Tail))
 		}
 	})
 	for i := range g.Columns {
 		if col := &g.Columns[i]; before[i] > 0 {
-			wide := before[i] + f.Width(col.Tail, size)
+			wide := before[i] + f.width(col.Tail)
 			col.Natural, col.Narrow = max(col.Natural, wide), max(col.Narrow, wide)
 		}
 	}

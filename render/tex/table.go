@@ -19,6 +19,7 @@ const (
 	gap       = 0.9  // two tabcolsep
 	tallest   = 20   // lines of a row; a higher one is cut
 	separator = "4pt"
+	longNotes = 1500 // bytes of notes that still stand with their table
 )
 
 // way is a manner to set a table.
@@ -38,7 +39,7 @@ var ways = []way{
 // table writes a table as one float or, where it is too high or too wide for a page, as
 // several.
 func (w *writer) table(t doc.Table) {
-	g := grid.New(t, face.Get(face.Serif, false, false), wider)
+	g := grid.New(t, grid.Type{Face: face.Get(face.Serif, false, false), Size: wider, Hyphens: true})
 	if len(g.Columns) == 0 {
 		if text := w.within(t.Caption); text != "" {
 			w.line("\n" + text)
@@ -63,10 +64,17 @@ func (w *writer) table(t doc.Table) {
 		how.turned = false
 	}
 	caption := w.within(t.Caption)
+	size := 0
+	for _, note := range t.Notes {
+		size += len(doc.Plain(note))
+	}
+	long := size > longNotes
 	first := true
+	pieces := 0
 	for i, part := range parts {
 		widths, _ := part.Fit(how.width, gap)
 		chunks := w.chunks(part, widths, how)
+		pieces += len(chunks)
 		for j, rows := range chunks {
 			last := i == len(parts)-1 && j == len(chunks)-1
 			w.open(float, how)
@@ -82,7 +90,7 @@ func (w *writer) table(t doc.Table) {
 			}
 			first = false
 			w.tabular(part, rows, widths, how)
-			if last {
+			if last && !long {
 				for k, note := range t.Notes {
 					if text := w.within(note); text != "" {
 						skip := ""
@@ -95,6 +103,19 @@ func (w *writer) table(t doc.Table) {
 			}
 			w.close(float, how)
 			w.due()
+			if last && long {
+				for _, note := range t.Notes {
+					if text := w.within(note); text != "" {
+						w.line("\n\\noindent{\\footnotesize " + text + `\par}`)
+					}
+				}
+				w.due()
+			}
+			if float && (pieces > 2 || i > 1) {
+				w.flush() // pieces of pages of their own
+			} else if float {
+				w.floated()
+			}
 		}
 	}
 }

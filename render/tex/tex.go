@@ -91,6 +91,7 @@ type writer struct {
 	held                    bool // in a table, a caption, a heading or a note, where no note can be
 	code                    bool // in type of a fixed pitch
 	line1                   bool // where a line cannot be ended
+	floats                  int  // in a row without text between
 	notes                   map[int]bool
 	later                   []int // notes called where none can be
 }
@@ -170,6 +171,7 @@ func (w *writer) blocks(blocks []doc.Block) {
 			w.at(b.Pos)
 			if text := w.inlines(b.Text); strings.TrimSpace(text) != "" {
 				w.line("\n" + text)
+				w.floats = 0
 			}
 		case doc.List:
 			w.bulletins(b)
@@ -310,6 +312,7 @@ func (w *writer) figure(f doc.Figure) {
 	w.line(`\caption` + w.short(f.Caption) + `{` + caption + `}` + w.label(f.ID))
 	w.line(`\end{figure}`)
 	w.due()
+	w.floated()
 }
 
 // short is the text of a caption for a list of them, where it calls notes.
@@ -449,6 +452,23 @@ func (w *writer) note(n int) string {
 	w.b = out
 	w.held, w.line1 = held, line1
 	return w.label("x_note-"+strconv.Itoa(n)) + strings.ReplaceAll(text, "\n\n", "\\par\n")
+}
+
+// mostFloats is how many tables and figures may wait for a place together. LaTeX gives up
+// on too many.
+const mostFloats = 12
+
+// floated counts a table or a figure that waits for its place.
+func (w *writer) floated() {
+	if w.floats++; w.floats >= mostFloats {
+		w.flush()
+	}
+}
+
+// flush has what waits set before anything else.
+func (w *writer) flush() {
+	w.line(`\clearpage`)
+	w.floats = 0
 }
 
 // due writes the texts of the notes that were called where none could be.
