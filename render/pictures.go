@@ -68,17 +68,10 @@ func (v *pictures) layoutMap() []doc.Block {
 	p := v.trial.Plan
 	unit := allot.RowUnit(p)
 	names, of := v.treatments(unit)
-	lost := map[[2]int]bool{}
-	finder := allot.NewFinder(p)
-	for _, e := range v.trial.Protocol.Exclusions {
-		if len(e.Responses) == 0 {
-			if u, i, bad := finder.Unit(e.Unit); bad == nil {
-				lost[[2]int{u, int(i)}] = true
-			}
-		}
-	}
+	out := v.excluded("")
+	lost := v.without(unit)
 	m := figure.FromPlan(p, func(u, i int) figure.Look {
-		l := figure.Look{Treatment: -1, Value: math.NaN(), Excluded: lost[[2]int{u, i}]}
+		l := figure.Look{Treatment: -1, Value: math.NaN(), Excluded: out(u, i), Lost: u == unit && lost != nil && lost[i]}
 		if v.trial.Allotment == nil {
 			return l
 		}
@@ -96,6 +89,62 @@ func (v *pictures) layoutMap() []doc.Block {
 		caption = "Layout of the trial; treatments have not been drawn"
 	}
 	return figureOf("figure-map", caption, "map", m.Draw)
+}
+
+// excluded says of an instance of a unit whether it, or a larger unit that holds it, was
+// excluded: for a response, or where that is empty from all of them.
+func (v *pictures) excluded(response string) func(unit, instance int) bool {
+	p := v.trial.Plan
+	type instance struct{ unit, at int }
+	out := map[instance]bool{}
+	finder := allot.NewFinder(p)
+	for _, e := range v.trial.Protocol.Exclusions {
+		if e.At == "" && (len(e.Responses) == 0 || contains(e.Responses, response)) {
+			if u, i, bad := finder.Unit(e.Unit); bad == nil {
+				out[instance{u, int(i)}] = true
+			}
+		}
+	}
+	return func(unit, i int) bool {
+		if len(out) == 0 {
+			return false
+		}
+		for u := range p.Units {
+			if up := p.Coarse(unit, u); up != nil && out[instance{u, int(up[i])}] {
+				return true
+			}
+		}
+		return false
+	}
+}
+
+// without says which instances of a unit have no value of any response that was recorded
+// on it or within it; nil where there are no data.
+func (v *pictures) without(unit int) []bool {
+	if v.trial.Table == nil || unit < 0 {
+		return nil
+	}
+	p := v.trial.Plan
+	var lost []bool
+	for k := range v.trial.Table.Responses {
+		data := &v.trial.Table.Responses[k]
+		up := p.Coarse(data.Unit, unit)
+		if up == nil {
+			continue
+		}
+		if lost == nil {
+			lost = make([]bool, p.Units[unit].N)
+			for i := range lost {
+				lost[i] = true
+			}
+		}
+		for i, value := range data.Value {
+			if !math.IsNaN(value) {
+				lost[up[data.Instance[i]]] = false
+			}
+		}
+	}
+	return lost
 }
 
 // ownLevels names what a unit itself received.
@@ -185,7 +234,9 @@ func (v *pictures) points(name string) []doc.Block {
 		fig.Groups = append(fig.Groups, figure.Group{Label: x, Mean: math.NaN()})
 	}
 	total, count := make([]float64, len(g.names)), make([]int, len(g.names))
+	crosses := false
 	for k, u := range instances {
+		crosses = crosses || excluded[u]
 		value := sum[u] / float64(n[u])
 		t := g.of[k]
 		fig.Groups[t].Points = append(fig.Groups[t].Points, figure.Point{Unit: g.units[k], Block: g.blocks[k], Value: value, Excluded: excluded[u]})
@@ -204,6 +255,9 @@ func (v *pictures) points(name string) []doc.Block {
 		caption += "; units of a " + g.block + " are joined"
 	}
 	caption += ". Bars: treatment means."
+	if crosses {
+		caption += " Crosses: excluded from the analysis and from the means."
+	}
 	return figureOf("figure-points-"+name, caption, "points-"+name, fig.Draw)
 }
 
@@ -281,6 +335,12 @@ func (v *pictures) means(name, term string) []doc.Block {
 			fig.Means = append(fig.Means, x)
 		}
 		caption := prose.MeansCaption(p, r, term) + ", with " + prose.Interval(p, r) + " of each mean."
+		if text := prose.Letters(p, r, term); text != "" {
+			caption += " " + text
+		}
+		if fig.Trend = trend(p, r, term, fig.Means); len(fig.Trend.Points) > 0 {
+			caption += " The line is the " + fig.Trend.Label + ", of the degree that was planned."
+		}
 		return figureOf(id, caption, file, fig.Draw)
 	case 2:
 		a, b := ms[0].Levels[0].Factor, ms[0].Levels[1].Factor
@@ -332,6 +392,36 @@ func (v *pictures) means(name, term string) []doc.Block {
 		return figureOf(id, caption, file, fig.Draw)
 	}
 	return nil
+}
+
+// mostDifferences is how many differences a picture shows; more are read in their table.
+const mostDifferences = 40
+
+// differences shows the differences between the means of a term with their limits.
+func (v *pictures) differences(name, term string) []doc.Block {
+	r := v.response(name)
+	if r == nil {
+		return nil
+	}
+	p := v.trial.Plan
+	limits := prose.DifferenceLimits(p, r, term)
+	fig := figure.Differences{Response: "Difference", Interval: limits}
+	if r.Unit != "" {
+		fig.Response += " (" + num.UnitText(r.Unit) + ")"
+	}
+	for _, c := range r.Comparisons {
+		if c.Term == term {
+			fig.Rows = append(fig.Rows, figure.Difference{At: prose.LevelsText(p, c.At), A: strings.ReplaceAll(c.A, ":", ", "), B: strings.ReplaceAll(c.B, ":", ", "),
+				Value: float64(c.Difference), Low: float64(c.Lower), High: float64(c.Upper)})
+		}
+	}
+	// One difference is soon read, and without limits a picture says no more than the table.
+	if limits == "" || len(fig.Rows) < 2 || len(fig.Rows) > mostDifferences {
+		return nil
+	}
+	id := name + "-" + strings.ReplaceAll(term, ":", "-")
+	caption := prose.ComparisonsCaption(p, r, term) + ", with " + limits + ". Where the limits do not hold nought, P is below the level they stand for."
+	return figureOf("figure-differences-"+id, caption, "differences-"+id, fig.Draw)
 }
 
 func contains(list []string, s string) bool {
@@ -426,6 +516,7 @@ func (v *pictures) residualMap(name string) []doc.Block {
 	for k, i := range instances {
 		value[int(i)] = float64(r.Residuals[k].Residual)
 	}
+	out := v.excluded(name)
 	label := func(int) string { return "" }
 	if names, of := v.treatments(unit); names != nil {
 		label = func(i int) string { return names[of(i)] }
@@ -433,11 +524,12 @@ func (v *pictures) residualMap(name string) []doc.Block {
 	m := figure.FromPlan(v.trial.Plan, func(u, i int) figure.Look {
 		l := figure.Look{Treatment: -1, Value: math.NaN()}
 		if u == unit {
+			l.Label = label(i)
 			if x, ok := value[i]; ok {
 				l.Value = x
-				l.Label = label(i)
 			} else {
-				l.Excluded = true
+				l.Excluded = out(u, i)
+				l.Lost = !l.Excluded
 			}
 		}
 		return l
@@ -527,14 +619,22 @@ func (v *pictures) spread(name string) []doc.Block {
 	if len(fig.Points) < 3 {
 		return nil
 	}
+	caption := "Standard deviation on mean, one point a treatment, both on logarithmic scales: " + prose.ResponseText(r) + "."
 	for _, d := range r.Diagnostics {
+		if d.Name != "spread on mean" {
+			continue
+		}
 		// A line that the points do not clearly show is not drawn.
-		if d.Name == "spread on mean" && d.P.Known() && float64(d.P) < 0.05 {
+		if d.P.Known() && float64(d.P) < 0.05 {
 			fig.Slope = float64(d.Statistic)
 			fig.Intercept = sy/n - fig.Slope*sx/n
+			caption += " The line rises by " + num.Fixed(fig.Slope, 1) + "; a slope of b is evened by the power 1 − b."
+		}
+		if d.Text != "" {
+			caption += " " + d.Text
 		}
 	}
-	return figureOf("figure-spread-"+name, "Standard deviation on mean, one point a treatment, both on logarithmic scales: "+prose.ResponseText(r)+".", "spread-"+name, fig.Draw)
+	return figureOf("figure-spread-"+name, caption, "spread-"+name, fig.Draw)
 }
 
 // quantiles shows ordered studentized residuals against normal scores.
@@ -576,7 +676,7 @@ func (v *pictures) flow() []doc.Block {
 	up := p.Coarse(data.Unit, unit)
 	n := p.Units[unit].N
 	allotted, observed, analysed := make([]int, len(names)), make([]int, len(names)), make([]int, len(names))
-	seen, used := make([]bool, n), make([]bool, n)
+	seen, used, why := make([]bool, n), make([]bool, n), make([]string, n)
 	for i, s := range data.Status {
 		u := up[data.Instance[i]]
 		if !math.IsNaN(data.Value[i]) {
@@ -584,11 +684,20 @@ func (v *pictures) flow() []doc.Block {
 		}
 		if s == dataset.Used {
 			used[u] = true
+		} else if why[u] == "" {
+			why[u] = data.Reason[i]
 		}
 	}
+	before, after := make([]reasons, len(names)), make([]reasons, len(names))
 	for i := range n {
 		t := of(i)
 		allotted[t]++
+		switch {
+		case !seen[i]:
+			before[t].add(why[i], "no value")
+		case !used[i]:
+			after[t].add(why[i], "not used")
+		}
 		if seen[i] {
 			observed[t]++
 		}
@@ -598,14 +707,101 @@ func (v *pictures) flow() []doc.Block {
 	}
 	fig := figure.Flow{Unit: prose.UnitName(&p.Units[unit]), Stages: []string{"allotted", "observed", "analysed"}}
 	for t, name := range names {
-		row := figure.FlowRow{Label: name, Counts: []int{allotted[t], observed[t], analysed[t]}, Reasons: []string{"", ""}}
-		if d := allotted[t] - observed[t]; d > 0 {
-			row.Reasons[0] = num.Count(d) + " missing"
+		fig.Rows = append(fig.Rows, figure.FlowRow{Label: name, Counts: []int{allotted[t], observed[t], analysed[t]}, Reasons: []string{before[t].String(), after[t].String()}})
+	}
+	if planned := v.planned(unit, names); planned != nil {
+		fig.Stages = append([]string{"planned"}, fig.Stages...)
+		for t := range fig.Rows {
+			r := &fig.Rows[t]
+			r.Counts, r.Reasons = append([]int{planned[t]}, r.Counts...), append([]string{""}, r.Reasons...)
 		}
-		if d := observed[t] - analysed[t]; d > 0 {
-			row.Reasons[1] = num.Count(d) + " not used"
-		}
-		fig.Rows = append(fig.Rows, row)
 	}
 	return figureOf("figure-flow", "Flow of units from the allotment to the analysis of "+prose.ResponseLabelText(data.Protocol)+".", "flow", fig.Draw)
+}
+
+// reasons counts why units fell away, in the order of their first appearance.
+type reasons struct {
+	texts  []string
+	counts []int
+}
+
+func (r *reasons) add(text, otherwise string) {
+	if text == "" {
+		text = otherwise
+	}
+	for i, t := range r.texts {
+		if t == text {
+			r.counts[i]++
+			return
+		}
+	}
+	r.texts, r.counts = append(r.texts, text), append(r.counts, 1)
+}
+
+// String lists the reasons, with their numbers where there are several.
+func (r *reasons) String() string {
+	var out []string
+	for i, t := range r.texts {
+		if len(r.texts) > 1 {
+			t += " (" + num.Count(r.counts[i]) + ")"
+		}
+		out = append(out, t)
+	}
+	return strings.Join(out, "; ")
+}
+
+// planned is how many instances of a unit were planned for each treatment; nil where the
+// plan does not say by treatment.
+func (v *pictures) planned(unit int, names []string) []int {
+	p := v.trial.Plan
+	combinations := 1
+	equal := true
+	treated := 0
+	for u := range p.Units {
+		a := p.Allocation(u)
+		if a == nil || p.Coarse(unit, u) == nil {
+			continue
+		}
+		treated++
+		if a.Separate {
+			for _, f := range a.Factors {
+				combinations *= len(p.Factors[f].Levels)
+			}
+			continue
+		}
+		combinations *= len(a.Combinations)
+		for _, k := range a.Total {
+			equal = equal && k == a.Total[0]
+		}
+	}
+	out := make([]int, len(names))
+	if a := p.Allocation(unit); treated == 1 && a != nil && !a.Separate && len(a.Total) == len(a.Combinations) {
+		at := map[string]int{}
+		for c, levels := range a.Combinations {
+			var parts []string
+			for f := range p.Factors {
+				for k, own := range a.Factors {
+					if own == f {
+						parts = append(parts, prose.LevelText(p, p.Factors[f].Name, p.Factors[f].Levels[levels[k]]))
+					}
+				}
+			}
+			at[strings.Join(parts, ", ")] = a.Total[c]
+		}
+		for t, name := range names {
+			k, ok := at[name]
+			if !ok {
+				return nil
+			}
+			out[t] = k
+		}
+		return out
+	}
+	if !equal || combinations == 0 || combinations != len(names) || p.Units[unit].N%combinations != 0 {
+		return nil
+	}
+	for t := range out {
+		out[t] = p.Units[unit].N / combinations
+	}
+	return out
 }

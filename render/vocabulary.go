@@ -234,7 +234,7 @@ func (b *builder) functions() template.FuncMap {
 	chapter, ofChapter := b.chapterParagraphs(), b.chapterTables()
 	b.kinds = map[string][]string{
 		"table":     keys(ofTrial, keys(ofResponse, keys(ofTerm, keys(ofChapter, nil)))),
-		"figure":    keys(figures, []string{"map", "flow", "means", "effects", "power"}),
+		"figure":    keys(figures, []string{"map", "flow", "means", "differences", "effects", "power"}),
 		"paragraph": keys(paragraphsOf, keys(chapter, nil)),
 		"list":      {"hypotheses", "endpoints", "size notes"},
 	}
@@ -295,7 +295,7 @@ func (b *builder) functions() template.FuncMap {
 					return nil, err
 				}
 				return b.chapterFigures(r.Name), nil
-			case name == "means":
+			case name == "means" || name == "differences":
 				r, err := response(args)
 				if err != nil {
 					return nil, err
@@ -303,6 +303,9 @@ func (b *builder) functions() template.FuncMap {
 				x, err := term(r, args)
 				if err != nil {
 					return nil, err
+				}
+				if name == "differences" {
+					return p.differences(r.Name, x), nil
 				}
 				return p.means(r.Name, x), nil
 			case figures[name] != nil:

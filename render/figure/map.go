@@ -841,12 +841,10 @@ func (m Map) words(all []Cell, n int) string {
 			continue
 		}
 		fmt.Fprintf(&b, " %s %s", count(k, unit), out.how)
-		if k <= listMost {
-			for i, u := range out.units {
-				out.units[i] = clean(u)
-			}
-			fmt.Fprintf(&b, ": %s", strings.Join(out.units, ", "))
+		for i, u := range out.units {
+			out.units[i] = clean(u)
 		}
+		fmt.Fprintf(&b, ": %s", some(out.units))
 		b.WriteString(".")
 	}
 	if n > mostCells {

@@ -55,9 +55,9 @@ func farthest(r ranked) string {
 // some lists at most listMost names, and counts what is left of them.
 func some(names []string) string {
 	if len(names) > listMost {
-		return fmt.Sprintf("%s and %d others", strings.Join(names[:listMost], ", "), len(names)-listMost)
+		return fmt.Sprintf("%s; and %d others", strings.Join(names[:listMost], "; "), len(names)-listMost)
 	}
-	return strings.Join(names, ", ")
+	return strings.Join(names, "; ")
 }
 
 // crossing says whether lines over common places keep their order.
