@@ -117,6 +117,8 @@ func (x *Item) State() State {
 		return Inapplicable
 	case n[Answered] == asked:
 		return Answered
+	case n[Waiting] > 0 && n[Answered]+n[Waiting] == asked:
+		return Waiting
 	case n[Answered]+n[Partly] > 0:
 		return Partly
 	case n[Missing] > 0 && n[Unprinted] > 0:
@@ -209,11 +211,19 @@ var held = []string{"none", "n", "na", "nil", "null", "tbd", "tba", "tbc", "todo
 	"decided", "determined", "done", "announced", "added", "completed", "confirmed", "written", "filled", "fill", "write", "insert", "text", "usual", "before", "above", "below",
 	"standard", "normal", "normally", "etc", "ditto", "idem", "placeholder", "lorem", "ipsum", "dolor", "sit", "amet", "something", "anything", "whatever", "blah", "foo", "bar", "test", "yes", "ok"}
 
+// elsewhere are words that begin a text which only refers to another.
+var elsewhere = [][]string{{"see"}, {"as", "published"}, {"as", "described"}, {"as", "usual"}, {"as", "before"}, {"as", "above"}, {"as", "below"}, {"as", "in"}, {"same", "as"}, {"the", "same", "as"}, {"to", "be"}}
+
 // adequate tells whether a text says something: a fact is more than a held place, other
 // texts have three different words or more that are not all held places or fillers, and a
-// sentence six words.
+// sentence six words. What only refers elsewhere, or is still to be, says nothing.
 func adequate(s string, k welfare.Key) bool {
 	words, signs := wordsOf(s)
+	for _, e := range elsewhere {
+		if len(words) >= len(e) && slices.Equal(words[:len(e)], e) {
+			return false
+		}
+	}
 	seen := map[string]bool{}
 	meaning := 0
 	for _, w := range words {

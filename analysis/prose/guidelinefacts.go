@@ -424,9 +424,18 @@ func (v *evidence) animalsLost(out *Part) {
 		out.Lacks = lacks
 	case v.confirmed("event"):
 		out.say("none, as the author confirms")
+	case animals(v.t) == 0 && v.complete():
+		out.say("none: every unit planned was analysed")
 	default:
 		out.Says = "no loss is recorded, and nothing confirms that there was none"
 	}
+}
+
+// complete tells whether every value planned was analysed.
+func (v *evidence) complete() bool {
+	return !slices.ContainsFunc(v.t.Table.Responses, func(r dataset.Response) bool {
+		return slices.ContainsFunc(r.Status, func(s dataset.Status) bool { return s != dataset.Used })
+	})
 }
 
 func (v *evidence) adverseEvents(out *Part) { v.adverse(out, false) }
@@ -536,7 +545,6 @@ func (v *evidence) confounders(out *Part) {
 		switch {
 		case adequate(b, welfare.Key{Fact: true}):
 			says = append(says, fmt.Sprintf("%s by %s", Plural(UnitName(x)), clip(lowerFirst(b))))
-			out.Texts = append(out.Texts, b)
 		case slices.Contains(opaque, x.Name):
 			says = append(says, Plural(UnitName(x)))
 			lacks = append(lacks, fmt.Sprintf("what units of one %s have in common", UnitName(x)))

@@ -167,6 +167,12 @@ func (v *evidence) clustering(out *Part) {
 			return
 		}
 	}
+	for _, l := range v.levels() {
+		if !l.animals && slices.Contains(organized, l.name) {
+			out.Says, out.Keys = fmt.Sprintf("how many animals a %s holds is not stated", l.name), []welfare.Key{{Name: "unit.animals"}}
+			return
+		}
+	}
 	out.skip("no unit holds several animals or values")
 }
 

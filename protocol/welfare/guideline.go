@@ -77,25 +77,42 @@ func guideline(key string) Guideline {
 	return g
 }
 
-// withAnimals tells whether a trial has animals, by its description, by what is stated of
-// their welfare, by their number, or, where nothing tells of a crop, by the name of a unit.
+// withAnimals tells whether a trial has animals: by their description, by what is stated of
+// their welfare, by their number, or, where nothing tells of a crop, by the names of the
+// units and of the trial.
 func withAnimals(p *protocol.Protocol) bool {
+	if p.Animals != nil || p.Welfare != nil {
+		return true
+	}
 	crop := p.Material != nil || p.Site != nil || p.Plot != nil
-	return p.Animals != nil || p.Welfare != nil || slices.ContainsFunc(p.Units, func(u protocol.Unit) bool {
-		return u.Animals != nil || u.AnimalsColumn != "" || !crop && IsAnimal(u.Name)
+	return !crop && identify(p.Trial.Title) != nil || slices.ContainsFunc(p.Units, func(u protocol.Unit) bool {
+		return u.Animals != nil || u.AnimalsColumn != "" || !crop && (IsAnimal(u.Name) || slices.Contains(housed, u.Name))
 	})
 }
 
+// housed are units that hold animals (common practice, no source).
+var housed = []string{"pen", "cage", "hutch", "litter", "herd", "flock", "paddock", "stall", "kennel"}
+
 // foodAnimals tells whether food comes from the animals of a trial.
 func foodAnimals(p *protocol.Protocol) bool {
-	if p.Animals == nil {
-		return false
+	var texts []string
+	if p.Animals != nil {
+		if f := p.Animals.FoodChain; f != nil && *f {
+			return true
+		}
+		texts = append(texts, p.Animals.Species)
+	} else {
+		for _, u := range p.Units {
+			texts = append(texts, strings.ReplaceAll(u.Name, "_", " "))
+		}
+		texts = append(texts, p.Trial.Title)
 	}
-	if f := p.Animals.FoodChain; f != nil && *f {
-		return true
+	for _, s := range texts {
+		if a := identify(s); a != nil {
+			return a.is("meat|milk|eggs|fish") && !a.is("zebrafish")
+		}
 	}
-	a := identify(p.Animals.Species)
-	return a.is("meat|milk|eggs|fish") && !a.is("zebrafish") && a != nil
+	return false
 }
 
 // IsAnimal tells whether a unit of that name is one animal.

@@ -332,7 +332,9 @@ func answer(x *prose.Item, label map[string]string) []doc.Inline {
 		says := ""
 		for i := range x.Parts {
 			if p := &x.Parts[i]; p.State == s && !p.Optional {
-				what, says = append(what, p.What), p.Says
+				if what = append(what, p.What); s != prose.Unprinted {
+					says = p.Says
+				}
 			}
 		}
 		if len(what) > 0 {
