@@ -8,6 +8,7 @@ import (
 	"math"
 	"regexp"
 	"slices"
+	"strconv"
 	"strings"
 )
 
@@ -315,17 +316,13 @@ func (c *checker) destination(v any, what string) (page int, top float64) {
 	a := c.list(v)
 	if len(a) == 5 {
 		n, _ := a[0].(refValue)
-		at, ok := c.index[int(n)]
-		y, ok2 := a[3].(float64)
-		if ok && ok2 && a[1] == nameValue("XYZ") {
-			return at, y
-		}
-		if d, err := c.dict(a[0]); err == nil && d["Type"] == nameValue("Page") {
-			return -1, 0 // a page not yet met
+		y, ok := a[3].(float64)
+		if ok && a[1] == nameValue("XYZ") && c.at(a[0])["Type"] == nameValue("Page") {
+			return int(n), y
 		}
 	}
 	c.fault("32000-1 12.3.2", "%s leads to %v", what, a)
-	return -1, 0
+	return 0, 0
 }
 
 // outline looks at bookmarks and their chain.
@@ -962,4 +959,64 @@ func (c *checker) kinds(s *Struct) {
 			c.fault("32000-1 14.8.4", "an empty %s", s.Kind)
 		}
 	}
+}
+
+// Plain gives the file as earlier releases wrote it, each object by itself and the
+// table in plain text, its streams unpacked, and old replaced wherever it stands.
+func Plain(file []byte, old, with string) ([]byte, error) {
+	r, err := open(file)
+	if err != nil {
+		return nil, err
+	}
+	bodies := map[int][]byte{}
+	for _, m := range regexp.MustCompile(`(?sm)^(\d+) 0 obj\n(.*?)\nendobj\n`).FindAllSubmatch(Expand(file)[len(file):], -1) {
+		n, _ := strconv.Atoi(string(m[1]))
+		bodies[n] = m[2]
+	}
+	for n, at := range r.offsets {
+		v, raw, err := r.object(n)
+		if err != nil {
+			return nil, err
+		}
+		d, _ := v.(dict)
+		if d["Type"] == nameValue("ObjStm") || d["Type"] == nameValue("XRef") {
+			continue
+		}
+		head, _, _ := bytes.Cut(file[at:], []byte("stream\n"))
+		_, head, _ = bytes.Cut(head, []byte("obj\n"))
+		text := string(head)
+		if d["Type"] != nameValue("EmbeddedFile") {
+			if raw, err = r.unpack(d, raw); err != nil {
+				return nil, err
+			}
+			text = strings.Replace(text, "/Filter /FlateDecode", "", 1)
+			raw = bytes.ReplaceAll(raw, []byte(old), []byte(with))
+		}
+		text = regexp.MustCompile(`/Length \d+`).ReplaceAllString(text, fmt.Sprintf("/Length %d", len(raw)))
+		bodies[n] = fmt.Appendf(nil, "%sstream\n%s\nendstream", strings.ReplaceAll(text, old, with), raw)
+	}
+	out := []byte("%PDF-1.7\n%\xE2\xE3\xCF\xD3\n")
+	numbers := slices.Sorted(maps.Keys(bodies))
+	size := numbers[len(numbers)-1] + 1
+	offsets := make([]int, size)
+	for _, n := range numbers {
+		body := bodies[n]
+		if !bytes.Contains(body, []byte("stream\n")) {
+			body = bytes.ReplaceAll(body, []byte(old), []byte(with))
+		}
+		offsets[n] = len(out)
+		out = fmt.Appendf(out, "%d 0 obj\n%s\nendobj\n", n, body)
+	}
+	table := len(out)
+	out = fmt.Appendf(out, "xref\n0 %d\n0000000000 65535 f \n", size)
+	for _, at := range offsets[1:] {
+		kind := 'n'
+		if at == 0 {
+			kind = 'f'
+		}
+		out = fmt.Appendf(out, "%010d 00000 %c \n", at, kind)
+	}
+	id := r.trailer["ID"].(array)
+	return fmt.Appendf(out, "trailer\n<</Size %d /Root %d 0 R /Info %d 0 R /ID [<%x> <%x>]>>\nstartxref\n%d\n%%%%EOF\n",
+		size, r.trailer["Root"], r.trailer["Info"], id[0], id[1], table), nil
 }
