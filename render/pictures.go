@@ -169,6 +169,26 @@ type cellRows struct {
 	blocks []string // block of each row; empty: none
 	units  []string
 	block  string // what the blocks are called
+	means  bool   // a block holds several units of a treatment
+}
+
+// atMostOnce says whether no block holds two of the instances with one treatment, and one holds
+// two treatments.
+func atMostOnce(block []int32, instances []int32, of func(int) int) bool {
+	seen, first := map[[2]int]bool{}, map[int]int{}
+	several := false
+	for _, i := range instances {
+		b, t := int(block[i]), of(int(i))
+		if seen[[2]int{b, t}] {
+			return false
+		}
+		seen[[2]int{b, t}] = true
+		if x, ok := first[b]; ok && x != t {
+			several = true
+		}
+		first[b] = t
+	}
+	return several
 }
 
 // groupRows finds treatment, block and name of the instances of a unit.
@@ -177,14 +197,21 @@ func (v *pictures) groupRows(unit int, instances []int32) cellRows {
 	var out cellRows
 	names, of := v.treatments(unit)
 	out.names = names
-	// The block is the coarsest unit with more than one instance that received nothing.
-	block := -1
+	// The block is the coarsest unit that received nothing and holds a treatment at most
+	// once, so that a line has one unit at each; else the coarsest of several that received
+	// nothing.
+	block, single := -1, false
 	for _, s := range p.Strata {
 		u := &p.Units[s.Unit]
-		if block < 0 && s.Unit != unit && p.Coarse(unit, s.Unit) != nil && len(u.Receives) == 0 && u.Own != nil && u.N > 1 {
+		to := p.Coarse(unit, s.Unit)
+		if single || s.Unit == unit || to == nil || len(u.Receives) > 0 || u.Own == nil || u.N < 2 {
+			continue
+		}
+		if single = atMostOnce(to, instances, of); block < 0 || single {
 			block = s.Unit
 		}
 	}
+	out.means = block >= 0 && !single
 	if block >= 0 {
 		out.block = prose.UnitName(&p.Units[block])
 	}
@@ -198,6 +225,17 @@ func (v *pictures) groupRows(unit int, instances []int32) cellRows {
 		out.blocks = append(out.blocks, b)
 	}
 	return out
+}
+
+// joined says what lines join.
+func (g cellRows) joined() string {
+	switch {
+	case g.block == "":
+		return ""
+	case g.means:
+		return "; lines join the means of each " + g.block
+	}
+	return "; lines join the units of each " + g.block
 }
 
 // points shows the data of a response by treatment with blocks joined.
@@ -251,9 +289,7 @@ func (v *pictures) points(name string) []doc.Block {
 		}
 	}
 	caption := "Data: " + prose.ResponseText(r) + " of each " + prose.UnitName(&p.Units[unit]) + " by treatment"
-	if g.block != "" {
-		caption += "; units of a " + g.block + " are joined"
-	}
+	caption += g.joined()
 	caption += ". Bars: treatment means."
 	if crosses {
 		caption += " Crosses: excluded from the analysis and from the means."
@@ -395,7 +431,7 @@ func (v *pictures) means(name, term string) []doc.Block {
 }
 
 // mostDifferences is how many differences a picture shows; more are read in their table.
-const mostDifferences = 40
+const mostDifferences = 21 // all pairs of seven means, or twenty against one
 
 // differences shows the differences between the means of a term with their limits.
 func (v *pictures) differences(name, term string) []doc.Block {
@@ -409,9 +445,22 @@ func (v *pictures) differences(name, term string) []doc.Block {
 	if r.Unit != "" {
 		fig.Response += " (" + num.UnitText(r.Unit) + ")"
 	}
+	level := func(c result.Comparison, s string) string {
+		// Where one factor of the term is not held, the levels are its.
+		free := ""
+		for _, f := range strings.Split(term, ":") {
+			if c.At.Of(f) == "" {
+				if free != "" {
+					return strings.ReplaceAll(s, ":", ", ")
+				}
+				free = f
+			}
+		}
+		return prose.LevelText(p, free, s)
+	}
 	for _, c := range r.Comparisons {
 		if c.Term == term {
-			fig.Rows = append(fig.Rows, figure.Difference{At: prose.LevelsText(p, c.At), A: strings.ReplaceAll(c.A, ":", ", "), B: strings.ReplaceAll(c.B, ":", ", "),
+			fig.Rows = append(fig.Rows, figure.Difference{At: prose.LevelsText(p, c.At), A: level(c, c.A), B: level(c, c.B),
 				Value: float64(c.Difference), Low: float64(c.Lower), High: float64(c.Upper)})
 		}
 	}
@@ -563,7 +612,7 @@ func (v *pictures) residualPoints(name string) []doc.Block {
 		t := g.of[k]
 		fig.Groups[t].Points = append(fig.Groups[t].Points, figure.Point{Unit: g.units[k], Block: g.blocks[k], Value: float64(r.Residuals[k].Residual)})
 	}
-	return figureOf("figure-residuals-"+name, "Residuals of "+prose.ResponseText(r)+" by treatment.", "residuals-"+name, fig.Draw)
+	return figureOf("figure-residuals-"+name, "Residuals of "+prose.ResponseText(r)+" by treatment"+g.joined()+".", "residuals-"+name, fig.Draw)
 }
 
 // fitted shows residuals against fitted values.
