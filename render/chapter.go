@@ -1,6 +1,8 @@
 package render
 
 import (
+	"strings"
+
 	"penwright/analysis/prose"
 	"penwright/analysis/result"
 	"penwright/render/doc"
@@ -30,6 +32,7 @@ func (b *builder) chapterParagraphs() map[string]func() []doc.Block {
 		"other responses":     of(func() []prose.Passage { return prose.ChapterOthers(t, rs) }),
 		"the checks":          of(func() []prose.Passage { return prose.ChapterChecks(rs, true) }),
 		"checks unplanned":    of(func() []prose.Passage { return prose.ChapterChecks(rs, false) }),
+		"added contrasts":     func() []doc.Block { return paragraphs(prose.AddedContrasts(t, rs)) },
 		"contrasts unplanned": of(func() []prose.Passage { return prose.ChapterUnplanned(t, rs) }),
 		"the statements":      of(func() []prose.Passage { return prose.ChapterStatements(t) }),
 	}
@@ -70,7 +73,8 @@ func (b *builder) chapterTables() map[string]func() []doc.Block {
 					}
 				}
 			}
-			if made := table.ChapterContrasts(t.Plan, of, planned); len(made.Rows) > 0 {
+			// What a few sentences say already needs no table.
+			if made := table.ChapterContrasts(t.Plan, of, planned); len(made.Rows) > 0 && (len(of) > 1 || len(made.Rows) > 4) {
 				return []doc.Block{made}
 			}
 			return nil
@@ -136,7 +140,7 @@ func (b *builder) chapterFigures(name string) []doc.Block {
 // in parentheses at its end.
 func passages(of []prose.Passage) []doc.Block {
 	var text []doc.Inline
-	last := ""
+	named := map[string]bool{}
 	for _, s := range of {
 		if s.Text == "" {
 			continue
@@ -144,17 +148,68 @@ func passages(of []prose.Passage) []doc.Block {
 		if len(text) > 0 {
 			text = append(text, doc.Text{Text: " "})
 		}
-		if s.See == "" || s.See == last {
+		if s.See == "" || named[s.See] {
 			text = append(text, inlines(s.Text)...)
 			continue
 		}
-		last = s.See
-		head := s.Text[:len(s.Text)-1]
+		named[s.See] = true
+		head, open := s.Text[:len(s.Text)-1], " ("
+		if strings.HasSuffix(head, ")") && strings.Contains(head[strings.LastIndex(head, "("):], "; P ") {
+			head, open = head[:len(head)-1], "; "
+		}
 		text = append(text, inlines(head)...)
-		text = append(text, doc.Text{Text: " ("}, doc.Ref{ID: s.See, Text: "not shown", Optional: true}, doc.Text{Text: ")" + s.Text[len(s.Text)-1:]})
+		text = append(text, doc.Text{Text: open}, doc.Ref{ID: s.See, Text: notShown, Optional: true}, doc.Text{Text: ")" + s.Text[len(s.Text)-1:]})
 	}
 	if len(text) == 0 {
 		return nil
 	}
 	return []doc.Block{doc.Paragraph{Text: text}}
+}
+
+// notShown stands in an optional reference of a passage until it is known whether the
+// document has what it points at.
+const notShown = "not shown"
+
+// withoutMissing takes the references of passages out whose tables and figures the
+// document does not have, with the parentheses around them.
+func withoutMissing(blocks []doc.Block) []doc.Block {
+	there := map[string]bool{}
+	doc.Walk(blocks, func(node any) {
+		switch x := node.(type) {
+		case doc.Table:
+			there[x.ID] = true
+		case doc.Figure:
+			there[x.ID] = true
+		}
+	})
+	return doc.Mapper{Block: func(b doc.Block) doc.Block {
+		p, ok := b.(doc.Paragraph)
+		if !ok {
+			return b
+		}
+		var out []doc.Inline
+		for i := 0; i < len(p.Text); i++ {
+			ref, ok := p.Text[i].(doc.Ref)
+			if !ok || !ref.Optional || ref.Text != notShown || there[ref.ID] || len(out) == 0 || i+1 == len(p.Text) {
+				out = append(out, p.Text[i])
+				continue
+			}
+			before, _ := out[len(out)-1].(doc.Text)
+			after, _ := p.Text[i+1].(doc.Text)
+			switch {
+			case strings.HasSuffix(before.Text, " (") && strings.HasPrefix(after.Text, ")"):
+				before.Text, after.Text = strings.TrimSuffix(before.Text, " ("), strings.TrimPrefix(after.Text, ")")
+			case strings.HasSuffix(before.Text, "; "):
+				before.Text = strings.TrimSuffix(before.Text, "; ")
+			default:
+				out = append(out, p.Text[i])
+				continue
+			}
+			out[len(out)-1] = before
+			out = append(out, after)
+			i++
+		}
+		p.Text = out
+		return p
+	}}.Blocks(blocks)
 }

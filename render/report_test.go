@@ -537,7 +537,7 @@ func TestUnknownTemplate(t *testing.T) {
 		}
 	}
 	own := copied(t, trials(t)["demo"])
-	edit(t, own, trial.ProtocolFile, "\n[data]\n", "\n[report]\ntemplate = \"chapter\"\n\n[data]\n")
+	edit(t, own, trial.ProtocolFile, "\n[data]\n", "\n[report]\ntemplate = \"chapters\"\n\n[data]\n")
 	x, rs, _ = opened(t, own)
 	_, list, err := Report(x, rs, Options{})
 	if err != nil || len(list) != 1 || list[0].Pos != x.Protocol.Pos("report.template") || list[0].Pos.Line < 2 {

@@ -139,7 +139,7 @@ func Count(n int) string {
 // Unit joins a printed number and its unit with a thin space that does not break. UCUM
 // spellings are shown as the trade writes them.
 func Unit(number, unit string) string {
-	if unit == "" || number == Absent {
+	if unit == "" || unit == "1" || number == Absent { // 1: a number without a dimension
 		return number
 	}
 	if unit == "%" {
@@ -167,6 +167,10 @@ func UnitText(unit string) string {
 		return "m²"
 	case "m3":
 		return "m³"
+	case "mm2":
+		return "mm²"
+	case "mm3":
+		return "mm³"
 	case "cm2":
 		return "cm²"
 	case "cm3":

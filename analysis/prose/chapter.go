@@ -89,14 +89,31 @@ func said(s string) bool {
 // inner is a phrase within a sentence, with a small letter at its beginning.
 func inner(s string) string { return lowerFirst(phrase(s)) }
 
-// series joins phrases that may hold commas of their own.
+// series joins phrases that may hold commas or lists of their own.
 func series(items []string) string {
 	for _, s := range items {
-		if strings.ContainsAny(s, ",;") && len(items) > 1 {
+		if outside := parentheses(s); len(items) > 1 && (strings.ContainsAny(outside, ",;") || strings.Contains(outside, " and ")) {
 			return strings.Join(items[:len(items)-1], "; ") + "; and " + items[len(items)-1]
 		}
 	}
 	return And(items)
+}
+
+// parentheses drops what stands in parentheses.
+func parentheses(s string) string {
+	var b strings.Builder
+	depth := 0
+	for _, r := range s {
+		switch {
+		case r == '(':
+			depth++
+		case r == ')':
+			depth = max(depth-1, 0)
+		case depth == 0:
+			b.WriteRune(r)
+		}
+	}
+	return b.String()
 }
 
 // phrases makes phrases of texts.
@@ -207,6 +224,14 @@ func animalWord(t *trial.Trial) string {
 	return "animal"
 }
 
+// someAnimals counts the animals of a trial.
+func someAnimals(t *trial.Trial, n int) string {
+	if n == 1 {
+		return "one " + animalWord(t)
+	}
+	return small(n) + " " + speciesPlural(animalWord(t))
+}
+
 // ChapterAnimals tells of the animals: kind, number, source, health, and how they were
 // chosen.
 func ChapterAnimals(t *trial.Trial) []Passage {
@@ -259,7 +284,11 @@ func ChapterAnimals(t *trial.Trial) []Passage {
 		health := phrase(a.Health)
 		first, _, _ := strings.Cut(strings.ToLower(health), " ")
 		if slices.Contains([]string{"clinically", "healthy", "free", "vaccinated", "specific-pathogen-free"}, strings.TrimRight(first, ",")) {
-			s.add("They %s %s", d.were(), inner(health))
+			lead, rest, more := strings.Cut(health, ",")
+			if more {
+				lead += " (" + strings.TrimSpace(rest) + ")"
+			}
+			s.add("They %s %s", d.were(), inner(lead))
 		} else {
 			s.add("Health at the start: %s", health)
 		}
@@ -271,7 +300,7 @@ func ChapterAnimals(t *trial.Trial) []Passage {
 		s.add("Previous use: %s", use)
 	}
 	if a.Acclimatization != nil {
-		s.add("A period of %s to become used to the place %s the start", QuantityText(a.Acclimatization), d.of("preceded", "will precede"))
+		s.add("An acclimatization period of %s %s the start", QuantityText(a.Acclimatization), d.of("preceded", "will precede"))
 	}
 	s = append(s, eligible(t)...)
 	return s
@@ -281,14 +310,11 @@ func ChapterAnimals(t *trial.Trial) []Passage {
 func eligible(t *trial.Trial) []Passage {
 	var s paragraphOf
 	e := t.Protocol.Eligibility
-	in, out := phrases(e.Include), phrases(e.Exclude)
-	switch {
-	case len(in) > 0 && len(out) > 0:
-		s.add("The criteria for taking them in, set before the trial, were: %s; and for leaving them out: %s", strings.Join(in, "; "), strings.Join(out, "; "))
-	case len(in) > 0:
-		s.add("The criteria for taking them in, set before the trial, were: %s", strings.Join(in, "; "))
-	case len(out) > 0:
-		s.add("The criteria for leaving them out, set before the trial, were: %s", strings.Join(out, "; "))
+	if in := phrases(e.Include); len(in) > 0 {
+		s.add("%s, set before the trial: %s", plural(len(in), "Criterion of inclusion", "Criteria of inclusion"), strings.Join(in, "; "))
+	}
+	if out := phrases(e.Exclude); len(out) > 0 {
+		s.add("%s, set before the trial: %s", plural(len(out), "Criterion of exclusion", "Criteria of exclusion"), strings.Join(out, "; "))
 	}
 	return s
 }
@@ -306,7 +332,7 @@ func offered(what, how string, d tense) string {
 			return s
 		}
 	}
-	return fmt.Sprintf("the %s %s %s", what, d.was(), inner(how))
+	return fmt.Sprintf("the %s %s %s", what, d.of("consisted of", "will consist of"), inner(how))
 }
 
 // ChapterHousing tells how animals were kept.
@@ -346,20 +372,24 @@ func ChapterHousing(t *trial.Trial) []Passage {
 		}
 	}
 	if said(h.Bedding) {
-		s.add("Bedding %s %s", d.was(), inner(h.Bedding))
+		s.add("Bedding %s %s", d.of("consisted of", "will consist of"), inner(h.Bedding))
 	}
 	if said(h.Enrichment) {
-		s.add("The surroundings %s enriched by %s", d.were(), inner(h.Enrichment))
+		s.add("Enrichment %s %s", d.of("consisted of", "will consist of"), inner(h.Enrichment))
 	}
 	var given []string
 	if said(h.Feed) {
 		given = append(given, offered("feed", h.Feed, d))
 	}
 	if said(h.Water) {
-		given = append(given, offered("water", h.Water, d))
+		water := offered("water", h.Water, d)
+		if len(given) > 0 && strings.Contains(given[0], " offered ") {
+			water = strings.Replace(water, " "+d.was()+" offered ", " ", 1)
+		}
+		given = append(given, water)
 	}
 	if len(given) > 0 {
-		s.add("%s", strings.Join(given, ", and "))
+		s.add("%s", strings.Join(given, " and "))
 	}
 	return s
 }
@@ -377,6 +407,9 @@ func ChapterPlace(t *trial.Trial) []Passage {
 		line := "The trial " + d.of("was carried out", "will be carried out")
 		if where != "" {
 			line += " at " + definitePlace(where)
+			if strings.Contains(where, ",") && when != "" {
+				line += ","
+			}
 		}
 		if when != "" {
 			line += " " + when
@@ -392,6 +425,8 @@ func ChapterPlace(t *trial.Trial) []Passage {
 			} else {
 				s.add("%s lies at %s", name, at)
 			}
+		} else if name != "" && !strings.Contains(where, name) {
+			s.add("The site %s %s", d.was(), name)
 		}
 		var of []string
 		if said(x.Soil) {
@@ -541,7 +576,7 @@ func ChapterEthics(t *trial.Trial) []Passage {
 		if said(w.Monitoring.By) {
 			by = " by " + definite(w.Monitoring.By)
 		}
-		s.add("The animals %s looked at %s%s", d.were(), often, by)
+		s.add("The animals %s inspected %s%s", d.were(), often, by)
 	}
 	for _, x := range []protocol.Text{w.Rescue, w.Refinement, w.Euthanasia} {
 		if said(x.Body) && x.File == "" {
@@ -574,7 +609,7 @@ func definiteBody(s string) string {
 func ChapterDesign(t *trial.Trial) []Passage {
 	var s paragraphOf
 	p, d := t.Plan, told(t)
-	s.add("The design %s %s: %s", d.was(), designPhrase(p), unitChain(t))
+	s.add("The trial %s laid out as %s: %s", d.was(), designPhrase(p), unitChain(t))
 	for i := range p.Units {
 		u := &p.Units[i]
 		if u.Crosses != nil {
@@ -583,6 +618,16 @@ func ChapterDesign(t *trial.Trial) []Passage {
 				of = append(of, UnitName(&p.Units[c]))
 			}
 			s.add("Each combination of %s %s one %s, %s in all", And(of), d.was(), UnitName(u), num.Count(u.N))
+			for k := range p.Units {
+				if v := &p.Units[k]; v.Within == i {
+					lo, hi := perParent(p, k)
+					each := some(lo, UnitName(v))
+					if lo != hi {
+						each = small(lo) + " to " + some(hi, UnitName(v))
+					}
+					s.add("Each %s %s %s, %s in all", UnitName(u), d.of("held", "will hold"), each, num.Count(v.N))
+				}
+			}
 		}
 	}
 	if b := blockingText(p, d); b != "" {
@@ -614,15 +659,26 @@ func ChapterDesign(t *trial.Trial) []Passage {
 func designPhrase(p *layout.Plan) string {
 	name := p.Design.Name
 	switch {
-	case name == layout.CompletelyRandomized:
-	case strings.HasSuffix(name, "block") || strings.HasSuffix(name, "column"):
+	case name == layout.CompletelyRandomized || strings.HasSuffix(name, "block") || strings.HasSuffix(name, "column"):
 		name = article(name) + " design"
 	case strings.HasSuffix(name, "squares"):
-		name = "one of " + name
 	default:
 		name = article(name)
 	}
-	return strings.Join(append([]string{name}, p.Design.Parts...), ", ")
+	var of []string
+	for _, part := range p.Design.Parts {
+		switch {
+		case strings.Contains(part, "factorial") && len(of) == 0:
+			name = article(part) + " in " + name
+		case strings.Contains(part, " carried by ") || strings.HasPrefix(part, "with sampling of"): // a sentence of its own says it
+		default:
+			of = append(of, part)
+		}
+	}
+	if len(of) > 0 {
+		name += " (" + strings.Join(of, "; ") + ")"
+	}
+	return name
 }
 
 // unitChain counts the units from the largest to the smallest: "five blocks of four pens
@@ -639,11 +695,15 @@ func unitChain(t *trial.Trial) string {
 		}
 		return out
 	}
-	deepest, depth := -1, 0
+	var deepest []int
+	depth := 0
 	var describe func(u, level int, head string) string
 	describe = func(u, level int, head string) string {
 		if level > depth {
-			deepest, depth = u, level
+			deepest, depth = nil, level
+		}
+		if level == depth {
+			deepest = append(deepest, u)
 		}
 		s := head
 		inside := children(u)
@@ -671,17 +731,21 @@ func unitChain(t *trial.Trial) string {
 		roots = append(roots, describe(r, 0, some(p.Units[r].N, UnitName(&p.Units[r]))))
 	}
 	s := And(roots)
-	if depth > 0 && deepest >= 0 {
-		s += fmt.Sprintf(" (%s %s in all)", num.Count(p.Units[deepest].N), Plural(UnitName(&p.Units[deepest])))
+	if depth > 0 {
+		var total []string
+		for _, u := range deepest {
+			total = append(total, some(p.Units[u].N, UnitName(&p.Units[u])))
+		}
+		s += " (" + And(total) + " in all)"
 	}
 	for i := range p.Units {
 		lo, hi := span(p.Units[i].Animals)
 		if hi == 0 {
 			continue
 		}
-		n := some(lo, animalWord(t))
+		n := someAnimals(t, lo)
 		if lo != hi {
-			n = small(lo) + " to " + some(hi, animalWord(t))
+			n = small(lo) + " to " + someAnimals(t, hi)
 		}
 		s += fmt.Sprintf(", with %s in each %s", n, UnitName(&p.Units[i]))
 	}
@@ -690,13 +754,27 @@ func unitChain(t *trial.Trial) string {
 
 // blockingText says what blocks were made for.
 func blockingText(p *layout.Plan, d tense) string {
-	var parts []string
+	var units []int
 	for i := range p.Units {
-		if b := basis(p, i); said(b) {
-			parts = append(parts, fmt.Sprintf("%s %s formed by %s", Plural(UnitName(&p.Units[i])), d.were(), inner(b)))
+		if said(basis(p, i)) {
+			units = append(units, i)
 		}
 	}
-	return And(parts)
+	if len(units) == 1 && strings.Contains(UnitName(&p.Units[units[0]]), "block") {
+		b, by := inner(basis(p, units[0])), "by"
+		if first, _, _ := strings.Cut(b, " "); first == "neighbouring" || first == "adjacent" {
+			by = "of"
+		}
+		return fmt.Sprintf("%s %s formed %s %s", Plural(UnitName(&p.Units[units[0]])), d.were(), by, b)
+	}
+	var parts []string
+	for _, u := range units {
+		parts = append(parts, fmt.Sprintf("%s (%s)", inner(basis(p, u)), Plural(UnitName(&p.Units[u]))))
+	}
+	if len(parts) == 0 {
+		return ""
+	}
+	return "basis of blocking: " + series(parts)
 }
 
 // experimentalUnits says which unit received what.
@@ -751,6 +829,21 @@ func replicationText(p *layout.Plan, d tense) string {
 	lo, hi := span(a.Total)
 	if lo == hi {
 		return fmt.Sprintf("%s %s %s", each, d.of("had", "will have"), some(lo, name))
+	}
+	if len(a.Factors) == 1 {
+		// The control more often than the others is what the trade does.
+		f := &p.Factors[a.Factors[0]]
+		var control, rest []int
+		for c, n := range a.Total {
+			if slices.Contains(f.Control, a.Combinations[c][0]) {
+				control = append(control, n)
+			} else {
+				rest = append(rest, n)
+			}
+		}
+		if len(control) == 1 && len(rest) > 0 && slices.Min(rest) == slices.Max(rest) {
+			return fmt.Sprintf("The control %s %s and each other treatment %s", d.of("had", "will have"), some(control[0], name), small(rest[0]))
+		}
 	}
 	return fmt.Sprintf("Treatments %s %s to %s", d.of("had", "will have"), small(lo), some(hi, name))
 }
@@ -814,9 +907,9 @@ func ChapterRandomization(t *trial.Trial) []Passage {
 		}
 		switch {
 		case line != "" && len(open) > 0:
-			line += " and known " + And(open)
+			line += "; they " + d.were() + " open " + And(open)
 		case len(open) > 0:
-			line = fmt.Sprintf("Treatments %s known %s", d.were(), And(open))
+			line = fmt.Sprintf("Treatments %s open %s", d.were(), And(open))
 		}
 		if line != "" {
 			s.add("%s", line)
@@ -847,28 +940,45 @@ func drawText(t *trial.Trial, d tense) string {
 		if len(u.Receives) == 0 {
 			continue
 		}
-		part := fmt.Sprintf("%s to %s", factorNames(p, u.Receives), Plural(UnitName(u)))
+		what, verb := factorNames(p, u.Receives), d.be(len(u.Receives))
+		if what == "treatment" {
+			what, verb = "treatments", d.were()
+		}
+		a := p.Allocation(i)
+		how := " at random to " + Plural(UnitName(u))
 		switch {
 		case u.Crosses != nil:
-			part += " under the restriction of " + Plural(UnitName(&p.Units[u.Crosses[0]]))
+			how += " under the restriction of " + Plural(UnitName(&p.Units[u.Crosses[0]]))
 			for _, c := range u.Crosses[1:] {
-				part += " and " + Plural(UnitName(&p.Units[c]))
+				how += " and " + Plural(UnitName(&p.Units[c]))
 			}
+		case u.Within >= 0 && p.Units[u.Within].N > 1 && a != nil && !a.Complete && a.Checks == nil:
+			how = " at random to " + Plural(UnitName(u)) + ", by permuting an arrangement in which each " + UnitName(&p.Units[u.Within]) + " holds part of the treatments"
 		case u.Within >= 0 && p.Units[u.Within].N > 1:
-			part += " within each " + UnitName(&p.Units[u.Within])
+			how += " within each " + UnitName(&p.Units[u.Within])
+		}
+		part := what + strings.Replace(how, " at random", "", 1)
+		if len(parts) == 0 {
+			part = what + " " + verb + " allotted" + how
 		}
 		parts = append(parts, part)
 	}
-	s := fmt.Sprintf("%s %s allotted at random", And(parts), d.were())
-	if len(parts) == 1 {
-		name, rest, _ := strings.Cut(parts[0], " to ")
-		s = fmt.Sprintf("%s %s allotted at random to %s", name, d.be(1), rest)
+	s := strings.Join(parts, ", ")
+	if n := len(parts); n > 1 {
+		s = strings.Join(parts[:n-1], ", ") + ", and " + parts[n-1]
+	}
+	if len(parts) > 1 || strings.Contains(s, ", by permuting ") {
+		s += ","
 	}
 	if t.Allotment == nil || len(t.Allotment.Draws) == 0 {
-		return s + "; seed and draw will be recorded"
+		return strings.TrimSuffix(s, ",") + "; the draw and its seed will be recorded"
 	}
 	x := t.Allotment.Draws[len(t.Allotment.Draws)-1]
-	s += fmt.Sprintf(" by a recorded draw (seed text “%s”", x.Seed)
+	with := " by a recorded draw"
+	if strings.HasSuffix(s, ",") {
+		s, with = strings.TrimSuffix(s, ","), "; the draw is recorded"
+	}
+	s += fmt.Sprintf("%s (seed text “%s”", with, x.Seed)
 	if x.On != (protocol.Date{}) {
 		s += ", " + dayText(x.On)
 	}
@@ -919,7 +1029,7 @@ func ChapterSize(t *trial.Trial, rs *result.Results) []Passage {
 		given = append(given, "a standard deviation"+where+" of "+sd)
 	}
 	if x.Attrition != nil && *x.Attrition > 0 {
-		given = append(given, fmt.Sprintf("a loss of %s\u202f%% of units", num.Percent(100**x.Attrition)))
+		given = append(given, fmt.Sprintf("a loss of %s\u202f%% of units", num.Fixed(100**x.Attrition, places(100**x.Attrition))))
 	}
 	if len(given) > 0 {
 		given[0] = ", given " + given[0]
@@ -1061,8 +1171,19 @@ func levelsOf(f *layout.Factor) string {
 		control[c] = true
 	}
 	name := lowerFirst(FactorLabel(f))
-	if len(f.Levels) > 20 {
-		return fmt.Sprintf("%s levels of %s (%s to %s)", num.Count(len(f.Levels)), name, f.Levels[0], f.Levels[len(f.Levels)-1])
+	if len(f.Levels) > 12 {
+		ends := f.Levels[0] + " to " + f.Levels[len(f.Levels)-1]
+		var controls []string
+		for _, c := range f.Control {
+			controls = append(controls, f.Levels[c])
+		}
+		if len(controls) > 0 && len(controls) < 6 {
+			ends += "; " + plural(len(controls), "control ", "controls ") + And(controls)
+		}
+		if f.Values == nil && !strings.Contains(name, " ") {
+			return fmt.Sprintf("%s %s (%s)", num.Count(len(f.Levels)), Plural(name), ends)
+		}
+		return fmt.Sprintf("%s levels of %s (%s)", num.Count(len(f.Levels)), name, ends)
 	}
 	var levels []string
 	bare := true
@@ -1087,7 +1208,7 @@ func levelsOf(f *layout.Factor) string {
 		levels = append(levels, l)
 	}
 	count := small(len(f.Levels))
-	list := And(levels)
+	list := series(levels)
 	if bare {
 		return fmt.Sprintf("%s levels of %s (%s)", count, name, list)
 	}
@@ -1163,10 +1284,10 @@ func ChapterMeasurements(t *trial.Trial) []Passage {
 	for i := range p.Responses {
 		r := &p.Responses[i]
 		line := ResponseLabelText(r)
-		if r.Unit != "" {
-			line += ", " + num.UnitText(r.Unit)
-		}
 		var of []string
+		if r.Unit != "" && r.Unit != "1" {
+			of = append(of, num.UnitText(r.Unit))
+		}
 		for _, x := range []string{r.How, r.Instrument} {
 			if said(x) {
 				of = append(of, phrase(x))
@@ -1215,7 +1336,8 @@ func ChapterMeasurements(t *trial.Trial) []Passage {
 		}
 	}
 	if len(computed) > 0 && len(computed) <= maxDefined {
-		s.add("%s %s computed: %s", "Values", d.were(), strings.Join(computed, "; "))
+		computed[0] = strings.Replace(computed[0], " as ", " "+d.was()+" computed as ", 1)
+		s.add("%s", series(computed))
 	}
 	for i := range p.Covariates {
 		c := &p.Covariates[i]
@@ -1229,11 +1351,11 @@ func ChapterMeasurements(t *trial.Trial) []Passage {
 		name := lowerFirst(CovariateLabel(c))
 		line := fmt.Sprintf("%s %s measured as a covariate", name, d.was())
 		if c.Measured != (protocol.Date{}) {
-			line = fmt.Sprintf("%s %s measured on %s, as a covariate", name, d.was(), dayText(c.Measured))
+			line = fmt.Sprintf("%s %s measured on %s as a covariate", name, d.was(), dayText(c.Measured))
 		}
 		if mean, sd, n := covariateSpread(t, c.Name); n > 1 {
 			k := num.SEDecimals(sd)
-			line += fmt.Sprintf("; its mean was %s (SD %s, %s values)", num.Unit(num.Fixed(mean, k), c.Unit), num.Unit(num.Fixed(sd, k), c.Unit), num.Count(n))
+			line += fmt.Sprintf("; its mean was %s (SD %s, n = %s)", num.Unit(num.Fixed(mean, k), c.Unit), num.Unit(num.Fixed(sd, k), c.Unit), num.Count(n))
 		}
 		s.add("%s", line)
 	}
@@ -1243,7 +1365,7 @@ func ChapterMeasurements(t *trial.Trial) []Passage {
 			done = append(done, procedureText(x))
 		}
 		if len(done) > 0 {
-			s.add("Beside the treatments, these procedures %s carried out: %s", d.were(), strings.Join(done, "; "))
+			s.add("%s on the animals, beside the treatments: %s", plural(len(done), "Procedure", "Procedures"), strings.Join(done, "; "))
 		}
 	}
 	return s
@@ -1343,7 +1465,7 @@ func ChapterDepartures(t *trial.Trial) []Passage {
 	var s paragraphOf
 	p, d := t.Protocol, told(t)
 	if rules := phrases(p.Eligibility.ExclusionRules); len(rules) > 0 {
-		s.add("By rules set before the trial, values %s to be left out for: %s", d.of("were", "are"), strings.Join(rules, "; "))
+		s.add("%s of exclusion, set before the trial: %s", plural(len(rules), "Rule", "Rules"), strings.Join(rules, "; "))
 	}
 	for _, x := range p.Exclusions {
 		who := UnitNameText(x.Unit)
@@ -1415,7 +1537,15 @@ func ChapterStatements(t *trial.Trial) []Passage {
 	var s paragraphOf
 	x := t.Protocol.Trial
 	if r := phrase(x.Registration); r != "" && r != "…" {
-		s.add("Registration: %s", r)
+		if rest, none := strings.CutPrefix(strings.ToLower(r), "none"); none {
+			rest = strings.Trim(rest, ":;,. ")
+			if rest != "" {
+				rest = " (" + rest + ")"
+			}
+			s.add("The trial was not registered%s", rest)
+		} else {
+			s.add("Registration: %s", r)
+		}
 	}
 	if said(x.DataAccess) {
 		s.add("Access to the data: %s", inner(x.DataAccess))
@@ -1428,3 +1558,6 @@ func ChapterStatements(t *trial.Trial) []Passage {
 	}
 	return s
 }
+
+// Upper raises the first letter of a text, as at the head of a sentence.
+func Upper(s string) string { return upperFirst(s) }

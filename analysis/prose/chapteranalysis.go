@@ -100,6 +100,9 @@ func (c citations) cite(key string) string {
 	for _, s := range sources {
 		for _, k := range strings.Fields(s.keys) {
 			if strings.ReplaceAll(k, "_", " ") == key {
+				if c[s.text] {
+					return "" // once is enough
+				}
 				c[s.text] = true
 				return " (" + s.short + ")"
 			}
@@ -145,8 +148,10 @@ func chapterAnalysis(t *trial.Trial, rs *result.Results, planned bool) ([]Passag
 	}
 	var s paragraphOf
 	p := t.Plan
+	var before group
 	for _, g := range groups(all, func(r *result.Response) string { return modelKey(t, r) }) {
-		s.add("%s", modelSentence(t, g, all, cited))
+		s.add("%s", modelSentence(t, g, before, all, cited))
+		before = g
 		for _, x := range modelNotes(t, g, all) {
 			s.add("%s", x)
 		}
@@ -162,7 +167,7 @@ func chapterAnalysis(t *trial.Trial, rs *result.Results, planned bool) ([]Passag
 		adjusted = adjusted || r.Model.Method == "least squares" || len(r.Covariates) > 0
 	}
 	if adjusted {
-		s.add("Means of these analyses are adjusted means with equal weights%s", cited.cite("adjusted"))
+		s.add("Means from least squares are adjusted means with equal weights%s", cited.cite("adjusted"))
 	}
 	if satterthwaite {
 		s.add("Where a mean draws on the variation of several units, its degrees of freedom were approximated%s", cited.cite("satterthwaite"))
@@ -174,7 +179,7 @@ func chapterAnalysis(t *trial.Trial, rs *result.Results, planned bool) ([]Passag
 		if len(g) < len(all) {
 			who = " for " + g.names(all)
 		}
-		s.add("The level of significance%s was %s, and intervals are %s confidence limits", who, levelText(Alpha(p, g[0])), confidence(Alpha(p, g[0])))
+		s.add("The level of significance%s was %s; limits are those of %s confidence intervals", who, levelText(Alpha(p, g[0])), confidence(Alpha(p, g[0])))
 	}
 	if x := t.Protocol.Analysis.Tendency; x > 0 {
 		s.add("P up to %s was called a tendency, as stated beforehand", num.Fixed(x, 2))
@@ -232,17 +237,21 @@ func overText(t *trial.Trial, r *result.Response, df bool) string {
 		}
 	}
 	var parts []string
-	for _, x := range rows {
-		part := And(x.terms) + " over " + x.over
-		if len(rows) == 1 {
-			part = "over " + x.over
+	for k, x := range rows {
+		lead := plural(len(x.terms), "the effect of ", "effects of ")
+		part := lead + And(x.terms) + plural(len(x.terms), " was", " were") + " tested over " + x.over
+		if k > 0 {
+			part = plural(len(x.terms), "that of ", "those of ") + And(x.terms) + " over " + x.over
 		}
 		if df && x.df != "" {
 			part += " (" + x.df + " df)"
 		}
 		parts = append(parts, part)
 	}
-	return strings.Join(parts, ", ")
+	if n := len(parts); n > 1 {
+		return strings.Join(parts[:n-1], ", ") + ", and " + parts[n-1]
+	}
+	return strings.Join(parts, "")
 }
 
 // partOf tells whether a source is a part of a listed treatment and not a term.
@@ -255,8 +264,9 @@ func partOf(p *layout.Plan, source string) bool {
 	return true
 }
 
-// modelSentence says by which model a group was analysed.
-func modelSentence(t *trial.Trial, g, all group, cited citations) string {
+// modelSentence says by which model a group was analysed; before is the group told before
+// it, nil for the first.
+func modelSentence(t *trial.Trial, g, before, all group, cited citations) string {
 	r := g[0]
 	over := overText(t, r, true)
 	for _, x := range g[1:] {
@@ -265,17 +275,29 @@ func modelSentence(t *trial.Trial, g, all group, cited citations) string {
 			break
 		}
 	}
-	what := "effects were tested " + over
+	what := "; " + over
 	if over == "" {
-		what = "no test was possible"
+		what = "; no test was possible"
 	}
+	lead := fmt.Sprintf("%s %s analysed by ", g.names(all), g.be())
 	if r.Model.Method == "strata" {
-		return fmt.Sprintf("%s %s analysed by analysis of variance%s; %s", g.names(all), g.be(), cited.cite("strata"), what)
+		return lead + "analysis of variance" + cited.cite("strata") + what
 	}
-	var units, terms []string
+	lost, of := false, ""
+	for _, x := range g {
+		for _, n := range x.Notes {
+			lost = lost || n.Code == "units-lost"
+		}
+	}
+	if lost && len(g) == 1 {
+		of = fmt.Sprintf(", of which %s of %s values were available,", num.Count(r.N), num.Count(r.N+r.Missing+r.Excluded))
+		lead = fmt.Sprintf("%s%s %s analysed by ", g.names(all), of, g.be())
+	}
+	var units, terms, covariates []string
 	for _, f := range r.Model.Fixed {
 		switch {
 		case isCovariate(r, f):
+			covariates = append(covariates, TermText(t.Plan, f))
 		case isUnit(t, f):
 			units = append(units, Plural(TermText(t.Plan, f)))
 		case t.Protocol.TimeTrend != nil && f == t.Protocol.TimeTrend.On+":"+t.Protocol.TimeTrend.Along:
@@ -285,17 +307,29 @@ func modelSentence(t *trial.Trial, g, all group, cited citations) string {
 			terms = append(terms, TermText(t.Plan, f))
 		}
 	}
-	if len(g) > 1 || len(r.Covariates) == 0 {
-		for _, c := range r.Covariates {
-			units = append(units, TermText(t.Plan, c.Name))
-		}
-	} else {
-		for _, c := range r.Covariates {
-			units = append(units, TermText(t.Plan, c.Name))
+	with := ""
+	if len(covariates) > 0 {
+		with = fmt.Sprintf(", with %s as %s (one slope for all treatments, the equality of slopes being tested)", And(covariates), plural(len(covariates), "a covariate", "covariates"))
+	}
+	if before != nil && before[0].Model.Method == r.Model.Method && withoutCovariates(before[0]) == withoutCovariates(r) {
+		return lead + "least squares likewise" + with + what
+	}
+	why := ""
+	if lost {
+		why = ", since the layout was no longer balanced"
+	}
+	return lead + "least squares" + cited.cite("least squares") + why + ", with " + And(append(units, terms...)) + " in the model" + strings.Replace(with, ", with", " and", 1) + what
+}
+
+// withoutCovariates is the model of a response but for its covariates.
+func withoutCovariates(r *result.Response) string {
+	var out []string
+	for _, f := range r.Model.Fixed {
+		if !isCovariate(r, f) {
+			out = append(out, f)
 		}
 	}
-	lead := fmt.Sprintf("%s %s analysed by least squares%s with %s in the model", g.names(all), g.be(), cited.cite("least squares"), And(append(units, terms...)))
-	return lead + "; " + what
+	return strings.Join(out, "+")
 }
 
 // modelNotes are the sentences on what is particular to the analysis of a group.
@@ -307,12 +341,10 @@ func modelNotes(t *trial.Trial, g, all group) []string {
 			var text string
 			switch n.Code {
 			case "units-lost":
-				u := ErrorUnit(t.Plan, r)
-				if u < 0 || r.Missing+r.Excluded == 0 {
-					text = past.Replace(n.Text)
-					break
+				if len(g) == 1 {
+					continue // the sentence of the model says it
 				}
-				text = fmt.Sprintf("Of %s %s of %s values %s there, so that the layout was no longer balanced.", responseName(r), num.Count(r.N), num.Count(r.N+r.Missing+r.Excluded), plural(r.N, "was", "were"))
+				text = fmt.Sprintf("Of %s %s of %s values %s available.", responseName(r), num.Count(r.N), num.Count(r.N+r.Missing+r.Excluded), plural(r.N, "was", "were"))
 			case "averaged", "not-balanced", "intra-block", "empty-cells", "covariate-aliased", "term-lost", "within-variance":
 				text = past.Replace(n.Text)
 			default:
@@ -322,13 +354,6 @@ func modelNotes(t *trial.Trial, g, all group) []string {
 				out = append(out, text)
 			}
 		}
-	}
-	if r := g[0]; len(r.Covariates) > 0 {
-		var names []string
-		for _, c := range r.Covariates {
-			names = append(names, TermText(t.Plan, c.Name))
-		}
-		out = append(out, fmt.Sprintf("Means of %s were adjusted by covariance to the mean of %s, with one slope for all treatments, the equality of slopes being tested", g.names(all), And(names)))
 	}
 	switch g[0].Model.Hypothesis {
 	case "marginal":
@@ -376,7 +401,7 @@ func contrastSentences(t *trial.Trial, all group) []Passage {
 		if len(factors) > 0 {
 			line := fmt.Sprintf("The response%s to %s was described by %s %s on the actual levels", of, And(factors), And(orders), plural(len(orders), "trend", "trends"))
 			if lack {
-				line += ", what they leave over being tested as lack of fit"
+				line += ", with a test of lack of fit"
 			}
 			if interactions {
 				line += "; the interaction was divided accordingly"
@@ -402,7 +427,7 @@ func comparisonSentences(t *trial.Trial, all group, cited citations) []Passage {
 			slices_ = slices_ || len(c.At) > 0
 		}
 		for _, m := range r.Means {
-			letters = letters || m.Letters != nil
+			letters = letters || m.Letters != nil && Lettered(r, m.Term)
 		}
 	}
 	gs := groups(all, comparisonMethod)
@@ -426,7 +451,7 @@ func comparisonSentences(t *trial.Trial, all group, cited citations) []Passage {
 		s.add("Means of combinations were compared within each level of the other factors")
 	}
 	if letters {
-		s.add("Letters were put to means%s", cited.cite("letters"))
+		s.add("Letters were assigned to means by an algorithm%s", cited.cite("letters"))
 	}
 	return s
 }
@@ -443,7 +468,7 @@ func checkSentences(t *trial.Trial, all group, cited citations) []Passage {
 	var checks []string
 	for _, x := range []struct{ name, text string }{
 		{name: "shapiro-wilk", text: "normality"}, {name: "brown-forsythe", text: "equal spread of treatments"}, {name: "bartlett", text: "equal variance of treatments"},
-		{name: "non-additivity", text: "additivity of blocks and treatments"}, {name: "outlier", text: "single outlying units"},
+		{name: "non-additivity", text: "additivity of blocks and treatments"}, {name: "spread on mean", text: "a change of spread with the mean"}, {name: "outlier", text: "single outlying units"},
 	} {
 		if seen[x.name] {
 			checks = append(checks, x.text+cited.cite(x.name))
@@ -453,7 +478,7 @@ func checkSentences(t *trial.Trial, all group, cited citations) []Passage {
 		s.add("Residuals were looked at in pictures and tested for %s", And(checks))
 	}
 	if a := t.Protocol.Analysis.Assumptions; said(a) {
-		s.add("What to do if assumptions fail was laid down beforehand: %s", phrase(a))
+		s.add("What to do if assumptions fail was laid down beforehand: %s", inner(a))
 	}
 	return s
 }

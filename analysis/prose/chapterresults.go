@@ -9,6 +9,7 @@ import (
 	"penwright/analysis/num"
 	"penwright/analysis/result"
 	"penwright/analysis/trial"
+	"penwright/protocol"
 	"penwright/protocol/allot"
 	"penwright/protocol/layout"
 )
@@ -20,6 +21,11 @@ func TableID(term string, planned bool) string {
 		id += "-unplanned"
 	}
 	return id
+}
+
+// FigureID is the identifier of the figure of the means of a term.
+func FigureID(response, term string) string {
+	return "figure-means-" + response + "-" + strings.ReplaceAll(term, ":", "-")
 }
 
 // ChapterUnits says how many units each analysis has, and what became of animals and
@@ -145,7 +151,12 @@ func lossText(t *trial.Trial) string {
 		if k.kind != "death" {
 			verb = plural(total, "was ", "were ") + k.verb
 		}
-		parts = append(parts, fmt.Sprintf("%s %s: %s", some(total, animalWord(t)), verb, series(of)))
+		if len(of) == 1 {
+			of[0] = strings.TrimPrefix(of[0], small(total)+" ")
+			parts = append(parts, fmt.Sprintf("%s %s, %s", someAnimals(t, total), verb, of[0]))
+			continue
+		}
+		parts = append(parts, fmt.Sprintf("%s %s: %s", someAnimals(t, total), verb, series(of)))
 	}
 	return strings.Join(parts, "; ")
 }
@@ -177,20 +188,24 @@ func ChapterResult(t *trial.Trial, r *result.Response) []Passage {
 		s.add("%s could not be tested", responseName(r))
 	}
 	stands := standing(p, r)
-	for i, x := range tests {
+	for _, x := range tests {
 		name := TermText(p, x.Source)
 		var line string
 		switch {
 		case strings.Contains(x.Source, ":"):
-			line = fmt.Sprintf("the interaction of %s had %s", strings.ReplaceAll(name, " × ", " and "), testText(x))
-		case i == 0:
-			line = fmt.Sprintf("for %s, the test of %s gave %s", responseName(r), name, testText(x))
+			line = fmt.Sprintf("the interaction of %s had %s", FactorsText(p, x.Source), testText(x))
+		case strings.Contains(x.Source, " v. "):
+			line = fmt.Sprintf("the comparison of %s gave %s", name, testText(x))
 		default:
 			line = fmt.Sprintf("the test of %s gave %s", name, testText(x))
 		}
 		s.see(TableID(ownTerm(p, r, x.Source), Planned(r)), "%s", line)
-		for _, e := range effects(p, r, x.Source, stands) {
-			s.add("%s", e)
+		for k, e := range effects(p, r, x.Source, stands) {
+			see := ""
+			if k == 0 && r.Role == "primary" && Planned(r) && slices.Contains(Shown(p, r), x.Source) {
+				see = FigureID(r.Name, x.Source)
+			}
+			s.see(see, "%s", e)
 		}
 	}
 	for _, c := range foremost(r) {
@@ -200,7 +215,7 @@ func ChapterResult(t *trial.Trial, r *result.Response) []Passage {
 		s.add("%s", contrastText(p, r, c))
 	}
 	if len(stands) > 0 {
-		s.see(TableID(stands[0], Planned(r)), "since the effects of %s depend on each other, the means of their combinations come before those of each", factorsText(p, stands[0]))
+		s.see(TableID(stands[0], Planned(r)), "since the effects of %s depend on each other, the means of their combinations come before those of each", FactorsText(p, stands[0]))
 	}
 	return s
 }
@@ -218,7 +233,8 @@ func ownTerm(p *layout.Plan, r *result.Response, source string) string {
 	return source
 }
 
-func factorsText(p *layout.Plan, term string) string {
+// FactorsText lists the factors of a term: "tillage, clover and nitrogen".
+func FactorsText(p *layout.Plan, term string) string {
 	var names []string
 	for _, f := range strings.Split(term, ":") {
 		names = append(names, TermText(p, f))
@@ -256,7 +272,7 @@ func effects(p *layout.Plan, r *result.Response, term string, stands []string) [
 		d := num.SEDecimals(float64(c.SE))
 		lo, hi := float64(c.Lower), float64(c.Upper)
 		lim := fmt.Sprintf("%s limits %s to %s; P %s", confidence(Alpha(p, r)), num.Fixed(lo, d), num.Fixed(hi, d), num.PStatement(float64(c.P)))
-		each := "for each " + factorUnit(p, factor) + " of " + TermText(p, factor)
+		each := "for each " + singularUnit(factorUnit(p, factor)) + " of " + TermText(p, factor)
 		switch trend {
 		case "linear":
 			switch estimate := float64(c.Estimate); {
@@ -269,12 +285,21 @@ func effects(p *layout.Plan, r *result.Response, term string, stands []string) [
 				out = append(out, fmt.Sprintf("the linear trend was %s %s (%s)", num.Unit(num.Fixed(estimate, d), r.Unit), each, lim))
 			}
 		default:
+			if c.P.Known() && float64(c.P) >= Alpha(p, r) {
+				out = append(out, fmt.Sprintf("the %s trend had P %s", trend, num.PStatement(float64(c.P))))
+				continue
+			}
 			out = append(out, fmt.Sprintf("the %s coefficient was %s (%s)", trend, num.Fixed(float64(c.Estimate), d), lim))
 		}
 	}
 	for _, c := range foremost(r) {
 		if c.Name == term+": lack of fit" && c.P.Known() && len(out) > 0 {
-			out = append(out, fmt.Sprintf("what these trends leave over had F(%s, %s) = %s, P %s", num.DF(float64(c.NumeratorDF)), num.DF(float64(c.DF)), num.Statistic(float64(c.F)), num.PStatement(float64(c.P))))
+			last := len(out) - 1
+			if rest, ok := strings.CutSuffix(out[last], " trend had P "+num.PStatement(lastTrendP(r, term))); ok && !strings.Contains(rest, "(") {
+				out[last] += fmt.Sprintf(" and lack of fit P %s", num.PStatement(float64(c.P)))
+				continue
+			}
+			out = append(out, fmt.Sprintf("lack of fit had F(%s, %s) = %s, P %s", num.DF(float64(c.NumeratorDF)), num.DF(float64(c.DF)), num.Statistic(float64(c.F)), num.PStatement(float64(c.P))))
 		}
 	}
 	if strings.Contains(term, ":") && !slices.Contains(stands, term) {
@@ -286,6 +311,26 @@ func effects(p *layout.Plan, r *result.Response, term string, stands []string) [
 	return append(out, differenceTexts(p, r, term)...)
 }
 
+// lastTrendP is the P of the highest trend of a term.
+func lastTrendP(r *result.Response, term string) float64 {
+	p := math.NaN()
+	for _, c := range foremost(r) {
+		if factor, trend, ok := strings.Cut(c.Name, ": "); ok && factor == term && trend != "lack of fit" {
+			p = float64(c.P)
+		}
+	}
+	return p
+}
+
+// singularUnit is a unit of which there is one: seed/m² rather than seeds/m².
+func singularUnit(unit string) string {
+	what, per, ok := strings.Cut(unit, "/")
+	if ok && len(what) > 3 && strings.HasSuffix(what, "s") {
+		return strings.TrimSuffix(what, "s") + "/" + per
+	}
+	return unit
+}
+
 // differenceTexts tells the differences between the means of a term: each of them where they are
 // few, the widest where they are many.
 func differenceTexts(p *layout.Plan, r *result.Response, term string) []string {
@@ -293,6 +338,14 @@ func differenceTexts(p *layout.Plan, r *result.Response, term string) []string {
 	for _, c := range r.Comparisons {
 		if c.Term == term && c.Difference.Known() {
 			cs = append(cs, c)
+		}
+	}
+	if len(cs) > 0 && cs[0].Method != "dunnett" {
+		for i, c := range cs { // the larger mean first
+			if c.Difference < 0 {
+				c.A, c.B, c.Difference, c.Lower, c.Upper = c.B, c.A, -c.Difference, -c.Upper, -c.Lower
+				cs[i] = c
+			}
 		}
 	}
 	var out []string
@@ -304,8 +357,11 @@ func differenceTexts(p *layout.Plan, r *result.Response, term string) []string {
 		}
 		return out
 	}
+	d := 0
+	for _, c := range cs {
+		d = max(d, num.SEDecimals(float64(c.SE)))
+	}
 	show := func(c result.Comparison) string {
-		d := num.SEDecimals(float64(c.SE))
 		diff, low, high := float64(c.Difference), float64(c.Lower), float64(c.Upper)
 		lim := ""
 		if c.Lower.Known() && c.Upper.Known() {
@@ -313,16 +369,7 @@ func differenceTexts(p *layout.Plan, r *result.Response, term string) []string {
 		}
 		return fmt.Sprintf("%s (%sP %s)", num.Unit(num.Fixed(diff, d), r.Unit), lim, num.PStatement(float64(c.PAdjusted)))
 	}
-	pair := func(c result.Comparison) string {
-		s := pairLevel(p, term, c.A) + " − " + pairLevel(p, term, c.B)
-		if strings.Contains(term, ":") {
-			s = PairText(c.A, c.B)
-		}
-		if len(c.At) > 0 && !strings.Contains(term, ":") {
-			s += " at " + LevelsText(p, c.At)
-		}
-		return s
-	}
+	pair := func(c result.Comparison) string { return pairText(p, term, c) }
 	switch {
 	case len(cs) == 1:
 		out = append(out, fmt.Sprintf("the difference %s was %s", pair(cs[0]), show(cs[0])))
@@ -331,7 +378,7 @@ func differenceTexts(p *layout.Plan, r *result.Response, term string) []string {
 		for _, c := range cs {
 			parts = append(parts, fmt.Sprintf("%s for %s", show(c), pairLevel(p, term, c.A)))
 		}
-		out = append(out, fmt.Sprintf("differences from %s were %s", pairLevel(p, term, cs[0].B), series(parts)))
+		out = append(out, fmt.Sprintf("differences from the control (%s) were %s", pairLevel(p, term, cs[0].B), series(parts)))
 	default:
 		best := cs[0]
 		for _, c := range cs[1:] {
@@ -348,8 +395,29 @@ func differenceTexts(p *layout.Plan, r *result.Response, term string) []string {
 	return out
 }
 
+// pairText names the difference of two means, with the slice it is taken in.
+func pairText(p *layout.Plan, term string, c result.Comparison) string {
+	var free []string
+	for _, f := range strings.Split(term, ":") {
+		if c.At.Of(f) == "" {
+			free = append(free, f)
+		}
+	}
+	var s string
+	if len(free) == 1 {
+		s = LevelText(p, free[0], c.A) + " − " + LevelText(p, free[0], c.B)
+	} else {
+		s = PairText(c.A, c.B)
+	}
+	if len(c.At) > 0 {
+		s += " within " + LevelsText(p, c.At)
+	}
+	return s
+}
+
 // contrastText tells a planned contrast.
 func contrastText(p *layout.Plan, r *result.Response, c result.Contrast) string {
+	c = Scaled(p, r, c)
 	d := num.SEDecimals(float64(c.SE))
 	lim := ""
 	if c.Lower.Known() {
@@ -384,7 +452,7 @@ func ChapterOthers(t *trial.Trial, rs *result.Results) []Passage {
 		name := TermText(p, source)
 		of := "the test of " + name
 		if strings.Contains(source, ":") {
-			of = "the interaction of " + factorsText(p, source)
+			of = "the interaction of " + FactorsText(p, source)
 		}
 		told := 0
 		for _, r := range all {
@@ -431,17 +499,31 @@ func test(r *result.Response, source string) *result.Test {
 	return nil
 }
 
-// ChapterChecks names what the checks of the models found.
+// ChapterChecks names the tests of residuals that gave a P below 0.05.
 func ChapterChecks(rs *result.Results, planned bool) []Passage {
 	var s paragraphOf
-	for _, r := range analysedResponses(rs, planned) {
+	var found []string
+	all := analysedResponses(rs, planned)
+	for _, r := range all {
+		var of []string
 		for _, d := range r.Diagnostics {
-			if d.P.Known() && float64(d.P) < 0.05 {
-				s.add("%s: %s (P %s)", responseName(r), lowerFirst(strings.TrimSuffix(phrase(d.Text), ".")), num.PStatement(float64(d.P)))
+			if !d.P.Known() || float64(d.P) >= 0.05 {
+				continue
 			}
+			name := lowerFirst(DiagnosticLabel(d.Name))
+			if k := strings.Index(name, " ("); k > 0 {
+				name = name[:k]
+			}
+			of = append(of, fmt.Sprintf("%s (P %s)", name, num.PStatement(float64(d.P))))
+		}
+		if len(of) > 0 {
+			found = append(found, responseName(r)+", "+And(of))
 		}
 	}
-	if len(s) == 0 && len(analysedResponses(rs, planned)) > 0 {
+	switch {
+	case len(found) > 0:
+		s.add("Tests of residuals with P below 0.05: %s", strings.Join(found, "; "))
+	case len(all) > 0:
 		s.add("No test of residuals had P below 0.05")
 	}
 	return s
@@ -473,6 +555,9 @@ func MeansNote(t *trial.Trial, g []*result.Response, term string) string {
 		if p.Terms[i].Name == term {
 			unit = p.Terms[i].Unit
 		}
+	}
+	if unit < 0 {
+		unit = allot.RowUnit(p) // a part of listed treatments
 	}
 	for _, r := range g {
 		if len(r.Covariates) > 0 || r.Model.Method == "least squares" {
@@ -506,11 +591,18 @@ func MeansNote(t *trial.Trial, g []*result.Response, term string) string {
 		if lo == hi {
 			s += " of " + some(lo, name)
 		} else {
-			s += fmt.Sprintf(" of %s to %s", small(lo), some(hi, name))
+			s += fmt.Sprintf(" of %s %s %s", small(lo), plural(hi-lo, "or", "to"), some(hi, name))
 		}
 		if unit >= 0 {
 			if a, b := span(p.Units[unit].Animals); a == b && a > 1 {
-				s += fmt.Sprintf(" of %s", some(a, animalWord(t)))
+				s += fmt.Sprintf(" of %s", someAnimals(t, a))
+			}
+			for i := range p.Units {
+				if u := &p.Units[i]; u.Role == layout.Sampling && u.Within == unit {
+					if a, b := perParent(p, i); a == b && a > 1 {
+						s += " of " + some(a, UnitName(u))
+					}
+				}
 			}
 		}
 	}
@@ -528,8 +620,11 @@ func ChapterNotes(t *trial.Trial, g []*result.Response, term string) []string {
 			if n.Term != "" && n.Term != term {
 				continue
 			}
-			if slices.Contains([]string{"averaged", "units-lost", "not-balanced", "intra-block", "empty-cells", "covariate-aliased", "term-lost", "within-variance", "no-own-line", "sed-kinds", "leverage-one"}, n.Code) {
+			if slices.Contains([]string{"averaged", "units-lost", "not-balanced", "intra-block", "empty-cells", "covariate-aliased", "term-lost", "within-variance", "no-own-line", "sed-kinds", "leverage-one", "no-control"}, n.Code) {
 				continue
+			}
+			if n.Code == "letters-withheld" && strings.Contains(n.Text, "graded") {
+				continue // the table has their trends
 			}
 			if by[n.Text] == nil {
 				out = append(out, n.Text)
@@ -559,7 +654,7 @@ func LettersNote(p *layout.Plan, g []*result.Response, term, along string) strin
 			}
 		}
 	}
-	if len(of) == 0 {
+	if len(of) == 0 || !Lettered(of[0], term) {
 		return ""
 	}
 	for _, c := range of[0].Comparisons {
@@ -604,4 +699,41 @@ func Shown(p *layout.Plan, r *result.Response) []string {
 		}
 	}
 	return out
+}
+
+// Scaled is a contrast of means as a difference: divided by the sum of its positive weights,
+// so that the mean of some levels is compared with that of others.
+func Scaled(p *layout.Plan, r *result.Response, c result.Contrast) result.Contrast {
+	var all []protocol.Contrast
+	all = append(all, p.Protocol.Analysis.Contrasts...)
+	if x := p.Protocol.Response(r.Name); x != nil {
+		all = append(all, x.Contrasts...)
+	}
+	for _, x := range all {
+		if x.Name != c.Name {
+			continue
+		}
+		sum := 0.0
+		for _, w := range x.Weights {
+			sum += max(w.Value, 0)
+		}
+		if sum > 0 {
+			k := result.Number(sum)
+			c.Estimate, c.SE, c.Lower, c.Upper = c.Estimate/k, c.SE/k, c.Lower/k, c.Upper/k
+		}
+		break
+	}
+	return c
+}
+
+// Lettered tells whether letters say something of the means of a term: of two means the
+// P says it all.
+func Lettered(r *result.Response, term string) bool {
+	n := 0
+	for _, m := range r.Means {
+		if m.Term == term {
+			n++
+		}
+	}
+	return n > 2
 }

@@ -60,7 +60,7 @@ func Methods(t *trial.Trial, r *result.Response) string {
 		s = append(s, fmt.Sprintf("Means were adjusted by covariance to the mean of %s, with one slope for all treatments; equality of slopes was tested.", And(names)))
 	}
 	trend, planned := false, false
-	for _, c := range r.Contrasts {
+	for _, c := range foremost(r) {
 		if strings.Contains(c.Name, ": linear") {
 			trend = true
 		} else if !strings.Contains(c.Name, ": ") {
@@ -97,6 +97,27 @@ func Methods(t *trial.Trial, r *result.Response) string {
 		s = append(s, "Assumptions were looked at in residual pictures and by tests of "+And(checks)+".")
 	}
 	return strings.Join(s, " ")
+}
+
+// AddedContrasts names the contrasts of planned responses that were not in the sealed plan.
+func AddedContrasts(t *trial.Trial, rs *result.Results) []string {
+	var out []string
+	for i := range rs.Responses {
+		r := &rs.Responses[i]
+		if !Planned(r) {
+			continue
+		}
+		var names []string
+		for _, c := range r.Contrasts {
+			if !c.Planned {
+				names = append(names, "“"+TermText(t.Plan, c.Name)+"”")
+			}
+		}
+		if len(names) > 0 {
+			out = append(out, fmt.Sprintf("For %s, %s %s tested on the means, though not in the sealed plan.", responseName(r), And(names), plural(len(names), "was", "were")))
+		}
+	}
+	return out
 }
 
 func tendency(p *protocol.Protocol) string {

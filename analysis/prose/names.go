@@ -5,6 +5,7 @@ package prose
 import (
 	"slices"
 	"strings"
+	"unicode"
 
 	"penwright/protocol"
 	"penwright/protocol/layout"
@@ -70,10 +71,11 @@ func lowerFirst(s string) string {
 	return string(r)
 }
 
-// upperFirst raises the first letter, as at the head of a sentence.
+// upperFirst raises the first letter, as at the head of a sentence, but not that of a
+// sign such as pH.
 func upperFirst(s string) string {
 	r := []rune(s)
-	if len(r) == 0 {
+	if len(r) == 0 || len(r) > 1 && unicode.IsLower(r[0]) && unicode.IsUpper(r[1]) {
 		return s
 	}
 	r[0] = []rune(strings.ToUpper(string(r[0])))[0]

@@ -2,6 +2,7 @@ package prose
 
 import (
 	"fmt"
+	"math"
 	"strings"
 
 	"penwright/analysis/num"
@@ -153,8 +154,8 @@ func SEDKinds(p *layout.Plan, kinds []SEDKind) string {
 	for i, k := range kinds {
 		d = max(d, num.SEDecimals(k.SED))
 		for _, l := range kinds[:i] {
-			// Kinds that differ are not printed alike.
-			for d < 8 && num.Fixed(k.SED, d) == num.Fixed(l.SED, d) {
+			// Kinds that differ are not printed alike, if they can be told apart at a glance.
+			for d < num.SEDecimals(k.SED)+2 && math.Abs(k.SED-l.SED) > 0.005*k.SED && num.Fixed(k.SED, d) == num.Fixed(l.SED, d) {
 				d++
 			}
 		}

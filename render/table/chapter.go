@@ -152,7 +152,7 @@ func (c *chapterTable) value(r *result.Response, levels result.Levels, d int) do
 		return cell("–")
 	}
 	out := text(num.Fixed(float64(m.Mean), d))
-	if m.Letters != nil && *m.Letters != "" {
+	if m.Letters != nil && *m.Letters != "" && prose.Lettered(r, c.term) {
 		out = append(out, doc.Sup{Text: text(*m.Letters)})
 	}
 	return doc.Cell{Text: out}
@@ -284,7 +284,7 @@ func (c *chapterTable) caption(rs []*result.Response) []doc.Inline {
 	if len(rs) == 1 {
 		of = " of " + prose.ResponseText(rs[0])
 	}
-	return text("Means" + of + " by " + strings.ReplaceAll(prose.TermText(c.plan, c.term), " × ", " and "))
+	return text("Means" + of + " by " + prose.FactorsText(c.plan, c.term))
 }
 
 // notes below the table; along is what the letters compare: a row or a column.
@@ -324,8 +324,8 @@ func rowLabel(r *result.Response) string {
 	if s == "" {
 		s = strings.ReplaceAll(r.Name, "_", " ")
 	}
-	s = upper(s)
-	if r.Unit != "" {
+	s = prose.Upper(s)
+	if r.Unit != "" && r.Unit != "1" {
 		s += ", " + num.UnitText(r.Unit)
 	}
 	return s
@@ -478,7 +478,7 @@ func ChapterSpread(t *trial.Trial, rs []*result.Response, decimals func(name str
 	}
 	var sets []set
 	for _, r := range rs {
-		if len(r.Summary) == 0 {
+		if !slices.ContainsFunc(r.Summary, func(s result.Summary) bool { return s.SD.Known() }) {
 			continue
 		}
 		var cells []result.Levels
@@ -620,7 +620,12 @@ func (c *chapterTable) spreads(rs []*result.Response, decimals func(name string)
 			d = append(d, places(r))
 		}
 		out.Head = head(h...)
+		alone := 0
 		for i, l := range c.cells {
+			if len(l) == 1 && !slices.ContainsFunc(rs, func(r *result.Response) bool { s := at(r, l); return s != nil && s.SD.Known() }) {
+				alone++ // nothing is known of its spread, and the means have a table
+				continue
+			}
 			var row []doc.Cell
 			for k, x := range l {
 				if i > 0 && k < len(l)-1 && samePrefix(c.cells[i-1], l, k+1) {
@@ -633,6 +638,9 @@ func (c *chapterTable) spreads(rs []*result.Response, decimals func(name string)
 				row = append(row, show(r, l, d[k]))
 			}
 			out.Rows = append(out.Rows, doc.Row{Cells: row, Rule: i > 0 && len(l) > 1 && !samePrefix(c.cells[i-1], l, 1)})
+		}
+		if alone > 0 {
+			out.Notes = append(out.Notes, text(fmt.Sprintf("%s treatments of one unit each are not listed, since they show no spread.", num.Count(alone))))
 		}
 	}
 	note := "In parentheses the standard deviation (SD) between units treated alike, blocks not removed"
@@ -662,6 +670,7 @@ func ChapterContrasts(p *layout.Plan, rs []*result.Response, planned bool) doc.T
 				continue
 			}
 			all = append(all, x)
+			x = prose.Scaled(p, r, x)
 			d := num.SEDecimals(float64(x.SE))
 			label := ""
 			if first {
@@ -676,7 +685,7 @@ func ChapterContrasts(p *layout.Plan, rs []*result.Response, planned bool) doc.T
 	}
 	out.Head = head(cell("Response"), cell("Trend or contrast"), cell("Estimate"), cell("SE"), cell(limitsHead), emph("P"))
 	for _, s := range prose.ContrastNotes(all) {
-		out.Notes = append(out.Notes, text(strings.ReplaceAll(s, " Lack of fit is what they leave of the term.", "")))
+		out.Notes = append(out.Notes, text(strings.NewReplacer(" Lack of fit is what they leave of the term.", "", "Contrasts are weighted sums of adjusted means.", "Contrasts are differences of weighted means, the weights of each side adding up to one.").Replace(s)))
 	}
 	return out
 }
