@@ -16,6 +16,9 @@ import (
 // out.
 const Most = 4096
 
+// oneLine is the length of a cell of numbers that is not broken.
+const oneLine = 26
+
 // Grid is a table whose every cell knows its columns. Widths are in the unit of the size
 // it was measured at, without the gaps between columns.
 type Grid struct {
@@ -29,6 +32,7 @@ type Column struct {
 	doc.Column
 	Natural float64 // what it takes on one line
 	Narrow  float64 // its widest word
+	Firm    float64 // its widest number, which is never broken
 	Tail    string  // of its decimal numbers, the longest after the mark
 }
 
@@ -46,6 +50,7 @@ type Cell struct {
 	Align   doc.Align
 	Natural float64
 	Narrow  float64
+	Firm    bool   // a number, or a range of them
 	Tail    string // after the decimal mark, where the cell is aligned by it
 }
 
@@ -131,6 +136,8 @@ func (g *Grid) place(cells []doc.Cell, f Type) []Cell {
 			}
 			x.Narrow = max(x.Narrow, width)
 		}
+		// A range of numbers is read as one.
+		x.Firm = (x.Align == doc.Right || x.Align == doc.Decimal) && utf8.RuneCountInString(text) <= oneLine
 		if x.Align == doc.Decimal {
 			_, x.Tail = doc.SplitDecimal(doc.Plain(c.Text))
 		}
@@ -181,6 +188,9 @@ func (g *Grid) measure(f Type) {
 		}
 		col := &g.Columns[c.Col]
 		col.Natural, col.Narrow = max(col.Natural, c.Natural), max(col.Narrow, c.Narrow)
+		if c.Firm && body {
+			col.Firm = max(col.Firm, c.Natural)
+		}
 		if body && c.Align == doc.Decimal {
 			if utf8.RuneCountInString(c.Tail) > utf8.RuneCountInString(col.Tail) {
 				col.Tail = c.Tail
@@ -192,6 +202,9 @@ func (g *Grid) measure(f Type) {
 		if col := &g.Columns[i]; before[i] > 0 {
 			wide := before[i] + f.width(col.Tail)
 			col.Natural, col.Narrow = max(col.Natural, wide), max(col.Narrow, wide)
+			if col.Firm > 0 {
+				col.Firm = max(col.Firm, wide)
+			}
 		}
 	}
 	each(func(c Cell, _ bool) {
@@ -221,7 +234,7 @@ func (g *Grid) Fit(width, gap float64) ([]float64, bool) {
 	avail := max(width-gap*float64(n-1), 1)
 	natural, least := 0.0, 0.0
 	for i, c := range g.Columns {
-		out[i] = min(c.Natural, max(min(c.Narrow, width/4), min(width/10, c.Natural)))
+		out[i] = min(c.Natural, max(c.Firm, min(c.Narrow, width/4), width/10))
 		natural += c.Natural
 		least += out[i]
 	}
@@ -308,7 +321,7 @@ func (g *Grid) Divide(width, gap float64) []*Grid {
 	used := 0.0
 	for i := len(keys); i < len(g.Columns); i++ {
 		c := g.Columns[i]
-		need := min(c.Natural, max(min(c.Narrow, room/2), room/8)) + gap
+		need := min(c.Natural, max(c.Firm, min(c.Narrow, room/2), room/8)) + gap
 		if len(parts) == 0 || used+need > room {
 			parts = append(parts, append([]int(nil), keys...))
 			used = 0

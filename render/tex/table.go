@@ -2,6 +2,7 @@ package tex
 
 import (
 	"fmt"
+	"math"
 	"slices"
 	"strconv"
 	"strings"
@@ -16,24 +17,26 @@ import (
 // what fits there fits with 10 and 11 points and on A4.
 const (
 	wider     = 1.13 // Latin and Computer Modern, measured by Liberation Serif
-	gap       = 0.9  // two tabcolsep
 	tallest   = 20   // lines of a row; a higher one is cut
-	separator = "4pt"
 	longNotes = 1500 // bytes of notes that still stand with their table
 )
 
 // way is a manner to set a table.
 type way struct {
 	size   string
+	sep    string  // tabcolsep
+	gap    float64 // two of them
 	width  float64
-	lines  int // of the body on a page
+	lines  int  // of the body on a page
+	shrunk bool // to the width of the host's text, if that is less
 	turned bool
 }
 
 var ways = []way{
-	{size: `\small`, width: 34, lines: 30},
-	{size: `\footnotesize`, width: 37, lines: 34},
-	{size: `\footnotesize`, width: 52, lines: 20, turned: true},
+	{size: `\small`, sep: "4pt", gap: 0.9, width: 35, lines: 30},
+	{size: `\footnotesize`, sep: "3.5pt", gap: 0.9, width: 38.5, lines: 34},
+	{size: `\footnotesize`, sep: "3.5pt", gap: 0.9, width: 46, lines: 34, shrunk: true},
+	{size: `\footnotesize`, sep: "4pt", gap: 1, width: 52, lines: 20, turned: true},
 }
 
 // table writes a table as one float or, where it is too high or too wide for a page, as
@@ -47,17 +50,10 @@ func (w *writer) table(t doc.Table) {
 		}
 		return
 	}
-	how := ways[len(ways)-1]
+	how, fits := choose(g)
 	parts := []*grid.Grid{g}
-	fits := false
-	for _, x := range ways {
-		if _, ok := g.Fit(x.width, gap); ok {
-			how, fits = x, true
-			break
-		}
-	}
 	if !fits {
-		parts = g.Divide(how.width, gap)
+		parts = g.Divide(how.width, how.gap)
 	}
 	float := t.Number != "" && !w.held
 	if !float {
@@ -72,7 +68,7 @@ func (w *writer) table(t doc.Table) {
 	first := true
 	pieces := 0
 	for i, part := range parts {
-		widths, _ := part.Fit(how.width, gap)
+		widths, _ := part.Fit(how.width, how.gap)
 		chunks := w.chunks(part, widths, how)
 		pieces += len(chunks)
 		for j, rows := range chunks {
@@ -91,14 +87,14 @@ func (w *writer) table(t doc.Table) {
 			first = false
 			w.tabular(part, rows, widths, how)
 			if last && !long {
-				for k, note := range t.Notes {
+				var notes []string
+				for _, note := range t.Notes {
 					if text := w.within(note); text != "" {
-						skip := ""
-						if k == 0 {
-							skip = `\par\smallskip`
-						}
-						w.line(skip + `\begin{minipage}{0.97\linewidth}\footnotesize\raggedright ` + text + `\end{minipage}\par`)
+						notes = append(notes, text)
 					}
+				}
+				if len(notes) > 0 {
+					w.line("\\par\\smallskip\\begin{minipage}{0.97\\linewidth}\\footnotesize\\raggedright\n" + strings.Join(notes, "\\par\n") + `\end{minipage}`)
 				}
 			}
 			w.close(float, how)
@@ -120,14 +116,40 @@ func (w *writer) table(t doc.Table) {
 	}
 }
 
+// choose finds the way for a table. Smaller type is better than cells of several lines,
+// and these than a turned page. Without a way that fits it is the last.
+func choose(g *grid.Grid) (how way, fits bool) {
+	for _, x := range ways {
+		if !x.turned && g.Natural(x.width, x.gap) {
+			return x, true
+		}
+	}
+	how = ways[len(ways)-1]
+	least := 0
+	for _, x := range ways {
+		widths, ok := g.Fit(x.width, x.gap)
+		if !ok || x.turned && fits {
+			continue
+		}
+		lines := 0
+		for _, row := range g.Rows {
+			lines += grid.Lines(row.Cells, widths, x.gap)
+		}
+		if !fits || lines < least {
+			how, fits, least = x, true, lines
+		}
+	}
+	return how, fits
+}
+
 func (w *writer) open(float bool, how way) {
 	switch {
 	case !float:
-		w.line("\n\\begin{center}" + how.size + `\setlength{\tabcolsep}{` + separator + `}`)
+		w.line("\n\\begin{center}" + how.size + `\setlength{\tabcolsep}{` + how.sep + `}`)
 	case how.turned:
-		w.line("\n\\begin{table}[p]\n\\centering\\rotatebox{90}{\\begin{minipage}{0.98\\textheight}\\centering" + how.size + `\setlength{\tabcolsep}{` + separator + `}`)
+		w.line("\n\\begin{table}[p]\n\\centering\\rotatebox{90}{\\begin{minipage}{0.98\\textheight}\\centering" + how.size + `\setlength{\tabcolsep}{` + how.sep + `}`)
 	default:
-		w.line("\n\\begin{table}[!htbp]\n\\centering" + how.size + `\setlength{\tabcolsep}{` + separator + `}`)
+		w.line("\n\\begin{table}[!htbp]\n\\centering" + how.size + `\setlength{\tabcolsep}{` + how.sep + `}`)
 	}
 }
 
@@ -148,13 +170,13 @@ func (w *writer) chunks(g *grid.Grid, widths []float64, how way) [][]grid.Row {
 	var out [][]grid.Row
 	room := 0
 	for _, row := range g.Rows {
-		for _, piece := range cut(row, widths, min(tallest, how.lines-2)) {
-			need := grid.Lines(piece.Cells, widths, gap)
+		for _, piece := range cut(row, widths, how.gap, min(tallest, how.lines-2)) {
+			need := grid.Lines(piece.Cells, widths, how.gap)
 			if room < need || piece.Group && room < need+2 {
 				out = append(out, nil)
 				room = how.lines
 				for _, head := range g.Head {
-					room -= grid.Lines(head, widths, gap) - 1
+					room -= grid.Lines(head, widths, how.gap) - 1
 				}
 			}
 			out[len(out)-1] = append(out[len(out)-1], piece)
@@ -168,7 +190,7 @@ func (w *writer) chunks(g *grid.Grid, widths []float64, how way) [][]grid.Row {
 }
 
 // cut makes of a row with more lines than most several.
-func cut(row grid.Row, widths []float64, most int) []grid.Row {
+func cut(row grid.Row, widths []float64, gap float64, most int) []grid.Row {
 	lines := grid.Lines(row.Cells, widths, gap)
 	if lines <= most {
 		return []grid.Row{row}
@@ -249,6 +271,9 @@ func split(text []doc.Inline, n int) (head, tail []doc.Inline) {
 }
 
 func fraction(width float64, how way) string {
+	if how.shrunk {
+		return strconv.FormatFloat(math.Round(width*100)/100, 'f', -1, 64) + "em"
+	}
 	return strconv.FormatFloat(float64(int(width/how.width*990))/1000, 'f', -1, 64) + `\linewidth`
 }
 
@@ -265,6 +290,9 @@ func (w *writer) tabular(g *grid.Grid, rows []grid.Row, widths []float64, how wa
 		} else {
 			spec += letters[c.Align]
 		}
+	}
+	if how.shrunk {
+		w.line(`\resizebox{\ifdim\width>\linewidth\linewidth\else\width\fi}{!}{%`)
 	}
 	w.line(`\begin{tabular}{` + spec + "@{}}\n\\toprule")
 	for _, row := range g.Head {
@@ -286,6 +314,8 @@ func (w *writer) tabular(g *grid.Grid, rows []grid.Row, widths []float64, how wa
 			w.line(`\midrule`)
 		case row.Group && i > 0:
 			w.line(`\addlinespace`)
+		case i > 0 && grid.Lines(rows[i-1].Cells, widths, how.gap) > 1:
+			w.line(`\addlinespace[2pt]`)
 		}
 		var out []string
 		for _, c := range row.Cells {
@@ -297,11 +327,14 @@ func (w *writer) tabular(g *grid.Grid, rows []grid.Row, widths []float64, how wa
 		w.line(strings.Join(out, " & ") + ` \tabularnewline`)
 	}
 	w.line("\\bottomrule\n\\end{tabular}")
+	if how.shrunk {
+		w.line("}")
+	}
 }
 
 // cell writes a cell. Its alignment is that of the column where nothing else is said.
 func (w *writer) cell(g *grid.Grid, c grid.Cell, widths []float64, wrapped []bool, how way, head bool) string {
-	width := grid.Width(c, widths, gap)
+	width := grid.Width(c, widths, how.gap)
 	if c.Narrow > width+1e-9 {
 		w.long = 8
 		defer func() { w.long = longWord }()
