@@ -32,6 +32,7 @@ type author struct {
 	waits   int       // values asked for that wait for data
 	claims  []prose.Claim
 
+	reader   *reader
 	dot      *view
 	words    template.FuncMap
 	kinds    map[string][]string // names of tables, figures, paragraphs and lists
@@ -136,7 +137,21 @@ func (b *builder) compose(sources []compose.Source, main string) (compose.Text, 
 		}
 		text, list = compose.Compose(sources, main, b.data(), b.functions(), b.limits)
 	}
+	if source, ok := b.source(b.own); ok {
+		list = append(list, b.typedNumbers(source)...)
+	}
 	return text, append(b.told, list...)
+}
+
+// typedNumbers warns of numbers in a text of the author's that contradict the results.
+func (b *builder) typedNumbers(source compose.Source) diag.List {
+	if b.trial.Table == nil {
+		return nil
+	}
+	if b.reader == nil {
+		b.reader = b.newReader()
+	}
+	return b.reader.typed(source)
 }
 
 // once leaves the first of tables and figures that are the same, and points at it from
@@ -246,6 +261,7 @@ func (b *builder) write(part protocol.NarrativePart) compose.Text {
 	text, list := compose.Compose([]compose.Source{source}, part.File, b.data(), b.functions(), b.limits)
 	b.writing = false
 	b.told = append(b.told, list...)
+	b.told = append(b.told, b.typedNumbers(source)...)
 	if b.waits > before {
 		text = compose.Text{Blocks: []doc.Block{doc.Paragraph{Text: inlines(prose.NarrativeWaits(part.Place)), Pos: diag.Pos{File: part.File, Line: 1, Col: 1}}}}
 	}
