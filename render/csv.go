@@ -3,13 +3,16 @@ package render
 import (
 	"bytes"
 	"encoding/csv"
+	"regexp"
 	"strconv"
 	"strings"
+	"unicode/utf8"
 
 	"penwright/analysis/result"
 )
 
-// csvFiles writes the tables of every response in full precision.
+// csvFiles writes the tables of every response in full precision, as RFC 4180 quotes them,
+// in UTF-8.
 func csvFiles(rs *result.Results) []File {
 	var out []File
 	for i := range rs.Responses {
@@ -22,7 +25,13 @@ func csvFiles(rs *result.Results) []File {
 			w := csv.NewWriter(&b)
 			// A bytes.Buffer does not fail.
 			_ = w.Write(heading)
-			_ = w.WriteAll(rows)
+			for _, row := range rows {
+				for i := range row {
+					row[i] = inert(row[i])
+				}
+				_ = w.Write(row)
+			}
+			w.Flush()
 			out = append(out, File{Path: "tables/" + r.Name + "-" + kind + ".csv", Data: b.Bytes()})
 		}
 		var rows [][]string
@@ -70,6 +79,20 @@ func csvFiles(rs *result.Results) []File {
 	}
 	return out
 }
+
+// inert writes a cell so that no spreadsheet takes it for a formula: with an apostrophe
+// before what begins like one and is no number. (OWASP, CSV Injection, from memory: = + -
+// @, tab and carriage return, and the wide forms of the four signs; a line feed is added.)
+func inert(cell string) string {
+	first, _ := utf8.DecodeRuneInString(cell)
+	if !strings.ContainsRune("=+-@\t\r\n\uFF1D\uFF0B\uFF0D\uFF20", first) || cell == "" || number.MatchString(cell) {
+		return cell
+	}
+	return "'" + cell
+}
+
+// number is how numbers are written to tables.
+var number = regexp.MustCompile(`^[+-]?([0-9]+(\.[0-9]*)?|\.[0-9]+)([eE][+-]?[0-9]+)?$`)
 
 // full is a number in full precision, empty where it is not there.
 func full(n result.Number) string {
