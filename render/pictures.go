@@ -375,7 +375,7 @@ func (v *pictures) means(name, term string) []doc.Block {
 			caption += " " + text
 		}
 		if fig.Trend = trend(p, r, term, fig.Means); len(fig.Trend.Points) > 0 {
-			caption += " The line is the " + fig.Trend.Label + ", of the degree that was planned."
+			caption += " The line is the " + fig.Trend.Label + ", as planned."
 		}
 		return figureOf(id, caption, file, fig.Draw)
 	case 2:
@@ -425,6 +425,12 @@ func (v *pictures) means(name, term string) []doc.Block {
 			}
 		}
 		caption := prose.MeansCaption(p, r, term) + "."
+		switch fig.BarLabel {
+		case "SED":
+			caption += " The bar is the standard error of a difference (SED)."
+		case "mean SED":
+			caption += " The bar is the mean standard error of a difference (SED)."
+		}
 		return figureOf(id, caption, file, fig.Draw)
 	}
 	return nil
@@ -469,7 +475,7 @@ func (v *pictures) differences(name, term string) []doc.Block {
 		return nil
 	}
 	id := name + "-" + strings.ReplaceAll(term, ":", "-")
-	caption := prose.ComparisonsCaption(p, r, term) + ", with " + limits + ". Where the limits do not hold nought, P is below the level they stand for."
+	caption := prose.ComparisonsCaption(p, r, term) + ", with " + limits + ". A difference whose limits hold nought may be none."
 	return figureOf("figure-differences-"+id, caption, "differences-"+id, fig.Draw)
 }
 

@@ -38,7 +38,7 @@
 // numbers, logarithmic, doseAxis and newFrame for a pair of axes, newGroups where one of
 // them has names; curve and band for a fitted line or a curve over time with its limits (a
 // curve in steps is one with both ends of each step); whisker and marker for an estimate
-// with its interval; ends for names beside lines; beside for names in a crowd; newKey for
+// with its interval; ends for names beside lines; places for names in a crowd; newList for
 // what finds no place. Mark what a reader may point at with its name. Then add it to the
 // gallery of the tests, which hold it to all of the above.
 package figure

@@ -314,3 +314,14 @@ func BenchmarkGallery(b *testing.B) {
 		}
 	}
 }
+
+// The worst that is promised: 60 treatments with names of 120 letters.
+func BenchmarkSixty(b *testing.B) {
+	for _, d := range kinds(60, 3, nameKinds[3].of) {
+		b.Run(strings.TrimPrefix(fmt.Sprintf("%T", d), "figure."), func(b *testing.B) {
+			for b.Loop() {
+				d.Draw()
+			}
+		})
+	}
+}

@@ -153,16 +153,17 @@ func (f Flow) measure(w, most float64) (*flowing, bool) {
 		}
 		try := func(names [][]string, entries []entry, compact bool) *flowing {
 			g := &flowing{rows: rows, compact: compact, names: names}
+			named := newList(entries)
 			if !compact && g.arrange(f, w, most) {
 				// All reasons have room in full.
-				if g.key = newKey(entries, w-2, most-g.tall()); g.key.complete() && g.tall()+g.key.tall <= most {
+				if g.key = named.key(w-2, most-g.tall()); g.key.complete && g.tall()+g.key.tall <= most {
 					return g
 				}
 			}
 			g.letters = letters
 			g.arrange(f, w, most)
-			g.key = newKey(append(entries[:len(entries):len(entries)], why...), w-2, most-g.tall())
-			if g.key.complete() && g.tall()+g.key.tall <= most {
+			g.key = newList(append(entries[:len(entries):len(entries)], why...)).key(w-2, most-g.tall())
+			if g.key.complete && g.tall()+g.key.tall <= most {
 				return g
 			}
 			return nil
@@ -196,7 +197,7 @@ func (f Flow) measure(w, most float64) (*flowing, bool) {
 			g.names = append(g.names, []string{shorten(n, w*0.36, textSize)})
 		}
 		g.arrange(f, w, most)
-		if g.key = newKey(why, w-2, most-g.tall()); g.tall()+g.key.tall <= most {
+		if g.key = newList(why).key(w-2, most-g.tall()); g.tall()+g.key.tall <= most {
 			return g, true
 		}
 		if len(rows) <= 2 {

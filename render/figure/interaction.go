@@ -80,6 +80,7 @@ func (n Interaction) Draw() (*doc.Picture, string) {
 		labels, whole := allFit(n.Levels, pitch-4, 3)
 		every := 1
 		if !whole {
+			labels = make([][]string, len(n.Levels))
 			wide := 0.0
 			for i := range labels {
 				labels[i] = []string{number(i)}
@@ -96,13 +97,13 @@ func (n Interaction) Draw() (*doc.Picture, string) {
 	if bar {
 		top = 8
 	}
-	k, low := n.above(entries, h)
+	k, low := n.above(newList(entries), h)
 	if low < h {
 		h = low
 		y = numbers(n.Response, values.padded(0.07), h-foot, false)
 		if t = newTags(n.Lines, label, w*0.3, h-foot-10); t.labels == nil {
 			entries = append(entries[:len(entries)-len(t.key):len(entries)-len(t.key)], t.key...)
-			k = newKey(entries, w-2, pageHeight-h)
+			k = newList(entries).key(w-2, pageHeight-h)
 		}
 	}
 	barLabel := fit(n.BarLabel, room*0.6, noteSize, false)
@@ -212,7 +213,7 @@ func tagged[T any](s Size, lines []T, name func(T) string, h float64) (tags, flo
 	t := newTags(lines, name, w*0.3, h-foot-10)
 	for range 2 {
 		if t.key != nil {
-			_, h = s.above(t.key, h)
+			_, h = s.above(newList(t.key), h)
 			t = newTags(lines, name, w*0.3, h-foot-10)
 		}
 	}

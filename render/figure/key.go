@@ -22,119 +22,156 @@ type key struct {
 	entries []entry
 	lines   [][]string
 	signs   float64 // width of the column of signs
-	column  float64
+	column  float64 // from one column to the next
+	room    float64 // for a name
 	rows    int
 	tops    []float64 // of the entries, from the top of the key
 	size    float64
+	gap     float64 // between entries
 	tall    float64
+
+	complete bool // no name is shortened
 }
 
 const keyGap = 5 // above a key, and between a sign and its name
 
-// newKey arranges a key of a width, no higher than most where that is possible.
-func newKey(entries []entry, wide, most float64) key {
-	k := key{entries: entries}
-	if len(entries) == 0 {
-		return k
+// list is what a key lists, measured.
+type list struct {
+	entries []entry
+	names   []string
+	wide    []float64 // of the names, at a size of 1
+	widest  float64
+}
+
+func newList(entries []entry) *list {
+	l := &list{entries: entries}
+	for _, e := range entries {
+		n := clean(e.name)
+		w := width(n, 1, false)
+		l.names, l.wide, l.widest = append(l.names, n), append(l.wide, w), max(l.widest, w)
 	}
-	names := make([]string, len(entries))
-	for i, e := range entries {
-		names[i] = clean(e.name)
+	return l
+}
+
+// key arranges a list of a width, no higher than most where that is possible. It is
+// complete if no name had to be shortened.
+func (l *list) key(wide, most float64) key {
+	if len(l.entries) == 0 {
+		return key{complete: true}
 	}
 	for _, size := range []float64{noteSize, leastSize} {
 		for lines := 1; lines <= 3; lines++ {
-			if k.arrange(names, wide, size, lines, 0); k.tall <= most && k.complete() {
+			k := l.columns(wide, size, 0, lines)
+			if l.least(k, lines) > most {
+				continue
+			}
+			if l.set(&k, lines); k.complete && k.tall <= most {
 				return k
 			}
 		}
 	}
 	// As many columns as the height asks for, the names shortened to fit.
-	for columns := 1; columns <= 12; columns++ {
-		if k.arrange(names, wide, leastSize, 1, columns); k.tall <= most {
-			break
+	const columns = 12
+	for c := 1; ; c++ {
+		if k := l.columns(wide, leastSize, c, 1); l.least(k, 1) <= most || c == columns {
+			l.set(&k, 1)
+			return k
 		}
 	}
-	return k
 }
 
 // leastGround is the height of the lowest picture above a key.
 const leastGround = 145
 
-// above arranges a key below a picture of height h, or where no height was asked for,
-// below a lower one if the key could not name all in full otherwise.
-func (s Size) above(entries []entry, h float64) (key, float64) {
+// above arranges the key of a list below a picture of height h, or where no height was
+// asked for, below a lower one if the key could not name all in full otherwise.
+func (s Size) above(l *list, h float64) (key, float64) {
 	w, _ := s.resolve(h)
-	k := newKey(entries, w-2, pageHeight-h)
-	if h <= leastGround || s.Height > 0 || k.complete() && k.tall+h <= pageHeight {
+	k := l.key(w-2, pageHeight-h)
+	if h <= leastGround || s.Height > 0 || k.complete && k.tall+h <= pageHeight {
 		return k, h
 	}
-	k = newKey(entries, w-2, pageHeight-leastGround)
+	k = l.key(w-2, pageHeight-leastGround)
 	return k, min(max(pageHeight-k.tall, leastGround), h)
 }
 
-// arrange sets the names on at most so many lines, in as many columns as the widest
-// allows, or in columns of them.
-func (k *key) arrange(names []string, wide, size float64, lines, columns int) {
-	k.size, k.signs = size, 0
-	for _, e := range k.entries {
-		w := width(e.sign, size, true)
+// columns begins a key of names in a size, with so many columns, or where that is nought
+// as many as the widest name on so many lines allows.
+func (l *list) columns(wide, size float64, columns, lines int) key {
+	k := key{entries: l.entries, size: size}
+	pictured := false
+	for _, e := range l.entries {
+		w := 12.0
+		if e.draw == nil {
+			w = width(e.sign, size, true)
+		}
 		if e.framed {
 			w = max(w+5, 9)
 		}
-		if e.draw != nil {
-			w = 12
-		}
+		pictured = pictured || e.framed || e.draw != nil
 		k.signs = max(k.signs, w)
 	}
 	k.signs = min(math.Ceil(k.signs), wide*0.35)
+	switch {
+	case size == leastSize && pictured:
+		k.gap = 0.4
+	case size > leastSize && pictured:
+		k.gap = 2.2
+	case size > leastSize:
+		k.gap = 1.2
+	}
 	beside := k.signs + keyGap + 10
 	if columns == 0 {
-		widest := 1.0
-		for _, n := range names {
-			widest = max(widest, width(n, size, false))
-		}
-		columns = max(int(wide/(beside+widest/float64(lines)+1)), 1)
+		columns = max(int(wide/(beside+max(l.widest*size, 1)/float64(lines)+1)), 1)
 	}
-	k.rows = (len(names) + columns - 1) / columns
-	columns = (len(names) + k.rows - 1) / k.rows
+	k.rows = (len(l.names) + columns - 1) / columns
+	columns = (len(l.names) + k.rows - 1) / k.rows
 	k.column = wide / float64(columns)
-	k.lines, k.tops, k.tall = k.lines[:0], k.tops[:0], 0
-	room := max(k.column-beside, 1)
-	y, gap := 0.0, 1.2
-	switch pictured := k.entries[0].framed || k.entries[0].draw != nil; {
-	case size == leastSize && pictured:
-		gap = 0.4
-	case size == leastSize:
-		gap = 0
-	case pictured:
-		gap = 2.2
+	k.room = max(k.column-beside, 1)
+	return k
+}
+
+// least is a height that the key cannot be below, with names on at most so many lines.
+func (l *list) least(k key, lines int) float64 {
+	tall, y := 0.0, 0.0
+	for i, w := range l.wide {
+		if i%k.rows == 0 {
+			y = keyGap
+		}
+		y += k.pitch(min(int(math.Ceil(w*k.size/k.room)), lines))
+		tall = max(tall, y)
 	}
-	for i, n := range names {
+	return tall + 2
+}
+
+func (k *key) pitch(lines int) float64 {
+	return math.Ceil(100*k.size*leading)/100*float64(max(lines, 1)) + k.gap
+}
+
+// set breaks the names into at most so many lines.
+func (l *list) set(k *key, lines int) {
+	k.complete = true
+	y := 0.0
+	for i, n := range l.names {
 		if i%k.rows == 0 {
 			y = keyGap
 		}
 		var ls []string
-		if lines == 1 {
-			ls = []string{shorten(n, room, size)}
-		} else {
-			ls, _ = wrap(n, room, size, lines)
+		switch {
+		case l.wide[i]*k.size <= k.room:
+			ls = []string{n}
+		case lines == 1:
+			ls, k.complete = []string{shorten(n, k.room, k.size)}, false
+		default:
+			var whole bool
+			ls, whole = wrap(n, k.room, k.size, lines)
+			k.complete = k.complete && whole
 		}
-		k.lines = append(k.lines, ls)
-		k.tops = append(k.tops, y)
-		y += math.Ceil(100*size*leading)/100*float64(max(len(ls), 1)) + gap
+		k.lines, k.tops = append(k.lines, ls), append(k.tops, y)
+		y += k.pitch(len(ls))
 		k.tall = max(k.tall, y)
 	}
 	k.tall += 2
-}
-
-// complete says whether no name was shortened.
-func (k *key) complete() bool {
-	for i, l := range k.lines {
-		if strings.Join(l, " ") != clean(k.entries[i].name) {
-			return false
-		}
-	}
-	return true
 }
 
 func (k *key) draw(c *canvas, x, y float64) {
@@ -220,17 +257,17 @@ func numbered(names []string, sign func(int) string) []entry {
 	return out
 }
 
-// allFit breaks names into at most so many lines of a width; whole says that none had
-// to be shortened.
-func allFit(names []string, most float64, lines int) (out [][]string, whole bool) {
-	out = make([][]string, len(names))
-	whole = true
+// allFit breaks names into at most so many lines of a width, or fails at the first that
+// would have to be shortened.
+func allFit(names []string, most float64, lines int) ([][]string, bool) {
+	out := make([][]string, len(names))
 	for i, n := range names {
-		var fits bool
-		out[i], fits = wrap(n, most, textSize, lines)
-		whole = whole && fits
+		var whole bool
+		if out[i], whole = wrap(n, most, textSize, lines); !whole {
+			return nil, false
+		}
 	}
-	return out, whole
+	return out, true
 }
 
 // deepest is the number of lines of the name that has most.

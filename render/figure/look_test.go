@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"reflect"
+	"regexp"
 	"strings"
 	"testing"
 
@@ -19,6 +20,8 @@ func outline(l doc.Label) box {
 	}
 	return box{x0: l.X, x1: l.X + l.Width, y0: l.Y - up*l.Size, y1: l.Y + down*l.Size}
 }
+
+var exponent = regexp.MustCompile(`[0-9]e[+-]?[0-9]`)
 
 // inspect fails where texts run into one another, where anything leaves the picture, or
 // where a coordinate is not a number.
@@ -59,6 +62,9 @@ func inspect(t *testing.T, pic *doc.Picture) {
 		case doc.Fill:
 			paths("a fill", op.Path)
 		case doc.Label:
+			if exponent.MatchString(op.Text) && !strings.Contains(op.Text, "long") {
+				t.Errorf("%q is a number as programs write it", op.Text)
+			}
 			if op.Size < leastSize-1e-9 {
 				t.Errorf("%q is %v high", op.Text, op.Size)
 			}

@@ -736,9 +736,10 @@ func (p *mapper) legend(c *canvas, y float64) float64 {
 		return 13
 	}
 	if p.list == nil || p.listed != p.bear {
-		k := newKey(p.entries(), p.width, p.most*0.5)
-		if !k.complete() && p.n <= 300 {
-			k = newKey(p.entries(), p.width, p.most*0.8)
+		l := newList(p.entries())
+		k := l.key(p.width, p.most*0.5)
+		if !k.complete && p.n <= 300 {
+			k = l.key(p.width, p.most*0.8)
 		}
 		p.list, p.listed = &k, p.bear
 	}

@@ -174,7 +174,7 @@ func (m Means) doses(values, doses span) *doc.Picture {
 				entries = append(entries, entry{sign: clean(q.Label), name: q.Letters})
 			}
 		}
-		k, low := m.above(entries, h)
+		k, low := m.above(newList(entries), h)
 		y = numbers(m.Response, values.padded(0.08), low-foot, false)
 		f = newFrame(newCanvas(w, low+k.tall), x, y, insets{right: 6, bottom: k.tall})
 		k.draw(f.canvas, 1, low)

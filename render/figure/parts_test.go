@@ -118,6 +118,55 @@ func TestColourBlind(t *testing.T) {
 	}
 }
 
+// In grey the shading of a residual tells how far it lies out: each step is darker than
+// the one before it on a light page and lighter on a dark one, above nought and below it.
+// On which side it lies the printed sign says, or the bar that stands for it.
+func TestGreyOrder(t *testing.T) {
+	for _, page := range pages {
+		for _, side := range []float64{-1, 1} {
+			var p mapper
+			last := luminance(light(page.paper))
+			dark := last < 0.5
+			for i := 1; i <= 8; i++ {
+				l := luminance(light(over(p.shade(side*float64(i)/8), page.paper)))
+				if dark && l <= last || !dark && l >= last {
+					t.Errorf("step %v of %d eighths is %.3f after %.3f on %v", side, i, l, last, page.paper)
+				}
+				last = l
+			}
+		}
+	}
+	m := planned("block 8, plot within block 60", 60)
+	m.Shade = "Residual"
+	below := 0
+	for b := range m.Boxes {
+		for i := range m.Boxes[b].Cells {
+			c := &m.Boxes[b].Cells[i]
+			if c.Value = 1; i%3 == 0 {
+				c.Value = -1
+				below++
+			}
+		}
+	}
+	pic, _ := m.Draw()
+	bars, signs := 0, 0
+	for _, op := range pic.Ops {
+		switch op := op.(type) {
+		case doc.Stroke:
+			if op.Colour == ink && op.Width == 0.8 && len(op.Path) == 2 {
+				bars++
+			}
+		case doc.Label:
+			if strings.HasPrefix(op.Text, "−") {
+				signs++
+			}
+		}
+	}
+	if bars != below+1 && signs < below {
+		t.Errorf("%d bars and %d signs for %d values below nought", bars, signs, below)
+	}
+}
+
 // Without colour, marks and dashes must do.
 func TestSymbols(t *testing.T) {
 	type mark struct {
@@ -374,5 +423,109 @@ func TestInWords(t *testing.T) {
 				t.Errorf("%s: %q", g.name, alt)
 			}
 		}
+	}
+}
+
+// The picture in words tells what is highest and lowest, from the data.
+func TestWordsNameExtremes(t *testing.T) {
+	for _, g := range gallery() {
+		type value struct {
+			name string
+			v    float64
+		}
+		var all []value
+		far := false // only the one that is farthest from nought is told
+		switch d := g.drawing.(type) {
+		case Points:
+			far = d.Residual
+			for _, group := range d.Groups {
+				for _, q := range group.Points {
+					if !q.Excluded {
+						all = append(all, value{q.Unit, q.Value})
+					}
+				}
+			}
+		case Means:
+			for _, q := range d.Means {
+				all = append(all, value{q.Label, q.Value})
+			}
+		case Interaction:
+			for _, l := range d.Lines {
+				for i, v := range l.Values {
+					all = append(all, value{l.Label + " at " + d.Levels[i], v})
+				}
+			}
+		case Fitted:
+			far = true
+			for _, q := range d.Points {
+				all = append(all, value{q.Unit, q.Y})
+			}
+		case Quantiles:
+			for _, q := range d.Points {
+				all = append(all, value{q.Unit, q.Value})
+			}
+		case Spread:
+			for _, q := range d.Points {
+				all = append(all, value{q.Label, q.SD})
+			}
+		case Map:
+			if far = true; d.Shade == "" {
+				continue
+			}
+			for _, c := range cells(d.Boxes, nil) {
+				if !c.Excluded {
+					all = append(all, value{c.Unit, c.Value})
+				}
+			}
+		case Differences:
+			far = true
+			for _, q := range d.Rows {
+				all = append(all, value{q.String(), q.Value})
+			}
+		default:
+			continue
+		}
+		high, low, out := all[0], all[0], all[0]
+		for _, x := range all {
+			if x.v > high.v {
+				high = x
+			}
+			if x.v < low.v {
+				low = x
+			}
+			if math.Abs(x.v) > math.Abs(out.v) {
+				out = x
+			}
+		}
+		want := []value{high, low}
+		if far {
+			want = []value{out}
+		}
+		_, alt := g.Draw()
+		for _, x := range want {
+			if s := x.name + " (" + rounded(x.v) + ")"; !strings.Contains(alt, s) {
+				t.Errorf("%s: %q is not told in %q", g.name, s, alt)
+			}
+		}
+	}
+	// What a curve of power is read for.
+	p := Power{X: "Pens", Target: 0.8, Chosen: 4, Curves: []PowerCurve{
+		{Label: "SD 18", Points: []PowerPoint{{N: 2, Power: 0.3}, {N: 3, Power: 0.7}, {N: 4, Power: 0.85}, {N: 5, Power: 0.95}}},
+		{Label: "SD 30", Points: []PowerPoint{{N: 2, Power: 0.1}, {N: 3, Power: 0.2}, {N: 4, Power: 0.3}, {N: 5, Power: 0.4}}},
+	}}
+	_, alt := p.Draw()
+	for _, s := range []string{"SD 18: 85 % with 4.", "SD 18 reaches it from 4 on.", "SD 30 does not reach it."} {
+		if !strings.Contains(alt, s) {
+			t.Errorf("%q is not told in %q", s, alt)
+		}
+	}
+	// Lines that cross, and such that do not.
+	cross := Interaction{Levels: []string{"a", "b"}, Lines: []Line{{Label: "x", Values: []float64{1, 2}}, {Label: "y", Values: []float64{2, 1}}}}
+	if _, alt := cross.Draw(); !strings.Contains(alt, "The lines cross.") {
+		t.Error(alt)
+	}
+	cross.Lines[1].Values = []float64{2, 3}
+	if _, alt := cross.Draw(); !strings.Contains(alt, "The lines keep their order") {
+		t.Error(alt)
 	}
 }

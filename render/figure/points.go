@@ -82,22 +82,33 @@ type room struct {
 }
 
 const (
-	mostEnds   = 20   // lines of blocks that bear their names
-	leastPitch = 9.0  // of lying groups: a line of names
-	mostPitch  = 16.0 // of lying groups with names of one line
+	mostEnds    = 20    // lines of blocks that bear their names
+	leastPitch  = 9.0   // of lying groups: a line of names
+	widestPitch = 105.0 // of upright groups
+	mostPitch   = 16.0  // of lying groups with names of one line
 )
 
 // newGroups draws the frame. The range of values must be padded already.
 func newGroups(s Size, names []string, by, response string, values span, r room) *groups {
 	n := max(len(names), 1)
 	w, h := s.resolve(240)
+	asked := s.Width
+	if !(s.Width > 0) {
+		// A few groups do not need the whole column.
+		s.Width = min(w, max(widestPitch*float64(n)+r.upright+50, w/2))
+		w = s.Width
+	}
 	along := axis{title: titled(by, w-2), span: span{lo: -0.5, hi: float64(n) - 0.5}, bare: true}
 	v := numbers(response, values, h-foot, false)
 	pitch := across(w, r.upright, v) / float64(n)
 	labels, whole := allFit(names, pitch-4, 3)
 	if whole && pitch >= r.pitch {
-		return upright(s, h, labels, along, v, r, nil)
+		k, _ := s.above(newList(r.more), h)
+		return upright(s, h, labels, along, v, r, k, false)
 	}
+	s.Width = asked
+	w, _ = s.resolve(h)
+	along.title, v = titled(by, w-2), numbers(response, values, h-foot, false)
 	_, most := s.resolve(pageHeight)
 	for lines := 1; lines <= 4; lines++ {
 		labels, whole = allFit(names, w*0.42, lines)
@@ -116,6 +127,7 @@ func newGroups(s Size, names []string, by, response string, values span, r room)
 			return lying(s, pitch, labels, along, response, values, r, nil)
 		}
 	}
+	labels = make([][]string, len(names))
 	signs, entries := r.signs, r.key
 	if signs == nil {
 		signs = make([]string, len(names))
@@ -136,8 +148,9 @@ func newGroups(s Size, names []string, by, response string, values span, r room)
 	if least := across(w, r.upright, v) / float64(n); least < max(r.pitch, 12) && pitch >= leastPitch {
 		pitch = max(leastPitch, min(pitch, (most-foot)*0.6/float64(n)))
 		tall := pitch*float64(n) + foot
-		if r.signs != nil || newKey(entries, w, most-tall).tall+tall <= most {
-			return lying(s, pitch, labels, along, response, values, r, entries)
+		k := newList(entries).key(w-2, pageHeight-tall)
+		if r.signs != nil || k.tall+tall <= most {
+			return lying(s, pitch, labels, along, response, values, r, &k)
 		}
 	}
 	for i, t := range r.tails {
@@ -148,7 +161,7 @@ func newGroups(s Size, names []string, by, response string, values span, r room)
 	if s.Height <= 0 {
 		h = 200
 	}
-	_, h = s.above(append(entries[:len(entries):len(entries)], r.more...), h)
+	k, h := s.above(newList(append(entries, r.more...)), h)
 	every := 1
 	for _, k := range []int{2, 5, 10, 20, 50, 100} {
 		if (wide+2)/float64(every) > across(w, r.upright, v)/float64(n) {
@@ -161,15 +174,13 @@ func newGroups(s Size, names []string, by, response string, values span, r room)
 			labels[i] = nil
 		}
 	}
-	return upright(s, h, labels, along, numbers(response, values, h-foot, false), r, entries)
+	return upright(s, h, labels, along, numbers(response, values, h-foot, false), r, k, true)
 }
 
 // upright draws groups side by side.
-func upright(s Size, h float64, labels [][]string, along, v axis, r room, entries []entry) *groups {
+func upright(s Size, h float64, labels [][]string, along, v axis, r room, k key, keyed bool) *groups {
 	w, _ := s.resolve(h)
-	entries = append(entries[:len(entries):len(entries)], r.more...)
-	g := &groups{n: max(len(labels), 1), keyed: len(entries) > len(r.more)}
-	g.key, _ = s.above(entries, h)
+	g := &groups{n: max(len(labels), 1), keyed: keyed, key: k}
 	for i, l := range labels {
 		if len(l) > 0 {
 			along.ticks = append(along.ticks, plot.Tick{Value: float64(i), Label: strings.Join(l, "\n")})
@@ -182,10 +193,13 @@ func upright(s Size, h float64, labels [][]string, along, v axis, r room, entrie
 }
 
 // lying draws groups below one another, the first at the top.
-func lying(s Size, pitch float64, labels [][]string, along axis, response string, values span, r room, entries []entry) *groups {
+func lying(s Size, pitch float64, labels [][]string, along axis, response string, values span, r room, k *key) *groups {
 	n := max(len(labels), 1)
 	w, h := s.resolve(pitch*float64(n) + foot)
-	g := &groups{n: n, lying: true, keyed: len(entries) > 0, key: newKey(entries, w-2, pageHeight-h)}
+	g := &groups{n: n, lying: true, keyed: k != nil}
+	if k != nil {
+		g.key = *k
+	}
 	along.span = span{lo: -float64(n) + 0.5, hi: 0.5}
 	along.title = titled(strings.Join(along.title, " "), h-foot+20)
 	for i, l := range labels {

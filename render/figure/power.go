@@ -46,7 +46,7 @@ func (p Power) Draw() (*doc.Picture, string) {
 	w, high := p.resolve(min(max(250, float64(len(p.Curves))*textSize*leading+60), pageHeight))
 	t, h := tagged(p.Size, p.Curves, func(c PowerCurve) string { return c.Label }, high)
 	end := t.wide + 22
-	k, _ := p.above(t.key, h)
+	k, _ := p.above(newList(t.key), h)
 	c := newCanvas(w, h+k.tall)
 	y := numbers("Power (%)", span{lo: 0, hi: 100}, h-foot, false)
 	x := numbers(title(p.X, "Replicates"), xs.padded(0.03), across(w, end, y), true)

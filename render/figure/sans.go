@@ -50,20 +50,37 @@ func fit(s string, most, size float64, bold bool) string {
 // wrap breaks text at spaces into at most lines lines of a width. It is whole when
 // nothing had to be shortened.
 func wrap(s string, most, size float64, lines int) (out []string, whole bool) {
-	rest := words(clean(s))
+	s = clean(s)
+	if s == "" {
+		return nil, true
+	}
+	if width(s, size, false) <= most {
+		return []string{s}, true
+	}
 	whole = true
+	rest := words(s)
+	space := width(" ", size, false)
 	for len(rest) > 0 {
 		if len(out) == lines-1 {
 			last := strings.Join(rest, " ")
 			short := fit(last, most, size, false)
 			return append(out, short), whole && short == last
 		}
-		n := 1
-		for n < len(rest) && width(strings.Join(rest[:n+1], " "), size, false) <= most {
+		// As many words as fit by their widths; kerning at the spaces may take one back.
+		n, w := 1, width(rest[0], size, false)
+		for n < len(rest) {
+			w += space + width(rest[n], size, false)
+			if w > most {
+				break
+			}
 			n++
 		}
 		l := strings.Join(rest[:n], " ")
-		if width(l, size, false) > most {
+		for n > 1 && width(l, size, false) > most {
+			n--
+			l = strings.Join(rest[:n], " ")
+		}
+		if n == 1 && width(l, size, false) > most {
 			l, whole = fit(l, most, size, false), false
 		}
 		out = append(out, l)

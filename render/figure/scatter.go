@@ -148,7 +148,7 @@ func cloud(points []XY, n int, s Size, build func(k key, h float64) (*frame, []b
 		for k := range signs {
 			signs[k] = number(k)
 		}
-		f, crowd = build(s.above(entries, h))
+		f, crowd = build(s.above(newList(entries), h))
 		places, _ = f.places(points, named, signs, crowd, r, dense)
 	}
 	if dense {
@@ -235,7 +235,7 @@ func (f *frame) places(points []XY, named []int, names []string, crowd []box, r 
 		}
 		best, least := placed{}, -1
 		for t, try := range tries {
-			b := lineBox(try[0], try[1], left, s, noteSize)
+			b := box{x0: try[0], y0: try[1] - ascent*noteSize, x1: try[0] + w, y1: try[1] + descent*noteSize}
 			if b.x0 < f.x0-2 || b.x1 > f.pic.Width-1 || b.y0 < 0 || b.y1 > f.y1+2 {
 				continue
 			}
