@@ -13,9 +13,6 @@ import (
 	"strings"
 	"testing"
 	"time"
-	"unicode"
-
-	"golang.org/x/text/unicode/norm"
 
 	"penwright/render/doc"
 )
@@ -49,78 +46,6 @@ func put(t *testing.T, dir string, files []File) {
 			t.Fatal(err)
 		}
 	}
-}
-
-// spoken is a piece of a document as its readers see it: running text, or a cell.
-type spoken struct {
-	text string
-	cell bool
-}
-
-// said lists what a document says, in reading order, without notes.
-func said(blocks []doc.Block) []spoken {
-	var out []spoken
-	// What stands above or below the line may be read as a line of its own.
-	plain := func(text []doc.Inline) string {
-		return doc.Plain(doc.Mapper{Inline: func(n doc.Inline) doc.Inline {
-			switch x := n.(type) {
-			case doc.Sup:
-				return doc.Text{Text: " " + doc.Plain(x.Text) + " "}
-			case doc.Sub:
-				return doc.Text{Text: " " + doc.Plain(x.Text) + " "}
-			}
-			return n
-		}}.Inlines(text))
-	}
-	add := func(text string, cell bool) {
-		if strings.TrimSpace(text) != "" {
-			out = append(out, spoken{text: text, cell: cell})
-		}
-	}
-	doc.Walk(blocks, func(n any) {
-		switch x := n.(type) {
-		case doc.Heading:
-			add(plain(x.Text), false)
-		case doc.Paragraph:
-			add(plain(x.Text), false)
-		case doc.Aside:
-			add(plain(x.Title), false)
-		case doc.Code:
-			for _, l := range strings.Split(x.Text, "\n") {
-				add(l, false)
-			}
-		case doc.Table:
-			add(plain(x.Caption), false)
-			for _, row := range x.Head {
-				for _, c := range row {
-					add(plain(c.Text), true)
-				}
-			}
-			for _, row := range x.Rows {
-				for _, c := range row.Cells {
-					add(plain(c.Text), true)
-				}
-			}
-			for _, note := range x.Notes {
-				add(plain(note), false)
-			}
-		case doc.Figure:
-			add(plain(x.Caption), false)
-		}
-	})
-	return out
-}
-
-// bare is text without what setting it may change: blanks, hyphens, and which of the
-// like signs stands for one.
-func bare(s string) string {
-	s = strings.NewReplacer("’", "'", "‘", "'", "·", "·", "⋅", "·", "∼", "~", "µ", "μ", "ϵ", "ε", "ϕ", "φ", "φ", "φ").Replace(s)
-	return strings.Map(func(r rune) rune {
-		if unicode.IsSpace(r) || strings.ContainsRune("-\u2010\u2011\u2007\u2008\u00ad\u200b\u2060", r) {
-			return -1
-		}
-		return r
-	}, norm.NFKC.String(s))
 }
 
 // documents are the trials in every template, composed.
