@@ -2,6 +2,7 @@ package render
 
 import (
 	"math"
+	"slices"
 	"strings"
 
 	"penwright/analysis/dataset"
@@ -76,14 +77,15 @@ func (v *pictures) layoutMap() []doc.Block {
 			return l
 		}
 		if u == unit {
-			l.Treatment = of(i)
-			l.Label = names[l.Treatment]
+			if name := names[of(i)]; name != prose.UnknownTreatment {
+				l.Treatment, l.Label = of(i), name
+			}
 		} else {
 			l.Label = v.ownLevels(u, i)
 		}
 		return l
 	})
-	m.Treatments = names
+	m.Treatments = told(names, nil)
 	caption := "Layout of the trial with the allotment"
 	if v.trial.Allotment == nil {
 		caption = "Layout of the trial; treatments have not been drawn"
@@ -196,7 +198,6 @@ func (v *pictures) groupRows(unit int, instances []int32) cellRows {
 	p := v.trial.Plan
 	var out cellRows
 	names, of := v.treatments(unit)
-	out.names = names
 	// The block is the coarsest unit that received nothing and holds a treatment at most
 	// once, so that a line has one unit at each; else the coarsest of several that received
 	// nothing.
@@ -224,7 +225,16 @@ func (v *pictures) groupRows(unit int, instances []int32) cellRows {
 		}
 		out.blocks = append(out.blocks, b)
 	}
+	out.names = told(names, out.of)
 	return out
+}
+
+// told is names without the last where that is no treatment and none of the indices used.
+func told(names []string, used []int) []string {
+	if last := len(names) - 1; last >= 0 && names[last] == prose.UnknownTreatment && !slices.Contains(used, last) {
+		return names[:last]
+	}
+	return names
 }
 
 // joined says what lines join.

@@ -62,13 +62,18 @@ func TreatmentText(t *trial.Trial, unit, instance int) string {
 		}
 	}
 	if len(parts) == 0 {
-		return "not known"
+		return UnknownTreatment
 	}
 	return strings.Join(parts, ", ")
 }
 
+// UnknownTreatment stands for the treatment of a unit whose allotment nothing tells, such
+// as one without a row in data that the allotment is taken from. It is none of the
+// treatments.
+const UnknownTreatment = "treatment not known"
+
 // TreatmentOrder lists the treatments of the instances of a unit in the order of their
-// levels.
+// levels, and last, where there are such instances, UnknownTreatment.
 func TreatmentOrder(t *trial.Trial, unit int) []string {
 	type entry struct {
 		key  []int32
@@ -93,6 +98,9 @@ func TreatmentOrder(t *trial.Trial, unit int) []string {
 		all = append(all, entry{key: key, name: name})
 	}
 	sort.SliceStable(all, func(i, j int) bool {
+		if a, b := all[i].name == UnknownTreatment, all[j].name == UnknownTreatment; a || b {
+			return !a
+		}
 		for k := range all[i].key {
 			if all[i].key[k] != all[j].key[k] {
 				return all[i].key[k] < all[j].key[k]

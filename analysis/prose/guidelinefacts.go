@@ -313,7 +313,7 @@ func (v *evidence) leftOut(out *Part) {
 			if s == dataset.Missing && !v.explained(v.t.Table.UnitName(r, row)) {
 				unexplained++
 			}
-			g := "not told"
+			g := UnknownTreatment
 			if v.t.Allotment != nil {
 				g = TreatmentText(v.t, r.Unit, int(r.Instance[row]))
 			}
@@ -323,6 +323,9 @@ func (v *evidence) leftOut(out *Part) {
 		}
 		for k, g := range groups {
 			groups[k] = numbered(n[g], "value") + " of " + clip(g)
+			if g == UnknownTreatment {
+				groups[k] = numbered(n[g], "value") + ", " + g
+			}
 		}
 		if len(groups) > 0 {
 			says = append(says, fmt.Sprintf("%s: %s", ResponseLabelText(r.Protocol), few(groups, "groups have losses")))
@@ -393,7 +396,7 @@ func (v *evidence) losses(kinds ...string) (says, lacks, groupless []string, eve
 		}
 		group := ""
 		if u, i, bad := finder.Unit(e.Unit); bad == nil && v.t.Allotment != nil {
-			if g := TreatmentText(v.t, u, int(i)); g != "not known" {
+			if g := TreatmentText(v.t, u, int(i)); g != UnknownTreatment {
 				group = " on " + clip(g)
 			}
 		}

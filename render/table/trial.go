@@ -553,6 +553,9 @@ func Losses(t *trial.Trial) doc.Table {
 	sortTreatments(t, unit, order)
 	for _, k := range order {
 		c := counts[k]
+		if k == prose.UnknownTreatment && *c == (count{}) {
+			continue
+		}
 		out.Rows = append(out.Rows, doc.Row{Cells: []doc.Cell{cell(k), cell(num.Count(c.deaths)), cell(num.Count(c.removals)), cell(num.Count(c.illnesses))}})
 	}
 	return out
@@ -635,6 +638,9 @@ func Baseline(t *trial.Trial) doc.Table {
 			first := true
 			for _, x := range names {
 				v := values[x]
+				if x == prose.UnknownTreatment && len(v) == 0 {
+					continue
+				}
 				m, sd := moments(v)
 				d := num.SEDecimals(sd)
 				show := label
