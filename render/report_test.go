@@ -536,13 +536,6 @@ func TestUnknownTemplate(t *testing.T) {
 			t.Errorf("%s: %v %v", name, list, err)
 		}
 	}
-	own := copied(t, trials(t)["demo"])
-	edit(t, own, trial.ProtocolFile, "\n[data]\n", "\n[report]\ntemplate = \"chapters\"\n\n[data]\n")
-	x, rs, _ = opened(t, own)
-	_, list, err := Report(x, rs, Options{})
-	if err != nil || len(list) != 1 || list[0].Pos != x.Protocol.Pos("report.template") || list[0].Pos.Line < 2 {
-		t.Errorf("%v %v", list, err)
-	}
 }
 
 // Every function, table, figure, paragraph, list and part that the built-in templates

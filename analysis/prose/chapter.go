@@ -1316,7 +1316,7 @@ func ChapterMeasurements(t *trial.Trial) []Passage {
 		if len(primary) > 0 {
 			s.add("%s %s %s", plural(len(primary), "The primary response", "The primary responses"), d.be(len(primary)), And(primary))
 		}
-		s.see("responses", "All %s responses are defined in a table", num.Count(len(p.Responses)))
+		s.see("responses", "The %s responses are listed with how each was measured", num.Count(len(p.Responses)))
 	} else {
 		if len(primary) > 0 {
 			s.add("%s %s %s", plural(len(primary), "The primary response", "The primary responses"), d.be(len(primary)), series(primary))

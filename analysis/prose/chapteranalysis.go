@@ -495,20 +495,23 @@ func chapterPlan(t *trial.Trial, rs *result.Results) []Passage {
 	if len(all) == 0 {
 		return nil
 	}
-	var over []string
+	var over, terms []string // what terms are tested over, and those
 	for i := range p.Terms {
 		x := &p.Terms[i]
 		if x.Stratum < 0 || x.Inexact {
 			continue
 		}
-		st := &p.Strata[x.Stratum]
-		what := TermText(p, x.Name) + " over "
+		by := ErrorName(p, p.Strata[x.Stratum].Unit)
 		if x.Over >= 0 {
-			what += TermText(p, p.Crossed[x.Over].Name)
-		} else {
-			what += ErrorName(p, st.Unit)
+			by = TermText(p, p.Crossed[x.Over].Name)
 		}
-		over = append(over, fmt.Sprintf("%s (%s df)", what, num.DF(float64(x.ErrorDF))))
+		by = fmt.Sprintf("%s (%s df)", by, num.DF(float64(x.ErrorDF)))
+		k := slices.Index(over, by)
+		if k < 0 {
+			over, terms = append(over, by), append(terms, TermText(p, x.Name))
+			continue
+		}
+		terms[k] += "\x00" + TermText(p, x.Name)
 	}
 	for _, g := range groups(all, func(r *result.Response) string {
 		x := t.Protocol.Response(r.Name)
@@ -537,8 +540,16 @@ func chapterPlan(t *trial.Trial, rs *result.Results) []Passage {
 		}
 		s.add("%s", line)
 	}
+	for k := range over {
+		over[k] = And(strings.Split(terms[k], "\x00")) + " over " + over[k]
+	}
 	if len(over) > 0 {
-		s.add("Tests will be made of %s", strings.Join(over, ", "))
+		over[0] = strings.Replace(over[0], " over ", " will be tested over ", 1)
+		list := over[0]
+		if n := len(over); n > 1 {
+			list = strings.Join(over[:n-1], ", ") + ", and " + over[n-1]
+		}
+		s.add("%s", list)
 	}
 	if c := t.Protocol.CarryOver; c != nil {
 		s.add("Carry-over from one %s to the next will be a term of the model", unitText(t, c.Along))

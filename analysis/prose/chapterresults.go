@@ -105,10 +105,13 @@ func lossText(t *trial.Trial) string {
 			continue
 		}
 		u, i, bad := finder.Unit(e.Unit)
-		if bad != nil || p.Coarse(u, unit) == nil {
+		if bad != nil {
 			continue
 		}
-		who := TreatmentText(t, unit, int(p.Coarse(u, unit)[i]))
+		who := "" // a unit that has several treatments, such as a cow over periods
+		if p.Coarse(u, unit) != nil {
+			who = TreatmentText(t, unit, int(p.Coarse(u, unit)[i]))
+		}
 		if found[e.Kind] == nil {
 			found[e.Kind] = map[string]*loss{}
 		}
@@ -129,12 +132,15 @@ func lossText(t *trial.Trial) string {
 	for _, k := range kinds {
 		var of []string
 		total := 0
-		for _, who := range TreatmentOrder(t, unit) {
+		for _, who := range append(TreatmentOrder(t, unit), "") {
 			x := found[k.kind][who]
 			if x == nil {
 				continue
 			}
-			line := fmt.Sprintf("%s at %s", small(x.n), who)
+			line := small(x.n)
+			if who != "" {
+				line += " at " + who
+			}
 			if len(x.causes) > 0 {
 				line += " (" + And(x.causes) + ")"
 			}
@@ -152,8 +158,11 @@ func lossText(t *trial.Trial) string {
 			verb = plural(total, "was ", "were ") + k.verb
 		}
 		if len(of) == 1 {
-			of[0] = strings.TrimPrefix(of[0], small(total)+" ")
-			parts = append(parts, fmt.Sprintf("%s %s, %s", someAnimals(t, total), verb, of[0]))
+			of[0] = strings.TrimSpace(strings.TrimPrefix(of[0], small(total)))
+			if strings.HasPrefix(of[0], "at ") {
+				verb += ","
+			}
+			parts = append(parts, strings.TrimSpace(fmt.Sprintf("%s %s %s", someAnimals(t, total), verb, of[0])))
 			continue
 		}
 		parts = append(parts, fmt.Sprintf("%s %s: %s", someAnimals(t, total), verb, series(of)))
@@ -465,15 +474,14 @@ func ChapterOthers(t *trial.Trial, rs *result.Results) []Passage {
 				least = math.Min(least, float64(x.P))
 				continue
 			}
-			lead := of
-			if told > 0 {
-				lead = "it"
+			line := fmt.Sprintf("for %s, %s gave %s", responseName(r), of, testText(*x))
+			switch {
+			case told > 0:
+				line = fmt.Sprintf("for %s it gave %s", responseName(r), testText(*x))
+			case len(all) == 1 && source != sources[0]:
+				line = fmt.Sprintf("%s gave %s", of, testText(*x))
 			}
 			told++
-			line := fmt.Sprintf("for %s, %s gave %s", responseName(r), lead, testText(*x))
-			if lead == "it" {
-				line = fmt.Sprintf("for %s it gave %s", responseName(r), testText(*x))
-			}
 			s.see(TableID(ownTerm(p, r, source), true), "%s", line)
 			for _, e := range effects(p, r, source, standing(p, r)) {
 				s.add("%s", e)

@@ -31,8 +31,9 @@ func (a *app) new() *cobra.Command {
 		Short: "writes a commented protocol to start from",
 		Long: "new writes a protocol with comments into DIR, which need not exist: that of the design\n" +
 			"named with --like, or, on a terminal, the one that a few questions lead to. With\n" +
-			"--template it writes a report template into DIR, for changing. Nothing is overwritten.",
-		Example: "  penwright new barrows --like randomized-block\n  penwright new --list\n  penwright new barrows --template audit",
+			"--template it writes a report template into DIR, for changing; DIR may end in a name of\n" +
+			"its own for it, such as barrows/mine.md. Nothing is overwritten.",
+		Example: "  penwright new barrows --like randomized-block\n  penwright new --list\n  penwright new barrows --template chapter",
 		Args:    one("DIR"),
 		RunE: func(_ *cobra.Command, args []string) error {
 			if list {
@@ -182,13 +183,17 @@ func (a *app) newTrial(dir string, files []folder.Change) error {
 var part = regexp.MustCompile(`\{\{template "([a-z -]+)" \.\}\}`)
 
 // newTemplate writes a built-in report template with its parts written out, so that one
-// file can be changed at will.
+// file can be changed at will. Where the folder ends in a name of a Markdown file, that is
+// what the template is called.
 func (a *app) newTemplate(dir, name string) error {
 	if !slices.Contains(render.Templates(), name) {
 		return unknown("template", name, render.Templates())
 	}
 	file := name + ".md"
 	text, err := fs.ReadFile(templates.FS, file)
+	if path.Ext(dir) == ".md" {
+		dir, file = filepath.Dir(dir), filepath.Base(dir)
+	}
 	if err != nil {
 		panic("main: a built-in template cannot be read")
 	}

@@ -134,8 +134,8 @@ func TestTemplateWrittenOut(t *testing.T) {
 					if err != nil {
 						t.Fatal(err)
 					}
-					body, _, ok := strings.Cut(string(text), " Provenance\n")
-					if !ok {
+					body, _, ok := strings.Cut(string(text), " Provenance\n") // a chapter has none
+					if !ok && name != "chapter" {
 						t.Fatal("the report has no section Provenance")
 					}
 					texts = append(texts, regexp.MustCompile(`[0-9a-f]{12}`).ReplaceAllString(body, "fingerprint"))
