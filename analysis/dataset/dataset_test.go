@@ -449,3 +449,23 @@ func TestCodes(t *testing.T) {
 		}
 	}
 }
+
+// Messages show numbers as people write them, unless only the last digits tell why.
+func TestReadable(t *testing.T) {
+	for _, tt := range []struct {
+		v      float64
+		beside []float64
+		want   string
+	}{
+		{v: 0.1 + 0.2, want: "0.3"},
+		{v: 12.300000000000001, beside: []float64{0, 10}, want: "12.3"},
+		{v: (500.3 - 31.7) / 7 * 1000, beside: []float64{200, 1500}, want: "66942.85714"},
+		{v: 1500.0000000002274, beside: []float64{200, 1500}, want: "1500.0000000002274"},
+		{v: 1e-300, want: "1e-300"},
+		{v: -42, beside: []float64{0, 1}, want: "-42"},
+	} {
+		if got := readable(tt.v, tt.beside...); got != tt.want {
+			t.Errorf("%v beside %v: %s, want %s", tt.v, tt.beside, got, tt.want)
+		}
+	}
+}

@@ -416,7 +416,7 @@ func (r *reader) unmet() {
 				switch {
 				case c.met:
 				case c.seen:
-					r.fail(key+".value", BadConfirmation, "confirm the value that the data give", "%s of %s is %v, not %v", p.Response, unitText(p.Unit), c.value, p.Value)
+					r.fail(key+".value", BadConfirmation, "confirm the value that the data give", "%s of %s is %s, not %v", p.Response, unitText(p.Unit), readable(c.value, p.Value), p.Value)
 				default:
 					r.fail(key+".unit", BadConfirmation, "", "there is no value of %s for %s", p.Response, unitText(p.Unit))
 				}

@@ -1,9 +1,11 @@
 package dataset
 
 import (
+	"cmp"
 	"fmt"
 	"math"
 	"slices"
+	"strconv"
 
 	"penwright/protocol"
 	"penwright/protocol/allot"
@@ -347,7 +349,7 @@ func (r *reader) notComputed(j *job, pos diag.Pos, unit string, values []float64
 		if i > 0 {
 			with += ", "
 		}
-		with += fmt.Sprintf("%s = %v", v.name, values[i])
+		with += fmt.Sprintf("%s = %s", v.name, readable(values[i]))
 	}
 	r.faults.Add(diag.Diagnostic{Pos: pos, Code: BadCompute, Message: fmt.Sprintf("%s cannot be computed for %s with %s", j.p.Name, unit, with),
 		Hint:    "a division by zero, or a logarithm or root of a number that has none",
@@ -548,9 +550,19 @@ func (r *reader) outside(j *job, line int32, unit string, v float64) {
 		r.faults.Add(diag.Diagnostic{Code: OutsideRange})
 		return
 	}
-	r.faults.Add(diag.Diagnostic{Pos: r.place(j.base, line, j.p.Name), Code: OutsideRange, Message: fmt.Sprintf("%s of %s is %v, outside %v to %v", j.p.Name, unit, v, j.p.Range[0], j.p.Range[1]),
+	r.faults.Add(diag.Diagnostic{Pos: r.place(j.base, line, j.p.Name), Code: OutsideRange, Message: fmt.Sprintf("%s of %s is %s, outside %v to %v", j.p.Name, unit, readable(v, j.p.Range[0], j.p.Range[1]), j.p.Range[0], j.p.Range[1]),
 		Hint:    "correct it under [[correction]], or confirm it under [[data.confirmed]] if it was checked and stands",
 		Related: []diag.Related{{Pos: r.plan.Protocol.Pos(j.key + ".range"), Message: "the range"}}})
+}
+
+// readable is a number without what arithmetic leaves in its last digits, unless it would
+// then stand elsewhere beside one of the others.
+func readable(v float64, beside ...float64) string {
+	x, err := strconv.ParseFloat(strconv.FormatFloat(v, 'g', 10, 64), 64)
+	if err != nil || slices.ContainsFunc(beside, func(b float64) bool { return cmp.Compare(x, b) != cmp.Compare(v, b) }) {
+		return fmt.Sprint(v)
+	}
+	return fmt.Sprint(x)
 }
 
 // confirm tells whether a person confirmed the value of a row. i is an instance of the
