@@ -2,6 +2,8 @@ package page
 
 import (
 	"fmt"
+	"math"
+	"slices"
 	"strings"
 
 	"penwright/protocol/diag"
@@ -19,6 +21,8 @@ type box struct {
 	below       float64 // space below; of two spaces that meet the larger counts
 	keep        bool    // stands on the same page as the box after it
 	ops         []Op
+	above       []Op  // a rule, but not where the box begins a page or stands under a repeated head
+	again       bool  // a head that is repeated
 	notes       []int // footnotes called in it
 	anchors     []anchor
 	within      []*band
@@ -53,8 +57,17 @@ type item struct {
 	// figure makes the boxes of a figure no higher than a limit; it may float to the top
 	// of the next page.
 	figure func(highest float64) []box
-	turned bool // stands on a turned page
-	table  bool
+	head   []box // the headings above, where there are any
+	below  *item // what stands below them
+	// squeeze makes the boxes closer together, to end no lower than a limit if it can.
+	squeeze func(room float64) []box
+	turned  bool // stands on a turned page
+	table   bool
+}
+
+// text tells whether it is running text, which other things may change places with.
+func (it item) text() bool {
+	return it.heading == 0 && it.figure == nil && it.squeeze == nil && !it.table && !it.turned && len(it.boxes) > 0
 }
 
 // where says where blocks are set.
@@ -239,33 +252,55 @@ func (s *setter) top() where {
 	return where{width: s.measure, size: textSize, lead: textLead, parent: s.root}
 }
 
-// title sets the head of the first page.
+// title sets the head of the first page: what the trial is called and how it stands
+// above, then the title, then the people.
 func (s *setter) title() []item {
 	d := s.doc
 	w := s.top()
 	var boxes []box
-	if d.Title != "" {
-		el := s.element(Element{Role: Title, Parent: s.root})
-		st := bold(sans(19))
-		boxes = append(boxes, lineBoxes(ragged(s.plainAtoms(d.Title, st), w.width), st, 23, w, 0, el)...)
-	}
-	var parts []string
-	for _, p := range []string{d.Code, d.Status, d.Author, d.Date} {
-		if p != "" {
-			parts = append(parts, strings.ReplaceAll(p, " ", "\u00A0"))
+	add := func(role Role, text string, st style, lead, gap float64) {
+		if text == "" {
+			return
 		}
-	}
-	if len(parts) > 0 {
-		el := s.element(Element{Role: Paragraph, Parent: s.root})
-		st := in(grey, sans(9))
-		lines := lineBoxes(ragged(s.plainAtoms(strings.Join(parts, "  ·  "), st), w.width), st, 12.5, w, 0, el)
-		space(lines, 5, 0)
+		el := s.element(Element{Role: role, Parent: s.root})
+		lines := lineBoxes(ragged(s.plainAtoms(text, st), w.width), st, lead, w, 0, el)
+		space(lines, gap, 0)
 		boxes = append(boxes, lines...)
 	}
+	small := in(grey, sans(8.5))
+	var state []string
+	for _, t := range []string{d.Status, d.Date} {
+		if t != "" {
+			state = append(state, strings.ReplaceAll(t, " ", "\u00A0"))
+		}
+	}
+	code, right := strings.ReplaceAll(d.Code, " ", "\u00A0"), strings.Join(state, "\u2002·\u2002")
+	if wide := textWidth(right, small); textWidth(code, small)+wide+24 <= w.width && code != "" && right != "" {
+		add(Paragraph, code, bold(small), 12, 0)
+		if len(boxes) == 1 {
+			el := s.element(Element{Role: Paragraph, Parent: s.root})
+			l := line{atoms: s.plainAtoms(right, small)}
+			boxes[0].ops = append(boxes[0].ops, enclose(el, l.draw(w.width-wide, baseline(small, 12)))...)
+		}
+	} else {
+		add(Paragraph, strings.Join(slices.DeleteFunc([]string{code, right}, func(t string) bool { return t == "" }), " · "), small, 12, 0)
+	}
+	if len(boxes) > 0 && d.Title != "" {
+		boxes = append(boxes, box{gap: 3, height: hair, ops: artifact(Box{Width: w.width, Height: hair, Colour: faint})})
+	}
+	size := titleSize
+	for size > titleSize-4 && textWidth(d.Title, bold(sans(size))) > w.width {
+		size -= 0.5
+	}
+	if textWidth(d.Title, bold(sans(size))) > w.width {
+		size = titleSize // it takes more lines anyway
+	}
+	add(Title, d.Title, bold(sans(size)), size*titleLead, 20)
+	add(Paragraph, d.Author, serif(textSize+1.5), 15.5, 6)
 	if len(boxes) == 0 {
 		return nil
 	}
-	boxes = append(boxes, box{gap: 7, height: 12, ops: artifact(Box{Width: w.width, Height: thick, Colour: ink})})
+	boxes = append(boxes, box{gap: 10, height: 8, ops: artifact(Box{Width: w.width, Height: thick, Colour: ink})})
 	for i := range boxes[:len(boxes)-1] {
 		boxes[i].keep = true
 	}
@@ -286,6 +321,10 @@ func (s *setter) items(blocks []doc.Block) []item {
 			items = append(items, s.tableItem(b, w))
 		case doc.Figure:
 			items = append(items, s.figureItem(b, w))
+		case doc.Contents:
+			if boxes := s.contents(w, math.Inf(1)); len(boxes) > 0 {
+				items = append(items, item{boxes: boxes, squeeze: func(room float64) []box { return s.contents(w, room) }})
+			}
 		default:
 			if boxes := s.block(b, w); len(boxes) > 0 {
 				items = append(items, item{boxes: boxes})
@@ -309,12 +348,15 @@ func lead(items []item) []item {
 			items[i+1], items[i+2] = items[i+2], items[i+1]
 		}
 		next := items[i+1]
+		below := next
 		if next.heading > 0 {
 			next.heading = min(next.heading, it.heading)
 		} else {
 			next.heading = it.heading
 		}
+		next.head, next.below = it.boxes, &below
 		next.boxes = under(it.boxes, next.boxes)
+		next.squeeze = nil
 		if figure := next.figure; figure != nil {
 			head := it.boxes
 			next.figure = func(highest float64) []box { return under(head, figure(highest-total(head)-floatGap)) }
@@ -385,7 +427,7 @@ func (s *setter) block(b doc.Block, w where) []box {
 	case doc.Aside:
 		return s.aside(b, w)
 	case doc.Contents:
-		return s.contents(w)
+		return s.contents(w, math.Inf(1))
 	case doc.Table:
 		return s.table(b, w).boxes
 	case doc.Figure:
@@ -612,18 +654,26 @@ func (s *setter) aside(a doc.Aside, w where) []box {
 	return boxes
 }
 
-// contents lists the headings down to the third level, or the second where there are
-// many, with their pages.
-func (s *setter) contents(w where) []box {
-	deep := 3
-	n := 0
-	for _, e := range s.entries {
-		if e.level <= 3 {
-			n++
+// contents sets the table of contents, two levels of it. It is set closer where it then
+// ends on the page it begins on, room being what that has left.
+func (s *setter) contents(w where, room float64) []box {
+	var boxes []box
+	for i, lead := range []float64{13, 12.25, 11.5, 10.9} {
+		closer := s.contentsAt(w, lead)
+		if i == 0 {
+			boxes = closer
+		}
+		if total(closer) <= room {
+			return closer
 		}
 	}
-	if n > 45 {
-		deep = 2
+	return boxes
+}
+
+func (s *setter) contentsAt(w where, lead float64) []box {
+	top := 6
+	for _, e := range s.entries {
+		top = min(top, e.level)
 	}
 	title := s.element(Element{Role: Paragraph, Parent: w.parent})
 	parent := s.element(Element{Role: Contents, Parent: w.parent})
@@ -635,14 +685,12 @@ func (s *setter) contents(w where) []box {
 		head[i].keep = true
 	}
 	for _, e := range s.entries {
-		if e.level > deep {
+		if e.level > top+1 {
 			continue
 		}
-		st := serif(w.size)
-		indent := float64(e.level-1) * 22
-		gap := 0.0
-		if e.level == 1 {
-			st, indent, gap = bold(sans(w.size-0.8)), 0, 4
+		st, indent, gap := sans(contentsSize), 22.0, 0.0
+		if e.level == top {
+			st, indent, gap = bold(st), 0, lead-9
 		}
 		number, numberWidth := s.shorten(e.number, st, w.width/4), 0.0
 		if number != "" {
@@ -650,39 +698,56 @@ func (s *setter) contents(w where) []box {
 		}
 		el := s.element(Element{Role: ContentsEntry, Parent: parent})
 		x := w.x + indent
-		avail := max(w.width-(x-w.x)-numberWidth-34, 40)
+		avail := max(w.width-indent-numberWidth-34, 40)
 		link := st
 		link.link = "#" + e.anchor
 		link.target = &Element{Role: Linked, Alt: e.title}
 		// A space before the number of the page, and after that of the heading, for those
 		// who copy the text.
 		text := append(uncalled(e.text), doc.Text{Text: " "})
-		lines := lineBoxes(ragged(s.atoms(text, link, w.pos), avail), st, w.lead, w, x+numberWidth, el)
+		lines := lineBoxes(ragged(s.atoms(text, link, w.pos), avail), st, lead, w, x+numberWidth, el)
 		if len(lines) == 0 {
 			continue
 		}
 		for i := range lines {
 			lines[i].notes = nil // a note belongs to the heading itself
+			lines[i].keep = i < len(lines)-1
 		}
 		if number != "" {
-			label := lineBoxes(ragged(s.plainAtoms(number+" ", st), w.width), st, w.lead, w, x, el)
+			label := lineBoxes(ragged(s.plainAtoms(number+" ", st), w.width), st, lead, w, x, el)
 			if len(label) > 0 {
 				lines[0].ops = append(label[0].ops, lines[0].ops...)
 			}
 		}
 		lines[0].gap = gap
-		at := sans(w.size - 0.8)
-		if e.level > 1 {
-			at = serif(w.size)
+		if e.level == top {
+			// A rule guides the eye to the number of the page.
+			lines[0].ops = append(artifact(Box{X: w.x, Y: -gap / 2, Width: w.width, Height: hair, Colour: faint}), lines[0].ops...)
 		}
+		// Neither a chapter nor its last section stands alone.
+		n := len(boxes)
+		switch {
+		case n > 0 && e.level > top && boxes[n-1].gap > 0:
+			boxes[n-1].keep = true
+		case n > 1 && e.level == top && boxes[n-1].gap == 0:
+			boxes[n-2].keep = true
+		}
+		at := st
 		at.link, at.target = link.link, &Element{Role: Linked, Alt: e.title}
-		lines[len(lines)-1].pageOf = &pageOf{anchor: e.anchor, right: w.x + w.width, y: baseline(st, w.lead), style: at, element: el}
+		lines[len(lines)-1].pageOf = &pageOf{anchor: e.anchor, right: w.x + w.width, y: baseline(st, lead), style: at, element: el}
 		boxes = append(boxes, lines...)
 	}
 	if len(boxes) == 0 {
 		return nil
 	}
+	// The first lines stay under the word above, the last are not left alone.
+	for i := range boxes[:len(boxes)-1] {
+		if i < 2 || i >= len(boxes)-4 {
+			boxes[i].keep = true
+		}
+	}
 	boxes = append(head, boxes...)
+	boxes[len(boxes)-1].keep = false
 	boxes[len(boxes)-1].below = 12
 	return boxes
 }

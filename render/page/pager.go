@@ -3,6 +3,7 @@ package page
 import (
 	"fmt"
 	"math"
+	"slices"
 	"strings"
 
 	"penwright/protocol/diag"
@@ -43,11 +44,21 @@ func newPager(s *setter) *pager {
 
 func (p *pager) run(items []item) {
 	p.open(false)
-	for _, it := range items {
+	for i := 0; i < len(items); i++ {
+		it := items[i]
+		if i+1 < len(items) && it.figure != nil && it.heading > 0 && items[i+1].text() && it.below.heading == 0 && !p.fits(it.boxes) {
+			// The text under a heading goes on, its figure follows on the next page.
+			after := items[i+1]
+			after.boxes, after.heading = under(it.head, after.boxes), it.heading
+			p.item(after)
+			p.item(*it.below)
+			i++
+			continue
+		}
 		p.item(it)
 	}
 	for len(p.waiting) > 0 {
-		p.turn(nil)
+		p.turn()
 	}
 	for len(p.carry) > 0 {
 		p.open(false)
@@ -77,7 +88,7 @@ func (p *pager) item(it item) {
 		if !p.fits(it.boxes) {
 			it.boxes = it.figure(p.room() - 1)
 			if !p.fits(it.boxes) || total(it.boxes) < 0.85*total(it.figure(p.s.pageHeight(false))) {
-				p.turn(nil)
+				p.turn()
 				it.boxes = it.figure(p.room() - 1)
 			}
 		}
@@ -88,6 +99,9 @@ func (p *pager) item(it item) {
 		return
 	case len(p.waiting) > 0 && p.barrier(it):
 		p.flush()
+	}
+	if it.squeeze != nil {
+		it.boxes = it.squeeze(p.room() - max(it.boxes[0].gap, p.below))
 	}
 	p.flow(it.boxes)
 }
@@ -122,17 +136,21 @@ func (p *pager) awaits(figure bool) bool {
 }
 
 // barrier tells whether what waits must come before it: tables keep their order, and
-// nothing is left behind by its section unless the page is still rather empty.
+// no section leaves behind what belongs to it, but for a single figure or table at the
+// top of the next page, which a section within a chapter may leave to the next one.
 func (p *pager) barrier(it item) bool {
-	if it.table && p.awaits(false) {
+	switch {
+	case it.table && p.awaits(false) || it.heading == 1:
 		return true
+	case it.heading > 1:
+		return len(p.waiting) > 1 || p.room() < 0.2*p.s.pageHeight(p.cur.turned)
 	}
-	return it.heading == 1 || it.heading == 2 && p.room() < 0.5*p.s.pageHeight(p.cur.turned)
+	return false
 }
 
 func (p *pager) flush() {
 	for len(p.waiting) > 0 {
-		p.turn(nil)
+		p.turn()
 	}
 }
 
@@ -197,26 +215,49 @@ func (p *pager) flow(boxes []box) {
 	}
 }
 
-// chunk places boxes that belong together, on the next page if this one has no room.
+// chunk places boxes that belong together, on the next page if this one has no room, or
+// on the one after it if what has been waiting fills that.
 func (p *pager) chunk(boxes []box) {
 	if p.fits(boxes) {
 		p.place(boxes)
 		return
 	}
 	if len(p.cur.placed) > 0 && total(boxes) < p.s.pageHeight(p.cur.turned) {
-		p.turn(boxes[0].within)
-		if p.fits(boxes) {
-			p.place(boxes)
-			return
+		before := p.cur
+		for more := true; more; {
+			more = len(p.waiting) > 0
+			p.turn()
+			heads := p.heads(before, boxes[0].within)
+			if all := slices.Concat(heads, boxes); p.fits(all) {
+				p.place(all)
+				return
+			}
 		}
+		p.place(p.heads(before, boxes[0].within))
 	}
 	// Higher than a page: break where it must.
 	for i := range boxes {
 		if !p.fits(boxes[i:i+1]) && len(p.cur.placed) > 0 {
-			p.turn(boxes[i].within)
+			before := p.cur
+			p.turn()
+			p.place(p.heads(before, boxes[i].within))
 		}
 		p.place(boxes[i : i+1])
 	}
+}
+
+// heads are those to be repeated above a box that goes on what a page ended with.
+func (p *pager) heads(before *sheet, within []*band) []box {
+	var out []box
+	if len(before.placed) == 0 {
+		return nil
+	}
+	for _, b := range within {
+		if continues(before, b) && total(b.head) < p.room()/2 {
+			out = append(out, b.head...)
+		}
+	}
+	return out
 }
 
 func (p *pager) place(boxes []box) {
@@ -278,11 +319,9 @@ func (p *pager) open(turned bool) {
 	p.settle(p.s.pageHeight(turned) / 2)
 }
 
-// turn begins a page: first what has been waiting, then the repeated heads of what goes
-// on across the break.
-func (p *pager) turn(within []*band) {
-	before := p.cur
-	turned := before.turned
+// turn begins a page with what has been waiting.
+func (p *pager) turn() {
+	turned := p.cur.turned
 	waiting := p.waiting
 	p.waiting = nil
 	if len(waiting) == 0 {
@@ -313,14 +352,6 @@ func (p *pager) turn(within []*band) {
 			} else {
 				p.float(it)
 			}
-		}
-	}
-	if len(before.placed) == 0 {
-		return
-	}
-	for _, b := range within {
-		if continues(before, b) && total(b.head) < p.room()/2 {
-			p.place(b.head)
 		}
 	}
 }
@@ -360,7 +391,10 @@ func (p *pager) finish() *Book {
 				}
 			}
 		}
-		for _, b := range sh.placed {
+		for k, b := range sh.placed {
+			if k > 0 && !sh.placed[k-1].box.again {
+				put(b.box.above, marginTop+b.y)
+			}
 			put(b.box.ops, marginTop+b.y)
 			mark(b.box, marginTop+b.y)
 		}

@@ -19,6 +19,9 @@ const (
 	noteSize, noteLead   = 8.5, 11.0  // footnotes
 	codeSize, codeLead   = 8.0, 10.6
 
+	titleSize, titleLead = 21.0, 1.21 // of the size
+	contentsSize         = 9.0
+
 	tableSize, tableSizeMin = 8.5, 7.0
 	tableLead               = 1.28 // of the size
 	rowPad                  = 2.0  // above and below the text of a row

@@ -488,7 +488,8 @@ func (s *setter) tableBody(t doc.Table, g *grid, f form, w where, el *Element) [
 	for i, r := range g.rows {
 		rows := g.rowBoxes(r, f, lead, in, el, tallRow)
 		if r.rule {
-			rows[0].ops = append(artifact(Box{X: w.x, Y: 1, Width: f.width, Height: hair, Colour: ink}), shifted(rows[0].ops, 2.5)...)
+			rows[0].above = artifact(Box{X: w.x, Y: 1, Width: f.width, Height: hair, Colour: ink})
+			rows[0].ops = shifted(rows[0].ops, 2.5)
 			rows[0].height += 2.5
 		}
 		if r.group {
@@ -532,7 +533,7 @@ func (s *setter) repeated(t doc.Table, head box, f form, w where) []box {
 		space(out, 0, 3)
 	}
 	again := head
-	again.notes, again.anchors, again.gap = nil, nil, 0
+	again.notes, again.anchors, again.gap, again.again = nil, nil, 0, true
 	again.ops = nil
 	for _, o := range head.ops {
 		switch o := o.(type) {

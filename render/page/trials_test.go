@@ -45,8 +45,8 @@ func reports(t *testing.T) map[string]*doc.Document {
 	return out
 }
 
-// Every page of the trials' reports, on either paper, is set as the rules of the page
-// want it.
+// Every page of the trials' reports, on either paper and wherever the pages happen to
+// end, is set as the rules of the page want it.
 func TestTrials(t *testing.T) {
 	all := reports(t)
 	names := make([]string, 0, len(all))
@@ -55,6 +55,10 @@ func TestTrials(t *testing.T) {
 	}
 	slices.Sort(names)
 	even, ragged := 0, 0
+	shifts := 6
+	if testing.Short() {
+		shifts = 1
+	}
 	for _, name := range names {
 		for _, paper := range []string{"A4", "Letter"} {
 			t.Run(name+" "+paper, func(t *testing.T) {
@@ -66,6 +70,16 @@ func TestTrials(t *testing.T) {
 				}
 				check(t, book)
 				breaks(t, book)
+				for shift := range shifts {
+					moved := d
+					moved.Blocks = nil
+					for range 2*shift + 1 {
+						moved.Blocks = append(moved.Blocks, doc.Paragraph{Text: text("filler")})
+					}
+					moved.Blocks = append(moved.Blocks, d.Blocks...)
+					book, _ := page.Lay(&moved)
+					breaks(t, book)
+				}
 				lines, uneven := justifiedLines(book)
 				loose := 0.0
 				for i := range book.Pages {
