@@ -71,26 +71,96 @@ func (v *pictures) layoutMap() []doc.Block {
 	names, of := v.treatments(unit)
 	out := v.excluded("")
 	lost := v.without(unit)
+	// Where the larger units that hold a unit bear what they received, it bears only its own.
+	own := v.nested(unit)
+	rank := map[string]int{}
+	if own {
+		names = v.ownNames(unit)
+		for i, n := range names {
+			rank[n] = i
+		}
+	}
 	m := figure.FromPlan(p, func(u, i int) figure.Look {
 		l := figure.Look{Treatment: -1, Value: math.NaN(), Excluded: out(u, i), Lost: u == unit && lost != nil && lost[i]}
-		if v.trial.Allotment == nil {
-			return l
-		}
-		if u == unit {
+		switch {
+		case v.trial.Allotment == nil:
+		case u != unit:
+			l.Label = v.ownLevels(u, i)
+		case own:
+			if t, ok := rank[v.ownLevels(u, i)]; ok {
+				l.Treatment, l.Label = t, names[t]
+			}
+		default:
 			if name := names[of(i)]; name != prose.UnknownTreatment {
 				l.Treatment, l.Label = of(i), name
 			}
-		} else {
-			l.Label = v.ownLevels(u, i)
 		}
 		return l
 	})
 	m.Treatments = told(names, nil)
 	caption := "Layout of the trial with the allotment"
-	if v.trial.Allotment == nil {
+	switch {
+	case v.trial.Allotment == nil:
 		caption = "Layout of the trial; treatments have not been drawn"
+	case own:
+		m.What = "level"
+		caption += "; what a larger unit received stands beside its name"
 	}
 	return figureOf("figure-map", caption, "map", m.Draw)
+}
+
+// nested says whether a unit receives something itself, and the other treated units that
+// it lies in are all boxes around it on a map.
+func (v *pictures) nested(unit int) bool {
+	p := v.trial.Plan
+	if v.trial.Allotment == nil || unit < 0 || len(p.Units[unit].Receives) == 0 {
+		return false
+	}
+	around := map[int]bool{}
+	for u := p.Units[unit].Within; u >= 0; u = p.Units[u].Within {
+		around[u] = true
+	}
+	larger := false
+	for u := range p.Units {
+		if u != unit && p.Coarse(unit, u) != nil && len(p.Units[u].Receives) > 0 {
+			// Of very many boxes not all have room for their names.
+			if larger = true; !around[u] || p.Units[u].N > 80 {
+				return false
+			}
+		}
+	}
+	return larger
+}
+
+// ownNames lists what a unit itself received, in the order of the levels.
+func (v *pictures) ownNames(unit int) []string {
+	p := v.trial.Plan
+	type entry struct {
+		key  []int32
+		name string
+	}
+	seen := map[string]bool{"": true}
+	var all []entry
+	for i := range p.Units[unit].N {
+		name := v.ownLevels(unit, i)
+		if seen[name] {
+			continue
+		}
+		seen[name] = true
+		e := entry{name: name}
+		for f := range p.Factors {
+			if levels := v.trial.Allotment.Levels[f]; p.Factors[f].Unit == unit && levels != nil {
+				e.key = append(e.key, levels[i])
+			}
+		}
+		all = append(all, e)
+	}
+	slices.SortStableFunc(all, func(a, b entry) int { return slices.Compare(a.key, b.key) })
+	names := make([]string, len(all))
+	for i, e := range all {
+		names[i] = e.name
+	}
+	return names
 }
 
 // excluded says of an instance of a unit whether it, or a larger unit that holds it, was

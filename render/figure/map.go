@@ -21,6 +21,7 @@ type Map struct {
 	// Treatments names what Cell.Treatment counts; a legend is drawn when a cell cannot
 	// or does not bear the name.
 	Treatments []string
+	What       string // one of Treatments is; empty: a treatment
 	// Shade is the title of the scale of Cell.Value, with its unit. Empty: the cells
 	// are coloured by treatment.
 	Shade string
@@ -813,18 +814,19 @@ func (m Map) words(all []Cell, n int) string {
 			given++
 		}
 	}
+	what := title(m.What, "treatment")
 	switch {
 	case given == 0:
 	case slices.Min(per) == slices.Max(per):
-		fmt.Fprintf(&b, " Each of %s stands on %s.", count(len(per), "treatment"), count(per[0], unit))
+		fmt.Fprintf(&b, " Each of %s stands on %s.", count(len(per), what), count(per[0], unit))
 	case len(per) <= listMost:
 		var each []string
 		for i, k := range per {
 			each = append(each, fmt.Sprintf("%s on %d", clean(m.Treatments[i]), k))
 		}
-		fmt.Fprintf(&b, " Treatments: %s.", strings.Join(each, ", "))
+		fmt.Fprintf(&b, " %ss: %s.", capital(what), strings.Join(each, ", "))
 	default:
-		fmt.Fprintf(&b, " %s, each on %d to %d %s.", count(len(per), "treatment"), slices.Min(per), slices.Max(per), unit+"s")
+		fmt.Fprintf(&b, " %s, each on %d to %d %s.", count(len(per), what), slices.Min(per), slices.Max(per), unit+"s")
 	}
 	if !values.empty() {
 		fmt.Fprintf(&b, " The cells are shaded by %s, from %s to %s", clean(m.Shade), rounded(values.lo), rounded(values.hi))
