@@ -210,3 +210,10 @@ func TestWanted(t *testing.T) {
 		}
 	}
 }
+
+// A chapter, with all its outputs, is a function of what rides inside it.
+func TestChapterFromItself(t *testing.T) {
+	opt := fixed
+	opt.Template = "chapter"
+	closed(t, trials(t)["demo"], opt)
+}

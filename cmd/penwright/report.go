@@ -29,9 +29,11 @@ func (a *app) report() *cobra.Command {
 			"one given with --out. A trial without data or without an allotment gives a report too.\n" +
 			"Prose of the author stands in it at the places that [report] narrative names; claims in\n" +
 			"it that the results do not bear out make the command fail. See: help templates.\n" +
+			"For an author who goes on writing there are LaTeX (report.tex around chapter.tex) and\n" +
+			"DOCX: the template chapter brings them, of the others they are made with --only.\n" +
 			"The same files give the same bytes; the date the report bears is the last one the\n" +
 			"trial mentions, or that of SOURCE_DATE_EPOCH.",
-		Example: "  penwright report hollowmere\n  penwright report hollowmere --only pdf,html --out /tmp/hollowmere",
+		Example: "  penwright report hollowmere\n  penwright report hollowmere --only pdf,html --out /tmp/hollowmere\n  penwright report hollowmere --template chapter --only tex,docx",
 		Args:    one("TRIAL"),
 		RunE: func(_ *cobra.Command, args []string) error {
 			for _, k := range only {

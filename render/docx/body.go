@@ -198,13 +198,17 @@ func (b *builder) footer(width int) string {
 	tab := fmt.Sprintf(`<w:tabs><w:tab w:val="right" w:pos="%d"/></w:tabs>`, width-2*margin)
 	left := joined(" · ", b.doc.Status, b.doc.Date)
 	return `<w:ftr ` + wordNS + `><w:p><w:pPr>` + style("Footer") + tab + `</w:pPr>` + b.run(left, "") + `<w:r><w:tab/></w:r>` +
-		b.run("page ", "") + field("PAGE", b.run("1", "")) + b.run(" of ", "") + field("NUMPAGES", b.run("1", "")) + `</w:p></w:ftr>`
+		b.run("page ", "") + b.field("PAGE", "1", "") + b.run(" of ", "") + b.field("NUMPAGES", "1", "") + `</w:p></w:ftr>`
 }
 
 // field writes a field with the text it shows until it is brought up to date.
-func field(code, shown string) string {
-	return `<w:r><w:fldChar w:fldCharType="begin"/></w:r><w:r><w:instrText xml:space="preserve"> ` + code + ` </w:instrText></w:r><w:r><w:fldChar w:fldCharType="separate"/></w:r>` +
-		shown + `<w:r><w:fldChar w:fldCharType="end"/></w:r>`
+func (b *builder) field(code, shown, rpr string) string {
+	open := `<w:r>`
+	if rpr != "" {
+		open += `<w:rPr>` + rpr + `</w:rPr>`
+	}
+	return open + `<w:fldChar w:fldCharType="begin"/></w:r>` + open + `<w:instrText xml:space="preserve"> ` + code + ` </w:instrText></w:r>` + open + `<w:fldChar w:fldCharType="separate"/></w:r>` +
+		b.run(shown, rpr) + open + `<w:fldChar w:fldCharType="end"/></w:r>`
 }
 
 func style(id string) string { return `<w:pStyle w:val="` + id + `"/>` }
@@ -351,7 +355,7 @@ func (b *builder) caption(kind, number, id, more string, text []doc.Inline) {
 	}
 	content := ""
 	if number != "" {
-		content = b.marked(id, b.run(kind+" ", "<w:b/><w:bCs/>")+field("SEQ "+kind+` \* ARABIC`, b.run(number, "<w:b/><w:bCs/>")))
+		content = b.marked(id, b.run(kind+" ", "<w:b/><w:bCs/>")+b.field("SEQ "+kind+` \* ARABIC`, number, "<w:b/><w:bCs/>"))
 		content += b.run(". ", "<w:b/><w:bCs/>")
 	}
 	b.out = append(b.out, element{ppr: b.turned(style("Caption")+more, text), content: content + b.inlines(flat(text), "")})
@@ -521,7 +525,7 @@ func (b *builder) ref(s *strings.Builder, r doc.Ref, f look, base string) {
 		s.WriteString(b.run(text[:i+1], f.rpr(base)))
 		code, text = "REF "+bookmark(n)+` \r \h`, text[i+1:]
 	}
-	s.WriteString(field(code, b.run(text, f.rpr(base))))
+	s.WriteString(b.field(code, text, f.rpr(base)))
 }
 
 // call calls a note; a second call, and one within a note, is a number.
