@@ -35,6 +35,7 @@ var lattice = map[string]string{
 	"analysis/dist":     "analysis/solve",
 	"analysis/strata":   "protocol/factor analysis/dist",
 	"analysis/linear":   "protocol/factor analysis/dist",
+	"analysis/mixed":    "protocol/factor analysis/dist analysis/solve analysis/strata analysis/linear",
 	"analysis/residual": "protocol/factor analysis/dist analysis/solve analysis/strata analysis/linear",
 	"analysis/power":    "protocol/factor analysis/dist analysis/solve analysis/strata analysis/linear",
 	"analysis/compare":  "analysis/dist analysis/solve",
