@@ -10,8 +10,12 @@ import (
 	"encoding/base64"
 	"fmt"
 	"io"
+	"net/url"
+	"regexp"
 	"strconv"
 	"strings"
+	"time"
+	"unicode/utf8"
 
 	"penwright/render/doc"
 )
@@ -89,9 +93,10 @@ func (p *page) head(opt Options) {
 	style = "\n" + strings.TrimSpace(style) + "\n" + paper(d) + "\n"
 	code := "\n" + strings.TrimSpace(script) + "\n"
 
-	title := d.Title
+	title := shortened(d.Title, longestTitle)
 	if d.Code != "" {
-		title += " – " + d.Code
+		code := shortened(d.Code, longestTitle/2)
+		title = shortened(d.Title, longestTitle-3-utf8.RuneCountInString(code)) + " – " + code
 	}
 	p.raw("<!DOCTYPE html>\n<html lang=\"", language(d.Lang), "\">\n<head>\n<meta charset=\"utf-8\">\n")
 	p.raw("<meta http-equiv=\"Content-Security-Policy\" content=\"default-src 'none'; style-src ", hash(style),
@@ -104,6 +109,18 @@ func (p *page) head(opt Options) {
 	p.raw("<title>", esc(title), "</title>\n<style>", style, "</style>\n</head>\n")
 	p.raw("<body>\n<a class=\"skip\" href=\"#x_main\">Skip to the text</a>\n")
 	p.tail = "<script>" + code + "</script>\n</body>\n</html>\n"
+}
+
+// longestTitle is the number of characters that the title of a window has room for.
+const longestTitle = 70
+
+// shortened returns s, or the beginning of it with a sign that more follows.
+func shortened(s string, longest int) string {
+	s = doc.Clean(s)
+	if utf8.RuneCountInString(s) <= longest {
+		return s
+	}
+	return strings.TrimSpace(string([]rune(s)[:longest-1])) + "…"
 }
 
 // paper is the rule for printed pages, with what stands at their feet.
@@ -160,7 +177,11 @@ func (p *page) body(files []Attachment) {
 			if d.Author != "" {
 				p.raw(" · ")
 			}
-			p.raw("<time>", esc(d.Date), "</time>")
+			if _, err := time.Parse(time.DateOnly, d.Date); err == nil {
+				p.raw("<time>", esc(d.Date), "</time>")
+			} else {
+				p.raw(esc(d.Date))
+			}
 		}
 		p.raw("</p>\n")
 	}
@@ -434,27 +455,67 @@ func (p *page) wrap(tag string, text []doc.Inline) {
 }
 
 func (p *page) link(dest, class string, text []doc.Inline) {
-	if p.inLink || !allowed(dest) {
+	address, ok := href(dest)
+	if p.inLink || !ok {
 		p.inlines(text)
 		return
 	}
 	p.inLink = true
-	p.raw("<a", class, " href=\"", esc(dest), "\">")
+	p.raw("<a", class, " href=\"", esc(address), "\">")
 	p.inlines(text)
 	p.raw("</a>")
 	p.inLink = false
 }
 
-// allowed tells whether a page may link to dest: nothing that runs, nothing beside it.
-func allowed(dest string) bool {
-	lower := strings.ToLower(dest)
-	for _, prefix := range []string{"#", "https://", "http://", "mailto:"} {
-		if strings.HasPrefix(lower, prefix) && len(dest) > len(prefix) {
-			return true
+// href returns the address to which a page may link: nothing that runs, nothing beside
+// it, and nothing that is no address.
+func href(dest string) (string, bool) {
+	dest = doc.Clean(dest)
+	if strings.HasPrefix(dest, "#") && len(dest) > 1 {
+		return dest, true
+	}
+	u, err := url.Parse(dest)
+	if err != nil {
+		return "", false
+	}
+	switch u.Scheme {
+	case "http", "https":
+		if !hostName.MatchString(u.Host) || u.User != nil {
+			return "", false
+		}
+	case "mailto":
+		if u.Opaque == "" {
+			return "", false
+		}
+	default:
+		return "", false
+	}
+	return encoded(dest), true
+}
+
+var hostName = regexp.MustCompile(`^[A-Za-z0-9.-]+(:[0-9]+)?$`)
+
+// encoded writes the bytes that an address cannot hold by their numbers (RFC 3986).
+func encoded(address string) string {
+	var b strings.Builder
+	hash := false
+	for i := range len(address) {
+		c := address[i]
+		switch {
+		case c >= 'a' && c <= 'z', c >= 'A' && c <= 'Z', c >= '0' && c <= '9', strings.IndexByte("-._~:/?@!$&'()*+,;=", c) >= 0,
+			c == '%' && i+2 < len(address) && hex(address[i+1]) && hex(address[i+2]):
+			b.WriteByte(c)
+		case c == '#' && !hash:
+			hash = true
+			b.WriteByte(c)
+		default:
+			fmt.Fprintf(&b, "%%%02X", c)
 		}
 	}
-	return false
+	return b.String()
 }
+
+func hex(c byte) bool { return c >= '0' && c <= '9' || c >= 'a' && c <= 'f' || c >= 'A' && c <= 'F' }
 
 func (p *page) call(n int) {
 	number := strconv.Itoa(n)

@@ -125,8 +125,8 @@ func TestHashesMatch(t *testing.T) {
 func everywhere(text string) *doc.Document {
 	words := []doc.Inline{
 		doc.Text{Text: text}, doc.Emph{Text: []doc.Inline{doc.Strong{Text: []doc.Inline{doc.Text{Text: text}}}}},
-		doc.CodeSpan{Text: text}, doc.Link{Dest: "https://" + text, Text: []doc.Inline{doc.Text{Text: text}}},
-		doc.Link{Dest: text, Text: []doc.Inline{doc.Text{Text: text}}},
+		doc.CodeSpan{Text: text}, doc.Link{Dest: "https://example.org/" + text, Text: []doc.Inline{doc.Text{Text: text}}},
+		doc.Link{Dest: "x:" + text, Text: []doc.Inline{doc.Text{Text: text}}},
 		doc.Ref{ID: text, Text: text}, doc.FootnoteRef{N: 1}, doc.FootnoteRef{N: 7},
 	}
 	ink := doc.Colour{A: 255, Role: doc.Ink}
@@ -216,6 +216,38 @@ func TestLinksThatRunAreNoLinks(t *testing.T) {
 		if page := write(t, d, nil, Options{}); !strings.Contains(page, "<p>t</p>") {
 			t.Errorf("%q is linked", dest)
 		}
+	}
+}
+
+func TestAddressesAreWhole(t *testing.T) {
+	for _, test := range []struct{ dest, want string }{
+		{"https://example.org/a?b=1&c=(2)", "https://example.org/a?b=1&amp;c=(2)"},
+		{"HTTPS://example.org/[a] <b>\"c#d#e%20", "HTTPS://example.org/%5Ba%5D%20%3Cb%3E%22c#d%23e%20"},
+		{"https://example.org/é", "https://example.org/%C3%A9"},
+		{"mailto:farm@example.org", "mailto:farm@example.org"},
+		{"https://<script>/", ""}, {"https://farm@example.org/", ""}, {"https://", ""}, {"http:x", ""}, {"mailto:", ""}, {"#", ""},
+	} {
+		d := &doc.Document{Blocks: []doc.Block{doc.Paragraph{Text: []doc.Inline{doc.Link{Dest: test.dest, Text: []doc.Inline{doc.Text{Text: "t"}}}}}}}
+		want := "<p>t</p>"
+		if test.want != "" {
+			want = `<p><a href="` + test.want + `">t</a></p>`
+		}
+		if page := write(t, d, nil, Options{}); !strings.Contains(page, want) {
+			t.Errorf("%q is not linked as %s", test.dest, want)
+		}
+	}
+	if got := encoded("a%zz"); got != "a%25zz" {
+		t.Error(got)
+	}
+}
+
+func TestTitleOfTheWindow(t *testing.T) {
+	page := write(t, &doc.Document{Title: strings.Repeat("Dried yeast ", 20), Code: "HM-26-04", Date: "next spring"}, nil, Options{})
+	if want := "<title>Dried yeast Dried yeast Dried yeast Dried yeast Dried yeas… – HM-26-04</title>"; !strings.Contains(page, want) {
+		t.Errorf("no %s", want)
+	}
+	if strings.Contains(page, "<time>") {
+		t.Error("what is no date is called one")
 	}
 }
 
