@@ -496,7 +496,8 @@ func (b *builder) link(s *strings.Builder, l doc.Link, f look, base string) {
 		if n, ok := b.marks[id]; ok {
 			open = `<w:hyperlink w:anchor="` + bookmark(n) + `">`
 		}
-	} else if u, err := url.Parse(doc.Clean(l.Dest)); err == nil && (u.Scheme == "http" || u.Scheme == "https" || u.Scheme == "mailto") && len(l.Dest) < 2000 {
+	} else if u, err := url.Parse(doc.Clean(l.Dest)); err == nil && len(l.Dest) < 2000 &&
+		((u.Scheme == "http" || u.Scheme == "https") && u.Host != "" || u.Scheme == "mailto" && u.Opaque != "") {
 		if !b.inLink {
 			open = `<w:hyperlink r:id="` + b.add("hyperlink", u.String(), true) + `">`
 		}

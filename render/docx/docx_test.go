@@ -503,6 +503,7 @@ func FuzzText(f *testing.F) {
 	for _, s := range []string{sample.Hostile, "]]>", "\x00\xff", "עברית abc", "\U0001F416\U000FFFFF", "a\u2028b"} {
 		f.Add(s)
 	}
+	f.Add("\x00\x01")
 	f.Fuzz(func(t *testing.T, s string) {
 		if len(s) > 500 {
 			t.Skip("long")
