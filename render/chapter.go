@@ -136,13 +136,21 @@ func (b *builder) chapterFigures(name string) []doc.Block {
 	return out
 }
 
-// passages sets sentences as a paragraph; the table or figure that one leans on is named
+// passages sets sentences as paragraphs; the table or figure that one leans on is named
 // in parentheses at its end.
 func passages(of []prose.Passage) []doc.Block {
+	var out []doc.Block
 	var text []doc.Inline
+	end := func() {
+		if len(text) > 0 {
+			out = append(out, doc.Paragraph{Text: text})
+		}
+		text = nil
+	}
 	named := map[string]bool{}
 	for _, s := range of {
 		if s.Text == "" {
+			end()
 			continue
 		}
 		if len(text) > 0 {
@@ -160,15 +168,22 @@ func passages(of []prose.Passage) []doc.Block {
 		text = append(text, inlines(head)...)
 		text = append(text, doc.Text{Text: open}, doc.Ref{ID: s.See, Text: notShown, Optional: true}, doc.Text{Text: ")" + s.Text[len(s.Text)-1:]})
 	}
-	if len(text) == 0 {
-		return nil
-	}
-	return []doc.Block{doc.Paragraph{Text: text}}
+	end()
+	return out
 }
 
 // notShown stands in an optional reference of a passage until it is known whether the
 // document has what it points at.
 const notShown = "not shown"
+
+// sourceList is the references of a chapter, a paragraph each.
+func (b *builder) sourceList() []doc.Block {
+	var out []doc.Block
+	for _, s := range prose.ChapterReferences(b.trial, b.rs) {
+		out = append(out, paragraph(s))
+	}
+	return out
+}
 
 // withoutMissing takes the references of passages out whose tables and figures the
 // document does not have, with the parentheses around them.

@@ -190,7 +190,7 @@ func TestChapterCites(t *testing.T) {
 		}
 		list, _, _ = strings.Cut(list, "\n#")
 		listed := map[string]bool{}
-		for _, m := range regexp.MustCompile(`(?m)^- ([^\s,]+), .*?\((\d{4})\)`).FindAllStringSubmatch(list, -1) {
+		for _, m := range regexp.MustCompile(`(?m)^([^\s,]+), .*?\((\d{4})\)`).FindAllStringSubmatch(list, -1) {
 			listed[m[1]+" "+m[2]] = true
 		}
 		cited := map[string]bool{}
@@ -220,7 +220,7 @@ func TestChapterNumbers(t *testing.T) {
 	}
 	for _, c := range r.Contrasts {
 		if c.Name == "yeast v. none" { // weights −3, 1, 1, 1
-			want := fmt.Sprintf("was %.1f g/d (95 %% limits %.1f to %.1f; P", float64(c.Estimate)/3, float64(c.Lower)/3, float64(c.Upper)/3)
+			want := fmt.Sprintf("was %.1f\u202fg/d (95\u202f%% limits %.1f to %.1f; P", float64(c.Estimate)/3, float64(c.Lower)/3, float64(c.Upper)/3)
 			if !strings.Contains(text, want) {
 				t.Errorf("no %q", want)
 			}

@@ -7,8 +7,8 @@ import (
 )
 
 // symbol finds the letters of a test in running text, which are set in italics: F(, P =,
-// P <, df.
-var symbol = regexp.MustCompile(`\b(F)\(|\b(P) [=<]|\b(df)\b`)
+// P <, P below, df.
+var symbol = regexp.MustCompile(`\b(F)\(|\b(P) (?:[=<]|below|of|up to)|\b(df)\b`)
 
 // inlines sets a sentence with its symbols in italics.
 func inlines(s string) []doc.Inline {

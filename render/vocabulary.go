@@ -380,7 +380,7 @@ func (b *builder) functions() template.FuncMap {
 			}
 			return append([]doc.Block{doc.Heading{Level: 2, Text: []doc.Inline{doc.Text{Text: "References of the methods used"}}}}, bullets(refs)...)
 		},
-		"sources": func() []doc.Block { return bullets(prose.ChapterReferences(t, rs)) },
+		"sources": func() []doc.Block { return b.sourceList() },
 	}
 	maps.Copy(out, b.values())
 	b.remember(out)

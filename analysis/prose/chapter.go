@@ -3,6 +3,7 @@ package prose
 import (
 	"fmt"
 	"math"
+	"regexp"
 	"slices"
 	"strings"
 
@@ -16,7 +17,7 @@ import (
 )
 
 // Passage is a sentence of a chapter and, where it leans on a table or a figure, the
-// identifier of that.
+// identifier of that. One without text ends a paragraph.
 type Passage struct{ Text, See string }
 
 // tense says whether a trial is over, so that it is told in the past, or still a plan.
@@ -57,7 +58,7 @@ func (s *paragraphOf) see(id, format string, args ...any) {
 
 // finished is a sentence with a capital and a full stop.
 func finished(s string) string {
-	s = phrase(s)
+	s = strings.TrimSuffix(oneLine(s), ".")
 	if s == "" {
 		return ""
 	}
@@ -70,15 +71,23 @@ func finished(s string) string {
 // phrase is a text of the protocol as part of a sentence: on one line, without the stop
 // at its end.
 func phrase(s string) string {
-	s = strings.Join(strings.Fields(s), " ")
+	s = oneLine(s)
 	for _, mark := range []string{".", ";", ","} {
 		s = strings.TrimSuffix(s, mark)
 	}
-	return powers.Replace(s)
+	return ranges.ReplaceAllString(marks.Replace(s), "$1$2–$3$4")
 }
 
-// powers writes the units that protocols spell on a keyboard as the trade prints them.
-var powers = strings.NewReplacer("/m2", "/m²", "/m3", "/m³", " m2", " m²", " m3", " m³", " cm2", " cm²", "/cm2", "/cm²")
+// oneLine sets a text on one line. Spaces that do not break stay as they are.
+func oneLine(s string) string {
+	return strings.Join(strings.FieldsFunc(s, func(r rune) bool { return strings.ContainsRune(" \t\r\n", r) }), " ")
+}
+
+// marks writes what protocols spell on a keyboard as the trade prints it.
+var marks = strings.NewReplacer("/m2", "/m²", "/m3", "/m³", " m2", " m²", " m3", " m³", " cm2", " cm²", "/cm2", "/cm²", "'s ", "’s ", "s' ", "s’ ")
+
+// ranges finds two numbers that a hyphen joins to a range, but no dates and codes.
+var ranges = regexp.MustCompile(`(^|[ (])(\d+(?:\.\d+)?)-(\d+(?:\.\d+)?)($|[ ),;:])`)
 
 // said tells whether a text of the protocol says something.
 func said(s string) bool {

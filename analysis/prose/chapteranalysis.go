@@ -172,6 +172,7 @@ func chapterAnalysis(t *trial.Trial, rs *result.Results, planned bool) ([]Passag
 	if satterthwaite {
 		s.add("Where a mean draws on the variation of several units, its degrees of freedom were approximated%s", cited.cite("satterthwaite"))
 	}
+	s = append(s, Passage{})
 	s = append(s, contrastSentences(t, all)...)
 	s = append(s, comparisonSentences(t, all, cited)...)
 	for _, g := range groups(all, func(r *result.Response) string { return levelText(Alpha(p, r)) }) {
@@ -184,6 +185,7 @@ func chapterAnalysis(t *trial.Trial, rs *result.Results, planned bool) ([]Passag
 	if x := t.Protocol.Analysis.Tendency; x > 0 {
 		s.add("P up to %s was called a tendency, as stated beforehand", num.Fixed(x, 2))
 	}
+	s = append(s, Passage{})
 	s = append(s, checkSentences(t, all, cited)...)
 	if planned || len(analysedResponses(rs, true)) == 0 {
 		s.add("All computations were made with %s %s", upperFirst(rs.Program.Name), rs.Program.Version)

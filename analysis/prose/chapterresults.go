@@ -265,7 +265,7 @@ func standing(p *layout.Plan, r *result.Response) []string {
 }
 
 func testText(x result.Test) string {
-	return fmt.Sprintf("F(%s, %s) = %s, P %s", num.DF(float64(x.DF)), num.DF(float64(x.ErrorDF)), num.Statistic(float64(x.F)), num.PStatement(float64(x.P)))
+	return fmt.Sprintf("F(%s,\u00a0%s) = %s, P %s", num.DF(float64(x.DF)), num.DF(float64(x.ErrorDF)), num.Statistic(float64(x.F)), num.PStatement(float64(x.P)))
 }
 
 // effects are the sentences that tell how large the effect of a term is: its trends, or

@@ -188,7 +188,7 @@ func (c *chapterTable) spread(r *result.Response, d int) doc.Cell {
 	if a == b {
 		return cell(b)
 	}
-	return doc.Cell{Text: text(a + " to " + b), Own: true, Align: doc.Right}
+	return doc.Cell{Text: text(a + "–" + b), Own: true, Align: doc.Right}
 }
 
 // tested is a column of P: a test of the term, of a term within it, a trend, or a part of
