@@ -650,11 +650,13 @@ func (c *checker) draws(page int, data []byte, resources dict) {
 					c.count[page]++
 				}
 				if s, ok := d["ActualText"].(string); ok {
-					write(decode(s))
 					m.actual = true
+					if m.mcid >= 0 {
+						c.text[[2]int{page, m.mcid}] = decode(s)
+					}
 				}
 			}
-			if inside && (m.artifact || m.mcid >= 0) {
+			if inside && (m.artifact || m.mcid >= 0 || !open[0].artifact) {
 				c.fault("14289-1 7.1", "page %d: %s inside other content", page, tag)
 			}
 			open = append(open, m)
@@ -720,7 +722,7 @@ var holds = map[string]string{
 	"Table": "Caption TR", "TR": "TH TD", "L": "LI", "LI": "Lbl LBody", "TOC": "TOCI TOC", "TOCI": "Reference Span Link",
 	"H1": "Span Link Reference", "H2": "Span Link Reference", "H3": "Span Link Reference", "H4": "Span Link Reference", "H5": "Span Link Reference",
 	"H6": "Span Link Reference", "P": "Span Link Reference Code", "Caption": "Span Link Reference", "Lbl": "Span Link Reference",
-	"Code": "Span", "TH": "Span Link Reference", "TD": "Span Link Reference", "Link": "", "Reference": "Link", "Span": "", "Figure": "",
+	"Code": "Span", "TH": "Span Link Reference", "TD": "Span Link Reference", "Link": "Span", "Reference": "Link", "Span": "Span", "Figure": "",
 	"Document": "Sect Div BlockQuote L P H1 H2 H3 H4 H5 H6 Table Caption Figure Note TOC",
 	"Sect":     "Sect Div BlockQuote L P H1 H2 H3 H4 H5 H6 Table Caption Figure Note TOC", "Div": "Caption",
 	"BlockQuote": "Sect Div BlockQuote L P H1 H2 H3 H4 H5 H6 Table Caption Figure Note TOC",

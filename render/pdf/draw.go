@@ -194,6 +194,22 @@ func (p *pen) mark() *node {
 	return n
 }
 
+// span marks what is drawn next, up to an EMC, as standing for a text. It is an element
+// of its own: readers lose track of marked content in marked content.
+func (p *pen) span(actual string) {
+	id := ""
+	if artifact(p.element) {
+		p.mark()
+	} else {
+		p.unmark()
+		p.touched = true
+		id = fmt.Sprintf("/MCID %d ", p.tree.span(p.element, p.at))
+	}
+	p.b = append(p.b, "/Span <<"+id+"/ActualText "...)
+	p.b = append(p.b, textString(actual)...)
+	p.op(">> BDC")
+}
+
 func (p *pen) unmark() {
 	if p.marked {
 		p.op("EMC")
@@ -328,11 +344,10 @@ func (p *pen) text(o page.Text) {
 	if o.Text == "" || !(o.Size > 0) {
 		return
 	}
-	p.mark()
 	if o.Actual != "" {
-		p.b = append(p.b, "/Span <</ActualText "...)
-		p.b = append(p.b, textString(o.Actual)...)
-		p.op(">> BDC")
+		p.span(o.Actual)
+	} else {
+		p.mark()
 	}
 	p.setFill(o.Colour)
 	p.setFace(o.Face, o.Size)
@@ -343,7 +358,7 @@ func (p *pen) text(o page.Text) {
 	p.show(o.Face, o.Text, o.Space*1000/o.Size)
 	p.op(" ET")
 	if o.Actual != "" {
-		p.op("EMC")
+		p.op("EMC") // of the span
 	}
 }
 

@@ -12,6 +12,7 @@ import (
 	"testing"
 
 	"penwright/render/page/pagetest"
+	"penwright/render/pdf"
 )
 
 // run runs a program that reads PDF, which must be there.
@@ -106,26 +107,117 @@ func TestPDFA(t *testing.T) {
 		}
 		path = append(path, jars+j+".jar")
 	}
-	file := filepath.Join(t.TempDir(), "sample.pdf")
-	if err := os.WriteFile(file, write(t, pagetest.Sample(), attachments()), 0o644); err != nil {
+	pictures, err := pdf.Pictures([]pdf.Picture{{Title: "Gain", Picture: pagetest.Curves(300, 200)}}, options)
+	if err != nil {
 		t.Fatal(err)
 	}
-	// It ends with an error for any finding, so only what it says counts.
-	out, _ := exec.Command("java", "-cp", strings.Join(path, ":"), "org.apache.pdfbox.preflight.Validator_A1b", file).CombinedOutput()
-	lifted := 0
-	for _, line := range strings.Split(string(out), "\n") {
-		code, _, ok := strings.Cut(line, " : ")
-		if !ok || strings.ContainsAny(code, " \t") {
-			continue
+	files := map[string][]byte{"sample": write(t, pagetest.Sample(), attachments()), "picture": pictures[0]}
+	for name, d := range documents(t) {
+		files[name] = write(t, d, attachments())
+	}
+	dir := t.TempDir()
+	for name, data := range files {
+		packed, file := filepath.Join(dir, "packed.pdf"), filepath.Join(dir, "plain.pdf")
+		if err := os.WriteFile(packed, data, 0o644); err != nil {
+			t.Fatal(err)
 		}
-		switch code {
-		case "4.1.2", "2.2.1", "1.2.9", "1.4.7", "7.11.2", "3.1.11":
-			lifted++
-		default:
-			t.Error(line)
+		// A-1 knows neither streams of objects nor tables in streams.
+		run(t, "qpdf", "--object-streams=disable", "--newline-before-endstream", "--stream-data=preserve", packed, file)
+		// It ends with an error for any finding, so only what it says counts.
+		out, _ := exec.Command("java", "-cp", strings.Join(path, ":"), "org.apache.pdfbox.preflight.Validator_A1b", file).CombinedOutput()
+		lifted := 0
+		for _, line := range strings.Split(string(out), "\n") {
+			code, _, ok := strings.Cut(line, " : ")
+			if !ok || strings.ContainsAny(code, " \t") {
+				continue
+			}
+			switch code {
+			case "4.1.2", "2.2.1", "1.2.9", "1.4.7", "7.11.2", "3.1.11":
+				lifted++
+			default:
+				t.Errorf("%s: %s", name, line)
+			}
+		}
+		if lifted == 0 {
+			t.Errorf("%s: the validator found nothing, not even the number of the part:\n%s", name, out)
 		}
 	}
-	if lifted == 0 {
-		t.Errorf("the validator found nothing, not even the attachments:\n%s", out)
+}
+
+// Another reader sees the structure: the elements of every report, and the words of a
+// short document, which it takes long to find.
+func TestStructureInAnotherReader(t *testing.T) {
+	dir := t.TempDir()
+	file := filepath.Join(dir, "report.pdf")
+	for name, d := range documents(t) {
+		data := write(t, d, attachments())
+		if err := os.WriteFile(file, data, 0o644); err != nil {
+			t.Fatal(err)
+		}
+		if out := run(t, "qpdf", "--check", file); !strings.Contains(out, "No syntax or stream encoding errors found") {
+			t.Errorf("%s: %s", name, out)
+		}
+		if info := run(t, "pdfinfo", file); !strings.Contains(info, "Tagged:          yes") {
+			t.Errorf("%s: %s", name, info)
+		}
+		seen := map[string]int{}
+		for _, line := range strings.Split(run(t, "pdfinfo", "-struct", file), "\n") {
+			kind, _, _ := strings.Cut(strings.TrimSpace(line), " ")
+			seen[strings.TrimSuffix(kind, ":")]++
+		}
+		tree, _ := pdf.Read(data)
+		want := map[string]int{}
+		var count func(s *pdf.Struct)
+		count = func(s *pdf.Struct) {
+			want[s.Kind]++
+			for _, k := range s.Kids {
+				count(k)
+			}
+		}
+		count(tree)
+		for kind, n := range want {
+			if seen[kind] != n {
+				t.Errorf("%s: the other reader sees %d elements %s of %d", name, seen[kind], kind, n)
+			}
+		}
 	}
+
+	d := short()
+	d.Blocks = d.Blocks[:12]
+	if err := os.WriteFile(file, write(t, d, nil), 0o644); err != nil {
+		t.Fatal(err)
+	}
+	// Words stand in quotes, over several lines where they do so on the page.
+	var got, want strings.Builder
+	open := false
+	for _, line := range strings.Split(run(t, "pdfinfo", "-struct-text", file), "\n") {
+		line = strings.TrimSpace(line)
+		if !open {
+			line, open = strings.CutPrefix(line, `"`)
+		}
+		if open {
+			if strings.HasSuffix(line, `"`) {
+				line, open = strings.TrimSuffix(line, `"`), false
+			}
+			got.WriteString(line)
+		}
+	}
+	for _, l := range expected(d).out {
+		want.WriteString(l.text)
+	}
+	if g, w := together(got.String()), together(want.String()); g != w {
+		i := 0
+		for i < min(len(g), len(w)) && g[i] == w[i] {
+			i++
+		}
+		t.Errorf("at %d the other reader sees\n%q, not\n%q", i, g[max(i-40, 0):min(i+60, len(g))], w[max(i-40, 0):min(i+60, len(w))])
+	}
+}
+
+// together is a text without its spaces: the reader puts some between pieces, and none
+// between the lines of one.
+// It does not look at what raised figures stand for.
+func together(s string) string {
+	raised := strings.NewReplacer("⁻", "−", "¹", "1", "²", "2", "³", "3", "\u2009", "")
+	return raised.Replace(strings.Join(strings.Fields(s), ""))
 }

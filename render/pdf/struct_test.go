@@ -55,9 +55,8 @@ func TestConformanceOfRandomDocuments(t *testing.T) {
 	}
 }
 
-// The checks find what is spoiled. Each row changes a file and names the clause that
-// this breaks.
-func TestChecksBite(t *testing.T) {
+// short is the sample with few rows in its tables.
+func short() *doc.Document {
 	d := pagetest.Sample()
 	for i, b := range d.Blocks {
 		if x, ok := b.(doc.Table); ok {
@@ -65,7 +64,13 @@ func TestChecksBite(t *testing.T) {
 			d.Blocks[i] = x
 		}
 	}
-	file := write(t, d, attachments())
+	return d
+}
+
+// The checks find what is spoiled. Each row changes a file and names the clause that
+// this breaks.
+func TestChecksBite(t *testing.T) {
+	file := write(t, short(), attachments())
 	for _, x := range []struct{ old, with, clause string }{
 		{"/Marked true", "/Marked false", "14289-1 7.1"},
 		{"/DisplayDocTitle true", "/DisplayDocTitle false", "14289-1 7.1"},

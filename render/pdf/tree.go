@@ -152,6 +152,18 @@ func (t *tree) content(el *page.Element, at int) (n *node, mcid int) {
 	return n, mcid
 }
 
+// span gives the next piece of content of a page to a new part of an element, and its
+// number.
+func (t *tree) span(el *page.Element, at int) int {
+	parent := t.of(el)
+	n := &node{element: &page.Element{}, kind: "Span", parent: parent, page: at}
+	mcid := len(t.parents[at])
+	n.kids = []kid{{page: at, mcid: mcid, link: -1}}
+	t.parents[at] = append(t.parents[at], n)
+	parent.kids = append(parent.kids, kid{node: n, mcid: -1, link: -1})
+	return mcid
+}
+
 // link gives the next link of a page to an element.
 func (t *tree) link(l page.Link, at int) {
 	el := l.Element

@@ -1,7 +1,6 @@
 package pdf_test
 
 import (
-	"bytes"
 	"io/fs"
 	"os"
 	"testing"
@@ -11,22 +10,18 @@ import (
 	"penwright/analysis/trial"
 	"penwright/protocol/folder"
 	"penwright/render"
-	"penwright/render/pdf"
+	"penwright/render/doc"
 	"penwright/templates"
 )
 
-// The reports of the trials, by every template on both papers: each clause holds, the
-// structure says what the document says in its order, and links and bookmarks lead
-// where the pages say.
-func TestTrials(t *testing.T) {
+// documents are the reports of the trials by every template.
+func documents(t *testing.T) map[string]*doc.Document {
+	t.Helper()
 	demo, err := fs.Sub(templates.FS, "demo")
 	if err != nil {
 		t.Fatal(err)
 	}
-	papers := []string{"A4", "Letter"}
-	if testing.Short() {
-		papers = papers[1:]
-	}
+	out := map[string]*doc.Document{}
 	for _, x := range []struct {
 		name  string
 		files fs.FS
@@ -45,15 +40,25 @@ func TestTrials(t *testing.T) {
 			if list.HasErrors() {
 				t.Fatalf("%s, %s: %v", x.name, template, list)
 			}
-			for _, d.Paper = range papers {
-				t.Run(x.name+" "+template+" "+d.Paper, func(t *testing.T) {
-					var b bytes.Buffer
-					if _, err := pdf.Write(&b, d, attachments(), options); err != nil {
-						t.Fatal(err)
-					}
-					says(t, conforms(t, b.Bytes()), d)
-				})
-			}
+			out[x.name+" "+template] = d
+		}
+	}
+	return out
+}
+
+// The reports of the trials, by every template on both papers: each clause holds, the
+// structure says what the document says in its order, and links and bookmarks lead
+// where the pages say.
+func TestTrials(t *testing.T) {
+	papers := []string{"A4", "Letter"}
+	if testing.Short() {
+		papers = papers[1:]
+	}
+	for name, d := range documents(t) {
+		for _, d.Paper = range papers {
+			t.Run(name+" "+d.Paper, func(t *testing.T) {
+				says(t, conforms(t, write(t, d, attachments())), d)
+			})
 		}
 	}
 }
