@@ -140,7 +140,7 @@ func (p *pager) awaits(figure bool) bool {
 // top of the next page, which a section within a chapter may leave to the next one.
 func (p *pager) barrier(it item) bool {
 	switch {
-	case it.table && p.awaits(false) || it.heading == 1:
+	case it.table && p.awaits(false) || it.heading == 1 || it.bare:
 		return true
 	case it.heading > 1:
 		return len(p.waiting) > 1 || p.room() < 0.2*p.s.pageHeight(p.cur.turned)

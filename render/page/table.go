@@ -247,7 +247,7 @@ func (g *grid) measure() {
 		body := g.left[i] + g.right[i]
 		g.comfort[i] = max(body, g.narrow[i], min(g.natural[i], 54+g.natural[i]/8, 120))
 		if c.Align != doc.Left {
-			g.comfort[i] = max(body, g.narrow[i])
+			g.comfort[i] = max(body, g.narrow[i], min(g.natural[i], 64)) // limits stay on one line
 		}
 	}
 	// What spans columns widens them evenly.
