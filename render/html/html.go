@@ -474,6 +474,7 @@ func href(dest string) (string, bool) {
 	if strings.HasPrefix(dest, "#") && len(dest) > 1 {
 		return dest, true
 	}
+	dest = encoded(dest)
 	u, err := url.Parse(dest)
 	if err != nil {
 		return "", false
@@ -490,7 +491,7 @@ func href(dest string) (string, bool) {
 	default:
 		return "", false
 	}
-	return encoded(dest), true
+	return dest, true
 }
 
 var hostName = regexp.MustCompile(`^[A-Za-z0-9.-]+(:[0-9]+)?$`)

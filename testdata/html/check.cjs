@@ -61,7 +61,7 @@ async function use(page) {
   const say = (s) => out.push(s);
   const sorted = await page.evaluate(() => {
     const value = (s) => {
-      const m = /^[<>≤≥]?\s*([+\-\u2212]?[\d\u2009\u202f]*\.?\d+)/.exec(s);
+      const m = /^[<>≤≥]?\s*([+\-\u2212]?[\d\u2009\u202f]*\.?\d+(?:e[+-]?\d+)?)/.exec(s);
       return m ? Number(m[1].replace(/\u2212/, "-").replace(/[\u2009\u202f]/g, "")) : null;
     };
     const faults = [];
