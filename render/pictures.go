@@ -171,7 +171,14 @@ func (v *pictures) excluded(response string) func(unit, instance int) bool {
 	out := map[instance]bool{}
 	finder := allot.NewFinder(p)
 	for _, e := range v.trial.Protocol.Exclusions {
-		if e.At == "" && (len(e.Responses) == 0 || contains(e.Responses, response)) {
+		all := len(e.Responses) == 0 || response != "" && contains(e.Responses, response)
+		if response == "" && !all {
+			all = true
+			for i := range v.trial.Protocol.Responses {
+				all = all && contains(e.Responses, v.trial.Protocol.Responses[i].Name)
+			}
+		}
+		if e.At == "" && all {
 			if u, i, bad := finder.Unit(e.Unit); bad == nil {
 				out[instance{u, int(i)}] = true
 			}

@@ -89,7 +89,7 @@ func (m Map) Draw() (*doc.Picture, string) {
 		if p.room() {
 			break
 		}
-		p.keys = true
+		p.keys = len(m.Treatments) > 0
 	}
 	tree := p.arrange(boxes)
 	h := tree.h + p.foot(nil, 0) + 2
@@ -146,7 +146,8 @@ func (m Map) needKeys(all []Cell) bool {
 }
 
 // bears says what stands in the cells: the labels, or where these have no room keys
-// from a legend, or marks, or nothing at all.
+// from a legend (without treatments, the numbers of the units), or marks, or nothing at
+// all.
 type bears int
 
 const (
@@ -198,7 +199,9 @@ const (
 func (p *mapper) choose(boxes []Box, most float64) {
 	natural := 0.0
 	for _, c := range p.all {
-		natural = max(natural, width(clean(c.Label), textSize, false))
+		if p.bear == labels {
+			natural = max(natural, width(clean(c.Label), textSize, false))
+		}
 	}
 	natural = min(max(natural+10, 26), widestCell)
 	if p.Shade != "" {
@@ -459,7 +462,7 @@ func (p *mapper) room() bool {
 		return true
 	}
 	var texts, numbers, values []string
-	if p.bear == keys {
+	if p.bear == keys && n > 0 {
 		texts = []string{widestKey(n)}
 	}
 	seen := map[string]bool{}
@@ -473,6 +476,9 @@ func (p *mapper) room() bool {
 			values = append(values, p.value(c.Value))
 		}
 	}
+	if n == 0 && (p.bear == keys || len(texts) == 0) {
+		texts = numbers
+	}
 	// Values are worth a smaller label.
 	if len(values) > 0 {
 		p.letter(texts, leastSize, leastSize*leading)
@@ -481,7 +487,7 @@ func (p *mapper) room() bool {
 		p.letter(texts, leastSize, 0)
 	}
 	if p.set.size == 0 {
-		return n == 0 && p.bear == labels
+		return false
 	}
 	widest := func(texts []string, size float64, bold bool) float64 {
 		w := 0.0
@@ -584,6 +590,8 @@ func (p *mapper) cell(c *canvas, cell Cell, x, y float64) {
 		return
 	case p.bear == marks, p.bear == nothing, p.set.size == 0:
 		return
+	case p.bear == keys && len(p.Treatments) == 0:
+		label = "" // the unit's number stands for it
 	case p.bear == keys && cell.Treatment >= 0:
 		label = sign(cell.Treatment, len(p.Treatments))
 	}

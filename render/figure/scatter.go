@@ -565,6 +565,9 @@ func logarithmic(title string, s span, length float64, across bool) axis {
 		return a
 	}
 	in := []float64{1, 2, 5}
+	if 7*(s.hi-s.lo) <= 0.9*room {
+		in = []float64{1, 2, 3, 4, 5, 6, 8}
+	}
 	every := 1
 	if 3*(s.hi-s.lo) > room {
 		in = in[:1]
