@@ -41,9 +41,9 @@ func TestConformance(t *testing.T) {
 
 // Whatever the document, each clause holds.
 func TestConformanceOfRandomDocuments(t *testing.T) {
-	n := uint64(24)
+	n := uint64(12)
 	if testing.Short() {
-		n = 8
+		n = 6
 	}
 	for seed := range n {
 		d := pagetest.Random(seed)

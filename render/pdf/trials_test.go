@@ -11,39 +11,68 @@ import (
 	"penwright/protocol/folder"
 	"penwright/render"
 	"penwright/render/doc"
+	"penwright/render/page"
 	"penwright/templates"
 )
+
+// opened is a trial with its results.
+func opened(t testing.TB, name string) (*trial.Trial, *result.Results) {
+	t.Helper()
+	files, err := fs.Sub(templates.FS, "demo")
+	if err != nil {
+		t.Fatal(err)
+	}
+	if name != "demo" {
+		files = os.DirFS("../../testdata/trials/" + name)
+	}
+	x, list := trial.Open(folder.FromFS(files))
+	rs, more := analysis.Run(x, result.Program{Name: "penwright", Version: "0"}, nil)
+	if list.HasErrors() || more.HasErrors() {
+		t.Fatalf("%s: %v %v", name, list, more)
+	}
+	return x, rs
+}
 
 // documents are the reports of the trials by every template.
 func documents(t *testing.T) map[string]*doc.Document {
 	t.Helper()
-	demo, err := fs.Sub(templates.FS, "demo")
-	if err != nil {
-		t.Fatal(err)
-	}
 	out := map[string]*doc.Document{}
-	for _, x := range []struct {
-		name  string
-		files fs.FS
-	}{
-		{"demo", demo},
-		{"split-plot", os.DirFS("../../testdata/trials/split-plot")},
-		{"latin-square", os.DirFS("../../testdata/trials/latin-square")},
-	} {
-		tr, list := trial.Open(folder.FromFS(x.files))
-		rs, more := analysis.Run(tr, result.Program{Name: "penwright", Version: "0"}, nil)
-		if list.HasErrors() || more.HasErrors() {
-			t.Fatalf("%s: %v %v", x.name, list, more)
-		}
+	for _, name := range []string{"demo", "split-plot", "latin-square"} {
+		x, rs := opened(t, name)
 		for _, template := range render.Templates() {
-			d, list := render.Document(tr, rs, render.Options{Template: template, Date: "2026-05-04"})
+			d, list := render.Document(x, rs, render.Options{Template: template, Date: "2026-05-04"})
 			if list.HasErrors() {
-				t.Fatalf("%s, %s: %v", x.name, template, list)
+				t.Fatalf("%s, %s: %v", name, template, list)
 			}
-			out[x.name+" "+template] = d
+			out[name+" "+template] = d
 		}
 	}
 	return out
+}
+
+// extent counts the pages and figures of a document.
+func extent(d *doc.Document) (pages, figures int) {
+	book, _ := page.Lay(d)
+	doc.Walk(d.Blocks, func(n any) {
+		if f, ok := n.(doc.Figure); ok && f.Picture != nil {
+			figures++
+		}
+	})
+	return len(book.Pages), figures
+}
+
+// BenchmarkReport makes the demo's report as PDF and as HTML from its results.
+func BenchmarkReport(b *testing.B) {
+	x, rs := opened(b, "demo")
+	for b.Loop() {
+		if _, list, err := render.Report(x, rs, render.Options{Date: "2026-05-04", Only: []string{"pdf", "html"}, Workers: 1}); err != nil || list.HasErrors() {
+			b.Fatal(list, err)
+		}
+	}
+	d, _ := render.Document(x, rs, render.Options{Date: "2026-05-04"})
+	pages, figures := extent(d)
+	b.ReportMetric(float64(pages), "pages")
+	b.ReportMetric(float64(figures), "figures")
 }
 
 // The reports of the trials, by every template on both papers: each clause holds, the
