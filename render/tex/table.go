@@ -85,7 +85,9 @@ func (w *writer) table(t doc.Table) {
 				w.line(`continued\par\smallskip`)
 			}
 			first = false
+			w.line(`\sbox0{%`)
 			w.tabular(part, rows, widths, how)
+			w.line(`}\usebox{0}`)
 			if last && !long {
 				var notes []string
 				for _, note := range t.Notes {
@@ -94,7 +96,7 @@ func (w *writer) table(t doc.Table) {
 					}
 				}
 				if len(notes) > 0 {
-					w.line("\\par\\smallskip\\begin{minipage}{0.97\\linewidth}\\footnotesize\\raggedright\n" + strings.Join(notes, "\\par\n") + `\end{minipage}`)
+					w.line("\\par\\smallskip\\begin{minipage}{\\ifdim\\wd0<0.7\\linewidth 0.7\\linewidth\\else\\wd0\\fi}\\footnotesize\\raggedright\n" + strings.Join(notes, "\\par\n") + `\end{minipage}`)
 				}
 			}
 			w.close(float, how)
@@ -326,9 +328,9 @@ func (w *writer) tabular(g *grid.Grid, rows []grid.Row, widths []float64, how wa
 		}
 		w.line(strings.Join(out, " & ") + ` \tabularnewline`)
 	}
-	w.line("\\bottomrule\n\\end{tabular}")
+	w.line("\\bottomrule\n\\end{tabular}%")
 	if how.shrunk {
-		w.line("}")
+		w.line("}%")
 	}
 }
 
