@@ -70,13 +70,13 @@ func TestVerdicts(t *testing.T) {
 		trial          fs.FS
 		want           map[string]string
 	}{
-		// Everything is stated but an abstract, a discussion, interests and the part of the
+		// Everything is stated but an abstract, interests and the part of the
 		// funder in a sentence, and what pigs went through before; no pen has criteria of
 		// its own, nobody is named who enrolled, and the plan was not sealed.
 		{name: "demo", trial: all["demo"], want: expected(
-			"Answered: 1a 1b 2a 2b 3a 3b 3c 4a 4b 5 6a 6b 7a 7b 8a 9a 9b 9c 9d 10a 10b 12a 12b 13 14 15 16a 16b 16c 19 20",
-			"In part: 8b 21b", "Missing: 11 17a 17b 18 21a",
-			"Answered: R2 R4 R5 R6 R7 R8 R9 R11 R12 R13 R14 R15 R16 R17 R19", "In part: R1 R3 R10", "Missing: R18 R20 R21 R22", "Not applicable: R4b")},
+			"Answered: 1a 1b 2a 2b 3a 3b 3c 4a 4b 5 6a 6b 7a 7b 8a 9a 9b 9c 9d 10a 10b 12a 12b 13 14 15 16a 16b 16c 17a 17b 18 19 20",
+			"In part: 8b 21b", "Missing: 11 21a",
+			"Answered: R2 R4 R5 R6 R7 R8 R9 R11 R12 R13 R14 R15 R16 R17 R19 R20 R21 R22", "In part: R1 R3 R10", "Missing: R18", "Not applicable: R4b")},
 		// Nothing on size, blinding or housing; diets are named and not described; no
 		// procedure is stated; nothing says what a square is, at what age cows were, what is
 		// done if assumptions fail, or in which period Gunda left.
@@ -202,7 +202,7 @@ func ownTemplate(t *testing.T, text string) (verdict, beside map[string]string) 
 	t.Helper()
 	all := copied(t, stages(t)["demo"])
 	all["own.md"] = &fstest.MapFile{Data: []byte(text)}
-	edit(t, all, trial.ProtocolFile, "[records]", "[report]\ntemplate = \"own.md\"\n\n[records]")
+	edit(t, all, trial.ProtocolFile, "[report]\n", "[report]\ntemplate = \"own.md\"\n")
 	x, rs, _ := opened(t, all)
 	d, list := Document(x, rs, fixed)
 	if list.HasErrors() {
@@ -291,7 +291,7 @@ func TestHostileCoverage(t *testing.T) {
 func TestUnknownCoverage(t *testing.T) {
 	all := copied(t, stages(t)["demo"])
 	all["own.md"] = &fstest.MapFile{Data: []byte("{{coverage \"repot\"}}\n")}
-	edit(t, all, trial.ProtocolFile, "[records]", "[report]\ntemplate = \"own.md\"\n\n[records]")
+	edit(t, all, trial.ProtocolFile, "[report]\n", "[report]\ntemplate = \"own.md\"\n")
 	x, rs, _ := opened(t, all)
 	_, list := Document(x, rs, fixed)
 	if s := fmt.Sprint(list); !strings.Contains(s, `did you mean "report"?`) {

@@ -94,7 +94,7 @@ func outline(blocks []doc.Block) []string {
 func (x *builder) run(text string) ([]string, diag.List) {
 	x.dot, x.words, x.claims = nil, nil, nil
 	composed, list := x.compose([]compose.Source{{Name: "t.md", Text: text}}, "t.md")
-	d := &doc.Document{Blocks: once(tidy(composed.Blocks)), Notes: composed.Notes}
+	d := &doc.Document{Blocks: x.settled(tidy(composed.Blocks)), Notes: composed.Notes}
 	list = append(list, doc.Number(d)...)
 	x.cover(d)
 	return outline(d.Blocks), list

@@ -5,6 +5,8 @@ import (
 	"slices"
 	"strings"
 	"text/template"
+	"unicode"
+	"unicode/utf8"
 
 	"penwright/analysis/prose"
 	"penwright/protocol"
@@ -33,6 +35,7 @@ type author struct {
 	claims  []prose.Claim
 
 	reader   *reader
+	instead  map[string]string // identifier of a table → of the one that a template has instead
 	dot      *view
 	words    template.FuncMap
 	kinds    map[string][]string // names of tables, figures, paragraphs and lists
@@ -127,7 +130,7 @@ func (b *builder) data() *view {
 // compose composes the template of a report with the narratives that it places. A
 // report with claims is composed again, so that it can tell of those that come after.
 func (b *builder) compose(sources []compose.Source, main string) (compose.Text, diag.List) {
-	b.written = map[string]compose.Text{}
+	b.written, b.instead = map[string]compose.Text{}, map[string]string{}
 	b.limits.Spent = &compose.Spent{}
 	text, list := compose.Compose(sources, main, b.data(), b.functions(), b.limits)
 	if len(b.claims) > 0 && !list.HasErrors() {
@@ -154,9 +157,10 @@ func (b *builder) typedNumbers(source compose.Source) diag.List {
 	return b.reader.typed(source)
 }
 
-// once leaves the first of tables and figures that are the same, and points at it from
-// where it stood again.
-func once(blocks []doc.Block) []doc.Block {
+// settled leaves the first of tables and figures that are the same, and points at it from
+// where it stood again. What the author refers to and this template does not show is
+// looked for in the table that it has instead.
+func (b *builder) settled(blocks []doc.Block) []doc.Block {
 	seen := map[string]bool{}
 	repeated := func(id string, caption []doc.Inline) (doc.Block, bool) {
 		if id == "" || !seen[id] {
@@ -165,7 +169,7 @@ func once(blocks []doc.Block) []doc.Block {
 		}
 		return doc.Paragraph{Text: append([]doc.Inline{doc.Text{Text: "See "}, doc.Ref{ID: id}, doc.Text{Text: ": "}}, append(caption[:len(caption):len(caption)], doc.Text{Text: "."})...)}, true
 	}
-	return doc.Mapper{Block: func(b doc.Block) doc.Block {
+	blocks = doc.Mapper{Block: func(b doc.Block) doc.Block {
 		switch x := b.(type) {
 		case doc.Table:
 			if p, again := repeated(x.ID, x.Caption); again {
@@ -178,6 +182,13 @@ func once(blocks []doc.Block) []doc.Block {
 		}
 		return b
 	}}.Blocks(blocks)
+	return doc.Mapper{Inline: func(in doc.Inline) doc.Inline {
+		if x, ok := in.(doc.Ref); ok && !seen[x.ID] && seen[b.instead[x.ID]] {
+			x.ID = b.instead[x.ID]
+			return x
+		}
+		return in
+	}}.Blocks(blocks)
 }
 
 // ref refers to a section, table or figure by its name, or to a table or figure by what
@@ -188,19 +199,23 @@ func (b *builder) ref(at diag.Pos, name string, of ...string) (doc.Inline, error
 	}
 	show, ok := b.functions()[name].(func(string, ...string) ([]doc.Block, error))
 	if !ok {
-		return nil, unknown("kind of reference", name, []string{"table", "figure"})
+		return nil, unknown("reference to a", name, []string{"table", "figure"})
 	}
 	blocks, err := show(of[0], of[1:]...)
 	if err != nil {
 		return nil, err
 	}
 	b.made[strings.Join(append([]string{name}, of...), "\x00")].printed-- // it is not shown here
+	// A template that does not show it has the words of its caption instead.
 	for _, x := range blocks {
 		switch x := x.(type) {
 		case doc.Table:
-			return doc.Ref{ID: x.ID, Pos: at}, nil
+			if name == "table" && of[0] == "means" {
+				b.instead[x.ID] = prose.TableID(of[2], true)
+			}
+			return doc.Ref{ID: x.ID, Pos: at, Optional: true, Text: captionText(x.Caption)}, nil
 		case doc.Figure:
-			return doc.Ref{ID: x.ID, Pos: at}, nil
+			return doc.Ref{ID: x.ID, Pos: at, Optional: true, Text: captionText(x.Caption)}, nil
 		}
 	}
 	if b.trial.Table == nil {
@@ -208,6 +223,13 @@ func (b *builder) ref(at diag.Pos, name string, of ...string) (doc.Inline, error
 		return doc.Text{Text: prose.NotYet}, nil
 	}
 	return nil, &compose.Fault{Code: "no-value", Message: fmt.Sprintf("the %s %q has nothing to show, so that it cannot be referred to", name, strings.Join(of, " "))}
+}
+
+// captionText is the first sentence of a caption as it stands within another.
+func captionText(caption []doc.Inline) string {
+	text, _, _ := strings.Cut(strings.TrimSuffix(doc.Plain(caption), "."), ". ")
+	r, size := utf8.DecodeRuneInString(text)
+	return string(unicode.ToLower(r)) + text[size:]
 }
 
 // claim holds what the prose asserts against the results. It prints nothing.

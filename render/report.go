@@ -230,7 +230,7 @@ func Document(t *trial.Trial, rs *result.Results, opt Options) (*doc.Document, d
 	d := &doc.Document{
 		Lang: "en", Title: p.Trial.Title, ShortTitle: p.Trial.Title, Code: p.Trial.Code, Status: rs.Trial.Status,
 		Author: strings.Join(authors, ", "), Date: opt.Date, Fingerprint: b.fingerprint, Paper: p.Report.Paper,
-		Blocks: withoutMissing(once(tidy(text.Blocks))), Notes: text.Notes,
+		Blocks: withoutMissing(b.settled(tidy(text.Blocks))), Notes: text.Notes,
 	}
 	list = append(list, doc.Number(d)...)
 	b.cover(d)

@@ -49,7 +49,8 @@ type subject struct {
 
 // unknown is the fault of a name that is not known, with the nearest one that is.
 func unknown(kind, name string, known []string) error {
-	f := &compose.Fault{Code: "unknown-" + kind, Message: fmt.Sprintf("there is no %s %q", kind, name)}
+	code, _, _ := strings.Cut(kind, " ")
+	f := &compose.Fault{Code: "unknown-" + code, Message: fmt.Sprintf("there is no %s %q", kind, name)}
 	const most = 20
 	switch near := diag.Nearest(name, known); {
 	case near != "":
@@ -67,7 +68,23 @@ func (b *builder) responseNames() []string {
 	for i := range b.rs.Responses {
 		names = append(names, b.rs.Responses[i].Name)
 	}
+	if b.trial.Table == nil {
+		for i := range b.trial.Protocol.Responses {
+			names = append(names, b.trial.Protocol.Responses[i].Name)
+		}
+	}
 	return names
+}
+
+// asked finds a response: among the results or, before there are data, in the protocol.
+func (b *builder) asked(name string) *result.Response {
+	if r := b.pictures.response(name); r != nil {
+		return r
+	}
+	if r := b.trial.Protocol.Response(name); r != nil && b.trial.Table == nil {
+		return &result.Response{Name: r.Name, Label: prose.ResponseLabel(r), Unit: r.Unit, Role: r.Role, Kind: r.Kind}
+	}
+	return nil
 }
 
 // knownNames are what a response can be asked about.
@@ -155,7 +172,7 @@ func (b *builder) find(function string, words []string) (*subject, error) {
 	if len(words) == 0 {
 		return nil, &compose.Fault{Code: "no-response", Message: "the name of a response is missing", Hint: "known are " + strings.Join(b.responseNames(), ", ")}
 	}
-	r := b.pictures.response(words[0])
+	r := b.asked(words[0])
 	if r == nil {
 		return nil, unknown("response", words[0], b.responseNames())
 	}
@@ -377,9 +394,16 @@ func (b *builder) missing(s *subject, what string) error {
 		f.Message = fmt.Sprintf("%s has no %s of %s", s.response.Name, what, b.called(s))
 	}
 	for _, n := range s.response.Notes {
-		if f.Hint == "" && (s.response.Model == nil || n.Term == s.name) {
+		if f.Hint == "" && s.response.Model == nil {
 			f.Hint = n.Text
 		}
+	}
+	switch {
+	case f.Hint != "":
+	case s.kind == ofTerm:
+		f.Hint = "name a level of it after it, or two for their difference; what can be asked of what: penwright help templates"
+	default:
+		f.Hint = "what can be asked of what: penwright help templates"
 	}
 	return f
 }

@@ -262,6 +262,9 @@ func (b *builder) functions() template.FuncMap {
 				if err != nil {
 					return nil, err
 				}
+				if t.Table == nil {
+					return nil, nil
+				}
 				made = ofResponse[name](r)
 			case ofTerm[name] != nil:
 				r, err := response(args)
@@ -271,6 +274,9 @@ func (b *builder) functions() template.FuncMap {
 				x, err := term(r, args)
 				if err != nil {
 					return nil, err
+				}
+				if t.Table == nil {
+					return nil, nil
 				}
 				made = ofTerm[name](r, x)
 			default:
@@ -294,6 +300,9 @@ func (b *builder) functions() template.FuncMap {
 				if err != nil {
 					return nil, err
 				}
+				if t.Table == nil {
+					return nil, nil
+				}
 				return b.chapterFigures(r.Name), nil
 			case name == "means" || name == "differences":
 				r, err := response(args)
@@ -304,6 +313,9 @@ func (b *builder) functions() template.FuncMap {
 				if err != nil {
 					return nil, err
 				}
+				if t.Table == nil {
+					return nil, nil
+				}
 				if name == "differences" {
 					return p.differences(r.Name, x), nil
 				}
@@ -312,6 +324,9 @@ func (b *builder) functions() template.FuncMap {
 				r, err := response(args)
 				if err != nil {
 					return nil, err
+				}
+				if t.Table == nil {
+					return nil, nil
 				}
 				return figures[name](r.Name), nil
 			}
@@ -346,12 +361,18 @@ func (b *builder) functions() template.FuncMap {
 			if err != nil {
 				return nil, err
 			}
+			if t.Table == nil {
+				return inlines(prose.NotYet), nil
+			}
 			return inlines(prose.Methods(t, r)), nil
 		},
 		"result": func(name string) ([]doc.Block, error) {
 			r, err := response([]string{name})
 			if err != nil {
 				return nil, err
+			}
+			if t.Table == nil {
+				return nil, nil
 			}
 			return passages(prose.ChapterResult(t, r)), nil
 		},
@@ -360,12 +381,18 @@ func (b *builder) functions() template.FuncMap {
 			if err != nil {
 				return nil, err
 			}
+			if t.Table == nil {
+				return inlines(prose.NotYet), nil
+			}
 			return inlines(prose.Results(t, r)), nil
 		},
 		"notes": func(name string) ([]doc.Block, error) {
 			r, err := response([]string{name})
 			if err != nil {
 				return nil, err
+			}
+			if t.Table == nil {
+				return nil, nil
 			}
 			return bullets(prose.OwnNotes(r)), nil
 		},

@@ -3,6 +3,7 @@ package compose
 import (
 	"fmt"
 	"reflect"
+	"slices"
 	"sort"
 	"strconv"
 	"strings"
@@ -22,6 +23,8 @@ const (
 	fieldName = "field_"
 	enterName = "enter_"
 	leaveName = "leave_"
+	beginName = "begin_"
+	joinName  = "join_"
 )
 
 // site is a place in a template at which something is to be done while it runs.
@@ -365,6 +368,11 @@ func (p *program) command(c *parse.CommandNode, receives bool) {
 		if p.known(id) {
 			call := p.newSite(site{offset: int(id.Pos), name: id.Ident})
 			c.Args = append([]parse.Node{identifier(callName, id.Pos), call}, args[1:]...)
+		} else if slices.Contains(shortCircuit, id.Ident) && !receives && len(args) > 1 {
+			// What was compared on the way is gathered around it.
+			at := p.newSite(site{offset: int(id.Pos), name: id.Ident})
+			c.Args = []parse.Node{identifier(joinName, id.Pos), at,
+				pipe(id.Pos, command(id.Pos, identifier(beginName, id.Pos), at)), pipe(id.Pos, command(id.Pos, args...))}
 		}
 		return
 	}

@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"io"
 	"reflect"
+	"slices"
 	"sort"
 	"strconv"
 	"strings"
@@ -25,6 +26,7 @@ const (
 	callSteps   = 20 // of a function called
 	givenSteps  = 80 // more, of one that was handed in
 	maxMessages = 100
+	maxReasons  = 8        // told of an and or an or
 	maxPrint    = 64 << 10 // bytes that one print makes
 )
 
@@ -63,7 +65,9 @@ type runner struct {
 	marks   []mark
 	values  []value
 	depth   int
-	fault   any // what a function of ours panicked with
+	trail   []string // what was compared within and and or
+	begun   []int    // where they began in it
+	fault   any      // what a function of ours panicked with
 }
 
 // execute runs a template.
@@ -76,6 +80,8 @@ func (r *runner) execute(main string, data any) {
 		fieldName: r.field,
 		enterName: r.enter,
 		leaveName: r.leave,
+		beginName: r.begin,
+		joinName:  r.join,
 	})
 	for _, name := range r.order {
 		if _, err := t.AddParseTree(name, r.trees[name]); err != nil {
@@ -173,6 +179,36 @@ func (r *runner) enter(n int) (string, error) {
 func (r *runner) leave(int) string {
 	r.depth--
 	return ""
+}
+
+// begin and join stand around what and and or evaluate, and give their outcome the reasons
+// of all that decided it.
+func (r *runner) begin(int) bool {
+	r.begun = append(r.begun, len(r.trail))
+	return true
+}
+
+func (r *runner) join(n int, _ bool, x any) any {
+	last := len(r.begun) - 1
+	whys := r.trail[r.begun[last]:]
+	r.trail, r.begun = r.trail[:r.begun[last]], r.begun[:last]
+	t, ok := x.(Truth)
+	if !ok || t.Open() {
+		return x
+	}
+	if t.Holds() == (r.sites[n].name == "and") && len(whys) > 1 {
+		var once []string
+		for _, w := range whys {
+			if !slices.Contains(once, w) && len(once) < maxReasons {
+				once = append(once, w)
+			}
+		}
+		t = NewTruth(t.Holds(), strings.Join(once, "; "))
+	}
+	if last > 0 && t.Why() != "" {
+		r.trail = append(r.trail, t.Why())
+	}
+	return t
 }
 
 func (r *runner) text(n int) (string, error) { return "", r.write(n, r.sites[n].text) }
@@ -356,6 +392,9 @@ func (r *runner) call(n int, args ...any) (any, error) {
 			return nil, errStop
 		}
 		return failed, nil
+	}
+	if t, ok := out.(Truth); ok && len(r.begun) > 0 && t.Why() != "" {
+		r.trail = append(r.trail, t.Why())
 	}
 	// Also what is never printed takes time to make.
 	return out, r.spend(n, sizeOf(out)/64)

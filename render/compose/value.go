@@ -339,7 +339,7 @@ func ordered(a, b any, sign string, holds func(order int) bool) (Truth, error) {
 	case isY && math.IsNaN(y.X):
 		return openTruth(saidOf(b) + " is not there yet"), nil
 	case isX && isY && x.Unit != y.Unit:
-		return nil, fmt.Errorf("%s and %s have different units", saidOf(a), saidOf(b))
+		return nil, &Fault{Code: CodeWrongValue, Message: fmt.Sprintf("%s and %s have different units", saidOf(a), saidOf(b)), Hint: "compare values of one unit"}
 	}
 	va, vb := indirect(reflect.ValueOf(a)), indirect(reflect.ValueOf(b))
 	ta, boolA := verdict(a, va)
