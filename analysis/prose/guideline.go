@@ -64,10 +64,19 @@ type Part struct {
 	Where    []string // identifiers of where it stands
 }
 
-// Sought is a table that must be there for one response: any of Names.
+// Sought is a table or section that must be there, for one response where Response is not
+// empty: any of Names, or one of Also that speaks of it.
 type Sought struct {
 	Response string
 	Names    []string
+	Also     []Spoken
+}
+
+// Spoken is a table or section that other things stand in too: Name, which may end in a
+// hyphen, with words that begin with one of Stems.
+type Spoken struct {
+	Name  string
+	Stems []string
 }
 
 // Checklists holds the guidelines that concern a trial to what is known of it. Where the
@@ -282,7 +291,7 @@ func Coverage(c *Checklist) []string {
 	}
 	list(Partly, "is answered in part", "are answered in part")
 	list(Missing, "is missing", "are missing")
-	list(Unprinted, "is stated in the protocol, but not in this report", "are stated in the protocol, but not in this report")
+	list(Unprinted, "is known, but not in this report", "are known, but not in this report")
 	list(Waiting, "waits for the draw or the data", "wait for the draw or the data")
 	s := []string{fmt.Sprintf("Of the %s %s that concern this trial %s.", num.Count(total), what, And(parts))}
 	if len(by[Partly])+len(by[Missing]) > 0 {
@@ -298,6 +307,8 @@ func are(n int) string {
 	return num.Count(n) + " are"
 }
 
+const forReaders = "Answered means that the report says it; whether it says it well is for its readers."
+
 // GuidelineNotes say where the items of a checklist were read.
 func GuidelineNotes(c *Checklist) []string {
 	if len(c.Items) == 0 {
@@ -305,7 +316,7 @@ func GuidelineNotes(c *Checklist) []string {
 	}
 	first := &c.Items[0]
 	if first.Mark == "M" {
-		return []string{"Common practice, no source: what readers of field trials usually ask for, from memory (M)."}
+		return []string{"Common practice, no source: what readers of field trials usually ask for, from memory (M). " + forReaders}
 	}
 	var sources, memory []string
 	marks := map[string]bool{}
@@ -326,7 +337,7 @@ func GuidelineNotes(c *Checklist) []string {
 	} else {
 		s += "; read in its tables (C)"
 	}
-	out := []string{s + ". " + strings.Join(sources, ". ") + "."}
+	out := []string{s + ". " + strings.Join(sources, ". ") + ".", forReaders}
 	if len(memory) > 0 {
 		out = append(out, "That items "+And(memory)+" ask for each level is from memory (M): look it up in the guideline.")
 	}

@@ -247,9 +247,12 @@ func (v *evidence) sizeBasis(out *Part) {
 		out.Keys = append(slices.Clone(out.Keys), welfare.Key{Name: "sample_size.source"})
 	default:
 		out.say("by %s", map[string]string{"power": "power", "error df": "the error degrees of freedom it leaves", "precision": "the wished precision"}[s.Basis])
-		out.Tables = []Sought{{Names: []string{"number-of-units"}}}
+		out.Tables = []Sought{sizeSection}
 	}
 }
+
+// sizeSection is where the number of units is justified.
+var sizeSection = Sought{Names: []string{"number-of-units"}, Also: []Spoken{{Name: "experimental-design", Stems: []string{"power of", "half width", "degrees of freedom", "was chosen", "were chosen"}}}}
 
 func (v *evidence) sizeInputs(out *Part) {
 	s := v.p.SampleSize
@@ -279,7 +282,7 @@ func (v *evidence) sizeInputs(out *Part) {
 		out.skip("no calculation was made")
 	}
 	if out.State == Answered && out.Says == "" {
-		out.Tables = []Sought{{Names: []string{"number-of-units"}}}
+		out.Tables = []Sought{sizeSection}
 	}
 }
 
@@ -344,7 +347,7 @@ func (v *evidence) leftOut(out *Part) {
 		out.say("none: every value planned was analysed")
 	} else {
 		out.say("%s", few(says, "responses have losses"))
-		out.Tables = []Sought{{Names: []string{"exclusions", "events", "conduct"}}}
+		out.Tables = []Sought{{Names: []string{"exclusions", "events", "conduct"}, Also: []Spoken{{Name: "measurements", Stems: []string{"left out", "excluded"}}, {Name: "results", Stems: []string{"removed", "died", "were analysed"}}}}}
 	}
 	out.Lacks = lacks
 }
@@ -415,6 +418,9 @@ func (v *evidence) losses(kinds ...string) (says, lacks, groupless []string, eve
 	return says, lacks, groupless, events
 }
 
+// lossWords are how a chapter speaks of animals that died or were removed.
+var lossWords = []Spoken{{Name: "results", Stems: []string{"removed", "died", "ill", "was lost", "were lost"}}, {Name: "measurements", Stems: []string{"removed", "died"}}}
+
 func (v *evidence) animalsLost(out *Part) {
 	if v.waiting(out) {
 		return
@@ -423,7 +429,7 @@ func (v *evidence) animalsLost(out *Part) {
 	switch {
 	case n > 0:
 		out.say("%s", few(says, "kinds of loss"))
-		out.Tables = []Sought{{Names: []string{"losses", "events"}}}
+		out.Tables = []Sought{{Names: []string{"losses", "events"}, Also: lossWords}}
 		out.Lacks = lacks
 	case v.confirmed("event"):
 		out.say("none, as the author confirms")
@@ -456,7 +462,7 @@ func (v *evidence) adverse(out *Part, group bool) {
 	switch {
 	case n > 0:
 		out.say("%s", few(says, "kinds of event"))
-		out.Tables = []Sought{{Names: []string{"events"}}}
+		out.Tables = []Sought{{Names: []string{"events"}, Also: lossWords}}
 		out.Lacks = lacks
 	case v.confirmed("event"):
 		out.say("none, as the author confirms")
@@ -466,7 +472,7 @@ func (v *evidence) adverse(out *Part, group bool) {
 }
 
 // tables seeks one table for every response that was analysed; others are lacking.
-func (v *evidence) tables(out *Part, has func(r *result.Response) bool, names func(name string) []string) {
+func (v *evidence) tables(out *Part, has func(r *result.Response) bool, shared string, names func(name string) []string) {
 	if v.waiting(out) {
 		return
 	}
@@ -477,32 +483,36 @@ func (v *evidence) tables(out *Part, has func(r *result.Response) bool, names fu
 			lacks = append(lacks, "for "+ResponseText(r))
 			continue
 		}
-		out.Tables = append(out.Tables, Sought{Response: ResponseText(r), Names: names(r.Name)})
+		t := Sought{Response: ResponseText(r), Names: names(r.Name)}
+		for _, s := range strings.Fields(shared) {
+			t.Also = append(t.Also, Spoken{Name: s, Stems: []string{ResponseText(r), bareName(r)}})
+		}
+		out.Tables = append(out.Tables, t)
 	}
 	out.lack(len(v.rs.Responses), lacks)
 }
 
 func (v *evidence) analysed(out *Part) {
-	v.tables(out, func(r *result.Response) bool { return r.Model != nil && len(r.Summary) > 0 }, func(n string) []string {
-		return []string{"summary-" + n, "summary", "means-" + n + "-"}
+	v.tables(out, func(r *result.Response) bool { return r.Model != nil && len(r.Summary) > 0 }, "chapter-spread chapter-spread-", func(n string) []string {
+		return []string{"summary-" + n, "means-" + n + "-"}
 	})
 }
 
 func (v *evidence) spread(out *Part) {
 	v.tables(out, func(r *result.Response) bool {
 		return len(r.Summary) > 0 && !slices.ContainsFunc(r.Summary, func(s result.Summary) bool { return s.N > 0 && !s.SD.Known() })
-	}, func(n string) []string { return []string{"summary-" + n, "summary"} })
+	}, "chapter-spread chapter-spread-", func(n string) []string { return []string{"summary-" + n} })
 }
 
 func (v *evidence) means(out *Part) {
-	v.tables(out, func(r *result.Response) bool { return len(r.Means) > 0 }, func(n string) []string { return []string{"means-" + n + "-", "means"} })
+	v.tables(out, func(r *result.Response) bool { return len(r.Means) > 0 }, "chapter-means-", func(n string) []string { return []string{"means-" + n + "-"} })
 }
 
 func (v *evidence) effects(out *Part) {
 	v.tables(out, func(r *result.Response) bool {
 		return slices.ContainsFunc(r.Comparisons, func(c result.Comparison) bool { return c.Lower.Known() || c.Upper.Known() }) ||
 			slices.ContainsFunc(r.Contrasts, func(c result.Contrast) bool { return c.Lower.Known() || c.Upper.Known() })
-	}, func(n string) []string {
+	}, "chapter-contrasts chapter-contrasts-", func(n string) []string {
 		return []string{"comparisons-" + n + "-", "contrasts-" + n, "unplanned-contrasts-" + n}
 	})
 }
@@ -511,7 +521,7 @@ func (v *evidence) randomized(out *Part) {
 	a := v.t.Allotment
 	if a != nil && a.Origin == allot.Drawn && len(a.Draws) > 0 {
 		out.say("drawn, with scheme, generator and seed on record")
-		out.Tables = []Sought{{Names: []string{"draws", "randomization-record", "randomization-and-blinding"}}}
+		out.Tables = []Sought{{Names: []string{"draws", "randomization-record", "randomization-and-blinding"}, Also: []Spoken{{Name: "experimental-design", Stems: []string{"at random", "randomized", "drawn"}}}}}
 		return
 	}
 	if m := v.p.Randomization.Method; adequate(m, welfare.Key{}) {
@@ -588,9 +598,18 @@ func (v *evidence) outcomeUnits(out *Part) {
 		out.skip("outcomes are counted or classed")
 	case n > 0:
 		if out.lack(n, lacks); out.State == Answered {
-			out.Tables = []Sought{{Names: []string{"planned", "planned-analysis", "summary"}}}
+			out.Tables = []Sought{{Names: []string{"planned", "planned-analysis", "responses"}, Also: v.inMeasurements()}}
 		}
 	}
+}
+
+// inMeasurements is the section of a chapter that defines responses.
+func (v *evidence) inMeasurements() []Spoken {
+	var names []string
+	for i := range v.p.Responses {
+		names = append(names, ResponseLabelText(&v.p.Responses[i]))
+	}
+	return []Spoken{{Name: "measurements", Stems: names}}
 }
 
 func (v *evidence) primary(out *Part) {
@@ -627,9 +646,7 @@ func (v *evidence) methods(out *Part) {
 		}
 		return
 	}
-	v.tables(out, func(r *result.Response) bool { return r.Model != nil }, func(n string) []string {
-		return []string{"statistical-methods", "statistical-analysis", "statistics"}
-	})
+	v.tables(out, func(r *result.Response) bool { return r.Model != nil }, "statistical-methods statistical-analysis", func(string) []string { return nil })
 }
 
 func (v *evidence) program(out *Part) {
@@ -641,16 +658,20 @@ func (v *evidence) assumptions(out *Part) {
 		v.key(welfare.Key{Name: "analysis.assumptions"}, out)
 		return
 	}
-	v.tables(out, func(r *result.Response) bool { return len(r.Diagnostics) > 0 }, func(n string) []string {
-		return []string{"diagnostics-" + n, "residual-pictures"}
-	})
+	v.tables(out, func(r *result.Response) bool { return len(r.Diagnostics) > 0 }, "", func(n string) []string { return []string{"diagnostics-" + n} })
+	for i := range out.Tables {
+		out.Tables[i].Also = []Spoken{{Name: "statistical-analysis", Stems: []string{"residuals were", "residual"}}}
+	}
 }
 
 // treatmentsDescribed asks for what each level is. Amounts with their unit, entries that
 // are a sample and listed test items speak for themselves.
 func (v *evidence) treatmentsDescribed(out *Part) {
-	var lacks []string
+	var lacks, names []string
 	fs := v.received()
+	for _, f := range fs {
+		names = append(names, lowerFirst(FactorLabel(f)))
+	}
 	items := slices.ContainsFunc(v.p.Items, func(x protocol.Item) bool { return adequate(x.Name, welfare.Key{Fact: true}) })
 	for _, f := range fs {
 		x := f.Protocol
@@ -670,7 +691,7 @@ func (v *evidence) treatmentsDescribed(out *Part) {
 		}
 	}
 	if out.lack(len(fs), lacks); out.State == Answered {
-		out.Tables = []Sought{{Names: []string{"levels", "items", "units-and-treatments"}}}
+		out.Tables = []Sought{{Names: []string{"levels", "items", "units-and-treatments"}, Also: []Spoken{{Name: "treatments", Stems: names}}}}
 	}
 }
 
@@ -730,23 +751,22 @@ func (v *evidence) procedureTimes(out *Part) {
 		}
 	}
 	if out.lack(len(v.p.Welfare.Procedures), lacks); out.State == Answered {
-		out.Tables = []Sought{{Names: []string{"procedures"}}}
+		out.Tables = []Sought{{Names: []string{"procedures"}, Also: []Spoken{{Name: "measurements", Stems: []string{procedureName(&v.p.Welfare.Procedures[0])}}}}}
 	}
 }
 
 func (v *evidence) dates(out *Part) {
-	var lacks, texts []string
+	var lacks []string
 	for _, x := range []struct {
 		what string
 		on   protocol.Date
 	}{{"the start", v.p.Trial.Start}, {"the end", v.p.Trial.End}} {
 		if x.on == (protocol.Date{}) {
 			lacks = append(lacks, x.what)
-		} else {
-			texts = append(texts, DateText(x.on))
 		}
 	}
-	out.Texts = texts
+	year := num.Fixed(float64(max(v.p.Trial.Start.Year, v.p.Trial.End.Year)), 0)
+	out.Tables = []Sought{{Names: []string{"identity"}, Also: []Spoken{{Name: "animals-and-housing", Stems: []string{year}}, {Name: "site-and-material", Stems: []string{year}}}}}
 	out.lack(2, lacks)
 }
 
@@ -867,7 +887,7 @@ func (v *evidence) quality(out *Part) {
 		}
 	}
 	if out.lack(len(v.p.Responses), lacks); out.State == Answered {
-		out.Tables = []Sought{{Names: []string{"planned"}}}
+		out.Tables = []Sought{{Names: []string{"planned", "responses"}, Also: v.inMeasurements()}}
 	}
 }
 

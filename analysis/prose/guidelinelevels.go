@@ -256,7 +256,7 @@ func (v *evidence) flowLevels(out *Part) {
 		}
 	}
 	out.say("%s", strings.Join(says, "; "))
-	out.Tables = []Sought{{Names: []string{"flow", "conduct"}}}
+	out.Tables = []Sought{{Names: []string{"figure-flow", "conduct"}, Also: []Spoken{{Name: "results", Stems: []string{"were analysed", "was analysed"}}}}}
 }
 
 func (v *evidence) analysisLevels(out *Part) {

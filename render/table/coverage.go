@@ -164,7 +164,7 @@ func (r *reading) place(p *prose.Part, places []string) {
 	}
 	var lacks []string
 	for _, t := range p.Tables {
-		if id, ok := r.named(t.Names); ok {
+		if id, ok := r.sought(&t); ok {
 			found = true
 			p.Where = unique(p.Where, id)
 		} else {
@@ -209,10 +209,33 @@ func (r *reading) named(names []string) (string, bool) {
 	return "", false
 }
 
+// sought finds a table or section.
+func (r *reading) sought(t *prose.Sought) (string, bool) {
+	if id, ok := r.named(t.Names); ok {
+		return id, true
+	}
+	for _, a := range t.Also {
+		for i := range r.spots {
+			s := &r.spots[i]
+			if s.id != a.Name && !(strings.HasSuffix(a.Name, "-") && strings.HasPrefix(s.id, a.Name)) {
+				continue
+			}
+			if slices.ContainsFunc(a.Stems, func(stem string) bool { return strings.Contains(s.text, stemmed(stem)) }) {
+				return s.id, true
+			}
+		}
+	}
+	return "", false
+}
+
 // holds finds the place that a text stands in: one of those named, or else the smallest
 // one anywhere.
 func (r *reading) holds(text string, places []string) (string, bool) {
-	for _, run := range runs(text) {
+	all := runs(text)
+	if _, after, ok := strings.Cut(text, ": "); ok && len(words(after)) > 1 {
+		all = append(all, runs(after)...) // “none: internal trial”
+	}
+	for _, run := range all {
 		for _, n := range places {
 			for i := range r.spots {
 				if s := &r.spots[i]; s.id == n && strings.Contains(s.text, run) {
@@ -354,7 +377,7 @@ func answer(x *prose.Item, label map[string]string) []doc.Inline {
 	}
 	told(prose.Inapplicable, "Not applicable")
 	told(prose.Waiting, "Waits")
-	told(prose.Unprinted, "Stated in the protocol, but not in this report")
+	told(prose.Unprinted, "Known, but not in this report")
 	first := true
 	for i := range x.Parts {
 		p := &x.Parts[i]
