@@ -212,6 +212,8 @@ func TestNumbers(t *testing.T) {
 		{-1, 1, "g", []string{"−1.0", "−0.5", "0.0", "0.5", "1.0"}},
 		{612, 745, "g", []string{"620", "640", "660", "680", "700", "720", "740"}},
 		{0.0101, 0.0147, "g", []string{"0.011", "0.012", "0.013", "0.014"}},
+		{1e12, 1e12 + 50, "g, less 1000000000000", []string{"0", "10", "20", "30", "40", "50"}},
+		{-5e7 - 3, -5e7, "g, plus 50000000", []string{"−3.0", "−2.5", "−2.0", "−1.5", "−1.0", "−0.5", "0.0"}},
 		{0, 5.2e6, "g (10⁶)", []string{"0", "1", "2", "3", "4", "5"}},
 		{-6e-6, 0, "g (10⁻⁶)", []string{"−6", "−5", "−4", "−3", "−2", "−1", "0"}},
 	} {
@@ -225,6 +227,11 @@ func TestNumbers(t *testing.T) {
 		}
 		if !slices.Equal(got, c.want) || strings.Join(a.title, " ") != c.title {
 			t.Errorf("%v to %v: %q %q, want %q %q", c.lo, c.hi, a.title, got, c.title, c.want)
+		}
+	}
+	for in, want := range map[string]string{"Mass (g)": "Mass (10⁶ g)", "Mass": "Mass (10⁶)", "": "(10⁶)", "Gain (a) of b": "Gain (a) of b (10⁶)"} {
+		if got := inUnit(in, "10⁶"); got != want {
+			t.Errorf("%q becomes %q", in, got)
 		}
 	}
 	for _, c := range []struct {
