@@ -851,14 +851,16 @@ func (v *pictures) flow() []doc.Block {
 	for t, name := range names {
 		fig.Rows = append(fig.Rows, figure.FlowRow{Label: name, Counts: []int{allotted[t], observed[t], analysed[t]}, Reasons: []string{before[t].String(), after[t].String()}})
 	}
+	from := "the allotment"
 	if planned := v.planned(unit, names); planned != nil {
+		from = "the plan"
 		fig.Stages = append([]string{"planned"}, fig.Stages...)
 		for t := range fig.Rows {
 			r := &fig.Rows[t]
 			r.Counts, r.Reasons = append([]int{planned[t]}, r.Counts...), append([]string{""}, r.Reasons...)
 		}
 	}
-	return figureOf("figure-flow", "Flow of units from the allotment to the analysis of "+prose.ResponseLabelText(data.Protocol)+".", "flow", fig.Draw)
+	return figureOf("figure-flow", "Flow of units from "+from+" to the analysis of "+prose.ResponseLabelText(data.Protocol)+".", "flow", fig.Draw)
 }
 
 // reasons counts why units fell away, in the order of their first appearance.
