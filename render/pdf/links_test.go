@@ -124,7 +124,7 @@ func TestWhereLinksLead(t *testing.T) {
 			t.Errorf("the contents say %q", s.Text)
 		}
 		toc(tree)
-		if numbered < 6 {
+		if numbered < 4 {
 			t.Errorf("%d lines of contents", numbered)
 		}
 	}
