@@ -107,8 +107,8 @@ func TestInk(t *testing.T) {
 		{"frame", doc.Stroke{Path: line(true, 20, 20, 80, 20, 80, 80, 20, 80), Width: 4, Colour: black}, 4*60*4 - 4*4 + math.Pi*4},
 		{"ring", doc.Stroke{Path: circle, Width: 3, Colour: black}, 2 * math.Pi * 30 * 3},
 	} {
-		img := drawn(t, &doc.Picture{Width: 100, Height: 100, Ops: []doc.Op{x.op}}, 1, 300)
-		if got := ink(img, 300); math.Abs(got-x.want) > 0.012*x.want {
+		img := drawn(t, &doc.Picture{Width: 100, Height: 100, Ops: []doc.Op{x.op}}, 1, 144)
+		if got := ink(img, 144); math.Abs(got-x.want) > 0.012*x.want {
 			t.Errorf("%s: %.2f, want %.2f", x.name, got, x.want)
 		}
 	}
@@ -131,8 +131,11 @@ func TestHostile(t *testing.T) {
 			t.Errorf("%v is drawn", p)
 		}
 	}
-	img := drawn(t, &doc.Picture{Width: 90000, Height: 90000}, 1, 300)
-	if n := img.Bounds().Dx() * img.Bounds().Dy(); n > 17<<20 {
-		t.Errorf("%d points", n)
+	var b bytes.Buffer
+	if err := raster.PNG(&b, &doc.Picture{Width: 90000, Height: 90000}, 1, 300); err != nil {
+		t.Fatal(err)
+	}
+	if c, err := png.DecodeConfig(&b); err != nil || c.Width*c.Height > 17<<20 {
+		t.Errorf("%d × %d points, %v", c.Width, c.Height, err)
 	}
 }
