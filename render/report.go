@@ -155,7 +155,7 @@ func carryOut(jobs []job, workers int) []outcome {
 // jobs lists what is wanted, the longest first.
 func jobs(d *doc.Document, rs *result.Results, opt Options, attached []attached) []job {
 	want := func(kind string) bool { return slices.Contains(opt.Only, kind) }
-	about := pdf.Options{Date: moment(opt.Date), Producer: rs.Program.Name + " " + rs.Program.Version, Subject: "Report of trial " + rs.Trial.Code}
+	about := pdf.Options{Lang: d.Lang, Date: moment(opt.Date), Producer: rs.Program.Name + " " + rs.Program.Version, Subject: "Report of trial " + rs.Trial.Code}
 	one := func(path string, b *bytes.Buffer, list diag.List, err error) ([]File, diag.List, error) {
 		return []File{{Path: path, Data: b.Bytes()}}, list, err
 	}

@@ -386,7 +386,8 @@ func (d *draft) head() {
 	}
 	d.rule(d.x[0], d.y, d.x[len(d.x)-1]-d.x[0], height, sheetFill)
 	d.rule(d.x[0], d.y, d.x[len(d.x)-1]-d.x[0], 1.0, sheetInk)
-	if d.table == nil {
+	again := d.table != nil // on a further page the heads are said no more
+	if !again {
 		d.table = &page.Element{Role: page.Table}
 	}
 	row := &page.Element{Role: page.TableRow, Parent: d.table}
@@ -394,15 +395,17 @@ func (d *draft) head() {
 		y := d.y + lead + 1
 		var ops []page.Op
 		for _, l := range heads[i] {
-			ops = append(ops, set(d.x[i]+3, y, l, size, true, sheetInk)...)
+			ops = append(ops, set(d.x[i]+3, y, l+" ", size, true, sheetInk)...)
 			y += lead
 		}
 		if c.unit != "" {
 			ops = append(ops, set(d.x[i]+3, y, cut(c.unit, size, false, c.width-6), size, false, sheetGrey)...)
 		}
-		if len(ops) > 0 {
-			d.add(&page.Element{Role: page.HeadCell, Parent: row}, ops...)
+		cell := &page.Element{Role: page.HeadCell, Parent: row}
+		if again {
+			cell = &page.Element{Role: page.Artifact}
 		}
+		d.add(cell, ops...)
 	}
 	d.y += height
 	d.rule(d.x[0], d.y-0.8, d.x[len(d.x)-1]-d.x[0], 0.8, sheetInk)
@@ -427,6 +430,7 @@ func (d *draft) row(row int, height float64) {
 	}
 	for i, c := range d.columns {
 		if c.text == nil {
+			d.add(&page.Element{Role: page.Cell, Parent: el}) // to be written into
 			continue
 		}
 		lines := wrap(c.text(row), c.size, c.bold, c.width-6, max(c.lines, 1))
@@ -437,12 +441,10 @@ func (d *draft) row(row int, height float64) {
 			colour = sheetGrey
 		}
 		for _, l := range lines {
-			ops = append(ops, set(d.x[i]+4, y, l, c.size, c.bold, colour)...)
+			ops = append(ops, set(d.x[i]+4, y, l+" ", c.size, c.bold, colour)...)
 			y += c.size * 1.2
 		}
-		if len(ops) > 0 {
-			d.add(&page.Element{Role: page.Cell, Parent: el}, ops...)
-		}
+		d.add(&page.Element{Role: page.Cell, Parent: el}, ops...)
 	}
 	d.rule(d.x[0], d.y+height-0.6, d.x[len(d.x)-1]-d.x[0], 0.6, sheetRule)
 	for i := range d.x {
