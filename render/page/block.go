@@ -3,7 +3,6 @@ package page
 import (
 	"fmt"
 	"math"
-	"slices"
 	"strings"
 
 	"penwright/protocol/diag"
@@ -252,38 +251,37 @@ func (s *setter) top() where {
 	return where{width: s.measure, size: textSize, lead: textLead, parent: s.root}
 }
 
-// title sets the head of the first page: what the trial is called and how it stands
-// above, then the title, then the people.
+// title sets the head of the first page: what the trial is called in short and how it
+// stands, then the title, then the people. Read aloud, the title comes first.
 func (s *setter) title() []item {
 	d := s.doc
 	w := s.top()
+	title, author := s.element(Element{Role: Title, Parent: s.root}), s.element(Element{Role: Paragraph, Parent: s.root})
+	code, state := s.element(Element{Role: Paragraph, Parent: s.root}), s.element(Element{Role: Paragraph, Parent: s.root})
 	var boxes []box
-	add := func(role Role, text string, st style, lead, gap float64) {
+	add := func(el *Element, text string, st style, lead, gap float64) {
 		if text == "" {
 			return
 		}
-		el := s.element(Element{Role: role, Parent: s.root})
 		lines := lineBoxes(ragged(s.plainAtoms(text, st), w.width), st, lead, w, 0, el)
 		space(lines, gap, 0)
 		boxes = append(boxes, lines...)
 	}
 	small := in(grey, sans(8.5))
-	var state []string
+	var parts []string
 	for _, t := range []string{d.Status, d.Date} {
 		if t != "" {
-			state = append(state, strings.ReplaceAll(t, " ", "\u00A0"))
+			parts = append(parts, strings.ReplaceAll(t, " ", "\u00A0"))
 		}
 	}
-	code, right := strings.ReplaceAll(d.Code, " ", "\u00A0"), strings.Join(state, "\u2002·\u2002")
-	if wide := textWidth(right, small); textWidth(code, small)+wide+24 <= w.width && code != "" && right != "" {
-		add(Paragraph, code, bold(small), 12, 0)
-		if len(boxes) == 1 {
-			el := s.element(Element{Role: Paragraph, Parent: s.root})
-			l := line{atoms: s.plainAtoms(right, small)}
-			boxes[0].ops = append(boxes[0].ops, enclose(el, l.draw(w.width-wide, baseline(small, 12)))...)
-		}
+	left, right := strings.ReplaceAll(d.Code, " ", "\u00A0"), strings.Join(parts, "\u2002·\u2002")
+	wide := textWidth(right, small)
+	add(code, left, bold(small), 12, 0)
+	if len(boxes) == 1 && textWidth(left, bold(small))+wide+24 <= w.width {
+		l := line{atoms: s.plainAtoms(right, small)}
+		boxes[0].ops = append(boxes[0].ops, enclose(state, l.draw(w.width-wide, baseline(small, 12)))...)
 	} else {
-		add(Paragraph, strings.Join(slices.DeleteFunc([]string{code, right}, func(t string) bool { return t == "" }), " · "), small, 12, 0)
+		add(state, right, small, 12, 0)
 	}
 	if len(boxes) > 0 && d.Title != "" {
 		boxes = append(boxes, box{gap: 3, height: hair, ops: artifact(Box{Width: w.width, Height: hair, Colour: faint})})
@@ -295,8 +293,8 @@ func (s *setter) title() []item {
 	if textWidth(d.Title, bold(sans(size))) > w.width {
 		size = titleSize // it takes more lines anyway
 	}
-	add(Title, d.Title, bold(sans(size)), size*titleLead, 20)
-	add(Paragraph, d.Author, serif(textSize+1.5), 15.5, 6)
+	add(title, d.Title, bold(sans(size)), size*titleLead, 20)
+	add(author, d.Author, serif(textSize+1.5), 15.5, 6)
 	if len(boxes) == 0 {
 		return nil
 	}
@@ -322,8 +320,11 @@ func (s *setter) items(blocks []doc.Block) []item {
 		case doc.Figure:
 			items = append(items, s.figureItem(b, w))
 		case doc.Contents:
-			if boxes := s.contents(w, math.Inf(1)); len(boxes) > 0 {
-				items = append(items, item{boxes: boxes, squeeze: func(room float64) []box { return s.contents(w, room) }})
+			// However often they are set, they have one place in the reading order.
+			title, parent := s.contentsElements(w)
+			set := func(room float64) []box { return s.contents(w, room, title, parent) }
+			if boxes := set(math.Inf(1)); len(boxes) > 0 {
+				items = append(items, item{boxes: boxes, squeeze: set})
 			}
 		default:
 			if boxes := s.block(b, w); len(boxes) > 0 {
@@ -427,7 +428,8 @@ func (s *setter) block(b doc.Block, w where) []box {
 	case doc.Aside:
 		return s.aside(b, w)
 	case doc.Contents:
-		return s.contents(w, math.Inf(1))
+		title, parent := s.contentsElements(w)
+		return s.contents(w, math.Inf(1), title, parent)
 	case doc.Table:
 		return s.table(b, w).boxes
 	case doc.Figure:
@@ -654,12 +656,16 @@ func (s *setter) aside(a doc.Aside, w where) []box {
 	return boxes
 }
 
+func (s *setter) contentsElements(w where) (title, parent *Element) {
+	return s.element(Element{Role: Paragraph, Parent: w.parent}), s.element(Element{Role: Contents, Parent: w.parent})
+}
+
 // contents sets the table of contents, two levels of it. It is set closer where it then
 // ends on the page it begins on, room being what that has left.
-func (s *setter) contents(w where, room float64) []box {
+func (s *setter) contents(w where, room float64, title, parent *Element) []box {
 	var boxes []box
 	for i, lead := range []float64{13, 12.25, 11.5, 10.9} {
-		closer := s.contentsAt(w, lead)
+		closer := s.contentsAt(w, lead, title, parent)
 		if i == 0 {
 			boxes = closer
 		}
@@ -670,13 +676,11 @@ func (s *setter) contents(w where, room float64) []box {
 	return boxes
 }
 
-func (s *setter) contentsAt(w where, lead float64) []box {
+func (s *setter) contentsAt(w where, lead float64, title, parent *Element) []box {
 	top := 6
 	for _, e := range s.entries {
 		top = min(top, e.level)
 	}
-	title := s.element(Element{Role: Paragraph, Parent: w.parent})
-	parent := s.element(Element{Role: Contents, Parent: w.parent})
 	var boxes []box
 	st := bold(sans(headings[2].size))
 	head := lineBoxes(ragged(s.plainAtoms("Contents", st), w.width), st, headings[2].lead, w, w.x, title)

@@ -41,7 +41,7 @@ func TestHostile(t *testing.T) {
 	cjk, rtl := strings.Repeat("飼料", 60), strings.Repeat("שלום עולם ", 60)
 	number := func(i, j int) string { return fmt.Sprintf("%d.%d", i, j) }
 	one := func(b ...doc.Block) *doc.Document { return &doc.Document{Title: "Hostile", Blocks: b} }
-	const mib, part = 1 << 20, 1 << 17
+	const mib, part = 1 << 20, 1 << 16
 	tests := []struct {
 		name string
 		doc  *doc.Document

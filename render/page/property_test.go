@@ -97,9 +97,9 @@ func (p *plot) document() *doc.Document {
 // Whatever a document is made of, every word of it stands on its pages once, pages break
 // as they may, and none is left half empty but before what is too high for the rest.
 func TestProperties(t *testing.T) {
-	n := uint64(150)
+	n := uint64(60)
 	if testing.Short() {
-		n = 40
+		n = 20
 	}
 	white, pages := 0.0, 0
 	for seed := range n {

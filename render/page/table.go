@@ -224,6 +224,7 @@ func (g *grid) measure() {
 	n := len(g.columns)
 	g.natural, g.comfort, g.narrow = make([]float64, n), make([]float64, n), make([]float64, n)
 	g.left, g.right = make([]float64, n), make([]float64, n)
+	whole := make([]float64, n) // of the body
 	all := [][]row{g.head, g.rows}
 	for _, rows := range all {
 		for _, r := range rows {
@@ -233,6 +234,9 @@ func (g *grid) measure() {
 				}
 				i := c.col
 				g.narrow[i] = max(g.narrow[i], min(c.narrow, longWordAt))
+				if !r.head {
+					whole[i] = max(whole[i], c.natural)
+				}
 				if c.align == doc.Decimal && !r.head && c.natural <= longWordAt {
 					g.left[i] = max(g.left[i], c.left)
 					g.right[i] = max(g.right[i], c.natural-c.left)
@@ -247,7 +251,7 @@ func (g *grid) measure() {
 		body := g.left[i] + g.right[i]
 		g.comfort[i] = max(body, g.narrow[i], min(g.natural[i], 54+g.natural[i]/8, 120))
 		if c.Align != doc.Left {
-			g.comfort[i] = max(body, g.narrow[i], min(g.natural[i], 64)) // limits stay on one line
+			g.comfort[i] = max(body, g.narrow[i], min(whole[i], 64)) // limits stay on one line
 		}
 	}
 	// What spans columns widens them evenly.

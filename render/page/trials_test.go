@@ -55,7 +55,7 @@ func TestTrials(t *testing.T) {
 	}
 	slices.Sort(names)
 	even, ragged := 0, 0
-	shifts := 6
+	shifts := 3
 	if testing.Short() {
 		shifts = 1
 	}
