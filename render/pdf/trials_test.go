@@ -3,6 +3,7 @@ package pdf_test
 import (
 	"io/fs"
 	"os"
+	"path"
 	"testing"
 
 	"penwright/analysis"
@@ -88,6 +89,31 @@ func TestTrials(t *testing.T) {
 			t.Run(name+" "+d.Paper, func(t *testing.T) {
 				says(t, conforms(t, write(t, d, attachments())), d)
 			})
+		}
+	}
+}
+
+// Sheets to fill and the files of figures hold to the clauses too.
+func TestSheetsAndFigures(t *testing.T) {
+	for _, name := range []string{"demo", "split-plot", "latin-square"} {
+		x, rs := opened(t, name)
+		sheets, _, err := render.Sheets(x, render.SheetOptions{Date: "2026-05-04", Only: []string{"pdf"}})
+		if err != nil {
+			t.Fatal(err)
+		}
+		figures, list, err := render.Report(x, rs, render.Options{Date: "2026-05-04", Only: []string{"figures"}, Workers: 1})
+		if err != nil || list.HasErrors() {
+			t.Fatal(list, err)
+		}
+		n := 0
+		for _, f := range append(sheets, figures...) {
+			if path.Ext(f.Path) == ".pdf" {
+				n++
+				t.Run(name+" "+f.Path, func(t *testing.T) { conforms(t, f.Data) })
+			}
+		}
+		if n < 4 {
+			t.Errorf("%s: %d files", name, n)
 		}
 	}
 }
