@@ -274,12 +274,14 @@ func Coverage(c *Checklist) []string {
 			total++
 		}
 	}
-	what := "items of " + c.Name
-	if c.Name == "Field trials" {
+	what := "items of " + c.Name + " that concern this trial"
+	switch {
+	case c.Name == "Field trials" && c.Plan:
+		what = "points that readers of field trials ask for and a plan can answer"
+	case c.Name == "Field trials":
 		what = "points that readers of field trials ask for"
-	}
-	if c.Plan {
-		what += " that a plan can answer and"
+	case c.Plan:
+		what = "items of " + c.Name + " that a plan can answer and that concern this trial"
 	}
 	parts := []string{are(len(by[Answered])) + " answered"}
 	list := func(of State, one, more string) {
@@ -293,7 +295,7 @@ func Coverage(c *Checklist) []string {
 	list(Missing, "is missing", "are missing")
 	list(Unprinted, "is known, but not in this report", "are known, but not in this report")
 	list(Waiting, "waits for the draw or the data", "wait for the draw or the data")
-	s := []string{fmt.Sprintf("Of the %s %s that concern this trial %s.", num.Count(total), what, And(parts))}
+	s := []string{fmt.Sprintf("Of the %s %s %s.", num.Count(total), what, And(parts))}
 	if len(by[Partly])+len(by[Missing]) > 0 {
 		s = append(s, "A gap is no error of the trial: the key of the protocol that would close it stands beside it.")
 	}
