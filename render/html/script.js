@@ -246,6 +246,8 @@
     ring.setAttribute("class", "ring");
     let at = -1, boxes = null;
     const measure = () => { boxes = marks.map((m) => m.element.getBoundingClientRect()); };
+    // A line is named only where nothing with a body is near.
+    const lines = marks.map((m) => m.element.localName === "path" && getComputedStyle(m.element).fill === "none");
     const hide = () => { at = -1; tip.hidden = true; ring.remove(); };
     const show = (i) => {
       if (i === at) return;
@@ -264,7 +266,7 @@
     const nearest = (x, y) => {
       let best = -1, least = 12, size = Infinity;
       boxes.forEach((b, i) => {
-        const d = Math.hypot(Math.max(b.left - x, 0, x - b.right), Math.max(b.top - y, 0, y - b.bottom));
+        const d = (lines[i] ? 11 : 0) + Math.hypot(Math.max(b.left - x, 0, x - b.right), Math.max(b.top - y, 0, y - b.bottom));
         if (d < least || d === least && b.width * b.height < size) [best, least, size] = [i, d, b.width * b.height];
       });
       return best;

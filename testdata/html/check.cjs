@@ -138,12 +138,16 @@ async function use(page) {
     if (!a) return "";
     const target = document.getElementById(decodeURIComponent(a.hash.slice(1)));
     target.scrollIntoView({ block: "start", behavior: "instant" });
-    for (let i = 0; i < 40 && !a.hasAttribute("aria-current"); i++) {
+    // Where a section begins with one of its own, that is the one in view.
+    const right = () => {
+      const marked = [...document.querySelectorAll("nav [aria-current]")];
+      return marked.length === 1 && (a.parentElement.contains(marked[0]) || scrollY + innerHeight >= document.documentElement.scrollHeight - 2);
+    };
+    for (let i = 0; i < 40 && !right(); i++) {
       await new Promise((done) => setTimeout(done, 50));
       target.scrollIntoView({ block: "start", behavior: "instant" });
     }
-    const marked = document.querySelectorAll("nav [aria-current]").length;
-    return a.hasAttribute("aria-current") && marked === 1 ? "" : marked + " sections are marked, and not " + a.textContent;
+    return right() ? "" : document.querySelectorAll("nav [aria-current]").length + " sections are marked, and not " + a.textContent;
   });
   if (section) say(section);
 
