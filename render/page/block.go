@@ -698,7 +698,7 @@ func (s *setter) contentsAt(w where, lead float64, title, parent *Element) []box
 		}
 		number, numberWidth := s.shorten(e.number, st, w.width/4), 0.0
 		if number != "" {
-			numberWidth = max(22, textWidth(number, st)+7)
+			numberWidth = max(22+indent/5, textWidth(number, st)+7)
 		}
 		el := s.element(Element{Role: ContentsEntry, Parent: parent})
 		x := w.x + indent
