@@ -402,7 +402,7 @@ func TestCheckersSeeFaults(t *testing.T) {
 			text = strings.Replace(text, "overflow-wrap: break-word;", "", 1)
 		}
 		if s.name == "csv" {
-			text = strings.Replace(text, "<td", "<td>=1+1</td><td", 1)
+			text = strings.ReplaceAll(text, "</tbody>", "<tr><td>=1+1</td></tr></tbody>")
 		}
 		// The policy would stop what is spoiled in style and script, which is right but not asked here.
 		before, rest, _ := strings.Cut(text, `<meta http-equiv="Content-Security-Policy"`)
