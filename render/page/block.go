@@ -810,7 +810,8 @@ func drawable(pic *doc.Picture) bool {
 }
 
 // setFigure sets a picture no wider than the column with its caption below, together no
-// higher than a limit.
+// higher than a page; and no higher than a limit where a little less will do, so that its
+// type stays as large as it was drawn.
 func (s *setter) setFigure(f doc.Figure, w where, highest float64, el, captionElement *Element) []box {
 	pos := s.at(f.Pos, w)
 	caption := s.caption("Figure", f.Number, f.Caption, w, pos, captionElement)
@@ -821,8 +822,11 @@ func (s *setter) setFigure(f doc.Figure, w where, highest float64, el, captionEl
 	pic := f.Picture
 	picture := box{gap: floatGap, keep: true, within: w.within}
 	if drawable(pic) {
-		room := max(highest-below-floatGap-7, 40)
-		scale := min(1, w.width/pic.Width, room/pic.Height)
+		room := func(highest float64) float64 { return max(highest-below-floatGap-7, 40) }
+		scale := min(1, w.width/pic.Width, room(s.pageHeight(false))/pic.Height)
+		if less := room(highest) / pic.Height; less < scale && less >= leastShrink*scale {
+			scale = less
+		}
 		picture.height = pic.Height * scale
 		picture.ops = enclose(el, []Op{Picture{X: w.x, Scale: scale, Picture: pic}})
 		for _, o := range pic.Ops {

@@ -38,6 +38,8 @@ const (
 
 	spaceLeast, spaceMost = 0.8, 1.6 // of the natural word space
 
+	leastShrink = 0.93 // of a picture, to fill a page that has nearly room for it
+
 	raisedSize, raise, lower = 0.7, 0.33, -0.15
 )
 
