@@ -12,7 +12,7 @@ const fs = require("fs");
 const [modules, executablePath, ...args] = process.argv.slice(2);
 const measured = args[0] === "--measure";
 const files = measured ? args.slice(1) : args;
-const puppeteer = require(path.join(modules, "puppeteer-core"));
+const puppeteer = require(path.resolve(modules, "puppeteer-core"));
 const axe = fs.readFileSync(path.join(modules, "axe-core", "axe.min.js"), "utf8");
 const rules = ["wcag2a", "wcag2aa", "wcag21a", "wcag21aa", "wcag22aa", "best-practice"];
 
