@@ -27,6 +27,8 @@ const CodeTyped = "typed-number"
 const (
 	maxTyped    = 2000 // numbers looked at
 	maxWarnings = 50
+
+	longestSentence = 2000 // bytes
 )
 
 // quote is a result that prose may quote.
@@ -396,7 +398,8 @@ func (rd *reader) typed(source compose.Source) diag.List {
 	text := proseOf(source.Text)
 	start := 0
 	sentence := func(end int) {
-		if start < end && len(list) < maxWarnings {
+		// What is longer than any sentence is not read: its numbers belong to nothing.
+		if start < end && end-start <= longestSentence && len(list) < maxWarnings && rd.looked <= maxTyped {
 			list = append(list, rd.sentence(source, text, start, end)...)
 		}
 		start = end
