@@ -91,7 +91,7 @@ func (b *builder) asked(name string) *result.Response {
 type knownNames struct{ terms, contrasts, covariates []string }
 
 // names lists what a response can be asked about: terms, contrasts with trends, and
-// covariates. Before the data they are those of the plan.
+// covariates. Before the data, and without an analysis, they are those of the plan.
 func (b *builder) names(r *result.Response) (terms, contrasts, covariates []string) {
 	if k := b.known[r.Name]; k != nil {
 		return k.terms, k.contrasts, k.covariates
@@ -128,7 +128,7 @@ func (b *builder) names(r *result.Response) (terms, contrasts, covariates []stri
 	for _, c := range r.Contrasts {
 		add(&contrasts, c.Name)
 	}
-	if b.trial.Table == nil {
+	if b.trial.Table == nil || r.Model == nil { // what would be known
 		for _, c := range p.Analysis.Contrasts {
 			add(&contrasts, c.Name)
 		}

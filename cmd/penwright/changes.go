@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"os"
 	"path/filepath"
+	"slices"
 
 	"github.com/spf13/cobra"
 
@@ -90,6 +91,10 @@ func (a *app) version(arg string) (*side, error) {
 		return nil, failed(cause(dir, err))
 	}
 	p, list := protocol.Load(f, name)
+	if !whole && p != nil {
+		// An older version is kept without the texts that it names: they are not compared.
+		list = slices.DeleteFunc(list, func(d diag.Diagnostic) bool { return d.Code == protocol.MissingFile })
+	}
 	o := &opened{dir: dir, folder: f, trial: &trial.Trial{Protocol: p}, list: list}
 	if list.HasErrors() {
 		var errs diag.List
