@@ -166,8 +166,11 @@ func Claims(claims []Claim) []string {
 // NarrativeWaits is what stands in the place of a narrative that quotes results before there are
 // data.
 func NarrativeWaits(place string) string {
-	return "What the author wrote for the " + place + " quotes results, and there are no data yet; it will stand here when there are."
+	return "What the author wrote for the " + place + " " + NarrativeWaiting + "; it will stand here when there are."
 }
+
+// NarrativeWaiting are the words by which a narrative that waits for the data is known.
+const NarrativeWaiting = "quotes results, and there are no data yet"
 
 // NotYet is what is printed for a value before there are data.
 const NotYet = "not known before the data"

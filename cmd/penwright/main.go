@@ -22,7 +22,7 @@ import (
 )
 
 // version is raised with every change of output.
-const version = "0.1.0"
+const version = "0.2.0"
 
 // topicTemplates is what help tells about beside the commands.
 const topicTemplates = "templates"

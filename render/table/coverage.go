@@ -268,6 +268,10 @@ func (r *reading) author(p *prose.Part) {
 			if !s.section || !strings.Contains(" "+s.title, " "+name) || s.words < sentence {
 				continue
 			}
+			if strings.Contains(s.text, stemmed(prose.NarrativeWaiting)) {
+				p.State, p.Says = prose.Waiting, "there are no data yet"
+				return
+			}
 			holds := true
 			for _, set := range p.Stems {
 				holds = holds && slices.ContainsFunc(set, func(stem string) bool { return strings.Contains(s.text, stemmed(stem)) })
