@@ -133,7 +133,7 @@ func paper(d *doc.Document) string {
 	if d.Fingerprint != "" {
 		foot = join(" · ", d.Code, "fingerprint "+d.Fingerprint)
 	}
-	return "@page { size: " + size + `; margin: 20mm 18mm 22mm; @bottom-left { content: "` + cssString(foot) + `"; font: 8pt sans-serif; color: #444; }` +
+	return "@page { size: " + size + `; margin: 20mm 18mm 22mm; @bottom-left { content: "` + cssString(shortened(foot, longestTitle)) + `"; font: 8pt sans-serif; color: #444; }` +
 		` @bottom-right { content: "page " counter(page) " of " counter(pages); font: 8pt sans-serif; color: #444; } }`
 }
 
@@ -145,7 +145,7 @@ func cssString(s string) string {
 		if r == ' ' || r >= '0' && r <= '9' || r >= 'A' && r <= 'Z' || r >= 'a' && r <= 'z' {
 			b.WriteRune(r)
 		} else {
-			fmt.Fprintf(&b, "\\%06x", r)
+			fmt.Fprintf(&b, "\\%06x ", r) // the space ends the number
 		}
 	}
 	return b.String()
