@@ -168,16 +168,14 @@ func opening(pg page.Page) bool {
 	if pg.Width > pg.Height {
 		return true
 	}
-	for _, p := range pieces(pg) {
-		if p.picture || p.el.Role != page.Paragraph {
+	all := pieces(pg)
+	if len(all) == 0 || all[0].picture || all[0].el.Role != page.Paragraph {
+		return true
+	}
+	for e := all[0].el; e != nil; e = e.Parent {
+		if e.Role == page.Aside {
 			return true
 		}
-		for e := p.el; e != nil; e = e.Parent {
-			if e.Role == page.Aside {
-				return true
-			}
-		}
-		return false
 	}
-	return true
+	return false
 }
