@@ -29,6 +29,9 @@ func computed(t *testing.T) time.Duration {
 // Narratives that want more time or memory than the words of an author may have, through
 // the functions of the report. Each is refused, or done, within about a second and 100 MB.
 func TestHostileNarratives(t *testing.T) {
+	if underRace {
+		t.Skip("its bounds are those of an ordinary build, and all that it does is one goroutine")
+	}
 	many := strings.Repeat
 	for name, text := range map[string]struct {
 		text string
