@@ -97,6 +97,26 @@ func design(p *layout.Plan) result.Design {
 		}
 		d.ErrorDF = append(d.ErrorDF, result.TermDF{Term: t.Name, DF: df})
 	}
+	for i, r := range p.Protocol.Repeated {
+		lines := p.Repeated(i)
+		left := -1 // residual df, where the times are analysed as a split plot in time
+		stratum := result.Stratum{}
+		for _, l := range lines {
+			stratum.Name = l.Stratum
+			stratum.DF += l.DF
+			if l.Kind == layout.Residual && r.Correlation == splitPlotInTime {
+				left = l.DF
+			}
+		}
+		if len(lines) > 0 {
+			d.Strata = append(d.Strata, stratum)
+		}
+		for _, l := range lines {
+			if l.Kind == layout.TimeLine {
+				d.ErrorDF = append(d.ErrorDF, result.TermDF{Term: l.Source, DF: left})
+			}
+		}
+	}
 	return d
 }
 
@@ -158,7 +178,15 @@ func respond(t *trial.Trial, r *dataset.Response, list *diag.List) result.Respon
 	if x := uncovered(t, p, index); x != nil {
 		return refuse(*x)
 	}
-	a := &analyst{trial: t, plan: t.Plan, rows: used(t, r), out: &out}
+	a := &analyst{trial: t, plan: t.Plan, out: &out}
+	if p.Repeated != "" {
+		long, records, over, x := overTime(t, r)
+		if x != nil {
+			return refuse(*x)
+		}
+		a.trial, a.plan, a.over, r = long, long.Plan, over, records
+	}
+	a.rows = used(a.trial, r)
 	if x := a.run(); x != nil {
 		return refuse(*x)
 	}

@@ -18,7 +18,8 @@ import (
 type analyst struct {
 	trial *trial.Trial
 	plan  *layout.Plan
-	rows  *rows // as recorded
+	rows  *rows     // as recorded
+	over  *repeated // the times, where the response is repeated; else nil
 	out   *result.Response
 
 	alpha   float64
@@ -31,6 +32,8 @@ type analyst struct {
 	model   model
 	ls      *leastSquares // the model where it is least squares; else nil
 	st      *byStrata     // the model where it is by strata; else nil
+	mx      *mixedModel   // the model where it is mixed; else nil
+	extra   []result.Test // of what a mixed model holds beside treatments
 	covs    []int         // indices of the covariates in the model, into the response's
 	noise   float64       // mean square at or below which an error is rounding
 }
@@ -163,25 +166,58 @@ func (a *analyst) modelTerms() [][]int {
 	return out
 }
 
-// fit picks the model: by strata where the values are balanced as the strata need, else
-// least squares where all treatments stand on one kind of unit, else none.
+// fit picks the model: by strata where the values are balanced as the strata need; else
+// least squares where all treatments stand on one kind of unit and all that is larger is
+// fixed; else a mixed model.
 func (a *analyst) fit() *refusal {
 	p := a.plan.Protocol
-	covariates := len(a.rows.resp.Covariates)
-	if covariates == 0 && p.TimeTrend == nil {
-		err := a.fitStrata(a.rows)
-		if err != nil && a.rows.unit != a.bottom {
-			if again := a.fitStrata(a.at); again == nil {
-				a.averagedNote()
-				return nil
-			}
-		}
-		if err == nil {
+	switch {
+	case a.over != nil && a.over.protocol.Correlation != splitPlotInTime:
+		return a.fitCorrelated()
+	case len(a.rows.resp.Covariates) > 0 || p.TimeTrend != nil || p.CarryOver != nil || len(a.plan.Crossed) > 0 || p.Analysis.VarianceBy != "":
+		return a.fitUnbalanced(nil)
+	}
+	err := a.fitStrata(a.rows)
+	if err == nil && a.over != nil {
+		a.sphericity()
+		return nil
+	}
+	if err != nil && a.rows.unit != a.bottom {
+		if again := a.fitStrata(a.at); again == nil {
+			a.averagedNote()
 			return nil
 		}
-		return a.fitLeastSquares(err)
 	}
-	return a.fitLeastSquares(nil)
+	if err == nil {
+		return nil
+	}
+	return a.fitUnbalanced(err)
+}
+
+// fitUnbalanced fits what is not analysed by strata; unbalanced says why the values are not
+// balanced, nil when something else asks for another model.
+func (a *analyst) fitUnbalanced(unbalanced error) *refusal {
+	p := a.plan.Protocol
+	mixed := p.CarryOver != nil || len(a.plan.Crossed) > 0 || p.Analysis.VarianceBy != ""
+	for _, t := range a.terms {
+		mixed = mixed || a.plan.Terms[t].Unit != a.bottom
+	}
+	for _, u := range a.nuisance() {
+		mixed = mixed || a.plan.Units[u].Random
+	}
+	var none noError
+	switch {
+	case !mixed:
+		return a.fitLeastSquares(unbalanced)
+	case errors.As(unbalanced, &none):
+		return &refusal{code: "no-error", why: "no degrees of freedom are left to test " + a.plan.Terms[none.term].Name, hint: a.fewerTerms(a.strataLeaveError)}
+	}
+	x, refused := a.fitMixed(nil)
+	if refused != nil {
+		return refused
+	}
+	a.mixedWhy(unbalanced)
+	return a.finishMixed(x)
 }
 
 // averagedNote says that values were averaged, with the variance within the unit.
@@ -237,57 +273,18 @@ func (a *analyst) nuisance() []int {
 // strata was not possible, nil when something else asks for least squares.
 func (a *analyst) fitLeastSquares(unbalanced error) *refusal {
 	p := a.plan.Protocol
-	var none noError
-	for _, t := range a.terms {
-		if u := a.plan.Terms[t].Unit; u != a.bottom {
-			if errors.As(unbalanced, &none) {
-				return &refusal{code: "no-error", why: "no degrees of freedom are left to test " + a.plan.Terms[none.term].Name, hint: a.fewerTerms(a.strataLeaveError)}
-			}
-			why := "its treatments were given to units of different size (" + a.plan.Units[u].Name + ", " + a.plan.Units[a.bottom].Name + ")"
-			hint := ""
-			switch {
-			case len(a.rows.resp.Covariates) > 0:
-				why += ", and a covariate then needs a mixed model, which this version does not fit"
-				hint = "leave the covariate out for an analysis by strata"
-			case p.TimeTrend != nil:
-				why += ", and a time trend then needs a mixed model, which this version does not fit"
-			default:
-				why += ", and the values are not balanced (" + unbalancedText(a, unbalanced) + "): the right error then needs a mixed model, which this version does not fit"
-				hint = "a response recorded on, or aggregated to, the larger unit can be analysed for its own treatments"
-			}
-			return &refusal{code: "needs-mixed-model", why: why, hint: hint}
-		}
-	}
 	nuisance := a.nuisance()
-	for _, u := range nuisance {
-		if a.plan.Units[u].Random {
-			key := "analysis.blocks"
-			if p.Units[u].Random != nil {
-				key = fmt.Sprintf("unit[%d].random", u)
-			}
-			return &refusal{code: "needs-mixed-model", key: key,
-				why:  fmt.Sprintf("%s enters as random, and its values are not balanced: recovery of what lies between %s needs a mixed model, which this version does not fit", a.plan.Units[u].Name, prose.Plural(prose.UnitName(&a.plan.Units[u]))),
-				hint: fmt.Sprintf("set analysis.blocks to \"fixed\" to compare treatments within %s", prose.Plural(prose.UnitName(&a.plan.Units[u])))}
-		}
-	}
 	if a.at != a.rows {
 		a.averagedNote()
 	}
 	m := linear.Model{Y: a.at.y, Factors: a.classes, Terms: a.modelTerms()}
 	trendUnit := -1
-	if tt := p.TimeTrend; tt != nil {
-		on, along := unitIndex(a.plan, tt.On), unitIndex(a.plan, tt.Along)
-		if on < 0 || along < 0 || a.plan.Coarse(a.bottom, on) == nil || a.plan.Coarse(a.bottom, along) == nil {
-			return &refusal{code: "time-trend", key: "time_trend", why: "its rows do not lie within the units of the time trend"}
+	if p.TimeTrend != nil {
+		on, time, centre, refused := a.trendTimes()
+		if refused != nil {
+			return refused
 		}
-		number := periodNumber(a.plan, along)
-		up := a.plan.Coarse(a.bottom, along)
-		tr := &linear.Trend{Unit: a.at.unitFactor(on), Order: max(tt.Order, 1)}
-		for _, u := range a.at.inst {
-			tr.Time = append(tr.Time, number[up[u]])
-		}
-		tr.Centre = mean(number)
-		m.Trend = tr
+		m.Trend = &linear.Trend{Unit: a.at.unitFactor(on), Order: max(p.TimeTrend.Order, 1), Time: time, Centre: centre}
 		trendUnit = on
 	}
 	var nuisanceUnits []int
@@ -474,14 +471,6 @@ func (a *analyst) whyLeastSquares(unbalanced error, nuisance []int) {
 	}
 }
 
-func unbalancedText(a *analyst, err error) string {
-	lost := a.plan.Units[a.rows.unit].N - len(a.rows.inst)
-	if lost > 0 {
-		return fmt.Sprintf("%d of %d %s gave no value", lost, a.plan.Units[a.rows.unit].N, prose.Plural(prose.UnitName(&a.plan.Units[a.rows.unit])))
-	}
-	return strataText(a, err)
-}
-
 func unitIndex(p *layout.Plan, name string) int {
 	for i := range p.Units {
 		if p.Units[i].Name == name {
@@ -489,6 +478,22 @@ func unitIndex(p *layout.Plan, name string) int {
 		}
 	}
 	return -1
+}
+
+// trendTimes gives the unit that has a trend of its own, the time of each row as the number
+// of its period, and their centre.
+func (a *analyst) trendTimes() (on int, time []float64, centre float64, x *refusal) {
+	tt := a.plan.Protocol.TimeTrend
+	on, along := unitIndex(a.plan, tt.On), unitIndex(a.plan, tt.Along)
+	if on < 0 || along < 0 || a.plan.Coarse(a.at.unit, on) == nil || a.plan.Coarse(a.at.unit, along) == nil {
+		return -1, nil, 0, &refusal{code: "time-trend", key: "time_trend", why: "its rows do not lie within the units of the time trend"}
+	}
+	number := periodNumber(a.plan, along)
+	up := a.plan.Coarse(a.at.unit, along)
+	for _, u := range a.at.inst {
+		time = append(time, number[up[u]])
+	}
+	return on, time, mean(number), nil
 }
 
 // periodNumber numbers the instances of a unit from 1 within their parent.

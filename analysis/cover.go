@@ -20,8 +20,11 @@ type refusal struct {
 // Codes describes the codes of this package's findings.
 func Codes() []diag.CodeInfo {
 	return []diag.CodeInfo{
-		{Code: "not-carried-out", Text: "a key asks for what this version does not do and would change the numbers", Example: "[analysis]\nvariance_by = \"diet\""},
-		{Code: "needs-mixed-model", Text: "unbalanced values would need a mixed model, which this version does not fit", Example: "a split plot that lost one subplot"},
+		{Code: "not-carried-out", Text: "a key asks for what this version does not do and would change the numbers", Example: "[analysis]\nmargin = 5"},
+		{Code: "not-converged", Text: "the search for the variances of a mixed model came to no end", Example: "as many variances as units"},
+		{Code: "not-told-apart", Text: "two variances of a mixed model cannot be told apart", Example: "[[unit]] of which each holds one plot"},
+		{Code: "repeated-unit", Text: "a repeated response is recorded on another unit than the one that is measured again and again", Example: "recorded_on = \"animal\" with [[repeated]] on = \"pen\""},
+		{Code: "carry-over-aliased", Text: "carry-over effects cannot be told from others", Example: "[carryover] with two treatments in two periods"},
 		{Code: "no-values", Text: "no unit gave a value of the response", Example: "gain empty in every row"},
 		{Code: "no-terms", Text: "the response is recorded on a unit larger than those that received treatments", Example: "recorded_on = \"block\" where pens receive the diets"},
 		{Code: "one-level", Text: "only one level of a factor gave a value", Example: "gain written down for diet A alone"},
@@ -74,26 +77,10 @@ func uncovered(t *trial.Trial, r *protocol.Response, index int) *refusal {
 		return no(at("transform"), fmt.Sprintf("transformation %q is not carried out by this version", r.Transform),
 			"set transform to \"none\"; a transformed value may be made under compute, such as compute = \"log(count)\"")
 	}
-	if r.Repeated != "" {
-		return no(at("repeated"), "repeated measures need a model of their correlation, which this version does not fit",
-			"analyse one time, or a summary of each unit over the times (where, aggregate)")
-	}
-	if p.CarryOver != nil {
-		return no("carryover", "carry-over effects in a crossover are not fitted by this version", "")
-	}
-	for i, u := range p.Units {
-		if u.Interacts {
-			return no(fmt.Sprintf("unit[%d].interacts", i), fmt.Sprintf("interactions of %s with treatments are not fitted by this version", u.Name),
-				"leave interacts out to take "+u.Name+" as a block")
-		}
-	}
 	for i, f := range p.Factors {
 		if f.Random {
 			return no(fmt.Sprintf("factor[%d].random", i), fmt.Sprintf("levels of %s as a random sample are not fitted by this version", f.Name), "leave random out to compare the levels as they are")
 		}
-	}
-	if p.Analysis.VarianceBy != "" {
-		return no("analysis.variance_by", "a residual variance for each level of a factor is not fitted by this version", "leave variance_by out")
 	}
 	if p.Analysis.Margin != 0 || r.Margin != nil && *r.Margin != 0 {
 		key := "analysis.margin"

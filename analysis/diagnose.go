@@ -24,11 +24,17 @@ func (a *analyst) diagnose() {
 	for i := range e {
 		e[i] = rows.y[i] - r.fitted[i]
 	}
-	if a.quiet(r.ms) == 0 { // what is left is rounding, and says nothing
+	z := e // in a common unit
+	if r.scale != nil {
+		z = make([]float64, len(e))
+		for i := range e {
+			z[i] = e[i] / r.scale[i]
+		}
+	} else if a.quiet(r.ms) == 0 { // what is left is rounding, and says nothing
 		r.ms = 0
 		clear(e)
 	}
-	cases := residual.Cases(e, r.leverage, r.ms, r.df, len(e)-r.df)
+	cases := residual.Cases(z, r.leverage, r.ms, r.df, len(e)-r.df)
 	order := byStudentized(cases)
 	if r.ms > 0 && len(order) < len(cases) {
 		a.note("leverage-one", "", prose.LeverageOne(len(cases)-len(order)))
@@ -61,7 +67,7 @@ func (a *analyst) diagnose() {
 		a.out.Diagnostics = append(a.out.Diagnostics, result.Diagnostic{Name: name, Statistic: result.Number(statistic), DF: result.Number(df), P: result.Number(p), Text: text})
 	}
 	none := math.NaN()
-	if t, err := residual.ShapiroWilk(e); err == nil {
+	if t, err := residual.ShapiroWilk(z); err == nil {
 		add("shapiro-wilk", t.Statistic, none, t.P, prose.Normality(t.P))
 	}
 	groups := a.groups(rows, e)
@@ -114,7 +120,7 @@ func (a *analyst) groups(rows *rows, values []float64) [][]float64 {
 	return residual.Groups(values, cells)
 }
 
-// maxAdditive is the number of treatments up to which non-additivity is looked for: with
+// maxAdditive is the number of treatments, or of larger units that are not absorbed, up to which non-additivity is looked for: with
 // more the fit takes long, and one product of effects among so many tells little.
 const maxAdditive = 200
 
@@ -132,10 +138,12 @@ func (a *analyst) additive() (linear.Model, bool) {
 		return linear.Model{}, false
 	}
 	m := linear.Model{Y: a.at.y, Factors: a.classes, Terms: a.modelTerms()}
+	larger := 0
 	for _, u := range nuisance {
+		larger += a.plan.Units[u].N
 		m.Nuisance = append(m.Nuisance, a.at.unitFactor(u))
 	}
-	return m, true
+	return m, a.mx == nil || larger <= maxAdditive
 }
 
 // unitNames identifies a row by the units that have a name of their own in the data.
@@ -146,7 +154,11 @@ func (a *analyst) unitNames(rows *rows, row int) result.Levels {
 		if up == nil || a.plan.Units[u].Own == nil {
 			continue
 		}
-		out = append(out, result.FactorLevel{Factor: a.plan.Units[u].Name, Level: a.plan.Units[u].Own[up[rows.inst[row]]]})
+		name := a.plan.Units[u].Name
+		if a.over != nil && u == a.over.unit {
+			name = a.over.protocol.Name
+		}
+		out = append(out, result.FactorLevel{Factor: name, Level: a.plan.Units[u].Own[up[rows.inst[row]]]})
 	}
 	return out
 }

@@ -74,6 +74,18 @@ func (m *termMeans) single(df float64) bool {
 	return math.Abs(df-m.test.errorDF) <= 1e-9*m.test.errorDF
 }
 
+// judge tests that contrasts of the means are all zero, over the error of the term unless
+// the model gives the hypothesis one of its own.
+func (m *termMeans) judge(contrasts [][]float64) test {
+	t := m.est.test(contrasts)
+	if t.own > 0 {
+		return t
+	}
+	out := m.test
+	out.df, out.ss, out.own = t.df, t.ss, 0
+	return out
+}
+
 // product lists all combinations, the last running fastest.
 func product(sizes []int) [][]int {
 	out := [][]int{{}}
@@ -185,10 +197,8 @@ func (a *analyst) partMeans(k int, whole *termMeans) []*termMeans {
 		if !ok {
 			continue
 		}
-		ss, df := whole.est.test(partContrasts(a.plan, a.terms[k], part, rows))
 		m := &termMeans{name: part.Name, unit: whole.unit, factors: part.Factors, est: weighted{base: whole.est, rows: rows}}
-		m.test = whole.test
-		m.test.df, m.test.ss = df, ss
+		m.test = whole.judge(partContrasts(a.plan, a.terms[k], part, rows))
 		group := make([]int, len(whole.cells))
 		for c := range group {
 			group[c] = -1
@@ -300,18 +310,18 @@ func (a *analyst) partLines(k int, stratum *string) {
 		if !ok {
 			continue
 		}
-		ss, df := m.est.test(partContrasts(a.plan, a.terms[k], part, rows))
-		if df == 0 {
+		t := m.judge(partContrasts(a.plan, a.terms[k], part, rows))
+		if t.df == 0 {
 			a.note("no-single-error", m.name, prose.NoSingleError(a.plan, part.Name))
 			continue
 		}
-		t := m.test
-		t.df, t.ss = df, ss
 		f := result.Number(t.f())
 		edf := result.Number(t.errorDF)
-		l := result.Line{Stratum: stratum, Source: part.Name, DF: df, SS: result.Number(ss), MS: result.Number(ss / float64(df)), F: f, P: result.Number(upperF(float64(f), df, t.errorDF)), ErrorDF: &edf}
-		a.out.Anova = append(a.out.Anova, l)
-		a.out.Tests = append(a.out.Tests, result.Test{Source: part.Name, DF: df, ErrorDF: edf, F: l.F, P: l.P, Planned: true})
+		l := result.Line{Stratum: stratum, Source: part.Name, DF: t.df, SS: result.Number(t.ss), MS: result.Number(t.ms()), F: f, P: result.Number(upperF(float64(f), t.df, t.errorDF)), ErrorDF: &edf}
+		if a.mx == nil {
+			a.out.Anova = append(a.out.Anova, l)
+		}
+		a.out.Tests = append(a.out.Tests, result.Test{Source: part.Name, DF: t.df, ErrorDF: edf, F: l.F, P: l.P, Planned: true})
 	}
 }
 
@@ -362,7 +372,7 @@ func (w weighted) cov(i, j int) float64 {
 	return (vi + vj - d) / 2
 }
 
-func (w weighted) test(contrasts [][]float64) (ss float64, df int) {
+func (w weighted) test(contrasts [][]float64) test {
 	var out [][]float64
 	for _, c := range contrasts {
 		out = append(out, w.combine(c))
@@ -399,7 +409,7 @@ func (a *analyst) tabulate(m *termMeans) {
 				}
 			}
 			imprecise = imprecise || !x.Lower.Known()
-			if inModel[c] > 0 {
+			if inModel[c] > 0 && a.mx == nil {
 				x.SEM = result.Number(math.Sqrt(m.test.errorMS / float64(inModel[c])))
 			}
 		} else {
@@ -452,6 +462,9 @@ func (a *analyst) counts(m *termMeans) (n, inModel, units []int) {
 func (a *analyst) modelled() *rows {
 	if a.st != nil {
 		return a.st.rows
+	}
+	if a.mx != nil {
+		return a.mx.rows
 	}
 	return a.at
 }
@@ -606,7 +619,10 @@ func (a *analyst) weightedContrast(m *termMeans, c protocol.Contrast) {
 	if ok {
 		v, variance, df := m.est.contrast(w)
 		ms := m.test.errorMS
-		if !m.single(df) {
+		switch {
+		case a.mx != nil:
+			ms = math.NaN() // no sum of squares
+		case !m.single(df):
 			ms = math.NaN() // no sum of squares stands over one error
 			a.note("no-single-error", m.name, prose.NoSingleError(a.plan, c.Name))
 		}

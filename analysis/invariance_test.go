@@ -123,7 +123,7 @@ func follow(list, key string) int {
 		return affine
 	case "sd", "sem":
 		return absolute
-	case "cv_percent":
+	case "cv_percent", "log_likelihood", "aicc":
 		return loose
 	case "se":
 		if list == "components" {
@@ -174,6 +174,9 @@ func scaledBy(a, b *result.Response, at, by float64) string {
 	spread := 0.0
 	for _, l := range a.Anova {
 		spread = math.Max(spread, math.Sqrt(math.Abs(float64(l.MS))))
+	}
+	for _, c := range a.Components {
+		spread = math.Max(spread, math.Sqrt(math.Abs(float64(c.Estimate))))
 	}
 	var faults []string
 	near := func(where, list, key string, v, w float64) {

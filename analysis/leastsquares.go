@@ -72,7 +72,7 @@ func (m linearMeans) contrast(w []float64) (value, variance, df float64) {
 	return v, variance, m.df
 }
 
-func (m linearMeans) test(contrasts [][]float64) (ss float64, df int) {
+func (m linearMeans) test(contrasts [][]float64) test {
 	t := m.e.Hypothesis(contrasts)
-	return t.SS, t.DF
+	return test{ss: t.SS, df: t.DF}
 }

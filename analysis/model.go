@@ -18,7 +18,8 @@ type model interface {
 // test is a test of a term against its error.
 type test struct {
 	df        int
-	ss        float64 // NaN: not estimable
+	ss        float64 // NaN: not estimable, or no sum of squares stands over one error
+	own       float64 // F itself where there is no sum of squares, as in a mixed model; else 0
 	errorDF   float64
 	errorMS   float64
 	stratum   int // index of the unit whose variation is the error, -1 in a single table
@@ -30,6 +31,9 @@ type test struct {
 func (t test) ms() float64 { return t.ss / float64(t.df) }
 
 func (t test) f() float64 {
+	if t.own > 0 {
+		return t.own
+	}
 	if t.df == 0 || t.errorDF <= 0 || !(t.errorMS > 0) {
 		return math.NaN()
 	}
@@ -50,15 +54,16 @@ type estimates interface {
 	variance(i int) (variance, df float64)
 	// cov is the covariance of two means.
 	cov(i, j int) float64
-	// test is the sum of squares, with its df, of the hypothesis that contrasts of the
-	// means are all zero, over the error of the term.
-	test(contrasts [][]float64) (ss float64, df int)
+	// test is the hypothesis that contrasts of the means are all zero: its sum of squares
+	// and df, to be held against the error of the term; or F with df of its own.
+	test(contrasts [][]float64) test
 }
 
 // residuals are those of the smallest experimental units.
 type residuals struct {
 	fitted   []float64
 	leverage []float64
+	scale    []float64 // the SD of each row where they differ; nil: all have √ms
 	df       int
 	ms       float64
 }

@@ -31,7 +31,7 @@ import (
 //
 // A key walks through results.json from the response: yield.anova[plot|yeast].ss. A name
 // without brackets is a key of an object; [a|b] picks the one element of a list that has
-// each of a, b among the texts that tell elements apart: code, stratum, name, source, term,
+// each of a, b among the texts that tell elements apart: code, stratum, name, kind, source, term,
 // a, b; factor=level of levels and units, or the level alone where there is one; of at
 // always factor=level. A value is a number, null, or a text.
 const published = "../testdata/reference/*.txtar"
@@ -169,7 +169,7 @@ func lookUp(at any, key string) (any, error) {
 // identity lists the texts that tell an element of a list from the others.
 func identity(e map[string]any) []string {
 	var out []string
-	for _, k := range []string{"code", "stratum", "name", "source", "term", "a", "b"} {
+	for _, k := range []string{"code", "stratum", "name", "kind", "source", "term", "a", "b"} {
 		if s, ok := e[k].(string); ok {
 			out = append(out, s)
 		}

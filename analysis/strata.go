@@ -159,12 +159,12 @@ func (m strataMeans) contrast(w []float64) (value, variance, df float64) {
 	return e.Value, e.Variance, e.DF
 }
 
-func (m strataMeans) test(contrasts [][]float64) (ss float64, df int) {
+func (m strataMeans) test(contrasts [][]float64) test {
 	h, err := m.m.Test(contrasts)
 	if err != nil {
-		return math.NaN(), 0
+		return test{ss: math.NaN()}
 	}
-	return h.SS, h.DF
+	return test{ss: h.SS, df: h.DF}
 }
 
 // strataTable fills the analysis of variance, tests, components and model.
@@ -235,6 +235,9 @@ func (a *analyst) strataTable(s *byStrata, partial bool) {
 		if !math.IsNaN(estimate) {
 			out.Components = append(out.Components, result.Component{Term: component, Estimate: result.Number(estimate), SE: result.Number(se)})
 		}
+	}
+	if a.plan.Protocol.Analysis.Limits == "profile" && len(out.Components) > 0 {
+		a.note("no-profile-limits", "", prose.NoProfileLimits())
 	}
 	for _, t := range a.terms {
 		fixed = append(fixed, a.plan.Terms[t].Name)

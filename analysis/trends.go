@@ -19,8 +19,8 @@ func (a *analyst) trends(m *termMeans) {
 	}
 	f := &a.plan.Factors[m.factors[0]]
 	ms, df := m.test.errorMS, m.test.errorDF
-	if !(ms > 0) || !(df > 0) {
-		return
+	if a.mx == nil && !(ms > 0) || !(df > 0) {
+		return // the error of a mixed model is no mean square
 	}
 	var x []float64
 	var cells, at []int
@@ -31,6 +31,10 @@ func (a *analyst) trends(m *termMeans) {
 		}
 	}
 	if len(x) < 3 {
+		return
+	}
+	if a.mx != nil {
+		a.mixedTrends(m, x, cells, at, degree)
 		return
 	}
 	for _, i := range at[1:] {
@@ -56,6 +60,91 @@ func (a *analyst) trends(m *termMeans) {
 	}
 }
 
+// mixedTrends fits polynomials over the adjusted means of a mixed model, in order and by
+// generalized least squares, over times by least squares. Each coefficient is a combination of the means, and is judged
+// as such, with df of its own; no sums of squares stand.
+func (a *analyst) mixedTrends(m *termMeans, x []float64, cells, at []int, degree int) {
+	scale, _ := m.est.variance(at[0])
+	if !(scale > 0) {
+		return
+	}
+	cov := func(i, j int) float64 { return m.est.cov(at[i], at[j]) / scale }
+	if a.over != nil && m.factors[0] == a.over.factor {
+		// Weighting by the correlation of times would let what a low degree leaves over
+		// change its coefficient; the contrast of the means is the same with any correlation.
+		cov = func(i, j int) float64 {
+			if i == j {
+				return 1
+			}
+			return 0
+		}
+	}
+	weights := make([][]float64, 0, degree)
+	for i := range x {
+		unit := make([]float64, len(x))
+		unit[i] = 1
+		steps, _, _, ok := compare.Trends(x, unit, cov, degree)
+		if !ok {
+			return
+		}
+		for k, s := range steps {
+			if i == 0 {
+				weights = append(weights, make([]float64, m.est.count()))
+			}
+			weights[k][at[i]] = s.Estimate
+		}
+	}
+	line := func(name string, degree int) result.Contrast {
+		return result.Contrast{Name: m.name + ": " + name, Term: m.name, Planned: true, NumeratorDF: degree, Estimate: result.NaN, SE: result.NaN, DF: result.NaN,
+			F: result.NaN, P: result.NaN, SS: result.NaN, Lower: result.NaN, Upper: result.NaN}
+	}
+	for k, w := range weights {
+		c := line(degreeName(k+1), 1)
+		estimate, variance, df := m.est.contrast(w)
+		a.fillContrast(&c, estimate, variance, df, math.NaN())
+		a.out.Contrasts = append(a.out.Contrasts, c)
+	}
+	polynomials := orthogonalPolynomials(x)
+	if len(weights)+1 >= len(polynomials) {
+		return
+	}
+	var rest [][]float64
+	for _, p := range polynomials[len(weights)+1:] {
+		w := make([]float64, m.est.count())
+		for i, v := range p {
+			w[at[i]] = v
+		}
+		rest = append(rest, w)
+	}
+	a.judged(line("lack of fit", len(rest)), m.judge(rest))
+}
+
+// judged adds a contrast of several df with its test.
+func (a *analyst) judged(c result.Contrast, t test) {
+	if t.df < 1 {
+		return
+	}
+	f := t.f()
+	c.NumeratorDF, c.DF, c.F, c.P = t.df, result.Number(t.errorDF), result.Number(f), result.Number(upperF(f, t.df, t.errorDF))
+	a.out.Contrasts = append(a.out.Contrasts, c)
+}
+
+// mixedInteractionTrends tests, in a mixed model, for each degree of polynomials orthogonal
+// over the levels whether its coefficient is the same at all levels of the other factors,
+// and then what is left over.
+func (a *analyst) mixedInteractionTrends(m *termMeans, factor string, degree int, polynomials [][]float64, products func([][]float64) [][]float64) {
+	add := func(name string, from, to int) {
+		if rows := products(polynomials[from:to]); len(rows) > 0 {
+			a.judged(result.Contrast{Name: m.name + ": " + factor + " " + name, Term: m.name, Planned: true, Estimate: result.NaN, SE: result.NaN,
+				SS: result.NaN, Lower: result.NaN, Upper: result.NaN}, m.judge(rows))
+		}
+	}
+	for k := 1; k <= degree; k++ {
+		add(degreeName(k), k, k+1)
+	}
+	add("lack of fit", degree+1, len(polynomials))
+}
+
 func degreeName(degree int) string {
 	names := [...]string{"linear", "quadratic", "cubic", "quartic", "quintic"}
 	if degree <= len(names) {
@@ -75,7 +164,7 @@ const maxTrendContrasts = 200
 func (a *analyst) interactionTrends(m *termMeans, v int) {
 	degree := a.plan.Protocol.Analysis.Trend
 	ms, df := m.test.errorMS, m.test.errorDF
-	if degree < 1 || !(ms > 0) || !(df > 0) {
+	if degree < 1 || a.mx == nil && !(ms > 0) || !(df > 0) {
 		return
 	}
 	// Levels with a cell, of each factor; every cell of them must have a mean.
@@ -114,10 +203,9 @@ func (a *analyst) interactionTrends(m *termMeans, v int) {
 	}
 	polynomials := orthogonalPolynomials(x)
 	degree = min(degree, len(polynomials)-1)
-	// hypothesis is H(k): products of polynomials from degree k and level-less-last of others.
-	hypothesis := func(k int) (ss float64, df int) {
-		var rows [][]float64
-		for _, p := range polynomials[min(k, len(polynomials)):] {
+	// products of polynomials with level-less-last of the others.
+	products := func(polynomials [][]float64) (rows [][]float64) {
+		for _, p := range polynomials {
 			parts := make([][][]float64, len(levels))
 			for i := range levels {
 				if i == v {
@@ -150,10 +238,20 @@ func (a *analyst) interactionTrends(m *termMeans, v int) {
 				rows = append(rows, row)
 			}
 		}
+		return rows
+	}
+	if a.mx != nil {
+		a.mixedInteractionTrends(m, f.Name, degree, polynomials, products)
+		return
+	}
+	// hypothesis is H(k).
+	hypothesis := func(k int) (ss float64, df int) {
+		rows := products(polynomials[min(k, len(polynomials)):])
 		if len(rows) == 0 {
 			return 0, 0
 		}
-		return m.est.test(rows)
+		t := m.est.test(rows)
+		return t.ss, t.df
 	}
 	ss, left := hypothesis(1)
 	if left == 0 {

@@ -4,6 +4,8 @@
 // only reader of that file. Format 1.
 package protocol
 
+import "math"
+
 // Protocol is a decoded, validated protocol file with its defaults filled in. It is
 // not changed after Load. Positions of its keys are had from Pos.
 type Protocol struct {
@@ -304,6 +306,27 @@ type Repeated struct {
 	At                    []string
 	Values                []float64 // nil where the times are words
 	Correlation           string
+}
+
+// Steps gives the times as numbers for a correlation that falls with their distance: their
+// values where they are unequally spaced, else 0, 1, 2 …, so that the correlation is that of
+// neighbours; also where times are words.
+func (r *Repeated) Steps() []float64 {
+	n := len(r.At)
+	steps := make([]float64, n)
+	for i := range steps {
+		steps[i] = float64(i)
+	}
+	v := r.Values
+	if len(v) != n || n < 3 {
+		return steps
+	}
+	for i := 2; i < n; i++ {
+		if d := v[1] - v[0]; math.Abs(v[i]-v[i-1]-d) > 1e-9*math.Abs(d) {
+			return v
+		}
+	}
+	return steps
 }
 
 // CarryOver declares a crossover.

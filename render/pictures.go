@@ -10,6 +10,7 @@ import (
 	"penwright/analysis/prose"
 	"penwright/analysis/result"
 	"penwright/analysis/trial"
+	"penwright/protocol"
 	"penwright/protocol/allot"
 	"penwright/render/doc"
 	"penwright/render/figure"
@@ -354,6 +355,11 @@ func (v *pictures) points(name string) []doc.Block {
 		}
 	}
 	g := v.groupRows(unit, instances)
+	if data.Time != nil {
+		if out := v.pointsOverTime(r, data, unit, instances, g); out != nil {
+			return out
+		}
+	}
 	fig := figure.Points{Response: axis(r), By: v.treatmentTitle(unit), Blocks: g.block}
 	for _, x := range g.names {
 		fig.Groups = append(fig.Groups, figure.Group{Label: x, Mean: math.NaN()})
@@ -382,6 +388,112 @@ func (v *pictures) points(name string) []doc.Block {
 		caption += " Crosses: excluded from the analysis and from the means."
 	}
 	return figureOf("figure-points-"+name, caption, "points-"+name, fig.Draw)
+}
+
+// times are those at which a response is measured on the same unit; nil: once.
+func (v *pictures) times(name string) *protocol.Repeated {
+	if r := v.trial.Protocol.Response(name); r != nil {
+		return v.trial.Protocol.RepeatedNamed(r.Repeated)
+	}
+	return nil
+}
+
+// mostProfiles is the number of treatments by times up to which each has a place of its own
+// in a picture of the data.
+const mostProfiles = 60
+
+// pointsOverTime shows the data of a repeated response by treatment and time, with the
+// records of each unit joined; nil where there are too many of them.
+func (v *pictures) pointsOverTime(r *result.Response, data *dataset.Response, unit int, instances []int32, g cellRows) []doc.Block {
+	p, rep := v.trial.Plan, v.times(r.Name)
+	if rep == nil || len(g.names)*len(rep.At) > mostProfiles {
+		return nil
+	}
+	up := p.Coarse(data.Unit, unit)
+	type record struct{ unit, time int32 }
+	sum, n, excluded := map[record]float64{}, map[record]int{}, map[record]bool{}
+	for i, s := range data.Status {
+		if (s != dataset.Used && s != dataset.Excluded && s != dataset.CovariateMissing) || math.IsNaN(data.Value[i]) {
+			continue
+		}
+		k := record{unit: up[data.Instance[i]], time: data.Time[i]}
+		sum[k] += data.Value[i]
+		n[k]++
+		excluded[k] = excluded[k] || s == dataset.Excluded
+	}
+	title := prose.FactorHead(p, rep.Name)
+	if t := v.treatmentTitle(unit); t != "" {
+		title = t + ", " + title
+	}
+	fig := figure.Points{Response: axis(r), By: title, Blocks: prose.UnitName(&p.Units[unit])}
+	crosses := false
+	for t, name := range g.names {
+		for at, time := range rep.At {
+			group := figure.Group{Label: time, Mean: math.NaN()}
+			if len(g.names) > 1 {
+				group.Label = name + ", " + time
+			}
+			total, count := 0.0, 0
+			for k, u := range instances {
+				x := record{unit: u, time: int32(at)}
+				if g.of[k] != t || n[x] == 0 {
+					continue
+				}
+				value := sum[x] / float64(n[x])
+				group.Points = append(group.Points, figure.Point{Unit: g.units[k], Block: g.units[k], Value: value, Excluded: excluded[x]})
+				crosses = crosses || excluded[x]
+				if !excluded[x] {
+					total += value
+					count++
+				}
+			}
+			if count > 0 {
+				group.Mean = total / float64(count)
+			}
+			fig.Groups = append(fig.Groups, group)
+		}
+	}
+	name := prose.UnitName(&p.Units[unit])
+	caption := "Data: " + prose.ResponseText(r) + " of each " + name + " by treatment and " + prose.TermText(p, rep.Name) + "; lines join the records of each " + name + ". Bars: means."
+	if crosses {
+		caption += " Crosses: excluded from the analysis and from the means."
+	}
+	return figureOf("figure-points-"+r.Name, caption, "points-"+r.Name, fig.Draw)
+}
+
+// residualsOverTime shows the residuals of a repeated response by time, with those of each
+// unit joined.
+func (v *pictures) residualsOverTime(r *result.Response, rep *protocol.Repeated) []doc.Block {
+	p := v.trial.Plan
+	fig := figure.Points{Response: "Residual", By: prose.FactorHead(p, rep.Name), Blocks: prose.TermText(p, rep.On), Residual: true}
+	if r.Unit != "" {
+		fig.Response += " (" + num.UnitText(r.Unit) + ")"
+	}
+	place := map[string]int{}
+	for i, l := range rep.At {
+		fig.Groups = append(fig.Groups, figure.Group{Label: l, Mean: math.NaN()})
+		place[l] = i
+	}
+	shown := false
+	for _, x := range r.Residuals {
+		i, ok := place[x.Units.Of(rep.Name)]
+		if !ok {
+			continue
+		}
+		var of result.Levels
+		for _, u := range x.Units {
+			if u.Factor != rep.Name {
+				of = append(of, u)
+			}
+		}
+		unit := prose.UnitText(p, of)
+		fig.Groups[i].Points = append(fig.Groups[i].Points, figure.Point{Unit: unit, Block: unit, Value: float64(x.Residual)})
+		shown = true
+	}
+	if !shown {
+		return nil
+	}
+	return figureOf("figure-residuals-"+r.Name, "Residuals of "+prose.ResponseText(r)+" by "+prose.TermText(p, rep.Name)+"; lines join the records of each "+prose.TermText(p, rep.On)+".", "residuals-"+r.Name, fig.Draw)
 }
 
 // treatedUnit is the smallest treated unit that a unit lies in.
@@ -441,10 +553,8 @@ func (v *pictures) means(name, term string) []doc.Block {
 		f := ms[0].Levels[0].Factor
 		fig := figure.Means{Response: axis(r), By: prose.FactorHead(p, f), Interval: prose.Interval(p, r)}
 		var doses []float64
-		for i := range p.Factors {
-			if p.Factors[i].Name == f {
-				doses = p.Factors[i].Values
-			}
+		if x := prose.FactorNamed(p, f); x != nil {
+			doses = x.Values
 		}
 		fig.Dose = doses != nil
 		for i, m := range ms {
@@ -470,12 +580,9 @@ func (v *pictures) means(name, term string) []doc.Block {
 		// A graded factor runs along the axis; else the one with more levels does.
 		along, over := 1, 0
 		var values [2][]float64
-		for i := range p.Factors {
-			if p.Factors[i].Name == a {
-				values[0] = p.Factors[i].Values
-			}
-			if p.Factors[i].Name == b {
-				values[1] = p.Factors[i].Values
+		for k, name := range []string{a, b} {
+			if x := prose.FactorNamed(p, name); x != nil {
+				values[k] = x.Values
 			}
 		}
 		var levels [2][]string
@@ -486,25 +593,30 @@ func (v *pictures) means(name, term string) []doc.Block {
 				}
 			}
 		}
-		if values[0] != nil && values[1] == nil || values[0] == nil && values[1] == nil && len(levels[0]) > len(levels[1]) {
+		if p.Protocol.RepeatedNamed(a) != nil || p.Protocol.RepeatedNamed(b) == nil && (values[0] != nil && values[1] == nil || values[0] == nil && values[1] == nil && len(levels[0]) > len(levels[1])) {
 			along, over = 0, 1
 		}
+		// Over time few lines are shown with the limits of each mean.
+		timed := p.Protocol.RepeatedNamed(ms[0].Levels[along].Factor) != nil && len(levels[over]) <= 6
 		fig := figure.Interaction{Response: axis(r), By: prose.FactorHead(p, ms[0].Levels[along].Factor), Levels: levels[along], X: values[along], Over: prose.FactorHead(p, ms[0].Levels[over].Factor)}
 		for _, l := range levels[over] {
 			line := figure.Line{Label: l}
 			for _, x := range levels[along] {
-				y := math.NaN()
+				y, lo, hi := math.NaN(), math.NaN(), math.NaN()
 				for _, m := range ms {
 					if m.Levels[over].Level == l && m.Levels[along].Level == x {
-						y = float64(m.Mean)
+						y, lo, hi = float64(m.Mean), float64(m.Lower), float64(m.Upper)
 					}
 				}
 				line.Values = append(line.Values, y)
+				if timed {
+					line.Low, line.High = append(line.Low, lo), append(line.High, hi)
+				}
 			}
 			fig.Lines = append(fig.Lines, line)
 		}
 		for _, s := range r.SED {
-			if s.Term == term && s.Mean.Known() {
+			if s.Term == term && s.Mean.Known() && !timed {
 				fig.Bar, fig.BarLabel = float64(s.Mean), "SED"
 				if float64(s.Max-s.Min) > 1e-9*float64(s.Max) {
 					fig.BarLabel = "mean SED"
@@ -512,6 +624,9 @@ func (v *pictures) means(name, term string) []doc.Block {
 			}
 		}
 		caption := prose.MeansCaption(p, r, term) + "."
+		if timed {
+			caption = strings.TrimSuffix(caption, ".") + ", with " + prose.Interval(p, r) + " of each mean."
+		}
 		switch fig.BarLabel {
 		case "SED":
 			caption += " The bar is the standard error of a difference (SED)."
@@ -688,6 +803,9 @@ func (v *pictures) residualPoints(name string) []doc.Block {
 	r := v.response(name)
 	if r == nil {
 		return nil
+	}
+	if times := v.times(name); times != nil {
+		return v.residualsOverTime(r, times)
 	}
 	unit, instances := v.residualRows(r)
 	if unit < 0 || v.trial.Allotment == nil {

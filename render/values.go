@@ -320,7 +320,7 @@ func (b *builder) cell(term, text string) (result.Levels, error) {
 	}
 	var out result.Levels
 	for i, name := range factors {
-		f := factorOf(b.trial.Plan, name)
+		f := prose.FactorNamed(b.trial.Plan, name)
 		if f == nil {
 			return nil, &compose.Fault{Code: "unknown-level", Message: fmt.Sprintf("%s has no means: %q is no factor", term, name)}
 		}
@@ -331,15 +331,6 @@ func (b *builder) cell(term, text string) (result.Levels, error) {
 		out = append(out, result.FactorLevel{Factor: name, Level: level})
 	}
 	return out, nil
-}
-
-func factorOf(p *layout.Plan, name string) *layout.Factor {
-	for i := range p.Factors {
-		if p.Factors[i].Name == name {
-			return &p.Factors[i]
-		}
-	}
-	return nil
 }
 
 // levelOf finds a level by its name, with or without the unit of its factor; empty:

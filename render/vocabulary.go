@@ -41,6 +41,7 @@ type responseView struct {
 	Primary, Analysed       bool
 	Planned                 bool // its analysis was in the plan that was sealed before the data
 	Unplanned               bool // it has contrasts that were not, though its analysis was
+	Components              bool // components of variance say more than the analysis of variance
 	Terms                   []termView
 }
 
@@ -75,6 +76,7 @@ func (b *builder) view() view {
 				x.Terms = append(x.Terms, termView{Response: r.Name, Name: m.Term, Label: prose.TermLabel(b.trial.Plan, m.Term)})
 			}
 		}
+		x.Components = r.Model != nil && (r.Model.Method == "reml" && len(r.Components) > 1 || len(r.Components) > 2)
 		x.Planned = prose.Planned(r)
 		for _, c := range r.Contrasts {
 			x.Unplanned = x.Unplanned || x.Planned && !c.Planned
@@ -196,6 +198,9 @@ func (b *builder) functions() template.FuncMap {
 		"anova":               func(r *result.Response) doc.Table { return table.Anova(t.Plan, r) },
 		"summary":             func(r *result.Response) doc.Table { return table.Summary(t.Plan, r, b.decimals(r.Name)) },
 		"covariates":          func(r *result.Response) doc.Table { return table.Covariates(t.Plan, r) },
+		"components":          func(r *result.Response) doc.Table { return table.Components(t.Plan, r) },
+		"correlations":        func(r *result.Response) doc.Table { return table.Correlations(t.Plan, r) },
+		"correlation":         func(r *result.Response) doc.Table { return table.Correlation(t.Plan, r) },
 		"contrasts":           func(r *result.Response) doc.Table { return table.Contrasts(t.Plan, r, true) },
 		"unplanned contrasts": func(r *result.Response) doc.Table { return table.Contrasts(t.Plan, r, false) },
 		"efficiency":          func(r *result.Response) doc.Table { return table.Efficiency(r) },

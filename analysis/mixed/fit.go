@@ -44,6 +44,7 @@ func (ErrSingular) Error() string { return "mixed: the variances cannot be told 
 
 const (
 	maxIterations = 200
+	slow          = 25    // iterations after which second derivatives are worth their cost
 	good          = 1e-8  // of the decrement, a squared distance in standard errors: a maximum
 	converged     = 1e-22 // where polishing it ends
 )
@@ -113,6 +114,18 @@ func (m Model) fit(limits blockLimits) (*Fit, error) {
 		f.SE[i] = math.Sqrt(inf.w.At(x, x)) * f.squared(i)
 	}
 	return f, nil
+}
+
+// Rank is the number of fixed columns that do not depend on others.
+func (m Model) Rank() (int, error) {
+	if err := m.check(); err != nil {
+		return 0, err
+	}
+	x, err := newColumns(&m)
+	if err != nil {
+		return 0, err
+	}
+	return len(x.kept), nil
 }
 
 // squared gives the unit of parameter i: that of y squared, or 1 for a correlation.
@@ -218,7 +231,8 @@ func (s *space) startCorrelation(i int, rho float64) float64 {
 }
 
 // climb maximizes the residual likelihood by steps of the average information, halved until
-// the likelihood rises; where they do not help, by steps of the expected information's
+// the likelihood rises; where they do not help, or many did not bring it to an end, by steps
+// of the second derivatives, and last by steps of the expected information's
 // diagonal, which are those of a scaled gradient.
 func (s *space) climb(th []float64) (*result, error) {
 	st, ok := s.at(th)
@@ -229,7 +243,7 @@ func (s *space) climb(th []float64) (*result, error) {
 		// Smaller covariances make V positive definite.
 		for i := range th {
 			rest := i - len(s.random)
-			if rest < 0 || !s.structure.isVariance(rest) {
+			if (rest < 0 || !s.structure.isVariance(rest)) && i+1 != s.held {
 				th[i] /= 2
 			}
 		}
@@ -243,14 +257,25 @@ func (s *space) climb(th []float64) (*result, error) {
 		r.iterations++
 		g, info := r.state.slopes()
 		for i := range r.bound {
-			r.bound[i] = i < len(s.random) && !s.model.Random[i].Unbounded && r.state.th[i] == 0 && g[i] >= 0
+			r.bound[i] = i+1 == s.held || s.floored(i) && r.state.th[i] == 0 && g[i] >= 0
 		}
 		var step []float64
 		step, r.decrement = newton(g, info, r.bound)
 		if r.decrement < good {
 			return s.polish(r, step), nil
 		}
+		if r.iterations > slow {
+			if h := s.curvature(r); h != nil {
+				step, _ = newton(g, h, r.bound)
+			}
+		}
 		next := s.line(r.state, g, step)
+		if next == nil && r.iterations <= slow {
+			if h := s.curvature(r); h != nil {
+				step, _ = newton(g, h, r.bound)
+				next = s.line(r.state, g, step)
+			}
+		}
 		if next == nil {
 			next = s.line(r.state, g, scaled(g, info, r.bound))
 		}
@@ -272,7 +297,7 @@ func (s *space) polish(r *result, step []float64) *result {
 		th := make([]float64, len(step))
 		for i := range th {
 			th[i] = r.state.th[i] + step[i]
-			if i < len(s.random) && !s.model.Random[i].Unbounded && th[i] < 0 {
+			if s.floored(i) && th[i] < 0 {
 				return r
 			}
 		}
@@ -286,14 +311,14 @@ func (s *space) polish(r *result, step []float64) *result {
 		g, info := next.slopes()
 		more, decrement := newton(g, info, r.bound)
 		better := decrement < r.decrement
-		slow := !(decrement < 0.01*r.decrement)
+		crawls := !(decrement < 0.01*r.decrement)
 		if better {
 			r.state, r.decrement, step = next, decrement, more
 			r.iterations++
 		} else if exact {
 			return r
 		}
-		if slow && r.decrement > converged {
+		if crawls && r.decrement > converged {
 			exact = true
 			h := s.curvature(r)
 			if h == nil {
@@ -343,35 +368,55 @@ func (s *space) curvature(r *result) *mat.SymDense {
 	return out
 }
 
-// line halves a step until −2ℓ_R falls.
+// line halves a step until −2ℓ_R falls, and goes on as long as it falls much less than its
+// slope and half the step falls further: a step too long ends beside where V is singular, and
+// finds no way back.
 func (s *space) line(st *state, g, step []float64) *state {
 	th := make([]float64, len(step))
+	var found *state
 	f := 1.0
 	for range 40 {
 		slope := 0.0
 		for i := range th {
 			th[i] = st.th[i] + f*step[i]
-			if i < len(s.random) && !s.model.Random[i].Unbounded && th[i] < 0 {
+			if s.floored(i) && th[i] < 0 {
 				th[i] = 0
 			}
 			slope += g[i] * (th[i] - st.th[i])
 		}
+		var next *state
 		if s.inside(th) {
-			if next, ok := s.at(th); ok && next.deviance <= st.deviance+1e-4*math.Min(slope, 0)+1e-13*math.Abs(st.deviance) {
-				if next.deviance < st.deviance || f == 1 {
-					return next
-				}
+			if x, ok := s.at(th); ok {
+				next = x
 			}
+		}
+		switch {
+		case found != nil && (next == nil || !(next.deviance < found.deviance)):
+			return found
+		case next != nil && next.deviance <= st.deviance+1e-4*math.Min(slope, 0)+1e-13*math.Abs(st.deviance) && (next.deviance < st.deviance || f == 1):
+			if next.deviance <= st.deviance+0.25*math.Min(slope, 0) || slope > -1e-3 {
+				return next
+			}
+			found = next
 		}
 		f /= 2
 	}
-	return nil
+	return found
+}
+
+// floored tells whether a parameter is kept from being negative: a bounded component, or a
+// correlation whose powers have no sign below zero.
+func (s *space) floored(i int) bool {
+	if i < len(s.random) {
+		return !s.model.Random[i].Unbounded
+	}
+	return s.structure.floored(i - len(s.random))
 }
 
 // inside tells whether variances are positive and correlations below one.
 func (s *space) inside(th []float64) bool {
 	for i, v := range th[len(s.random):] {
-		if s.structure.isVariance(i) && !(v > 1e-12) || s.structure.isCorrelation(i) && !(math.Abs(v) < 1) {
+		if s.structure.isVariance(i) && !(v > 1e-12) || s.structure.isCorrelation(i) && !(math.Abs(v) < 1) || s.structure.floored(i) && v < 0 {
 			return false
 		}
 	}
@@ -408,7 +453,7 @@ func newton(g []float64, info *mat.SymDense, bound []bool) ([]float64, float64) 
 	e.VectorsTo(&v)
 	dec := 0.0
 	for k, l := range e.Values(nil) {
-		l = math.Max(l, 1e-8)
+		l = math.Max(math.Abs(l), 1e-8) // downhill where second derivatives are no information
 		t := 0.0
 		for i, a := range free {
 			t += v.At(i, k) * g[a] / d[i]

@@ -50,7 +50,9 @@ func (f *Fit) mean(factors, level []int) []float64 {
 				n := m.Factors[p.Factors[i]].N
 				l := rest % n
 				rest /= n
-				if j := slices.Index(factors, p.Factors[i]); j < 0 {
+				if j := slices.Index(factors, p.Factors[i]); j < 0 && p.Weights != nil {
+					v *= p.Weights[l]
+				} else if j < 0 {
 					v /= float64(n)
 				} else if level[j] != l {
 					v = 0

@@ -47,6 +47,9 @@ type Part struct {
 	Factors []int     // into Model.Factors; none: one column
 	Value   []float64 // nil: 1 in every row
 	At      float64   // the value at which means are taken; ignored where Value is nil
+	// Weights of the levels of a part with one factor in means over them, adding up to one;
+	// nil: equal.
+	Weights []float64
 }
 
 // Random is a variance component: rows of one class share an effect.

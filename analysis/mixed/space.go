@@ -28,6 +28,7 @@ type space struct {
 
 	structure structure
 	params    int // of the whole: random terms, then the structure's
+	held      int // a parameter that keeps its value, plus one; 0: none
 
 	blocks   []block
 	patterns []pattern

@@ -45,6 +45,20 @@ func (s structure) isVariance(i int) bool {
 	return !s.isCorrelation(i)
 }
 
+// floored tells whether parameter i is a correlation whose powers are not all of whole
+// numbers, so that it has none below zero.
+func (s structure) floored(i int) bool {
+	if s.kind != Autoregressive && s.kind != HeterogeneousAutoregressive || !s.isCorrelation(i) {
+		return false
+	}
+	for j := 1; j < len(s.times); j++ {
+		if d := s.distance(0, j); d != math.Trunc(d) {
+			return true
+		}
+	}
+	return false
+}
+
 // covariance is that of times j and k (groups, for independent rows, where j = k).
 func (s structure) covariance(th []float64, j, k int) float64 {
 	t := len(s.times)
@@ -98,6 +112,17 @@ func (s structure) correlation(th []float64, j, k int) float64 {
 
 func (s structure) distance(j, k int) float64 { return math.Abs(s.times[j] - s.times[k]) }
 
+// nearest is the smallest distance of two times.
+func (s structure) nearest() float64 {
+	d := math.Inf(1)
+	for j := range s.times {
+		for k := range j {
+			d = math.Min(d, s.distance(j, k))
+		}
+	}
+	return d
+}
+
 // power is ρ^d; a negative ρ has a sign only at whole distances.
 func power(rho, d float64) float64 {
 	if rho < 0 && d != math.Trunc(d) {
@@ -148,6 +173,10 @@ func (s structure) correlationBy(th []float64, i, j, k int) float64 {
 		d := s.distance(j, k)
 		if d == 0 {
 			return 0
+		}
+		if th[i] == 0 && s.floored(i) {
+			// Of what begins to rise at zero the smallest power is first, be it steep or flat.
+			return indicator(d == s.nearest())
 		}
 		return d * power(th[i], d-1)
 	}
@@ -212,7 +241,7 @@ func (s structure) correlationBy2(th []float64, a, b, j, k int) float64 {
 		return 0
 	case Autoregressive, HeterogeneousAutoregressive:
 		d := s.distance(j, k)
-		if d == 0 || d == 1 {
+		if d == 0 || d == 1 || th[a] == 0 && s.floored(a) {
 			return 0
 		}
 		return d * (d - 1) * power(th[a], d-2)

@@ -2,6 +2,7 @@ package mixed
 
 import (
 	"math"
+	"slices"
 
 	"gonum.org/v1/gonum/mat"
 )
@@ -18,6 +19,50 @@ type Functions struct {
 	fit *Fit
 	l   [][]float64 // over kept columns; nil where not estimable
 	cov *mat.Dense  // adjusted covariances
+	// Made when the first difference is asked for: of the functions less the first that is
+	// estimable, the plain and adjusted covariances and L ΦPᵢΦ L′ for each parameter.
+	plain, adjusted *mat.Dense
+	by              []*mat.Dense
+}
+
+// Difference is the variance of function i less function j, with its degrees of freedom:
+// those of Contrast, at a cost that does not depend on the number of fixed columns.
+func (e *Functions) Difference(i, j int) (variance, df float64) {
+	if !e.Estimable[i] || !e.Estimable[j] {
+		return math.NaN(), math.NaN()
+	}
+	if e.plain == nil {
+		e.prepare()
+	}
+	at := func(m *mat.Dense) float64 { return m.At(i, i) + m.At(j, j) - m.At(i, j) - m.At(j, i) }
+	g := make([]float64, len(e.by))
+	for k, m := range e.by {
+		g[k] = at(m)
+	}
+	return e.fit.referred(at(e.plain), at(e.adjusted), g)
+}
+
+func (e *Functions) prepare() {
+	p, n := e.fit.space.p, len(e.l)
+	first := slices.Index(e.Estimable, true)
+	l := mat.NewDense(n, p, nil)
+	for i, x := range e.l {
+		for j := range x {
+			l.Set(i, j, x[j]-e.l[first][j])
+		}
+	}
+	var lphi, la mat.Dense
+	lphi.Mul(l, e.fit.inf.phi)
+	la.Mul(l, e.fit.inf.adjusted)
+	e.plain, e.adjusted = new(mat.Dense), new(mat.Dense)
+	e.plain.Mul(&lphi, l.T())
+	e.adjusted.Mul(&la, l.T())
+	for _, pi := range e.fit.inf.p {
+		var t, m mat.Dense
+		t.Mul(&lphi, pi)
+		m.Mul(&t, lphi.T())
+		e.by = append(e.by, &m)
+	}
 }
 
 func (f *Fit) functions(weights [][]float64, shift []float64) *Functions {
@@ -108,14 +153,20 @@ func (f *Fit) single(l []float64) (variance, df float64) {
 	var v, av mat.VecDense
 	v.MulVec(f.inf.phi, lv)
 	av.MulVec(f.inf.adjusted, lv)
-	raw := mat.Dot(lv, &v)
-	variance = mat.Dot(lv, &av)
-	if f.satters {
-		variance = raw
-	}
 	g := make([]float64, len(f.inf.p))
 	for i, pi := range f.inf.p {
 		g[i] = quadratic(pi, v.RawVector().Data)
+	}
+	return f.referred(mat.Dot(lv, &v), mat.Dot(lv, &av), g)
+}
+
+// referred gives the variance of a function in the unit of y and its degrees of freedom, from
+// the plain and the adjusted variance and the derivatives of the former, with sign, by the
+// parameters.
+func (f *Fit) referred(raw, adjusted float64, g []float64) (variance, df float64) {
+	variance = adjusted
+	if f.satters {
+		variance = raw
 	}
 	spread := 0.0
 	for i, a := range g {

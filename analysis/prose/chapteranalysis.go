@@ -97,6 +97,9 @@ type citations map[string]bool
 // cite is a source in parentheses, to stand after what it is cited for; "" where none is
 // known.
 func (c citations) cite(key string) string {
+	if c == nil {
+		return "" // the text cites nothing
+	}
 	for _, s := range sources {
 		for _, k := range strings.Fields(s.keys) {
 			if strings.ReplaceAll(k, "_", " ") == key {
@@ -152,22 +155,27 @@ func chapterAnalysis(t *trial.Trial, rs *result.Results, planned bool) ([]Passag
 	for _, g := range groups(all, func(r *result.Response) string { return modelKey(t, r) }) {
 		s.add("%s", modelSentence(t, g, before, all, cited))
 		before = g
-		for _, x := range modelNotes(t, g, all) {
+		for _, x := range modelNotes(t, g, all, cited) {
 			s.add("%s", x)
 		}
 	}
 	if c := p.Protocol.CarryOver; c != nil {
 		s.add("Carry-over from one %s to the next was a term of the model", unitText(t, c.Along))
 	}
-	satterthwaite, adjusted := false, false
+	satterthwaite, adjusted, mixed := false, false, false
 	for _, r := range all {
 		for _, m := range r.Means {
-			satterthwaite = satterthwaite || m.DF.Known() && float64(m.DF) != float64(int(m.DF))
+			satterthwaite = satterthwaite || fractional(r, m)
 		}
-		adjusted = adjusted || r.Model.Method == "least squares" || len(r.Covariates) > 0
+		adjusted = adjusted || adjustedMeans(r)
+		mixed = mixed || r.Model.Method == "reml"
 	}
 	if adjusted {
-		s.add("Means from least squares are adjusted means with equal weights%s", cited.cite("adjusted"))
+		of := "least squares"
+		if mixed {
+			of = "these models"
+		}
+		s.add("Means from %s are adjusted means with equal weights%s", of, cited.cite("adjusted"))
 	}
 	if satterthwaite {
 		s.add("Where a mean draws on the variation of several units, its degrees of freedom were approximated%s", cited.cite("satterthwaite"))
@@ -205,7 +213,11 @@ func modelKey(t *trial.Trial, r *result.Response) string {
 	for _, c := range r.Covariates {
 		covariates = append(covariates, c.Name)
 	}
-	return strings.Join([]string{r.Model.Method, r.Model.Hypothesis, strings.Join(fixed, "+"), strings.Join(covariates, "+"), overText(t, r, false), r.Transform, r.Kind}, "|")
+	chosen := r.Model.DFMethod
+	if r.Correlation != nil {
+		chosen += r.Correlation.Kind + fmt.Sprint(len(r.Correlation.Candidates))
+	}
+	return strings.Join([]string{r.Model.Method, chosen, strings.Join(r.Model.Random, "+"), r.Model.Hypothesis, strings.Join(fixed, "+"), strings.Join(covariates, "+"), overText(t, r, false), r.Transform, r.Kind}, "|")
 }
 
 // overText lists terms by what they were tested over, with its degrees of freedom.
@@ -258,6 +270,11 @@ func overText(t *trial.Trial, r *result.Response, df bool) string {
 
 // partOf tells whether a source is a part of a listed treatment and not a term.
 func partOf(p *layout.Plan, source string) bool {
+	for _, f := range strings.Split(source, ":") {
+		if p.Protocol.RepeatedNamed(f) != nil {
+			return false
+		}
+	}
 	for _, x := range p.Terms {
 		if x.Name == source {
 			return false
@@ -282,6 +299,9 @@ func modelSentence(t *trial.Trial, g, before, all group, cited citations) string
 		what = "; no test was possible"
 	}
 	lead := fmt.Sprintf("%s %s analysed by ", g.names(all), g.be())
+	if r.Model.Method == "reml" {
+		return lead + mixedWords(t, r, cited)
+	}
 	if r.Model.Method == "strata" {
 		return lead + "analysis of variance" + cited.cite("strata") + what
 	}
@@ -335,7 +355,7 @@ func withoutCovariates(r *result.Response) string {
 }
 
 // modelNotes are the sentences on what is particular to the analysis of a group.
-func modelNotes(t *trial.Trial, g, all group) []string {
+func modelNotes(t *trial.Trial, g, all group, cited citations) []string {
 	var out []string
 	// A note that all of the group have is told once, others with the response's name.
 	for _, r := range g {
@@ -347,7 +367,7 @@ func modelNotes(t *trial.Trial, g, all group) []string {
 					continue // the sentence of the model says it
 				}
 				text = fmt.Sprintf("Of %s %s of %s values %s available.", responseName(r), num.Count(r.N), num.Count(r.N+r.Missing+r.Excluded), plural(r.N, "was", "were"))
-			case "averaged", "not-balanced", "intra-block", "empty-cells", "covariate-aliased", "term-lost", "within-variance":
+			case "averaged", "not-balanced", "intra-block", "empty-cells", "covariate-aliased", "term-lost", "within-variance", "components-bounded", "no-sphericity", "structures-left-out", "several-maxima", "components-hardly-told":
 				text = past.Replace(n.Text)
 			default:
 				continue
@@ -356,6 +376,15 @@ func modelNotes(t *trial.Trial, g, all group) []string {
 				out = append(out, text)
 			}
 		}
+	}
+	if g[0].Model.Method == "reml" {
+		out = append(out, denominator(g[0], cited))
+	}
+	if x := correlationChosen(t.Plan, g[0], cited); x != "" {
+		out = append(out, x)
+	}
+	if x := correctedWords(g, cited); x != "" {
+		out = append(out, x)
 	}
 	switch g[0].Model.Hypothesis {
 	case "marginal":

@@ -265,7 +265,11 @@ func standing(p *layout.Plan, r *result.Response) []string {
 }
 
 func testText(x result.Test) string {
-	return fmt.Sprintf("F(%s,\u00a0%s) = %s, P %s", num.DF(float64(x.DF)), num.DF(float64(x.ErrorDF)), num.Statistic(float64(x.F)), num.PStatement(float64(x.P)))
+	s := fmt.Sprintf("F(%s,\u00a0%s) = %s, P %s", num.DF(float64(x.DF)), num.DF(float64(x.ErrorDF)), num.Statistic(float64(x.F)), num.PStatement(float64(x.P)))
+	if x.GreenhouseGeisser > 0 {
+		s += fmt.Sprintf(" (with corrected degrees of freedom P %s)", num.PStatement(float64(x.GreenhouseGeisser)))
+	}
+	return s
 }
 
 // effects are the sentences that tell how large the effect of a term is: its trends, or
@@ -281,7 +285,7 @@ func effects(p *layout.Plan, r *result.Response, term string, stands []string) [
 		d := num.SEDecimals(float64(c.SE))
 		lo, hi := float64(c.Lower), float64(c.Upper)
 		lim := fmt.Sprintf("%s limits %s to %s; P %s", confidence(Alpha(p, r)), num.Fixed(lo, d), num.Fixed(hi, d), num.PStatement(float64(c.P)))
-		each := "for each " + singularUnit(factorUnit(p, factor)) + " of " + TermText(p, factor)
+		each := "for each " + eachUnit(p, factor)
 		switch trend {
 		case "linear":
 			switch estimate := float64(c.Estimate); {
@@ -564,11 +568,16 @@ func MeansNote(t *trial.Trial, g []*result.Response, term string) string {
 			unit = p.Terms[i].Unit
 		}
 	}
+	for _, f := range strings.Split(term, ":") {
+		if x := p.Protocol.RepeatedNamed(f); x != nil {
+			unit = slices.IndexFunc(p.Units, func(u layout.Unit) bool { return u.Name == x.On })
+		}
+	}
 	if unit < 0 {
 		unit = allot.RowUnit(p) // a part of listed treatments
 	}
 	for _, r := range g {
-		if len(r.Covariates) > 0 || r.Model.Method == "least squares" {
+		if adjustedMeans(r) {
 			adjusted = true
 		} else {
 			plain = true
@@ -587,6 +596,9 @@ func MeansNote(t *trial.Trial, g []*result.Response, term string) string {
 	switch {
 	case adjusted && plain:
 		what = "means, adjusted means where the analysis was by least squares,"
+		if slices.ContainsFunc(g, func(r *result.Response) bool { return r.Model.Method == "reml" }) {
+			what = "means, adjusted means where the analysis was by a mixed model,"
+		}
 	case adjusted:
 		what = "adjusted means"
 	}
@@ -628,7 +640,7 @@ func ChapterNotes(t *trial.Trial, g []*result.Response, term string) []string {
 			if n.Term != "" && n.Term != term {
 				continue
 			}
-			if slices.Contains([]string{"averaged", "units-lost", "not-balanced", "intra-block", "empty-cells", "covariate-aliased", "term-lost", "within-variance", "no-own-line", "sed-kinds", "leverage-one", "no-control"}, n.Code) {
+			if slices.Contains([]string{"averaged", "units-lost", "not-balanced", "intra-block", "empty-cells", "covariate-aliased", "term-lost", "within-variance", "no-own-line", "sed-kinds", "not-spherical", "no-sphericity", "structures-left-out", "components-bounded", "several-maxima", "components-hardly-told", "leverage-one", "no-control"}, n.Code) {
 				continue
 			}
 			if n.Code == "letters-withheld" && strings.Contains(n.Text, "graded") {

@@ -45,10 +45,18 @@ func Methods(t *trial.Trial, r *result.Response) string {
 		case "sequential":
 			s = append(s, "Terms were adjusted in the order in which they are written.")
 		}
+	case "reml":
+		s = append(s, fmt.Sprintf("%s was analysed by %s.", upperFirst(name), mixedWords(t, r, nil)), DenominatorText(r))
+		if r.Model.Hypothesis == "marginal" {
+			s = append(s, "Each term was adjusted for all terms that do not contain it.")
+		}
+	}
+	if x := correlationChosen(t.Plan, r, nil); x != "" {
+		s = append(s, x+".")
 	}
 	for _, n := range r.Notes {
 		switch n.Code {
-		case "averaged", "units-lost", "not-balanced", "intra-block", "empty-cells", "covariate-aliased":
+		case "averaged", "units-lost", "not-balanced", "intra-block", "empty-cells", "covariate-aliased", "components-bounded":
 			s = append(s, n.Text)
 		}
 	}
@@ -179,7 +187,13 @@ func testedOver(t *trial.Trial, r *result.Response) string {
 }
 
 func modelWords(t *trial.Trial, r *result.Response) string {
-	var units, covariates, terms []string
+	units, covariates, terms := fixedWords(t, r)
+	return And(append(append(units, covariates...), terms...)) + " in the model"
+}
+
+// fixedWords names the fixed part of a model: larger units and trends over time, covariates,
+// and treatment terms.
+func fixedWords(t *trial.Trial, r *result.Response) (units, covariates, terms []string) {
 	for _, f := range r.Model.Fixed {
 		switch {
 		case isCovariate(r, f):
@@ -192,7 +206,7 @@ func modelWords(t *trial.Trial, r *result.Response) string {
 			terms = append(terms, TermText(t.Plan, f))
 		}
 	}
-	return And(append(append(units, covariates...), terms...)) + " in the model"
+	return units, covariates, terms
 }
 
 func polynomial(order int) string {
@@ -248,7 +262,7 @@ func Results(t *trial.Trial, r *result.Response) string {
 		switch factor, trend, _ := strings.Cut(c.Name, ": "); trend {
 		case "linear":
 			what = "Linear trend in " + TermText(p, factor)
-			estimate += " for each " + factorUnit(p, factor)
+			estimate += " for each " + eachUnit(p, factor)
 		case "quadratic", "cubic", "quartic", "quintic":
 			what = upperFirst(trend) + " coefficient of " + TermText(p, factor)
 			estimate = num.Fixed(float64(c.Estimate), d)
@@ -313,15 +327,24 @@ func References(rs *result.Results) []string {
 		for _, d := range r.Diagnostics {
 			used[d.Name] = true
 		}
+		if r.Model.Method == "reml" {
+			used[r.Model.DFMethod] = true
+		}
+		if r.Sphericity != nil {
+			used["sphericity"] = true
+		}
+		if r.Correlation != nil && len(r.Correlation.Candidates) > 0 {
+			used["aicc"] = true
+		}
 		for _, m := range r.Means {
-			if m.DF.Known() && float64(m.DF) != float64(int(m.DF)) {
+			if fractional(r, m) {
 				used["satterthwaite"] = true
 			}
 			if m.Letters != nil {
 				used["letters"] = true
 			}
 		}
-		if len(r.Covariates) > 0 || r.Model.Method == "least squares" {
+		if adjustedMeans(r) {
 			used["adjusted"] = true
 		}
 		if len(r.Efficiency) > 0 {
@@ -348,6 +371,12 @@ var sources = []struct{ keys, short, text string }{
 	{keys: "brown-forsythe", short: "Brown and Forsythe, 1974", text: "Brown, M. B. and Forsythe, A. B. (1974). Robust tests for the equality of variances. Journal of the American Statistical Association 69, 364–367."},
 	{keys: "dunnett", short: "Dunnett, 1955", text: "Dunnett, C. W. (1955). A multiple comparison procedure for comparing several treatments with a control. Journal of the American Statistical Association 50, 1096–1121."},
 	{keys: "efficiency lsd protected_lsd", short: "Fisher, 1935", text: "Fisher, R. A. (1935). The Design of Experiments. Oliver and Boyd, Edinburgh."},
+	{keys: "sphericity", short: "Greenhouse and Geisser, 1959", text: "Greenhouse, S. W. and Geisser, S. (1959). On methods in the analysis of profile data. Psychometrika 24, 95–112."},
+	{keys: "aicc", short: "Hurvich and Tsai, 1989", text: "Hurvich, C. M. and Tsai, C.-L. (1989). Regression and time series model selection in small samples. Biometrika 76, 297–307."},
+	{keys: "sphericity huynh-feldt", short: "Huynh and Feldt, 1976", text: "Huynh, H. and Feldt, L. S. (1976). Estimation of the Box correction for degrees of freedom from sample data in randomized block and split-plot designs. Journal of Educational Statistics 1, 69–82."},
+	{keys: "kenward-roger", short: "Kenward and Roger, 1997", text: "Kenward, M. G. and Roger, J. H. (1997). Small sample inference for fixed effects from restricted maximum likelihood. Biometrics 53, 983–997."},
+	{keys: "sphericity mauchly", short: "Mauchly, 1940", text: "Mauchly, J. W. (1940). Significance test for sphericity of a normal n-variate distribution. Annals of Mathematical Statistics 11, 204–209."},
+	{keys: "reml", short: "Patterson and Thompson, 1971", text: "Patterson, H. D. and Thompson, R. (1971). Recovery of inter-block information when block sizes are unequal. Biometrika 58, 545–554."},
 	{keys: "holm", short: "Holm, 1979", text: "Holm, S. (1979). A simple sequentially rejective multiple test procedure. Scandinavian Journal of Statistics 6, 65–70."},
 	{keys: "strata", short: "Nelder, 1965", text: "Nelder, J. A. (1965). The analysis of randomized experiments with orthogonal block structure. Proceedings of the Royal Society A 283, 147–178."},
 	{keys: "letters", short: "Piepho, 2004", text: "Piepho, H.-P. (2004). An algorithm for a letter-based representation of all-pairwise comparisons. Journal of Computational and Graphical Statistics 13, 456–466."},

@@ -18,6 +18,8 @@ func Plural(s string) string {
 		return ""
 	case "sheep", "fish", "cattle", "series", "swine":
 		return s
+	case "child":
+		return s + "ren"
 	case "calf", "half", "leaf", "shelf":
 		return s[:len(s)-1] + "ves"
 	case "mouse", "louse":
@@ -147,11 +149,36 @@ func TermLabel(p *layout.Plan, term string) string {
 // TermText names a term in running text.
 func TermText(p *layout.Plan, term string) string { return lowerFirst(TermLabel(p, term)) }
 
-func label(p *layout.Plan, name string) string {
+// FactorNamed is a treatment factor of the plan by its name, or a set of times at which
+// units are measured again and again, seen as a factor that is given to none of them; nil:
+// neither.
+func FactorNamed(p *layout.Plan, name string) *layout.Factor {
 	for i := range p.Factors {
 		if p.Factors[i].Name == name {
-			return FactorLabel(&p.Factors[i])
+			return &p.Factors[i]
 		}
+	}
+	if r := p.Protocol.RepeatedNamed(name); r != nil {
+		return &layout.Factor{Name: r.Name, Label: r.Label, Unit: -1, Levels: r.At, Values: r.Values,
+			Protocol: &protocol.Factor{Name: r.Name, Label: r.Label, Unit: r.Unit, Levels: r.At, Values: r.Values}}
+	}
+	return nil
+}
+
+// records names the records of a unit that is measured again and again, which results call
+// UNIT:TIMES, by what varies: "weeks within pens"; "" where a name is no such thing.
+func records(p *layout.Plan, name string) string {
+	on, times, _ := strings.Cut(name, ":")
+	r := p.Protocol.RepeatedNamed(times)
+	if r == nil || r.On != on {
+		return ""
+	}
+	return Plural(TermText(p, times)) + " within " + Plural(TermText(p, on))
+}
+
+func label(p *layout.Plan, name string) string {
+	if f := FactorNamed(p, name); f != nil {
+		return FactorLabel(f)
 	}
 	for i := range p.Units {
 		if p.Units[i].Name == name {

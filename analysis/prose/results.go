@@ -88,6 +88,9 @@ func SourceRow(p *layout.Plan, r *result.Response, l result.Line) string {
 			return name
 		}
 	}
+	if s := records(p, l.Source); s != "" {
+		return upperFirst(s)
+	}
 	for _, f := range p.Factors {
 		if f.Name == l.Source && f.Carried {
 			return FactorLabel(&f) + " (not randomized)"
@@ -103,6 +106,9 @@ func ErrorRow(p *layout.Plan, r *result.Response, stratum string) string {
 		if p.Units[i].Name == stratum {
 			return ErrorName(p, i)
 		}
+	}
+	if s := records(p, stratum); s != "" {
+		return s
 	}
 	if u := ErrorUnit(p, r); u >= 0 {
 		return ErrorName(p, u)
@@ -127,11 +133,16 @@ func ErrorUnit(p *layout.Plan, r *result.Response) int {
 // AnovaNotes are the notes of an analysis of variance.
 func AnovaNotes(p *layout.Plan, r *result.Response) []string {
 	var out []string
+	if r.Model != nil && r.Model.Method == "reml" {
+		out = append(out, DenominatorText(r))
+	}
 	if r.Model != nil {
 		switch r.Model.Hypothesis {
 		case "partial":
 			if r.Model.Method == "least squares" {
 				out = append(out, "Sums of squares test equality of adjusted means with equal weights (each term adjusted for all others).")
+			} else if r.Model.Method == "reml" {
+				out = append(out, "Each hypothesis is the equality of adjusted means with equal weights.")
 			}
 		case "marginal":
 			out = append(out, "Each term is adjusted for all terms that do not contain it.")
@@ -150,9 +161,15 @@ func AnovaNotes(p *layout.Plan, r *result.Response) []string {
 				parts = append(parts, fmt.Sprintf("%s %s\u202f%%", ErrorRow(p, r, s.Name), num.Percent(float64(s.CVPercent))))
 			}
 		}
-		if len(parts) > 0 {
+		if len(parts) == 1 {
+			out = append(out, "Coefficient of variation: "+parts[0]+" of the mean, "+meanText(r)+".")
+		} else if len(parts) > 1 {
 			out = append(out, "Coefficients of variation: "+And(parts)+" of the mean, "+meanText(r)+".")
 		}
+	}
+	out = append(out, sphericity(p, r)...)
+	if s := correlationText(p, r); s != "" {
+		out = append(out, s)
 	}
 	for _, n := range r.Notes {
 		if n.Term == "" {
@@ -172,24 +189,21 @@ func meanText(r *result.Response) string {
 
 // FactorHead heads a column of levels, with the unit of a quantitative factor.
 func FactorHead(p *layout.Plan, factor string) string {
-	for i := range p.Factors {
-		f := &p.Factors[i]
-		if f.Name != factor {
-			continue
-		}
-		s := FactorLabel(f)
-		if f.Protocol != nil && f.Protocol.Unit != "" {
-			s += " (" + num.UnitText(f.Protocol.Unit) + ")"
-		}
-		return s
+	f := FactorNamed(p, factor)
+	if f == nil {
+		return label(p, factor)
 	}
-	return label(p, factor)
+	s := FactorLabel(f)
+	if f.Protocol != nil && f.Protocol.Unit != "" {
+		s += " (" + num.UnitText(f.Protocol.Unit) + ")"
+	}
+	return s
 }
 
 // MeansCaption heads a table of means.
 func MeansCaption(p *layout.Plan, r *result.Response, term string) string {
 	kind := "Means"
-	if r.Model != nil && (len(r.Covariates) > 0 || r.Model.Method == "least squares") {
+	if adjustedMeans(r) {
 		kind = "Adjusted means"
 	}
 	return kind + " of " + ResponseText(r) + " by " + strings.ReplaceAll(TermText(p, term), " × ", " and ")
@@ -329,23 +343,19 @@ func LevelsText(p *layout.Plan, l result.Levels) string {
 // LevelText names a level in words: with its unit where the factor has one, else with
 // the factor's name where the level alone would not speak for itself.
 func LevelText(p *layout.Plan, factor, level string) string {
-	for i := range p.Factors {
-		f := &p.Factors[i]
-		if f.Name != factor {
-			continue
-		}
-		if f.Values != nil {
-			u := ""
-			if f.Protocol != nil {
-				u = f.Protocol.Unit
-			}
-			if u == "" {
-				return lowerFirst(FactorLabel(f)) + " " + strings.ReplaceAll(level, "-", "−")
-			}
-			return num.Unit(strings.ReplaceAll(level, "-", "−"), u)
-		}
+	f := FactorNamed(p, factor)
+	if f == nil || f.Values == nil {
+		return level
 	}
-	return level
+	u := ""
+	if f.Protocol != nil {
+		u = f.Protocol.Unit
+	}
+	level = strings.ReplaceAll(level, "-", "−")
+	if u == "" {
+		return lowerFirst(FactorLabel(f)) + " " + level
+	}
+	return num.Unit(level, u)
 }
 
 // PairText names a difference.
@@ -407,8 +417,8 @@ func Answer(p *layout.Plan, r *result.Response) string {
 			d := num.SEDecimals(float64(c.SE))
 			f := strings.TrimSuffix(c.Name, ": linear")
 			lo, hi := float64(c.Lower), float64(c.Upper)
-			return fmt.Sprintf("%s changed by %s for each %s of %s (linear trend; %s limits %s to %s; P %s).%s",
-				name, num.Unit(num.Signed(float64(c.Estimate), d), r.Unit), factorUnit(p, f), TermText(p, f), confidence(alpha),
+			return fmt.Sprintf("%s changed by %s for each %s (linear trend; %s limits %s to %s; P %s).%s",
+				name, num.Unit(num.Signed(float64(c.Estimate), d), r.Unit), eachUnit(p, f), confidence(alpha),
 				num.Fixed(lo, d), num.Fixed(hi, d), num.PStatement(float64(c.P)), depends(p, r, f))
 		}
 	}
@@ -490,12 +500,30 @@ func isCovariate(r *result.Response, source string) bool {
 }
 
 func factorUnit(p *layout.Plan, factor string) string {
-	for i := range p.Factors {
-		if p.Factors[i].Name == factor && p.Factors[i].Protocol != nil && p.Factors[i].Protocol.Unit != "" {
-			return num.UnitText(p.Factors[i].Protocol.Unit)
-		}
+	if f := FactorNamed(p, factor); f != nil && f.Protocol != nil && f.Protocol.Unit != "" {
+		return num.UnitText(f.Protocol.Unit)
 	}
 	return "unit"
+}
+
+// timeUnits are units of time in words.
+var timeUnits = map[string]string{"a": "year", "mo": "month", "wk": "week", "d": "day", "h": "hour", "min": "minute", "s": "second"}
+
+// eachUnit is the unit of a graded factor with the factor: "kg/ha of nitrogen"; of times that
+// are named as their unit is, such as weeks, that alone.
+func eachUnit(p *layout.Plan, factor string) string {
+	of := TermText(p, factor)
+	if r := p.Protocol.RepeatedNamed(factor); r != nil {
+		unit := r.Unit
+		if word := timeUnits[unit]; word != "" {
+			unit = word
+		}
+		if unit == "" || unit == of || Plural(unit) == of || unit == Plural(of) {
+			return strings.TrimSuffix(of, "s")
+		}
+		return unit + " of " + of
+	}
+	return singularUnit(factorUnit(p, factor)) + " of " + of
 }
 
 func rangeOfMeans(r *result.Response, term string) (lo, hi *result.Mean) {
@@ -514,8 +542,8 @@ func rangeOfMeans(r *result.Response, term string) (lo, hi *result.Mean) {
 
 // OwnNotes are the notes of a response that stand under none of its tables.
 func OwnNotes(r *result.Response) []string {
-	if len(r.Anova) > 0 || r.Model == nil {
-		return nil // they stand under the analysis of variance, or are all that is said
+	if len(r.Anova) > 0 || len(r.Tests) > 0 || r.Model == nil {
+		return nil // they stand under the tests, or are all that is said
 	}
 	var out []string
 	for _, n := range r.Notes {

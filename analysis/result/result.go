@@ -376,6 +376,8 @@ type Response struct {
 	Anova       []Line          `json:"anova"`
 	Tests       []Test          `json:"tests"`
 	Components  []Component     `json:"components"`
+	Correlation *Correlation    `json:"correlation,omitempty"`
+	Sphericity  *Sphericity     `json:"sphericity,omitempty"`
 	GrandMean   Number          `json:"grand_mean"`
 	CVPercent   Number          `json:"cv_percent"`
 	Summary     []Summary       `json:"summary"`
@@ -431,6 +433,9 @@ type Test struct {
 	F       Number `json:"f"`
 	P       Number `json:"p"`
 	Planned bool   `json:"planned"`
+	// P with the df of a split plot in time corrected for unequal correlation; 0: not asked.
+	GreenhouseGeisser Number `json:"p_greenhouse_geisser,omitempty"`
+	HuynhFeldt        Number `json:"p_huynh_feldt,omitempty"`
 }
 
 // Component is a component of variance.
@@ -439,6 +444,92 @@ type Component struct {
 	Estimate Number `json:"estimate"`
 	SE       Number `json:"se"`
 	Boundary bool   `json:"boundary"`
+	// Limits, if the protocol asks for those by the profile likelihood.
+	Lower *Number `json:"lower,omitempty"`
+	Upper *Number `json:"upper,omitempty"`
+}
+
+// Correlation is the structure of repeated records.
+type Correlation struct {
+	Kind       string      `json:"kind"`
+	Parameters Parameters  `json:"parameters"`
+	Candidates []Candidate `json:"candidates"`
+}
+
+// Candidate is a structure that was tried. What did not converge has no numbers.
+type Candidate struct {
+	Kind          string `json:"kind"`
+	LogLikelihood Number `json:"log_likelihood"`
+	Parameters    int    `json:"parameters"`
+	AICc          Number `json:"aicc"`
+}
+
+// Parameters are named numbers in order.
+type Parameters []Parameter
+
+// Parameter is a named number.
+type Parameter struct {
+	Name  string
+	Value Number
+}
+
+// MarshalJSON writes an object in order.
+func (p Parameters) MarshalJSON() ([]byte, error) {
+	var b bytes.Buffer
+	b.WriteByte('{')
+	for i, x := range p {
+		if i > 0 {
+			b.WriteByte(',')
+		}
+		k, err := encode(x.Name)
+		if err != nil {
+			return nil, err
+		}
+		v, err := x.Value.MarshalJSON()
+		if err != nil {
+			return nil, err
+		}
+		b.Write(k)
+		b.WriteByte(':')
+		b.Write(v)
+	}
+	b.WriteByte('}')
+	return b.Bytes(), nil
+}
+
+// UnmarshalJSON reads an object, keeping its order.
+func (p *Parameters) UnmarshalJSON(data []byte) error {
+	d := json.NewDecoder(bytes.NewReader(data))
+	if _, err := d.Token(); err != nil {
+		return err
+	}
+	*p = Parameters{}
+	for d.More() {
+		k, err := d.Token()
+		if err != nil {
+			return err
+		}
+		name, ok := k.(string)
+		if !ok {
+			return fmt.Errorf("parameters are no object")
+		}
+		x := Parameter{Name: name}
+		if err := d.Decode(&x.Value); err != nil {
+			return err
+		}
+		*p = append(*p, x)
+	}
+	return nil
+}
+
+// Sphericity says how far repeated records are from what a split plot in time supposes.
+type Sphericity struct {
+	W                 Number `json:"w"`
+	ChiSquared        Number `json:"chi_squared"`
+	DF                int    `json:"df"`
+	P                 Number `json:"p"`
+	GreenhouseGeisser Number `json:"greenhouse_geisser"`
+	HuynhFeldt        Number `json:"huynh_feldt"`
 }
 
 // Summary describes the values of experimental units in one cell.

@@ -44,7 +44,7 @@ var lattice = map[string]string{
 	"analysis/prose":    "analysis/result analysis/num analysis/trial analysis/trial+",
 	"analysis/sound":    "analysis/trial analysis/trial+ analysis/prose analysis/result protocol/factor analysis/linear analysis/power",
 	"analysis": "analysis/sound analysis/trial analysis/trial+ analysis/prose analysis/result analysis/num protocol/factor analysis/dist analysis/strata " +
-		"analysis/linear analysis/compare analysis/residual analysis/power",
+		"analysis/linear analysis/mixed analysis/compare analysis/residual analysis/power",
 
 	"render/doc":           "protocol/diag",
 	"render/doc/sample":    "render/doc protocol/diag", // for the tests of the writers

@@ -27,9 +27,20 @@ type Interaction struct {
 }
 
 // Line is the means of one level over those of the other factor, NaN where there is none.
+// Low and High are intervals of the means, or nil; lines with intervals stand a little beside
+// each other, so that the intervals can be told apart.
 type Line struct {
-	Label  string
-	Values []float64
+	Label     string
+	Values    []float64
+	Low, High []float64
+}
+
+// interval gives the interval of the mean at i, where there is one.
+func (l Line) interval(i int) (lo, hi float64, ok bool) {
+	if i >= len(l.Low) || i >= len(l.High) || !drawable(l.Low[i]) || !drawable(l.High[i]) {
+		return 0, 0, false
+	}
+	return l.Low[i], l.High[i], true
 }
 
 // Draw gives the picture, and the same in words.
@@ -48,6 +59,9 @@ func (n Interaction) Draw() (*doc.Picture, string) {
 			if i < len(n.Levels) && drawable(v) && drawable(place(i)) {
 				values.add(v)
 				xs.add(place(i))
+				if lo, hi, ok := l.interval(i); ok {
+					values.add(lo, hi)
+				}
 			}
 		}
 	}
@@ -141,6 +155,19 @@ func (n Interaction) Draw() (*doc.Picture, string) {
 		}
 		shape, colour := symbol(k)
 		f.mark(l.Label)
+		aside := 0.0
+		if l.Low != nil && len(n.Lines) > 1 {
+			aside = (float64(k) - float64(len(n.Lines)-1)/2) * min(4, 14/float64(len(n.Lines)-1))
+			for i := range px {
+				px[i] += aside * (f.h.hi - f.h.lo) / (f.x1 - f.x0)
+			}
+		}
+		for _, i := range at {
+			if lo, hi, ok := l.interval(i); ok {
+				x := f.x(place(i)) + aside
+				f.whiskerIn(colour, x, f.y(lo), x, f.y(hi), 2)
+			}
+		}
 		f.curve(px, py, line{width: 1.2, dashes: dash(k), colour: colour})
 		for i := range px {
 			f.marker(shape, f.x(px[i]), f.y(py[i]), 2.6, colour)
@@ -316,6 +343,9 @@ func (n Interaction) words() string {
 	b.WriteString(listed(n.Lines, func(l Line) string { return l.Label }))
 	if !s.empty() {
 		fmt.Fprintf(&b, ", from %s to %s", rounded(s.lo), rounded(s.hi))
+	}
+	if len(n.Lines) > 0 && n.Lines[0].Low != nil {
+		b.WriteString(", each with its interval")
 	}
 	b.WriteString(".")
 	var each []string

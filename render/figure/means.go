@@ -142,7 +142,10 @@ func (g *groups) interval(i int, q Mean, off float64) {
 }
 
 // whisker is an interval between two places on one level or upright line, with caps.
-func (c *canvas) whisker(x0, y0, x1, y1, cap float64) {
+func (c *canvas) whisker(x0, y0, x1, y1, cap float64) { c.whiskerIn(ink, x0, y0, x1, y1, cap) }
+
+// whiskerIn is a whisker in a colour.
+func (c *canvas) whiskerIn(colour doc.Colour, x0, y0, x1, y1, cap float64) {
 	path := segment(x0, y0, x1, y1)
 	dx, dy := cap, 0.0
 	if y0 == y1 && x0 != x1 {
@@ -150,7 +153,7 @@ func (c *canvas) whisker(x0, y0, x1, y1, cap float64) {
 	}
 	path = append(path, segment(x0-dx, y0-dy, x0+dx, y0+dy)...)
 	path = append(path, segment(x1-dx, y1-dy, x1+dx, y1+dy)...)
-	c.stroke(line{width: medium, colour: ink}, path...)
+	c.stroke(line{width: medium, colour: colour}, path...)
 }
 
 // doses draws the means over a scale.

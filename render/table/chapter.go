@@ -82,8 +82,17 @@ func (c *chapterTable) order(rs []*result.Response) []result.Levels {
 		}
 	}
 	rank := map[string]map[string]int{}
-	for i := range c.plan.Factors {
-		f := &c.plan.Factors[i]
+	var names []string
+	for _, x := range out[:min(1, len(out))] {
+		for _, l := range x {
+			names = append(names, l.Factor)
+		}
+	}
+	for _, name := range names {
+		f := prose.FactorNamed(c.plan, name)
+		if f == nil {
+			continue
+		}
 		at := make([]int, len(f.Levels))
 		for k := range at {
 			at[k] = k
@@ -217,14 +226,26 @@ func (c *chapterTable) tests(rs []*result.Response) []tested {
 	factors := strings.Split(c.term, ":")
 	if len(factors) > 1 {
 		// Every term within the cells, main effects first.
-		for n := 1; n <= len(factors); n++ {
-			for _, x := range c.plan.Terms {
-				if strings.Count(x.Name, ":") == n-1 && c.within(x.Name) {
-					byTest(x.Name, prose.TermLabel(c.plan, x.Name))
+		var terms []string
+		for _, x := range c.plan.Terms {
+			terms = append(terms, x.Name)
+		}
+		for _, r := range rs {
+			for _, x := range r.Tests {
+				// Terms of times stand in no plan.
+				if !slices.Contains(terms, x.Source) {
+					terms = append(terms, x.Source)
 				}
 			}
 		}
-		if len(out) == 0 || !slices.ContainsFunc(c.plan.Terms, func(x layout.Term) bool { return x.Name == c.term }) {
+		for n := 1; n <= len(factors); n++ {
+			for _, x := range terms {
+				if strings.Count(x, ":") == n-1 && c.within(x) {
+					byTest(x, prose.TermLabel(c.plan, x))
+				}
+			}
+		}
+		if len(out) == 0 || !slices.Contains(terms, c.term) {
 			byTest(c.term, prose.TermLabel(c.plan, c.term))
 		}
 	} else {

@@ -2,6 +2,7 @@ package table
 
 import (
 	"math"
+	"slices"
 	"strings"
 
 	"penwright/analysis/num"
@@ -12,8 +13,11 @@ import (
 )
 
 // Anova is the analysis of variance: Source, df, SS, MS, Tested over, F, P. Error rows
-// are named by what varies.
+// are named by what varies. Of a mixed model it is the table of its tests.
 func Anova(p *layout.Plan, r *result.Response) doc.Table {
+	if len(r.Anova) == 0 && len(r.Tests) > 0 {
+		return effectTests(p, r)
+	}
 	t := doc.Table{
 		ID:      "anova-" + r.Name,
 		Caption: text("Analysis of variance of " + prose.ResponseText(r)),
@@ -136,10 +140,8 @@ func Means(p *layout.Plan, r *result.Response, term string) doc.Table {
 
 // levelColumn aligns the levels of a quantitative factor at the decimal mark.
 func levelColumn(p *layout.Plan, factor string) doc.Column {
-	for i := range p.Factors {
-		if p.Factors[i].Name == factor && p.Factors[i].Values != nil {
-			return doc.Column{Align: doc.Decimal, Key: true}
-		}
+	if f := prose.FactorNamed(p, factor); f != nil && f.Values != nil {
+		return doc.Column{Align: doc.Decimal, Key: true}
 	}
 	return left(true)
 }
@@ -242,6 +244,11 @@ func Contrasts(p *layout.Plan, r *result.Response, planned bool) doc.Table {
 		}
 	}
 	dss := num.ColumnDecimals(positive(ss), 3, 4)
+	// A mixed model has no sums of squares.
+	sums := slices.ContainsFunc(contrasts, func(c result.Contrast) bool { return c.SS.Known() })
+	if !sums {
+		t.Columns, t.Head[0] = slices.Delete(t.Columns, 3, 4), slices.Delete(t.Head[0], 3, 4)
+	}
 	for _, c := range contrasts {
 		d := num.SEDecimals(float64(c.SE))
 		df := num.DF(float64(c.NumeratorDF)) + ", " + num.DF(float64(c.DF))
@@ -249,6 +256,9 @@ func Contrasts(p *layout.Plan, r *result.Response, planned bool) doc.Table {
 			cell(prose.TermLabel(p, c.Name)), cell(fixed(c.Estimate, float64(c.Estimate), d)), cell(fixed(c.SE, float64(c.SE), d)),
 			cell(fixed(c.SS, float64(c.SS), dss)), {Text: text(df), Own: true, Align: doc.Right}, cell(fixed(c.F, float64(c.F), 2)), cell(pText(c.P)),
 		}})
+		if row := &t.Rows[len(t.Rows)-1]; !sums {
+			row.Cells = slices.Delete(row.Cells, 3, 4)
+		}
 	}
 	for _, s := range prose.ContrastNotes(contrasts) {
 		t.Notes = append(t.Notes, text(s))
