@@ -260,32 +260,8 @@ func partContrasts(p *layout.Plan, term int, part layout.Part, rows [][]float64)
 			}
 		}
 	}
-	// Each contrast is a product over the factors of (level i − last level).
-	contrasts := [][]float64{{1}}
-	for _, n := range sizes {
-		var next [][]float64
-		for _, c := range contrasts {
-			for i := range n - 1 {
-				w := make([]float64, 0, len(c)*n)
-				for _, v := range c {
-					for l := range n {
-						switch l {
-						case i:
-							w = append(w, v)
-						case n - 1:
-							w = append(w, -v)
-						default:
-							w = append(w, 0)
-						}
-					}
-				}
-				next = append(next, w)
-			}
-		}
-		contrasts = next
-	}
 	var out [][]float64
-	for _, c := range contrasts {
+	for _, c := range interaction(sizes) {
 		w := make([]float64, len(rows[0]))
 		for g, v := range c {
 			for i := range w {
