@@ -531,6 +531,9 @@ func TestHTMLInABrowser(t *testing.T) {
 			Tables, Figures, Heads, Broken, Wider int
 			External                              []string
 		}
+		// Sections far from the window are not laid out until they are near, and have no text till then.
+		var ready bool
+		b.eval(session, `document.querySelectorAll("section").forEach(s => { s.style.contentVisibility = "visible" }), true`, &ready)
 		b.eval(session, `({
 			title: document.title, lang: document.documentElement.lang, text: document.body.innerText,
 			tables: document.querySelectorAll("table").length, figures: document.querySelectorAll("figure svg").length,
