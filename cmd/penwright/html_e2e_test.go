@@ -380,6 +380,11 @@ func TestCheckersSeeFaults(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
+	spawn(t, nil, "report", trial, "--only", "html", "--template", "audit") // a plan has no numbers to sort
+	long, err := os.ReadFile(filepath.Join(trial, "report/report.html"))
+	if err != nil {
+		t.Fatal(err)
+	}
 	spoils := []struct{ name, from, to, fault string }{
 		{"lang", `<html lang="en">`, `<html>`, "html-has-lang"},
 		{"levels", `</header>`, `</header><h5>Deep</h5>`, "heading-order"},
@@ -394,8 +399,12 @@ func TestCheckersSeeFaults(t *testing.T) {
 	}
 	var files []string
 	for _, s := range spoils {
-		text := strings.ReplaceAll(string(good), s.from, s.to)
-		if text == string(good) {
+		of := string(good)
+		if s.name == "sort" {
+			of = string(long)
+		}
+		text := strings.ReplaceAll(of, s.from, s.to)
+		if text == of {
 			t.Fatalf("%s: nothing to spoil", s.name)
 		}
 		if s.name == "wide" {
