@@ -642,6 +642,9 @@ func TestRepeatedAgree(t *testing.T) {
 	tally := map[string]int{}
 	numbers, failed := 0, 0
 	for k := range n {
+		// The stream of seed 1 itself holds, as trial 68, one whose variance at one time runs
+		// down to a millionth of the others: there V is so nearly singular that the dense
+		// likelihood and ours agree to 5e-5 only.
 		s := randomSeries(rand.New(rand.NewPCG(*seed+4, uint64(k))))
 		rs, found := runFiles(t, s.files)
 		c := &check{}

@@ -438,8 +438,8 @@ func (st *state) slopes() (gradient []float64, information *mat.SymDense) {
 			}
 		}
 	}
-	var go_ mat.Dense
-	go_.Mul(g, st.omega)
+	var adjusted mat.Dense
+	adjusted.Mul(g, st.omega)
 	inner := map[int]int{}
 	for i, k := range params {
 		inner[k] = i
@@ -471,7 +471,7 @@ func (st *state) slopes() (gradient []float64, information *mat.SymDense) {
 				}
 			}
 			for c := range p + q {
-				v -= go_.At(i, c) * g.At(j, c)
+				v -= adjusted.At(i, c) * g.At(j, c)
 			}
 			information.SetSym(i, j, v)
 		}
